@@ -1,0 +1,24 @@
+"""What the user writes: states, terms, observables, chains and points. It computes nothing."""
+
+from .chain import Chain
+from .point import Point
+from .states import StateSet, clock, colours, ising, occupation, spins
+from .terms import Term, bond, cos_turns, delta, site, term, weight
+
+__all__ = [
+    "Chain",
+    "Point",
+    "StateSet",
+    "Term",
+    "bond",
+    "clock",
+    "colours",
+    "cos_turns",
+    "delta",
+    "ising",
+    "occupation",
+    "site",
+    "spins",
+    "term",
+    "weight",
+]
