@@ -1,0 +1,1 @@
+"""From a declaration to windows and matrices: the one bridge between physics and mathematics."""

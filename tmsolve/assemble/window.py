@@ -1,0 +1,123 @@
+"""Building the window of a chain: which copy of which term lies between two cuts."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable
+from dataclasses import dataclass
+from weakref import WeakKeyDictionary
+
+from ..declare import Chain, StateSet, Term
+from ..errors import TooLargeError
+from ..operators.elimination import elimination_order
+from ..operators.window import Factor, Window
+from .cut import Cut, smallest_cut
+
+__all__ = ["Degeneracy", "ChainWindow", "build_window", "place_in"]
+
+Site = tuple[str, int]
+
+#: Largest local table, in entries, that a reduction may build.
+TABLE_LIMIT = 2**26
+
+
+@dataclass(frozen=True)
+class Degeneracy:
+    """Source of the factor that carries the state weights of one site."""
+
+    states: StateSet
+
+
+@dataclass(frozen=True, eq=False)
+class ChainWindow(Window):
+    """The window of a chain between the cut before cell 0 and the cut one cell further.
+
+    Attributes
+    ----------
+    chain : Chain
+        Where its tables come from.
+    cut : Cut
+        Thresholds and widths of the cut.
+    """
+
+    chain: Chain
+    cut: Cut
+
+    @property
+    def new_sites(self) -> tuple[Site, ...]:
+        """The sites that this window adds to the left: one of each kind."""
+        return tuple((kind, threshold) for kind, threshold in self.cut.thresholds.items())
+
+
+_WINDOWS: WeakKeyDictionary[Chain, dict[tuple[str, ...], ChainWindow]] = WeakKeyDictionary()
+
+
+def build_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
+    """Return the window of a chain over its smallest cut.
+
+    Parameters
+    ----------
+    chain : Chain
+        The declaration.
+    observables : iterable of str
+        Observables that must fit into one window as well; the cut is widened for them.
+
+    Examples
+    --------
+    >>> from tmsolve.declare import Chain, bond, spins
+    >>> window = build_window(Chain(spins(1), [bond(lambda s, t, J: -J*s*t, shift=2)]))
+    >>> window.shape, window.nonzeros
+    ((9, 9), 27)
+    """
+    names = tuple(sorted(set(observables)))
+    known = _WINDOWS.setdefault(chain, {})
+    if names not in known:
+        known[names] = _build(chain, names)
+    return known[names]
+
+
+def _build(chain: Chain, names: tuple[str, ...]) -> ChainWindow:
+    sizes = {kind: len(states) for kind, states in chain.cell.items()}
+    wanted = [*chain.terms, *(part for name in names for part in chain.observable(name))]
+    cut = smallest_cut(sizes, [term.places for term in wanted])
+    left = cut.sites
+    right = tuple((kind, cell + 1) for kind, cell in left)
+    new = [(kind, threshold) for kind, threshold in cut.thresholds.items()]
+    interior = [site for site in new if site not in right]
+    factors = [_copy(term, cut) for term in chain.terms]
+    factors += [
+        Factor(Degeneracy(chain.cell[kind]), ((kind, cell),)) for kind, cell in new if chain.cell[kind].weighted
+    ]
+    touched = {site for factor in factors for site in factor.sites}
+    factors += [
+        Factor(Degeneracy(chain.cell[site[0]]), (site,))
+        for site in dict.fromkeys((*left, *right, *interior))
+        if site not in touched
+    ]
+    site_sizes = {site: sizes[site[0]] for site in (*left, *right, *interior)}
+    order = elimination_order([factor.sites for factor in factors], interior, site_sizes)
+    window = ChainWindow(left, right, order, site_sizes, tuple(factors), chain, cut)
+    if window.nonzeros > TABLE_LIMIT:
+        raise TooLargeError(
+            f"the smallest cut of this chain has {window.shape[0]} joint states and its transfer matrix "
+            f"{window.nonzeros} entries; at most {TABLE_LIMIT} can be tabulated. Shorten the longest bond or the cell",
+            limit=TABLE_LIMIT,
+        )
+    return window
+
+
+def _copy(term: Term, cut: Cut) -> Factor:
+    """Take the copy of a term whose last site is new in this window."""
+    anchor = min(cut.thresholds[kind] - shift for kind, shift in term.places)
+    return Factor(term, tuple((kind, anchor + shift) for kind, shift in term.places))
+
+
+def place_in(window: ChainWindow, term: Term) -> tuple[tuple[Site, ...], int] | None:
+    """Return the sites of the copy of a term that lies in the window, and its anchor cell.
+
+    ``None`` when no copy fits (an observable that is wider than the window).
+    """
+    factor = _copy(term, window.cut)
+    inside = {*window.left, *window.right, *window.interior}
+    if not all(site in inside for site in factor.sites):
+        return None
+    return factor.sites, factor.sites[0][1] - term.places[0][1]

@@ -1,0 +1,1 @@
+"""From a non-negative matrix to its Perron pair, its chain and its spectrum."""

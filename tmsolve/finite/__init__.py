@@ -1,0 +1,1 @@
+"""Rings and open chains of N cells."""

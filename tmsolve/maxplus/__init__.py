@@ -1,0 +1,1 @@
+"""Optimal cycle means and potentials of weighted directed graphs."""

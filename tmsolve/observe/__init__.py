@@ -1,0 +1,1 @@
+"""Thermodynamics, derivatives and correlations of the infinite chain at T > 0."""

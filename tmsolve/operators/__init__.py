@@ -1,0 +1,1 @@
+"""Windows of a chain, the algebras they are summed in, and products: mathematics without physics."""

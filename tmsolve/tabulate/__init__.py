@@ -1,0 +1,1 @@
+"""Calling the user's functions: numbers, Taylor numbers, exact numbers, symbols."""

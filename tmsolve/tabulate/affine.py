@@ -1,0 +1,177 @@
+"""Recognising functions that are affine in their parameters, by exact evaluation.
+
+The function is called once per state tuple on tracers: exact sums c + Σ a_k p_k. Anything
+a tracer cannot do exactly (a product of two parameters, a comparison, a power) shows that
+the function is not affine, and the general route is taken.
+"""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from numbers import Rational, Real
+from typing import Any
+from weakref import WeakKeyDictionary
+
+import numpy as np
+
+from ..declare import StateSet, Term
+from .calling import call_sites
+
+__all__ = ["AffineTable", "affine_table"]
+
+
+class _NotAffine(Exception):
+    """The tracer met an operation that is not affine."""
+
+
+def _exact(value: Any) -> Fraction | float:
+    if isinstance(value, (bool, np.bool_)):
+        return Fraction(int(value))
+    if isinstance(value, Rational):
+        return Fraction(int(value.numerator), int(value.denominator))
+    if isinstance(value, Real):
+        number = float(value)
+        if not math.isfinite(number):
+            return number
+        return Fraction(repr(number))
+    raise _NotAffine
+
+
+class _Tracer:
+    """An exact affine form c + Σ a_k p_k."""
+
+    __slots__ = ("constant", "slopes")
+    __array_ufunc__ = None
+
+    def __init__(self, constant: Fraction | float, slopes: Mapping[str, Fraction]) -> None:
+        self.constant = constant
+        self.slopes = {name: slope for name, slope in slopes.items() if slope}
+
+    def _plus(self, other: Any, sign: int) -> _Tracer:
+        if not isinstance(other, _Tracer):
+            other = _Tracer(_exact(other), {})
+        names = dict.fromkeys((*self.slopes, *other.slopes))
+        slopes = {name: self.slopes.get(name, Fraction(0)) + sign * other.slopes.get(name, Fraction(0)) for name in names}
+        return _Tracer(self.constant + sign * other.constant, slopes)
+
+    def __add__(self, other: Any) -> _Tracer:
+        return self._plus(other, 1)
+
+    __radd__ = __add__
+
+    def __sub__(self, other: Any) -> _Tracer:
+        return self._plus(other, -1)
+
+    def __rsub__(self, other: Any) -> _Tracer:
+        return (-self)._plus(other, 1)
+
+    def __neg__(self) -> _Tracer:
+        return self._times(Fraction(-1))
+
+    def __pos__(self) -> _Tracer:
+        return self
+
+    def _times(self, factor: Fraction | float) -> _Tracer:
+        if isinstance(factor, float):
+            raise _NotAffine
+        return _Tracer(self.constant * factor, {name: slope * factor for name, slope in self.slopes.items()})
+
+    def __mul__(self, other: Any) -> _Tracer:
+        if isinstance(other, _Tracer):
+            if other.slopes and self.slopes:
+                raise _NotAffine
+            return self._times(other.constant) if not other.slopes else other._times(self.constant)
+        return self._times(_exact(other))
+
+    __rmul__ = __mul__
+
+    def __truediv__(self, other: Any) -> _Tracer:
+        divisor = other.constant if isinstance(other, _Tracer) and not other.slopes else other
+        if isinstance(divisor, _Tracer):
+            raise _NotAffine
+        exact = _exact(divisor)
+        if not exact or isinstance(exact, float):
+            raise _NotAffine
+        return self._times(1 / exact)
+
+    def _refuse(self, *_: Any) -> Any:
+        raise _NotAffine
+
+    __rtruediv__ = __pow__ = __rpow__ = __abs__ = __float__ = __int__ = __bool__ = __mod__ = __floordiv__ = _refuse
+    __lt__ = __le__ = __gt__ = __ge__ = __eq__ = __ne__ = __iter__ = __len__ = __getitem__ = _refuse
+    __hash__ = object.__hash__
+
+
+@dataclass(frozen=True)
+class AffineTable:
+    """A term as constant + Σ slope_k · p_k, exactly.
+
+    Attributes
+    ----------
+    constant : ndarray of object, shape (*states)
+        Fractions; ±inf where a configuration is forbidden.
+    slopes : dict
+        Parameter name to an object array of Fractions; parameters without influence are
+        left out.
+    """
+
+    constant: np.ndarray
+    slopes: dict[str, np.ndarray]
+
+
+_KNOWN: WeakKeyDictionary[Term, dict[tuple[StateSet, ...], AffineTable | None]] = WeakKeyDictionary()
+
+
+def affine_table(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
+    """Return the exact affine form of a term, or ``None`` when it has none.
+
+    Examples
+    --------
+    >>> from tmsolve.declare import bond, ising
+    >>> table = affine_table(bond(lambda s, t, J, g: -J*s*t + g/2), [ising(), ising()])
+    >>> table.slopes["J"].tolist(), table.slopes["g"][0, 0]
+    ([[Fraction(-1, 1), Fraction(1, 1)], [Fraction(1, 1), Fraction(-1, 1)]], Fraction(1, 2))
+    >>> affine_table(bond(lambda s, t, J, g: J*g*s), [ising(), ising()]) is None
+    True
+    """
+    known = _KNOWN.setdefault(term, {})
+    key = tuple(states)
+    if key not in known:
+        known[key] = _trace(term, states)
+    return known[key]
+
+
+def _trace(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
+    if term.takes_temperature:
+        return None
+    tracers = {name: _Tracer(Fraction(0), {name: Fraction(1)}) for name in term.parameters}
+    try:
+        raw = call_sites(term, states, lambda state: state, tracers)
+        forms = [_form(entry) for entry in raw.ravel()]
+    except Exception:  # whatever goes wrong is met again, and reported, on the numeric route
+        return None
+    constant = np.empty(raw.shape, dtype=object)
+    constant.reshape(-1)[:] = [form.constant for form in forms]
+    slopes: dict[str, np.ndarray] = {}
+    for name in term.parameters:
+        column = [form.slopes.get(name, Fraction(0)) for form in forms]
+        if any(column):
+            slopes[name] = np.empty(raw.shape, dtype=object)
+            slopes[name].reshape(-1)[:] = column
+    return AffineTable(constant, slopes)
+
+
+def _form(entry: Any) -> _Tracer:
+    if isinstance(entry, _Tracer):
+        if isinstance(entry.constant, float) and entry.constant != math.inf:
+            raise _NotAffine
+        return entry
+    if isinstance(entry, (bool, np.bool_)) or not isinstance(entry, Real):
+        raise _NotAffine
+    number = _exact(entry)
+    if isinstance(number, float) and number != math.inf:
+        raise _NotAffine
+    return _Tracer(number, {})

@@ -1,0 +1,154 @@
+"""Calling a user's function on every combination of states, and judging what it returns."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Callable, Mapping, Sequence
+from fractions import Fraction
+from itertools import product
+from typing import Any
+
+import numpy as np
+
+from ..declare import StateSet, Term
+from ..errors import DeclarationError, SolveError, TmsolveError
+
+__all__ = ["call_sites", "describe_call", "number_table", "numeric_state"]
+
+
+def numeric_state(state: Any) -> Any:
+    """Return a state as numeric code expects it: ints stay, fractions become floats."""
+    if isinstance(state, Fraction):
+        return float(state)
+    if isinstance(state, tuple):
+        return tuple(numeric_state(part) for part in state)
+    return state
+
+
+def call_sites(
+    term: Term, states: Sequence[StateSet], convert: Callable[[Any], Any], values: Mapping[str, Any]
+) -> np.ndarray:
+    """Call a term on every state tuple; an object array with one axis per site.
+
+    Exceptions of the user's code are passed on as they are.
+    """
+    keywords = {name: values[name] for name in term.parameters}
+    result = np.empty([len(s) for s in states], dtype=object)
+    for index in product(*(range(len(s)) for s in states)):
+        arguments = [convert(s.values[i]) for s, i in zip(states, index, strict=True)]
+        result[index] = term.function(*arguments, **keywords)
+    return result
+
+
+def describe_call(term: Term, states: Sequence[Any], values: Mapping[str, Any]) -> str:
+    """Name a call for a message: function, states and parameters."""
+    inside = ", ".join([*(repr(s) for s in states), *(f"{n}={_brief(values[n])}" for n in term.parameters)])
+    return f"{term.name}({inside})"
+
+
+def _brief(value: Any) -> str:
+    if isinstance(value, np.ndarray):
+        return f"array{value.shape}" if value.size > 4 else str(value.tolist())
+    return f"{value:g}" if isinstance(value, (int, float)) else str(value)
+
+
+def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], batch: int) -> np.ndarray:
+    """Tabulate a term in doubles: shape (*states, batch), or (*states, 1) where it is constant.
+
+    A function that cannot take arrays (it branches on a parameter, or uses ``math``) is
+    called point by point.
+
+    Raises
+    ------
+    SolveError
+        The function raises, or returns NaN.
+    DeclarationError
+        The function returns something that is not a real number.
+    """
+    arrays = {name: np.asarray(values[name]) for name in term.parameters if np.ndim(values[name])}
+    try:
+        with np.errstate(all="ignore"):
+            raw = call_sites(term, states, numeric_state, values)
+    except (ValueError, TypeError) as cause:
+        if not arrays:
+            raise _failed(term, states, values, cause) from cause
+        return _point_by_point(term, states, values, batch)
+    except TmsolveError:
+        raise
+    except Exception as cause:
+        raise _failed(term, states, values, cause) from cause
+    return _collect(term, states, values, raw, batch)
+
+
+def _point_by_point(
+    term: Term, states: Sequence[StateSet], values: Mapping[str, Any], batch: int
+) -> np.ndarray:
+    columns = {name: np.broadcast_to(values[name], (batch,)) for name in term.parameters}
+    table = np.empty((*(len(s) for s in states), batch))
+    for i in range(batch):
+        single = {name: float(column[i]) for name, column in columns.items()}
+        table[..., i] = number_table(term, states, single, 1)[..., 0]
+    return table
+
+
+def _failed(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], cause: Exception) -> TmsolveError:
+    """Find the state tuple that made the function fail, and say so."""
+    for index in product(*(range(len(s)) for s in states)):
+        arguments = [numeric_state(s.values[i]) for s, i in zip(states, index, strict=True)]
+        try:
+            term.function(*arguments, **{name: values[name] for name in term.parameters})
+        except Exception as again:
+            call = describe_call(term, arguments, values)
+            return SolveError(f"{call} raised {type(again).__name__}: {again}; mend the function of this term")
+    return SolveError(f"{term.name} raised {type(cause).__name__}: {cause}; mend the function of this term")
+
+
+def _collect(
+    term: Term, states: Sequence[StateSet], values: Mapping[str, Any], raw: np.ndarray, batch: int
+) -> np.ndarray:
+    length = max((np.size(entry) for entry in raw.ravel()), default=1)
+    table = np.empty((*raw.shape, 1 if length == 1 else batch))
+    for index in np.ndindex(raw.shape):
+        arguments = [numeric_state(s.values[i]) for s, i in zip(states, index, strict=True)]
+        table[index] = _number(raw[index], lambda a=arguments: describe_call(term, a, values), term, batch)
+    return table
+
+
+def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
+    noun = {"energy": "an energy", "weight": "a weight"}.get(term.role, "an observable")
+    if isinstance(entry, (bool, np.bool_)) or getattr(entry, "dtype", None) == np.bool_:
+        raise DeclarationError(
+            f"{call()} returned the bool {entry!r}, but {noun} is a real number; "
+            "multiply it by a coupling, or use delta(s, t) for 1 and 0"
+        )
+    if entry is None:
+        raise DeclarationError(f"{call()} returned None, but {noun} is a real number; does the function lack a return?")
+    if isinstance(entry, (str, bytes, complex)) or not hasattr(entry, "__float__"):
+        raise DeclarationError(f"{call()} returned {entry!r}, but {noun} is a real number")
+    number = np.asarray(entry)
+    if number.dtype.kind not in "iuf":
+        try:
+            number = np.asarray(float(entry))
+        except (TypeError, ValueError) as cause:
+            raise DeclarationError(f"{call()} returned {entry!r}, but {noun} is a real number") from cause
+    if number.size != 1 and number.shape != (batch,):
+        raise DeclarationError(
+            f"{call()} returned an array of shape {number.shape}, but {noun} is one number per point; "
+            "compute on the parameters elementwise"
+        )
+    _check_finite(number, call, term)
+    return number.reshape(-1)
+
+
+def _check_finite(number: np.ndarray, call: Callable[[], str], term: Term) -> None:
+    if np.isnan(number).any():
+        raise SolveError(
+            f"{call()} returned NaN; where a term forbids a configuration return math.inf outright, "
+            "not a product such as inf*0"
+        )
+    if term.role == "energy" and (number == -math.inf).any():
+        raise SolveError(f"{call()} returned −inf, which no Boltzmann factor can hold; math.inf forbids a configuration")
+    if term.role == "weight" and ((number < 0) | np.isinf(number)).any():
+        raise SolveError(f"{call()} returned {number.ravel()[0]!r}, but a weight is a finite number >= 0")
+    if term.role == "observable" and np.isinf(number).any():
+        raise SolveError(f"{call()} returned an infinite value, but an observable is finite on every state")
