@@ -1,0 +1,93 @@
+"""Solve classical chain models by transfer matrices: closed forms, thermodynamics, crossovers.
+
+Write the energy of a chain as plain functions of its local states, bind parameters, ask for results:
+
+>>> from tmsolve import Chain, bond, ising, site, solve
+>>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t), site(lambda s, h: -h*s)])
+>>> round(float(solve(chain.at(T=1, J=1, h=0)).free_energy), 12)
+-1.126928011043
+
+Names are loaded on first use, so that ``import tmsolve`` itself loads no numerical library.
+"""
+
+from __future__ import annotations
+
+from importlib import import_module
+from typing import TYPE_CHECKING, Any
+
+from ._version import __version__
+
+if TYPE_CHECKING:
+    from . import errors as errors
+    from . import models as models
+    from .answer.solve import solve as solve
+    from .assemble.describe_chain import describe as describe
+    from .declare import Chain as Chain
+    from .declare import StateSet as StateSet
+    from .declare import bond as bond
+    from .declare import clock as clock
+    from .declare import colours as colours
+    from .declare import cos_turns as cos_turns
+    from .declare import delta as delta
+    from .declare import ising as ising
+    from .declare import occupation as occupation
+    from .declare import site as site
+    from .declare import spins as spins
+    from .declare import term as term
+    from .declare import weight as weight
+    from .errors import DeclarationError as DeclarationError
+    from .errors import MissingExtra as MissingExtra
+    from .errors import NotApplicable as NotApplicable
+    from .errors import ParameterError as ParameterError
+    from .errors import SolveError as SolveError
+    from .errors import TmsolveError as TmsolveError
+    from .errors import TooLargeError as TooLargeError
+    from .finite.chains import open_chain as open_chain
+    from .finite.chains import ring as ring
+    from .survey.axes import axis as axis
+    from .survey.events import crossovers as crossovers
+    from .survey.run import scan as scan
+    from .symbolic.forms import closed_form as closed_form
+
+_HOMES = {
+    "answer.solve": ("solve",),
+    "assemble.describe_chain": ("describe",),
+    "declare": (
+        "Chain", "StateSet", "bond", "clock", "colours", "cos_turns", "delta", "ising", "occupation", "site",
+        "spins", "term", "weight",
+    ),
+    "errors": (
+        "DeclarationError", "MissingExtra", "NotApplicable", "ParameterError", "SolveError", "TmsolveError",
+        "TooLargeError",
+    ),
+    "finite.chains": ("open_chain", "ring"),
+    "survey.axes": ("axis",),
+    "survey.events": ("crossovers",),
+    "survey.run": ("scan",),
+    "symbolic.forms": ("closed_form",),
+}  # fmt: skip
+_HOME_OF = {name: home for home, names in _HOMES.items() for name in names}
+_ROOMS = ("errors", "models")
+
+__all__ = ["__version__", *sorted(_HOME_OF)]
+
+
+def __getattr__(name: str) -> Any:
+    """Import the home of a front-door name on first use and keep the name."""
+    if name in _ROOMS:
+        return import_module(f".{name}", __name__)
+    if name in _HOME_OF:
+        value = getattr(import_module(f".{_HOME_OF[name]}", __name__), name)
+        globals()[name] = value
+        return value
+    hint = ""
+    if not name.startswith("_"):
+        from .errors import did_you_mean
+
+        hint = did_you_mean(name, sorted(_HOME_OF))
+    raise AttributeError(f"module 'tmsolve' has no attribute '{name}'.{hint}")
+
+
+def __dir__() -> list[str]:
+    """List the front door together with what is loaded already."""
+    return sorted({*globals(), *_HOME_OF, *_ROOMS})
