@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from weakref import WeakKeyDictionary
 
@@ -12,7 +12,7 @@ from ..operators.elimination import elimination_order
 from ..operators.window import Factor, Window
 from .cut import Cut, smallest_cut
 
-__all__ = ["Degeneracy", "ChainWindow", "build_window", "place_in"]
+__all__ = ["ChainWindow", "Degeneracy", "Free", "build_window", "place_in", "untouched"]
 
 Site = tuple[str, int]
 
@@ -25,6 +25,13 @@ class Degeneracy:
     """Source of the factor that carries the state weights of one site."""
 
     states: StateSet
+
+
+@dataclass(frozen=True)
+class Free:
+    """Source of a factor that is 1 in every state of a site that no term touches."""
+
+    size: int
 
 
 @dataclass(frozen=True, eq=False)
@@ -87,12 +94,7 @@ def _build(chain: Chain, names: tuple[str, ...]) -> ChainWindow:
     factors += [
         Factor(Degeneracy(chain.cell[kind]), ((kind, cell),)) for kind, cell in new if chain.cell[kind].weighted
     ]
-    touched = {site for factor in factors for site in factor.sites}
-    factors += [
-        Factor(Degeneracy(chain.cell[site[0]]), (site,))
-        for site in dict.fromkeys((*left, *right, *interior))
-        if site not in touched
-    ]
+    factors += untouched(factors, (*left, *right, *interior), sizes)
     site_sizes = {site: sizes[site[0]] for site in (*left, *right, *interior)}
     order = elimination_order([factor.sites for factor in factors], interior, site_sizes)
     window = ChainWindow(left, right, order, site_sizes, tuple(factors), chain, cut)
@@ -109,6 +111,12 @@ def _copy(term: Term, cut: Cut) -> Factor:
     """Take the copy of a term whose last site is new in this window."""
     anchor = min(cut.thresholds[kind] - shift for kind, shift in term.places)
     return Factor(term, tuple((kind, anchor + shift) for kind, shift in term.places))
+
+
+def untouched(factors: Iterable[Factor], sites: Iterable[Site], sizes: Mapping[str, int]) -> list[Factor]:
+    """Return unit factors for sites without any, so that summing them out counts their states."""
+    touched = {site for factor in factors for site in factor.sites}
+    return [Factor(Free(sizes[site[0]]), (site,)) for site in dict.fromkeys(sites) if site not in touched]
 
 
 def place_in(window: ChainWindow, term: Term) -> tuple[tuple[Site, ...], int] | None:

@@ -56,9 +56,9 @@ def resolve_observables(cell: Mapping[str, StateSet], observables: Any) -> dict[
         raise DeclarationError(f'observables= takes a mapping such as {{"m": lambda s: s}}, got {observables!r}')
     resolved: dict[str, tuple[Term, ...]] = {}
     for name, given in observables.items():
-        if not isinstance(name, str) or not name or set(name) & set("(),= "):
+        if not isinstance(name, str) or not name or set(name) & set("(),= @|"):
             raise DeclarationError(
-                f"an observable is named by a word without spaces, commas, brackets or '=', got {name!r}"
+                f"an observable is named by a word without spaces, commas, brackets, '=', '@' or '|', got {name!r}"
             )
         parts = list(given) if isinstance(given, (list, tuple)) else [given]
         if not parts:

@@ -1,4 +1,4 @@
-"""The algebras of numbers: log-sum with tilts (temperature), and min-plus (ground states)."""
+"""The algebra of temperatures: weights by their logarithms, with tilts."""
 
 from __future__ import annotations
 
@@ -12,7 +12,7 @@ from .elimination import align
 from .numbers import DOUBLE, Numbers
 from .partitions import Key, exp_remainder, sub_keys
 
-__all__ = ["LogSum", "LogTable", "MinPlus", "Tilts"]
+__all__ = ["LogSum", "LogTable", "Tilts"]
 
 #: Derivatives of a log weight by tilt parameters, by multiset of names.
 Tilts = Mapping[Key, np.ndarray]
@@ -20,16 +20,22 @@ Tilts = Mapping[Key, np.ndarray]
 
 @dataclass(frozen=True)
 class LogTable:
-    """Logarithms of weights over some sites, with their derivatives by tilt parameters.
+    """Weights exp(−β·energy + log) over some sites, with derivatives by tilt parameters.
+
+    Energy and residual logarithm are kept apart so that differences of energies are formed
+    before they are multiplied by a large β.
 
     Attributes
     ----------
-    log : ndarray, shape (*states, batch)
-        Logarithm of the weight; −inf where forbidden.
+    energy : ndarray, shape (*states, batch)
+        Finite everywhere.
+    log : ndarray
+        Residual logarithm; −inf where forbidden.
     tilts : mapping
-        Derivatives of ``log``; a missing key is zero.
+        Derivatives of the logarithm of the weight; a missing key is zero.
     """
 
+    energy: np.ndarray
     log: np.ndarray
     tilts: Tilts = field(default_factory=dict)
 
@@ -38,48 +44,56 @@ class LogTable:
 class LogSum:
     """Adding weights by their logarithms; tilts turn into conditional cumulants.
 
-    Summing a site out of exp(ℓ + Σ εB) gives exp(y) with y(ε) the logarithm of a mean; its
-    mixed derivatives are the cumulants of B over the site, computed on centred values so
-    that nothing cancels.
+    Summing a site out of weights exp(ℓ + Σ εB) gives exp(y) with y(ε) the logarithm of a
+    mean; its mixed derivatives are the cumulants of B over the site, computed on centred
+    values so that nothing cancels.
 
     Parameters
     ----------
+    beta : ndarray, shape (batch,)
+        Inverse temperature.
     numbers : Numbers
         Doubles, or longer numbers.
     keys : tuple of Key
         The tilt derivatives wanted; with a key all its sub-multisets.
     """
 
+    beta: np.ndarray
     numbers: Numbers = DOUBLE
     keys: tuple[Key, ...] = ()
 
     def align(self, table: LogTable, sites: Sequence[Any], target: Sequence[Any]) -> LogTable:
         """Give the table the target's axes."""
         tilts = {key: align(values, sites, target) for key, values in table.tilts.items()}
-        return LogTable(align(table.log, sites, target), tilts)
+        return LogTable(align(table.energy, sites, target), align(table.log, sites, target), tilts)
 
     def product(self, tables: Sequence[LogTable]) -> LogTable:
-        """Multiply weights: add logarithms and their derivatives."""
-        log = tables[0].log
+        """Multiply weights: add energies, logarithms and their derivatives."""
+        energy, log = tables[0].energy, tables[0].log
         for table in tables[1:]:
-            log = log + table.log
+            energy, log = energy + table.energy, log + table.log
         tilts: dict[Key, np.ndarray] = {}
         for table in tables:
             for key, values in table.tilts.items():
                 tilts[key] = tilts[key] + values if key in tilts else values
-        return LogTable(log, tilts)
+        return LogTable(energy, log, tilts)
 
     def sum(self, table: LogTable, axis: int) -> LogTable:
-        """Sum one site out."""
-        top = table.log.max(axis=axis, keepdims=True)
-        shift = np.where(top == -np.inf, self.numbers.scalar(0), top)
-        weights = self.numbers.exp(table.log - shift)
-        total = weights.sum(axis=axis, keepdims=True)
-        empty = total == 0
-        total = np.where(empty, self.numbers.scalar(1), total)
-        log = np.where(empty, self.numbers.scalar("-inf"), self.numbers.log(total) + shift)
+        """Sum one site out; the least energy over the site becomes the energy."""
+        infinite, zero = self.numbers.scalar("inf"), self.numbers.scalar(0)
+        energy = np.where(table.log == -infinite, infinite, table.energy)
+        least = energy.min(axis=axis, keepdims=True)
+        least = np.where(least == infinite, zero, least)
+        log = table.log - self.beta * (table.energy - least)
+        top = log.max(axis=axis, keepdims=True)
+        empty = top == -infinite
+        top = np.where(empty, zero, top)
+        weights = self.numbers.exp(log - top)
+        total = np.where(empty, self.numbers.scalar(1), weights.sum(axis=axis, keepdims=True))
+        summed = np.where(empty, -infinite, self.numbers.log(total) + top)
         tilts = self._cumulants(table.tilts, weights / total, axis) if table.tilts else {}
-        return LogTable(np.squeeze(log, axis=axis), tilts)
+        least = np.broadcast_to(least, summed.shape)
+        return LogTable(np.squeeze(least, axis=axis), np.squeeze(summed, axis=axis), tilts)
 
     def _cumulants(self, tilts: Tilts, chance: np.ndarray, axis: int) -> dict[Key, np.ndarray]:
         centred: dict[Key, np.ndarray] = {}
@@ -96,23 +110,3 @@ class LogSum:
                 centred[key] = given - mean
             result[key] = np.squeeze(mean, axis=axis)
         return result
-
-
-@dataclass(frozen=True)
-class MinPlus:
-    """Least energies: the product adds, the sum takes the minimum."""
-
-    def align(self, table: np.ndarray, sites: Sequence[Any], target: Sequence[Any]) -> np.ndarray:
-        """Give the table the target's axes."""
-        return align(table, sites, target)
-
-    def product(self, tables: Sequence[np.ndarray]) -> np.ndarray:
-        """Add energies."""
-        total = tables[0]
-        for table in tables[1:]:
-            total = total + table
-        return total
-
-    def sum(self, table: np.ndarray, axis: int) -> np.ndarray:
-        """Take the least energy over one site."""
-        return table.min(axis=axis)

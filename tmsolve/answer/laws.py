@@ -1,0 +1,243 @@
+"""From a window at a batch of points to stationary laws: classes, solver, number length."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Mapping
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from ..assemble.matrix import Assembled, Gauge, handle
+from ..assemble.window import ChainWindow
+from ..declare import Point
+from ..eigen.components import communicating_classes
+from ..eigen.law import DoobLaw
+from ..eigen.perron import PerronPair, perron_pair
+from ..eigen.solvers import Dense
+from ..eigen.spectrum import ratios
+from ..errors import SolveError
+from ..observe.segment import Segment
+from ..operators.numbers import multiprecision, to_double
+
+__all__ = ["flat_values", "stationary_laws"]
+
+_FIRST_BITS = 128
+#: Longer numbers are worth their time for matrices up to this size.
+_CLIMB_LIMIT = 40
+_TIE = 1e-11
+
+
+def flat_values(point: Point) -> dict[str, Any]:
+    """Return the values of a point with batch axes flattened; single numbers stay exact."""
+    return {
+        name: value if isinstance(value, (Fraction, float)) else np.broadcast_to(value, point.shape).ravel()
+        for name, value in point.values.items()
+    }
+
+
+def _pick(values: Mapping[str, Any], indices: np.ndarray) -> dict[str, Any]:
+    return {name: value[indices] if np.ndim(value) else value for name, value in values.items()}
+
+
+def stationary_laws(window: ChainWindow, point: Point, solver: Dense) -> list[Segment]:
+    """Solve every point of a batch; points that share pattern and number length share a segment.
+
+    Raises
+    ------
+    SolveError
+        No configuration is allowed, tied classes, or no convergence; the message names the
+        first point it happens at.
+    """
+    solver.check(max(window.shape))
+    values = flat_values(point)
+    whole = Assembled(window, values, point.size)
+    segments: list[Segment] = []
+    for indices in _same_pattern(whole.pattern):
+        part = whole if indices.size == point.size else Assembled(window, _pick(values, indices), indices.size)
+        segments.extend(_solve_part(part, values, indices, solver, point))
+    return segments
+
+
+def _same_pattern(pattern: np.ndarray) -> list[np.ndarray]:
+    flat = pattern.reshape(-1, pattern.shape[-1])
+    if (flat == flat[:, :1]).all():
+        return [np.arange(flat.shape[1])]
+    _, group = np.unique(flat, axis=1, return_inverse=True)
+    group = group.ravel()
+    return [np.flatnonzero(group == g) for g in range(group.max() + 1)]
+
+
+def _solve_part(
+    part: Assembled, values: Mapping[str, Any], indices: np.ndarray, solver: Dense, point: Point
+) -> list[Segment]:
+    edges = part.pattern[..., 0]
+    classes = communicating_classes(edges)
+    if not classes:
+        raise SolveError(
+            f"every configuration of the infinite chain is forbidden at {point.pick(int(indices[0]))}; "
+            "check which terms return math.inf (or weight 0)"
+        )
+    found = [_Class(part, states, edges[np.ix_(states, states)]) for states in classes]
+    segments: list[Segment] = []
+    best = _dominant(found, part, point, indices)
+    for number in dict.fromkeys(best.tolist()):
+        local = np.flatnonzero(best == number)
+        chosen = found[number]
+        good = chosen.trusted[local] | (len(chosen.states) > _CLIMB_LIMIT) & chosen.pair.converged[local]
+        if good.any():
+            keep = local[good]
+            segments.append(_segment(found, number, part, keep, indices[keep]))
+        for i in local[~good]:
+            segments.append(_climb(part, values, indices[i], number, solver, point))
+    return segments
+
+
+class _Class:
+    """One communicating class of states with its Perron pair at every point of a batch."""
+
+    def __init__(self, part: Assembled, states: np.ndarray, edges: np.ndarray) -> None:
+        self.states = states
+        log, self.gauge = part.scaled_log(states, edges)
+        self.pair = perron_pair(log, part.numbers)
+        self.trusted = self.pair.converged.copy()
+        if not part.numbers.exact_exponent:
+            lowest = np.where(edges[..., None], log, 0.0).min(axis=(0, 1))
+            self.trusted &= lowest > np.log(part.numbers.tiny)
+        self.log_root = self.gauge.offset + part.numbers.log1p(self.pair.excess)
+        self.log_eigenvalue = self.log_root - part.beta * self.gauge.energy
+
+
+def _dominant(found: list[_Class], part: Assembled, point: Point, indices: np.ndarray) -> np.ndarray:
+    """Return the number of the class with the largest root at every point; a tie is an error."""
+    if len(found) == 1:
+        return np.zeros(part.batch, dtype=np.intp)
+    roots = np.array([to_double(c.log_eigenvalue) for c in found])
+    best = roots.argmax(axis=0)
+    top = roots.max(axis=0)
+    scale = np.maximum(1.0, np.abs(top))
+    tied = (roots >= top - _TIE * scale).sum(axis=0) > 1
+    if tied.any():
+        i = int(np.flatnonzero(tied)[0])
+        names = [_names(part.window, c.states) for c, root in zip(found, roots[:, i], strict=True) if root >= top[i] - _TIE * scale[i]]
+        raise SolveError(
+            f"the chain falls into classes of states that never mix and tie in free energy at "
+            f"{point.pick(int(indices[i]))}: {' and '.join(names)}. Means are not defined; lift the tie with a field, "
+            "or forbid all but one class"
+        )
+    return best
+
+
+def _names(window: ChainWindow, states: np.ndarray) -> str:
+    basis = window.left_states
+    shown = []
+    for number in states[:4]:
+        labels = [window.chain.cell[site[0]].labels[i] for site, i in zip(window.left, basis[number], strict=True)]
+        shown.append(",".join(labels))
+    return "{" + "; ".join(shown) + ("; …" if len(states) > 4 else "") + "}"
+
+
+def _climb(
+    part: Assembled, values: Mapping[str, Any], index: int, number: int, solver: Dense, point: Point
+) -> Segment:
+    """Solve one point again with longer and longer numbers."""
+    where = np.array([index])
+    bits = _FIRST_BITS
+    size = part.window.shape[0]
+    while bits <= solver.bits and size <= _CLIMB_LIMIT:
+        long = Assembled(part.window, _exact_values(point, index), 1, multiprecision(bits))
+        edges = long.pattern[..., 0]
+        bits *= 2
+        try:
+            found = [_Class(long, states, edges[np.ix_(states, states)]) for states in communicating_classes(edges)]
+        except ZeroDivisionError:  # a pivot cancelled to zero: these numbers are too short
+            continue
+        chosen = int(_dominant(found, long, point, where)[0])
+        if found[chosen].trusted[0]:
+            return _segment(found, chosen, long, np.array([0]), where)
+    raise SolveError(
+        f"the largest eigenvalue could not be separated at {point.pick(int(index))} "
+        f"with {'doubles' if size > _CLIMB_LIMIT else f'numbers of {solver.bits} bits'}; "
+        "raise Dense(bits=…), the temperature, or lift a near tie between ground states"
+    )
+
+
+def _exact_values(point: Point, index: int) -> dict[str, Any]:
+    return dict(point.pick(int(index)).values) if point.shape else dict(point.values)
+
+
+def _segment(found: list[_Class], number: int, part: Assembled, local: np.ndarray, indices: np.ndarray) -> Segment:
+    chosen = found[number]
+    pair = _restrict(chosen.pair, local)
+    gauge = Gauge(chosen.gauge.energy[local], chosen.gauge.potentials[:, local], chosen.gauge.offset[local])
+    tables = _edge_tables(part, chosen.states, gauge, local)
+    others = tuple(
+        _other_spectrum(other, chosen, local) for i, other in enumerate(found) if i != number
+    )
+    memory: list[tuple[np.ndarray, np.ndarray]] = []
+
+    def spectrum() -> tuple[np.ndarray, np.ndarray]:
+        if not memory:
+            memory.append(ratios(pair))
+        return memory[0]
+
+    return Segment(
+        indices=indices,
+        law=DoobLaw(pair, tables),
+        beta=part.beta[local],
+        least_energy=gauge.energy,
+        log_root=chosen.log_root[local],
+        bits=part.numbers.bits,
+        states=chosen.states,
+        edge_table=tables,
+        spectrum=spectrum,
+        other_classes=others,
+    )
+
+
+def _restrict(pair: PerronPair, local: np.ndarray) -> PerronPair:
+    if local.size == pair.excess.shape[-1]:
+        return pair
+    reduction = type(pair.reduction)(
+        pair.reduction.rates[..., local], pair.reduction.pivots[:, local], pair.reduction.stationary[:, local]
+    )
+    return PerronPair(
+        pair.excess[local], pair.vector[:, local], pair.chance[..., local], reduction,
+        pair.converged[local], pair.correction[local],
+    )
+
+
+def _edge_tables(
+    part: Assembled, states: np.ndarray, gauge: Gauge, local: np.ndarray
+) -> Callable[[tuple[str, ...]], np.ndarray | None]:
+    energy = handle("energy")
+    pick = np.ix_(states, states)
+    memory: dict[tuple[str, ...], np.ndarray | None] = {}
+
+    def table(key: tuple[str, ...]) -> np.ndarray | None:
+        if key not in memory:
+            full = part.edge_table(key)
+            if full is not None:
+                full = full[pick]
+                full = full[..., local] if full.shape[-1] == part.batch and part.batch > 1 else full
+            if key == (energy,):
+                v = gauge.potentials
+                shift = -gauge.energy + v[:, None] - v[None, :]
+                full = shift if full is None else full + shift
+            memory[key] = full
+        return memory[key]
+
+    return table
+
+
+def _other_spectrum(
+    other: _Class, chosen: _Class, local: np.ndarray
+) -> Callable[[], tuple[np.ndarray, np.ndarray]]:
+    def spectrum() -> tuple[np.ndarray, np.ndarray]:
+        shift = to_double(other.log_eigenvalue - chosen.log_eigenvalue)[local, None]
+        log_modulus, phase = ratios(_restrict(other.pair, local))
+        return np.concatenate([shift, log_modulus + shift], -1), np.concatenate([shift * 0, phase], -1)
+
+    return spectrum
+
+

@@ -1,0 +1,169 @@
+"""Cumulants and correlations of a stationary chain: what every reading is made of."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any, Protocol
+
+import numpy as np
+
+from ..operators.numbers import to_double
+from ..operators.partitions import Key, exp_remainder, sub_keys
+from .perron import PerronPair
+
+__all__ = ["DoobLaw", "EdgeTables", "Law"]
+
+#: Gives the conditional cumulants of named quantities per step, shape (n, n, batch), or None for zero.
+EdgeTables = Callable[[Key], "np.ndarray | None"]
+
+
+class Law(Protocol):
+    """The stationary law of an infinite chain, seen through named quantities.
+
+    A quantity is known by its table per step; its cumulants are per step (per cell).
+    """
+
+    def mean(self, name: str) -> np.ndarray:
+        """Mean per step."""
+
+    def covariance(self, name: str, other: str) -> np.ndarray:
+        """Sum over all distances of the connected correlation, per step."""
+
+    def cumulant(self, key: Key) -> np.ndarray:
+        """Joint cumulant per step of the totals of several quantities."""
+
+    def connected(self, left: np.ndarray, right: np.ndarray, steps: int) -> np.ndarray:
+        """Connected correlation of two step tables, ``steps`` ≥ 1 apart."""
+
+
+class DoobLaw:
+    """The law of a dense transfer matrix, through the chain of Doob.
+
+    Cumulants are mixed derivatives of ln λ when the logarithms of the weights are tilted by
+    ε₁φ₁ + ε₂φ₂ + …. They are found order by order: with g the derivatives of the logarithm
+    of the Perron vector,
+
+        Σ_j P_ij exp(B_ij + g_j − g_i − y) = 1   for every i,
+
+    where at each order only g and y are unknown and one Poisson equation is solved. At
+    first order B + g_j − g_i − y is a martingale difference, so second cumulants come out
+    as sums of its squares, without cancellation.
+
+    Parameters
+    ----------
+    pair : PerronPair
+        Root, vector, chain.
+    tables : EdgeTables
+        Conditional cumulants of the named quantities.
+    """
+
+    def __init__(self, pair: PerronPair, tables: EdgeTables) -> None:
+        self.pair = pair
+        self.tables = tables
+        self._cumulants: dict[Key, np.ndarray] = {}
+        self._centred: dict[Key, np.ndarray | None] = {}
+
+    @property
+    def stationary(self) -> np.ndarray:
+        """Stationary law of the states, shape (n, batch)."""
+        return self.pair.reduction.stationary
+
+    def mean(self, name: str) -> np.ndarray:
+        """Return the mean per step of a quantity."""
+        return self.cumulant((name,))
+
+    def covariance(self, name: str, other: str) -> np.ndarray:
+        """Return Σ_r of the connected correlation of two quantities."""
+        return self.cumulant(tuple(sorted((name, other))))
+
+    def cumulant(self, key: Key) -> np.ndarray:
+        """Return the joint cumulant per step of the quantities named in ``key``, shape (batch,)."""
+        key = tuple(sorted(key))
+        if key not in self._cumulants:
+            for sub in sub_keys(key)[:-1]:
+                self._centre(sub)
+            self._cumulants[key] = self._value(key)
+        return self._cumulants[key]
+
+    def _given(self, key: Key) -> tuple[np.ndarray | None, np.ndarray | None]:
+        return self.tables(key), exp_remainder(self._centred, key)
+
+    def _value(self, key: Key) -> np.ndarray:
+        table, rest = self._given(key)
+        total = self.stationary[0] * 0
+        for part in (table, rest):
+            if part is not None:
+                total = total + (self.stationary * (self.pair.chance * part).sum(axis=1)).sum(axis=0)
+        return total
+
+    def _centre(self, key: Key) -> None:
+        """Solve for the vector's derivative at ``key`` and keep the centred table."""
+        if key in self._centred:
+            return
+        for sub in sub_keys(key)[:-1]:
+            self._centre(sub)
+        table, rest = self._given(key)
+        if table is None and rest is None:
+            self._centred[key] = None
+            self._cumulants[key] = self.stationary[0] * 0
+            return
+        chance = self.pair.chance
+        given = chance * 0 if table is None else np.broadcast_to(table, chance.shape)
+        full = given if rest is None else given + rest
+        source = (chance * full).sum(axis=1)
+        mean = (self.stationary * source).sum(axis=0)
+        slope = self.pair.reduction.poisson(source - mean)
+        centred = self._differences(given, slope)
+        if rest is not None:
+            centred = centred - (chance * rest).sum(axis=1)[:, None]
+        self._centred[key] = centred
+        self._cumulants[key] = mean
+
+    def _differences(self, table: np.ndarray, slope: np.ndarray) -> np.ndarray:
+        """Return Σ_l P_il [(B_ij − B_il) + (g_j − g_l)], formed from the likeliest step of each row."""
+        chance = self.pair.chance
+        best = np.argmax(chance, axis=1)[:, None]
+        reference = np.take_along_axis(table, best, axis=1)
+        onward = np.take_along_axis(np.broadcast_to(slope[None], table.shape), best, axis=1)
+        relative = (table - reference) + (slope[None] - onward)
+        return relative - (chance * relative).sum(axis=1)[:, None]
+
+    def centred_source(self, left: np.ndarray) -> np.ndarray:
+        """Return Σ_i π_i P_ij (X_ij − ⟨X⟩): the deviation that a quantity leaves behind, shape (n, batch)."""
+        flow = self.stationary[:, None] * self.pair.chance
+        return (flow * (left - (flow * left).sum(axis=(0, 1)))).sum(axis=0)
+
+    def conditional(self, right: np.ndarray) -> np.ndarray:
+        """Return Σ_j P_ij Y_ij − ⟨Y⟩: what a quantity is expected to be, given the state before it."""
+        rows = (self.pair.chance * right).sum(axis=1)
+        return rows - (self.stationary * rows).sum(axis=0)
+
+    def connected(self, left: np.ndarray, right: np.ndarray, steps: int) -> np.ndarray:
+        """Return the connected correlation of two step tables, ``steps`` ≥ 1 apart, shape (batch,)."""
+        return self.connected_series(left, right, [steps])[0]
+
+    def connected_series(self, left: np.ndarray, right: np.ndarray, steps: list[int]) -> list[np.ndarray]:
+        """Return connected correlations at several distances ≥ 1 with one pass along the chain.
+
+        The propagated deviation is re-centred at every step: rounding along the stationary
+        direction would not decay.
+        """
+        target = self.conditional(right)
+        wanted = set(steps)
+        row = self.centred_source(left)
+        found: dict[int, np.ndarray] = {}
+        for step in range(1, max(wanted) + 1):
+            if step > 1:
+                row = (row[:, None] * self.pair.chance).sum(axis=0)
+                row = row - self.stationary * row.sum(axis=0)
+            if step in wanted:
+                found[step] = (row * target).sum(axis=0)
+        return [found[step] for step in steps]
+
+    def double_chance(self) -> np.ndarray:
+        """Return the transition probabilities as doubles, batch first: shape (batch, n, n)."""
+        return np.ascontiguousarray(np.moveaxis(to_double(self.pair.chance), -1, 0))
+
+    def bound(self) -> Any:
+        """Return the size of the last correction of the Perron vector, per point."""
+        return self.pair.correction

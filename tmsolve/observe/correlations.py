@@ -1,0 +1,160 @@
+"""Two-point functions, decay lengths and spectra over the segments of a batch."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from ..assemble.matrix import handle
+from ..assemble.window import ChainWindow, place_in
+from ..eigen.spectrum import clusters, leading_modes, modes
+from ..operators.numbers import to_double
+from .segment import Segment
+
+__all__ = ["Level", "connected_correlation", "decay", "levels", "sorted_spectrum"]
+
+#: Amplitudes below this, relative to the product of the two quantities' sizes, count as zero.
+_AMPLITUDE = 1e-11
+
+
+@dataclass(frozen=True)
+class Level:
+    """One eigenvalue of the transfer matrix per cell.
+
+    Attributes
+    ----------
+    log_modulus : float
+        ln |λ|.
+    phase : float
+        Argument in (−π, π].
+    multiplicity : int
+        How many eigenvalues coincide here.
+    label : str
+        Running number, λ₁ first.
+    """
+
+    log_modulus: float
+    phase: float
+    multiplicity: int
+    label: str
+
+    @property
+    def value(self) -> complex:
+        """The eigenvalue itself (may overflow to inf at low temperature)."""
+        modulus = float(np.exp(self.log_modulus)) if self.log_modulus < 709 else float("inf")
+        return complex(modulus * np.cos(self.phase), modulus * np.sin(self.phase) if self.phase else 0.0)
+
+
+def anchors(window: ChainWindow, observable: str) -> list[int]:
+    """Return the cells at which the window's copies of an observable's parts are anchored."""
+    found = {place[1] for term in window.chain.observable(observable) if (place := place_in(window, term))}
+    return sorted(found)
+
+
+def connected_correlation(
+    window: ChainWindow, segment: Segment, a: str, b: str, distances: Sequence[int]
+) -> np.ndarray:
+    """Return ⟨a₀ b_r⟩ − ⟨a⟩⟨b⟩ at distances r in cells, shape (points, distances)."""
+    total = np.zeros((segment.indices.size, len(distances)))
+    for first in anchors(window, a):
+        for second in anchors(window, b):
+            left, right = f"{a}@{first}", f"{b}@{second}"
+            # A part anchored at cell 0 lies in window −first, one at cell r in window r − second.
+            steps = [int(r) - second + first for r in distances]
+            total += _between_windows(segment, left, right, steps)
+    return total
+
+
+def _between_windows(segment: Segment, left: str, right: str, steps: Sequence[int]) -> np.ndarray:
+    names = handle("observable", (), left), handle("observable", (), right)
+    tables = [segment.edge_table((name,)) for name in names]
+    result = np.zeros((segment.indices.size, len(steps)))
+    if tables[0] is None or tables[1] is None:
+        return result
+    for sign, (x, y) in ((1, tables), (-1, tables[::-1])):
+        far = sorted({sign * step for step in steps if sign * step > 0})
+        if far:
+            values = dict(zip(far, segment.law.connected_series(x, y, far), strict=True))
+            for column, step in enumerate(steps):
+                if sign * step > 0:
+                    result[:, column] = segment.double(values[sign * step])
+    if 0 in steps:
+        same = segment.double(_within_window(segment, names, tables[0], tables[1]))
+        for column, step in enumerate(steps):
+            if step == 0:
+                result[:, column] = same
+    return result
+
+
+def _within_window(segment: Segment, names: tuple[str, str], x: Any, y: Any) -> Any:
+    law = segment.law
+    flow = law.stationary[:, None] * law.pair.chance
+    mean_x, mean_y = (flow * x).sum(axis=(0, 1)), (flow * y).sum(axis=(0, 1))
+    inside = segment.edge_table(tuple(sorted(names)))
+    product = (x - mean_x) * (y - mean_y)
+    return (flow * (product if inside is None else product + inside)).sum(axis=(0, 1))
+
+
+def sorted_spectrum(segment: Segment) -> tuple[np.ndarray, np.ndarray]:
+    """Return ln |λ_k/λ₁| and phases of all eigenvalues but λ₁, largest first: (points, m)."""
+    parts = [segment.spectrum(), *(other() for other in segment.other_classes)]
+    log_modulus = np.concatenate([part[0] for part in parts], axis=-1)
+    phase = np.concatenate([part[1] for part in parts], axis=-1)
+    order = np.argsort(-log_modulus, axis=-1, kind="stable")
+    return np.take_along_axis(log_modulus, order, -1), np.take_along_axis(phase, order, -1)
+
+
+def decay(window: ChainWindow, segment: Segment, observable: str | None) -> tuple[np.ndarray, np.ndarray]:
+    """Return ln |λ/λ₁| and wave number of the slowest mode that a quantity shows, per point.
+
+    Without an observable: of the second-largest eigenvalue of the dominant class. −inf and
+    0 when no mode decays slower than at once.
+    """
+    log_modulus, phase = segment.spectrum()
+    if observable is None:
+        if log_modulus.shape[1] == 0:
+            return np.full(segment.indices.shape, -np.inf), np.zeros(segment.indices.shape)
+        return log_modulus[:, 0], np.abs(phase[:, 0])
+    slowest = np.full(segment.indices.shape, -np.inf)
+    waves = np.zeros(segment.indices.shape)
+    if log_modulus.shape[1] == 0:
+        return slowest, waves
+    pairs = _sources(window, segment, observable)
+    chances = segment.law.double_chance()
+    for i in range(segment.indices.size):
+        found = modes(chances[i])
+        carried = [k for s, t in pairs for k in leading_modes(found, s[:, i], t[:, i], _AMPLITUDE)]
+        if carried:
+            k = min(carried)
+            top = found.log_modulus[k] >= found.log_modulus[0] - 1e-9
+            slowest[i] = log_modulus[i, 0] if top else found.log_modulus[k]
+            waves[i] = abs(found.phase[k])
+    return slowest, waves
+
+
+def _sources(window: ChainWindow, segment: Segment, observable: str) -> list[tuple[np.ndarray, np.ndarray]]:
+    pairs = []
+    tables = [segment.edge_table((handle("observable", (), f"{observable}@{c}"),)) for c in anchors(window, observable)]
+    for x in tables:
+        for y in tables:
+            if x is not None and y is not None:
+                source, target = segment.law.centred_source(x), segment.law.conditional(y)
+                pairs.append((_spread(source, segment), _spread(target, segment)))
+    return pairs
+
+
+def _spread(values: Any, segment: Segment) -> np.ndarray:
+    return np.broadcast_to(to_double(values), (len(values), segment.indices.size))
+
+
+def levels(log_root: float, log_modulus: np.ndarray, phase: np.ndarray, count: int | None) -> tuple[Level, ...]:
+    """Return the eigenvalues of one point as levels with multiplicities, λ₁ first."""
+    log_modulus, phase = np.concatenate([[0.0], log_modulus]), np.concatenate([[0.0], phase])
+    found = []
+    for number, group in enumerate(clusters(log_modulus, phase), start=1):
+        first = group[0]
+        found.append(Level(float(log_root + log_modulus[first]), float(phase[first]), len(group), f"λ{number}"))
+    return tuple(found if count is None else found[:count])

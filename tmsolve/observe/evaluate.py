@@ -1,0 +1,97 @@
+"""Evaluating sums of cumulants over the segments of a batch."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from ..assemble.window import ChainWindow, place_in
+from ..operators.numbers import to_double
+from .segment import Segment
+from .series import LEAST_ENERGY, ROOT, Monomial, Series
+
+__all__ = ["Laws", "fits"]
+
+
+def fits(window: ChainWindow, observables: Sequence[str]) -> bool:
+    """Whether observables lie within one window."""
+    return all(
+        place_in(window, term) is not None for name in observables for term in window.chain.observable(name)
+    )
+
+
+class Laws:
+    """The laws of a batch of points, over the smallest window or a wider one.
+
+    Parameters
+    ----------
+    window : ChainWindow
+        The smallest window.
+    size : int
+        Number of points.
+    solve : callable
+        Returns the window widened for some observables, and its segments.
+    """
+
+    def __init__(
+        self,
+        window: ChainWindow,
+        size: int,
+        solve: Callable[[tuple[str, ...]], tuple[ChainWindow, list[Segment]]],
+    ) -> None:
+        self.window = window
+        self.size = size
+        self._solve = solve
+        self._known: dict[tuple[str, ...], tuple[ChainWindow, list[Segment]]] = {}
+
+    def segments(self, observables: Sequence[str] = ()) -> list[Segment]:
+        """Return segments whose window holds these observables."""
+        return self.resolved(observables)[1]
+
+    def resolved(self, observables: Sequence[str] = ()) -> tuple[ChainWindow, list[Segment]]:
+        """Return window and segments for these observables."""
+        wide = tuple(sorted({name for name in observables if not fits(self.window, [name])}))
+        if wide not in self._known:
+            self._known[wide] = self._solve(wide)
+        return self._known[wide]
+
+    def evaluate(self, series: Series) -> np.ndarray:
+        """Return the value of a sum of cumulants at every point, shape (size,)."""
+        terms = series.gauged()
+        names = {name for _, blocks in terms for block in blocks for name in _observables(block)}
+        result = np.zeros(self.size)
+        for segment in self.segments(sorted(names)):
+            total = sum(
+                (_scaled(c, segment.beta, a) * _cumulant(segment, blocks) for (a, blocks), c in terms.items()),
+                start=segment.beta * 0,
+            )
+            result[segment.indices] = to_double(total)
+        return result
+
+    def collect(self, of_segment: Callable[[Segment], Any], observables: Sequence[str] = (), extra: tuple[int, ...] = ()) -> np.ndarray:
+        """Gather a quantity computed per segment into one array (size, *extra)."""
+        result = np.zeros((self.size, *extra))
+        for segment in self.segments(observables):
+            result[segment.indices] = of_segment(segment)
+        return result
+
+
+def _observables(block: str) -> list[str]:
+    kind, name, _ = block.split("|")
+    return [name] if kind == "observable" else []
+
+
+def _scaled(c: Fraction, beta: np.ndarray, power: int) -> Any:
+    # Division keeps the rational coefficient exact in long numbers as well.
+    return beta**power * c.numerator / c.denominator
+
+
+def _cumulant(segment: Segment, blocks: Monomial | tuple[str, ...]) -> Any:
+    if blocks == (ROOT,):
+        return segment.log_root
+    if blocks == (LEAST_ENERGY,):
+        return segment.least_energy
+    return segment.law.cumulant(blocks)

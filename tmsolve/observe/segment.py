@@ -1,0 +1,57 @@
+"""Points of a batch that share one chain of states and one number system."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from ..operators.numbers import to_double
+
+__all__ = ["Segment"]
+
+
+@dataclass(frozen=True, eq=False)
+class Segment:
+    """The law at some points of a batch.
+
+    Attributes
+    ----------
+    indices : ndarray of int
+        Flat positions of these points in the batch.
+    law : Law
+        Cumulants and correlations of the dominant class of states.
+    beta : ndarray
+        Inverse temperature.
+    least_energy : ndarray
+        Least energy per cell e₀ of that class.
+    log_root : ndarray
+        ln λ₁ + β e₀.
+    bits : int
+        Length of the numbers used.
+    states : ndarray of int
+        The class of states, out of all joint states of the cut.
+    edge_table : callable
+        Table per step of a quantity by its handle, on those states.
+    spectrum : callable
+        ln |λ_k/λ₁| and phases, shape (points, m), of the dominant class.
+    other_classes : tuple of callables
+        ln (λ/λ₁) of all eigenvalues of other classes of states, and phases.
+    """
+
+    indices: np.ndarray
+    law: Any
+    beta: np.ndarray
+    least_energy: np.ndarray
+    log_root: np.ndarray
+    bits: int
+    states: np.ndarray
+    edge_table: Callable[[tuple[str, ...]], np.ndarray | None]
+    spectrum: Callable[[], tuple[np.ndarray, np.ndarray]]
+    other_classes: tuple[Callable[[], tuple[np.ndarray, np.ndarray]], ...] = ()
+
+    def double(self, values: Any) -> np.ndarray:
+        """Round to doubles and spread over the points of the segment."""
+        return np.broadcast_to(to_double(values), self.indices.shape)

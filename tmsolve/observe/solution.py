@@ -1,0 +1,265 @@
+"""The solution of an infinite chain at T > 0: what can be asked of it."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+from numbers import Integral
+from typing import Any
+
+import numpy as np
+
+from ..declare import Point
+from ..errors import NotApplicable, ParameterError, SolveError, did_you_mean, listing
+from .correlations import Level, connected_correlation, decay, levels, sorted_spectrum
+from .evaluate import Laws
+from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
+
+__all__ = ["Solution"]
+
+_HIGHEST_ORDER = 6
+
+
+@dataclass(frozen=True, eq=False)
+class Solution:
+    """Thermodynamics, derivatives, correlations and spectrum per unit cell.
+
+    Every quantity has the shape of the batch of points, ``()`` for a single point. k_B = 1;
+    energies in the user's unit. Nothing is computed before it is asked for.
+
+    Attributes
+    ----------
+    point : Point
+        Where the chain was solved.
+    laws : Laws
+        Stationary laws of the batch.
+
+    Examples
+    --------
+    >>> from tmsolve import Chain, bond, ising, solve
+    >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)], observables={"m": lambda s: s})
+    >>> r = solve(chain.at(T=1, J=1))
+    >>> round(float(r.free_energy), 12)                           # −ln 2cosh 1
+    -1.126928011043
+    >>> round(float(r.susceptibility("m")), 12)                   # e² (Curie-like, T = 1)
+    7.389056098931
+    """
+
+    point: Point
+    laws: Laws = field(repr=False)
+
+    @property
+    def shape(self) -> tuple[int, ...]:
+        """Shape of the batch."""
+        return self.point.shape
+
+    def _value(self, quantity: Quantity, names: Sequence[str] = ()) -> np.ndarray:
+        series = series_of(quantity, self.point.chain)
+        for name in names:
+            series = series.derive(name)
+        return self._shaped(self.laws.evaluate(series), f"{quantity}")
+
+    def _shaped(self, flat: np.ndarray, what: str) -> np.ndarray:
+        if np.isnan(flat).any():
+            index = int(np.flatnonzero(np.isnan(flat))[0])
+            raise SolveError(f"{what} could not be computed at {self.point.pick(index)}")
+        return flat.reshape((*self.shape, *flat.shape[1:]))[()]
+
+    @property
+    def free_energy(self) -> np.ndarray:
+        """Free energy f = −T ln λ₁ per cell, in energy units."""
+        return self._value(Quantity("free_energy"))
+
+    @property
+    def internal_energy(self) -> np.ndarray:
+        """Internal energy u = ∂(βf)/∂β per cell at fixed parameters, in energy units."""
+        return self._value(Quantity("internal_energy"))
+
+    @property
+    def entropy(self) -> np.ndarray:
+        """Entropy s = −∂f/∂T per cell, in units of k_B."""
+        return self._value(Quantity("entropy"))
+
+    @property
+    def specific_heat(self) -> np.ndarray:
+        """Specific heat c = ∂u/∂T per cell, in units of k_B."""
+        return self._value(Quantity("specific_heat"))
+
+    def mean(self, a: str) -> np.ndarray:
+        """Mean ⟨a⟩ per cell of an observable.
+
+        Accurate absolutely: where ⟨a⟩ is a difference of nearly equal parts, its relative
+        accuracy is less.
+        """
+        return self._value(self._quantity("mean", a))
+
+    def susceptibility(self, a: str, b: str | None = None) -> np.ndarray:
+        """Susceptibility ∂⟨a⟩/∂φ for an added energy −φ·b, = (1/T) Σ_r of the connected ⟨a₀b_r⟩."""
+        return self._value(self._quantity("susceptibility", a, b))
+
+    def temperature_susceptibility(self, a: str, b: str | None = None) -> np.ndarray:
+        """T times the susceptibility: the sum over r of the connected correlation."""
+        return self._value(self._quantity("temperature_susceptibility", a, b))
+
+    def _quantity(self, name: str, *observables: str | None) -> Quantity:
+        wanted = tuple(a for a in observables if a is not None)
+        for a in wanted:
+            self.point.chain.observable(a)
+        return Quantity(name, wanted)
+
+    def derivative(self, *names: str, of: str = "free_energy") -> np.ndarray:
+        """Exact derivative by parameters and ``"T"``, of the free energy or another quantity.
+
+        Parameters
+        ----------
+        *names : str
+            Parameter names, repeated for higher orders; ``"T"`` for the temperature.
+        of : str
+            A quantity that is itself a derivative of f, such as ``"specific_heat"`` or
+            ``"susceptibility(m)"``.
+
+        Raises
+        ------
+        ParameterError
+            Unknown name or quantity.
+        NotApplicable
+            A quantity that is no derivative of the free energy, or too high an order.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, solve
+        >>> r = solve(Chain(ising(), [bond(lambda s, t, J: -J*s*t)]).at(T=1, J=1))
+        >>> round(float(r.derivative("J")), 12)                   # −tanh 1
+        -0.761594155956
+        """
+        chain = self.point.chain
+        known = (*chain.parameters, "T")
+        for name in names:
+            if name not in known:
+                raise ParameterError(
+                    f"no parameter {name!r}; this chain has {listing(chain.parameters)} and T.{did_you_mean(str(name), known)}"
+                )
+        if len(names) > _HIGHEST_ORDER:
+            raise NotApplicable(f"derivatives go to order {_HIGHEST_ORDER}, got {len(names)}")
+        quantity = parse_quantity(of, chain)
+        if quantity.name not in DIFFERENTIABLE:
+            raise NotApplicable(f"{quantity} is not a derivative of the free energy; choose of= from {listing(DIFFERENTIABLE)}")
+        return self._value(quantity, names)
+
+    def correlation(self, a: str, b: str, distances: Any, connected: bool = True) -> np.ndarray:
+        """Two-point function ⟨a₀ b_r⟩ at distances r in cells, shape (*batch, distances).
+
+        Parameters
+        ----------
+        a, b : str
+            Observables, summed over the cell.
+        distances : int or sequence of int
+            Cells from a to b; negative ones lie to the left.
+        connected : bool
+            Whether ⟨a⟩⟨b⟩ is subtracted.
+        """
+        wanted = _distances(distances)
+        chain = self.point.chain
+        chain.observable(a), chain.observable(b)
+        window, _ = self.laws.resolved((a, b))
+        values = self.laws.collect(
+            lambda segment: connected_correlation(window, segment, a, b, wanted), (a, b), (len(wanted),)
+        )
+        if not connected:
+            means = self.mean(a) * self.mean(b)
+            values = values + np.reshape(means, (-1, 1))
+        shaped = self._shaped(values, f"correlation of {a} and {b}")
+        return shaped[..., 0] if np.ndim(distances) == 0 else shaped
+
+    def correlation_length(self, a: str | None = None) -> np.ndarray:
+        """Decay length ξ in cells: of the second eigenvalue, or of the slowest mode that ``a`` shows.
+
+        0 where nothing decays slower than at once; inf where two eigenvalues coincide in
+        modulus.
+        """
+        return self._lengths(self._decay(a)[0])
+
+    def wave_number(self, a: str | None = None) -> np.ndarray:
+        """Wave number in [0, π] per cell of the same mode: 0 monotonic, π alternating."""
+        return self._shaped(self._decay(a)[1], "wave number")
+
+    def _decay(self, a: str | None) -> tuple[np.ndarray, np.ndarray]:
+        names = () if a is None else (a,)
+        for name in names:
+            self.point.chain.observable(name)
+        window, segments = self.laws.resolved(names)
+        modulus, wave = np.empty(self.point.size), np.empty(self.point.size)
+        for segment in segments:
+            modulus[segment.indices], wave[segment.indices] = decay(window, segment, a)
+        return modulus, wave
+
+    def _lengths(self, log_modulus: np.ndarray) -> np.ndarray:
+        with np.errstate(divide="ignore"):
+            lengths = np.where(log_modulus == -np.inf, 0.0, -1.0 / np.minimum(log_modulus, -0.0))
+        return self._shaped(np.where(log_modulus >= 0, np.inf, lengths), "correlation length")
+
+    def gaps(self, k: int) -> np.ndarray:
+        """Gaps ln λ₁/|λ_i| of the next k eigenvalues, counted with multiplicity, shape (*batch, k).
+
+        inf where the matrix has no further eigenvalue or it is 0.
+        """
+        _positive("k", k)
+        result = np.full((self.point.size, k), np.inf)
+        for segment in self.laws.segments():
+            log_modulus = sorted_spectrum(segment)[0][:, :k]
+            result[segment.indices, : log_modulus.shape[1]] = np.maximum(-log_modulus, 0.0)
+        return self._shaped(result, "gaps")
+
+    def spectrum(self, k: int | None = None) -> tuple[Level, ...]:
+        """Eigenvalues of the transfer matrix of a single point, λ₁ first, with multiplicities.
+
+        Raises
+        ------
+        NotApplicable
+            For a batch; take one point with ``point.pick(i)``, or `gaps` for all.
+        """
+        if self.shape != ():
+            raise NotApplicable(
+                f"levels are told apart point by point, and this is a batch of shape {self.shape}; "
+                "solve(point.pick(i)).spectrum(), or gaps(k) for the whole batch"
+            )
+        if k is not None:
+            _positive("k", k)
+        segment = self.laws.segments()[0]
+        log_modulus, phase = sorted_spectrum(segment)
+        root = -float(self.free_energy) / float(self.point.number("T"))
+        return levels(root, log_modulus[0], phase[0], k)
+
+    @property
+    def log_eigenvalue(self) -> np.ndarray:
+        """ln λ₁ = −f/T."""
+        return np.asarray(-self.free_energy / self.point.T)[()]
+
+    @property
+    def diagnostics(self) -> Mapping[str, Any]:
+        """How the numbers were obtained: matrix size, length of numbers per point, last correction."""
+        window, segments = self.laws.resolved()
+        bits = np.full(self.point.size, 53)
+        correction = np.zeros(self.point.size)
+        for segment in segments:
+            bits[segment.indices] = segment.bits
+            correction[segment.indices] = segment.double(segment.law.bound())
+        return {
+            "matrix": window.shape,
+            "nonzeros": window.nonzeros,
+            "interior": len(window.interior),
+            "bits": bits.reshape(self.shape)[()],
+            "correction": correction.reshape(self.shape)[()],
+        }
+
+
+def _distances(distances: Any) -> list[int]:
+    wanted = np.atleast_1d(np.asarray(distances))
+    if wanted.ndim != 1 or wanted.dtype.kind not in "iu" or not wanted.size:
+        raise ParameterError(f"distances are whole numbers of cells, got {distances!r}")
+    return [int(r) for r in wanted]
+
+
+def _positive(name: str, value: Any) -> None:
+    if isinstance(value, bool) or not isinstance(value, Integral) or value < 1:
+        raise ParameterError(f"{name} must be a whole number >= 1, got {value!r}")
