@@ -14,7 +14,7 @@ from ..operators.algebras import LogSum, LogTable
 from ..operators.numbers import DOUBLE, Numbers
 from ..operators.partitions import Key, sub_keys
 from ..tabulate.tables import SiteTables
-from .window import ChainWindow, Degeneracy, Free, place_in
+from .window import ChainWindow, Degeneracy, SiteWeights, place_in
 
 __all__ = ["Assembled", "Gauge", "handle"]
 
@@ -83,12 +83,13 @@ class Assembled:
     def _bare(self) -> list[LogTable]:
         return [self.local_table(factor.source) for factor in self.window.factors]
 
-    def local_table(self, source: Term | Degeneracy | Free) -> LogTable:
+    def local_table(self, source: Term | Degeneracy | SiteWeights) -> LogTable:
         """Return the weights of one factor as a table over its sites."""
         zero, infinite = self.numbers.scalar(0), self.numbers.scalar("inf")
-        if isinstance(source, Free):
-            ones = np.full((source.size, 1), zero)
-            return LogTable(ones, ones)
+        if isinstance(source, SiteWeights):
+            with np.errstate(divide="ignore"):
+                log = self.numbers.log(self.numbers.array(np.array(source.weights, dtype=object)))[:, None]
+            return LogTable(np.full(log.shape, zero), log)
         if isinstance(source, Degeneracy):
             log = self.sites.degeneracy(source.states)
             return LogTable(log * 0, log)
@@ -177,7 +178,8 @@ class Assembled:
             wanted, _, anchor = observable.partition("@")
             for term in self.chain.observable(wanted):
                 place = place_in(self.window, term)
-                assert place is not None, "the window is built wide enough for its observables"
+                if place is None:  # beyond the end of an open chain; windows hold their observables otherwise
+                    continue
                 table = self.sites.table(term, key)
                 if table is not None and anchor in ("", str(place[1])):
                     found.append((None, place[0], table))

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from typing import Any
 from weakref import WeakKeyDictionary
 
 from ..declare import Chain, StateSet, Term
@@ -12,7 +13,7 @@ from ..operators.elimination import elimination_order
 from ..operators.window import Factor, Window
 from .cut import Cut, smallest_cut
 
-__all__ = ["ChainWindow", "Degeneracy", "Free", "build_window", "place_in", "untouched"]
+__all__ = ["ChainWindow", "Degeneracy", "SiteWeights", "build_window", "place_in", "untouched"]
 
 Site = tuple[str, int]
 
@@ -28,10 +29,16 @@ class Degeneracy:
 
 
 @dataclass(frozen=True)
-class Free:
-    """Source of a factor that is 1 in every state of a site that no term touches."""
+class SiteWeights:
+    """Source of a factor that weighs the states of one site: an end of a chain, or a site no term touches.
 
-    size: int
+    Attributes
+    ----------
+    weights : tuple of numbers
+        One per state, ≥ 0; 0 forbids the state.
+    """
+
+    weights: tuple[Any, ...]
 
 
 @dataclass(frozen=True, eq=False)
@@ -116,7 +123,7 @@ def _copy(term: Term, cut: Cut) -> Factor:
 def untouched(factors: Iterable[Factor], sites: Iterable[Site], sizes: Mapping[str, int]) -> list[Factor]:
     """Return unit factors for sites without any, so that summing them out counts their states."""
     touched = {site for factor in factors for site in factor.sites}
-    return [Factor(Free(sizes[site[0]]), (site,)) for site in dict.fromkeys(sites) if site not in touched]
+    return [Factor(SiteWeights((1,) * sizes[site[0]]), (site,)) for site in dict.fromkeys(sites) if site not in touched]
 
 
 def place_in(window: ChainWindow, term: Term) -> tuple[tuple[Site, ...], int] | None:

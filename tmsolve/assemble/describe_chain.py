@@ -1,0 +1,189 @@
+"""A chain in words and as a table: sites, terms, cut, matrix, symmetries."""
+
+from __future__ import annotations
+
+import inspect
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from ..declare import Chain, Point, Term
+from ..errors import DeclarationError, listing
+from ..tabulate.affine import affine_table
+from .trivial_symmetries import trivial_symmetries
+from .window import build_window
+
+__all__ = ["Description", "describe"]
+
+
+@dataclass(frozen=True)
+class Description:
+    """What `describe` found; prints as text.
+
+    Attributes
+    ----------
+    name : str
+        Title of the chain.
+    sites : tuple of (kind, number of states, labels)
+    terms : tuple of (role, text, places, parameters)
+    parameters : tuple of (name, value or None)
+        Fixed or default values where there are any.
+    observables : tuple of (name, places)
+    cut, interior : tuple of str
+        Sites of the left cut, and sites summed out, as ``kind[cell]``.
+    matrix : (int, int)
+        Rows and columns of the transfer matrix.
+    nonzeros : int
+        Entries that the cut allows.
+    range : int
+        Cells that the longest term spans.
+    symmetries : tuple of str
+        State permutations that leave every term unchanged.
+    """
+
+    name: str
+    sites: tuple[tuple[str, int, tuple[str, ...]], ...]
+    terms: tuple[tuple[str, str, str, str], ...]
+    parameters: tuple[tuple[str, str], ...]
+    observables: tuple[tuple[str, str], ...]
+    cut: tuple[str, ...]
+    interior: tuple[str, ...]
+    matrix: tuple[int, int]
+    nonzeros: int
+    range: int
+    symmetries: tuple[str, ...]
+
+    def __str__(self) -> str:
+        rows, columns = self.matrix
+        density = f"{self.nonzeros} non-zeros" + (" (full)" if self.nonzeros == rows * columns else "")
+        cell = ", ".join(f"{kind} with {count} states ({_short(labels)})" for kind, count, labels in self.sites)
+        lines = [
+            f"{self.name}: unit cell of {len(self.sites)} site{'s' * (len(self.sites) > 1)}: {cell}",
+            f"The longest term spans {self.range} cell{'s' * (self.range != 1)}; "
+            f"the smallest cut is {listing(self.cut)}"
+            + (f"; summed out: {listing(self.interior)}" if self.interior else ""),
+            f"Transfer matrix {rows}×{columns} per cell, {density}",
+            "",
+            *_table(("role", "function", "places", "parameters"), self.terms),
+            "",
+            *_table(("parameter", "value"), self.parameters),
+            "",
+            *_table(("observable", "places"), self.observables),
+            "",
+            f"Symmetries of every term: {listing(self.symmetries)}",
+        ]
+        return "\n".join(lines)
+
+
+def _short(labels: Sequence[str]) -> str:
+    return ", ".join(labels) if len(labels) <= 8 else ", ".join([*labels[:3], "…", labels[-1]])
+
+
+def _table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> list[str]:
+    if not rows:
+        return [f"no {head[0]}s"]
+    widths = [max(len(row[i]) for row in (head, *rows)) for i in range(len(head))]
+    lines = ["  ".join(text.ljust(width) for text, width in zip(row, widths, strict=True)).rstrip() for row in (head, *rows)]
+    return [lines[0], "  ".join("─" * width for width in widths), *lines[1:]]
+
+
+def describe(chain: Chain | Point) -> Description:
+    """Say what a chain is and what will be computed for it; computes no physics.
+
+    Parameters
+    ----------
+    chain : Chain or Point
+
+    Examples
+    --------
+    >>> from tmsolve import Chain, bond, describe, spins
+    >>> text = str(describe(Chain(spins(1), [bond(lambda s, t, J: -J*s*t), bond(lambda s, t, K: -K*s*t, shift=2)])))
+    >>> "Transfer matrix 9×9 per cell, 27 non-zeros" in text
+    True
+    """
+    if isinstance(chain, Point):
+        chain = chain.chain
+    if not isinstance(chain, Chain):
+        raise DeclarationError(f"describe takes a chain, got {chain!r}")
+    window = build_window(chain)
+    return Description(
+        name=chain.name,
+        sites=tuple((kind, len(states), states.labels) for kind, states in chain.cell.items()),
+        terms=tuple(_term_row(term, chain) for term in chain.terms),
+        parameters=tuple((name, _value(chain, name)) for name in chain.parameters),
+        observables=tuple((name, "; ".join(_places(t) for t in parts)) for name, parts in chain.observables.items()),
+        cut=tuple(_site(site) for site in window.left),
+        interior=tuple(_site(site) for site in window.interior),
+        matrix=window.shape,
+        nonzeros=_count_nonzeros(chain),
+        range=max((term.reach for term in chain.terms), default=0),
+        symmetries=tuple(trivial_symmetries(chain)),
+    )
+
+
+def _site(site: Any) -> str:
+    kind, cell = site
+    return f"{kind}[n]" if cell == 0 else f"{kind}[n{cell:+d}]"
+
+
+def _places(term: Term) -> str:
+    return ", ".join(_site(place) for place in term.places)
+
+
+def _term_row(term: Term, chain: Chain) -> tuple[str, str, str, str]:
+    affine = term.role == "energy" and affine_table(term, [chain.cell[kind] for kind, _ in term.places if kind]) is not None
+    parameters = ", ".join(term.parameters) or "–"
+    return term.role + (" (linear)" if affine else ""), _source(term), _places(term), parameters
+
+
+def _source(term: Term) -> str:
+    """Return the text of a one-line function, or its name."""
+    try:
+        text = inspect.getsource(term.function).strip()
+    except (OSError, TypeError):
+        return term.name
+    if term.function.__name__ != "<lambda>" or "\n" in text or text.count("lambda") != 1:
+        return term.name
+    return _lambda_text(text[text.index("lambda") :])
+
+
+def _lambda_text(text: str) -> str:
+    """Cut a lambda out of the line it stands on: up to the bracket or comma that ends it."""
+    depth = 0
+    colon = text.index(":")
+    for i, letter in enumerate(text):
+        if letter in "([{":
+            depth += 1
+        elif letter in ")]}":
+            depth -= 1
+        if depth < 0 or (letter == "," and depth == 0 and i > colon):
+            return text[:i].strip()
+    return text.strip()
+
+
+def _value(chain: Chain, name: str) -> str:
+    if name in chain.fixed:
+        return f"{float(chain.fixed[name]):g} (fixed)"
+    return f"{float(chain.defaults[name]):g} (default)" if name in chain.defaults else "free"
+
+
+def _count_nonzeros(chain: Chain) -> int:
+    """Count entries that neither the cut nor an outright forbidden configuration removes."""
+    window = build_window(chain)
+    shape = [window.sizes[site] for site in window.sites]
+    if window.interior:
+        return window.nonzeros
+    allowed = np.ones(shape, dtype=bool)
+    for factor in window.factors:
+        term = factor.source
+        if isinstance(term, Term) and term.role == "energy":
+            affine = affine_table(term, [chain.cell[kind] for kind, _ in term.places if kind])
+            if affine is not None:
+                finite = np.array([c != float("inf") for c in affine.constant.ravel()]).reshape(affine.constant.shape)
+                axes = [window.sites.index(site) for site in factor.sites]
+                allowed &= np.expand_dims(
+                    finite.transpose(np.argsort(axes)), [i for i in range(len(shape)) if i not in axes]
+                )
+    return int(allowed.sum())
