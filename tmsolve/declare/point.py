@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import dataclass
 from fractions import Fraction
@@ -120,12 +121,13 @@ def bind(chain: Chain, values: Mapping[str, Any]) -> Point:
 
 def check_temperature(value: Value) -> None:
     """Refuse temperatures that are negative or not finite."""
-    import math
-
-    numbers = [float(value)] if isinstance(value, (Fraction, float)) else value.ravel().tolist()
-    for number in numbers:
-        if not math.isfinite(number) or number < 0:
-            raise ParameterError(f"T must be a finite temperature >= 0 in energy units, got {number!r}")
+    if isinstance(value, (Fraction, float)):
+        wrong = None if math.isfinite(value) and value >= 0 else float(value)
+    else:
+        bad = ~((value >= 0) & (value < math.inf))
+        wrong = float(value[bad].flat[0]) if bad.any() else None
+    if wrong is not None:
+        raise ParameterError(f"T must be a finite temperature >= 0 in energy units, got {wrong!r}")
 
 
 def _shape(bound: Mapping[str, Value]) -> tuple[int, ...]:

@@ -52,16 +52,11 @@ def ratios(pair: PerronPair) -> tuple[np.ndarray, np.ndarray]:
     log_modulus, phase : ndarray, shape (batch, n − 1)
         −inf for an eigenvalue 0.
     """
-    chance = np.ascontiguousarray(np.moveaxis(to_double(pair.chance), -1, 0))
-    law = to_double(pair.reduction.stationary).T
-    n = chance.shape[-1]
+    chance = to_double(pair.chance)
+    n = len(chance)
     if n == 1:
-        return np.empty((len(chance), 0)), np.empty((len(chance), 0))
-    # Cast at once: NumPy returns real or complex arrays depending on version and values.
-    values = np.linalg.eigvals(chance - law[:, None, :]).astype(np.complex128)
-    # The deflated matrix has the Perron root moved to 0; drop the smallest eigenvalue in its place.
-    order = np.argsort(-np.abs(values), axis=-1, kind="stable")[:, : n - 1]
-    values = np.take_along_axis(values, order, axis=-1)
+        return np.empty((chance.shape[-1], 0)), np.empty((chance.shape[-1], 0))
+    values = _few(chance) if n <= 3 else _lapack(chance, to_double(pair.reduction.stationary))
     with np.errstate(divide="ignore"):
         log_modulus = np.log(np.abs(values))
     log_modulus[np.abs(values) < 1e-14 * n] = -np.inf
@@ -69,6 +64,29 @@ def ratios(pair: PerronPair) -> tuple[np.ndarray, np.ndarray]:
     phase[np.abs(phase) < 1e-9] = 0.0
     _refine(pair, log_modulus, phase)
     return log_modulus, phase
+
+
+def _few(chance: np.ndarray) -> np.ndarray:
+    """Solve the one or two remaining eigenvalues of 2×2 and 3×3 matrices directly."""
+    if len(chance) == 2:
+        return (1 - chance[0, 1] - chance[1, 0]).astype(np.complex128)[:, None]
+    p = chance
+    half = (p[0, 0] + p[1, 1] + p[2, 2] - 1) / 2
+    minors = p[0, 0] * p[1, 1] - p[0, 1] * p[1, 0] + p[0, 0] * p[2, 2] - p[0, 2] * p[2, 0]
+    product = minors + p[1, 1] * p[2, 2] - p[1, 2] * p[2, 1] - 2 * half
+    root = np.sqrt((half * half - product).astype(np.complex128))
+    larger = half + np.where(half < 0, -root, root)
+    safe = np.where(larger == 0, 1, larger)
+    return np.stack([larger, np.where(larger == 0, 0, product / safe)], axis=-1)
+
+
+def _lapack(chance: np.ndarray, law: np.ndarray) -> np.ndarray:
+    deflated = np.ascontiguousarray(np.moveaxis(chance - law[None], -1, 0))
+    # Cast at once: NumPy returns real or complex arrays depending on version and values.
+    values = np.linalg.eigvals(deflated).astype(np.complex128)
+    # The deflated matrix has the Perron root moved to 0; drop the smallest eigenvalue in its place.
+    order = np.argsort(-np.abs(values), axis=-1, kind="stable")[:, :-1]
+    return np.take_along_axis(values, order, axis=-1)
 
 
 def _refine(pair: PerronPair, log_modulus: np.ndarray, phase: np.ndarray) -> None:
