@@ -1,0 +1,1 @@
+"""Closed forms: what a transfer matrix says about itself when its entries stay symbols."""

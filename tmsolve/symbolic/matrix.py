@@ -1,0 +1,156 @@
+"""The transfer matrix of a chain with polynomials in Boltzmann symbols as entries."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from functools import cached_property
+from typing import Any
+
+import numpy as np
+
+from ..assemble.window import ChainWindow, Degeneracy, build_window, place_in
+from ..declare.chain import Chain
+from ..declare.terms import Term
+from ..operators.elimination import ArrayAlgebra
+from ..tabulate.symbolic import beta, parameter_symbols, symbolic_table
+from .alphabet import Alphabet, Laurent, Scale
+from .boltzmann import Terms, boltzmann_terms, polynomial_terms
+from .jet import Jet
+from .permutations import Permutation, numbered, verified
+
+__all__ = ["SymbolicMatrix", "symbolic_matrix", "tilted_matrix"]
+
+
+@dataclass(frozen=True, eq=False)
+class SymbolicMatrix:
+    """A square matrix of polynomials times a common monomial.
+
+    Attributes
+    ----------
+    window : ChainWindow
+        The cut it belongs to, whose left states are its basis.
+    alphabet : Alphabet
+        What the symbols of the polynomials stand for.
+    entries : ndarray of polynomials or jets, shape (n, n)
+        The matrix without its scale.
+    scale : tuple of int
+        Exponents of the monomial that multiplies every entry.
+    """
+
+    window: ChainWindow
+    alphabet: Alphabet
+    entries: np.ndarray
+    scale: Scale
+
+    @property
+    def size(self) -> int:
+        """Number of rows."""
+        return len(self.entries)
+
+    def laurent(self, element: Any, power: int = 1) -> Laurent:
+        """Return a polynomial of degree ``power`` in the entries as the sum of exponentials it stands for."""
+        return self.alphabet.laurent(element, [power * s for s in self.scale])
+
+    @cached_property
+    def permutations(self) -> list[Permutation]:
+        """Obvious permutations of the basis that leave the matrix unchanged."""
+        left = self.window.left
+        return verified(numbered(self.entries), left, [self.window.sizes[site] for site in left])
+
+
+def symbolic_matrix(chain: Chain) -> SymbolicMatrix:
+    """Assemble the transfer matrix of a chain over its smallest cut."""
+    window = build_window(chain)
+    tables = _factor_tables(chain, window)
+    alphabet = Alphabet.of(terms for table in tables for terms in table.ravel())
+    return _reduce(window, alphabet, tables, [], lambda element: element)
+
+
+def tilted_matrix(chain: Chain, first: str, second: str | None = None) -> SymbolicMatrix:
+    """Assemble the transfer matrix with each weight multiplied by exp(φ a) exp(ψ b), to first order in φ and ψ.
+
+    Parameters
+    ----------
+    chain : Chain
+        Its observables name what the sources couple to.
+    first, second : str
+        The observables a and b; without ``second`` there is no ψ.
+
+    Returns
+    -------
+    SymbolicMatrix
+        Entries are `Jet` objects.
+    """
+    names = [first] if second is None else [first, second]
+    window = build_window(chain, names)
+    tables = _factor_tables(chain, window)
+    symbols = parameter_symbols(chain)
+    sources = []
+    for order, name in enumerate(names):
+        for term in chain.observable(name):
+            place = place_in(window, term)
+            assert place is not None, "the window is built wide enough for its observables"
+            sources.append((order, place[0], _each(symbolic_table(chain, term, symbols), polynomial_terms)))
+    everything = [terms for table in tables for terms in table.ravel()]
+    everything += [terms for _, _, table in sources for terms in table.ravel()]
+    return _reduce(window, Alphabet.of(everything), tables, sources, Jet)
+
+
+def _factor_tables(chain: Chain, window: ChainWindow) -> list[np.ndarray]:
+    """Return the weight of every factor at every combination of its states."""
+    symbols = parameter_symbols(chain)
+    inverse = beta() if symbols["T"].is_Pow else 1 / symbols["T"]
+    known: dict[Term, np.ndarray] = {}
+    tables = []
+    for factor in window.factors:
+        source = factor.source
+        if isinstance(source, Degeneracy):
+            tables.append(_each(np.array(source.states.weights, dtype=object), _constant))
+            continue
+        if source not in known:
+            weigh = polynomial_terms if source.role == "weight" else lambda energy: boltzmann_terms(energy, inverse)
+            known[source] = _each(symbolic_table(chain, source, symbols), weigh)
+        tables.append(known[source])
+    return tables
+
+
+def _constant(value: Fraction) -> Terms:
+    return {frozenset(): value}
+
+
+def _each(table: np.ndarray, convert: Callable[[Any], Any]) -> np.ndarray:
+    result = np.empty(table.shape, dtype=object)
+    for index in np.ndindex(table.shape):
+        result[index] = convert(table[index])
+    return result
+
+
+def _reduce(
+    window: ChainWindow,
+    alphabet: Alphabet,
+    tables: Sequence[np.ndarray],
+    sources: Sequence[tuple[int, Any, np.ndarray]],
+    wrap: Callable[[Any], Any],
+) -> SymbolicMatrix:
+    """Turn tables into ring elements, sum out the interior, and spread the result into a matrix."""
+    total = [0] * alphabet.width
+    elements = []
+    for table in tables:
+        scale = alphabet.scale(table.ravel())
+        total = [a + b for a, b in zip(total, scale, strict=True)]
+        elements.append(_each(table, lambda terms, scale=scale: wrap(alphabet.element(terms, scale))))
+    extra = []
+    one: Terms = {frozenset(): Fraction(1)}
+    for order, sites, table in sources:
+        scale = alphabet.scale([one, *table.ravel()])
+        total = [a + b for a, b in zip(total, scale, strict=True)]
+        unit = alphabet.element(one, scale)
+        tilt = _each(table, lambda t, s=scale, u=unit, o=order: Jet.source(u, alphabet.element(t, s), o))
+        extra.append((sites, tilt))
+    reduced = window.reduce(ArrayAlgebra(), elements, extra)
+    shape = [window.sizes[site] for site in window.sites]
+    zero = wrap(alphabet.ring.zero)
+    matrix = window.matrix(np.broadcast_to(reduced, shape), zero)
+    return SymbolicMatrix(window, alphabet, matrix, tuple(total))

@@ -1,0 +1,145 @@
+"""Characteristic polynomials over Boltzmann symbols, and their factors."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from typing import Any
+
+import numpy as np
+
+__all__ = ["Coefficients", "berkowitz", "characteristic", "factors", "power_sums"]
+
+#: Coefficients of a monic polynomial in λ, highest power first: (1, c₁, …, cₙ).
+Coefficients = tuple[Any, ...]
+
+#: Largest number of terms of a polynomial that is handed to a full factorisation.
+_FACTORABLE_TERMS = 4000
+
+
+def characteristic(matrix: np.ndarray, ring: Any) -> Coefficients:
+    """Return det(λ − M) of a matrix of polynomials.
+
+    Examples
+    --------
+    >>> from sympy import QQ, ring
+    >>> R, y = ring("y", QQ)
+    >>> characteristic(np.array([[y, 1], [1, y]], dtype=object) * R.one, R)
+    (1, -2*y, y**2 - 1)
+    """
+    from sympy.polys.matrices import DomainMatrix
+
+    n = len(matrix)
+    if n == 1:
+        return (ring.one, -matrix[0, 0])
+    rows = [[ring(entry) for entry in row] for row in matrix]
+    return tuple(DomainMatrix(rows, (n, n), ring.to_domain()).charpoly())
+
+
+def berkowitz(matrix: np.ndarray, one: Any) -> Coefficients:
+    """Return det(λ − M) by products and sums alone (Samuelson and Berkowitz).
+
+    The entries need + − ×, so that truncated series in a source can be entries too.
+
+    References
+    ----------
+    .. [1] S. J. Berkowitz, Inf. Process. Lett. 18, 147 (1984).
+    """
+    zero = one - one
+    vector = [one]
+    for k in range(len(matrix)):
+        # The leading (k+1)-square block, bordered: toeplitz[i] are the entries of its Toeplitz factor.
+        row, column, inner = matrix[k, :k], matrix[:k, k], matrix[:k, :k]
+        toeplitz = [one, zero - matrix[k, k]]
+        for _ in range(k):
+            toeplitz.append(zero - _dot(row, column, zero))
+            column = np.array([_dot(line, column, zero) for line in inner], dtype=object)
+        vector = [
+            _dot([toeplitz[i - j] for j in range(min(i, k) + 1)], vector[: min(i, k) + 1], zero) for i in range(k + 2)
+        ]
+    return tuple(vector)
+
+
+def _dot(a: Any, b: Any, zero: Any) -> Any:
+    return sum((x * y for x, y in zip(a, b, strict=True)), zero)
+
+
+def factors(coefficients: Coefficients, ring: Any) -> list[tuple[Coefficients, int]]:
+    """Return the irreducible monic factors of a polynomial in λ with their multiplicities.
+
+    A polynomial that is irreducible at one choice of numbers for the symbols is irreducible;
+    that settles most cases before the factorisation in many variables is asked.
+    """
+    degree = len(coefficients) - 1
+    zeros = next(k for k, c in enumerate(reversed(coefficients)) if c)
+    found = [((ring.one, ring.zero), zeros)] if zeros else []
+    rest = coefficients[: degree + 1 - zeros]
+    if len(rest) == 1:
+        return found
+    if len(rest) == 2 or _irreducible_somewhere(rest, ring):
+        return [*found, (rest, 1)]
+    if sum(len(c) for c in rest) > _FACTORABLE_TERMS:
+        return [*found, (rest, 1)]
+    return found + _factor_list(rest, ring)
+
+
+def _irreducible_somewhere(coefficients: Coefficients, ring: Any, attempts: int = 3) -> bool:
+    import sympy as sp
+
+    x = sp.Symbol("x")
+    for k in range(attempts):
+        point = [(i, ring.domain(3 + 2 * i + 7 * k)) for i in range(ring.ngens)]
+        values = [_evaluate(c, point) for c in coefficients]
+        polynomial = sp.Poly(values, x, domain=sp.QQ)
+        if polynomial.is_irreducible:
+            return True
+    return False
+
+
+def _evaluate(element: Any, point: Sequence[tuple[int, Any]]) -> Any:
+    total = element.ring.domain.zero
+    for powers, c in element.terms():
+        for i, value in point:
+            c = c * value ** powers[i]
+        total = total + c
+    return total
+
+
+def _factor_list(coefficients: Coefficients, ring: Any) -> list[tuple[Coefficients, int]]:
+    import sympy as sp
+
+    bigger = ring.clone(symbols=(sp.Symbol("lambda"), *ring.symbols))
+    degree = len(coefficients) - 1
+    content = {
+        (degree - k, *powers): c for k, element in enumerate(coefficients) for powers, c in element.terms()
+    }
+    _, found = bigger.from_dict(content).factor_list()
+    return [(_monic(factor, ring), multiplicity) for factor, multiplicity in found]
+
+
+def _monic(factor: Any, ring: Any) -> Coefficients:
+    degree = max(powers[0] for powers, _ in factor.terms())
+    parts: list[dict] = [{} for _ in range(degree + 1)]
+    for powers, c in factor.terms():
+        parts[degree - powers[0]][powers[1:]] = c
+    leading = ring.from_dict(parts[0])
+    # A factor of a monic polynomial has a constant leading coefficient.
+    unit = leading.coeff(1)
+    return tuple(ring.from_dict({powers: c / unit for powers, c in part.items()}) for part in parts)
+
+
+def power_sums(coefficients: Coefficients, count: int, zero: Any) -> list[Any]:
+    """Return Σ λᵏ over all roots for k = 1 … count (Newton's identities).
+
+    Examples
+    --------
+    >>> power_sums((1, -3, 2), 3, 0)
+    [3, 5, 9]
+    """
+    n = len(coefficients) - 1
+    sums: list[Any] = []
+    for k in range(1, count + 1):
+        total = -coefficients[k] * k if k <= n else zero
+        for j in range(1, min(k - 1, n) + 1):
+            total = total - coefficients[j] * sums[k - 1 - j]
+        sums.append(total)
+    return sums

@@ -1,0 +1,233 @@
+"""Writing polynomials in Boltzmann factors the way a person would.
+
+The same sum can be written in exponentials, with hyperbolic functions, as a product, or
+collected by one of its exponentials. Each way is drafted by rules, and the shortest is kept;
+nothing is simplified by search, so that long results cost little.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable
+from fractions import Fraction
+from typing import Any
+
+from .alphabet import Alphabet, Laurent
+from .formula import Draft, atom, call, number, power, product, total
+
+__all__ = ["Vector", "Writer", "shifted", "times"]
+
+#: Longer sums are written out term by term.
+_TERMS = 60
+
+#: Exponents of the classes.
+Vector = tuple[Fraction, ...]
+
+
+class Writer:
+    """Turns sums of exponentials over one alphabet into readable expressions.
+
+    Parameters
+    ----------
+    alphabet : Alphabet
+        Gives the classes (β J, β D, …) that exponents count.
+    """
+
+    def __init__(self, alphabet: Alphabet) -> None:
+        import sympy as sp
+
+        self.alphabet = alphabet
+        #: Powers of a weight w are no exponentials: nothing hyperbolic is written with ln w.
+        self._proper = tuple(not isinstance(key, sp.log) for key in alphabet.classes)
+        self._atoms = [atom(key if proper else key.args[0]) for key, proper in self._pairs_of_classes()]
+        self._known: dict[frozenset[tuple[Vector, Fraction]], Draft] = {}
+        self._centred: dict[Vector, Draft] = {}
+
+    def _pairs_of_classes(self) -> Iterable[tuple[Any, bool]]:
+        return zip(self.alphabet.classes, self._proper, strict=True)
+
+    def write(self, laurent: Laurent) -> Any:
+        """Return the shortest of the forms of a sum."""
+        return self.draft(laurent).build()
+
+    def draft(self, laurent: Laurent) -> Draft:
+        """Return the shortest of the drafts of a sum."""
+        terms = {exponents: c for exponents, c in laurent.items() if c}
+        key = frozenset(terms.items())
+        if key not in self._known:
+            # Held while the forms are drafted, in case a form asks for the same sum again.
+            self._known[key] = self.plain(terms)
+            if 1 < len(terms) <= _TERMS:
+                drafts = [form(terms) for form in (self.plain, self._paired, self._collected, self._factored)]
+                self._known[key] = shortest(drafts)
+        return self._known[key]
+
+    def monomial(self, exponents: Vector, c: Fraction = Fraction(1)) -> Draft:
+        """Return c · exp(Σ exponents · classes)."""
+        parts = [number(c)]
+        for base, exponent, proper in zip(self._atoms, exponents, self._proper, strict=False):
+            if exponent and not proper:
+                parts.append(_rational_power(base, exponent))
+        if any(exponent for exponent, proper in zip(exponents, self._proper, strict=False) if proper):
+            parts.append(call("exp", self.argument(exponents)))
+        return product(parts)
+
+    def argument(self, exponents: Vector) -> Draft:
+        """Return Σ exponents · classes over the proper exponentials, with β and numbers in front."""
+        if exponents not in self._centred:
+            import sympy as sp
+
+            parts = [
+                sp.Rational(exponent.numerator, exponent.denominator) * key
+                for (key, proper), exponent in zip(self._pairs_of_classes(), exponents, strict=False)
+                if proper and exponent
+            ]
+            self._centred[exponents] = atom(sp.factor_terms(sp.Add(*parts)) if len(parts) > 1 else sp.Add(*parts))
+        return self._centred[exponents]
+
+    def plain(self, terms: Laurent) -> Draft:
+        """Write exponentials as they come."""
+        return total(self.monomial(exponents, c) for exponents, c in terms.items())
+
+    def _paired(self, terms: Laurent) -> Draft | None:
+        """Write exp(a + b) ± exp(a − b) as 2 exp(a) cosh(b) or sinh(b), simplest a first."""
+        rest = dict(terms)
+        groups: dict[Vector, list[Draft]] = {}
+        for _, middle, half, u, v in sorted(self._pairs(terms)):
+            if u not in rest or v not in rest:
+                continue
+            c, d = rest.pop(u), rest.pop(v)
+            function = call("cosh" if c == d else "sinh", self.argument(half))
+            groups.setdefault(middle, []).append(product([number(2 * c), function]))
+        if not groups:
+            return None
+        for exponents, c in rest.items():
+            groups.setdefault(exponents, []).append(number(c))
+        return total(product([self.monomial(middle), total(parts)]) for middle, parts in groups.items())
+
+    def _pairs(self, terms: Laurent) -> list[tuple[tuple, Vector, Vector, Vector, Vector]]:
+        ordered = sorted(terms, reverse=True)
+        pairs = []
+        for i, u in enumerate(ordered):
+            for v in ordered[i + 1 :]:
+                if abs(terms[u]) != abs(terms[v]):
+                    continue
+                half = tuple((a - b) / 2 for a, b in zip(u, v, strict=True))
+                if all(proper or not h for h, proper in zip(half, self._proper, strict=True)):
+                    middle = tuple((a + b) / 2 for a, b in zip(u, v, strict=True))
+                    pairs.append(((_weight(middle), _weight(half)), middle, half, u, v))
+        return pairs
+
+    def _collected(self, terms: Laurent) -> Draft | None:
+        """Write as a sum over the powers of one class, each with its own coefficient."""
+        drafts = []
+        for k in range(len(self.alphabet.classes)):
+            by_power: dict[Fraction, Laurent] = {}
+            for exponents, c in terms.items():
+                rest = (*exponents[:k], Fraction(0), *exponents[k + 1 :])
+                by_power.setdefault(exponents[k], {})[rest] = c
+            if 1 < len(by_power) < len(terms):
+                drafts.append(self._by_powers(k, by_power))
+        return shortest(drafts) if drafts else None
+
+    def _by_powers(self, k: int, by_power: dict[Fraction, Laurent]) -> Draft:
+        parts = []
+        for exponent, coefficient in by_power.items():
+            opposite = by_power.get(-exponent)
+            same = _same(coefficient, opposite) if opposite is not None else 0
+            unit = tuple(abs(exponent) if i == k else Fraction(0) for i in range(len(self.alphabet.classes)))
+            if exponent and self._proper[k] and same:
+                if exponent > 0:
+                    function = call("cosh" if same == 1 else "sinh", self.argument(unit))
+                    parts.append(product([function, self.draft(times(coefficient, Fraction(2)))]))
+            else:
+                here = tuple(exponent if i == k else Fraction(0) for i in range(len(self.alphabet.classes)))
+                parts.append(product([self.monomial(here), self.draft(coefficient)]))
+        return total(parts)
+
+    def _factored(self, terms: Laurent) -> Draft | None:
+        """Write as a product of powers, each factor centred where that is shorter."""
+        c, lowest, factors = self.factor(terms)
+        if len(factors) == 1 and factors[0][1] == 1 and not any(lowest) and c == 1:
+            return self._moved(terms)
+        return shortest([self._product(c, lowest, factors, centre) for centre in (self._if_shorter, self._middle)])
+
+    def _moved(self, terms: Laurent) -> Draft | None:
+        middle = self._middle(terms)
+        return product([self.monomial(middle), self.draft(shifted(terms, middle, -1))]) if any(middle) else None
+
+    def _product(self, c: Fraction, lowest: Vector, factors: Any, centre: Callable[[Laurent], Vector]) -> Draft:
+        monomial, parts = lowest, []
+        for factor, exponent in factors:
+            middle = centre(factor)
+            monomial = tuple(a + exponent * m for a, m in zip(monomial, middle, strict=True))
+            # Powers of two go with hyperbolic functions: 4 sinh², not (2 sinh)².
+            inner = self.draft(shifted(factor, middle, -1))
+            half = self.draft(times(shifted(factor, middle, -1), Fraction(1, 2)))
+            if exponent > 1 and half.cost < inner.cost:
+                c, inner = c * 2**exponent, half
+            parts.append(power(inner, exponent))
+        return product([self.monomial(monomial, c), *parts])
+
+    def _if_shorter(self, factor: Laurent) -> Vector:
+        middle = self._middle(factor)
+        centred = product([self.monomial(middle), self.draft(shifted(factor, middle, -1))])
+        return middle if centred.cost < self.draft(factor).cost else tuple(Fraction(0) for _ in middle)
+
+    def factor(self, terms: Laurent) -> tuple[Fraction, Vector, list[tuple[Laurent, int]]]:
+        """Return number, monomial and irreducible factors with their powers."""
+        alphabet = self.alphabet
+        lowest = tuple(map(min, zip(*terms, strict=True)))
+        ring = alphabet.ring
+        element = ring.from_dict(
+            {
+                tuple(int((e - low) / unit) for e, low, unit in zip(exponents, lowest, alphabet.units, strict=True))
+                or (0,): ring.domain(c.numerator, c.denominator)
+                for exponents, c in terms.items()
+            }
+        )
+        content, found = element.factor_list()
+        factors = [(alphabet.laurent(factor, (0,) * alphabet.width), exponent) for factor, exponent in found]
+        return Fraction(int(content.numerator), int(content.denominator)), lowest, factors
+
+    def _middle(self, laurent: Laurent) -> Vector:
+        """Return the centre of a factor that reads the same (up to sign) from both ends, else zero."""
+        spans = [(min(x), max(x)) for x in zip(*laurent, strict=True)]
+        middle = tuple((low + high) / 2 for low, high in spans)
+        mirrored = {tuple(2 * m - e for e, m in zip(x, middle, strict=True)): c for x, c in laurent.items()}
+        symmetric = len(laurent) > 1 and _same(laurent, mirrored)
+        whole = all(m == 0 or proper for m, proper in zip(middle, self._proper, strict=True))
+        return middle if symmetric and whole else tuple(Fraction(0) for _ in middle)
+
+
+def shortest(drafts: Iterable[Draft | None]) -> Draft:
+    """Return the draft that is easiest to read."""
+    return min((draft for draft in drafts if draft is not None), key=lambda draft: draft.cost)
+
+
+def shifted(laurent: Laurent, by: Vector, sign: int = 1) -> Laurent:
+    """Return a sum times the monomial of ``sign * by``."""
+    return {tuple(e + sign * m for e, m in zip(x, by, strict=True)): c for x, c in laurent.items()}
+
+
+def times(laurent: Laurent, by: Fraction) -> Laurent:
+    """Return a sum times a number."""
+    return {x: c * by for x, c in laurent.items()}
+
+
+def _same(a: Laurent, b: Laurent) -> int:
+    """Return 1 when equal, −1 when opposite, else 0."""
+    if a == b:
+        return 1
+    return -1 if a.keys() == b.keys() and all(a[x] == -b[x] for x in a) else 0
+
+
+def _weight(vector: Vector) -> tuple[int, Fraction]:
+    return sum(1 for x in vector if x), sum((abs(x) for x in vector), Fraction(0))
+
+
+def _rational_power(base: Draft, exponent: Fraction) -> Draft:
+    import sympy as sp
+
+    if exponent == 1:
+        return base
+    return atom(base.build() ** sp.Rational(exponent.numerator, exponent.denominator))

@@ -1,0 +1,61 @@
+"""Ring partition functions from the characteristic polynomial, with or without its roots."""
+
+from __future__ import annotations
+
+from typing import Any
+
+from .alphabet import Laurent
+from .polynomials import Coefficients, power_sums
+from .spectrum import Factor, Spectrum
+
+__all__ = ["minimal_polynomial", "ring_sum", "trace_of_power"]
+
+
+def minimal_polynomial(spectrum: Spectrum) -> Coefficients:
+    """Return the product of the different factors without the root 0.
+
+    Z_N = Σ m λᴺ, N ≥ 1, obeys the recurrence of this polynomial.
+    """
+    ring = spectrum.matrix.alphabet.ring
+    total: Coefficients = (ring.one,)
+    for factor in spectrum.factors:
+        if not factor.is_zero:
+            total = _product(total, factor.polynomial, ring.zero)
+    return total
+
+
+def _product(a: Coefficients, b: Coefficients, zero: Any) -> Coefficients:
+    result = [zero] * (len(a) + len(b) - 1)
+    for i, x in enumerate(a):
+        for j, y in enumerate(b):
+            result[i + j] = result[i + j] + x * y
+    return tuple(result)
+
+
+def ring_sum(spectrum: Spectrum, cells: int) -> Laurent:
+    """Return the trace of the N-th power of the matrix as a sum of exponentials, by Newton's identities."""
+    ring = spectrum.matrix.alphabet.ring
+    total = ring.zero
+    for factor in spectrum.factors:
+        total = total + _power_sum(factor, cells, ring) * factor.multiplicity
+    return spectrum.matrix.laurent(total, cells)
+
+
+def _power_sum(factor: Factor, cells: int, ring: Any) -> Any:
+    if factor.degree == 1:
+        return (-factor.polynomial[1]) ** cells
+    return power_sums(factor.polynomial, cells, ring.zero)[-1]
+
+
+def trace_of_power(spectrum: Spectrum, cells: int) -> Laurent:
+    """Return the trace of the N-th power by multiplying matrices, where no polynomial is known."""
+    from sympy.polys.matrices import DomainMatrix
+
+    matrix = spectrum.matrix
+    ring = matrix.alphabet.ring
+    rows = [[ring(entry) for entry in row] for row in matrix.entries]
+    power = DomainMatrix(rows, (matrix.size, matrix.size), ring.to_domain()) ** cells
+    total = ring.zero
+    for i in range(matrix.size):
+        total = total + power[i, i].element
+    return matrix.laurent(total, cells)

@@ -1,0 +1,137 @@
+"""What a closed form shows of itself: expressions of its parts, text and LaTeX."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+from .alphabet import Laurent
+from .lengths import correlation_length
+from .perron import eigenvalue_symbol
+from .plain import latex_text, plain_text
+from .polynomials import Coefficients
+from .spectrum import Spectrum
+
+if TYPE_CHECKING:
+    from .forms import ClosedForm
+
+__all__ = ["correlation_length", "latex", "long_sum", "matrix", "polynomial", "reason", "recurrence", "text"]
+
+#: Sums with more terms are written out in exponentials without looking for a shorter form.
+_READABLE_TERMS = 12
+#: Longer formulas are named, not printed, in the text form.
+_PRINTED_LETTERS = 1500
+
+
+def matrix(spectrum: Spectrum) -> Any:
+    """Return the transfer matrix as a sympy Matrix."""
+    import sympy as sp
+
+    source = spectrum.matrix
+    write = {}
+    for entry in source.entries.ravel():
+        if entry not in write:
+            write[entry] = long_sum(spectrum, source.laurent(entry))
+    return sp.ImmutableMatrix(source.size, source.size, lambda i, j: write[source.entries[i, j]])
+
+
+def long_sum(spectrum: Spectrum, laurent: Laurent) -> Any:
+    """Write a sum: expanded exponentials."""
+    return spectrum.writer.plain(laurent).build()
+
+
+def _coefficient(spectrum: Spectrum, laurent: Laurent) -> Any:
+    if len(laurent) > _READABLE_TERMS:
+        return long_sum(spectrum, laurent)
+    return spectrum.writer.write(laurent)
+
+
+def polynomial(spectrum: Spectrum) -> Any:
+    """Return the characteristic polynomial as a product of powers of factors."""
+    import sympy as sp
+
+    root = eigenvalue_symbol()
+    product = sp.Integer(1)
+    for factor in spectrum.factors:
+        coefficients = [
+            _coefficient(spectrum, spectrum.matrix.laurent(c, k)) for k, c in enumerate(factor.polynomial)
+        ]
+        one = sp.Add(*(c * root ** (factor.degree - k) for k, c in enumerate(coefficients)))
+        product *= one**factor.multiplicity
+    return product
+
+
+def recurrence(spectrum: Spectrum, minimal: Coefficients) -> tuple[Any, ...]:
+    """Return c₁, c₂, … of Z_N = Σ c_k Z_{N−k}."""
+    return tuple(
+        _coefficient(spectrum, spectrum.matrix.laurent(-c, k)) for k, c in enumerate(minimal) if k > 0
+    )
+
+
+def reason(spectrum: Spectrum) -> str:
+    """Say how far the derivation went."""
+    if spectrum.is_solved and not spectrum.notes:
+        return "every eigenvalue is written by radicals"
+    if not spectrum.factors:
+        reached = "only the matrix is known"
+    elif all(f.irreducible for f in spectrum.factors):
+        reached = "implicit form: the factored characteristic polynomial and the recurrence of Z_N are known"
+    else:
+        reached = "recurrence: the characteristic polynomial is known, unfactored, and with it the recurrence of Z_N"
+    return "; ".join((*spectrum.notes, reached))
+
+
+def text(form: ClosedForm) -> str:
+    """Return the readable text of a closed form."""
+    size = form.spectrum.matrix.size
+    lines = [f"{form.chain.name}: transfer matrix {size} x {size}; beta = 1/T"]
+    if form.is_closed:
+        lines.append(f"  Z_N = {ring_text(form)}")
+        lines.append("  eigenvalues (multiplicity)")
+        lines += [f"    {plain_text(value)}  ({m})" for value, m in form.eigenvalues]
+        lines.append(f"  f = {plain_text(form.free_energy)}")
+    else:
+        lines.append(f"  no closed form: {form.why}")
+        if form.spectrum.factors:
+            lines.append(f"  det(lambda - M) = {_shown(form.characteristic_polynomial)}")
+            lines += _recurrence_lines(form)
+    if len(form.blocks) > 1:
+        lines.append("  blocks")
+        lines += [f"    {block.size} x {block.size}, {block.multiplicity} times: {block.label}" for block in form.blocks]
+    return "\n".join(lines)
+
+
+def _recurrence_lines(form: ClosedForm) -> list[str]:
+    count = len(form.recurrence)
+    lines = [f"  Z_N = sum of c_k Z_(N-k), k = 1 ... {count}, for N > {count}"]
+    return lines + [f"    c_{k} = {_shown(c)}" for k, c in enumerate(form.recurrence, start=1)]
+
+
+def _shown(expr: Any) -> str:
+    written = plain_text(expr)
+    if len(written) <= _PRINTED_LETTERS:
+        return written
+    return f"({len(expr.args)} terms, {len(written)} letters; see the attribute of the form)"
+
+
+def ring_text(form: ClosedForm) -> str:
+    """Write Z_N with the largest eigenvalue first."""
+    parts = []
+    for value, m in form.eigenvalues:
+        if value != 0:
+            base = plain_text(value)
+            base = base if value.is_Atom or value.is_Function else f"({base})"
+            parts.append(f"{base}**N" if m == 1 else f"{m}*{base}**N")
+    return " + ".join(parts)
+
+
+def latex(form: ClosedForm) -> str:
+    """Return the LaTeX of Z_N, or of the characteristic polynomial where there is no closed form."""
+    if not form.is_closed:
+        if not form.spectrum.factors:
+            return f"$\\text{{{form.why}}}$"
+        return f"$\\displaystyle \\det(\\lambda - M) = {latex_text(form.characteristic_polynomial)}$"
+    parts = []
+    for value, m in form.eigenvalues:
+        if value != 0:
+            parts.append(("" if m == 1 else f"{m} ") + f"\\left({latex_text(value)}\\right)^{{N}}")
+    return f"$\\displaystyle Z_{{N}} = {' + '.join(parts)}$"

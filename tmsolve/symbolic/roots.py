@@ -1,0 +1,227 @@
+"""Roots of factors of a characteristic polynomial by radicals, written readably.
+
+Degree 1 and 2 always; degree 3 in trigonometric form where all eigenvalues are known to be
+real; and polynomials in λ² that are of one of these degrees in λ².
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from .alphabet import Laurent
+from .matrix import SymbolicMatrix
+from .formula import Draft, number, power, product, root, total
+from .polynomials import Coefficients
+from .readable import Writer, shifted, shortest, times
+
+__all__ = ["Quadratic", "all_real", "quadratic", "radicals"]
+
+#: A trigonometric form with more operations does not read well any more; spin 1 in a field has 160.
+_TRIGONOMETRIC_OPERATIONS = 200
+#: Numbers by which a sum of two terms may be multiplied to look better.
+_FRONT = (Fraction(1), Fraction(1, 2), Fraction(2))
+
+
+@dataclass(frozen=True)
+class Quadratic:
+    """Both roots of a quadratic factor: front · (middle ± outside · sqrt(inside)).
+
+    Attributes
+    ----------
+    front : Fraction
+        A number.
+    middle, outside, inside : Draft
+        Drafts of sums of exponentials.
+    """
+
+    front: Fraction
+    middle: Draft
+    outside: Draft
+    inside: Draft
+
+    @property
+    def cost(self) -> tuple[int, int, int]:
+        """How hard it is to read; a square root of a number is preferred to one of a function."""
+        operations, letters = total([self.middle, self.radical]).cost
+        return int(self.inside.value is None), operations + (self.front != 1), letters
+
+    @property
+    def radical(self) -> Draft:
+        """The square root with what stands in front of it."""
+        return product([self.outside, root(self.inside)])
+
+    def root(self, sign: int) -> Any:
+        """Return the root with + (1) or − (−1) in front of the square root."""
+        import sympy as sp
+
+        value = self.middle.build() + sign * self.radical.build()
+        # sympy would multiply a number into a sum, which reads worse.
+        front = sp.Rational(self.front.numerator, self.front.denominator)
+        return value if front == 1 else sp.Mul(front, value, evaluate=False)
+
+
+def radicals(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, block: np.ndarray | None, real: bool) -> list[Any]:
+    """Return the roots λ of a factor as expressions, the largest real one first; empty if there is no form.
+
+    Parameters
+    ----------
+    factor : Coefficients
+        Monic irreducible polynomial in the unscaled root.
+    matrix : SymbolicMatrix
+        Gives the scale.
+    writer : Writer
+        Writes sums of exponentials.
+    block : ndarray or None
+        The 2 × 2 matrix whose characteristic polynomial it is, if it is one; that helps to write it.
+    real : bool
+        Whether all its roots are known to be real.
+    """
+    import sympy as sp
+
+    coefficients = [matrix.laurent(c, k) for k, c in enumerate(factor)]
+    degree = len(factor) - 1
+    if degree == 1:
+        return [writer.write(times(coefficients[1], Fraction(-1)))]
+    if degree == 2:
+        form = quadratic(factor, matrix, writer, block)
+        return [form.root(1), form.root(-1)]
+    if degree == 3 and real:
+        return _trigonometric(coefficients, writer, _TRIGONOMETRIC_OPERATIONS)
+    if degree in (4, 6) and not any(any(c) for c in factor[1::2]):
+        squares = _roots_of_squares(factor, matrix, writer, real)
+        return [sign * sp.sqrt(square) for square in squares for sign in (1, -1)]
+    return []
+
+
+def _roots_of_squares(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, real: bool) -> list[Any]:
+    squared = SymbolicMatrix(matrix.window, matrix.alphabet, matrix.entries, tuple(2 * s for s in matrix.scale))
+    return radicals(factor[::2], squared, writer, None, real)
+
+
+def quadratic(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, block: np.ndarray | None) -> Quadratic:
+    """Return the most readable way to write the two roots of a quadratic factor."""
+    _, c1, c2 = factor
+    domain = c1.ring.domain
+    middle = matrix.laurent(-c1 / domain(2))
+    inside = matrix.laurent(c1**2 / domain(4) - c2, 2)
+    found = []
+    for outside, rest in _square_factors(inside, writer):
+        for front in _FRONT:
+            forms = [writer.draft(times(rest, 1 / front**2))]
+            if block is not None and len(outside) == 1:
+                forms.append(_square_and_product(block, matrix, writer, front, outside))
+            found.append(
+                Quadratic(front, writer.draft(times(middle, 1 / front)), writer.draft(outside), shortest(forms))
+            )
+    return min(found, key=lambda form: form.cost)
+
+
+def _square_factors(inside: Laurent, writer: Writer) -> Iterator[tuple[Laurent, Laurent]]:
+    """Yield ways to write a sum as (outside)² · rest."""
+    one = {tuple(Fraction(0) for _ in next(iter(inside))): Fraction(1)}
+    yield one, inside
+    _, lowest, factors = writer.factor(inside)
+    half = tuple(e / 2 for e in lowest)
+    if any(lowest):
+        yield {half: Fraction(1)}, shifted(inside, lowest, -1)
+    outside, rest = one, inside
+    for factor, power in factors:
+        for _ in range(power // 2):
+            outside, rest = _product(outside, factor), _divide(rest, factor, writer)
+    if outside is not one:
+        # Each repeated factor brought back to its middle keeps both parts symmetric.
+        middle = tuple((min(x) + max(x)) / 2 for x in zip(*outside, strict=True))
+        yield shifted(outside, middle, -1), shifted(rest, tuple(2 * m for m in middle))
+        yield outside, rest
+
+
+def _product(a: Laurent, b: Laurent) -> Laurent:
+    total: Laurent = {}
+    for x, c in a.items():
+        for y, d in b.items():
+            z = tuple(e + f for e, f in zip(x, y, strict=True))
+            total[z] = total.get(z, Fraction(0)) + c * d
+    return {x: c for x, c in total.items() if c}
+
+
+def _divide(terms: Laurent, factor: Laurent, writer: Writer) -> Laurent:
+    """Divide by the square of a factor that is known to divide."""
+    c, lowest, factors = writer.factor(terms)
+    result: Laurent = {lowest: c}
+    for other, power in factors:
+        for _ in range(power - 2 if other == factor else power):
+            result = _product(result, other)
+    return result
+
+
+def _square_and_product(
+    block: np.ndarray, matrix: SymbolicMatrix, writer: Writer, front: Fraction, outside: Laurent
+) -> Draft:
+    """Write ((a − d)/2)² + bc for a matrix ((a, b), (c, d)), as it comes from working by hand."""
+    ((shift, c),) = outside.items()
+    half = matrix.alphabet.ring.domain(1, 2)
+    difference = shifted(matrix.laurent((block[0, 0] - block[1, 1]) * half), shift, -1)
+    bc = shifted(matrix.laurent(block[0, 1] * block[1, 0], 2), tuple(2 * s for s in shift), -1)
+    by = 1 / (front * c)
+    # The sign of the difference is free.
+    square = shortest([writer.draft(times(difference, by)), writer.draft(times(difference, -by))])
+    return total([power(square, 2), writer.draft(times(bc, by**2))])
+
+
+def _trigonometric(coefficients: Sequence[Laurent], writer: Writer, limit: int) -> list[Any]:
+    """Return the three real roots of λ³ − aλ² + bλ − c by Viète's formula, the largest first; none if too long."""
+    import sympy as sp
+
+    a, b, c = times(coefficients[1], Fraction(-1)), coefficients[2], times(coefficients[3], Fraction(-1))
+    square, cube = _product(a, a), _product(a, _product(a, a))
+    p = writer.draft(_add((Fraction(1), square), (Fraction(-3), b)))
+    q = writer.draft(_add((Fraction(1), cube), (Fraction(-9, 2), _product(a, b)), (Fraction(27, 2), c)))
+    trace = writer.draft(a)
+    if trace.operations + 2 * p.operations + q.operations > limit:
+        return []
+    radius = sp.sqrt(p.build())
+    angle = sp.acos(q.build() / radius**3)
+    return [(trace.build() + 2 * radius * sp.cos((angle + turn * 2 * sp.pi) / 3)) / 3 for turn in (0, -1, 1)]
+
+
+def _add(*parts: tuple[Fraction, Laurent]) -> Laurent:
+    total: Laurent = {}
+    for by, laurent in parts:
+        for x, c in laurent.items():
+            total[x] = total.get(x, Fraction(0)) + by * c
+    return {x: c for x, c in total.items() if c}
+
+
+def all_real(matrix: np.ndarray) -> bool:
+    """Whether a positive diagonal matrix D makes D M symmetric, so that every eigenvalue is real.
+
+    This is Kolmogorov's criterion for a reversible chain: along a spanning tree
+    d_j/d_i = M_ij/M_ji, and every other pair has to agree.
+    """
+    n = len(matrix)
+    ratio: dict[int, tuple[Any, Any]] = {}
+    for start in range(n):
+        if start in ratio:
+            continue
+        one = matrix[start, start].ring.one
+        ratio[start], queue = (one, one), [start]
+        while queue:
+            i = queue.pop()
+            for j in range(n):
+                forward, back = matrix[i, j], matrix[j, i]
+                if bool(forward) != bool(back):
+                    return False
+                if not forward or i == j:
+                    continue
+                up, down = ratio[i][0] * forward, ratio[i][1] * back
+                if j not in ratio:
+                    ratio[j] = up.cancel(down)
+                    queue.append(j)
+                elif up * ratio[j][1] != down * ratio[j][0]:
+                    return False
+    return True

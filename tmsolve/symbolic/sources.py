@@ -1,0 +1,155 @@
+"""Means and susceptibilities: how the Perron root moves when a source is added.
+
+A source −φ a in the energy multiplies weights by exp(β φ a). The characteristic polynomial
+P(μ; φ, ψ) to first order in each of two sources gives, at its largest root,
+
+    ∂μ/∂φ = −P_φ/P_μ,   ∂²μ/∂φ∂ψ = −(P_φψ + P_φμ μ_ψ + P_ψμ μ_φ + P_μμ μ_φ μ_ψ)/P_μ,
+
+so that nothing but polynomials is differentiated, and the source may break every symmetry.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from ..declare.chain import Chain
+from .blocks import Block, components
+from .field import Element, Poly, RootField, derivative
+from .field_text import FieldWriter
+from .jet import Jet
+from .matrix import SymbolicMatrix, tilted_matrix
+from .permutations import numbered, orbits, verified
+from .polynomials import berkowitz, factors
+from .readable import Writer
+from .spectrum import Factor, Spectrum, leading_factor
+
+__all__ = ["mean_element", "response_element"]
+
+
+@dataclass(frozen=True)
+class _Tilted:
+    """The field of the largest root, and derivatives of P there as numerators of that field.
+
+    ``value[i]``, ``slope[i]`` are the i-th part (P, P_φ, P_ψ, P_φψ) and its derivative by μ;
+    ``curve`` is P_μμ; ``below`` are the denominators that make up P_μ.
+    """
+
+    field: RootField
+    writer: FieldWriter
+    value: tuple[Poly, ...]
+    slope: tuple[Poly, ...]
+    curve: Poly
+    below: tuple[Poly, ...]
+
+
+def mean_element(chain: Chain, name: str, eigenvalue: Any) -> tuple[FieldWriter, Element]:
+    """Return ∂ ln λ/∂φ for the source φ of an observable: its mean per cell.
+
+    Parameters
+    ----------
+    chain : Chain
+        The chain.
+    name : str
+        One of its observables.
+    eigenvalue : sympy expression
+        The Perron root, for results that cannot be freed of it.
+    """
+    tilted = _tilted(chain, (name,), eigenvalue)
+    field = tilted.field
+    return tilted.writer, field.negative(field.over(tilted.value[1], *tilted.below, field.mu))
+
+
+def response_element(chain: Chain, first: str, second: str, eigenvalue: Any) -> tuple[FieldWriter, Element]:
+    """Return ∂² ln λ/∂φ∂ψ for the sources of two observables: the sum of their connected correlations."""
+    tilted = _tilted(chain, (first, second), eigenvalue)
+    field = tilted.field
+    by_a, by_b = (field.negative(field.over(tilted.value[i], *tilted.below)) for i in (1, 2))
+    both = field.product(by_a, by_b)
+    parts = [
+        Element(tilted.value[3]),
+        field.product(Element(tilted.slope[1]), by_b),
+        field.product(Element(tilted.slope[2]), by_a),
+        field.product(Element(tilted.curve), both),
+    ]
+    one = field.embed((field.ring.one,))
+    relative = field.product(field.total(parts), field.negative(field.over(one, *tilted.below, field.mu)))
+    square = field.product(both, field.over(one, field.mu, field.mu))
+    return tilted.writer, field.total([relative, field.negative(square)])
+
+
+def _tilted(chain: Chain, names: Sequence[str], eigenvalue: Any) -> _Tilted:
+    matrix = tilted_matrix(chain, *names)
+    ring = matrix.alphabet.ring
+    writer = Writer(matrix.alphabet)
+    factor, jets, others = _leading(matrix, writer, _lumped(matrix, keep_sources=len(names) > 1))
+    field = RootField(factor.polynomial, ring)
+    block = factor.block.matrix if factor.degree == factor.block.size == 2 else None
+    parts = [[jet.parts()[i] for jet in reversed(jets)] for i in range(4)]
+    # P = F G gives P_μ = F_μ G at a simple root of F.
+    below = [field.slope]
+    for other, multiplicity in others:
+        key = field.denominator(field.embed(tuple(reversed(other))), len(other) - 1)
+        below.extend([key] * multiplicity)
+    return _Tilted(
+        field,
+        FieldWriter(field, matrix, writer, eigenvalue, block),
+        tuple(field.embed(part) for part in parts),
+        tuple(field.embed(derivative(part)) for part in parts),
+        field.embed(derivative(derivative(parts[0]))),
+        tuple(below),
+    )
+
+
+def _leading(matrix: SymbolicMatrix, writer: Writer, lumped: np.ndarray) -> tuple[Factor, Any, list]:
+    """Return the factor with the largest root, the characteristic polynomial it divides, and the other factors."""
+    ring = matrix.alphabet.ring
+    best = None
+    for part in components(Block(lumped, "", positive=True), _value):
+        jets = berkowitz(part.matrix, Jet(ring.one, ring.zero, ring.zero, ring.zero))
+        block = Block(_each_value(part.matrix), "", positive=True)
+        found = factors(tuple(jet.x for jet in jets), ring)
+        for polynomial, _ in found:
+            factor = Factor(polynomial, block, 1)
+            if best is None or _larger(matrix, writer, factor, best[0]):
+                best = factor, jets, [(p, m) for p, m in found if p != polynomial]
+    assert best is not None
+    return best
+
+
+def _value(jet: Jet) -> bool:
+    return bool(jet.x)
+
+
+def _larger(matrix: SymbolicMatrix, writer: Writer, new: Factor, old: Factor) -> bool:
+    return leading_factor(Spectrum(matrix, writer, factors=(old, new)))[0] == 1
+
+
+def _lumped(matrix: SymbolicMatrix, keep_sources: bool) -> np.ndarray:
+    """Average the matrix over equivalent states.
+
+    To first order the average over the symmetries of the unperturbed matrix is enough,
+    because its Perron vectors are symmetric; to second order the symmetries must be those of
+    the sources too.
+    """
+    entries = matrix.entries
+    table = numbered(entries) if keep_sources else numbered(_each_value(entries))
+    left = matrix.window.left
+    permutations = verified(table, left, [matrix.window.sizes[site] for site in left])
+    classes = orbits(permutations, len(entries))
+    domain = matrix.alphabet.ring.domain
+    lumped = np.empty((len(classes), len(classes)), dtype=object)
+    for a, rows in enumerate(classes):
+        for b, columns in enumerate(classes):
+            lumped[a, b] = entries[np.ix_(rows, columns)].sum().over(domain(len(columns)))
+    return lumped
+
+
+def _each_value(entries: np.ndarray) -> np.ndarray:
+    values = np.empty(entries.shape, dtype=object)
+    for index in np.ndindex(entries.shape):
+        values[index] = entries[index].x
+    return values

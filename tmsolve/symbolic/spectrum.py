@@ -1,0 +1,191 @@
+"""From a symbolic matrix to its blocks, their characteristic polynomials, factors and roots.
+
+Every stage gets a part of the time limit. When one does not finish, what was found before it
+is kept and the reason is noted.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from dataclasses import dataclass, field, replace
+from typing import Any
+
+import numpy as np
+
+from .blocks import Block, merged, split
+from .deadline import Clock, TimeUp, limited
+from .matrix import SymbolicMatrix
+from .polynomials import Coefficients, characteristic, factors
+from .readable import Writer
+from .roots import all_real, radicals
+
+__all__ = ["Factor", "Spectrum", "leading_factor", "solve_spectrum"]
+
+#: Parts of the remaining time that stages may use.
+_BLOCKS, _FACTORS, _ROOTS = 0.5, 0.5, 0.6
+
+
+@dataclass(frozen=True, eq=False)
+class Factor:
+    """A factor of the characteristic polynomial.
+
+    Attributes
+    ----------
+    polynomial : Coefficients
+        Monic in the root without the scale of the matrix.
+    block : Block
+        Where it comes from.
+    multiplicity : int
+        How often it divides the characteristic polynomial of the whole matrix.
+    irreducible : bool
+        Whether it is known not to factor further.
+    roots : tuple of sympy expressions
+        Its eigenvalues; empty when there is no form by radicals.
+    """
+
+    polynomial: Coefficients
+    block: Block
+    multiplicity: int
+    irreducible: bool = True
+    roots: tuple[Any, ...] = ()
+
+    @property
+    def degree(self) -> int:
+        """Number of its roots."""
+        return len(self.polynomial) - 1
+
+    @property
+    def is_zero(self) -> bool:
+        """Whether its root is 0."""
+        return self.degree == 1 and not self.polynomial[1]
+
+
+@dataclass(frozen=True, eq=False)
+class Spectrum:
+    """What is known about the eigenvalues of a symbolic matrix.
+
+    Attributes
+    ----------
+    matrix : SymbolicMatrix
+        The matrix.
+    writer : Writer
+        Writes its sums of exponentials.
+    blocks : tuple of Block
+        Its blocks, equal ones counted.
+    factors : tuple of Factor
+        Factors of the characteristic polynomial; empty when that is not known.
+    notes : tuple of str
+        What did not succeed, and why.
+    """
+
+    matrix: SymbolicMatrix
+    writer: Writer
+    blocks: tuple[Block, ...] = ()
+    factors: tuple[Factor, ...] = ()
+    notes: tuple[str, ...] = field(default=())
+
+    def note(self, text: str) -> Spectrum:
+        """Return the same spectrum with one more reason."""
+        return replace(self, notes=(*self.notes, text))
+
+    @property
+    def is_solved(self) -> bool:
+        """Whether every eigenvalue has an expression."""
+        return bool(self.factors) and all(f.is_zero or f.roots for f in self.factors)
+
+
+def solve_spectrum(matrix: SymbolicMatrix, clock: Clock) -> Spectrum:
+    """Go as far as the time allows: blocks, characteristic polynomials, factors, roots."""
+    spectrum = Spectrum(matrix, Writer(matrix.alphabet))
+    stages: list[tuple[float, str, Callable[[Spectrum], Spectrum]]] = [
+        (_BLOCKS, "the characteristic polynomial", _with_blocks),
+        (_FACTORS, "the factorisation of the characteristic polynomial", _with_factors),
+        (_ROOTS, "the roots by radicals", _with_roots),
+    ]
+    for part, what, stage in stages:
+        allowed = clock.share(part)
+        try:
+            spectrum = limited(allowed, stage, spectrum)
+        except TimeUp:
+            return spectrum.note(f"{what} took longer than the {allowed:.2g} s left for it")
+    return spectrum
+
+
+def _with_blocks(spectrum: Spectrum) -> Spectrum:
+    matrix = spectrum.matrix
+    ring = matrix.alphabet.ring
+    polynomials: dict[int, Coefficients] = {}
+
+    def polynomial(block: Block) -> Coefficients:
+        if id(block) not in polynomials:
+            polynomials[id(block)] = characteristic(block.matrix, ring)
+        return polynomials[id(block)]
+
+    pieces = split(matrix.entries, matrix.permutations)
+    blocks = merged(pieces, polynomial)
+    whole = tuple(Factor(characteristic(b.matrix, ring), b, b.multiplicity, False) for b in blocks)
+    return replace(spectrum, blocks=tuple(blocks), factors=whole)
+
+
+def _with_factors(spectrum: Spectrum) -> Spectrum:
+    ring = spectrum.matrix.alphabet.ring
+    found: dict[Coefficients, Factor] = {}
+    for whole in spectrum.factors:
+        for polynomial, power in factors(whole.polynomial, ring):
+            first = found.get(polynomial, Factor(polynomial, whole.block, 0))
+            found[polynomial] = replace(first, multiplicity=first.multiplicity + power * whole.multiplicity)
+    return replace(spectrum, factors=tuple(found.values()))
+
+
+def _with_roots(spectrum: Spectrum) -> Spectrum:
+    matrix = spectrum.matrix
+    real = max(f.degree for f in spectrum.factors) > 2 and all_real(matrix.entries)
+    solved = []
+    for factor in spectrum.factors:
+        block = factor.block.matrix if factor.degree == factor.block.size == 2 else None
+        roots = radicals(factor.polynomial, matrix, spectrum.writer, block, real)
+        solved.append(replace(factor, roots=tuple(roots)))
+        if not roots:
+            spectrum = spectrum.note(_no_radicals(factor, real))
+    return replace(spectrum, factors=tuple(solved))
+
+
+def _no_radicals(factor: Factor, real: bool) -> str:
+    where = f"the block of size {factor.block.size} ({factor.block.label})"
+    reason = (
+        "a form by radicals that reads well exists for degrees 1, 2 and, if all eigenvalues are real, 3"
+        if factor.degree != 3 or real
+        else "degree 3 is written only where all eigenvalues are real, and this matrix is not reversible"
+    )
+    return f"the characteristic polynomial of {where} has an irreducible factor of degree {factor.degree}; {reason}"
+
+
+def leading_factor(spectrum: Spectrum) -> list[int]:
+    """Return which factors have the largest root, somewhere among a few generic points.
+
+    One index when the matrix is irreducible: its Perron root is simple, so that it cannot
+    pass from one factor to another as parameters change.
+    """
+    candidates = [i for i, f in enumerate(spectrum.factors) if f.block.positive]
+    if len(candidates) < 2:
+        return candidates
+    winners: dict[int, None] = {}
+    ring = spectrum.matrix.alphabet.ring
+    for k in range(5):
+        values = [((3 * i + 5 * k + 2) % 11 + 1) / (5.0 - k / 2) for i in range(ring.ngens)]
+        radii = {i: _radius(spectrum.factors[i].polynomial, values) for i in candidates}
+        winners[max(radii, key=lambda i: radii[i])] = None
+    return list(winners)
+
+
+def _radius(polynomial: Coefficients, values: list[float]) -> float:
+    numbers = []
+    for c in polynomial:
+        total = 0.0
+        for powers, coefficient in c.terms():
+            term = float(coefficient)
+            for value, power in zip(values, powers, strict=True):
+                term *= value**power
+            total += term
+        numbers.append(total)
+    return max(abs(np.roots(numbers)), default=0.0)

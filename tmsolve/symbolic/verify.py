@@ -1,0 +1,119 @@
+"""Numerical proof-reading of a closed form before anybody sees it."""
+
+from __future__ import annotations
+
+import random
+from collections.abc import Iterator, Mapping, Sequence
+from typing import Any
+
+import numpy as np
+
+from .alphabet import Alphabet
+from .matrix import SymbolicMatrix
+
+__all__ = ["evaluate", "generic_points", "mismatch"]
+
+_DIGITS = 50
+#: Agreement asked for, relative to the sum of moduli; what a formula may lose to cancellation is below it.
+_TOLERANCE = 1e-25
+
+
+def generic_points(alphabet: Alphabet, count: int, seed: int = 7) -> Iterator[dict[Any, Any]]:
+    """Yield rational values for the parameters and β of an alphabet, with every ln w defined.
+
+    Parameters that occur as weights come out positive, the others with either sign.
+    """
+    import sympy as sp
+
+    draw = random.Random(seed)
+    symbols = sorted(set().union(*(key.free_symbols for key in alphabet.classes)), key=str)
+    weights = [key.args[0] for key in alphabet.classes if isinstance(key, sp.log)]
+    positive = {s for w in weights for s in w.free_symbols} | {s for s in symbols if s.is_positive}
+    for _ in range(count):
+        for _ in range(200):
+            point = {s: sp.Rational(draw.randint(2, 17), 11) * (1 if s in positive else draw.choice((1, -1))) for s in symbols}
+            if all((w.subs(point) > 0) == True for w in weights):  # noqa: E712 - a sympy truth value
+                yield point
+                break
+
+
+def evaluate(expr: Any, point: Mapping[Any, Any], digits: int = _DIGITS) -> Any:
+    """Return an expression at a point as an mpmath number."""
+    import mpmath as mp
+    import sympy as sp
+
+    symbols = list(point)
+    with mp.workdps(digits + 10):
+        function = sp.lambdify(symbols, expr, modules="mpmath")
+        return mp.mpmathify(function(*(mp.mpf(int(v.p)) / int(v.q) for v in point.values())))
+
+
+def numeric_matrix(matrix: SymbolicMatrix, point: Mapping[Any, Any], digits: int = _DIGITS) -> Any:
+    """Return the matrix at a point, its scale included, as an mpmath matrix."""
+    import mpmath as mp
+
+    alphabet = matrix.alphabet
+    with mp.workdps(digits + 10):
+        classes = [evaluate(key, point, digits) for key in alphabet.classes]
+        values = [mp.exp(c * mp.mpf(u.numerator) / u.denominator) for c, u in zip(classes, alphabet.units, strict=True)]
+        scale = mp.fprod(v**s for v, s in zip(values, matrix.scale, strict=False))
+        result = mp.zeros(matrix.size)
+        for (i, j), element in np.ndenumerate(_hidden(matrix.entries)):
+            result[i, j] = scale * _number(element.value, values, mp)
+        return result
+
+
+class _Held:
+    """Keeps numpy from looking into a polynomial, which is a dict."""
+
+    __slots__ = ("value",)
+
+    def __init__(self, value: Any) -> None:
+        self.value = value
+
+
+def _hidden(entries: np.ndarray) -> np.ndarray:
+    held = np.empty(entries.shape, dtype=object)
+    for index in np.ndindex(entries.shape):
+        held[index] = _Held(entries[index])
+    return held
+
+
+def _number(element: Any, values: Sequence[Any], mp: Any) -> Any:
+    total = mp.mpf(0)
+    for powers, c in element.terms():
+        term = mp.mpf(int(c.numerator)) / int(c.denominator)
+        for value, power in zip(values, powers, strict=False):
+            term *= value**power
+        total += term
+    return total
+
+
+def mismatch(matrix: SymbolicMatrix, eigenvalues: Sequence[tuple[Any, int]], points: int = 3) -> str | None:
+    """Compare Σ λᵏ with the trace of the k-th power at random rational points.
+
+    The power sums for k = 1 … n determine the spectrum with its multiplicities. The first
+    eigenvalue has to have the largest modulus as well.
+
+    Returns
+    -------
+    str or None
+        Where they differ; ``None`` when they agree.
+    """
+    import mpmath as mp
+
+    for point in generic_points(matrix.alphabet, points):
+        with mp.workdps(_DIGITS):
+            numbers = [(evaluate(expr, point), m) for expr, m in eigenvalues]
+            dense = numeric_matrix(matrix, point)
+            if any(abs(x) > abs(numbers[0][0]) * (1 + _TOLERANCE) for x, _ in numbers):
+                return f"the first eigenvalue is not the largest at {point}"
+            power = mp.eye(matrix.size)
+            for k in range(1, matrix.size + 1):
+                power = power * dense
+                trace = mp.fsum(power[i, i] for i in range(matrix.size))
+                total = mp.fsum(m * x**k for x, m in numbers)
+                size = mp.fsum(m * abs(x) ** k for x, m in numbers)
+                if not abs(trace - total) <= _TOLERANCE * size:
+                    return f"the power sum of order {k} is {mp.nstr(total, 12)}, not {mp.nstr(trace, 12)}, at {point}"
+    return None
