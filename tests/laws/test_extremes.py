@@ -1,0 +1,98 @@
+"""Twelve decades of temperature: nothing overflows, nothing warns, and f is right to rounding."""
+
+from __future__ import annotations
+
+import warnings
+
+import mpmath
+import numpy as np
+import pytest
+
+from tests.laws.readings import readings
+from tests.laws.reference import Reference, growth
+from tests.laws.zoo import ZOO, Animal
+from tmsolve import open_chain, ring, solve
+
+TEMPERATURES = ("1e-6", "1e-3", "0.02", "0.3", "1e2", "1e4", "1e6")
+#: Doublings that make ln(lambda) right to 1e-15 although amplitudes reach exp(1e7).
+DOUBLINGS = 75
+
+
+def free_energy(animal: Animal, T: str) -> float:
+    """Return f from the growth rate of matrix powers: no eigenvector is asked for, so any T will do."""
+    reference = Reference(animal.chain, dict(animal.values, T=T))
+    with mpmath.workdps(40):
+        values = reference._numbers({})[0]
+        return float(-values["T"] * growth(reference.matrix(reference.weights(values, {})), DOUBLINGS))
+
+
+def without_field(animal: Animal) -> Animal:
+    """Return the animal in zero field, where ground states tie."""
+    return animal._replace(values={name: "0" if name == "h" else v for name, v in animal.values.items()})
+
+
+ALL = [(animal.name, animal) for animal in ZOO]
+ALL += [(f"{animal.name}-no-field", without_field(animal)) for animal in ZOO if "h" in animal.values]
+EVERY_ANIMAL = pytest.mark.parametrize("animal", [animal for _, animal in ALL], ids=[name for name, _ in ALL])
+
+
+@EVERY_ANIMAL
+def test_free_energy(animal):
+    """|delta f| <= 1e-13 max(|f|, |e0|, T) from T = 1e-6 to 1e6; every floating-point flag is an error."""
+    ground = free_energy(animal, "1e-6")
+    for T in TEMPERATURES:
+        with warnings.catch_warnings(), np.errstate(all="raise"):
+            warnings.simplefilter("error")
+            found = solve(animal.chain.at(**dict(animal.values, T=T))).free_energy
+        expected = free_energy(animal, T)
+        allowed = 1e-13 * max(abs(expected), abs(ground), float(T))
+        assert abs(found - expected) <= allowed, (T, found, expected)
+
+
+@EVERY_ANIMAL
+def test_all_readings_are_numbers(animal):
+    """No reading is NaN; entropy lies between 0 and its maximum; c and chi(a, a) are not negative."""
+    states = np.prod([len(set_) * float(max(set_.weights)) for set_ in animal.chain.cell.values()])
+    for T in TEMPERATURES:
+        with warnings.catch_warnings(), np.errstate(all="raise"):
+            warnings.simplefilter("error")
+            solution = solve(animal.chain.at(**dict(animal.values, T=T)))
+            found = readings(solution, animal.chain)
+            length = solution.correlation_length()
+        assert not np.isnan(length) and length >= 0
+        for name, value in found.items():
+            assert not np.isnan(value), (T, name)
+        if animal.name not in ("thermal", "helix_coil"):
+            assert -1e-12 <= found["entropy"] <= np.log(states) + 1e-12
+            assert found["specific_heat"] >= 0
+        for a in animal.chain.observables:
+            assert found[f"susceptibility({a},{a})"] >= 0, (T, a)
+
+
+@EVERY_ANIMAL
+def test_batch_over_all_temperatures(animal):
+    """One batch over twelve decades gives the single answers."""
+    T = np.array([float(t) for t in TEMPERATURES])
+    with warnings.catch_warnings(), np.errstate(all="raise"):
+        warnings.simplefilter("error")
+        found = solve(animal.chain.at(**dict(animal.values, T=T))).free_energy
+    for value, t in zip(found, TEMPERATURES, strict=True):
+        single = solve(animal.chain.at(**dict(animal.values, T=t))).free_energy
+        assert abs(value - single) <= 2e-13 * max(abs(single), float(t), 1.0)
+
+
+@EVERY_ANIMAL
+def test_finite_chains(animal):
+    """Rings and open chains stay in the log domain: ln Z and means of 41 cells are finite."""
+    if animal.name == "alternating" or animal.name == "alternating-no-field":
+        cells = 40
+    else:
+        cells = 41
+    for T in TEMPERATURES:
+        point = animal.chain.at(**dict(animal.values, T=T))
+        with warnings.catch_warnings(), np.errstate(all="raise"):
+            warnings.simplefilter("error")
+            closed, free = ring(point, cells), open_chain(point, cells)
+        assert np.isfinite(closed.log_Z) and np.isfinite(free.log_Z)
+        for a in animal.chain.observables:
+            assert np.isfinite(closed.mean(a)) and np.isfinite(free.mean(a))
