@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
-from fractions import Fraction
 from typing import Any
 
 import numpy as np
@@ -13,27 +12,21 @@ from ..assemble.window import ChainWindow
 from ..declare import Point
 from ..eigen.components import communicating_classes
 from ..eigen.law import DoobLaw
-from ..eigen.perron import PerronPair, perron_pair
+from ..eigen.perron import TOLERANCE, PerronPair, perron_pair
 from ..eigen.solvers import Dense
 from ..eigen.spectrum import ratios
 from ..errors import SolveError
 from ..observe.segment import Segment
 from ..operators.numbers import multiprecision, to_double
 
-__all__ = ["flat_values", "stationary_laws"]
+__all__ = ["stationary_laws"]
 
 _FIRST_BITS = 128
 #: Longer numbers are worth their time for matrices up to this size.
 _CLIMB_LIMIT = 40
+#: What is accepted where longer numbers would take too long; `Solution.diagnostics` shows the bound.
+_LARGE_TOLERANCE = 1e-6
 _TIE = 1e-11
-
-
-def flat_values(point: Point) -> dict[str, Any]:
-    """Return the values of a point with batch axes flattened; single numbers stay exact."""
-    return {
-        name: value if isinstance(value, (Fraction, float)) else np.broadcast_to(value, point.shape).ravel()
-        for name, value in point.values.items()
-    }
 
 
 def _pick(values: Mapping[str, Any], indices: np.ndarray) -> dict[str, Any]:
@@ -50,7 +43,7 @@ def stationary_laws(window: ChainWindow, point: Point, solver: Dense) -> list[Se
         first point it happens at.
     """
     solver.check(max(window.shape))
-    values = flat_values(point)
+    values = point.flat()
     whole = Assembled(window, values, point.size)
     segments: list[Segment] = []
     for indices in _same_pattern(whole.pattern):
@@ -84,7 +77,9 @@ def _solve_part(
     for number in dict.fromkeys(best.tolist()):
         local = np.flatnonzero(best == number)
         chosen = found[number]
-        good = chosen.trusted[local] | (len(chosen.states) > _CLIMB_LIMIT) & chosen.pair.converged[local]
+        good = chosen.trusted[local]
+        if len(chosen.states) > _CLIMB_LIMIT:
+            good = chosen.pair.converged[local] & (chosen.pair.error[local] < _LARGE_TOLERANCE)
         if good.any():
             keep = local[good]
             segments.append(_segment(found, number, part, keep, indices[keep]))
@@ -100,7 +95,7 @@ class _Class:
         self.states = states
         log, self.gauge = part.scaled_log(states, edges)
         self.pair = perron_pair(log, part.numbers)
-        self.trusted = self.pair.converged.copy()
+        self.trusted = self.pair.converged & (self.pair.error < TOLERANCE)
         if not part.numbers.exact_exponent:
             lowest = np.where(edges[..., None], log, 0.0).min(axis=(0, 1))
             self.trusted &= lowest > np.log(part.numbers.tiny)
@@ -203,7 +198,7 @@ def _restrict(pair: PerronPair, local: np.ndarray) -> PerronPair:
     )
     return PerronPair(
         pair.excess[local], pair.vector[:, local], pair.chance[..., local], reduction,
-        pair.converged[local], pair.correction[local],
+        pair.converged[local], pair.error[local],
     )
 
 

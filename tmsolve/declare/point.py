@@ -78,6 +78,15 @@ class Point:
                 picked[name] = parse_value(name, float(np.broadcast_to(value, self.shape).ravel()[index]))
         return Point(self.chain, MappingProxyType(picked), ())
 
+    def flat(self) -> dict[str, Value]:
+        """Return the values with batch axes flattened to one; single numbers stay exact."""
+        import numpy as np
+
+        return {
+            name: value if isinstance(value, (Fraction, float)) else np.broadcast_to(value, self.shape).ravel()
+            for name, value in self.values.items()
+        }
+
     def replace(self, **values: Any) -> Point:
         """Return the same point with some values changed."""
         return bind(self.chain, {**self.values, **values})

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from typing import Any, Protocol
+from typing import Protocol
 
 import numpy as np
 
@@ -61,7 +61,7 @@ class DoobLaw:
         self.pair = pair
         self.tables = tables
         self._cumulants: dict[Key, np.ndarray] = {}
-        self._centred: dict[Key, np.ndarray | None] = {}
+        self._tables: dict[Key, np.ndarray | None] = {}
 
     @property
     def stationary(self) -> np.ndarray:
@@ -86,7 +86,7 @@ class DoobLaw:
         return self._cumulants[key]
 
     def _given(self, key: Key) -> tuple[np.ndarray | None, np.ndarray | None]:
-        return self.tables(key), exp_remainder(self._centred, key)
+        return self.tables(key), exp_remainder(self._tables, key)
 
     def _value(self, key: Key) -> np.ndarray:
         table, rest = self._given(key)
@@ -98,13 +98,13 @@ class DoobLaw:
 
     def _centre(self, key: Key) -> None:
         """Solve for the vector's derivative at ``key`` and keep the centred table."""
-        if key in self._centred:
+        if key in self._tables:
             return
         for sub in sub_keys(key)[:-1]:
             self._centre(sub)
         table, rest = self._given(key)
         if table is None and rest is None:
-            self._centred[key] = None
+            self._tables[key] = None
             self._cumulants[key] = self.stationary[0] * 0
             return
         chance = self.pair.chance
@@ -116,7 +116,7 @@ class DoobLaw:
         centred = self._differences(given, slope)
         if rest is not None:
             centred = centred - (chance * rest).sum(axis=1)[:, None]
-        self._centred[key] = centred
+        self._tables[key] = centred
         self._cumulants[key] = mean
 
     def _differences(self, table: np.ndarray, slope: np.ndarray) -> np.ndarray:
@@ -146,24 +146,44 @@ class DoobLaw:
         """Return connected correlations at several distances ≥ 1 with one pass along the chain.
 
         The propagated deviation is re-centred at every step: rounding along the stationary
-        direction would not decay.
+        direction would not decay. Long stretches between wanted distances are crossed by
+        repeated squaring.
         """
         target = self.conditional(right)
-        wanted = set(steps)
         row = self.centred_source(left)
         found: dict[int, np.ndarray] = {}
-        for step in range(1, max(wanted) + 1):
-            if step > 1:
-                row = (row[:, None] * self.pair.chance).sum(axis=0)
-                row = row - self.stationary * row.sum(axis=0)
-            if step in wanted:
-                found[step] = (row * target).sum(axis=0)
+        here = 1
+        for step in sorted(set(steps)):
+            row = self._advance(row, step - here)
+            here = step
+            found[step] = (row * target).sum(axis=0)
         return [found[step] for step in steps]
+
+    def _advance(self, row: np.ndarray, count: int) -> np.ndarray:
+        """Propagate a deviation by ``count`` steps."""
+        square = self.pair.chance
+        if count <= 4 * len(square):
+            for _ in range(count):
+                row = self._centred((row[:, None] * square).sum(axis=0))
+            return row
+        square = square - self.stationary[None]
+        while count:
+            if count & 1:
+                row = self._centred((row[:, None] * square).sum(axis=0))
+            count >>= 1
+            if count:
+                square = (square[:, :, None] * square[None]).sum(axis=1)
+                square = square - square.sum(axis=1)[:, None] * self.stationary[None]
+        return row
+
+    def _centred(self, row: np.ndarray) -> np.ndarray:
+        return row - self.stationary * row.sum(axis=0)
 
     def double_chance(self) -> np.ndarray:
         """Return the transition probabilities as doubles, batch first: shape (batch, n, n)."""
         return np.ascontiguousarray(np.moveaxis(to_double(self.pair.chance), -1, 0))
 
-    def bound(self) -> Any:
-        """Return the size of the last correction of the Perron vector, per point."""
-        return self.pair.correction
+    @property
+    def bound(self) -> np.ndarray:
+        """Bound on the relative rounding error of the Perron vector, per point."""
+        return self.pair.error

@@ -25,6 +25,9 @@ __all__ = ["PerronPair", "perron_pair"]
 _NODA_STEPS = 10
 _NEWTON_STEPS = 8
 _ACCEPT = 1e-7
+#: Largest rounding error of the vector, as bounded below, with which a point is accepted.
+TOLERANCE = 1e-10
+_FULL_BOUND_LIMIT = 32
 
 
 @dataclass(frozen=True)
@@ -42,9 +45,10 @@ class PerronPair:
     reduction : Reduction
         Factored off-diagonal part of ``chance``; carries the stationary law.
     converged : ndarray of bool, shape (batch,)
-        Whether the last correction was small enough to trust the result.
-    correction : ndarray, shape (batch,)
-        Size of the last but one relative correction of the vector.
+        Whether the iteration converged.
+    error : ndarray, shape (batch,)
+        Bound on the relative rounding error of the vector: the rounding of each row's
+        estimate of λ − 1, amplified by the deviation matrix.
     """
 
     excess: np.ndarray
@@ -52,7 +56,7 @@ class PerronPair:
     chance: np.ndarray
     reduction: Reduction
     converged: np.ndarray
-    correction: np.ndarray
+    error: np.ndarray
 
 
 def perron_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
@@ -89,7 +93,7 @@ def perron_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
             again = _bisect(rates[..., picked], defect[:, picked], numbers)
             again, second = _newton(again, rates[..., picked], defect[:, picked])
             vector[:, picked], correction[picked] = again, second
-        return _finish(vector, rates, defect, weights, correction)
+        return _finish(vector, rates, defect, weights, correction, numbers)
 
 
 def _single(weights: np.ndarray, defect: np.ndarray) -> PerronPair:
@@ -173,7 +177,12 @@ def _pivots_positive(shift: np.ndarray, defect: np.ndarray, rates: np.ndarray) -
 
 
 def _finish(
-    vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, weights: np.ndarray, correction: np.ndarray
+    vector: np.ndarray,
+    rates: np.ndarray,
+    defect: np.ndarray,
+    weights: np.ndarray,
+    correction: np.ndarray,
+    numbers: Numbers,
 ) -> PerronPair:
     scaled = rates * vector[None] / vector[:, None]
     rows = scaled.sum(axis=1) - defect
@@ -185,4 +194,16 @@ def _finish(
     reduction = reduce_states(chance)
     chance[index, index] = weights[index, index] / root
     finite = np.isfinite(excess.astype(np.float64)) & _all_positive(vector)
-    return PerronPair(excess, vector, chance, reduction, finite & (correction < _ACCEPT), correction)
+    noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(vector) + 4) * numbers.epsilon)
+    error = np.where(finite, _amplified(flow, noise).astype(np.float64), np.inf)
+    return PerronPair(excess, vector, chance, reduction, finite & (correction < _ACCEPT), error)
+
+
+def _amplified(flow: Reduction, noise: np.ndarray) -> np.ndarray:
+    """Return max_i Σ_j |D_ij| noise_j with D the deviation matrix; probed by signs for large matrices."""
+    if len(noise) <= _FULL_BOUND_LIMIT:
+        return (np.abs(flow.deviation()) * noise[None]).sum(axis=1).max(axis=0)
+    signs = np.random.default_rng(0).choice([-1.0, 1.0], size=(4, len(noise), 1))
+    probes = [noise * sign for sign in signs]
+    sizes = [np.abs(flow.poisson(probe - (flow.stationary * probe).sum(axis=0))).max(axis=0) for probe in probes]
+    return np.max(sizes, axis=0) * 4

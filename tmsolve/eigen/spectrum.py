@@ -9,10 +9,12 @@ and is accurate although 1 − λ_k/λ₁ is far below rounding.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
 from ..operators.numbers import to_double
+from .components import communicating_classes
 from .perron import PerronPair
 from .reduction import reduce_states
 
@@ -70,13 +72,14 @@ def _few(chance: np.ndarray) -> np.ndarray:
     """Solve the one or two remaining eigenvalues of 2×2 and 3×3 matrices directly."""
     if len(chance) == 2:
         return (1 - chance[0, 1] - chance[1, 0]).astype(np.complex128)[:, None]
-    p = chance
-    half = (p[0, 0] + p[1, 1] + p[2, 2] - 1) / 2
-    minors = p[0, 0] * p[1, 1] - p[0, 1] * p[1, 0] + p[0, 0] * p[2, 2] - p[0, 2] * p[2, 0]
-    product = minors + p[1, 1] * p[2, 2] - p[1, 2] * p[2, 1] - 2 * half
-    root = np.sqrt((half * half - product).astype(np.complex128))
+    # Subtracting the first row takes the Perron mode out: what is left is the 2×2 matrix
+    # p_ij − p_0j, whose discriminant is a sum of squares for degenerate pairs too.
+    b = chance[1:, 1:] - chance[0, 1:]
+    half = (b[0, 0] + b[1, 1]) / 2
+    root = np.sqrt((((b[0, 0] - b[1, 1]) / 2) ** 2 + b[0, 1] * b[1, 0]).astype(np.complex128))
     larger = half + np.where(half < 0, -root, root)
     safe = np.where(larger == 0, 1, larger)
+    product = b[0, 0] * b[1, 1] - b[0, 1] * b[1, 0]
     return np.stack([larger, np.where(larger == 0, 0, product / safe)], axis=-1)
 
 
@@ -97,32 +100,44 @@ def _refine(pair: PerronPair, log_modulus: np.ndarray, phase: np.ndarray) -> Non
         picked = np.flatnonzero(close & (period == steps))
         if picked.size:
             chance = pair.chance[..., picked]
-            log_modulus[picked, 0] = _near_one(chance, pair.reduction.stationary[:, picked], steps)
+            refined = _near_one(chance, steps)
+            known = log_modulus[picked, 0]
+            log_modulus[picked, 0] = np.where(np.abs(refined - known) < _NEAR, refined, known)
 
 
-def _near_one(chance: np.ndarray, law: np.ndarray, steps: int) -> np.ndarray:
-    """Return ln |λ₂/λ₁| through the largest eigenvalue of the deviation matrix of ``steps`` steps."""
+def _near_one(chance: np.ndarray, steps: int) -> np.ndarray:
+    """Return ln |λ₂/λ₁| through the largest eigenvalue of the deviation matrix of ``steps`` steps.
+
+    0 where the chain of ``steps`` steps falls apart: the eigenvalue lies on the unit circle.
+    """
     if steps == 2:
         chance = (chance[:, :, None] * chance[None]).sum(axis=1)
     rates = chance.copy()
     index = np.arange(len(rates))
     rates[index, index] = rates[index, index] * 0
-    reduction = reduce_states(rates)
-    deviation = reduction.deviation()
-    scale = np.abs(deviation).max(axis=(0, 1))
-    scaled = np.moveaxis(to_double(deviation / scale), -1, 0)
-    largest = np.abs(np.linalg.eigvals(scaled).astype(np.complex128)).max(axis=-1)
-    gap = 1 / (largest * scale)
-    return to_double(np.array([_log1m(g) for g in gap], dtype=object)) / steps
+    result = np.zeros(chance.shape[-1])
+    with np.errstate(all="ignore"):
+        whole = _irreducible(rates)
+        if whole.any():
+            deviation = reduce_states(rates[..., whole]).deviation()
+            scale = np.abs(deviation).max(axis=(0, 1))
+            scaled = np.moveaxis(to_double(deviation / scale), -1, 0)
+            largest = np.abs(np.linalg.eigvals(scaled).astype(np.complex128)).max(axis=-1)
+            result[whole] = [_log1m(gap) for gap in 1 / (largest * scale)]
+    return result / steps
 
 
-def _log1m(gap: object) -> object:
-    if isinstance(gap, float):
-        return float(np.log1p(-gap))
-    import mpmath
+def _irreducible(rates: np.ndarray) -> np.ndarray:
+    return np.array([
+        len(classes) == 1 and len(classes[0]) == len(rates)
+        for classes in (communicating_classes(np.asarray(rates[..., i] != 0, dtype=bool)) for i in range(rates.shape[-1]))
+    ])
 
-    # ln(1 − g) = −g to double precision for the gaps that need long numbers.
-    return -gap if gap < mpmath.mpf(10) ** -18 else float(np.log1p(-float(gap)))
+
+def _log1m(gap: Any) -> float:
+    """Return ln(1 − g); long numbers are rounded only where their exponent fits."""
+    small = float(gap)
+    return float(np.log1p(-small)) if small < 1 else 0.0
 
 
 def modes(chance: np.ndarray) -> Modes:

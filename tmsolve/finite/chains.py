@@ -8,7 +8,6 @@ from typing import Any
 
 import numpy as np
 
-from ..answer.laws import flat_values
 from ..assemble.matrix import handle
 from ..assemble.window import build_window
 from ..declare import Point
@@ -129,7 +128,7 @@ class FiniteChain:
         if wide not in self._tracks:
             window = build_window(chain, wide)
             opening = None if self.closed else OpenWindows(window, self.cells, self.left, self.right)
-            self._tracks[wide] = Track(window, self.cells, opening, flat_values(self.point), self.point.size)
+            self._tracks[wide] = Track(window, self.cells, opening, self.point.flat(), self.point.size)
         return self._tracks[wide]
 
     def _shaped(self, flat: np.ndarray) -> np.ndarray:

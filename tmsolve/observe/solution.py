@@ -237,19 +237,19 @@ class Solution:
 
     @property
     def diagnostics(self) -> Mapping[str, Any]:
-        """How the numbers were obtained: matrix size, length of numbers per point, last correction."""
+        """How the numbers were obtained: matrix size, length of numbers and rounding bound per point."""
         window, segments = self.laws.resolved()
         bits = np.full(self.point.size, 53)
-        correction = np.zeros(self.point.size)
+        error = np.zeros(self.point.size)
         for segment in segments:
             bits[segment.indices] = segment.bits
-            correction[segment.indices] = segment.double(segment.law.bound())
+            error[segment.indices] = segment.double(segment.law.bound)
         return {
             "matrix": window.shape,
             "nonzeros": window.nonzeros,
             "interior": len(window.interior),
             "bits": bits.reshape(self.shape)[()],
-            "correction": correction.reshape(self.shape)[()],
+            "vector_error": error.reshape(self.shape)[()],
         }
 
 
