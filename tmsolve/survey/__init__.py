@@ -1,0 +1,1 @@
+"""Scans over parameter grids and located crossovers: the verbs scan and crossovers."""
