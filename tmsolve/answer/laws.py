@@ -193,11 +193,8 @@ def _segment(found: list[_Class], number: int, part: Assembled, local: np.ndarra
 def _restrict(pair: PerronPair, local: np.ndarray) -> PerronPair:
     if local.size == pair.excess.shape[-1]:
         return pair
-    reduction = type(pair.reduction)(
-        pair.reduction.rates[..., local], pair.reduction.pivots[:, local], pair.reduction.stationary[:, local]
-    )
     return PerronPair(
-        pair.excess[local], pair.vector[:, local], pair.chance[..., local], reduction,
+        pair.excess[local], pair.vector[:, local], pair.chance[..., local], pair.reduction.at(local),
         pair.converged[local], pair.error[local],
     )
 

@@ -86,7 +86,7 @@ def smallest_cut(sizes: Mapping[str, int], placements: Iterable[Sequence[tuple[s
     edges = edges_of(placements)
     thresholds = dict.fromkeys(kinds, 0)
     if len(kinds) > 1 and edges:
-        search = _descend if len(kinds) <= _SUBSET_LIMIT else _programme
+        search = _descend if len(kinds) <= _SUBSET_LIMIT else _flow
         thresholds = search(sizes, edges, thresholds)
     widths = _widths(thresholds, edges)
     first = min((thresholds[kind] - width for kind, width in widths.items() if width), default=None)
@@ -121,22 +121,29 @@ def _descend(sizes: Mapping[str, int], edges: set[Edge], start: Mapping[str, int
         best, cost = moved[costs.index(lowest)], lowest
 
 
-def _programme(sizes: Mapping[str, int], edges: set[Edge], start: Mapping[str, int]) -> dict[str, int]:
-    """Solve the same minimisation as a linear programme, whose vertices are integral (differences only)."""
-    import numpy as np
-    from scipy.optimize import linprog
+def _flow(sizes: Mapping[str, int], edges: set[Edge], start: Mapping[str, int]) -> dict[str, int]:
+    """Find the same minimum as the smallest vertex cut of a long piece of the chain.
 
-    kinds = list(start)
-    rank = {kind: i for i, kind in enumerate(kinds)}
-    rows, bounds = [], []
-    for kind, other, distance in sorted(edges):
-        row = np.zeros(2 * len(kinds))
-        if kind != other:
-            row[rank[kind]], row[rank[other]] = 1, -1
-        row[len(kinds) + rank[kind]] = -1
-        rows.append(row)
-        bounds.append(-distance)
-    cost = np.concatenate([np.zeros(len(kinds)), [math.log(sizes[kind]) for kind in kinds]])
-    limits = [(0, 0)] + [(None, None)] * (len(kinds) - 1) + [(0, None)] * len(kinds)
-    solution = linprog(cost, A_ub=np.array(rows), b_ub=np.array(bounds), bounds=limits, method="highs-ds")
-    return {kind: round(float(solution.x[rank[kind]])) for kind in kinds}
+    Each site becomes two nodes joined by an arc of capacity ln q (in integer units); the
+    thresholds are the last cells on the source's side. The union of a minimum cut's left
+    side with its own translates is again a minimum cut, so thresholds lose nothing.
+    """
+    import networkx as nx
+
+    reach = max(abs(distance) for _, _, distance in edges) or 1
+    cells = range(4 * reach + 4)
+    graph = nx.DiGraph()
+    for kind, size in sizes.items():
+        capacity = max(1, round(math.log(size) * 2**40))
+        for cell in cells:
+            graph.add_edge((kind, cell, "in"), (kind, cell, "out"), capacity=capacity)
+            if cell < reach:
+                graph.add_edge("left", (kind, cell, "in"))
+            if cell >= cells.stop - reach:
+                graph.add_edge((kind, cell, "out"), "right")
+    for kind, other, distance in edges:
+        for cell in cells:
+            if cell + distance in cells:
+                graph.add_edge((kind, cell, "out"), (other, cell + distance, "in"))
+    _, (source_side, _) = nx.minimum_cut(graph, "left", "right")
+    return {kind: 1 + max(cell for cell in cells if (kind, cell, "in") in source_side) for kind in start}

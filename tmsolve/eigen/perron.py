@@ -18,7 +18,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..operators.numbers import Numbers
-from .reduction import Reduction, reduce_states, solve_shifted
+from .reduction import Reduction, heavy_first, reduce_states, solve_shifted
 
 __all__ = ["PerronPair", "perron_pair"]
 
@@ -130,9 +130,10 @@ def _all_positive(vector: np.ndarray) -> np.ndarray:
 def _newton(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
     """Correct the vector until the correction is small; return it with the last correction's size."""
     size = np.full(vector.shape[-1], np.inf)
+    order = heavy_first(reduce_states(rates * vector[None] / vector[:, None]).stationary)
     for _ in range(_NEWTON_STEPS):
         scaled = rates * vector[None] / vector[:, None]
-        reduction = reduce_states(scaled)
+        reduction = reduce_states(scaled, order)
         rows = scaled.sum(axis=1) - defect
         excess = (reduction.stationary * rows).sum(axis=0)
         step = reduction.poisson(rows - excess)
@@ -186,12 +187,13 @@ def _finish(
 ) -> PerronPair:
     scaled = rates * vector[None] / vector[:, None]
     rows = scaled.sum(axis=1) - defect
-    flow = reduce_states(scaled)
+    order = heavy_first(reduce_states(scaled).stationary)
+    flow = reduce_states(scaled, order)
     excess = (flow.stationary * rows).sum(axis=0)
     root = 1 + excess
     chance = scaled / root
     index = np.arange(len(vector))
-    reduction = reduce_states(chance)
+    reduction = reduce_states(chance, order)
     chance[index, index] = weights[index, index] / root
     finite = np.isfinite(excess.astype(np.float64)) & _all_positive(vector)
     noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(vector) + 4) * numbers.epsilon)

@@ -13,7 +13,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-__all__ = ["Reduction", "reduce_states", "solve_shifted"]
+__all__ = ["Reduction", "heavy_first", "reduce_states", "solve_shifted"]
 
 _BLOCK = 64
 _BLOCKED_FROM = 160
@@ -31,12 +31,15 @@ class Reduction:
     pivots : ndarray, shape (n, batch)
         Total rates out of the states at their elimination; entry 0 is unused.
     stationary : ndarray, shape (n, batch)
-        Stationary law.
+        Stationary law, in the caller's order of states.
+    order : ndarray of int, shape (n,) or (n, batch), or None
+        Which state stands at each place of ``rates``; ``None`` for the caller's own order.
     """
 
     rates: np.ndarray
     pivots: np.ndarray
     stationary: np.ndarray
+    order: np.ndarray | None = None
 
     def poisson(self, source: np.ndarray) -> np.ndarray:
         """Solve Σ_j q_ij (z_i − z_j) = b_i with Σ π_i z_i = 0, for b of zero stationary mean.
@@ -46,13 +49,20 @@ class Reduction:
         source : ndarray, shape (n, batch)
         """
         n = len(source)
-        b = source.copy()
+        b = source.copy() if self.order is None else _gathered(source, self.order)
         for k in range(n - 1, 0, -1):
             b[:k] += self.rates[:k, k] * b[k]
         z = np.zeros_like(b)
         for k in range(1, n):
             z[k] = (b[k] + (self.rates[k, :k] * z[:k]).sum(axis=0)) / self.pivots[k]
+        if self.order is not None:
+            z = _scattered(z, self.order)
         return z - (self.stationary * z).sum(axis=0)
+
+    def at(self, points: np.ndarray) -> Reduction:
+        """Return the factorisation at some points of the batch."""
+        order = self.order[:, points] if self.order is not None and self.order.ndim == 2 else self.order
+        return Reduction(self.rates[..., points], self.pivots[:, points], self.stationary[:, points], order)
 
     def deviation(self) -> np.ndarray:
         """Return the group inverse of the rate matrix, shape (n, n, batch): D = ∫ (e^{−Qt} − 1π) dt."""
@@ -65,13 +75,41 @@ class Reduction:
         return np.stack(columns, axis=1)
 
 
-def reduce_states(rates: np.ndarray) -> Reduction:
+def heavy_first(stationary: np.ndarray) -> np.ndarray | None:
+    """Return the order of states by falling probability, ``None`` where that is the order they have.
+
+    Rare states must be eliminated first: the right side of a frequent state, passed on to a
+    rare one, grows by the ratio of their probabilities, and so does its rounding.
+    """
+    if bool((stationary[:-1] >= stationary[1:]).all()):
+        return None
+    order = np.argsort(-stationary, axis=0, kind="stable")
+    return order[:, 0] if bool((order == order[:, :1]).all()) else order
+
+
+def _gathered(array: np.ndarray, order: np.ndarray) -> np.ndarray:
+    return array[order] if order.ndim == 1 else np.take_along_axis(array, order, axis=0)
+
+
+def _scattered(array: np.ndarray, order: np.ndarray) -> np.ndarray:
+    result = np.empty_like(array)
+    if order.ndim == 1:
+        result[order] = array
+    else:
+        np.put_along_axis(result, order, array, axis=0)
+    return result
+
+
+def reduce_states(rates: np.ndarray, order: np.ndarray | None = None) -> Reduction:
     """Factor off-diagonal rates of an irreducible chain.
 
     Parameters
     ----------
     rates : ndarray, shape (n, n, batch)
         Non-negative; the diagonal is ignored.
+    order : ndarray of int, shape (n,) or (n, batch), optional
+        Order of elimination, last first; see `heavy_first`. The stationary law is accurate
+        in any order, solutions of equations in the order of falling probability.
 
     Examples
     --------
@@ -79,7 +117,12 @@ def reduce_states(rates: np.ndarray) -> Reduction:
     [0.75, 0.25]
     """
     n = len(rates)
-    a = rates.copy()
+    if order is None:
+        a = rates.copy()
+    elif order.ndim == 1:
+        a = rates[np.ix_(order, order)]
+    else:
+        a = np.take_along_axis(np.take_along_axis(rates, order[:, None], axis=0), order[None], axis=1)
     pivots = np.zeros_like(a[0])
     if n >= _BLOCKED_FROM and a.dtype != object:
         for i in range(a.shape[-1]):
@@ -89,7 +132,8 @@ def reduce_states(rates: np.ndarray) -> Reduction:
             pivots[k] = a[k, :k].sum(axis=0)
             a[:k, k] /= pivots[k]
             a[:k, :k] += a[:k, None, k] * a[None, k, :k]
-    return Reduction(a, pivots, _stationary(a))
+    law = _stationary(a)
+    return Reduction(a, pivots, law if order is None else _scattered(law, order), order)
 
 
 def _blocked(a: np.ndarray) -> tuple[np.ndarray, np.ndarray]:

@@ -16,7 +16,7 @@ import numpy as np
 from ..operators.numbers import to_double
 from .components import communicating_classes
 from .perron import PerronPair
-from .reduction import reduce_states
+from .reduction import heavy_first, reduce_states
 
 __all__ = ["Modes", "clusters", "leading_modes", "modes", "ratios"]
 
@@ -119,7 +119,8 @@ def _near_one(chance: np.ndarray, steps: int) -> np.ndarray:
     with np.errstate(all="ignore"):
         whole = _irreducible(rates)
         if whole.any():
-            deviation = reduce_states(rates[..., whole]).deviation()
+            first = reduce_states(rates[..., whole])
+            deviation = reduce_states(rates[..., whole], heavy_first(first.stationary)).deviation()
             scale = np.abs(deviation).max(axis=(0, 1))
             scaled = np.moveaxis(to_double(deviation / scale), -1, 0)
             largest = np.abs(np.linalg.eigvals(scaled).astype(np.complex128)).max(axis=-1)
