@@ -19,6 +19,9 @@ if TYPE_CHECKING:
 
 __all__ = ["Point"]
 
+#: Smallest temperature above 0; powers of its inverse must not overflow.
+_SMALLEST = Fraction(1, 10**50)
+
 
 @dataclass(frozen=True, eq=False)
 class Point:
@@ -129,14 +132,15 @@ def bind(chain: Chain, values: Mapping[str, Any]) -> Point:
 
 
 def check_temperature(value: Value) -> None:
-    """Refuse temperatures that are negative or not finite."""
+    """Refuse temperatures that are negative, not finite, or too small for 1/T."""
     if isinstance(value, (Fraction, float)):
-        wrong = None if math.isfinite(value) and value >= 0 else float(value)
+        wrong = None if math.isfinite(value) and (value == 0 or value >= _SMALLEST) else float(value)
     else:
-        bad = ~((value >= 0) & (value < math.inf))
+        bad = ~((value == 0) | ((value >= float(_SMALLEST)) & (value < math.inf)))
         wrong = float(value[bad].flat[0]) if bad.any() else None
     if wrong is not None:
-        raise ParameterError(f"T must be a finite temperature >= 0 in energy units, got {wrong!r}")
+        least = "; the smallest above 0 is 1e-50" if 0 <= wrong < 1 else ""
+        raise ParameterError(f"T must be a finite temperature >= 0 in energy units, got {wrong!r}{least}")
 
 
 def _shape(bound: Mapping[str, Value]) -> tuple[int, ...]:
