@@ -65,7 +65,7 @@ def _howard(steps: np.ndarray) -> float:
     n = len(steps)
     rows = np.arange(n)
     choice = steps.argmin(axis=1)
-    scale = max(1.0, float(np.abs(steps[np.isfinite(steps)]).max()))
+    scale = float(np.abs(steps[np.isfinite(steps)]).max())
     for _ in range(10 * n):
         mean, value = _evaluate(steps[rows, choice], choice)
         step_mean = np.where(np.isfinite(steps), mean[None, :], np.inf).min(axis=1)
@@ -134,4 +134,4 @@ def reduced_costs(cost: np.ndarray, mean: np.ndarray, potentials: np.ndarray, ep
     """
     raw = cost - mean + potentials[:, None] - potentials[None, :]
     scale = np.abs(cost) + np.abs(mean) + np.abs(potentials[:, None]) + np.abs(potentials[None, :])
-    return np.where(np.abs(raw) <= 16 * epsilon * scale, raw * 0, raw)
+    return np.where(np.abs(raw) <= 16 * epsilon * scale, mean * 0, raw)
