@@ -21,6 +21,7 @@ __all__ = [
     "TooLargeError",
     "did_you_mean",
     "listing",
+    "unknown_parameter",
 ]
 
 
@@ -97,6 +98,13 @@ def did_you_mean(name: str, choices: Iterable[str]) -> str:
     close = difflib.get_close_matches(name, names, n=1, cutoff=0.6)
     close = close or [lowered[c] for c in difflib.get_close_matches(name.lower(), lowered, n=1, cutoff=0.6)]
     return f" Did you mean {close[0]!r}?" if close else ""
+
+
+def unknown_parameter(name: object, parameters: Iterable[str]) -> ParameterError:
+    """Return the error for a name that is neither a parameter of a chain nor ``T``."""
+    names = list(parameters)
+    hint = did_you_mean(str(name), [*names, "T"])
+    return ParameterError(f"no parameter {name!r}; this chain has {listing(names)} and T.{hint}")
 
 
 def listing(names: Iterable[object]) -> str:

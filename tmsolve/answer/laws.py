@@ -114,7 +114,11 @@ def _dominant(found: list[_Class], part: Assembled, point: Point, indices: np.nd
     tied = (roots >= top - _TIE * scale).sum(axis=0) > 1
     if tied.any():
         i = int(np.flatnonzero(tied)[0])
-        names = [_names(part.window, c.states) for c, root in zip(found, roots[:, i], strict=True) if root >= top[i] - _TIE * scale[i]]
+        names = [
+            _names(part.window, c.states)
+            for c, root in zip(found, roots[:, i], strict=True)
+            if root >= top[i] - _TIE * scale[i]
+        ]
         raise SolveError(
             f"the chain falls into classes of states that never mix and tie in free energy at "
             f"{point.pick(int(indices[i]))}: {' and '.join(names)}. Means are not defined; lift the tie with a field, "
@@ -132,9 +136,7 @@ def _names(window: ChainWindow, states: np.ndarray) -> str:
     return "{" + "; ".join(shown) + ("; …" if len(states) > 4 else "") + "}"
 
 
-def _climb(
-    part: Assembled, values: Mapping[str, Any], index: int, number: int, solver: Dense, point: Point
-) -> Segment:
+def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, solver: Dense, point: Point) -> Segment:
     """Solve one point again with longer and longer numbers."""
     where = np.array([index])
     bits = _FIRST_BITS
@@ -166,9 +168,7 @@ def _segment(found: list[_Class], number: int, part: Assembled, local: np.ndarra
     pair = _restrict(chosen.pair, local)
     gauge = Gauge(chosen.gauge.energy[local], chosen.gauge.potentials[:, local], chosen.gauge.offset[local])
     tables = _edge_tables(part, chosen.states, gauge, local)
-    others = tuple(
-        _other_spectrum(other, chosen, local) for i, other in enumerate(found) if i != number
-    )
+    others = tuple(_other_spectrum(other, chosen, local) for i, other in enumerate(found) if i != number)
     memory: list[tuple[np.ndarray, np.ndarray]] = []
 
     def spectrum() -> tuple[np.ndarray, np.ndarray]:
@@ -194,8 +194,12 @@ def _restrict(pair: PerronPair, local: np.ndarray) -> PerronPair:
     if local.size == pair.excess.shape[-1]:
         return pair
     return PerronPair(
-        pair.excess[local], pair.vector[:, local], pair.chance[..., local], pair.reduction.at(local),
-        pair.converged[local], pair.error[local],
+        pair.excess[local],
+        pair.vector[:, local],
+        pair.chance[..., local],
+        pair.reduction.at(local),
+        pair.converged[local],
+        pair.error[local],
     )
 
 
@@ -222,14 +226,10 @@ def _edge_tables(
     return table
 
 
-def _other_spectrum(
-    other: _Class, chosen: _Class, local: np.ndarray
-) -> Callable[[], tuple[np.ndarray, np.ndarray]]:
+def _other_spectrum(other: _Class, chosen: _Class, local: np.ndarray) -> Callable[[], tuple[np.ndarray, np.ndarray]]:
     def spectrum() -> tuple[np.ndarray, np.ndarray]:
         shift = to_double(other.log_eigenvalue - chosen.log_eigenvalue)[local, None]
         log_modulus, phase = ratios(_restrict(other.pair, local))
         return np.concatenate([shift, log_modulus + shift], -1), np.concatenate([shift * 0, phase], -1)
 
     return spectrum
-
-

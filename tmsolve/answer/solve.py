@@ -47,7 +47,11 @@ def solve(point: Point, *, solver: Solver | None = None) -> Solution:
     [2.620448, 1.425591, 0.251404]
     """
     if not isinstance(point, Point):
-        hint = "bind its parameters first: solve(chain.at(T=…, …))" if isinstance(point, Chain) else "make one with chain.at(T=…, …)"
+        hint = (
+            "bind its parameters first: solve(chain.at(T=…, …))"
+            if isinstance(point, Chain)
+            else "make one with chain.at(T=…, …)"
+        )
         raise ParameterError(f"solve takes a point, got {point!r}; {hint}")
     chosen = Auto() if solver is None else solver
     if not isinstance(chosen, (Auto, Dense)):

@@ -111,9 +111,7 @@ def _descend(sizes: Mapping[str, int], edges: set[Edge], start: Mapping[str, int
     kinds = list(sizes)
     subsets = [chosen for size in range(1, len(kinds)) for chosen in combinations(kinds, size)]
     while True:
-        moved = [
-            {kind: value + (kind in chosen) for kind, value in best.items()} for chosen in subsets
-        ]
+        moved = [{kind: value + (kind in chosen) for kind, value in best.items()} for chosen in subsets]
         costs = [_cost(sizes, candidate, edges) for candidate in moved]
         lowest = min(costs)
         if lowest >= cost - 1e-9:

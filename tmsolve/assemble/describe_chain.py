@@ -85,7 +85,9 @@ def _table(head: Sequence[str], rows: Sequence[Sequence[str]]) -> list[str]:
     if not rows:
         return [f"no {head[0]}s"]
     widths = [max(len(row[i]) for row in (head, *rows)) for i in range(len(head))]
-    lines = ["  ".join(text.ljust(width) for text, width in zip(row, widths, strict=True)).rstrip() for row in (head, *rows)]
+    lines = [
+        "  ".join(text.ljust(width) for text, width in zip(row, widths, strict=True)).rstrip() for row in (head, *rows)
+    ]
     return [lines[0], "  ".join("─" * width for width in widths), *lines[1:]]
 
 
@@ -133,7 +135,9 @@ def _places(term: Term) -> str:
 
 
 def _term_row(term: Term, chain: Chain) -> tuple[str, str, str, str]:
-    affine = term.role == "energy" and affine_table(term, [chain.cell[kind] for kind, _ in term.places if kind]) is not None
+    affine = (
+        term.role == "energy" and affine_table(term, [chain.cell[kind] for kind, _ in term.places if kind]) is not None
+    )
     parameters = ", ".join(term.parameters) or "–"
     return term.role + (" (linear)" if affine else ""), _source(term), _places(term), parameters
 

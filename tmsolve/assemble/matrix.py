@@ -154,7 +154,7 @@ class Assembled:
         for name in dict.fromkeys(key):
             for index, sites, table in self._sources(name):
                 if index is None:
-                    zero = np.full(table.shape[:-1] + (1,), self.numbers.scalar(0))
+                    zero = np.full((*table.shape[:-1], 1), self.numbers.scalar(0))
                     extra.append((sites, LogTable(zero, zero, {(name,): table})))
                 else:
                     old = tables[index]

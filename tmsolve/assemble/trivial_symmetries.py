@@ -48,24 +48,22 @@ def trivial_symmetries(chain: Chain) -> list[str]:
     return found
 
 
-def _all_exchanges(
-    chain: Chain, sizes: Mapping[str, int], tables: Sequence[tuple[Term, AffineTable]]
-) -> list[str]:
+def _all_exchanges(chain: Chain, sizes: Mapping[str, int], tables: Sequence[tuple[Term, AffineTable]]) -> list[str]:
     """Find sets of states that can be exchanged at will, the same on every site."""
     if len(set(sizes.values())) != 1:
         return []
     size = next(iter(sizes.values()))
     if size < 3:
         return []
-    pairs = [pair for pair in combinations(range(size), 2) if _holds(chain, tables, dict.fromkeys(sizes, _swap(size, pair)))]
+    pairs = [
+        pair for pair in combinations(range(size), 2) if _holds(chain, tables, dict.fromkeys(sizes, _swap(size, pair)))
+    ]
     groups = list(_groups(size, pairs))
     if any(len(group) == size for group in groups):
         return ["any permutation of the states of every site"]
     labels = next(iter(chain.cell.values())).labels
     return [
-        f"any permutation of the states {', '.join(labels[i] for i in group)}"
-        for group in groups
-        if len(group) > 2
+        f"any permutation of the states {', '.join(labels[i] for i in group)}" for group in groups if len(group) > 2
     ]
 
 
@@ -88,9 +86,7 @@ def _groups(size: int, pairs: Sequence[tuple[int, int]]) -> Iterator[list[int]]:
         yield sorted(group)
 
 
-def _holds(
-    chain: Chain, tables: Sequence[tuple[Term, AffineTable]], orders: Mapping[str, Sequence[int]]
-) -> bool:
+def _holds(chain: Chain, tables: Sequence[tuple[Term, AffineTable]], orders: Mapping[str, Sequence[int]]) -> bool:
     for kind, order in orders.items():
         weights = chain.cell[kind].weights
         if any(weights[i] != weights[j] for i, j in enumerate(order)):

@@ -92,7 +92,7 @@ def build_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
 def _build(chain: Chain, names: tuple[str, ...]) -> ChainWindow:
     sizes = {kind: len(states) for kind, states in chain.cell.items()}
     wanted = [*chain.terms, *(part for name in names for part in chain.observable(name))]
-    cut = smallest_cut(sizes, [term.places for term in wanted])
+    cut = smallest_cut(sizes, [term.sites for term in wanted])
     left = cut.sites
     right = tuple((kind, cell + 1) for kind, cell in left)
     new = [(kind, threshold) for kind, threshold in cut.thresholds.items()]
@@ -116,8 +116,8 @@ def _build(chain: Chain, names: tuple[str, ...]) -> ChainWindow:
 
 def _copy(term: Term, cut: Cut) -> Factor:
     """Take the copy of a term whose last site is new in this window."""
-    anchor = min(cut.thresholds[kind] - shift for kind, shift in term.places)
-    return Factor(term, tuple((kind, anchor + shift) for kind, shift in term.places))
+    anchor = min(cut.thresholds[kind] - shift for kind, shift in term.sites)
+    return Factor(term, tuple((kind, anchor + shift) for kind, shift in term.sites))
 
 
 def untouched(factors: Iterable[Factor], sites: Iterable[Site], sizes: Mapping[str, int]) -> list[Factor]:

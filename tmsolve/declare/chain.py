@@ -7,7 +7,7 @@ from dataclasses import dataclass
 from types import MappingProxyType
 from typing import Any
 
-from ..errors import DeclarationError, ParameterError, did_you_mean, listing
+from ..errors import DeclarationError, ParameterError, did_you_mean, listing, unknown_parameter
 from .point import Point, bind, check_temperature
 from .resolve import resolve_observables, resolve_terms
 from .states import StateSet
@@ -139,10 +139,7 @@ class Chain:
         fixed = dict(self.fixed)
         for name, value in values.items():
             if name not in known:
-                raise ParameterError(
-                    f"no parameter {name!r}; this chain has {listing(self.parameters)} and T."
-                    f"{did_you_mean(name, known)}"
-                )
+                raise unknown_parameter(name, self.parameters)
             fixed[name] = parse_value(name, value)
             if hasattr(fixed[name], "shape"):
                 raise ParameterError(f"fix takes single numbers, got an array for {name!r}; give arrays to chain.at(…)")
@@ -202,7 +199,9 @@ def _defaults(terms: Iterable[Term]) -> dict[str, Value]:
     for item in terms:
         for name, raw in item.defaults.items():
             if name == "T":
-                raise DeclarationError(f"T in {item.name} is the temperature and takes no default; it is bound by at(T=…)")
+                raise DeclarationError(
+                    f"T in {item.name} is the temperature and takes no default; it is bound by at(T=…)"
+                )
             try:
                 value = parse_value(name, raw)
             except ParameterError as cause:

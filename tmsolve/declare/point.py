@@ -9,7 +9,7 @@ from fractions import Fraction
 from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
-from ..errors import ParameterError, did_you_mean, listing
+from ..errors import ParameterError, did_you_mean, listing, unknown_parameter
 from .values import Value, parse_value
 
 if TYPE_CHECKING:
@@ -110,9 +110,7 @@ def bind(chain: Chain, values: Mapping[str, Any]) -> Point:
     known = (*chain.parameters, "T")
     for name in values:
         if name not in known:
-            raise ParameterError(
-                f"no parameter {name!r}; this chain has {listing(chain.parameters)} and T.{did_you_mean(name, known)}"
-            )
+            raise unknown_parameter(name, chain.parameters)
     bound: dict[str, Value] = {}
     missing = []
     for name in known:

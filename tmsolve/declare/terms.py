@@ -67,6 +67,11 @@ class Term:
         return "T" in self.parameters
 
     @property
+    def sites(self) -> tuple[tuple[str, int], ...]:
+        """The places of a term that a chain has resolved: every kind is known."""
+        return tuple((kind, shift) for kind, shift in self.places if kind is not None)
+
+    @property
     def reach(self) -> int:
         """Cells between the leftmost and the rightmost place."""
         shifts = [shift for _, shift in self.places]
@@ -187,7 +192,12 @@ def weight(function: Callable[..., Any] | Term, *places: Place | int) -> Term:
 def _place(place: Any) -> Place:
     if isinstance(place, Integral) and not isinstance(place, bool):
         return None, int(place)
-    if isinstance(place, tuple) and len(place) == 2 and isinstance(place[1], Integral) and not isinstance(place[1], bool):
+    if (
+        isinstance(place, tuple)
+        and len(place) == 2
+        and isinstance(place[1], Integral)
+        and not isinstance(place[1], bool)
+    ):
         return _kind(place[0]), int(place[1])
     raise DeclarationError(f'a place is (kind, shift) such as ("a", 1), or a whole shift, got {place!r}')
 
@@ -212,7 +222,16 @@ def delta(*states: Any) -> int:
 
 
 #: cos(2π k/12) for the turns where it is rational, by numerator over 12.
-_RATIONAL_COSINES = {0: 1, 2: Fraction(1, 2), 3: 0, 4: Fraction(-1, 2), 6: -1, 8: Fraction(-1, 2), 9: 0, 10: Fraction(1, 2)}
+_RATIONAL_COSINES = {
+    0: 1,
+    2: Fraction(1, 2),
+    3: 0,
+    4: Fraction(-1, 2),
+    6: -1,
+    8: Fraction(-1, 2),
+    9: 0,
+    10: Fraction(1, 2),
+}
 
 
 def cos_turns(n: Any, q: Any) -> Any:

@@ -163,7 +163,9 @@ def _stationary(a: np.ndarray) -> np.ndarray:
     return law / law.sum(axis=0)
 
 
-def solve_shifted(shift: np.ndarray, defect: np.ndarray, rates: np.ndarray, right: np.ndarray, floor: float) -> np.ndarray:
+def solve_shifted(
+    shift: np.ndarray, defect: np.ndarray, rates: np.ndarray, right: np.ndarray, floor: float
+) -> np.ndarray:
     """Solve (shift + defect − rates) y = right for a non-negative right side.
 
     The matrix is an M-matrix up to rounding; a pivot that rounding has made too small is

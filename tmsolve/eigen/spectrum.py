@@ -129,10 +129,14 @@ def _near_one(chance: np.ndarray, steps: int) -> np.ndarray:
 
 
 def _irreducible(rates: np.ndarray) -> np.ndarray:
-    return np.array([
-        len(classes) == 1 and len(classes[0]) == len(rates)
-        for classes in (communicating_classes(np.asarray(rates[..., i] != 0, dtype=bool)) for i in range(rates.shape[-1]))
-    ])
+    return np.array(
+        [
+            len(classes) == 1 and len(classes[0]) == len(rates)
+            for classes in (
+                communicating_classes(np.asarray(rates[..., i] != 0, dtype=bool)) for i in range(rates.shape[-1])
+            )
+        ]
+    )
 
 
 def _log1m(gap: Any) -> float:

@@ -60,7 +60,7 @@ class FiniteChain:
     def total(self, a: str) -> np.ndarray:
         """Mean of an observable summed over the whole chain."""
         table = self._track((a,)).everywhere({"x": handle("observable", (), a)}, ("x",))
-        return self._shaped(table.tilts.get(("x",), 0.0))
+        return self._shaped(table.tilts[("x",)] if ("x",) in table.tilts else np.zeros(1))
 
     def mean(self, a: str) -> np.ndarray:
         """Mean of an observable per cell, averaged over the chain."""
@@ -70,7 +70,8 @@ class FiniteChain:
         """Covariance of the totals of two observables over the whole chain; the variance for one."""
         other = a if b is None else b
         mark = {"x": handle("observable", (), a), "y": handle("observable", (), other)}
-        return self._shaped(self._track((a, other)).everywhere(mark, ("x", "y")).tilts.get(("x", "y"), 0.0))
+        table = self._track((a, other)).everywhere(mark, ("x", "y"))
+        return self._shaped(table.tilts[("x", "y")] if ("x", "y") in table.tilts else np.zeros(1))
 
     def profile(self, a: str) -> np.ndarray:
         """Mean of an observable in each cell, shape (*batch, N); constant along a ring."""
@@ -106,7 +107,7 @@ class FiniteChain:
         for name, (quantity, position) in (("x", x), ("y", y)):
             marks[position] = {**marks.get(position, {}), name: handle("observable", (), quantity)}
         table = track.marked(marks, ("x", "y"))
-        return np.broadcast_to(table.tilts.get(("x", "y"), 0.0), (self.point.size,))
+        return np.broadcast_to(table.tilts[("x", "y")] if ("x", "y") in table.tilts else 0.0, (self.point.size,))
 
     def _in_cell(self, a: str, cell: int) -> np.ndarray:
         if self.closed:
@@ -115,7 +116,8 @@ class FiniteChain:
         value = np.zeros(self.point.size)
         for anchor in anchors(track.window, a):
             marks = {cell - anchor: {"x": handle("observable", (), f"{a}@{anchor}")}}
-            value = value + track.marked(marks, ("x",)).tilts.get(("x",), 0.0)
+            table = track.marked(marks, ("x",))
+            value = value + (table.tilts[("x",)] if ("x",) in table.tilts else 0.0)
         return self._shaped(value)
 
     def _position(self, position: int) -> int:
@@ -190,8 +192,8 @@ def open_chain(point: Point, N: int, left: Any = None, right: Any = None) -> Fin
     """
     _check_point(point, "open_chain")
     cells = check_cells(N, 1, "an open chain", 0)
-    ends = (end_weights(point.chain, end, side) for end, side in ((left, "left"), (right, "right")))
-    return FiniteChain(point, cells, False, *ends)
+    first, last = end_weights(point.chain, left, "left"), end_weights(point.chain, right, "right")
+    return FiniteChain(point, cells, False, first, last)
 
 
 def _check_point(point: Any, verb: str) -> None:

@@ -88,7 +88,7 @@ class OpenWindows:
     right: Ends
 
     @property
-    def range(self) -> range:
+    def positions(self) -> range:
         """Positions of all windows: the window at w adds the sites (k, l_k + w)."""
         thresholds = self.window.cut.thresholds.values()
         return range(-max(thresholds), self.cells - min(thresholds))

@@ -61,7 +61,7 @@ class Track:
     @property
     def positions(self) -> range:
         """Positions of all windows."""
-        return range(self.cells) if self.opening is None else self.opening.range
+        return range(self.cells) if self.opening is None else self.opening.positions
 
     @property
     def bulk(self) -> range:

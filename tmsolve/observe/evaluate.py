@@ -18,9 +18,7 @@ __all__ = ["Laws", "fits"]
 
 def fits(window: ChainWindow, observables: Sequence[str]) -> bool:
     """Whether observables lie within one window."""
-    return all(
-        place_in(window, term) is not None for name in observables for term in window.chain.observable(name)
-    )
+    return all(place_in(window, term) is not None for name in observables for term in window.chain.observable(name))
 
 
 class Laws:
@@ -71,7 +69,9 @@ class Laws:
             result[segment.indices] = to_double(total)
         return result
 
-    def collect(self, of_segment: Callable[[Segment], Any], observables: Sequence[str] = (), extra: tuple[int, ...] = ()) -> np.ndarray:
+    def collect(
+        self, of_segment: Callable[[Segment], Any], observables: Sequence[str] = (), extra: tuple[int, ...] = ()
+    ) -> np.ndarray:
         """Gather a quantity computed per segment into one array (size, *extra)."""
         result = np.zeros((self.size, *extra))
         for segment in self.segments(observables):

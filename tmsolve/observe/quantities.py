@@ -66,7 +66,9 @@ def parse_quantity(text: str, chain: Chain) -> Quantity:
     """
     match = _SHAPE.match(text) if isinstance(text, str) else None
     if match is None:
-        raise ParameterError(f"a quantity is written name or name(observable), got {text!r}; known are {listing(QUANTITIES)}")
+        raise ParameterError(
+            f"a quantity is written name or name(observable), got {text!r}; known are {listing(QUANTITIES)}"
+        )
     name, inside = match.group(1), match.group(2)
     if name not in QUANTITIES:
         raise ParameterError(f"no quantity {name!r}; known are {listing(QUANTITIES)}.{did_you_mean(name, QUANTITIES)}")
@@ -89,7 +91,11 @@ def series_of(quantity: Quantity, chain: Chain) -> Series:
     if quantity.name == "free_energy":
         return free
     if quantity.name in ("mean", "susceptibility", "temperature_susceptibility"):
-        names = quantity.observables * 2 if quantity.name != "mean" and len(quantity.observables) == 1 else quantity.observables
+        names = (
+            quantity.observables * 2
+            if quantity.name != "mean" and len(quantity.observables) == 1
+            else quantity.observables
+        )
         return Series.of_observables(chain, names, 1 if quantity.name == "susceptibility" else 0)
     entropy = free.derive("T").times(-1)
     if quantity.name == "entropy":

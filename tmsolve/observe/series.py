@@ -129,8 +129,8 @@ class Series:
         """
         terms = dict(self.terms)
         for (a, blocks), c in self.terms.items():
-            shift = {(ROOT,): (a + 1, -c), (_ENERGY,): (a, c)}.get(blocks)
-            if shift is not None:
-                monomial = (shift[0], (LEAST_ENERGY,))
-                terms[monomial] = terms.get(monomial, Fraction(0)) + shift[1]
+            if blocks in ((ROOT,), (_ENERGY,)):
+                power, share = (a + 1, -c) if blocks == (ROOT,) else (a, c)
+                monomial: Monomial = (power, (LEAST_ENERGY,))
+                terms[monomial] = terms.get(monomial, Fraction(0)) + share
         return {monomial: c for monomial, c in terms.items() if c}

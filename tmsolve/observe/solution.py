@@ -10,7 +10,7 @@ from typing import Any
 import numpy as np
 
 from ..declare import Point
-from ..errors import NotApplicable, ParameterError, SolveError, did_you_mean, listing
+from ..errors import NotApplicable, ParameterError, SolveError, listing, unknown_parameter
 from .correlations import Level, connected_correlation, decay, levels, sorted_spectrum
 from .evaluate import Laws
 from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
@@ -136,14 +136,14 @@ class Solution:
         known = (*chain.parameters, "T")
         for name in names:
             if name not in known:
-                raise ParameterError(
-                    f"no parameter {name!r}; this chain has {listing(chain.parameters)} and T.{did_you_mean(str(name), known)}"
-                )
+                raise unknown_parameter(name, chain.parameters)
         if len(names) > _HIGHEST_ORDER:
             raise NotApplicable(f"derivatives go to order {_HIGHEST_ORDER}, got {len(names)}")
         quantity = parse_quantity(of, chain)
         if quantity.name not in DIFFERENTIABLE:
-            raise NotApplicable(f"{quantity} is not a derivative of the free energy; choose of= from {listing(DIFFERENTIABLE)}")
+            raise NotApplicable(
+                f"{quantity} is not a derivative of the free energy; choose of= from {listing(DIFFERENTIABLE)}"
+            )
         return self._value(quantity, names)
 
     def correlation(self, a: str, b: str, distances: Any, connected: bool = True) -> np.ndarray:
@@ -232,7 +232,7 @@ class Solution:
 
     @property
     def log_eigenvalue(self) -> np.ndarray:
-        """ln λ₁ = −f/T."""
+        """Logarithm of the largest eigenvalue, ln λ₁ = −f/T."""
         return np.asarray(-self.free_energy / self.point.T)[()]
 
     @property

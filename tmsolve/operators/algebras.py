@@ -98,7 +98,7 @@ class LogSum:
     def _cumulants(self, tilts: Tilts, chance: np.ndarray, axis: int) -> dict[Key, np.ndarray]:
         centred: dict[Key, np.ndarray] = {}
         result: dict[Key, np.ndarray] = {}
-        for key in dict.fromkeys(sub for key in self.keys for sub in sub_keys(key)):
+        for key in dict.fromkeys(sub for wanted in self.keys for sub in sub_keys(wanted)):
             given, rest = tilts.get(key), exp_remainder(centred, key)
             if given is None and rest is None:
                 continue

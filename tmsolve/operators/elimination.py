@@ -6,14 +6,15 @@ algebra: log-sum for temperatures, min-plus for ground states, polynomials, symb
 
 from __future__ import annotations
 
-from collections.abc import Hashable, Sequence
+from collections.abc import Sequence
 from typing import Any, Protocol
 
 import numpy as np
 
 __all__ = ["Algebra", "ArrayAlgebra", "align", "eliminate", "elimination_order"]
 
-Site = Hashable
+#: A site of the chain: any hashable label.
+Site = Any
 
 
 class Algebra(Protocol):

@@ -74,7 +74,7 @@ def exp_remainder(coefficients: Mapping[Key, Any], key: Key) -> Any:
         factors = [coefficients.get(block) for block in blocks]
         if any(factor is None for factor in factors):
             continue
-        product = factors[0]
+        product: Any = factors[0]
         for factor in factors[1:]:
             product = product * factor
         total = product if total is None else total + product

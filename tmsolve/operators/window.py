@@ -8,7 +8,7 @@ of is the algebra's business.
 from __future__ import annotations
 
 import math
-from collections.abc import Hashable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 from itertools import product
@@ -20,7 +20,7 @@ from .elimination import Algebra, align, eliminate
 
 __all__ = ["Factor", "Window", "to_matrix"]
 
-Site = Hashable
+Site = Any
 
 
 @dataclass(frozen=True)
@@ -89,9 +89,7 @@ class Window:
     def _count(self, sites: Sequence[Site]) -> int:
         return math.prod(self.sizes[site] for site in sites)
 
-    def reduce(
-        self, algebra: Algebra, tables: Sequence[Any], extra: Sequence[tuple[Sequence[Site], Any]] = ()
-    ) -> Any:
+    def reduce(self, algebra: Algebra, tables: Sequence[Any], extra: Sequence[tuple[Sequence[Site], Any]] = ()) -> Any:
         """Multiply the tables and sum out the interior.
 
         Parameters

@@ -54,7 +54,9 @@ class _Tracer:
         if not isinstance(other, _Tracer):
             other = _Tracer(_exact(other), {})
         names = dict.fromkeys((*self.slopes, *other.slopes))
-        slopes = {name: self.slopes.get(name, Fraction(0)) + sign * other.slopes.get(name, Fraction(0)) for name in names}
+        slopes = {
+            name: self.slopes.get(name, Fraction(0)) + sign * other.slopes.get(name, Fraction(0)) for name in names
+        }
         return _Tracer(self.constant + sign * other.constant, slopes)
 
     def __add__(self, other: Any) -> _Tracer:

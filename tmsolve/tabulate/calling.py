@@ -5,6 +5,7 @@ from __future__ import annotations
 import math
 from collections.abc import Callable, Mapping, Sequence
 from fractions import Fraction
+from functools import partial
 from itertools import product
 from typing import Any
 
@@ -80,9 +81,7 @@ def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, An
     return _collect(term, states, values, raw, batch)
 
 
-def _point_by_point(
-    term: Term, states: Sequence[StateSet], values: Mapping[str, Any], batch: int
-) -> np.ndarray:
+def _point_by_point(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], batch: int) -> np.ndarray:
     columns = {name: np.broadcast_to(values[name], (batch,)) for name in term.parameters}
     table = np.empty((*(len(s) for s in states), batch))
     for i in range(batch):
@@ -110,7 +109,7 @@ def _collect(
     table = np.empty((*raw.shape, 1 if length == 1 else batch))
     for index in np.ndindex(raw.shape):
         arguments = [numeric_state(s.values[i]) for s, i in zip(states, index, strict=True)]
-        table[index] = _number(raw[index], lambda a=arguments: describe_call(term, a, values), term, batch)
+        table[index] = _number(raw[index], partial(describe_call, term, arguments, values), term, batch)
     return table
 
 
@@ -147,7 +146,9 @@ def _check_finite(number: np.ndarray, call: Callable[[], str], term: Term) -> No
             "not a product such as inf*0"
         )
     if term.role == "energy" and (number == -math.inf).any():
-        raise SolveError(f"{call()} returned −inf, which no Boltzmann factor can hold; math.inf forbids a configuration")
+        raise SolveError(
+            f"{call()} returned −inf, which no Boltzmann factor can hold; math.inf forbids a configuration"
+        )
     if term.role == "weight" and ((number < 0) | np.isinf(number)).any():
         raise SolveError(f"{call()} returned {number.ravel()[0]!r}, but a weight is a finite number >= 0")
     if term.role == "observable" and np.isinf(number).any():

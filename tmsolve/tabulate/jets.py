@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -17,8 +18,6 @@ from ..errors import NotApplicable
 from ..operators.partitions import index_partitions
 
 __all__ = ["Jet", "variable"]
-
-_ORDER = 4
 
 
 class Jet:
@@ -128,6 +127,15 @@ class Jet:
 
     __int__ = __float__  # type: ignore[assignment]
 
+    def __array_function__(self, function: Any, types: Any, args: Any, kwargs: Any) -> Any:
+        """Let ``numpy.where`` choose between jets; other functions would lose the derivatives."""
+        if function is np.where and len(args) == 3 and not kwargs:
+            return _where(*args)
+        raise NotApplicable(
+            f"numpy.{function.__name__} has no derivative here; write it with + - * / **, numpy.where, or one of "
+            f"{', '.join(sorted(_UNARY))}"
+        )
+
     def __array_ufunc__(self, ufunc: Any, method: str, *inputs: Any, **keywords: Any) -> Any:
         """Let NumPy functions act on jets."""
         if method != "__call__" or keywords:
@@ -139,7 +147,12 @@ class Jet:
         if name in _UNARY and len(inputs) == 1:
             return _UNARY[name](inputs[0])
         raise NotApplicable(
-            f"numpy.{name} has no derivative here; known are + - * / ** and {', '.join(sorted(_UNARY))}"
+            f"numpy.{name} has no derivative here; known are + - * / **, numpy.where, and {', '.join(sorted(_UNARY))}"
+        )
+
+    def __array__(self, *_: Any, **__: Any) -> Any:
+        raise NotApplicable(
+            "a derivative cannot pass through a NumPy array built from parameters; combine the numbers themselves"
         )
 
 
@@ -154,6 +167,21 @@ def _parts(other: Any) -> dict[int, Any]:
 
 def _value(other: Any) -> Any:
     return other.value if isinstance(other, Jet) else other
+
+
+def _where(condition: Any, chosen: Any, other: Any) -> Jet:
+    left, right = _parts(chosen), _parts(other)
+    masks = dict.fromkeys((*left, *right))
+    chosen_here = _value(condition)
+    return Jet({mask: np.where(chosen_here, left.get(mask, 0.0), right.get(mask, 0.0)) for mask in masks})
+
+
+def _order(jet: Jet) -> int:
+    """Return the highest derivative that a function of the jet needs: one per slot."""
+    union = 0
+    for mask in jet.parts:
+        union |= mask
+    return union.bit_count()
 
 
 def _compose(jet: Jet, derivatives: Sequence[Any]) -> Jet:
@@ -177,7 +205,7 @@ def _compose(jet: Jet, derivatives: Sequence[Any]) -> Jet:
 def _power(jet: Jet, exponent: Any) -> Jet:
     x = jet.value
     derivatives, factor = [], 1.0
-    for order in range(_ORDER + 1):
+    for order in range(_order(jet) + 1):
         # A factor of zero stands for the vanishing derivative of a polynomial, also at x = 0.
         vanishes = np.ndim(factor) == 0 and factor == 0
         derivatives.append(0.0 if vanishes else factor * _raise(x, exponent - order))
@@ -191,12 +219,12 @@ def _raise(x: Any, exponent: Any) -> Any:
     return np.power(np.asarray(x, dtype=np.float64), exponent)[()]
 
 
-def _cycle(*names: str) -> Callable[[Any], list[Any]]:
+def _cycle(*names: str) -> Callable[[Any, int], list[Any]]:
     """Derivatives that repeat, such as sin → cos → −sin → −cos."""
 
-    def at(x: Any) -> list[Any]:
+    def at(x: Any, highest: int) -> list[Any]:
         values = []
-        for order in range(_ORDER + 1):
+        for order in range(highest + 1):
             name = names[order % len(names)]
             values.append(-getattr(np, name[1:])(x) if name.startswith("-") else getattr(np, name)(x))
         return values
@@ -204,11 +232,11 @@ def _cycle(*names: str) -> Callable[[Any], list[Any]]:
     return at
 
 
-def _logarithm(x: Any) -> list[Any]:
-    return [np.log(x), 1 / x, -1 / x**2, 2 / x**3, -6 / x**4]
+def _logarithm(x: Any, highest: int) -> list[Any]:
+    return [np.log(x), *(-math.factorial(k - 1) / (-x) ** k for k in range(1, highest + 1))]
 
 
-_SERIES: dict[str, Callable[[Any], list[Any]]] = {
+_SERIES: dict[str, Callable[[Any, int], list[Any]]] = {
     "exp": _cycle("exp"),
     "log": _logarithm,
     "sin": _cycle("sin", "cos", "-sin", "-cos"),
@@ -220,7 +248,7 @@ _SERIES: dict[str, Callable[[Any], list[Any]]] = {
 
 def _apply(name: str, jet: Any) -> Jet:
     known = jet if isinstance(jet, Jet) else Jet({0: jet})
-    return _compose(known, _SERIES[name](known.value))
+    return _compose(known, _SERIES[name](known.value, _order(known)))
 
 
 def _with_value(name: str, jet: Jet, function: Callable[[Any], Any], argument: Jet) -> Jet:
@@ -230,7 +258,7 @@ def _with_value(name: str, jet: Jet, function: Callable[[Any], Any], argument: J
 
 
 _UNARY: dict[str, Callable[[Jet], Jet]] = {
-    **{name: (lambda jet, name=name: _apply(name, jet)) for name in _SERIES},
+    **{name: partial(_apply, name) for name in _SERIES},
     "log1p": lambda jet: _with_value("log", jet, np.log1p, jet + 1),
     "expm1": lambda jet: _with_value("exp", jet, np.expm1, jet),
     "tan": lambda jet: _apply("sin", jet) / _apply("cos", jet),
