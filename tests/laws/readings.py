@@ -30,7 +30,8 @@ def agree(found, expected, rtol: float, scale: float, what: str = "") -> None:
     found, expected = np.asarray(found, dtype=float), np.asarray(expected, dtype=float)
     assert found.shape == expected.shape, f"{what}: shape {found.shape}, expected {expected.shape}"
     allowed = rtol * np.maximum(np.abs(expected), scale)
-    error = np.abs(found - expected)
+    same = found == expected
+    error = np.abs(np.where(same, 0.0, found) - np.where(same, 0.0, expected))
     assert np.all(error <= allowed), (
         f"{what}: got {found}, expected {expected}, error {error}, allowed {allowed}"
     )

@@ -8,6 +8,7 @@ Derivatives are central differences with steps of 1e-15 on numbers of 80 digits.
 
 from __future__ import annotations
 
+import functools
 import inspect
 import itertools
 import math
@@ -154,21 +155,33 @@ class Reference:
                 total += number(factor) * self.free_energy(offsets)
             return total / STEP ** len(names)
 
-    def correlation(self, a: str, b: str, distance: int):
-        """Return <a_0 b_r> of the infinite chain for r >= 0 cells; a and b are summed over their own cell."""
+    @functools.cached_property
+    def pair(self):
+        """Matrix divided by its Perron root, and the left and right vectors with left . right = 1."""
         with mpmath.workdps(DIGITS):
-            values, _ = self._numbers({})
-            weights = self.weights(values, {})
-            matrix = self.matrix(weights)
+            matrix = self.matrix(self.weights(self._numbers({})[0], {}))
             root, right = perron(matrix)
             _, left = perron(matrix.T)
-            norm = left @ right
-            vector = self._inserted(b, values) * right
-            for _ in range(distance):
-                vector = matrix @ vector / root
-            return (left @ (self._inserted(a, values) * vector)) / norm
+            return matrix / root, left / (left @ right), right
 
-    def _inserted(self, name: str, values) -> np.ndarray:
+    def mean(self, a: str):
+        """Return <a> per cell, from the vectors."""
+        with mpmath.workdps(DIGITS):
+            _, left, right = self.pair
+            return left @ (self._inserted(a) * right)
+
+    def correlations(self, a: str, b: str, distances) -> list:
+        """Return <a_0 b_r> of the infinite chain for r >= 0 cells; a and b are summed over their own cell."""
+        with mpmath.workdps(DIGITS):
+            step, left, right = self.pair
+            vector, found = self._inserted(b) * right, {}
+            for distance in range(max(distances) + 1):
+                found[distance] = left @ (self._inserted(a) * vector) if distance in distances else None
+                vector = step @ vector
+            return [found[distance] for distance in distances]
+
+    def _inserted(self, name: str) -> np.ndarray:
+        values = self._numbers({})[0]
         total = np.full(self.cell_size ** (self.reach + 1), mpmath.mpf(0), dtype=object)
         for term in self.chain.observables[name]:
             total = total + self._spread(term, self._table(term, values))
@@ -178,8 +191,8 @@ class Reference:
 def perron(matrix: np.ndarray, start=None):
     """Return the Perron root and right vector of a non-negative matrix, to the working precision.
 
-    Newton's method on (A x = r x, sum x = 1), from a nearby start, the double-precision vector, or a column sum of a
-    high power of the matrix where double precision cannot tell the top eigenvalues apart.
+    Newton's method on (A x = r x, sum x = 1), from a nearby start, the double-precision vector, or a column
+    sum of a high power of the matrix where double precision cannot tell the top eigenvalues apart.
     """
     for make in (lambda _: start, _rough_start, _power_start):
         first = make(matrix)

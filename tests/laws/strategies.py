@@ -102,8 +102,8 @@ def _places(draw, kinds: tuple[str, ...], reach: int, sites: int) -> tuple:
 def _table(draw, cell, places, entries, forbid: float, connected: bool) -> dict[tuple, object]:
     """Draw one entry per state tuple.
 
-    When ``connected`` a forbidden entry never holds the first state of a kind, so that every configuration of the
-    chain can be reached from every other.
+    When ``connected`` a forbidden entry never holds the first state of a kind, so that every configuration
+    can be reached from every other.
     """
     table: dict[tuple, object] = {}
     for states in _tuples(cell, places):

@@ -43,8 +43,9 @@ def test_ising_correlation_closed_form():
     reference = Reference(BY_NAME["ising"].chain, values, ("m",))
     with mpmath.workdps(60):
         t = mpmath.tanh(mpmath.mpf(1) / mpmath.mpf("1.3"))
-        for distance in (0, 1, 7):
-            digits(reference.correlation("m", "m", distance), t**distance)
+        distances = (0, 1, 7)
+        for distance, found in zip(distances, reference.correlations("m", "m", distances), strict=True):
+            digits(found, t**distance)
 
 
 def test_diamond_closed_form():
