@@ -14,7 +14,7 @@ import numpy as np
 from ..declare import StateSet, Term
 from ..errors import DeclarationError, SolveError, TmsolveError
 
-__all__ = ["call_sites", "describe_call", "number_table", "numeric_state"]
+__all__ = ["call_sites", "describe_call", "number_table", "numeric_state", "over_batch"]
 
 
 def numeric_state(state: Any) -> Any:
@@ -56,9 +56,6 @@ def _brief(value: Any) -> str:
 def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], batch: int) -> np.ndarray:
     """Tabulate a term in doubles: shape (*states, batch), or (*states, 1) where it is constant.
 
-    A function that cannot take arrays (it branches on a parameter, or uses ``math``) is
-    called point by point.
-
     Raises
     ------
     SolveError
@@ -66,28 +63,53 @@ def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, An
     DeclarationError
         The function returns something that is not a real number.
     """
-    arrays = {name: np.asarray(values[name]) for name in term.parameters if np.ndim(values[name])}
-    try:
-        with np.errstate(all="ignore"):
-            raw = call_sites(term, states, numeric_state, values)
-    except (ValueError, TypeError) as cause:
-        if not arrays:
-            raise _failed(term, states, values, cause) from cause
-        return _point_by_point(term, states, values, batch)
-    except TmsolveError:
-        raise
-    except Exception as cause:
-        raise _failed(term, states, values, cause) from cause
-    return _collect(term, states, values, raw, batch)
+
+    def tabulate(given: Mapping[str, Any], count: int) -> np.ndarray:
+        try:
+            with np.errstate(all="ignore"):
+                raw = call_sites(term, states, numeric_state, given)
+        except TmsolveError:
+            raise
+        except Exception as cause:
+            raise _failed(term, states, given, cause) from cause
+        return _collect(term, states, given, raw, count)
+
+    return over_batch(tabulate, term, values, batch)
 
 
-def _point_by_point(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], batch: int) -> np.ndarray:
+def over_batch(
+    tabulate: Callable[[Mapping[str, Any], int], np.ndarray], term: Term, values: Mapping[str, Any], batch: int
+) -> np.ndarray:
+    """Tabulate for all points at once where the function treats arrays elementwise, else point by point.
+
+    A function that branches on a parameter or uses ``math`` raises on arrays; one that sums
+    over them does not, so three points are compared with what the function says of them alone.
+
+    Parameters
+    ----------
+    tabulate : callable
+        Takes values and their number of points; returns (*states, points) or (*states, 1).
+    """
+    if not any(np.ndim(values[name]) for name in term.parameters):
+        return tabulate(values, batch)
     columns = {name: np.broadcast_to(values[name], (batch,)) for name in term.parameters}
-    table = np.empty((*(len(s) for s in states), batch))
-    for i in range(batch):
-        single = {name: float(column[i]) for name, column in columns.items()}
-        table[..., i] = number_table(term, states, single, 1)[..., 0]
-    return table
+
+    def alone(i: int) -> np.ndarray:
+        return tabulate({name: float(column[i]) for name, column in columns.items()}, 1)[..., 0]
+
+    try:
+        table = tabulate(values, batch)
+    except Exception:  # met again below, by a call with plain numbers, where it is more than a matter of arrays
+        return np.stack([alone(i) for i in range(batch)], axis=-1)
+    spread = np.broadcast_to(table, (*table.shape[:-1], batch))
+    if all(_agree(spread[..., i], alone(i)) for i in {0, batch // 2, batch - 1}):
+        return table
+    return np.stack([alone(i) for i in range(batch)], axis=-1)
+
+
+def _agree(table: np.ndarray, other: np.ndarray) -> bool:
+    largest = np.abs(other[np.isfinite(other)]).max(initial=0.0)
+    return bool(np.allclose(table, other, rtol=1e-9, atol=1e-12 * largest))
 
 
 def _failed(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], cause: Exception) -> TmsolveError:
@@ -122,7 +144,8 @@ def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
         )
     if entry is None:
         raise DeclarationError(f"{call()} returned None, but {noun} is a real number; does the function lack a return?")
-    if isinstance(entry, (str, bytes, complex)) or not hasattr(entry, "__float__"):
+    unreal = isinstance(entry, (str, bytes, complex)) or getattr(entry, "dtype", np.dtype(float)).kind == "c"
+    if unreal or not hasattr(entry, "__float__"):
         raise DeclarationError(f"{call()} returned {entry!r}, but {noun} is a real number")
     number = np.asarray(entry)
     if number.dtype.kind not in "iuf":
@@ -149,7 +172,8 @@ def _check_finite(number: np.ndarray, call: Callable[[], str], term: Term) -> No
         raise SolveError(
             f"{call()} returned −inf, which no Boltzmann factor can hold; math.inf forbids a configuration"
         )
-    if term.role == "weight" and ((number < 0) | np.isinf(number)).any():
-        raise SolveError(f"{call()} returned {number.ravel()[0]!r}, but a weight is a finite number >= 0")
+    wrong = (number < 0) | np.isinf(number)
+    if term.role == "weight" and wrong.any():
+        raise SolveError(f"{call()} returned {float(number[wrong].flat[0])!r}, but a weight is a finite number >= 0")
     if term.role == "observable" and np.isinf(number).any():
         raise SolveError(f"{call()} returned an infinite value, but an observable is finite on every state")

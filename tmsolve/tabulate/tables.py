@@ -9,12 +9,12 @@ from typing import Any
 import numpy as np
 
 from ..declare import Chain, StateSet, Term
-from ..errors import DeclarationError, NotApplicable, SolveError
+from ..errors import SolveError
 from ..operators.numbers import DOUBLE, Numbers
 from ..operators.partitions import Key
 from .affine import affine_table
-from .calling import call_sites, describe_call, number_table, numeric_state
-from .jets import Jet, variable
+from .calling import number_table
+from .derivatives import derivative_table
 
 __all__ = ["SiteTables"]
 
@@ -101,21 +101,8 @@ class SiteTables:
             total = total + self.numbers.array(slope)[..., None] * value
         return total
 
-    def _differentiate(self, term: Term, key: Key) -> np.ndarray | None:
-        states = self._states(term)
-        values = self._floats()
-        try:
-            with np.errstate(all="ignore"):
-                return self.numbers.array(_jet_table(term, states, key, values, self.batch))
-        except NotApplicable:
-            raise
-        except (ValueError, TypeError):
-            columns = {name: np.broadcast_to(values[name], (self.batch,)) for name in term.parameters}
-            tables = []
-            for i in range(self.batch):
-                single = {name: float(column[i]) for name, column in columns.items()}
-                tables.append(_jet_table(term, states, key, single, 1))
-            return self.numbers.array(np.concatenate(tables, axis=-1))
+    def _differentiate(self, term: Term, key: Key) -> np.ndarray:
+        return self.numbers.array(derivative_table(term, self._states(term), key, self._floats(), self.batch))
 
 
 def _log(term: Term, table: np.ndarray) -> np.ndarray:
@@ -123,36 +110,3 @@ def _log(term: Term, table: np.ndarray) -> np.ndarray:
         return table
     with np.errstate(divide="ignore"):
         return np.log(table)
-
-
-def _jet_table(term: Term, states: list[StateSet], key: Key, values: Mapping[str, Any], batch: int) -> np.ndarray:
-    """Tabulate the mixed derivative of a term (of its logarithm, for weights) by the names in ``key``."""
-    jets: dict[str, Any] = dict(values)
-    for name in dict.fromkeys(key):
-        jets[name] = variable(values[name], [i for i, other in enumerate(key) if other == name])
-    raw = call_sites(term, states, numeric_state, jets)
-    full = (1 << len(key)) - 1
-    length = max(np.size(_coefficient(term, entry, full)) for entry in raw.ravel())
-    table = np.empty((*raw.shape, 1 if length == 1 else batch))
-    for index in np.ndindex(raw.shape):
-        table[index] = _coefficient(term, raw[index], full)
-    if not np.isfinite(table).all():
-        where = tuple(int(i) for i in np.argwhere(~np.isfinite(table))[0][:-1])
-        arguments = [numeric_state(s.values[i]) for s, i in zip(states, where, strict=True)]
-        raise SolveError(
-            f"the derivative of {describe_call(term, arguments, values)} by {', '.join(key)} is not finite; "
-            "the function is not smooth there"
-        )
-    return table
-
-
-def _coefficient(term: Term, entry: Any, mask: int) -> Any:
-    if not isinstance(entry, Jet):
-        if isinstance(entry, (str, bytes, complex)) or entry is None:
-            raise DeclarationError(f"{term.name} returned {entry!r}, but a real number is needed")
-        return 0.0
-    if term.role == "weight":
-        positive = np.asarray(entry.value) > 0
-        safe = Jet({m: np.where(positive, part, 1.0 if m == 0 else 0.0) for m, part in entry.parts.items()})
-        return np.log(safe).parts.get(mask, 0.0)
-    return entry.parts.get(mask, 0.0)
