@@ -109,7 +109,7 @@ class Chain:
         """Whether a term places a Boltzmann factor instead of an energy."""
         return any(term.role == "weight" for term in self.terms)
 
-    def at(self, **values: Any) -> Point:
+    def at(self, /, **values: Any) -> Point:
         """Bind every parameter and the temperature.
 
         Parameters
@@ -126,7 +126,7 @@ class Chain:
         self._refuse_fixed(values)
         return bind(self, {**self.fixed, **values})
 
-    def fix(self, **values: Any) -> Chain:
+    def fix(self, /, **values: Any) -> Chain:
         """Return the chain with some parameters (or ``T``) fixed.
 
         Raises

@@ -90,7 +90,7 @@ class Point:
             for name, value in self.values.items()
         }
 
-    def replace(self, **values: Any) -> Point:
+    def replace(self, /, **values: Any) -> Point:
         """Return the same point with some values changed."""
         return bind(self.chain, {**self.values, **values})
 

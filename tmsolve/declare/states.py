@@ -140,14 +140,12 @@ def _plain(value: State) -> Any:
 def _weights(weights: Iterable[Any] | None, states: Sequence[State]) -> tuple[Fraction | float, ...]:
     if weights is None:
         return (Fraction(1),) * len(states)
-    given = tuple(weights)
-    if len(given) != len(states):
-        raise DeclarationError(f"got {len(given)} weights for {len(states)} states; give one weight per state")
     exact = []
-    for weight, state in zip(given, states, strict=True):
+    for weight, state in zip(_one_per_state("weight", weights, states), states, strict=True):
         try:
-            number = Fraction(repr(weight)) if isinstance(weight, float) else Fraction(weight)
-        except (TypeError, ValueError, OverflowError):
+            inexact = isinstance(weight, Real) and not isinstance(weight, Rational)
+            number = Fraction(repr(float(weight))) if inexact else Fraction(weight)
+        except (TypeError, ValueError, OverflowError, ZeroDivisionError):
             number = Fraction(0)
         if number <= 0:
             raise DeclarationError(
@@ -161,12 +159,19 @@ def _weights(weights: Iterable[Any] | None, states: Sequence[State]) -> tuple[Fr
 def _labels(labels: Iterable[str] | None, states: Sequence[State]) -> tuple[str, ...]:
     if labels is None:
         return tuple(_label(state) for state in states)
-    given = tuple(str(label) for label in labels)
-    if len(given) != len(states):
-        raise DeclarationError(f"got {len(given)} labels for {len(states)} states; give one label per state")
+    given = tuple(str(label) for label in _one_per_state("label", labels, states))
     if len(set(given)) != len(given):
         raise DeclarationError(f"labels must be different, got {list(given)}")
     return given
+
+
+def _one_per_state(noun: str, given: Any, states: Sequence[State]) -> tuple[Any, ...]:
+    if isinstance(given, (str, bytes)) or not isinstance(given, Iterable):
+        raise DeclarationError(f"{noun}s= takes a list with one {noun} per state, got {given!r}")
+    listed = tuple(given)
+    if len(listed) != len(states):
+        raise DeclarationError(f"got {len(listed)} {noun}s for {len(states)} states; give one {noun} per state")
+    return listed
 
 
 def _label(state: State) -> str:
