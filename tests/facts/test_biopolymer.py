@@ -35,7 +35,7 @@ def test_zimm_bragg_finite_chain():
 
     A run of helix that starts at the first residue also costs sigma: the first residue weighs 1 or sigma.
     """
-    chain = open_chain(ZIMM_BRAGG.at(T=1, s="1.1", sigma="0.01"), 12, left={"c": 1, "h": "0.01"})
+    chain = open_chain(ZIMM_BRAGG.at(T=1, s="1.1", sigma="0.01"), 12, left={"c": 1, "h": 0.01})
     near(math.exp(chain.log_Z), "2.3954072739529245246")
     near(chain.mean("helix"), "0.27135018366249168668")
 

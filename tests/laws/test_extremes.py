@@ -8,9 +8,9 @@ import mpmath
 import numpy as np
 import pytest
 
-from tests.laws.readings import readings
+from tests.laws.readings import agree, readings
 from tests.laws.reference import Reference, growth
-from tests.laws.zoo import ZOO, Animal
+from tests.laws.zoo import BY_NAME, ZOO, Animal
 from tmsolve import open_chain, ring, solve
 
 TEMPERATURES = ("1e-6", "1e-3", "0.02", "0.3", "1e2", "1e4", "1e6")
@@ -31,8 +31,21 @@ def without_field(animal: Animal) -> Animal:
     return animal._replace(values={name: "0" if name == "h" else v for name, v in animal.values.items()})
 
 
+def frustrated(name: str, **values: str) -> Animal:
+    """Return an animal where several ground states tie beyond symmetry."""
+    return BY_NAME[name]._replace(values=dict(BY_NAME[name].values, **values))
+
+
 ALL = [(animal.name, animal) for animal in ZOO]
 ALL += [(f"{animal.name}-no-field", without_field(animal)) for animal in ZOO if "h" in animal.values]
+ALL += [
+    ("ising-antiferro", frustrated("ising", J="-1", h="0")),
+    ("ising-saturation", frustrated("ising", J="-1", h="2")),
+    ("nnn_ising-frustrated", frustrated("nnn_ising", J2="-0.5", h="0")),
+    ("nnn_spin1-frustrated", frustrated("nnn_spin1", J2="-0.5", D="0", h="0")),
+    ("blume_capel-boundary", frustrated("blume_capel", D="1", h="0")),
+    ("sawtooth-frustrated", frustrated("sawtooth", K="-1", h="0")),
+]
 EVERY_ANIMAL = pytest.mark.parametrize("animal", [animal for _, animal in ALL], ids=[name for name, _ in ALL])
 
 
@@ -84,10 +97,7 @@ def test_batch_over_all_temperatures(animal):
 @EVERY_ANIMAL
 def test_finite_chains(animal):
     """Rings and open chains stay in the log domain: ln Z and means of 41 cells are finite."""
-    if animal.name == "alternating" or animal.name == "alternating-no-field":
-        cells = 40
-    else:
-        cells = 41
+    cells = 40 if animal.name == "alternating" else 41
     for T in TEMPERATURES:
         point = animal.chain.at(**dict(animal.values, T=T))
         with warnings.catch_warnings(), np.errstate(all="raise"):
@@ -96,3 +106,32 @@ def test_finite_chains(animal):
         assert np.isfinite(closed.log_Z) and np.isfinite(free.log_Z)
         for a in animal.chain.observables:
             assert np.isfinite(closed.mean(a)) and np.isfinite(free.mean(a))
+
+
+@pytest.mark.parametrize("T", ["0.3", "0.02", "0.006", "0.004", "0.003"])
+def test_relative_accuracy_of_the_ising_chain(T):
+    """s, c, chi and xi of the zero-field Ising chain keep twelve digits although they span 10^-290 to 10^290.
+
+    Closed forms with K = 1/T: s = ln(1 + e) + 2 K e/(1 + e), e = exp(-2K); c = (K/cosh K)^2; chi = exp(2K)/T;
+    xi = -1/ln tanh K (Baxter, Exactly Solved Models (1982) ch. 2).
+    """
+    with mpmath.workdps(400):
+        K = 1 / mpmath.mpf(T)
+        e = mpmath.exp(-2 * K)
+        exact = {
+            "entropy": mpmath.log1p(e) + 2 * K * e / (1 + e),
+            "specific_heat": (K / mpmath.cosh(K)) ** 2,
+            "susceptibility": K / e,
+            "slope": -(2 * K**3 + K**2) / e,
+            "length": -1 / mpmath.log(mpmath.tanh(K)),
+        }
+    solution = solve(BY_NAME["ising"].chain.at(T=T, J=1, h=0))
+    found = {
+        "entropy": solution.entropy,
+        "specific_heat": solution.specific_heat,
+        "susceptibility": solution.susceptibility("m"),
+        "slope": solution.derivative("T", of="susceptibility(m)"),
+        "length": solution.correlation_length(),
+    }
+    for name, value in exact.items():
+        agree(found[name], float(value), 1e-12, 0.0, name)
