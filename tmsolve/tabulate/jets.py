@@ -150,11 +150,6 @@ class Jet:
             f"numpy.{name} has no derivative here; known are + - * / **, numpy.where, and {', '.join(sorted(_UNARY))}"
         )
 
-    def __array__(self, *_: Any, **__: Any) -> Any:
-        raise NotApplicable(
-            "a derivative cannot pass through a NumPy array built from parameters; combine the numbers themselves"
-        )
-
 
 def variable(value: Any, slots: Sequence[int]) -> Jet:
     """Return an independent variable that the given slots differentiate by."""
