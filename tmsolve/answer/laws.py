@@ -13,6 +13,7 @@ from ..declare import Point
 from ..eigen.components import communicating_classes
 from ..eigen.law import DoobLaw
 from ..eigen.perron import TOLERANCE, PerronPair, perron_pair
+from ..eigen.periodic import periodic_pair
 from ..eigen.solvers import Dense
 from ..eigen.spectrum import ratios
 from ..errors import SolveError
@@ -33,6 +34,7 @@ def _pick(values: Mapping[str, Any], indices: np.ndarray) -> dict[str, Any]:
     return {name: value[indices] if np.ndim(value) else value for name, value in values.items()}
 
 
+@np.errstate(under="ignore")  # weights far below 1 vanish, which is what they should do
 def stationary_laws(window: ChainWindow, point: Point, solver: Dense) -> list[Segment]:
     """Solve every point of a batch; points that share pattern and number length share a segment.
 
@@ -94,7 +96,9 @@ class _Class:
     def __init__(self, part: Assembled, states: np.ndarray, edges: np.ndarray) -> None:
         self.states = states
         log, self.gauge = part.scaled_log(states, edges)
-        self.pair = perron_pair(log, part.numbers)
+        # Long numbers come one point at a time, with its own critical cycles.
+        solve = periodic_pair if part.numbers.exact_exponent else perron_pair
+        self.pair = solve(log, part.numbers)
         self.trusted = self.pair.converged & (self.pair.error < TOLERANCE)
         if not part.numbers.exact_exponent:
             lowest = np.where(edges[..., None], log, 0.0).min(axis=(0, 1))

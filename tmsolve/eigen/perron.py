@@ -20,7 +20,7 @@ import numpy as np
 from ..operators.numbers import Numbers
 from .reduction import Reduction, heavy_first, reduce_states, solve_shifted
 
-__all__ = ["PerronPair", "perron_pair"]
+__all__ = ["TOLERANCE", "PerronPair", "Search", "make_pair", "perron_pair", "search"]
 
 _NODA_STEPS = 10
 _NEWTON_STEPS = 8
@@ -28,6 +28,8 @@ _ACCEPT = 1e-7
 #: Largest rounding error of the vector, as bounded below, with which a point is accepted.
 TOLERANCE = 1e-10
 _FULL_BOUND_LIMIT = 32
+#: Largest entry of the deviation matrix whose fourth power still fits a double.
+_SLOWEST = 1e75
 
 
 @dataclass(frozen=True)
@@ -85,15 +87,64 @@ def perron_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
     if n == 1:
         return _single(weights, defect)
     with np.errstate(all="ignore"):
-        vector = _noda(rates, defect, numbers)
-        vector, correction = _newton(vector, rates, defect)
-        stalled = ~(correction < _ACCEPT)
-        if stalled.any():
-            picked = np.flatnonzero(stalled)
-            again = _bisect(rates[..., picked], defect[:, picked], numbers)
-            again, second = _newton(again, rates[..., picked], defect[:, picked])
-            vector[:, picked], correction[picked] = again, second
-        return _finish(vector, rates, defect, weights, correction, numbers)
+        found = search(rates, defect, numbers)
+        return make_pair(weights, found.vector, found.excess, found.converged, found.error)
+
+
+@dataclass(frozen=True)
+class Search:
+    """A Perron vector found from off-diagonal weights and diagonal defects.
+
+    Attributes
+    ----------
+    vector : ndarray, shape (n, batch)
+    excess : ndarray, shape (batch,)
+        λ − 1.
+    converged : ndarray of bool, shape (batch,)
+    error : ndarray, shape (batch,)
+        See `PerronPair`.
+    """
+
+    vector: np.ndarray
+    excess: np.ndarray
+    converged: np.ndarray
+    error: np.ndarray
+
+
+def search(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> Search:
+    """Find the Perron vector of offdiag(rates) + 1 − diag(defect), n ≥ 2, with its rounding bound."""
+    vector = _noda(rates, defect, numbers)
+    vector, correction = _newton(vector, rates, defect)
+    stalled = ~(correction < _ACCEPT)
+    if stalled.any():
+        picked = np.flatnonzero(stalled)
+        again = _bisect(rates[..., picked], defect[:, picked], numbers)
+        again, second = _newton(again, rates[..., picked], defect[:, picked])
+        vector[:, picked], correction[picked] = again, second
+    scaled = rates * vector[None] / vector[:, None]
+    rows = scaled.sum(axis=1) - defect
+    flow = reduce_states(scaled, heavy_first(reduce_states(scaled).stationary))
+    excess = (flow.stationary * rows).sum(axis=0)
+    finite = np.isfinite(excess.astype(np.float64)) & _all_positive(vector)
+    noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(vector) + 4) * numbers.epsilon)
+    error, slowness = _amplified(flow, noise)
+    finite &= (slowness < _SLOWEST) | numbers.exact_exponent
+    error = np.where(finite, error.astype(np.float64), np.inf)
+    return Search(vector, excess, finite & (correction < _ACCEPT), error)
+
+
+def make_pair(
+    weights: np.ndarray, vector: np.ndarray, excess: np.ndarray, converged: np.ndarray, error: np.ndarray
+) -> PerronPair:
+    """Build the chain of Doob of a matrix whose root and vector are known."""
+    chance = weights * vector[None] / vector[:, None] / (1 + excess)
+    rates = chance.copy()
+    index = np.arange(len(vector))
+    # The diagonal needs no quotient of equal numbers.
+    chance[index, index] = weights[index, index] / (1 + excess)
+    rates[index, index] = rates[index, index] * 0
+    reduction = reduce_states(rates, heavy_first(reduce_states(rates).stationary))
+    return PerronPair(excess, vector, chance, reduction, converged, error)
 
 
 def _single(weights: np.ndarray, defect: np.ndarray) -> PerronPair:
@@ -115,11 +166,21 @@ def _noda(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray
         top, bottom = rows.max(axis=0), rows.min(axis=0)
         if not (top - bottom > 1e-3 * np.abs(top)).any():
             break
-        solved = solve_shifted(top, defect, rates, vector, floor)
+        solved = solve_shifted(top, defect, rates, _trusted_part(vector, rows, top, defect), floor)
         solved = solved / solved.max(axis=0)
         usable = _all_positive(solved)
         vector = np.where(usable, solved, vector)
     return vector
+
+
+def _trusted_part(vector: np.ndarray, rows: np.ndarray, shift: np.ndarray, defect: np.ndarray) -> np.ndarray:
+    """Return the vector with entries that are far from solving their own row set to 0.
+
+    As right side of an inverse iteration a far too large entry would only fall by a fixed
+    factor per step; left out, it takes the value that the other entries imply at once.
+    """
+    ratio = (rows + defect) / (shift + defect)
+    return np.where((ratio > 0.1) & (ratio < 10), vector, 0)
 
 
 def _all_positive(vector: np.ndarray) -> np.ndarray:
@@ -160,7 +221,9 @@ def _bisect(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarr
     shift = numbers.power_of_two(high)
     vector = np.ones_like(defect) if rates.dtype != object else defect * 0 + 1
     for _ in range(_NODA_STEPS):
-        solved = solve_shifted(shift, defect, rates, vector, numbers.epsilon)
+        rows = _row_excess(vector, rates, defect)
+        right = _trusted_part(vector, rows, np.maximum(shift, rows.max(axis=0)), defect)
+        solved = solve_shifted(shift, defect, rates, right, numbers.epsilon)
         vector = np.where(_all_positive(solved), solved / solved.max(axis=0), vector)
     return vector
 
@@ -177,35 +240,13 @@ def _pivots_positive(shift: np.ndarray, defect: np.ndarray, rates: np.ndarray) -
     return good
 
 
-def _finish(
-    vector: np.ndarray,
-    rates: np.ndarray,
-    defect: np.ndarray,
-    weights: np.ndarray,
-    correction: np.ndarray,
-    numbers: Numbers,
-) -> PerronPair:
-    scaled = rates * vector[None] / vector[:, None]
-    rows = scaled.sum(axis=1) - defect
-    order = heavy_first(reduce_states(scaled).stationary)
-    flow = reduce_states(scaled, order)
-    excess = (flow.stationary * rows).sum(axis=0)
-    root = 1 + excess
-    chance = scaled / root
-    index = np.arange(len(vector))
-    reduction = reduce_states(chance, order)
-    chance[index, index] = weights[index, index] / root
-    finite = np.isfinite(excess.astype(np.float64)) & _all_positive(vector)
-    noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(vector) + 4) * numbers.epsilon)
-    error = np.where(finite, _amplified(flow, noise).astype(np.float64), np.inf)
-    return PerronPair(excess, vector, chance, reduction, finite & (correction < _ACCEPT), error)
-
-
-def _amplified(flow: Reduction, noise: np.ndarray) -> np.ndarray:
-    """Return max_i Σ_j |D_ij| noise_j with D the deviation matrix; probed by signs for large matrices."""
+def _amplified(flow: Reduction, noise: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return max_i Σ_j |D_ij| noise_j and max |D| with D the deviation matrix; probed by signs for large ones."""
     if len(noise) <= _FULL_BOUND_LIMIT:
-        return (np.abs(flow.deviation()) * noise[None]).sum(axis=1).max(axis=0)
+        size = np.abs(flow.deviation())
+        return (size * noise[None]).sum(axis=1).max(axis=0), size.max(axis=(0, 1))
     signs = np.random.default_rng(0).choice([-1.0, 1.0], size=(4, len(noise), 1))
     probes = [noise * sign for sign in signs]
     sizes = [np.abs(flow.poisson(probe - (flow.stationary * probe).sum(axis=0))).max(axis=0) for probe in probes]
-    return np.max(sizes, axis=0) * 4
+    largest = np.max(sizes, axis=0) * 4
+    return largest, largest / noise.max(axis=0)

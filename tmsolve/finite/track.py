@@ -93,6 +93,7 @@ class Track:
                 tilts[names] = table
         return LogTable(energy, log, tilts)
 
+    @np.errstate(under="ignore")
     def everywhere(self, mark: Mark, key: Key) -> LogTable:
         """Multiply all windows, each tilted by the same quantities, and close the ends."""
         algebra = self.algebra(key)
@@ -103,6 +104,7 @@ class Track:
         parts += [self.step(p, mark, key) for p in range(bulk.stop, self.positions.stop)]
         return close(algebra, reduce(lambda x, y: multiply(algebra, x, y), parts), self.opening is None)
 
+    @np.errstate(under="ignore")
     def marked(self, marks: Mapping[int, Mark], key: Key) -> LogTable:
         """Multiply all windows, tilted only at the marked positions, and close the ends."""
         algebra = self.algebra(key)
@@ -119,6 +121,7 @@ class Track:
         assert result is not None
         return close(algebra, result, self.opening is None)
 
+    @np.errstate(under="ignore")
     def sweep(self, quantity: str, anchor: int) -> dict[int, np.ndarray]:
         """Return the mean of a quantity's part in every window of an open chain, by position.
 

@@ -49,9 +49,9 @@ def minimum_cycle_mean(cost: np.ndarray, edges: np.ndarray) -> tuple[np.ndarray,
 
 
 def _karp(steps: np.ndarray) -> np.ndarray:
+    # Walks may start anywhere, so that those around a cheap cycle never add a costly way to it.
     n = len(steps)
-    walks = np.full((n + 1, n, steps.shape[-1]), np.inf, dtype=steps.dtype)
-    walks[0, 0] = 0.0
+    walks = np.zeros((n + 1, n, steps.shape[-1]), dtype=steps.dtype)
     for k in range(n):
         walks[k + 1] = (walks[k][:, None] + steps).min(axis=0)
     lengths = (n - np.arange(n))[:, None, None]

@@ -56,6 +56,7 @@ class Laws:
             self._known[wide] = self._solve(wide)
         return self._known[wide]
 
+    @np.errstate(under="ignore")  # weights far below 1 vanish, which is what they should do
     def evaluate(self, series: Series) -> np.ndarray:
         """Return the value of a sum of cumulants at every point, shape (size,)."""
         terms = series.gauged()
@@ -69,6 +70,7 @@ class Laws:
             result[segment.indices] = to_double(total)
         return result
 
+    @np.errstate(under="ignore")  # weights far below 1 vanish, which is what they should do
     def collect(
         self, of_segment: Callable[[Segment], Any], observables: Sequence[str] = (), extra: tuple[int, ...] = ()
     ) -> np.ndarray:

@@ -183,6 +183,7 @@ class Solution:
         """Wave number in [0, π] per cell of the same mode: 0 monotonic, π alternating."""
         return self._shaped(self._decay(a)[1], "wave number")
 
+    @np.errstate(under="ignore")
     def _decay(self, a: str | None) -> tuple[np.ndarray, np.ndarray]:
         names = () if a is None else (a,)
         for name in names:
@@ -198,6 +199,7 @@ class Solution:
             lengths = np.where(log_modulus == -np.inf, 0.0, -1.0 / np.minimum(log_modulus, -0.0))
         return self._shaped(np.where(log_modulus >= 0, np.inf, lengths), "correlation length")
 
+    @np.errstate(under="ignore")
     def gaps(self, k: int) -> np.ndarray:
         """Gaps ln λ₁/|λ_i| of the next k eigenvalues, counted with multiplicity, shape (*batch, k).
 
@@ -210,6 +212,7 @@ class Solution:
             result[segment.indices, : log_modulus.shape[1]] = np.maximum(-log_modulus, 0.0)
         return self._shaped(result, "gaps")
 
+    @np.errstate(under="ignore")
     def spectrum(self, k: int | None = None) -> tuple[Level, ...]:
         """Eigenvalues of the transfer matrix of a single point, λ₁ first, with multiplicities.
 

@@ -1,0 +1,117 @@
+"""Perron pairs where the heaviest cycles are longer than one step.
+
+With all cycle means at most 1, the steps of weight exactly 1 form the critical graph C.
+Where a critical cycle has more than one step, the rows of its states lose λ − 1 to
+rounding: their diagonal defect is 1, not tiny. On the power W^h, h the least common
+multiple of the critical periods, critical cycles are loops again. Written W = C + R,
+
+    W^k = C_k + R_k,   C_{k+1} = C_k C,   R_{k+1} = C_k R + R_k W,
+
+so the whole numbers C_k stay exact and the defect 1 − (W^h)_ii = (1 − (C_h)_ii) − (R_h)_ii
+is formed without loss.
+"""
+
+from __future__ import annotations
+
+from math import gcd, lcm
+
+import numpy as np
+
+from ..operators.numbers import Numbers
+from .components import communicating_classes
+from .perron import PerronPair, make_pair, perron_pair, search
+
+__all__ = ["critical_period", "periodic_pair"]
+
+_LONGEST = 60
+
+
+def critical_period(critical: np.ndarray) -> int:
+    """Return the least common multiple of the periods of the cyclic classes of a graph.
+
+    Examples
+    --------
+    >>> critical_period(np.array([[0, 1, 0], [1, 0, 0], [0, 0, 1]], bool))
+    2
+    """
+    period = 1
+    for members in communicating_classes(critical):
+        period = lcm(period, _period(critical[np.ix_(members, members)]))
+    return period
+
+
+def _period(edges: np.ndarray) -> int:
+    """Return the greatest common divisor of the cycle lengths of a strongly connected graph."""
+    level = {0: 0}
+    queue = [0]
+    period = 0
+    for node in queue:
+        for other in np.flatnonzero(edges[node]):
+            if int(other) in level:
+                period = gcd(period, level[node] + 1 - level[int(other)])
+            else:
+                level[int(other)] = level[node] + 1
+                queue.append(int(other))
+    return abs(period) or 1
+
+
+def periodic_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
+    """Compute the Perron pair of one irreducible matrix (n, n, 1), critical cycles of any length.
+
+    Examples
+    --------
+    >>> from tmsolve.operators.numbers import multiprecision
+    >>> log = np.array([[-80.0, 0.0], [0.0, -np.inf]])[..., None]           # λ² = e⁻⁸⁰ λ + 1
+    >>> pair = periodic_pair(multiprecision(128).array(log), multiprecision(128))
+    >>> float(round(float(pair.excess[0]) / np.exp(-80.0), 12))
+    0.5
+    """
+    critical = np.asarray(log[..., 0] == 0, dtype=bool)
+    steps = critical_period(critical)
+    if steps == 1 or steps > _LONGEST:
+        return perron_pair(log, numbers)
+    weights = numbers.exp(log)
+    exact = numbers.array(critical.astype(float))[..., None]
+    whole, rest = exact, weights - exact
+    remainder = rest
+    for _ in range(steps - 1):
+        remainder = _product(whole, rest) + _product(remainder, weights)
+        whole = _product(whole, exact)
+    power = whole + remainder
+    members = communicating_classes(np.asarray(power[..., 0] > 0, dtype=bool))
+    first = members[0]
+    pick, index = np.ix_(first, first), np.arange(len(first))
+    rates = power[pick].copy()
+    rates[index, index] = rates[index, index] * 0
+    defect = (1 - whole[first, first]) - remainder[first, first]
+    return _from_power(weights, first, rates, defect, (steps, len(members)), numbers)
+
+
+def _from_power(
+    weights: np.ndarray,
+    first: np.ndarray,
+    rates: np.ndarray,
+    defect: np.ndarray,
+    steps_classes: tuple[int, int],
+    numbers: Numbers,
+) -> PerronPair:
+    """Solve one cyclic class of the power, and carry its vector to the other classes."""
+    steps, classes = steps_classes
+    with np.errstate(all="ignore"):
+        if len(first) == 1:
+            part, excess, converged, error = defect * 0 + 1, -defect[0], np.array([True]), np.zeros(1)
+        else:
+            found = search(rates, defect, numbers)
+            part, excess, converged, error = found.vector, found.excess, found.converged, found.error
+        log_root = numbers.log1p(excess) / steps
+        vector = weights[0] * 0
+        vector[first] = part
+        moved = vector
+        for _ in range(classes - 1):
+            moved = (weights * moved[None]).sum(axis=1) / numbers.exp(log_root)
+            vector = vector + moved
+        return make_pair(weights, vector / vector.max(axis=0), numbers.expm1(log_root), converged, error)
+
+
+def _product(first: np.ndarray, second: np.ndarray) -> np.ndarray:
+    return (first[:, :, None] * second[None]).sum(axis=1)
