@@ -134,4 +134,5 @@ def reduced_costs(cost: np.ndarray, mean: np.ndarray, potentials: np.ndarray, ep
     """
     raw = cost - mean + potentials[:, None] - potentials[None, :]
     scale = np.abs(cost) + np.abs(mean) + np.abs(potentials[:, None]) + np.abs(potentials[None, :])
-    return np.where(np.abs(raw) <= 16 * epsilon * scale, mean * 0, raw)
+    rounding = (np.abs(raw) <= 16 * epsilon * scale) & (raw < np.inf)
+    return np.where(rounding, mean * 0, raw)
