@@ -7,9 +7,12 @@ import warnings
 import mpmath
 import numpy as np
 import pytest
+from hypothesis import HealthCheck, given, settings
+from hypothesis import strategies as st
 
 from tests.laws.readings import agree, readings
 from tests.laws.reference import Reference, growth
+from tests.laws.strategies import random_chains
 from tests.laws.zoo import BY_NAME, ZOO, Animal
 from tmsolve import open_chain, ring, solve
 
@@ -60,6 +63,18 @@ def test_free_energy(animal):
         expected = free_energy(animal, T)
         allowed = 1e-13 * max(abs(expected), abs(ground), float(T))
         assert abs(found - expected) <= allowed, (T, found, expected)
+
+
+@settings(max_examples=40, deadline=None, derandomize=True, suppress_health_check=[HealthCheck.too_slow])
+@given(random_chains(), st.sampled_from(("1e-6", "1e-3", "0.02", "1e4")))
+def test_free_energy_of_random_chains(drawn, T):
+    """The same for random chains; energies of order 1 may cancel in f, so 1 is the least scale."""
+    animal = Animal("random", drawn.chain, dict(drawn.values, T=T))
+    with warnings.catch_warnings(), np.errstate(all="raise"):
+        warnings.simplefilter("error")
+        found = solve(animal.chain.at(**animal.values)).free_energy
+    expected = free_energy(animal, T)
+    assert abs(found - expected) <= 1e-13 * max(abs(expected), float(T), 1.0), (T, found, expected)
 
 
 @EVERY_ANIMAL
