@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from functools import cached_property
 from typing import Protocol
 
 import numpy as np
@@ -122,11 +123,15 @@ class DoobLaw:
     def _differences(self, table: np.ndarray, slope: np.ndarray) -> np.ndarray:
         """Return Σ_l P_il [(B_ij − B_il) + (g_j − g_l)], formed from the likeliest step of each row."""
         chance = self.pair.chance
-        best = np.argmax(chance, axis=1)[:, None]
-        reference = np.take_along_axis(table, best, axis=1)
-        onward = np.take_along_axis(np.broadcast_to(slope[None], table.shape), best, axis=1)
-        relative = (table - reference) + (slope[None] - onward)
+        rows, points = np.arange(len(chance))[:, None], np.arange(chance.shape[-1])
+        reference, onward = table[rows, self._likeliest, points], slope[self._likeliest, points]
+        relative = (table - reference[:, None]) + (slope[None] - onward[:, None])
         return relative - (chance * relative).sum(axis=1)[:, None]
+
+    @cached_property
+    def _likeliest(self) -> np.ndarray:
+        """The likeliest step out of each state, shape (n, batch)."""
+        return np.argmax(self.pair.chance, axis=1)
 
     def centred_source(self, left: np.ndarray) -> np.ndarray:
         """Return Σ_i π_i P_ij (X_ij − ⟨X⟩): the deviation that a quantity leaves behind, shape (n, batch)."""

@@ -19,7 +19,8 @@ import numpy as np
 
 from ..operators.numbers import Numbers
 from .components import communicating_classes
-from .perron import PerronPair, make_pair, perron_pair, search
+from .perron import PerronPair, Search, make_pair, perron_pair, search
+from .reduction import heavy_first, reduce_states
 
 __all__ = ["critical_period", "periodic_pair"]
 
@@ -110,7 +111,11 @@ def _from_power(
         for _ in range(classes - 1):
             moved = (weights * moved[None]).sum(axis=1) / numbers.exp(log_root)
             vector = vector + moved
-        return make_pair(weights, vector / vector.max(axis=0), numbers.expm1(log_root), converged, error)
+        scaled = weights * vector[None] / vector[:, None]
+        index = np.arange(len(vector))
+        scaled[index, index] = scaled[index, index] * 0
+        flow = reduce_states(scaled, heavy_first(reduce_states(scaled).stationary))
+        return make_pair(weights, Search(vector, scaled, flow, numbers.expm1(log_root), converged, error))
 
 
 def _product(first: np.ndarray, second: np.ndarray) -> np.ndarray:

@@ -27,8 +27,7 @@ _NEWTON_STEPS = 8
 _ACCEPT = 1e-7
 #: Largest rounding error of the vector, as bounded below, with which a point is accepted.
 TOLERANCE = 1e-10
-_FULL_BOUND_LIMIT = 32
-#: Largest entry of the deviation matrix whose fourth power still fits a double.
+#: Longest mean passage time whose fourth power still fits a double.
 _SLOWEST = 1e75
 
 
@@ -88,7 +87,7 @@ def perron_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
         return _single(weights, defect)
     with np.errstate(all="ignore"):
         found = search(rates, defect, numbers)
-        return make_pair(weights, found.vector, found.excess, found.converged, found.error)
+        return make_pair(weights, found)
 
 
 @dataclass(frozen=True)
@@ -98,6 +97,10 @@ class Search:
     Attributes
     ----------
     vector : ndarray, shape (n, batch)
+    scaled : ndarray, shape (n, n, batch)
+        Off-diagonal weights W_ij x_j / x_i.
+    flow : Reduction
+        Their factorisation.
     excess : ndarray, shape (batch,)
         λ − 1.
     converged : ndarray of bool, shape (batch,)
@@ -106,6 +109,8 @@ class Search:
     """
 
     vector: np.ndarray
+    scaled: np.ndarray
+    flow: Reduction
     excess: np.ndarray
     converged: np.ndarray
     error: np.ndarray
@@ -113,38 +118,33 @@ class Search:
 
 def search(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> Search:
     """Find the Perron vector of offdiag(rates) + 1 − diag(defect), n ≥ 2, with its rounding bound."""
-    vector = _noda(rates, defect, numbers)
-    vector, correction = _newton(vector, rates, defect)
-    stalled = ~(correction < _ACCEPT)
+    found = _newton(_noda(rates, defect, numbers), rates, defect, numbers)
+    stalled = ~(found.correction < _ACCEPT)
     if stalled.any():
         picked = np.flatnonzero(stalled)
-        again = _bisect(rates[..., picked], defect[:, picked], numbers)
-        again, second = _newton(again, rates[..., picked], defect[:, picked])
-        vector[:, picked], correction[picked] = again, second
-    scaled = rates * vector[None] / vector[:, None]
-    rows = scaled.sum(axis=1) - defect
-    flow = reduce_states(scaled, heavy_first(reduce_states(scaled).stationary))
-    excess = (flow.stationary * rows).sum(axis=0)
-    finite = np.isfinite(excess.astype(np.float64)) & _all_positive(vector)
-    noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(vector) + 4) * numbers.epsilon)
-    error, slowness = _amplified(flow, noise)
-    finite &= (slowness < _SLOWEST) | numbers.exact_exponent
-    error = np.where(finite, error.astype(np.float64), np.inf)
-    return Search(vector, excess, finite & (correction < _ACCEPT), error)
+        part = rates[..., picked], defect[:, picked]
+        again = _newton(_bisect(*part, numbers), *part, numbers)
+        vector = found.vector.copy()
+        vector[:, picked] = again.vector
+        found = _newton(vector, rates, defect, numbers)
+    scaled, flow = found.scaled, found.flow
+    excess = (flow.stationary * (scaled.sum(axis=1) - defect)).sum(axis=0)
+    finite = np.isfinite(excess.astype(np.float64)) & _all_positive(found.vector)
+    noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(defect) + 4) * numbers.epsilon)
+    error = np.where(finite, flow.reach(noise).astype(np.float64), np.inf)
+    if not numbers.exact_exponent:
+        finite &= flow.reach(np.ones_like(noise)) < _SLOWEST
+    return Search(found.vector, scaled, flow, excess, finite & (found.correction < _ACCEPT), error)
 
 
-def make_pair(
-    weights: np.ndarray, vector: np.ndarray, excess: np.ndarray, converged: np.ndarray, error: np.ndarray
-) -> PerronPair:
+def make_pair(weights: np.ndarray, found: Search) -> PerronPair:
     """Build the chain of Doob of a matrix whose root and vector are known."""
-    chance = weights * vector[None] / vector[:, None] / (1 + excess)
-    rates = chance.copy()
-    index = np.arange(len(vector))
+    root = 1 + found.excess
+    chance = found.scaled / root
+    index = np.arange(len(weights))
     # The diagonal needs no quotient of equal numbers.
-    chance[index, index] = weights[index, index] / (1 + excess)
-    rates[index, index] = rates[index, index] * 0
-    reduction = reduce_states(rates, heavy_first(reduce_states(rates).stationary))
-    return PerronPair(excess, vector, chance, reduction, converged, error)
+    chance[index, index] = weights[index, index] / root
+    return PerronPair(found.excess, found.vector, chance, found.flow.slowed(root), found.converged, found.error)
 
 
 def _single(weights: np.ndarray, defect: np.ndarray) -> PerronPair:
@@ -161,11 +161,15 @@ def _row_excess(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray) -> np
 def _noda(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
     vector = np.ones_like(defect) if rates.dtype != object else defect * 0 + 1
     floor = numbers.epsilon
+    best = np.full(defect.shape[-1], np.inf)
     for _ in range(_NODA_STEPS):
         rows = _row_excess(vector, rates, defect)
         top, bottom = rows.max(axis=0), rows.min(axis=0)
-        if not (top - bottom > 1e-3 * np.abs(top)).any():
+        spread = np.asarray(top - bottom, dtype=np.float64)
+        # Rows whose rounding exceeds the spread stop improving; Newton's steps take over.
+        if not ((spread > 1e-7 * np.abs(top)) & (spread < best / 2)).any():
             break
+        best = np.fmin(best, spread)
         solved = solve_shifted(top, defect, rates, _trusted_part(vector, rows, top, defect), floor)
         solved = solved / solved.max(axis=0)
         usable = _all_positive(solved)
@@ -188,24 +192,37 @@ def _all_positive(vector: np.ndarray) -> np.ndarray:
     return np.asarray(positive.all(axis=0), dtype=bool)
 
 
-def _newton(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Correct the vector until the correction is small; return it with the last correction's size."""
-    size = np.full(vector.shape[-1], np.inf)
-    order = heavy_first(reduce_states(rates * vector[None] / vector[:, None]).stationary)
-    for _ in range(_NEWTON_STEPS):
+@dataclass(frozen=True)
+class _Corrected:
+    """Where Newton's method ended: the vector, its factored rates, the size of the last step."""
+
+    vector: np.ndarray
+    scaled: np.ndarray
+    flow: Reduction
+    correction: np.ndarray
+
+
+def _newton(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> _Corrected:
+    """Correct the vector until the correction is rounding."""
+    smallest = np.full(vector.shape[-1], np.inf)
+    finest = max(numbers.epsilon, 1e-200) * 64
+    order: np.ndarray | None = None
+    for attempt in range(_NEWTON_STEPS):
         scaled = rates * vector[None] / vector[:, None]
-        reduction = reduce_states(scaled, order)
+        flow = reduce_states(scaled, order)
+        if attempt == 0:
+            order = heavy_first(flow.stationary)
+            flow = flow if order is None else reduce_states(scaled, order)
         rows = scaled.sum(axis=1) - defect
-        excess = (reduction.stationary * rows).sum(axis=0)
-        step = reduction.poisson(rows - excess)
+        step = flow.poisson(rows - (flow.stationary * rows).sum(axis=0))
         largest = np.abs(step).max(axis=0).astype(np.float64)
-        fresh = np.isfinite(largest) & (largest < 0.5)
-        vector = np.where(fresh, vector * (1 + np.where(fresh, step, 0)), vector)
-        better = largest < size
-        size = np.where(better, largest, size)
-        if not (fresh & (size > 1e-9) & better).any():
+        # A step that no longer shrinks is rounding: the vector is as good as it gets.
+        useful = np.isfinite(largest) & (largest < 0.5) & (largest > finest) & (largest < smallest)
+        smallest = np.fmin(smallest, largest)
+        if not useful.any() or attempt == _NEWTON_STEPS - 1:
             break
-    return vector / vector.max(axis=0), size
+        vector = np.where(useful, vector * (1 + np.where(useful, step, 0)), vector)
+    return _Corrected(vector, scaled, flow, smallest)
 
 
 def _bisect(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
@@ -238,15 +255,3 @@ def _pivots_positive(shift: np.ndarray, defect: np.ndarray, rates: np.ndarray) -
         d[:k] = d[:k] - a[:k, k] * a[k, :k]
         a[:k, :k] += a[:k, None, k] * a[None, k, :k]
     return good
-
-
-def _amplified(flow: Reduction, noise: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return max_i Σ_j |D_ij| noise_j and max |D| with D the deviation matrix; probed by signs for large ones."""
-    if len(noise) <= _FULL_BOUND_LIMIT:
-        size = np.abs(flow.deviation())
-        return (size * noise[None]).sum(axis=1).max(axis=0), size.max(axis=(0, 1))
-    signs = np.random.default_rng(0).choice([-1.0, 1.0], size=(4, len(noise), 1))
-    probes = [noise * sign for sign in signs]
-    sizes = [np.abs(flow.poisson(probe - (flow.stationary * probe).sum(axis=0))).max(axis=0) for probe in probes]
-    largest = np.max(sizes, axis=0) * 4
-    return largest, largest / noise.max(axis=0)
