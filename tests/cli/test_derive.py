@@ -1,0 +1,119 @@
+"""``tmsolve derive``."""
+
+import math
+
+import pytest
+import sympy as sp
+
+
+def read(text):
+    """Read a formula back; beta is a function of sympy's own, E and I would be constants."""
+    names = ("beta", "J", "D", "h", "J1", "J2")
+    return sp.sympify(text, locals={name: sp.Symbol(name) for name in names})
+
+
+def test_potts_partition_function_reads_as_in_a_book(tm):
+    ended = tm("derive", "potts", "--option", "q=3", "-p", "h=0")
+    assert ended.code == 0 and ended.err == ""
+    assert "Z_N = (exp(beta*J) + 2)**N + 2*(exp(beta*J) - 1)**N" in ended.out
+    assert "f = -log(exp(beta*J) + 2)/beta" in ended.out
+
+
+def test_blume_capel_has_three_eigenvalues_in_real_radicals(tm):
+    document = tm("derive", "blume_capel", "-p", "h=0", "--json").json
+    values = [read(entry["value"]) for entry in document["quantities"]["eigenvalues"]]
+    assert [entry["multiplicity"] for entry in document["quantities"]["eigenvalues"]] == [1, 1, 1]
+    assert not any(value.has(sp.I, sp.Piecewise) for value in values)
+    point = {sp.Symbol("beta"): 1.3, sp.Symbol("J"): 0.7, sp.Symbol("D"): 0.4}
+    y = math.exp(-1.3 * 0.4)
+    a = 2 * y * math.cosh(1.3 * 0.7)
+    root = math.sqrt((1 - a) ** 2 + 8 * y)
+    expected = sorted([(1 + a + root) / 2, (1 + a - root) / 2, 2 * y * math.sinh(1.3 * 0.7)])
+    assert sorted(float(value.subs(point)) for value in values) == pytest.approx(expected, rel=1e-12)
+
+
+def test_quantities_are_formulas_of_the_same_physics_as_solve(tm):
+    asked = "f,u,s,c,xi,mean(m),chi(m),derivative(h)"
+    document = tm("derive", "ising", "--quantity", asked, "--json").json
+    numbers = tm("solve", "ising", "-p", "J=0.7", "-p", "h=0.3", "-p", "T=0.9", "--json").json["results"]
+    point = {sp.Symbol("beta"): 1 / 0.9, sp.Symbol("J"): 0.7, sp.Symbol("h"): 0.3}
+    for short, long in {
+        "f": "free_energy",
+        "u": "internal_energy",
+        "s": "entropy",
+        "c": "specific_heat",
+        "xi": "correlation_length",
+        "mean(m)": "mean(m)",
+        "chi(m)": "susceptibility(m)",
+    }.items():
+        formula = read(document["quantities"][short])
+        assert float(formula.subs(point)) == pytest.approx(numbers[long], rel=1e-10), short
+    slope = read(document["quantities"]["derivative(h)"])
+    assert float(slope.subs(point)) == pytest.approx(-numbers["mean(m)"], rel=1e-10)
+
+
+def test_long_names_do_as_well(tm):
+    short = tm("derive", "potts", "-p", "h=0", "--quantity", "f,xi").out
+    assert short == tm("derive", "potts", "-p", "h=0", "--quantity", "free_energy,correlation_length").out
+    assert short.splitlines()[-2].startswith("f = ") and short.splitlines()[-1].startswith("xi = ")
+
+
+def test_lists_and_matrices(tm):
+    out = tm("derive", "lattice_gas", "--quantity", "matrix,blocks,recurrence,polynomial,eigenvalues").out
+    assert "transfer matrix\n  1 " in out
+    assert "Z_N = c_1 Z_(N-1) + c_2 Z_(N-2)  for N > 2\n  c_1 = 1\n  c_2 = exp(beta*mu)" in out
+    assert "det(lambda - M) = lambda**2 - lambda - exp(beta*mu)" in out
+    assert "eigenvalues (multiplicity)" in out and "2 x 2, 1 times" in out
+
+
+def test_a_ring_of_given_length_is_an_exact_sum(tm):
+    out = tm("derive", "ising", "-p", "h=0", "--cells", "3").out
+    assert "Z_3 = 2*exp(3*beta*J) + 6*exp(-beta*J)" in out
+    only = tm("derive", "ising", "-p", "h=0", "--cells", "3", "--quantity", "Z").out
+    assert only.rstrip().splitlines()[-1] == "Z_3 = 2*exp(3*beta*J) + 6*exp(-beta*J)"
+
+
+def test_latex_is_nothing_but_equations(tm):
+    lines = tm("derive", "potts", "-p", "h=0", "--latex").out.splitlines()
+    assert lines[0] == r"\lambda_{1} = e^{\beta J} + 2"
+    assert lines[1] == r"\lambda_{2} = e^{\beta J} - 1 \quad \text{(2 times)}"
+    assert lines[2] == (r"Z_{N} = \left(e^{\beta J} + 2\right)^{N} + 2 \left(e^{\beta J} - 1\right)^{N}")
+    assert lines[3].startswith("f = - ")
+    rest = tm("derive", "lattice_gas", "--latex", "--quantity", "matrix,recurrence,blocks").out
+    assert r"M = \left[\begin{matrix}1 & e^{\beta \mu}\\1 & 0\end{matrix}\right]" in rest
+    assert r"c_{2} = e^{\beta \mu}" in rest and r"M \simeq 1 \times [2 \times 2]" in rest
+
+
+def test_fixed_parameters_are_exact_and_defaults_are_not_used(tm):
+    document = tm("derive", "blume_capel", "-p", "h=0", "-p", "D=2/5", "--json").json
+    assert document["fixed"] == {"h": "0", "D": "2/5"}
+    assert document["symbols"] == ["J", "beta"]
+    assert "2*beta/5" in document["quantities"]["f"] or "exp(-2*beta/5)" in document["quantities"]["f"]
+    assert "(default)" not in tm("derive", "blume_capel", "-p", "h=0").out
+
+
+def test_without_closed_form_it_says_so_and_gives_the_recurrence(tm):
+    ended = tm("derive", "spin1_nnn")
+    assert ended.code == 0
+    assert "no closed form: " in ended.out and "irreducible factor of degree 9" in ended.out
+    assert "c_1 = 2*exp(beta*(-D + J1 + J2))*cosh(beta*h) + 1" in ended.out
+    assert "see the attribute" not in ended.out and "--quantity prints it" in ended.out
+    document = tm("derive", "spin1_nnn", "--json").json
+    assert document["closed"] is False and len(document["quantities"]["recurrence"]) == 9
+
+
+def test_what_cannot_be_derived_is_told_and_the_rest_is_printed(tm):
+    ended = tm("derive", "spin1_nnn", "--quantity", "recurrence,xi")
+    assert ended.code == 3
+    assert "xi failed: the correlation length needs all eigenvalues" in ended.err
+    assert "c_9 = " in ended.out
+    alone = tm("derive", "spin1_nnn", "--quantity", "Z")
+    assert alone.code == 1 and alone.out == ""
+    assert "no closed form of Z_N for symbolic N" in alone.err
+    assert "Use --cells 12 for a given number of cells, --quantity recurrence, or" in alone.err
+
+
+def test_the_time_limit_ends_the_derivation(tm):
+    ended = tm("derive", "clock", "--option", "q=12", "--time-limit", "0.001")
+    assert ended.code == 1
+    assert "time limit of 0.001 s; use tmsolve solve for numbers, or give a longer --time-limit" in ended.err

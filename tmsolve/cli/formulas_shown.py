@@ -1,0 +1,77 @@
+"""Derived quantities as text, as LaTeX and as data."""
+
+from __future__ import annotations
+
+from typing import TYPE_CHECKING, Any
+
+from .table import table
+
+if TYPE_CHECKING:
+    from ..symbolic.forms import ClosedForm
+    from .formulas import Formula
+
+__all__ = ["as_data", "as_latex", "as_text"]
+
+
+def as_text(formula: Formula, value: Any, form: ClosedForm) -> str:
+    """Return ``symbol = formula``, or a list with one formula per line."""
+    data = as_data(formula, value, form)
+    if formula.kind == "eigenvalues":
+        return _listed("eigenvalues (multiplicity)", [f"{item['value']}  ({item['multiplicity']})" for item in data])
+    if formula.kind == "blocks":
+        return _listed(
+            "blocks",
+            [f"{item['size']} x {item['size']}, {item['multiplicity']} times: {item['label']}" for item in data],
+        )
+    if formula.kind == "recurrence":
+        sum_ = " + ".join(f"c_{k} Z_(N-{k})" for k in range(1, len(data) + 1))
+        return _listed(f"Z_N = {sum_}  for N > {len(data)}", [f"c_{k} = {c}" for k, c in enumerate(data, start=1)])
+    if formula.kind == "matrix":
+        return "transfer matrix\n" + table(data, indent="  ")
+    return f"{formula.symbol} = {data}"
+
+
+def _listed(head: str, lines: list[str]) -> str:
+    return "\n".join([head, *(f"  {line}" for line in lines)])
+
+
+def as_data(formula: Formula, value: Any, form: ClosedForm) -> Any:
+    """Return texts that read back as Python, in lists where there are several."""
+    from ..symbolic.plain import plain_text
+    from ..symbolic.report import ring_text
+
+    if formula.symbol == "Z_N":
+        return ring_text(form)
+    if formula.kind == "eigenvalues":
+        return [{"value": plain_text(item), "multiplicity": times} for item, times in value]
+    if formula.kind == "blocks":
+        return [{"size": block.size, "multiplicity": block.multiplicity, "label": block.label} for block in value]
+    if formula.kind == "recurrence":
+        return [plain_text(item) for item in value]
+    if formula.kind == "matrix":
+        return [[plain_text(item) for item in row] for row in value.tolist()]
+    return plain_text(value)
+
+
+def as_latex(formula: Formula, value: Any, form: ClosedForm) -> str:
+    """Return one equation per line, without dollar signs."""
+    from ..symbolic.plain import latex_text
+
+    if formula.symbol == "Z_N":
+        powers = (
+            ("" if times == 1 else f"{times} ") + rf"\left({latex_text(item)}\right)^{{N}}"
+            for item, times in form.eigenvalues
+            if item != 0
+        )
+        return f"{formula.latex} = {' + '.join(powers)}"
+    if formula.kind == "eigenvalues":
+        return "\n".join(
+            rf"\lambda_{{{k}}} = {latex_text(item)}" + (rf" \quad \text{{({times} times)}}" if times > 1 else "")
+            for k, (item, times) in enumerate(value, start=1)
+        )
+    if formula.kind == "recurrence":
+        return "\n".join(f"c_{{{k}}} = {latex_text(item)}" for k, item in enumerate(value, start=1))
+    if formula.kind == "blocks":
+        sizes = (rf"{block.multiplicity} \times [{block.size} \times {block.size}]" for block in value)
+        return r"M \simeq " + r" \oplus ".join(sizes)
+    return f"{formula.latex} = {latex_text(value)}"

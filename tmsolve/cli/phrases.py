@@ -1,0 +1,32 @@
+"""Advice of the Python interface in the words of the command line."""
+
+from __future__ import annotations
+
+import re
+
+__all__ = ["for_command_line"]
+
+_PHRASES = (
+    (r"chain\.fix\((\w+)=…\)", r"-p \1=…"),
+    (r"chain\.fix\(…\)", "-p NAME=VALUE"),
+    (r"solve\(chain\.at\(…\)\)", "tmsolve solve"),
+    (r"\btime_limit\b", "--time-limit"),
+    (r"partition_function\(12\)", "--cells 12"),
+    (r"partition_function\(N\) with a number", "--cells with a number"),
+    (r"(?<!\w)\.recurrence\b", "--quantity recurrence"),
+    (r"(?<!\w)\.characteristic_polynomial\b", "--quantity polynomial"),
+    (r"see the attribute of the form", "--quantity prints it"),
+)
+
+
+def for_command_line(message: str) -> str:
+    """Replace what only makes sense in a program by the option that does the same.
+
+    Examples
+    --------
+    >>> for_command_line("fix parameters with chain.fix(…), or give a longer time_limit")
+    'fix parameters with -p NAME=VALUE, or give a longer --time-limit'
+    """
+    for pattern, words in _PHRASES:
+        message = re.sub(pattern, words, message)
+    return message

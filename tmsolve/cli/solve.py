@@ -1,0 +1,157 @@
+"""``tmsolve solve``: thermodynamics, correlations and eigenvalues at one point."""
+
+from __future__ import annotations
+
+import argparse
+import sys
+from typing import TYPE_CHECKING, Any
+
+from ..errors import SolveError, TmsolveError
+from .files import check_output
+from .jsontext import json_text
+from .layout import heading, level_table, matrix_line, reading_table
+from .model import Values, fill, given_values, load_model, readings_of
+from .options import add_common, add_digits, add_model, add_out, add_read, digits_of
+from .outcome import DONE, SOME_FAILED
+from .parser import Parser
+from .words import split_names, whole
+
+if TYPE_CHECKING:
+    from ..models import LoadedModel
+    from ..observe.readings import Reading
+    from ..observe.solution import Solution
+
+OPERANDS = "MODEL"
+DESCRIPTION = "Solve an infinite chain at one point: thermodynamics per cell, correlations, eigenvalues."
+EXAMPLES = """\
+  tmsolve solve ising -p T=0.5
+  tmsolve solve potts --option q=5 -p T=0.7 --json
+  tmsolve solve blume_capel -p T=0.4 -p D=9/10 --read free_energy,"susceptibility(m,q)" --digits 15
+  tmsolve solve my_chain.py -p J=1 -p T=0.25 --out result.json
+"""
+
+#: How many eigenvalues are shown.
+LEVELS = 8
+
+
+def configure(parser: Parser) -> None:
+    """Declare the options."""
+    add_model(parser, "value of a parameter, or of the temperature T, read exactly: 0.4, 2/5, 1e-3; repeatable")
+    add_read(parser, "all quantities, with every observable of the model")
+    parser.add_argument(
+        "--levels",
+        metavar="N",
+        help=f"how many different eigenvalues are shown; 0 for none. Default: {LEVELS}, none with --read",
+    )
+    add_digits(parser)
+    add_out(parser, "also write the JSON document to this file, ending in .json")
+    add_common(parser)
+
+
+def run(arguments: argparse.Namespace) -> int:
+    """Solve and print."""
+    digits = digits_of(arguments)
+    out = check_output(arguments.out, "--out", (".json",))
+    model = load_model(arguments)
+    values = fill(given_values(arguments, model), model)
+    readings = readings_of(split_names(arguments.read, "--read") or _everything(model), model)
+    levels = _levels(arguments)
+
+    from ..answer.solve import solve
+
+    solution = solve(model.chain.at(**values.numbers))
+    found, failures = _evaluate(solution, readings)
+    spectrum = _spectrum(solution, levels, failures)
+    if failures and not found:
+        raise SolveError(next(iter(failures.values())))
+    document = _document(model, values, solution, found, spectrum, failures)
+    if out is not None:
+        out.write_text(json_text(document) + "\n", encoding="utf-8")
+    if arguments.json:
+        print(json_text(document))
+    else:
+        parts = [heading(model, values), reading_table(found, digits), matrix_line(document)]
+        print("\n\n".join([*parts, level_table(spectrum, digits)] if spectrum else parts))
+        for name, why in failures.items():
+            print(f"tmsolve solve: {name} failed: {why}", file=sys.stderr)
+    return SOME_FAILED if failures else DONE
+
+
+def _everything(model: LoadedModel) -> list[str]:
+    names = ["free_energy", "internal_energy", "entropy", "specific_heat"]
+    for observable in model.chain.observables:
+        names += [
+            f"mean({observable})",
+            f"susceptibility({observable})",
+            f"temperature_susceptibility({observable})",
+        ]
+        names += [f"correlation_length({observable})", f"wave_number({observable})"]
+    return [*names, "correlation_length", "wave_number", "gap"]
+
+
+def _levels(arguments: argparse.Namespace) -> int:
+    if arguments.levels is None:
+        return 0 if arguments.read else LEVELS
+    return whole(arguments.levels, "--levels", 0)
+
+
+def _evaluate(solution: Solution, readings: list[Reading]) -> tuple[dict[Reading, float], dict[str, str]]:
+    """Return what could be computed, and why the rest could not."""
+    found, failures = {}, {}
+    for reading in readings:
+        try:
+            found[reading] = float(reading.evaluate(solution))
+        except TmsolveError as error:
+            failures[reading.name] = str(error)
+    return found, failures
+
+
+def _spectrum(solution: Solution, levels: int, failures: dict[str, str]) -> list[dict[str, Any]]:
+    if not levels:
+        return []
+    try:
+        spectrum = solution.spectrum(levels)
+    except TmsolveError as error:
+        failures["eigenvalues"] = str(error)
+        return []
+    return [
+        {
+            "value": [level.value.real, level.value.imag],
+            "log_modulus": level.log_modulus,
+            "phase": level.phase,
+            "multiplicity": level.multiplicity,
+        }
+        for level in spectrum
+    ]
+
+
+def _document(
+    model: LoadedModel,
+    values: Values,
+    solution: Solution,
+    found: dict[Reading, float],
+    spectrum: list[dict[str, Any]],
+    failures: dict[str, str],
+) -> dict[str, Any]:
+    from .._version import __version__
+
+    facts = solution.diagnostics
+    return {
+        "command": "solve",
+        "model": model.name,
+        "title": model.chain.name,
+        "options": dict(model.options),
+        **values.document(),
+        "results": {reading.name: value for reading, value in found.items()},
+        "units": {reading.name: reading.unit for reading in found},
+        "eigenvalues": spectrum,
+        "matrix": {
+            "rows": facts["matrix"][0],
+            "columns": facts["matrix"][1],
+            "nonzeros": facts["nonzeros"],
+            "summed_out": facts["interior"],
+        },
+        "bits": facts["bits"],
+        "failed": failures,
+        "tmsolve": __version__,
+    }

@@ -1,0 +1,76 @@
+"""Aligned text tables and the numbers in them."""
+
+from __future__ import annotations
+
+import math
+from collections.abc import Sequence
+from fractions import Fraction
+from typing import Any
+
+__all__ = ["Number", "number_text", "show_exact", "table"]
+
+
+def number_text(value: float, digits: int) -> str:
+    """Return a number with so many significant digits.
+
+    Examples
+    --------
+    >>> number_text(1/3, 5), number_text(0.5, 5), number_text(float("inf"), 5), number_text(-0.0, 5)
+    ('0.33333', '0.5', 'inf', '0')
+    """
+    number = float(value)
+    if not math.isfinite(number):
+        return str(number)
+    return f"{number + 0.0:.{digits}g}"
+
+
+def show_exact(value: Any) -> str:
+    """Return a parameter as it was meant: a decimal where it is one, else a fraction.
+
+    Examples
+    --------
+    >>> show_exact(Fraction(9, 10)), show_exact(Fraction(1, 3)), show_exact(Fraction(2))
+    ('0.9', '1/3', '2')
+    """
+    if not isinstance(value, Fraction):
+        return repr(float(value))
+    if value.denominator == 1 and abs(value) < 10**16:
+        return str(value.numerator)
+    short = repr(float(value))
+    return short if Fraction(short) == value else str(value)
+
+
+class Number(str):
+    """A cell that is aligned at its decimal point."""
+
+    @property
+    def before(self) -> int:
+        """Letters before the decimal point, or before the exponent, or all of them."""
+        return min((i for mark in ".e" if (i := self.find(mark)) >= 0), default=len(self))
+
+
+def table(rows: Sequence[Sequence[str]], heads: Sequence[str] = (), indent: str = "") -> str:
+    """Return rows as aligned columns, two spaces apart; cells of type `Number` stand point under point.
+
+    Examples
+    --------
+    >>> print(table([["f", Number("-1.25")], ["xi", Number("10")]], ["quantity", "value"]))
+    quantity  value
+    f         -1.25
+    xi        10
+    """
+    columns = list(zip(*rows, strict=True)) if rows else [() for _ in heads]
+    aligned = [_aligned(column) for column in columns]
+    if heads:
+        aligned = [[head, *column] for head, column in zip(heads, aligned, strict=True)]
+    widths = [max(map(len, column), default=0) for column in aligned]
+    lines = (
+        "  ".join(cell.ljust(width) for cell, width in zip(row, widths, strict=True))
+        for row in zip(*aligned, strict=True)
+    )
+    return "\n".join(indent + line.rstrip() for line in lines)
+
+
+def _aligned(column: Sequence[str]) -> list[str]:
+    before = max((cell.before for cell in column if isinstance(cell, Number)), default=0)
+    return [" " * (before - cell.before) + cell if isinstance(cell, Number) else cell for cell in column]
