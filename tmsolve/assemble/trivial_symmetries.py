@@ -34,7 +34,9 @@ def trivial_symmetries(chain: Chain) -> list[str]:
         affine = affine_table(term, [chain.cell[kind] for kind, _ in term.places if kind])
         if affine is None or term.role != "energy":
             return []
-        tables.append((term, affine))
+        # A parameter fixed at 0 breaks nothing.
+        active = {name: slope for name, slope in affine.slopes.items() if chain.fixed.get(name) != 0}
+        tables.append((term, AffineTable(affine.constant, active)))
     found = []
     sizes = {kind: len(states) for kind, states in chain.cell.items()}
     if max(sizes.values()) > 1:
