@@ -1,0 +1,51 @@
+"""Every example runs, prints what it promises, and leaves nothing behind but what it names."""
+
+from __future__ import annotations
+
+import os
+import subprocess
+import sys
+from pathlib import Path
+
+import pytest
+
+import tmsolve
+
+EXAMPLES = Path(__file__).resolve().parents[2] / "examples"
+
+
+def run(name: str, folder: Path, *arguments: str) -> str:
+    """Run an example in an empty folder with warnings as errors; return what it prints."""
+    environment = dict(os.environ, PYTHONPATH=str(Path(tmsolve.__file__).parents[1]), PYTHONIOENCODING="utf-8")
+    done = subprocess.run(
+        [sys.executable, "-W", "error", str(EXAMPLES / name), *arguments],
+        cwd=folder,
+        env=environment,
+        capture_output=True,
+        text=True,
+        encoding="utf-8",
+        timeout=300,
+    )
+    assert done.returncode == 0, done.stderr
+    return done.stdout
+
+
+def test_custom_chain(tmp_path: Path) -> None:
+    printed = run("custom_chain.py", tmp_path)
+    assert "Transfer matrix 3×3 per cell" in printed
+    assert "maximum of specific_heat at T = 6.4085655154" in printed
+    assert not list(tmp_path.iterdir())
+
+
+def test_derive_partition_function(tmp_path: Path) -> None:
+    printed = run("derive_partition_function.py", tmp_path)
+    by_formula = printed.split("coverage by formula ")[1].split()[0]
+    by_solver = printed.split("coverage by solver ")[1].split()[0]
+    assert float(by_formula) == pytest.approx(float(by_solver), rel=1e-13)
+    line = printed.split("ln Z of a ring of 12 by formula ")[1]
+    assert float(line.split(",")[0]) == pytest.approx(float(line.split("products ")[1].split()[0]), rel=1e-11)
+
+
+def test_every_example_says_that_it_is_invented() -> None:
+    for path in EXAMPLES.glob("*.py"):
+        assert "invented" in path.read_text(encoding="utf-8").split('"""')[1], path.name
