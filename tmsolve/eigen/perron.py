@@ -40,7 +40,7 @@ class PerronPair:
     excess : ndarray, shape (batch,)
         t = λ − 1.
     vector : ndarray, shape (n, batch)
-        Right Perron vector, largest entry 1.
+        Right Perron vector, not normalised.
     chance : ndarray, shape (n, n, batch)
         Transition probabilities W_ij x_j / (λ x_i) of the chain of Doob.
     reduction : Reduction
@@ -131,6 +131,8 @@ def search(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> Search:
     excess = (flow.stationary * (scaled.sum(axis=1) - defect)).sum(axis=0)
     finite = np.isfinite(excess.astype(np.float64)) & _all_positive(found.vector)
     noise = (scaled.sum(axis=1) + np.abs(defect)) * ((len(defect) + 4) * numbers.epsilon)
+    # Every row is compared with their mean, whose rounding it therefore shares.
+    noise = noise + (flow.stationary * noise).sum(axis=0)
     error = np.where(finite, flow.reach(noise).astype(np.float64), np.inf)
     if not numbers.exact_exponent:
         finite &= flow.reach(np.ones_like(noise)) < _SLOWEST
