@@ -123,7 +123,10 @@ def search(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> Search:
     if stalled.any():
         picked = np.flatnonzero(stalled)
         part = rates[..., picked], defect[:, picked]
-        again = _newton(_bisect(*part, numbers), *part, numbers)
+        start = _bisect(*part, numbers)
+        if numbers.exact_exponent:
+            start = _patient_noda(start, *part, numbers)
+        again = _newton(start, *part, numbers)
         vector = found.vector.copy()
         vector[:, picked] = again.vector
         found = _newton(vector, rates, defect, numbers)
@@ -162,7 +165,6 @@ def _row_excess(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray) -> np
 
 def _noda(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
     vector = np.ones_like(defect) if rates.dtype != object else defect * 0 + 1
-    floor = numbers.epsilon
     best = np.full(defect.shape[-1], np.inf)
     for _ in range(_NODA_STEPS):
         rows = _row_excess(vector, rates, defect)
@@ -172,11 +174,37 @@ def _noda(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray
         if not ((spread > 1e-7 * np.abs(top)) & (spread < best / 2)).any():
             break
         best = np.fmin(best, spread)
-        solved = solve_shifted(top, defect, rates, _trusted_part(vector, rows, top, defect), floor)
-        solved = solved / solved.max(axis=0)
-        usable = _all_positive(solved)
-        vector = np.where(usable, solved, vector)
+        vector = _noda_step(vector, rows, top, rates, defect, numbers)
     return vector
+
+
+def _patient_noda(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
+    """Iterate as long as the rows come closer together.
+
+    Where two eigenvalues nearly coincide each step gains but one bit until they are told
+    apart; long numbers have the bits.
+    """
+    best: np.ndarray | None = None
+    waiting = 0
+    for _ in range(2 * numbers.bits):
+        rows = _row_excess(vector, rates, defect)
+        top = rows.max(axis=0)
+        spread = top - rows.min(axis=0)
+        improved = best is None or bool((spread < 0.9 * best).any())
+        waiting = 0 if improved else waiting + 1
+        if waiting > 3 or not (spread > 64 * numbers.epsilon * np.abs(top)).any():
+            break
+        best = spread if best is None else np.where(spread < best, spread, best)
+        vector = _noda_step(vector, rows, top, rates, defect, numbers)
+    return vector
+
+
+def _noda_step(
+    vector: np.ndarray, rows: np.ndarray, top: np.ndarray, rates: np.ndarray, defect: np.ndarray, numbers: Numbers
+) -> np.ndarray:
+    solved = solve_shifted(top, defect, rates, _trusted_part(vector, rows, top, defect), numbers.epsilon)
+    solved = solved / solved.max(axis=0)
+    return np.where(_all_positive(solved), solved, vector)
 
 
 def _trusted_part(vector: np.ndarray, rows: np.ndarray, shift: np.ndarray, defect: np.ndarray) -> np.ndarray:

@@ -27,15 +27,15 @@ class Numbers:
         Length of the significand; 53 for doubles.
     dtype : type
         dtype of its arrays: float64, or object.
-    epsilon : float
-        Unit roundoff.
+    epsilon : number
+        Unit roundoff; a long number where a double would hold it as 0.
     tiny : float
         Magnitude below which results lose relative accuracy; 0 with unlimited exponents.
     """
 
     bits: int
     dtype: Any
-    epsilon: float
+    epsilon: Any
     tiny: float
     exp: Any
     expm1: Any
@@ -120,7 +120,7 @@ def multiprecision(bits: int) -> Numbers:
     return Numbers(
         bits=bits,
         dtype=object,
-        epsilon=2.0**-bits,
+        epsilon=power(-bits),
         tiny=0.0,
         exp=each(context.exp),
         expm1=each(expm1),
