@@ -1,27 +1,23 @@
 """The eigenvalues of a stationary chain relative to the Perron root, and who feels them.
 
-Eigenvalues λ_k/λ₁ of the transition matrix P come from two sources: LAPACK on P for those
-well inside the unit circle, and LAPACK on the deviation matrix (I − P)^#, built without
-subtractions, for one that is close to 1: its eigenvalue 1/(1 − λ_k/λ₁) is then the largest
-and is accurate although 1 − λ_k/λ₁ is far below rounding.
+Subtracting the row of the likeliest state from all rows takes the Perron mode out of the
+transition matrix P and leaves small numbers where the other eigenvalues are small. LAPACK
+solves what is left; eigenvalues close to the unit circle are then computed anew, see
+`near_circle`.
 """
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-from typing import Any
 
 import numpy as np
 
 from ..operators.numbers import to_double
-from .components import communicating_classes
+from .near_circle import refine
 from .perron import PerronPair
-from .reduction import heavy_first, reduce_states
 
 __all__ = ["Modes", "clusters", "leading_modes", "modes", "ratios"]
 
-#: Below this distance from 1 an eigenvalue is taken from the deviation matrix.
-_NEAR = 1e-4
 #: Eigenvalues closer than this (relative to their modulus) are counted as one cluster.
 _TOGETHER = 1e-9
 
@@ -37,7 +33,7 @@ class Modes:
     phase : ndarray, shape (m,)
         Argument in (−π, π].
     right, left : ndarray, shape (n, m) and (m, n)
-        Vectors with left·right = 1, of P.
+        Vectors with left·right = 1, of P up to a constant in each right one.
     """
 
     log_modulus: np.ndarray
@@ -55,108 +51,82 @@ def ratios(pair: PerronPair) -> tuple[np.ndarray, np.ndarray]:
         −inf for an eigenvalue 0.
     """
     chance = to_double(pair.chance)
-    n = len(chance)
-    if n == 1:
+    if len(chance) == 1:
         return np.empty((chance.shape[-1], 0)), np.empty((chance.shape[-1], 0))
-    values = _few(chance) if n <= 3 else _lapack(chance, to_double(pair.reduction.stationary))
-    with np.errstate(divide="ignore"):
-        log_modulus = np.log(np.abs(values))
-    log_modulus[np.abs(values) < 1e-14 * n] = -np.inf
-    phase = np.where(np.isinf(log_modulus), 0.0, np.angle(values))
-    phase[np.abs(phase) < 1e-9] = 0.0
-    _refine(pair, log_modulus, phase)
+    rest, _ = _without_perron(chance, to_double(pair.reduction.stationary))
+    log_modulus, phase = _polar(_eigenvalues(rest), np.abs(rest).sum(axis=1).max(axis=0))
+    refine(pair.chance, log_modulus, phase)
     return log_modulus, phase
 
 
-def _few(chance: np.ndarray) -> np.ndarray:
-    """Solve the one or two remaining eigenvalues of 2×2 and 3×3 matrices directly."""
-    if len(chance) == 2:
-        return (1 - chance[0, 1] - chance[1, 0]).astype(np.complex128)[:, None]
-    # Subtracting the first row takes the Perron mode out: what is left is the 2×2 matrix
-    # p_ij − p_0j, whose discriminant is a sum of squares for degenerate pairs too.
-    b = chance[1:, 1:] - chance[0, 1:]
-    half = (b[0, 0] + b[1, 1]) / 2
-    root = np.sqrt((((b[0, 0] - b[1, 1]) / 2) ** 2 + b[0, 1] * b[1, 0]).astype(np.complex128))
-    larger = half + np.where(half < 0, -root, root)
-    safe = np.where(larger == 0, 1, larger)
-    product = b[0, 0] * b[1, 1] - b[0, 1] * b[1, 0]
-    return np.stack([larger, np.where(larger == 0, 0, product / safe)], axis=-1)
+def _without_perron(chance: np.ndarray, law: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return P_ij − P_rj for i, j ≠ r, with r the likeliest state, and the states kept, shape (n − 1, batch).
+
+    The matrix has all eigenvalues of P but the Perron root. A difference that is only
+    rounding is set to 0: it would pass for an eigenvalue.
+    """
+    likeliest = law.argmax(axis=0)
+    others = np.arange(len(law) - 1)[:, None]
+    kept = others + (others >= likeliest)
+    points = np.arange(law.shape[-1])
+    reference = chance[likeliest[None], kept, points]
+    entries = chance[kept[:, None], kept[None], points]
+    rest = entries - reference[None]
+    with np.errstate(divide="ignore"):
+        depth = 1 - np.log(np.minimum(entries, reference[None]))
+    noise = 4 * 2.0**-53 * np.where(np.isfinite(depth), depth, 1.0) * (entries + reference[None])
+    return np.where(np.abs(rest) <= noise, 0.0, rest), kept
 
 
-def _lapack(chance: np.ndarray, law: np.ndarray) -> np.ndarray:
-    deflated = np.ascontiguousarray(np.moveaxis(chance - law[None], -1, 0))
+def _eigenvalues(rest: np.ndarray) -> np.ndarray:
+    """Return the eigenvalues, shape (batch, m), largest modulus first."""
+    if len(rest) == 1:
+        return rest[0, 0].astype(np.complex128)[:, None]
+    if len(rest) == 2:
+        half = (rest[0, 0] + rest[1, 1]) / 2
+        split = ((rest[0, 0] - rest[1, 1]) / 2) ** 2 + rest[0, 1] * rest[1, 0]
+        larger = half + np.where(half < 0, -1, 1) * np.sqrt(split.astype(np.complex128))
+        safe = np.where(larger == 0, 1, larger)
+        product = rest[0, 0] * rest[1, 1] - rest[0, 1] * rest[1, 0]
+        return np.stack([larger, np.where(larger == 0, 0, product / safe)], axis=-1)
     # Cast at once: NumPy returns real or complex arrays depending on version and values.
-    values = np.linalg.eigvals(deflated).astype(np.complex128)
-    # The deflated matrix has the Perron root moved to 0; drop the smallest eigenvalue in its place.
-    order = np.argsort(-np.abs(values), axis=-1, kind="stable")[:, :-1]
+    values = np.linalg.eigvals(np.ascontiguousarray(np.moveaxis(rest, -1, 0))).astype(np.complex128)
+    order = np.argsort(-np.abs(values), axis=-1, kind="stable")
     return np.take_along_axis(values, order, axis=-1)
 
 
-def _refine(pair: PerronPair, log_modulus: np.ndarray, phase: np.ndarray) -> None:
-    """Replace a leading eigenvalue that is close to the unit circle by an accurate one, in place."""
-    period = np.where(np.abs(np.abs(phase[:, 0]) - np.pi) < 1e-2, 2, np.where(np.abs(phase[:, 0]) < 1e-2, 1, 0))
-    close = log_modulus[:, 0] > -_NEAR
-    for steps in (1, 2):
-        picked = np.flatnonzero(close & (period == steps))
-        if picked.size:
-            chance = pair.chance[..., picked]
-            refined = _near_one(chance, steps)
-            known = log_modulus[picked, 0]
-            log_modulus[picked, 0] = np.where(np.abs(refined - known) < _NEAR, refined, known)
-
-
-def _near_one(chance: np.ndarray, steps: int) -> np.ndarray:
-    """Return ln |λ₂/λ₁| through the largest eigenvalue of the deviation matrix of ``steps`` steps.
-
-    0 where the chain of ``steps`` steps falls apart: the eigenvalue lies on the unit circle.
-    """
-    if steps == 2:
-        chance = (chance[:, :, None] * chance[None]).sum(axis=1)
-    rates = chance.copy()
-    index = np.arange(len(rates))
-    rates[index, index] = rates[index, index] * 0
-    result = np.zeros(chance.shape[-1])
-    with np.errstate(all="ignore"):
-        whole = _irreducible(rates)
-        if whole.any():
-            first = reduce_states(rates[..., whole])
-            deviation = reduce_states(rates[..., whole], heavy_first(first.stationary)).deviation()
-            scale = np.abs(deviation).max(axis=(0, 1))
-            scaled = np.moveaxis(to_double(deviation / scale), -1, 0)
-            largest = np.abs(np.linalg.eigvals(scaled).astype(np.complex128)).max(axis=-1)
-            result[whole] = [_log1m(gap) for gap in 1 / (largest * scale)]
-    return result / steps
-
-
-def _irreducible(rates: np.ndarray) -> np.ndarray:
-    return np.array(
-        [
-            len(classes) == 1 and len(classes[0]) == len(rates)
-            for classes in (
-                communicating_classes(np.asarray(rates[..., i] != 0, dtype=bool)) for i in range(rates.shape[-1])
-            )
-        ]
-    )
-
-
-def _log1m(gap: Any) -> float:
-    """Return ln(1 − g); long numbers are rounded only where their exponent fits."""
-    small = float(gap)
-    return float(np.log1p(-small)) if small < 1 else 0.0
-
-
-def modes(chance: np.ndarray) -> Modes:
-    """Return eigenvalues and biorthonormal vectors of one transition matrix (n, n), Perron mode left out."""
-    values, right = np.linalg.eig(chance.astype(np.complex128))
-    order = np.argsort(-np.abs(values), kind="stable")
-    first = int(np.argmin(np.abs(values - 1)))
-    order = np.array([k for k in order if k != first], dtype=np.intp)
-    left = np.linalg.pinv(right) if np.linalg.cond(right) > 1e14 else np.linalg.inv(right)
+def _polar(values: np.ndarray, size: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return ln |λ| and phases; what is rounding next to the size of its matrix counts as 0."""
+    modulus = np.abs(values)
+    zero = (modulus == 0) | (modulus < 1e-14 * values.shape[-1] * size[:, None])
     with np.errstate(divide="ignore"):
-        log_modulus = np.log(np.abs(values[order]))
-    phase = np.angle(values[order])
+        log_modulus = np.where(zero, -np.inf, np.log(np.where(zero, 1.0, modulus)))
+    phase = np.where(zero, 0.0, np.angle(values))
     phase[np.abs(phase) < 1e-9] = 0.0
-    return Modes(log_modulus, phase, right[:, order], left[order])
+    return log_modulus, phase
+
+
+def modes(chance: np.ndarray, law: np.ndarray) -> Modes:
+    """Return eigenvalues and biorthonormal vectors of one transition matrix, Perron mode left out.
+
+    Parameters
+    ----------
+    chance : ndarray, shape (n, n)
+    law : ndarray, shape (n,)
+        Stationary law.
+    """
+    rest, kept = _without_perron(chance[..., None], law[:, None])
+    values, vectors = np.linalg.eig(rest[..., 0].astype(np.complex128))
+    order = np.argsort(-np.abs(values), kind="stable")
+    inverse = np.linalg.pinv(vectors) if np.linalg.cond(vectors) > 1e14 else np.linalg.inv(vectors)
+    right = np.zeros((len(law), len(values)), dtype=np.complex128)
+    left = np.zeros((len(values), len(law)), dtype=np.complex128)
+    # Constants are free in right vectors, and left vectors sum to 0: both are felt through differences only.
+    right[kept[:, 0]] = vectors[:, order]
+    left[:, kept[:, 0]] = inverse[order]
+    left[:, law.argmax()] = -inverse[order].sum(axis=1)
+    log_modulus, phase = _polar(values[None, order], np.abs(rest).sum(axis=1).max(axis=0))
+    return Modes(log_modulus[0], phase[0], right, left)
 
 
 def clusters(log_modulus: np.ndarray, phase: np.ndarray) -> list[list[int]]:

@@ -10,7 +10,7 @@ import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow, place_in
-from ..eigen.spectrum import clusters, leading_modes, modes
+from ..eigen.spectrum import Modes, clusters, leading_modes, modes
 from ..operators.numbers import to_double
 from .segment import Segment
 
@@ -123,16 +123,23 @@ def decay(window: ChainWindow, segment: Segment, observable: str | None) -> tupl
     if log_modulus.shape[1] == 0:
         return slowest, waves
     pairs = _sources(window, segment, observable)
-    chances = segment.law.double_chance()
+    chances, laws = segment.law.double_chance(), _spread(segment.law.stationary, segment)
     for i in range(segment.indices.size):
-        found = modes(chances[i])
+        found = modes(chances[i], laws[:, i])
         carried = [k for s, t in pairs for k in leading_modes(found, s[:, i], t[:, i], _AMPLITUDE)]
         if carried:
             k = min(carried)
-            top = found.log_modulus[k] >= found.log_modulus[0] - 1e-9
-            slowest[i] = log_modulus[i, 0] if top else found.log_modulus[k]
+            slowest[i] = _accurate(found, k, log_modulus[i], phase[i])
             waves[i] = abs(found.phase[k])
     return slowest, waves
+
+
+def _accurate(found: Modes, k: int, log_modulus: np.ndarray, phase: np.ndarray) -> float:
+    """Return ln |λ| of a mode from the list of eigenvalues: the one of the same rank at the same phase."""
+    rank = int((np.abs(np.exp(1j * found.phase[:k]) - np.exp(1j * found.phase[k])) < 1e-3).sum())
+    alike = log_modulus[np.abs(np.exp(1j * phase) - np.exp(1j * found.phase[k])) < 1e-3]
+    rough = float(found.log_modulus[k])
+    return float(alike[rank]) if rank < alike.size and abs(alike[rank] - rough) < 1e-6 * (1 + abs(rough)) else rough
 
 
 def _sources(window: ChainWindow, segment: Segment, observable: str) -> list[tuple[np.ndarray, np.ndarray]]:
