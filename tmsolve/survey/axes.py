@@ -85,8 +85,7 @@ def axis(name: str, start: Any, stop: Any, count: int, spacing: str = "linear") 
         raise ParameterError(f"an axis is named by its parameter, a string such as 'T', got {name!r}")
     if spacing not in _SPACINGS:
         raise ParameterError(
-            f"axis {name!r}: spacing is 'linear' or 'log', got {spacing!r}."
-            f"{did_you_mean(str(spacing), _SPACINGS)}"
+            f"axis {name!r}: spacing is 'linear' or 'log', got {spacing!r}.{did_you_mean(str(spacing), _SPACINGS)}"
         )
     if isinstance(count, bool) or not isinstance(count, Integral) or count < 2:
         raise ParameterError(
@@ -96,8 +95,7 @@ def axis(name: str, start: Any, stop: Any, count: int, spacing: str = "linear") 
     low, high = (_end(name, which, value) for which, value in (("start", start), ("stop", stop)))
     if low == high:
         raise ParameterError(
-            f"axis {name!r}: start and stop are both {float(low)!r}; "
-            f"fix a single value with chain.fix({name}=…)"
+            f"axis {name!r}: start and stop are both {float(low)!r}; fix a single value with chain.fix({name}=…)"
         )
     if spacing == "linear":
         step = (high - low) / (int(count) - 1)
@@ -149,7 +147,5 @@ def parse_axis(text: str) -> Axis:
     try:
         count = int(parts[2])
     except ValueError:
-        raise ParameterError(
-            f"axis {name.strip()!r}: the count is a whole number >= 2, got {parts[2]!r}"
-        ) from None
+        raise ParameterError(f"axis {name.strip()!r}: the count is a whole number >= 2, got {parts[2]!r}") from None
     return axis(name.strip(), parts[0], parts[1], count, parts[3] if len(parts) == 4 else "linear")

@@ -45,9 +45,7 @@ def meta_of(grid: Grid) -> dict[str, Any]:
     }
 
 
-def _assemble(
-    meta: Mapping[str, Any], coords: dict[str, np.ndarray], readings: dict[str, np.ndarray]
-) -> Grid:
+def _assemble(meta: Mapping[str, Any], coords: dict[str, np.ndarray], readings: dict[str, np.ndarray]) -> Grid:
     shape = tuple(meta["shape"])
     mask = np.zeros(int(np.prod(shape)), dtype=bool)
     mask[meta["masked"]] = True
@@ -83,9 +81,7 @@ def read_csv(path: str | os.PathLike[str]) -> Grid:
     beside = sidecar(target)
     for file in (target, beside):
         if not file.is_file():
-            raise OutputError(
-                f"cannot read {str(target)!r}: there is no file {str(file)!r}; a grid needs both"
-            )
+            raise OutputError(f"cannot read {str(target)!r}: there is no file {str(file)!r}; a grid needs both")
     try:
         meta = json.loads(beside.read_text(encoding="utf-8"))
         with target.open(newline="", encoding="utf-8") as stream:
@@ -95,9 +91,7 @@ def read_csv(path: str | os.PathLike[str]) -> Grid:
         flat = {name: np.ascontiguousarray(column) for name, column in zip(names, table, strict=True)}
         return _from_columns(meta, flat)
     except (ValueError, KeyError, IndexError) as cause:
-        raise OutputError(
-            f"cannot read {str(target)!r} as a grid: {cause}; was it written by Grid.to_csv?"
-        ) from cause
+        raise OutputError(f"cannot read {str(target)!r} as a grid: {cause}; was it written by Grid.to_csv?") from cause
 
 
 def _from_columns(meta: Mapping[str, Any], flat: dict[str, np.ndarray]) -> Grid:
@@ -131,6 +125,4 @@ def read_npz(path: str | os.PathLike[str]) -> Grid:
             coords = {name: stored[name] for name in meta["dims"]}
             return _assemble(meta, coords, {name: stored[name] for name in meta["readings"]})
     except (ValueError, KeyError, OSError) as cause:
-        raise OutputError(
-            f"cannot read {str(target)!r} as a grid: {cause}; was it written by Grid.to_npz?"
-        ) from cause
+        raise OutputError(f"cannot read {str(target)!r} as a grid: {cause}; was it written by Grid.to_npz?") from cause

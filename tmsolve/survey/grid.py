@@ -106,9 +106,7 @@ class Grid(Mapping[str, np.ndarray]):
         for arrays in (self.readings, self.coords):
             if name in arrays:
                 return arrays[name]
-        raise ParameterError(
-            f"no {name!r} in this grid; it holds {listing(self)}.{did_you_mean(str(name), self)}"
-        )
+        raise ParameterError(f"no {name!r} in this grid; it holds {listing(self)}.{did_you_mean(str(name), self)}")
 
     def __contains__(self, name: object) -> bool:
         return name in self.readings or name in self.coords
@@ -198,8 +196,7 @@ class Grid(Mapping[str, np.ndarray]):
         columns = self.columns()
         head = "".join(f"<th>{html.escape(self.heading(name))}</th>" for name in columns)
         rows = "".join(
-            "<tr>" + "".join(f"<td>{values[i]:.8g}</td>" for values in columns.values()) + "</tr>"
-            for i in range(shown)
+            "<tr>" + "".join(f"<td>{values[i]:.8g}</td>" for values in columns.values()) + "</tr>" for i in range(shown)
         )
         more = f"<p>… {self.size - shown} more points</p>" if self.size > shown else ""
         title = html.escape(f"{self.attrs.get('chain', 'chain')}: {self._summary()}")

@@ -55,9 +55,7 @@ and '.txt' is none of .csv, .npz
     if target.is_dir():
         raise OutputError(f"cannot write {str(target)!r}: it is a folder; give the name of a file in it")
     if not folder.is_dir():
-        raise OutputError(
-            f"cannot write {str(target)!r}: there is no folder {str(folder)!r}; create it first"
-        )
+        raise OutputError(f"cannot write {str(target)!r}: there is no folder {str(folder)!r}; create it first")
     if target.exists() and not os.access(target, os.W_OK):
         raise OutputError(f"cannot write {str(target)!r}: the file is read-only; choose another name")
     if not target.exists() and not os.access(folder, os.W_OK | os.X_OK):

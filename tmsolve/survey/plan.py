@@ -102,24 +102,19 @@ def _coordinates(axes: Any) -> dict[str, np.ndarray]:
     if not isinstance(axes, Mapping):
         raise ParameterError(f'axes takes a mapping such as {{"T": axis("T", 0.1, 2, 20)}}, got {axes!r}')
     if not axes:
-        raise ParameterError(
-            "axes is empty; a scan needs at least one axis, a single point is solve(chain.at(…))"
-        )
+        raise ParameterError("axes is empty; a scan needs at least one axis, a single point is solve(chain.at(…))")
     return {name: _coordinate(name, given) for name, given in axes.items()}
 
 
 def _coordinate(name: Any, given: Any) -> np.ndarray:
     if isinstance(given, Axis):
         if given.name != name:
-            raise ParameterError(
-                f"the axis made for {given.name!r} stands under {name!r}; use the same name twice"
-            )
+            raise ParameterError(f"the axis made for {given.name!r} stands under {name!r}; use the same name twice")
         return given.array
     values = parse_value(str(name), given)
     if not isinstance(values, np.ndarray):
         raise ParameterError(
-            f"axis {name!r} is the single value {given!r}; "
-            f"give a list of values, or fix it with chain.fix({name}=…)"
+            f"axis {name!r} is the single value {given!r}; give a list of values, or fix it with chain.fix({name}=…)"
         )
     if values.ndim != 1:
         raise ParameterError(f"axis {name!r} has shape {values.shape}; an axis is one-dimensional")

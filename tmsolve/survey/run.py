@@ -171,9 +171,7 @@ class _Collected:
         return Failure(index, where, message)
 
 
-def _finished(
-    plan: Plan, collected: _Collected, kept: Store | None, executor: Executor | None
-) -> Iterator[int]:
+def _finished(plan: Plan, collected: _Collected, kept: Store | None, executor: Executor | None) -> Iterator[int]:
     """Compute what the store does not hold; yield the number of points done after every block."""
     block = int(np.clip(plan.size // 16, 1024, _BLOCK))
     starts = range(0, plan.size, block)

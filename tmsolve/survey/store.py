@@ -36,13 +36,10 @@ class Store:
             self._file.execute("PRAGMA journal_mode=WAL")
             self._file.execute("PRAGMA synchronous=NORMAL")
             self._file.execute(
-                "CREATE TABLE IF NOT EXISTS blocks "
-                "(key TEXT PRIMARY KEY, data BLOB, failed TEXT) WITHOUT ROWID"
+                "CREATE TABLE IF NOT EXISTS blocks (key TEXT PRIMARY KEY, data BLOB, failed TEXT) WITHOUT ROWID"
             )
         except sqlite3.DatabaseError as cause:
-            raise OutputError(
-                f"cannot use {str(self.path)!r} as a store: {cause}; give a new file name"
-            ) from cause
+            raise OutputError(f"cannot use {str(self.path)!r} as a store: {cause}; give a new file name") from cause
 
     def __enter__(self) -> Store:
         return self

@@ -128,12 +128,7 @@ def _by_value(function: Any) -> bool:
     """Whether a function comes from a file of the user's, not from an installed library."""
     module = sys.modules.get(getattr(function, "__module__", "") or "")
     file = getattr(module, "__file__", None)
-    if (
-        not isinstance(function, FunctionType)
-        or module is None
-        or module.__name__ == "__main__"
-        or file is None
-    ):
+    if not isinstance(function, FunctionType) or module is None or module.__name__ == "__main__" or file is None:
         return False
     libraries = {sysconfig.get_path(kind) for kind in ("stdlib", "platstdlib", "purelib", "platlib")}
     return not any(os.path.abspath(file).startswith(path + os.sep) for path in libraries)
