@@ -125,6 +125,7 @@ SCAN = [
     (["scan", "ising", "--axis", "T=1:2:5", "-p", "T=1"], 2, ["T is an axis and is given with -p as well"]),
     (["scan", "ising", "--axis", "T=1:2:5", "--read", "cv"], 2, ["no quantity 'cv'"]),
     (["scan", "ising", "--axis", "T=1:2:5", "--out", "a.xlsx"], 2, ["'.xlsx' is none of .csv, .npz, .nc"]),
+    (["scan", "ising", "--axis", "T=1:2:5", "--plot", "a.gif"], 2, ["'.gif' is none of .png, .svg, .pdf"]),
     (
         ["scan", "ising", "--axis", "T=1:2:5", "--out", "no/a.csv"],
         2,

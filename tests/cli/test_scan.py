@@ -77,6 +77,7 @@ def test_the_file_holds_the_grid_and_its_origin(tm, tmp_path, suffix):
     grid = Grid.from_csv(path) if suffix == ".csv" else Grid.from_npz(path)
     assert grid["entropy"].shape == (3,)
     assert grid.attrs["model"] == "ising" and grid.attrs["defaults_used"] == ["J", "h"]
+    assert grid.attrs["command_line"][:4] == ["tmsolve", "scan", "ising", "--axis"]
     if suffix == ".csv":
         beside = json.loads((tmp_path / "grid.meta.json").read_text(encoding="utf-8"))
         assert beside["attrs"]["parameters"]["J"] == "1"

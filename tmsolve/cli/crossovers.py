@@ -10,11 +10,12 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from ..errors import SolveError
-from .files import check_output
+from .figures import draw_events, tried
+from .files import check_output, figure_path
 from .jsontext import json_text
 from .layout import heading
 from .model import Values, check_names, fill, given_values, load_model
-from .options import add_common, add_digits, add_model, add_out, digits_of
+from .options import add_common, add_digits, add_model, add_out, add_plot, digits_of
 from .outcome import DONE, SOME_FAILED, UsageError
 from .parser import Parser
 from .table import Number, number_text, show_exact, table
@@ -35,7 +36,7 @@ EXAMPLES = """\
   tmsolve crossovers ising --along T=0.1:5
   tmsolve crossovers blume_capel -p T=0.3 --along D=0:3 --watch "mean(q)" --digits 15
   tmsolve crossovers ising_nnn -p J2=-0.3 --along T=0.1:5 --watch disorder --json
-  tmsolve crossovers diamond -p T=0.05 --along h=0:4 --level m=0.75
+  tmsolve crossovers diamond -p T=0.05 --along h=0:4 --level m=0.75 --plot steps.pdf
 """
 
 
@@ -68,6 +69,7 @@ def configure(parser: Parser) -> None:
     )
     add_digits(parser)
     add_out(parser, "also write the events to this file, ending in .csv or .json")
+    add_plot(parser, "draw the watched quantities along the line with the events marked")
     add_common(parser)
 
 
@@ -76,6 +78,7 @@ def run(arguments: argparse.Namespace) -> int:
     digits = digits_of(arguments)
     points = whole(arguments.points, "--points", 5)
     out = check_output(arguments.out, "--out", (".csv", ".json"))
+    figure = figure_path(arguments.plot)
     model = load_model(arguments)
     given = given_values(arguments, model)
     along, low, high = _line(arguments, model, given)
@@ -100,9 +103,15 @@ def run(arguments: argparse.Namespace) -> int:
     else:
         line = f"along {along} from {show_exact(low)} to {show_exact(high)}"
         print(f"{heading(model, values)}\n\n{_text(events, along, digits, line)}")
-    if trouble:
-        print(f"tmsolve crossovers: {trouble}", file=sys.stderr)
-    return SOME_FAILED if trouble else DONE
+    sys.stdout.flush()
+    undrawn = ""
+    if figure is not None:
+        undrawn = tried(lambda: draw_events(chain, along, (low, high), events, figure))
+        if not undrawn and not arguments.quiet:
+            print(f"tmsolve crossovers: wrote {figure}", file=sys.stderr)
+    for line in filter(None, [trouble, undrawn]):
+        print(f"tmsolve crossovers: {line}", file=sys.stderr)
+    return SOME_FAILED if trouble or undrawn else DONE
 
 
 def _line(

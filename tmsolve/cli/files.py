@@ -7,7 +7,9 @@ from pathlib import Path
 
 from .outcome import UsageError
 
-__all__ = ["check_output"]
+__all__ = ["check_output", "figure_path"]
+
+_FIGURES = (".png", ".svg", ".pdf")
 
 
 def check_output(text: str | None, option: str, suffixes: Sequence[str]) -> Path | None:
@@ -26,3 +28,13 @@ def check_output(text: str | None, option: str, suffixes: Sequence[str]) -> Path
         return check_writable(Path(text).expanduser(), suffixes)
     except OutputError as error:
         raise UsageError(f"{option}: {error}") from error
+
+
+def figure_path(text: str | None) -> Path | None:
+    """Return the path of a figure, after making sure that it can be drawn and written."""
+    path = check_output(text, "--plot", _FIGURES)
+    if path is not None:
+        from .._optional import require
+
+        require("matplotlib", extra="plot")
+    return path

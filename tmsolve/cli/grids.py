@@ -3,7 +3,6 @@
 from __future__ import annotations
 
 import csv
-import sys
 from collections.abc import Iterable, Iterator
 from dataclasses import replace
 from typing import TYPE_CHECKING, Any, TextIO
@@ -18,13 +17,16 @@ if TYPE_CHECKING:
 __all__ = ["csv_rows", "document", "with_origin", "write_rows"]
 
 
-def with_origin(grid: Grid, model: LoadedModel, values: Values) -> Grid:
-    """Return the grid with model, options and defaults used in its provenance."""
+def with_origin(grid: Grid, model: LoadedModel, values: Values, command_line: list[str]) -> Grid:
+    """Return the grid with model file, options and defaults used in its provenance."""
+    from hashlib import sha256
+
     origin = {
         "model": model.name,
+        "model_sha256": sha256(model.source.read_bytes()).hexdigest(),
         "options": {name: str(value) for name, value in model.options.items()},
         "defaults_used": list(values.defaulted),
-        "command_line": ["tmsolve", *sys.argv[1:]],
+        "command_line": command_line,
     }
     return replace(grid, attrs={**grid.attrs, **origin})
 

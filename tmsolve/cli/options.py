@@ -13,6 +13,7 @@ __all__ = [
     "add_digits",
     "add_model",
     "add_out",
+    "add_plot",
     "add_read",
     "digits_of",
 ]
@@ -67,6 +68,11 @@ def add_axis(parser: Parser) -> None:
 def add_out(parser: Parser, help_: str) -> None:
     """Add --out."""
     parser.add_argument("--out", metavar="PATH", help=help_)
+
+
+def add_plot(parser: Parser, help_: str) -> None:
+    """Add --plot."""
+    parser.add_argument("--plot", metavar="PATH", help=f"{help_}; .png, .svg or .pdf (needs the extra 'plot')")
 
 
 def add_digits(parser: Parser, default: str = f"{DIGITS} in tables") -> None:

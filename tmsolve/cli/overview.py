@@ -22,7 +22,7 @@ examples:
   tmsolve models
   tmsolve solve blume_capel -p T=0.4 -p D=0.9
   tmsolve derive potts --option q=3 -p h=0
-  tmsolve scan blume_capel --axis T=0.05:2:40 --read specific_heat,"susceptibility(m)" --digits 6
+  tmsolve scan blume_capel --axis T=0.05:2:40 --read specific_heat,"susceptibility(m)" --plot c.png
   tmsolve crossovers ising --along T=0.1:5
 
 exit codes:

@@ -48,7 +48,7 @@ class Parser(argparse.ArgumentParser):
         )
 
     def read(self, words: list[str]) -> argparse.Namespace:
-        """Parse the words after the command.
+        """Parse the words after the command; ``command_line`` of the result holds all of them.
 
         Raises
         ------
@@ -58,6 +58,7 @@ class Parser(argparse.ArgumentParser):
         found, surplus = self.parse_known_args(words)
         if surplus:
             raise UsageError(self._surplus(surplus[0]))
+        found.command_line = [*self.prog.split(), *words]
         return found
 
     def _surplus(self, word: str) -> str:

@@ -9,11 +9,12 @@ from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from ..errors import ParameterError, SolveError
-from .files import check_output
+from .figures import check_drawable, draw_grid, tried
+from .files import check_output, figure_path
 from .grids import csv_rows, document, with_origin, write_rows
 from .jsontext import json_text
 from .model import check_names, fill, given_values, load_model, readings_of
-from .options import add_axis, add_common, add_digits, add_model, add_out, add_read, digits_of
+from .options import add_axis, add_common, add_digits, add_model, add_out, add_plot, add_read, digits_of
 from .outcome import DONE, INTERRUPTED, SOME_FAILED, UsageError
 from .parser import Parser
 from .words import split_names
@@ -29,7 +30,7 @@ Compute quantities at every point of a grid of parameters. The table goes to std
 point, unless --out names a file. A point that fails is NaN, is told on stderr, and the others are kept."""
 EXAMPLES = """\
   tmsolve scan ising --axis T=0.1:3:30 --read specific_heat
-  tmsolve scan blume_capel -p T=0.3 --axis D=0:2:41 --axis h=0:1:21 --out grid.npz
+  tmsolve scan blume_capel -p T=0.3 --axis D=0:2:41 --axis h=0:1:21 --out grid.npz --plot map.png
   tmsolve scan clock --option q=5 --axis T=0.01:100:60:log --read "mean(m),susceptibility(m)" --digits 8
 """
 
@@ -48,16 +49,20 @@ def configure(parser: Parser) -> None:
         parser,
         "write the grid to this file instead: .csv (with a .meta.json beside it), .npz or .nc (NetCDF)",
     )
+    add_plot(parser, "draw the quantities: lines over one axis, or over two of which one has few values; else maps")
     add_common(parser)
 
 
 def run(arguments: argparse.Namespace) -> int:
-    """Scan and write."""
+    """Scan, write and draw."""
     digits = None if arguments.digits is None else digits_of(arguments)
     out = check_output(arguments.out, "--out", (".csv", ".npz", ".nc"))
+    figure = figure_path(arguments.plot)
     model = load_model(arguments)
     given = given_values(arguments, model)
     axes = _axes(arguments, model, given)
+    if figure is not None:
+        check_drawable(list(axes))
     values = fill(given, model, running=axes)
     read = split_names(arguments.read, "--read") or _usual(model)
     readings_of(read, model)
@@ -69,7 +74,7 @@ def run(arguments: argparse.Namespace) -> int:
         grid = scan(chain, axes, read, progress=False if arguments.quiet else None)
     except ScanInterrupted as stopped:
         grid, complete = stopped.partial, False
-    grid = with_origin(grid, model, values)
+    grid = with_origin(grid, model, values, arguments.command_line)
     _refuse_empty(grid, complete)
     if out is not None:
         grid.save(out)
@@ -78,9 +83,13 @@ def run(arguments: argparse.Namespace) -> int:
     elif out is None:
         write_rows(csv_rows(grid, digits), sys.stdout)
     sys.stdout.flush()
-    for line in _remarks(grid, out, values.remark(), arguments.quiet):
+    trouble = ""
+    if figure is not None and complete:
+        trouble = tried(lambda: draw_grid(grid, figure))
+    drawn = figure if complete and not trouble else None
+    for line in [*_remarks(grid, out, drawn, values.remark(), arguments.quiet), *filter(None, [trouble])]:
         print(f"tmsolve scan: {line}", file=sys.stderr)
-    return INTERRUPTED if not complete else SOME_FAILED if grid.failed else DONE
+    return INTERRUPTED if not complete else SOME_FAILED if grid.failed or trouble else DONE
 
 
 def _axes(arguments: argparse.Namespace, model: LoadedModel, given: Mapping[str, Any]) -> dict[str, Axis]:
@@ -120,10 +129,10 @@ def _where(grid: Grid, number: int) -> str:
     return f"{point}: {failure.message}"
 
 
-def _remarks(grid: Grid, out: Path | None, defaults: str, quiet: bool) -> list[str]:
+def _remarks(grid: Grid, out: Path | None, figure: Path | None, defaults: str, quiet: bool) -> list[str]:
     lines = [] if quiet or not defaults else [defaults]
     if not quiet:
-        lines += [f"wrote {path}" for path in (out,) if path is not None]
+        lines += [f"wrote {path}" for path in (out, figure) if path is not None]
     if not grid.complete:
         unreached = int(grid.attrs["unreached"])
         lines.append(f"interrupted after {grid.size - unreached} of {grid.size} points; those are kept")
