@@ -261,6 +261,26 @@ def test_a_chain_that_forbids_everything(tm, write):
     assert "forbid" in ended.err
 
 
+def test_a_chain_that_is_too_large(tm, write):
+    path = write(
+        "from tmsolve import Chain, bond, ising\n"
+        "CHAIN = Chain(ising(), [bond(lambda s, t, J: -J*s*t, shift=13)])\nDEFAULTS = {'J': 1, 'T': 1}\n"
+    )
+    ended = tm("solve", path)
+    assert ended.code == 1
+    assert "limited to 4096 states; this chain has 8192. Shorten the longest bond or the cell" in ended.err
+
+
+def test_classes_that_tie_are_named(tm, write):
+    path = write(
+        "import math\nfrom tmsolve import Chain, bond, ising\n"
+        "CHAIN = Chain(ising(), [bond(lambda s, t: math.inf if s != t else 0)])\nDEFAULTS = {'T': 1}\n"
+    )
+    ended = tm("solve", path)
+    assert ended.code == 1
+    assert "{-1} and {1}" in ended.err and "lift the tie with a field" in ended.err
+
+
 def test_a_fault_of_the_program_is_no_silence(tm, monkeypatch):
     from tmsolve.cli import solve
 

@@ -14,7 +14,8 @@ def test_the_overview_names_commands_and_exit_codes(tm):
 
 
 @pytest.mark.parametrize("command", COMMANDS)
-def test_every_command_explains_its_options_with_examples(tm, command):
+def test_every_command_explains_its_options_with_examples(tm, command, monkeypatch):
+    monkeypatch.setenv("COLUMNS", "80")
     ended = tm(command, "--help")
     assert ended.code == 0 and ended.err == ""
     assert ended.out.startswith(f"usage: tmsolve {command} ")

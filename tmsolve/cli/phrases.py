@@ -15,6 +15,7 @@ _PHRASES = (
     (r"partition_function\(N\) with a number", "--cells with a number"),
     (r"(?<!\w)\.recurrence\b", "--quantity recurrence"),
     (r"(?<!\w)\.characteristic_polynomial\b", "--quantity polynomial"),
+    (r"Use Dense\(max_size=\d+\), or shorten", "Shorten"),
     (r"see the attribute of the form", "--quantity prints it"),
 )
 
