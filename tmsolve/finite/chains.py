@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass, field
+from functools import cached_property
 from typing import Any
 
 import numpy as np
@@ -45,7 +46,7 @@ class FiniteChain:
     right: Ends = field(default_factory=dict)
     _tracks: dict[tuple[str, ...], Track] = field(default_factory=dict, repr=False)
 
-    @property
+    @cached_property
     def log_Z(self) -> np.ndarray:
         """Logarithm of the partition function of the whole chain."""
         track = self._track(())
@@ -59,6 +60,7 @@ class FiniteChain:
 
     def total(self, a: str) -> np.ndarray:
         """Mean of an observable summed over the whole chain."""
+        self._must_exist()
         table = self._track((a,)).everywhere({"x": handle("observable", (), a)}, ("x",))
         return self._shaped(table.tilts[("x",)] if ("x",) in table.tilts else np.zeros(1))
 
@@ -68,6 +70,7 @@ class FiniteChain:
 
     def covariance(self, a: str, b: str | None = None) -> np.ndarray:
         """Covariance of the totals of two observables over the whole chain; the variance for one."""
+        self._must_exist()
         other = a if b is None else b
         mark = {"x": handle("observable", (), a), "y": handle("observable", (), other)}
         table = self._track((a, other)).everywhere(mark, ("x", "y"))
@@ -77,12 +80,14 @@ class FiniteChain:
         """Mean of an observable in each cell, shape (*batch, N); constant along a ring."""
         if self.closed:
             return np.repeat(np.asarray(self.mean(a))[..., None], self.cells, axis=-1)
+        self._must_exist()
         track = self._track((a,))
         values = np.zeros((self.point.size, self.cells))
         for anchor in anchors(track.window, a):
             for position, mean in track.sweep(a, anchor).items():
                 # A part anchored at `anchor` in its window belongs to this cell of the chain.
-                values[:, position + anchor] += mean
+                if 0 <= position + anchor < self.cells:
+                    values[:, position + anchor] += mean
         return self._shaped(values)
 
     def correlation(self, a: str, b: str, i: int, j: int, connected: bool = True) -> np.ndarray:
@@ -90,6 +95,7 @@ class FiniteChain:
         for cell in (i, j):
             if isinstance(cell, bool) or not isinstance(cell, (int, np.integer)) or not 0 <= cell < self.cells:
                 raise ParameterError(f"cells are numbered 0 to {self.cells - 1}, got {cell!r}")
+        self._must_exist()
         track = self._track((a, b))
         result = np.zeros(self.point.size)
         for first in anchors(track.window, a):
@@ -120,13 +126,18 @@ class FiniteChain:
             value = value + (table.tilts[("x",)] if ("x",) in table.tilts else 0.0)
         return self._shaped(value)
 
+    def _must_exist(self) -> None:
+        """Refuse means over a chain that has no allowed configuration."""
+        _ = self.log_Z
+
     def _position(self, position: int) -> int:
         return position % self.cells if self.closed else position
 
     def _track(self, observables: Sequence[str]) -> Track:
         chain = self.point.chain
         base = build_window(chain)
-        wide = tuple(sorted({name for name in observables if chain.observable(name) and not fits(base, [name])}))
+        # A wider cut may lie elsewhere, so it is made for all of them, also those that fitted before.
+        wide = () if fits(base, observables) else tuple(sorted(set(observables)))
         if wide not in self._tracks:
             window = build_window(chain, wide)
             opening = None if self.closed else OpenWindows(window, self.cells, self.left, self.right)
