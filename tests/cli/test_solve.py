@@ -59,6 +59,12 @@ def test_complex_eigenvalues_show_their_phase(tm):
     assert " + " in out and "i  " in out
 
 
+def test_a_negative_eigenvalue_is_real(tm):
+    out = tm("solve", "ising", "-p", "J=-1", "-p", "h=0").out
+    assert "i  " not in out[out.index("eigenvalue") :]
+    assert out.splitlines()[-1].split()[-2:] == ["1", "1"]
+
+
 def test_digits_are_significant_digits(tm):
     exact = -0.8 * math.log(2 * math.cosh(1.25))
     assert f" {exact:.12g} " in tm("solve", "ising", "--read", "free_energy", "--digits", "12").out

@@ -75,7 +75,8 @@ def level_table(levels: Sequence[Mapping[str, Any]], digits: int) -> str:
 
 
 def _complex_text(value: complex, digits: int) -> str:
-    if not value.imag or not cmath.isfinite(value):
+    # An imaginary part below the rounding of the real part is none.
+    if abs(value.imag) <= 1e-15 * abs(value.real) or not cmath.isfinite(value):
         return number_text(value.real, digits)
     sign = "+" if value.imag > 0 else "-"
     return f"{number_text(value.real, digits)} {sign} {number_text(abs(value.imag), digits)}i"
