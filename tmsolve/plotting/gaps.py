@@ -74,7 +74,10 @@ def plot_gaps(
     for name, value, least in (("k", k, 1), ("points", points, 2)):
         if isinstance(value, bool) or not isinstance(value, Integral) or value < least:
             raise ParameterError(f"{name} is a whole number >= {least}, got {value!r}")
-    x = line.spread(int(points))
+    found = () if events is None else checked_events(events)
+    # Curves have cusps where modes merge; the points there are drawn exactly.
+    inside = [event.location for event in found if line.low < event.location < line.high]
+    x = np.union1d(line.spread(int(points)), inside)
     gaps = np.broadcast_to(line.gather(lambda solution: solution.gaps(int(k)).T, x), (int(k), x.size))
     with rc():
         ax = axes_for(ax)
@@ -89,8 +92,7 @@ def plot_gaps(
                     linewidth=2.0 - 1.0 * i / max(int(k) - 1, 1),
                     label=rf"$i={i + 2}$",
                 )
-        if events is not None:
-            plot_events(ax, checked_events(events), colour="black")
+        plot_events(ax, found, colour="black")
         if line.geometric:
             ax.set_xscale("log")
         ax.set_xlim(line.low, line.high)

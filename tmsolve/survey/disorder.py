@@ -16,8 +16,8 @@ __all__ = ["disorder_points"]
 #: Rounds of bisections, after each of which the pair is looked for.
 _ROUNDS = 5
 _BISECTIONS = 6
-_ZOOMS = 3
-_ZOOM_POINTS = 12
+_ZOOMS = 4
+_ZOOM_POINTS = 7
 #: A split below this is that of a pair which never parts.
 _LEAST_SPLIT = 1e-14
 
@@ -101,20 +101,25 @@ def _joined(
 
 
 def _closest(line: Line, x: np.ndarray, mode: Leading) -> np.ndarray:
-    """Return points around places where a pair may merge and part again between two points.
+    """Return points in intervals where a pair may merge and part again.
 
-    There the distance of the pair is least, and a parabola through it and its neighbours
-    comes close to zero.
+    Before it merges its splitting is a convex function, which lies above the straight lines
+    continued from both sides; only where these meet below zero there can be roots.
     """
     size, place = np.abs(mode.split), line.place(x)
     extra = [np.empty(0)]
-    for i in range(1, x.size - 1):
-        around = slice(i - 1, i + 2)
-        least = _LEAST_SPLIT < size[i] <= min(size[i - 1], size[i + 1])
-        if least and (mode.split[around] < 0).sum() in (0, 3) and np.isfinite(size[around]).all():
-            a, b, _ = np.polyfit(place[around] - place[i], size[around], 2)
-            if a > 0 and size[i] - b * b / (4 * a) < 0.5 * size[i]:
-                extra.append(line.value(np.linspace(place[i - 1], place[i + 1], _ZOOM_POINTS + 2)[1:-1]))
+    for i in range(1, x.size - 2):
+        around = size[i - 1 : i + 3]
+        if (mode.split[i - 1 : i + 3] < 0).sum() not in (0, 4) or not np.isfinite(around).all():
+            continue
+        fall = (around[1] - around[0]) / (place[i] - place[i - 1])
+        rise = (around[3] - around[2]) / (place[i + 2] - place[i + 1])
+        length = place[i + 1] - place[i]
+        if not fall < 0 < rise or around.min() < _LEAST_SPLIT:
+            continue
+        meeting = (around[1] - around[2] + rise * length) / (rise - fall)
+        if 0 < meeting < length and around[1] + fall * meeting <= 0:
+            extra.append(line.value(np.linspace(place[i], place[i + 1], _ZOOM_POINTS + 2)[1:-1]))
     return np.concatenate(extra)
 
 

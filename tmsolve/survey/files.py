@@ -6,14 +6,18 @@ import csv
 import json
 import os
 import zipfile
-from collections.abc import Mapping
 from pathlib import Path
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
-from .grid import Failure, Grid
 from .outputs import OutputError, check_writable
+
+if TYPE_CHECKING:
+    from .grid import Grid
+
+#: What `meta_of` gives, coordinates, readings.
+Parts = tuple[dict[str, Any], dict[str, np.ndarray], dict[str, np.ndarray]]
 
 __all__ = ["meta_of", "read_csv", "read_npz", "sidecar", "write_csv", "write_npz"]
 
@@ -45,21 +49,11 @@ def meta_of(grid: Grid) -> dict[str, Any]:
     }
 
 
-def _assemble(meta: Mapping[str, Any], coords: dict[str, np.ndarray], readings: dict[str, np.ndarray]) -> Grid:
-    shape = tuple(meta["shape"])
-    mask = np.zeros(int(np.prod(shape)), dtype=bool)
-    mask[meta["masked"]] = True
-    failed = tuple(Failure(tuple(index), dict(where), message) for index, where, message in meta["failed"])
-    return Grid(
-        tuple(meta["dims"]),
-        coords,
-        readings,
-        meta["units"],
-        meta["symbols"],
-        meta["attrs"],
-        failed,
-        mask.reshape(shape),
-    )
+def _complete(meta: dict[str, Any]) -> dict[str, Any]:
+    for key in ("dims", "shape", "readings", "units", "symbols", "attrs", "masked", "failed"):
+        if key not in meta:
+            raise ValueError(f"its description lacks {key!r}")
+    return meta
 
 
 def write_csv(grid: Grid, path: str | os.PathLike[str]) -> None:
@@ -75,15 +69,15 @@ def write_csv(grid: Grid, path: str | os.PathLike[str]) -> None:
     beside.write_text(meta + "\n", encoding="utf-8")
 
 
-def read_csv(path: str | os.PathLike[str]) -> Grid:
-    """Read a grid back from CSV and sidecar."""
+def read_csv(path: str | os.PathLike[str]) -> Parts:
+    """Read the parts of a grid back from CSV and sidecar."""
     target = Path(path)
     beside = sidecar(target)
     for file in (target, beside):
         if not file.is_file():
             raise OutputError(f"cannot read {str(target)!r}: there is no file {str(file)!r}; a grid needs both")
     try:
-        meta = json.loads(beside.read_text(encoding="utf-8"))
+        meta = _complete(json.loads(beside.read_text(encoding="utf-8")))
         with target.open(newline="", encoding="utf-8") as stream:
             rows = list(csv.reader(stream))
         table = np.array(rows[1:], dtype=np.float64).T
@@ -94,13 +88,13 @@ def read_csv(path: str | os.PathLike[str]) -> Grid:
         raise OutputError(f"cannot read {str(target)!r} as a grid: {cause}; was it written by Grid.to_csv?") from cause
 
 
-def _from_columns(meta: Mapping[str, Any], flat: dict[str, np.ndarray]) -> Grid:
+def _from_columns(meta: dict[str, Any], flat: dict[str, np.ndarray]) -> Parts:
     shape = tuple(meta["shape"])
     coords = {}
     for axis, name in enumerate(meta["dims"]):
         first = tuple(slice(None) if other == axis else 0 for other in range(len(shape)))
         coords[name] = flat[name].reshape(shape)[first].copy()
-    return _assemble(meta, coords, {name: flat[name].reshape(shape) for name in meta["readings"]})
+    return meta, coords, {name: flat[name].reshape(shape) for name in meta["readings"]}
 
 
 def write_npz(grid: Grid, path: str | os.PathLike[str]) -> None:
@@ -114,15 +108,15 @@ def write_npz(grid: Grid, path: str | os.PathLike[str]) -> None:
                 np.lib.format.write_array(stream, np.asarray(array), allow_pickle=False)
 
 
-def read_npz(path: str | os.PathLike[str]) -> Grid:
-    """Read a grid back from NPZ."""
+def read_npz(path: str | os.PathLike[str]) -> Parts:
+    """Read the parts of a grid back from NPZ."""
     target = Path(path)
     if not target.is_file():
         raise OutputError(f"cannot read {str(target)!r}: there is no such file")
     try:
         with np.load(target, allow_pickle=False) as stored:
-            meta = json.loads(str(stored[_META]))
+            meta = _complete(json.loads(str(stored[_META])))
             coords = {name: stored[name] for name in meta["dims"]}
-            return _assemble(meta, coords, {name: stored[name] for name in meta["readings"]})
+            return meta, coords, {name: stored[name] for name in meta["readings"]}
     except (ValueError, KeyError, OSError) as cause:
         raise OutputError(f"cannot read {str(target)!r} as a grid: {cause}; was it written by Grid.to_npz?") from cause

@@ -3,10 +3,12 @@
 from __future__ import annotations
 
 import json
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from .._optional import require
-from .grid import Grid
+
+if TYPE_CHECKING:
+    from .grid import Grid
 
 __all__ = ["to_pandas", "to_xarray"]
 

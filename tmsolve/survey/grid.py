@@ -11,6 +11,9 @@ from typing import Any
 import numpy as np
 
 from ..errors import ParameterError, did_you_mean, listing
+from .files import read_csv, read_npz, write_csv, write_npz
+from .frames import to_pandas, to_xarray
+from .netcdf import write_netcdf
 from .outputs import GRID_SUFFIXES, check_writable
 
 __all__ = ["Failure", "Grid"]
@@ -139,46 +142,41 @@ class Grid(Mapping[str, np.ndarray]):
         The header row is plain, with units as in ``T [energy]``. Numbers are written so that
         they are read back bit by bit.
         """
-        from .files import write_csv
-
         write_csv(self, path)
 
     def to_npz(self, path: str | os.PathLike[str]) -> None:
         """Write all arrays under their names, and the rest as JSON under ``__meta__``."""
-        from .files import write_npz
-
         write_npz(self, path)
 
     def to_netcdf(self, path: str | os.PathLike[str]) -> None:
         """Write a NetCDF 3 file with dimensions, units and provenance."""
-        from .netcdf import write_netcdf
-
         write_netcdf(self, path)
 
     @classmethod
     def from_csv(cls, path: str | os.PathLike[str]) -> Grid:
         """Read what `to_csv` wrote; the ``.meta.json`` file must lie beside it."""
-        from .files import read_csv
-
-        return read_csv(path)
+        return cls._of(*read_csv(path))
 
     @classmethod
     def from_npz(cls, path: str | os.PathLike[str]) -> Grid:
         """Read what `to_npz` wrote."""
-        from .files import read_npz
+        return cls._of(*read_npz(path))
 
-        return read_npz(path)
+    @classmethod
+    def _of(cls, meta: Mapping[str, Any], coords: dict[str, np.ndarray], readings: dict[str, np.ndarray]) -> Grid:
+        shape = tuple(meta["shape"])
+        mask = np.zeros(int(np.prod(shape)), dtype=bool)
+        mask[meta["masked"]] = True
+        failed = tuple(Failure(tuple(index), dict(where), message) for index, where, message in meta["failed"])
+        labels = meta["units"], meta["symbols"], meta["attrs"]
+        return cls(tuple(meta["dims"]), coords, readings, *labels, failed, mask.reshape(shape))
 
     def to_pandas(self) -> Any:
         """Return a tidy ``pandas.DataFrame``, one row per point (extra ``data``)."""
-        from .frames import to_pandas
-
         return to_pandas(self)
 
     def to_xarray(self) -> Any:
         """Return an ``xarray.Dataset`` with named dimensions and units (extra ``data``)."""
-        from .frames import to_xarray
-
         return to_xarray(self)
 
     def _summary(self) -> str:

@@ -4,12 +4,15 @@ from __future__ import annotations
 
 import json
 import os
+from typing import TYPE_CHECKING
 
 import numpy as np
 
 from .files import meta_of
-from .grid import Grid
 from .outputs import check_writable
+
+if TYPE_CHECKING:
+    from .grid import Grid
 
 __all__ = ["write_netcdf"]
 
