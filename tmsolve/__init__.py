@@ -44,6 +44,7 @@ if TYPE_CHECKING:
     from .errors import TooLargeError as TooLargeError
     from .finite.chains import open_chain as open_chain
     from .finite.chains import ring as ring
+    from .ground.states import ground_state as ground_state
     from .survey.axes import axis as axis
     from .survey.events import crossovers as crossovers
     from .survey.run import scan as scan
@@ -61,6 +62,7 @@ _HOMES = {
         "TooLargeError",
     ),
     "finite.chains": ("open_chain", "ring"),
+    "ground.states": ("ground_state",),
     "survey.axes": ("axis",),
     "survey.events": ("crossovers",),
     "survey.run": ("scan",),

@@ -1,0 +1,1 @@
+"""Zero temperature: ground states, residual entropies and phase diagrams in exact arithmetic."""
