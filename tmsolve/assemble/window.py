@@ -4,8 +4,8 @@ from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
+from functools import lru_cache
 from typing import Any
-from weakref import WeakKeyDictionary
 
 from ..declare import Chain, StateSet, Term
 from ..errors import TooLargeError
@@ -62,9 +62,6 @@ class ChainWindow(Window):
         return tuple((kind, threshold) for kind, threshold in self.cut.thresholds.items())
 
 
-_WINDOWS: WeakKeyDictionary[Chain, dict[tuple[str, ...], ChainWindow]] = WeakKeyDictionary()
-
-
 def build_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
     """Return the window of a chain over its smallest cut.
 
@@ -82,13 +79,10 @@ def build_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
     >>> window.shape, window.nonzeros
     ((9, 9), 27)
     """
-    names = tuple(sorted(set(observables)))
-    known = _WINDOWS.setdefault(chain, {})
-    if names not in known:
-        known[names] = _build(chain, names)
-    return known[names]
+    return _build(chain, tuple(sorted(set(observables))))
 
 
+@lru_cache(maxsize=128)
 def _build(chain: Chain, names: tuple[str, ...]) -> ChainWindow:
     sizes = {kind: len(states) for kind, states in chain.cell.items()}
     wanted = [*chain.terms, *(part for name in names for part in chain.observable(name))]
