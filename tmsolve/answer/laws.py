@@ -170,7 +170,7 @@ def _exact_values(point: Point, index: int) -> dict[str, Any]:
 def _segment(found: list[_Class], number: int, part: Assembled, local: np.ndarray, indices: np.ndarray) -> Segment:
     chosen = found[number]
     pair = _restrict(chosen.pair, local)
-    gauge = Gauge(chosen.gauge.energy[local], chosen.gauge.potentials[:, local], chosen.gauge.offset[local])
+    gauge = chosen.gauge.at(local)
     tables = _edge_tables(part, chosen.states, gauge, local)
     others = tuple(_other_spectrum(other, chosen, local) for i, other in enumerate(found) if i != number)
     memory: list[tuple[np.ndarray, np.ndarray]] = []
@@ -180,12 +180,22 @@ def _segment(found: list[_Class], number: int, part: Assembled, local: np.ndarra
             memory.append(ratios(pair))
         return memory[0]
 
+    law = DoobLaw(pair, tables, part.numbers)
+
+    def entropy() -> np.ndarray:
+        inside = part.edge_table((handle("energy"),))
+        extra = gauge.residual
+        if inside is not None:
+            extra = extra + part.beta[local] * (tables((handle("energy"),)) - gauge.cost)
+        return law.entropy_rate() + law.average(extra)
+
     return Segment(
         indices=indices,
-        law=DoobLaw(pair, tables),
+        law=law,
         beta=part.beta[local],
         least_energy=gauge.energy,
         log_root=chosen.log_root[local],
+        entropy=entropy,
         bits=part.numbers.bits,
         states=chosen.states,
         edge_table=tables,
@@ -221,9 +231,7 @@ def _edge_tables(
                 full = full[pick]
                 full = full[..., local] if full.shape[-1] == part.batch and part.batch > 1 else full
             if key == (energy,):
-                v = gauge.potentials
-                shift = -gauge.energy + v[:, None] - v[None, :]
-                full = shift if full is None else full + shift
+                full = gauge.cost if full is None else full + gauge.cost
             memory[key] = full
         return memory[key]
 

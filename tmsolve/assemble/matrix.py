@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
 from functools import cached_property
 from typing import Any
 
@@ -33,6 +34,7 @@ def handle(kind: str, key: Key = (), name: str = "") -> str:
     return f"{kind}|{name}|{','.join(sorted(key))}"
 
 
+@dataclass(frozen=True)
 class Gauge:
     """What has been taken out of the logarithms of a matrix to bring its cycle means to 1.
 
@@ -40,14 +42,25 @@ class Gauge:
     ----------
     energy : ndarray, shape (batch,)
         Least energy per cell e₀; ln λ contains −β e₀.
-    potentials : ndarray, shape (n, batch)
-        Energy potentials v.
+    cost : ndarray, shape (n, n, batch)
+        Reduced costs of the entries' least energies, ≥ 0; 0 where there is no entry.
+    residual : ndarray, shape (n, n, batch)
+        What interior sums and weights leave in the logarithm; 0 where there is no entry.
     offset : ndarray, shape (batch,)
-        What the residual logarithms (weights, entropies) add to ln λ beyond the excess.
+        What the residual logarithms add to ln λ beyond the excess.
     """
 
-    def __init__(self, energy: np.ndarray, potentials: np.ndarray, offset: np.ndarray) -> None:
-        self.energy, self.potentials, self.offset = energy, potentials, offset
+    energy: np.ndarray
+    cost: np.ndarray
+    residual: np.ndarray
+    offset: np.ndarray
+
+    def at(self, points: np.ndarray) -> Gauge:
+        """Return the gauge at some points of the batch."""
+        return Gauge(self.energy[points], self.cost[..., points], self.residual[..., points], self.offset[points])
+
+
+_ENERGY = handle("energy")
 
 
 class Assembled:
@@ -134,13 +147,16 @@ class Assembled:
             worst, lift = minimum_cycle_mean(-scaled, edges)
             offset = -worst
             scaled = np.where(edges[..., None], -reduced_costs(-scaled, worst, lift, self.numbers.epsilon), scaled)
-        return scaled, Gauge(least, potentials, offset)
+        zero = self.numbers.scalar(0)
+        cost, residual = (np.where(edges[..., None], table, zero) for table in (cost, log))
+        return scaled, Gauge(least, cost, residual, offset)
 
     def edge_table(self, key: Key) -> np.ndarray | None:
         """Return the joint conditional cumulant per entry of named quantities, or None when it vanishes.
 
         For a single name this is the mean of the quantity over the interior, given the two
-        cuts; shape (n, n, batch).
+        cuts; shape (n, n, batch). For the energy it is the mean excess over the entry's
+        least energy.
         """
         if key not in self._edges:
             if len(key) > 1 and not self.window.interior:
@@ -152,14 +168,14 @@ class Assembled:
         tables = list(self._bare)
         extra: list[tuple[Any, LogTable]] = []
         for name in dict.fromkeys(key):
-            for index, sites, table in self._sources(name):
+            for index, sites, table in self._sources(name) if name != _ENERGY else ():
                 if index is None:
                     zero = np.full((*table.shape[:-1], 1), self.numbers.scalar(0))
                     extra.append((sites, LogTable(zero, zero, {(name,): table})))
                 else:
                     old = tables[index]
                     tables[index] = LogTable(old.energy, old.log, {**old.tilts, (name,): table})
-        algebra = LogSum(self.beta, self.numbers, (key,))
+        algebra = LogSum(self.beta, self.numbers, (key,), _ENERGY if _ENERGY in key else None)
         tilts = self.window.reduce(algebra, tables, extra).tilts
         full = tuple(self.window.sizes[s] for s in self.window.sites)
         for sub in sub_keys(key):

@@ -8,7 +8,7 @@ from typing import Protocol
 
 import numpy as np
 
-from ..operators.numbers import to_double
+from ..operators.numbers import DOUBLE, Numbers, to_double
 from ..operators.partitions import Key, exp_remainder, sub_keys
 from .perron import PerronPair
 
@@ -56,11 +56,14 @@ class DoobLaw:
         Root, vector, chain.
     tables : EdgeTables
         Conditional cumulants of the named quantities.
+    numbers : Numbers
+        Number system of the arrays.
     """
 
-    def __init__(self, pair: PerronPair, tables: EdgeTables) -> None:
+    def __init__(self, pair: PerronPair, tables: EdgeTables, numbers: Numbers = DOUBLE) -> None:
         self.pair = pair
         self.tables = tables
+        self.numbers = numbers
         self._cumulants: dict[Key, np.ndarray] = {}
         self._tables: dict[Key, np.ndarray | None] = {}
 
@@ -132,6 +135,22 @@ class DoobLaw:
     def _likeliest(self) -> np.ndarray:
         """The likeliest step out of each state, shape (n, batch)."""
         return np.argmax(self.pair.chance, axis=1)
+
+    def average(self, table: np.ndarray) -> np.ndarray:
+        """Return the stationary mean of a step table, shape (batch,)."""
+        return (self.stationary * (self.pair.chance * table).sum(axis=1)).sum(axis=0)
+
+    def entropy_rate(self) -> np.ndarray:
+        """Return −Σ π_i P_ij ln P_ij, a sum of positive terms also where a step is almost certain."""
+        chance, zero, one = self.pair.chance, self.numbers.scalar(0), self.numbers.scalar(1)
+        rows, points = np.arange(len(chance))[:, None], np.arange(chance.shape[-1])
+        rare = chance.copy()
+        rare[rows, self._likeliest, points] = zero
+        positive = rare > 0
+        terms = np.where(positive, -rare * self.numbers.log(np.where(positive, rare, one)), zero)
+        doubt = rare.sum(axis=1)
+        doubt = np.where(doubt < one, doubt, one - chance[rows, self._likeliest, points])
+        return (self.stationary * (terms.sum(axis=1) - (one - doubt) * self.numbers.log1p(-doubt))).sum(axis=0)
 
     def centred_source(self, left: np.ndarray) -> np.ndarray:
         """Return Σ_i π_i P_ij (X_ij − ⟨X⟩): the deviation that a quantity leaves behind, shape (n, batch)."""

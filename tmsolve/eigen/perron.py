@@ -159,23 +159,33 @@ def _single(weights: np.ndarray, defect: np.ndarray) -> PerronPair:
     return PerronPair(-defect[0], one[0], one, still, good, np.zeros(weights.shape[-1]))
 
 
-def _row_excess(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray) -> np.ndarray:
-    return (rates * vector[None]).sum(axis=1) / vector - defect
-
-
 def _noda(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
     vector = np.ones_like(defect) if rates.dtype != object else defect * 0 + 1
     best = np.full(defect.shape[-1], np.inf)
     for _ in range(_NODA_STEPS):
-        rows = _row_excess(vector, rates, defect)
-        top, bottom = rows.max(axis=0), rows.min(axis=0)
-        spread = np.asarray(top - bottom, dtype=np.float64)
-        # Rows whose rounding exceeds the spread stop improving; Newton's steps take over.
-        if not ((spread > 1e-7 * np.abs(top)) & (spread < best / 2)).any():
+        rows, top, spread = _rows(vector, rates, defect, numbers)
+        size = np.asarray(spread, dtype=np.float64)
+        # Once the spread stops shrinking Newton's steps take over.
+        if not ((spread > 1e-7 * np.abs(top)) & (size < 0.9 * best)).any():
             break
-        best = np.fmin(best, spread)
+        best = np.fmin(best, size)
         vector = _noda_step(vector, rows, top, rates, defect, numbers)
     return vector
+
+
+def _rows(
+    vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, numbers: Numbers
+) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return the rows' estimates of t, the largest beyond its rounding, and their spread beyond rounding.
+
+    A row whose diagonal defect is not tiny knows t only to rounding, which can exceed t by
+    far; what it says within its rounding is not believed.
+    """
+    inflow = (rates * vector[None]).sum(axis=1) / vector
+    rows = inflow - defect
+    rounding = (inflow + np.abs(defect)) * (2 * numbers.epsilon)
+    top = (rows - rounding).max(axis=0)
+    return rows, top, top - (rows + rounding).min(axis=0)
 
 
 def _patient_noda(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
@@ -187,12 +197,10 @@ def _patient_noda(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, num
     best: np.ndarray | None = None
     waiting = 0
     for _ in range(2 * numbers.bits):
-        rows = _row_excess(vector, rates, defect)
-        top = rows.max(axis=0)
-        spread = top - rows.min(axis=0)
+        rows, top, spread = _rows(vector, rates, defect, numbers)
         improved = best is None or bool((spread < 0.9 * best).any())
         waiting = 0 if improved else waiting + 1
-        if waiting > 3 or not (spread > 64 * numbers.epsilon * np.abs(top)).any():
+        if waiting > 3 or not (spread > 0).any():
             break
         best = spread if best is None else np.where(spread < best, spread, best)
         vector = _noda_step(vector, rows, top, rates, defect, numbers)
@@ -268,8 +276,8 @@ def _bisect(rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarr
     shift = numbers.power_of_two(high)
     vector = np.ones_like(defect) if rates.dtype != object else defect * 0 + 1
     for _ in range(_NODA_STEPS):
-        rows = _row_excess(vector, rates, defect)
-        right = _trusted_part(vector, rows, np.maximum(shift, rows.max(axis=0)), defect)
+        rows, top, _ = _rows(vector, rates, defect, numbers)
+        right = _trusted_part(vector, rows, np.maximum(shift, top), defect)
         solved = solve_shifted(shift, defect, rates, right, numbers.epsilon)
         vector = np.where(_all_positive(solved), solved / solved.max(axis=0), vector)
     return vector

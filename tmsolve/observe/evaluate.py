@@ -11,7 +11,7 @@ import numpy as np
 from ..assemble.window import ChainWindow, place_in
 from ..operators.numbers import to_double
 from .segment import Segment
-from .series import LEAST_ENERGY, ROOT, Monomial, Series
+from .series import DISORDER, LEAST_ENERGY, ROOT, Monomial, Series
 
 __all__ = ["Laws", "fits"]
 
@@ -51,7 +51,8 @@ class Laws:
 
     def resolved(self, observables: Sequence[str] = ()) -> tuple[ChainWindow, list[Segment]]:
         """Return window and segments for these observables."""
-        wide = tuple(sorted({name for name in observables if not fits(self.window, [name])}))
+        # A wider cut may lie elsewhere, so it is made for all of them, also those that fitted before.
+        wide = () if fits(self.window, observables) else tuple(sorted(set(observables)))
         if wide not in self._known:
             self._known[wide] = self._solve(wide)
         return self._known[wide]
@@ -94,6 +95,8 @@ def _scaled(c: Fraction, beta: np.ndarray, power: int) -> Any:
 def _cumulant(segment: Segment, blocks: Monomial | tuple[str, ...]) -> Any:
     if blocks == (ROOT,):
         return segment.log_root
+    if blocks == (DISORDER,):
+        return segment.entropy()
     if blocks == (LEAST_ENERGY,):
         return segment.least_energy
     return segment.law.cumulant(blocks)

@@ -29,6 +29,9 @@ class Segment:
         Least energy per cell e₀ of that class.
     log_root : ndarray
         ln λ₁ + β e₀.
+    entropy : callable
+        ln λ₁ + β⟨E⟩ as a sum of positive terms: entropy rate of the chain of states and of
+        what lies between the cuts.
     bits : int
         Length of the numbers used.
     states : ndarray of int
@@ -46,6 +49,7 @@ class Segment:
     beta: np.ndarray
     least_energy: np.ndarray
     log_root: np.ndarray
+    entropy: Callable[[], np.ndarray]
     bits: int
     states: np.ndarray
     edge_table: Callable[[tuple[str, ...]], np.ndarray | None]

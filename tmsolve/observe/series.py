@@ -20,10 +20,12 @@ from fractions import Fraction
 from ..assemble.matrix import handle
 from ..declare import Chain
 
-__all__ = ["LEAST_ENERGY", "ROOT", "Field", "Series"]
+__all__ = ["DISORDER", "LEAST_ENERGY", "ROOT", "Field", "Series"]
 
 #: ln λ₁ as a block; what remains of it after −β e₀ is taken out.
 ROOT = "root||"
+#: ln λ₁ + β⟨E⟩ as a block.
+DISORDER = "disorder||"
 #: The least energy per cell e₀ as a block.
 LEAST_ENERGY = "least||"
 
@@ -125,10 +127,15 @@ class Series:
     def gauged(self) -> dict[Monomial, Fraction]:
         """Return the terms with e₀ split off from ln λ₁ and from the mean energy.
 
-        ln λ₁ = root − β e₀ and ⟨E⟩ = e₀ + ⟨E − e₀⟩; where both occur, e₀ drops out exactly.
+        ln λ₁ = root − β e₀ and ⟨E⟩ = e₀ + ⟨E − e₀⟩. Where ln λ₁ + β⟨E⟩ occurs, as in the
+        entropy, it becomes one block, which is a sum of positive terms.
         """
         terms = dict(self.terms)
         for (a, blocks), c in self.terms.items():
+            if blocks == (ROOT,) and terms.get((a + 1, (_ENERGY,))) == c:
+                del terms[a, blocks], terms[a + 1, (_ENERGY,)]
+                terms[a, (DISORDER,)] = c
+        for (a, blocks), c in list(terms.items()):
             if blocks in ((ROOT,), (_ENERGY,)):
                 power, share = (a + 1, -c) if blocks == (ROOT,) else (a, c)
                 monomial: Monomial = (power, (LEAST_ENERGY,))

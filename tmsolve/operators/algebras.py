@@ -56,11 +56,16 @@ class LogSum:
         Doubles, or longer numbers.
     keys : tuple of Key
         The tilt derivatives wanted; with a key all its sub-multisets.
+    measured : str, optional
+        Name of the tilt that is the energy itself. It needs no table: its first derivative
+        comes out as the mean excess over the least energy, its cumulants as those of the
+        energy, and neither is ever a difference of large numbers.
     """
 
     beta: np.ndarray
     numbers: Numbers = DOUBLE
     keys: tuple[Key, ...] = ()
+    measured: str | None = None
 
     def align(self, table: LogTable, sites: Sequence[Any], target: Sequence[Any]) -> LogTable:
         """Give the table the target's axes."""
@@ -91,7 +96,12 @@ class LogSum:
         weights = self.numbers.exp(log - top)
         total = np.where(empty, self.numbers.scalar(1), weights.sum(axis=axis, keepdims=True))
         summed = np.where(empty, -infinite, self.numbers.log(total) + top)
-        tilts = self._cumulants(table.tilts, weights / total, axis) if table.tilts else {}
+        given = dict(table.tilts)
+        if self.measured is not None:
+            excess = np.where(table.log == -infinite, zero, table.energy - least)
+            known = given.get((self.measured,))
+            given[(self.measured,)] = excess if known is None else known + excess
+        tilts = self._cumulants(given, weights / total, axis) if given else {}
         least = np.broadcast_to(least, summed.shape)
         return LogTable(np.squeeze(least, axis=axis), np.squeeze(summed, axis=axis), tilts)
 
