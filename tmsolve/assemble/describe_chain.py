@@ -7,11 +7,10 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
-import numpy as np
-
 from ..declare import Chain, Point, Term
 from ..errors import DeclarationError, listing
 from ..tabulate.affine import affine_table
+from .allowed import allowed_entries
 from .trivial_symmetries import trivial_symmetries
 from .window import build_window
 
@@ -119,7 +118,7 @@ def describe(chain: Chain | Point) -> Description:
         cut=tuple(_site(site) for site in window.left),
         interior=tuple(_site(site) for site in window.interior),
         matrix=window.shape,
-        nonzeros=_count_nonzeros(chain),
+        nonzeros=allowed_entries(chain),
         range=max((term.reach for term in chain.terms), default=0),
         symmetries=tuple(trivial_symmetries(chain)),
     )
@@ -171,23 +170,3 @@ def _value(chain: Chain, name: str) -> str:
     if name in chain.fixed:
         return f"{float(chain.fixed[name]):g} (fixed)"
     return f"{float(chain.defaults[name]):g} (default)" if name in chain.defaults else "free"
-
-
-def _count_nonzeros(chain: Chain) -> int:
-    """Count entries that neither the cut nor an outright forbidden configuration removes."""
-    window = build_window(chain)
-    shape = [window.sizes[site] for site in window.sites]
-    if window.interior:
-        return window.nonzeros
-    allowed = np.ones(shape, dtype=bool)
-    for factor in window.factors:
-        term = factor.source
-        if isinstance(term, Term) and term.role == "energy":
-            affine = affine_table(term, [chain.cell[kind] for kind, _ in term.places if kind])
-            if affine is not None:
-                finite = np.array([c != float("inf") for c in affine.constant.ravel()]).reshape(affine.constant.shape)
-                axes = [window.sites.index(site) for site in factor.sites]
-                allowed &= np.expand_dims(
-                    finite.transpose(np.argsort(axes)), [i for i in range(len(shape)) if i not in axes]
-                )
-    return int(allowed.sum())

@@ -45,7 +45,9 @@ class Level:
     def value(self) -> complex:
         """The eigenvalue itself (may overflow to inf at low temperature)."""
         modulus = float(np.exp(self.log_modulus)) if self.log_modulus < 709 else float("inf")
-        return complex(modulus * np.cos(self.phase), modulus * np.sin(self.phase) if self.phase else 0.0)
+        if self.phase in (0.0, np.pi):
+            return complex(modulus if self.phase == 0 else -modulus)
+        return complex(modulus * np.cos(self.phase), modulus * np.sin(self.phase))
 
 
 def anchors(window: ChainWindow, observable: str) -> list[int]:

@@ -77,7 +77,7 @@ def parse_quantity(text: str, chain: Chain) -> Quantity:
     if not fewest <= len(observables) <= most:
         wanted = f"{fewest}" if fewest == most else f"{fewest} to {most}"
         raise ParameterError(
-            f"{name} takes {wanted} observables in brackets, got {len(observables)}; "
+            f"{name} takes {wanted} observable{'s' * (most != 1)} in brackets, got {len(observables)}; "
             f"this chain has {listing(chain.observables)}"
         )
     for observable in observables:

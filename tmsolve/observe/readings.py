@@ -89,16 +89,24 @@ def parse_reading(reading: str | Callable[[Solution], Any], chain: Chain) -> Rea
     quantity = parse_quantity(reading, chain)
     symbol, latex, unit = _LOOKS[quantity.name]
     inside = ",".join(quantity.observables)
+    upright = ",".join(_latex_name(name) for name in quantity.observables)
     # Subscripts name the observables; ξ and k carry one only where they were asked for one.
     if quantity.name in ("correlation_length", "wave_number") and inside:
         symbol, latex = symbol + "_{}", latex + "_{{{}}}"
     return Reading(
         str(quantity),
         symbol.format(inside) if inside else symbol,
-        latex.format(inside) if inside else latex,
+        latex.format(upright) if inside else latex,
         unit,
         lambda solution: read_value(solution, quantity),
     )
+
+
+def _latex_name(name: str) -> str:
+    """Write a name for LaTeX: single letters in italics, words upright with underscores kept."""
+    if len(name) == 1:
+        return name
+    return rf"\mathrm{{{name}}}".replace("_", r"\_")
 
 
 def read_value(solution: Solution, quantity: Quantity) -> np.ndarray:

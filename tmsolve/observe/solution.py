@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from ..assemble.allowed import allowed_entries
 from ..declare import Point
 from ..errors import NotApplicable, ParameterError, SolveError, listing, unknown_parameter
 from .correlations import Level, connected_correlation, decay, levels, sorted_spectrum
@@ -249,7 +250,7 @@ class Solution:
             error[segment.indices] = segment.double(segment.law.bound)
         return {
             "matrix": window.shape,
-            "nonzeros": window.nonzeros,
+            "nonzeros": allowed_entries(self.point.chain),
             "interior": len(window.interior),
             "bits": bits.reshape(self.shape)[()],
             "vector_error": error.reshape(self.shape)[()],
