@@ -46,6 +46,17 @@ def test_derive_partition_function(tmp_path: Path) -> None:
     assert float(line.split(",")[0]) == pytest.approx(float(line.split("products ")[1].split()[0]), rel=1e-11)
 
 
+def test_crossover_study(tmp_path: Path) -> None:
+    printed = run("crossover_study.py", tmp_path, "map.png")
+    rows = [line.split() for line in printed.splitlines() if line.startswith("  0.") or line.startswith("  1.00")]
+    assert len(rows) == 6
+    for row in rows:  # check C04: D* = T ln 2cosh(J/T), derived from the two-state even sector
+        assert float(row[1]) == pytest.approx(float(row[4]), rel=1e-11)
+    widths = [float(row[3]) for row in rows]
+    assert widths == sorted(widths) and widths[0] < 0.01 * widths[-1]
+    assert (tmp_path / "map.png").read_bytes().startswith(b"\x89PNG")
+
+
 def test_every_example_says_that_it_is_invented() -> None:
     for path in EXAMPLES.glob("*.py"):
         assert "invented" in path.read_text(encoding="utf-8").split('"""')[1], path.name
