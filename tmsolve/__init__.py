@@ -44,6 +44,7 @@ if TYPE_CHECKING:
     from .errors import TooLargeError as TooLargeError
     from .finite.chains import open_chain as open_chain
     from .finite.chains import ring as ring
+    from .ground.phases import phase_diagram as phase_diagram
     from .ground.states import ground_state as ground_state
     from .survey.axes import axis as axis
     from .survey.events import crossovers as crossovers
@@ -62,6 +63,7 @@ _HOMES = {
         "TooLargeError",
     ),
     "finite.chains": ("open_chain", "ring"),
+    "ground.phases": ("phase_diagram",),
     "ground.states": ("ground_state",),
     "survey.axes": ("axis",),
     "survey.events": ("crossovers",),

@@ -67,7 +67,7 @@ def test_a_bad_guess_is_repaired(drawn, bound):
     if not len(rows):
         return
     shifted = costs - (max(costs) + 1)
-    distance, cycle = _distances(rows, cols, shifted, np.array([0] * n, dtype=object))
+    _, cycle = _distances(rows, cols, shifted, np.array([0] * n, dtype=object))
     assert cycle is not None and sum(shifted[cycle]) < 0
     assert all(cols[a] == rows[b] for a, b in zip(cycle, np.roll(cycle, -1), strict=True))
 
@@ -79,7 +79,8 @@ def test_an_absent_cycle_among_parents():
 def test_ties_that_doubles_cannot_tell_apart():
     """Two loops that differ by one part in 10^30."""
     big = 10**30
-    found = cheapest_cycles(np.array([0, 0, 1, 1]), np.array([0, 1, 0, 1]), np.array([big, big, big, big - 1], object), 2)
+    rows, cols = np.array([0, 0, 1, 1]), np.array([0, 1, 0, 1])
+    found = cheapest_cycles(rows, cols, np.array([big, big, big, big - 1], object), 2)
     assert found.mean == big - 1 and found.cycle.tolist() == [3]
 
 

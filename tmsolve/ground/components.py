@@ -95,13 +95,17 @@ class Component:
     @cached_property
     def examples(self) -> tuple[Configuration, ...]:
         """Its configuration where it is a single cycle, else a few of the shortest period."""
+        if self.single:
+            return (self.written(_path(self._follow, 0, 0)),)
+        starts = np.unique(np.linspace(0, len(self.nodes) - 1, _TRIED).astype(int))
+        cycles = sorted((_path(self._follow, start, start) for start in starts.tolist()), key=len)
         found: dict[tuple[str, ...], Configuration] = {}
-        for start in range(min(len(self.nodes), 1 if self.single else _TRIED)):
-            item = self.written(_path(self._follow, start, start))
+        for cycle in cycles:
+            item = self.written(cycle)
             found.setdefault(item.labels, item)
             if len(found) == _EXAMPLES:
                 break
-        return tuple(sorted(found.values(), key=lambda c: c.period))
+        return tuple(found.values())
 
     @cached_property
     def _follow(self) -> list[list[tuple[int, int]]]:
@@ -148,7 +152,7 @@ def _path(follow: list[list[tuple[int, int]]], start: int, goal: int) -> list[in
 
 def critical_components(graph: CutGraph) -> list[Component]:
     """Return the strong components of the steps that lie on cheapest cycles."""
-    found, edges = graph.cheapest, graph.edges
+    found = graph.cheapest
     tight = found.inner[np.asarray(found.reduced == 0, dtype=bool)]
     return strong_parts(graph, tight)
 

@@ -88,7 +88,7 @@ class Excursions:
         self.factor = dominant[0].growth.factor
         edges = graph.all_edges
         least = graph.cheapest
-        shifted = edges.energy.astype(object) * least.unit - least.mean.numerator * (least.unit // least.mean.denominator)
+        shifted = edges.energy.astype(object) * least.unit - int(least.mean * least.unit)
         reduced = shifted + least.potentials[edges.rows] - least.potentials[edges.cols]
         keep = inner_edges(edges.rows, edges.cols, graph.size)
         self.numbers = np.flatnonzero(keep)
@@ -159,7 +159,8 @@ class Excursions:
     def _ends(self, source: int, distance: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
         """Return the steps by which a way from a component may end in one, and the cost of the whole way."""
         start, end = self.home[self.rows], self.home[self.cols]
-        ends = (end >= 0) & ((start == source) | ((start < 0) & np.asarray(distance[self.rows] < self.never, dtype=bool)))
+        reached = np.asarray(distance[self.rows] < self.never, dtype=bool)
+        ends = (end >= 0) & ((start == source) | ((start < 0) & reached))
         ends &= ~((start == source) & (end == source) & np.asarray(self.cost == 0, dtype=bool))
         numbers = np.flatnonzero(ends)
         return numbers, distance[self.rows[numbers]] + self.cost[numbers]
@@ -258,7 +259,9 @@ class Excursions:
         raise AssertionError("the way exists, its cost is known")
 
 
-def _resolvent(factor: float, steps: tuple[np.ndarray, np.ndarray], counts: np.ndarray, value: np.ndarray) -> np.ndarray:
+def _resolvent(
+    factor: float, steps: tuple[np.ndarray, np.ndarray], counts: np.ndarray, value: np.ndarray
+) -> np.ndarray:
     """Return (ρ − W)⁻¹ value for a matrix W given by its entries."""
     n = len(value)
     if n <= _DENSE_LIMIT:

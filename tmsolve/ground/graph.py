@@ -148,7 +148,8 @@ class CutGraph:
         table = self.window.reduce(MinPlus(self.ceiling, levels), self._tables)
         parts = [self._pick(table.energy, table.count, False)]
         if table.excited is not None:
-            parts.append(self._pick(*table.excited, True))
+            energy, count = table.excited
+            parts.append(self._pick(energy, count, True))
         return Edges(*(np.concatenate(arrays) for arrays in zip(*parts, strict=True)))
 
     def _pick(self, energy: np.ndarray, count: np.ndarray, excited: bool) -> tuple[np.ndarray, ...]:

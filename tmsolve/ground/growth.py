@@ -11,7 +11,7 @@ from typing import Any
 
 import numpy as np
 
-from ..maxplus.graphs import period, strong_labels
+from ..maxplus.graphs import period
 from .lumping import lump
 
 __all__ = ["Growth", "graph_growth"]
@@ -168,9 +168,8 @@ def graph_growth(rows: np.ndarray, cols: np.ndarray, counts: np.ndarray, n: int)
     forward = lump(rows.tolist(), cols.tolist(), amounts, n)[1]
     backward = lump(cols.tolist(), rows.tolist(), amounts, n)[1]
     quotient = forward if len(forward) <= len(backward) else backward
-    where = np.nonzero(quotient != 0)
-    assert not strong_labels(*where, len(quotient)).any()
-    cells, classes = period(*where, len(quotient))
+    rows, cols = np.nonzero(quotient != 0)[:2]
+    cells, classes = period(rows, cols, len(quotient))
     block = _block(quotient, classes, cells)
     floats = np.array([[float(c) for c in row] for row in block])
     root = float(np.linalg.eigvals(floats).real.max())

@@ -98,4 +98,3 @@ def _all_equal(means: Sequence[Any]) -> bool:
 
 def _plain(mean: Any, exact: bool) -> Fraction | float:
     return mean if exact and isinstance(mean, Fraction) else float(mean)
-

@@ -226,6 +226,6 @@ def _near_ties(graph: CutGraph, components: Iterable[Component]) -> Iterable[str
                 item = part.written(cycle)
                 yield (
                     f"near tie: {item} lies only {float(excess):.3g} above the ground state, less than 1e-12 of the "
-                    f"energy scale {float(graph.scale):g}; if the two were meant to be equal, give decimals or fractions"
+                    f"energy scale {float(graph.scale):g}; if both were meant to be equal, give decimals or fractions"
                 )
                 break
