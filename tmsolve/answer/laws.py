@@ -12,15 +12,15 @@ from ..assemble.window import ChainWindow
 from ..declare import Point
 from ..eigen.components import communicating_classes
 from ..eigen.law import DoobLaw
-from ..eigen.perron import TOLERANCE, PerronPair, perron_pair
 from ..eigen.periodic import periodic_pair
+from ..eigen.perron import TOLERANCE, PerronPair, perron_pair
 from ..eigen.solvers import Dense
 from ..eigen.spectrum import ratios
-from ..errors import SolveError
+from ..errors import SolveError, TooLargeError
 from ..observe.segment import Segment
 from ..operators.numbers import multiprecision, to_double
 
-__all__ = ["stationary_laws"]
+__all__ = ["long_laws", "stationary_laws"]
 
 _FIRST_BITS = 128
 #: Longer numbers are worth their time for matrices up to this size.
@@ -142,11 +142,57 @@ def _names(window: ChainWindow, states: np.ndarray) -> str:
 
 def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, solver: Dense, point: Point) -> Segment:
     """Solve one point again with longer and longer numbers."""
-    where = np.array([index])
-    bits = _FIRST_BITS
     size = part.window.shape[0]
-    while bits <= solver.bits and size <= _CLIMB_LIMIT:
-        long = Assembled(part.window, _exact_values(point, index), 1, multiprecision(bits))
+    if size <= _CLIMB_LIMIT:
+        found = _solve_long(part.window, point, index, solver, _FIRST_BITS, TOLERANCE)
+        if found is not None:
+            return found
+    raise SolveError(
+        f"the largest eigenvalue could not be separated at {point.pick(int(index))} "
+        f"with {'doubles' if size > _CLIMB_LIMIT else f'numbers of {solver.bits} bits'}; "
+        "raise Dense(bits=…), the temperature, or lift a near tie between ground states"
+    )
+
+
+def long_laws(window: ChainWindow, point: Point, solver: Dense, digits: int) -> list[Segment]:
+    """Solve every point of a batch with numbers long enough for so many digits.
+
+    Raises
+    ------
+    SolveError
+        The longest numbers do not suffice.
+    TooLargeError
+        The matrix is too large for long numbers.
+    """
+    size = max(window.shape)
+    if size > _CLIMB_LIMIT:
+        raise TooLargeError(
+            f"digits= is limited to {_CLIMB_LIMIT} joint states of the cut; this chain has {size}. "
+            "Leave digits= out: doubles give about 14",
+            limit=_CLIMB_LIMIT,
+        )
+    segments = []
+    for index in range(point.size):
+        bits = _FIRST_BITS
+        while bits < 3.33 * digits + 64:
+            bits *= 2
+        found = _solve_long(window, point, index, solver, bits, 10.0 ** -min(digits + 4, 300))
+        if found is None:
+            raise SolveError(
+                f"{digits} digits could not be reached at {point.pick(index)} with numbers of {solver.bits} bits; "
+                "raise Dense(bits=…) or ask for fewer digits"
+            )
+        segments.append(found)
+    return segments
+
+
+def _solve_long(
+    window: ChainWindow, point: Point, index: int, solver: Dense, bits: int, tolerance: float
+) -> Segment | None:
+    """Solve one point with numbers of ``bits``, 2·bits, … until its bound is below the tolerance."""
+    where = np.array([index])
+    while bits <= solver.bits:
+        long = Assembled(window, _exact_values(point, index), 1, multiprecision(bits))
         edges = long.pattern[..., 0]
         bits *= 2
         try:
@@ -154,13 +200,9 @@ def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, 
         except ZeroDivisionError:  # a pivot cancelled to zero: these numbers are too short
             continue
         chosen = int(_dominant(found, long, point, where)[0])
-        if found[chosen].trusted[0]:
+        if found[chosen].trusted[0] and found[chosen].pair.error[0] < tolerance:
             return _segment(found, chosen, long, np.array([0]), where)
-    raise SolveError(
-        f"the largest eigenvalue could not be separated at {point.pick(int(index))} "
-        f"with {'doubles' if size > _CLIMB_LIMIT else f'numbers of {solver.bits} bits'}; "
-        "raise Dense(bits=…), the temperature, or lift a near tie between ground states"
-    )
+    return None
 
 
 def _exact_values(point: Point, index: int) -> dict[str, Any]:

@@ -2,6 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
+from functools import partial
+from numbers import Integral
+
 import numpy as np
 
 from ..assemble.window import ChainWindow, build_window
@@ -11,12 +15,12 @@ from ..errors import NotApplicable, ParameterError
 from ..observe.evaluate import Laws
 from ..observe.segment import Segment
 from ..observe.solution import Solution
-from .laws import stationary_laws
+from .laws import long_laws, stationary_laws
 
 __all__ = ["solve"]
 
 
-def solve(point: Point, *, solver: Solver | None = None) -> Solution:
+def solve(point: Point, *, solver: Solver | None = None, digits: int | None = None) -> Solution:
     """Solve an infinite chain at T > 0.
 
     Parameters
@@ -25,6 +29,11 @@ def solve(point: Point, *, solver: Solver | None = None) -> Solution:
         Made by ``chain.at(T=…, …)``; arrays make a batch.
     solver : Solver, optional
         ``Auto()`` by default.
+    digits : int, optional
+        Significant digits wanted. Quantities are then mpmath numbers of so many digits
+        instead of doubles; exact parameters (integers, fractions, decimals) stay exact.
+        Correlation lengths, wave numbers, gaps, correlations and structure factors remain
+        doubles.
 
     Returns
     -------
@@ -45,6 +54,8 @@ def solve(point: Point, *, solver: Solver | None = None) -> Solution:
     >>> solution = solve(chain.at(T=1, J=1, D="1/2"))
     >>> [round(level.value.real, 6) for level in solution.spectrum()]
     [2.620448, 1.425591, 0.251404]
+    >>> print(solve(chain.at(T=1, J=1, D="1/2"), digits=30).free_energy)
+    -0.963345215968660381704786079178
     """
     if not isinstance(point, Point):
         hint = (
@@ -62,12 +73,32 @@ def solve(point: Point, *, solver: Solver | None = None) -> Solution:
         )
     window = build_window(point.chain)
     dense = chosen.select(window.shape[0]) if isinstance(chosen, Auto) else chosen
-    base = stationary_laws(window, point, dense)
+    if digits is None:
+        return Solution(point, _laws(window, point, partial(stationary_laws, solver=dense), None, dense))
+    if isinstance(digits, bool) or not isinstance(digits, Integral) or digits < 1:
+        raise ParameterError(f"digits= takes a whole number >= 1, got {digits!r}")
+    wanted = int(digits)
+    return Solution(point, _laws(window, point, partial(long_laws, solver=dense, digits=wanted), wanted, dense))
+
+
+def _laws(
+    window: ChainWindow,
+    point: Point,
+    laws_of: Callable[[ChainWindow, Point], list[Segment]],
+    digits: int | None,
+    dense: Dense,
+) -> Laws:
+    """Solve now over the smallest window; wider ones, and sharper numbers, when they are asked for."""
+    base = laws_of(window, point)
 
     def widened(observables: tuple[str, ...]) -> tuple[ChainWindow, list[Segment]]:
         if not observables:
             return window, base
         wide = build_window(point.chain, observables)
-        return wide, stationary_laws(wide, point, dense)
+        return wide, laws_of(wide, point)
 
-    return Solution(point, Laws(window, point.size, widened))
+    def sharper() -> Laws:
+        more = 30 if digits is None else 2 * digits + 10
+        return _laws(window, point, partial(long_laws, solver=dense, digits=more), more, dense)
+
+    return Laws(window, point.size, widened, digits, sharper)

@@ -117,13 +117,13 @@ class DoobLaw:
         source = (chance * full).sum(axis=1)
         mean = (self.stationary * source).sum(axis=0)
         slope = self.pair.reduction.poisson(source - mean)
-        centred = self._differences(given, slope)
+        centred = self.differences(given, slope)
         if rest is not None:
             centred = centred - (chance * rest).sum(axis=1)[:, None]
         self._tables[key] = centred
         self._cumulants[key] = mean
 
-    def _differences(self, table: np.ndarray, slope: np.ndarray) -> np.ndarray:
+    def differences(self, table: np.ndarray, slope: np.ndarray) -> np.ndarray:
         """Return Σ_l P_il [(B_ij − B_il) + (g_j − g_l)], formed from the likeliest step of each row."""
         chance = self.pair.chance
         rows, points = np.arange(len(chance))[:, None], np.arange(chance.shape[-1])
@@ -152,14 +152,38 @@ class DoobLaw:
         doubt = np.where(doubt < one, doubt, one - chance[rows, self._likeliest, points])
         return (self.stationary * (terms.sum(axis=1) - (one - doubt) * self.numbers.log1p(-doubt))).sum(axis=0)
 
+    @cached_property
+    def _flow(self) -> np.ndarray:
+        return self.stationary[:, None] * self.pair.chance
+
+    @cached_property
+    def _usual(self) -> np.ndarray:
+        """The likeliest state, shape (batch,)."""
+        return np.argmax(self.stationary, axis=0)
+
+    def rebased(self, table: np.ndarray) -> np.ndarray:
+        """Return a step table minus its value at the likeliest step out of the likeliest state.
+
+        In a nearly frozen chain all means of what is left are small, and so are their errors.
+        """
+        full = np.broadcast_to(table, self.pair.chance.shape)
+        points = np.arange(full.shape[-1])
+        return full - full[self._usual, self._likeliest[self._usual, points], points]
+
+    def covariance_within(self, left: np.ndarray, right: np.ndarray) -> np.ndarray:
+        """Return the covariance of two step tables on the same step, shape (batch,)."""
+        x, y = self.rebased(left), self.rebased(right)
+        return self.average((x - self.average(x)) * (y - self.average(y)))
+
     def centred_source(self, left: np.ndarray) -> np.ndarray:
         """Return Σ_i π_i P_ij (X_ij − ⟨X⟩): the deviation that a quantity leaves behind, shape (n, batch)."""
-        flow = self.stationary[:, None] * self.pair.chance
-        return (flow * (left - (flow * left).sum(axis=(0, 1)))).sum(axis=0)
+        x = self.rebased(left)
+        return self._centred((self._flow * x).sum(axis=0) - self.stationary * self.average(x))
 
     def conditional(self, right: np.ndarray) -> np.ndarray:
         """Return Σ_j P_ij Y_ij − ⟨Y⟩: what a quantity is expected to be, given the state before it."""
-        rows = (self.pair.chance * right).sum(axis=1)
+        rows = (self.pair.chance * self.rebased(right)).sum(axis=1)
+        rows = rows - rows[self._usual, np.arange(rows.shape[-1])]
         return rows - (self.stationary * rows).sum(axis=0)
 
     def connected(self, left: np.ndarray, right: np.ndarray, steps: int) -> np.ndarray:
@@ -169,9 +193,10 @@ class DoobLaw:
     def connected_series(self, left: np.ndarray, right: np.ndarray, steps: list[int]) -> list[np.ndarray]:
         """Return connected correlations at several distances ≥ 1 with one pass along the chain.
 
-        The propagated deviation is re-centred at every step: rounding along the stationary
-        direction would not decay. Long stretches between wanted distances are crossed by
-        repeated squaring.
+        A deviation sums to zero over the states. That is kept up exactly by giving the
+        likeliest state minus what the others have, which rounds off least: rounding along
+        the stationary direction would not decay. Long stretches between wanted distances
+        are crossed by repeated squaring.
         """
         target = self.conditional(right)
         row = self.centred_source(left)
@@ -190,18 +215,26 @@ class DoobLaw:
             for _ in range(count):
                 row = self._centred((row[:, None] * square).sum(axis=0))
             return row
-        square = square - self.stationary[None]
+        square = self._centred_rows(square - self.stationary[None])
         while count:
             if count & 1:
                 row = self._centred((row[:, None] * square).sum(axis=0))
             count >>= 1
             if count:
-                square = (square[:, :, None] * square[None]).sum(axis=1)
-                square = square - square.sum(axis=1)[:, None] * self.stationary[None]
+                square = self._centred_rows((square[:, :, None] * square[None]).sum(axis=1))
         return row
 
     def _centred(self, row: np.ndarray) -> np.ndarray:
-        return row - self.stationary * row.sum(axis=0)
+        points = np.arange(row.shape[-1])
+        row[self._usual, points] = 0
+        row[self._usual, points] = -row.sum(axis=0)
+        return row
+
+    def _centred_rows(self, square: np.ndarray) -> np.ndarray:
+        points = np.arange(square.shape[-1])
+        square[:, self._usual, points] = 0
+        square[:, self._usual, points] = -square.sum(axis=1)
+        return square
 
     def double_chance(self) -> np.ndarray:
         """Return the transition probabilities as doubles, batch first: shape (batch, n, n)."""

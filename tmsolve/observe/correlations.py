@@ -92,12 +92,9 @@ def _between_windows(segment: Segment, left: str, right: str, steps: Sequence[in
 
 
 def _within_window(segment: Segment, names: tuple[str, str], x: Any, y: Any) -> Any:
-    law = segment.law
-    flow = law.stationary[:, None] * law.pair.chance
-    mean_x, mean_y = (flow * x).sum(axis=(0, 1)), (flow * y).sum(axis=(0, 1))
     inside = segment.edge_table(tuple(sorted(names)))
-    product = (x - mean_x) * (y - mean_y)
-    return (flow * (product if inside is None else product + inside)).sum(axis=(0, 1))
+    covariance = segment.law.covariance_within(x, y)
+    return covariance if inside is None else covariance + segment.law.average(inside)
 
 
 def sorted_spectrum(segment: Segment) -> tuple[np.ndarray, np.ndarray]:

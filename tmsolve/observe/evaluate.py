@@ -4,12 +4,14 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from fractions import Fraction
+from functools import cached_property
 from typing import Any
 
 import numpy as np
 
 from ..assemble.window import ChainWindow, place_in
-from ..operators.numbers import to_double
+from ..errors import TooLargeError
+from ..operators.numbers import to_digits, to_double
 from .segment import Segment
 from .series import DISORDER, LEAST_ENERGY, ROOT, Monomial, Series
 
@@ -32,6 +34,10 @@ class Laws:
         Number of points.
     solve : callable
         Returns the window widened for some observables, and its segments.
+    digits : int, optional
+        Digits that values are rounded to; doubles when left out.
+    sharper : callable, optional
+        Returns the same laws with longer numbers.
     """
 
     def __init__(
@@ -39,10 +45,14 @@ class Laws:
         window: ChainWindow,
         size: int,
         solve: Callable[[tuple[str, ...]], tuple[ChainWindow, list[Segment]]],
+        digits: int | None = None,
+        sharper: Callable[[], Laws] | None = None,
     ) -> None:
         self.window = window
         self.size = size
+        self.digits = digits
         self._solve = solve
+        self._sharper = sharper
         self._known: dict[tuple[str, ...], tuple[ChainWindow, list[Segment]]] = {}
 
     def segments(self, observables: Sequence[str] = ()) -> list[Segment]:
@@ -62,14 +72,27 @@ class Laws:
         """Return the value of a sum of cumulants at every point, shape (size,)."""
         terms = series.gauged()
         names = {name for _, blocks in terms for block in blocks for name in _observables(block)}
-        result = np.zeros(self.size)
+        result = np.zeros(self.size, dtype=np.float64 if self.digits is None else object)
         for segment in self.segments(sorted(names)):
             total = sum(
                 (_scaled(c, segment.beta, a) * _cumulant(segment, blocks) for (a, blocks), c in terms.items()),
                 start=segment.beta * 0,
             )
-            result[segment.indices] = to_double(total)
+            result[segment.indices] = to_double(total) if self.digits is None else to_digits(total, self.digits)
         return result
+
+    @cached_property
+    def sharper(self) -> Laws | None:
+        """The same laws with at least twice the digits; ``None`` where they are out of reach."""
+        try:
+            return None if self._sharper is None else self._sharper()
+        except TooLargeError:
+            return None
+
+    def magnitude(self, series: Series) -> np.ndarray:
+        """Return the sum of the absolute values of a series' terms, shape (size,)."""
+        parts = [np.abs(self.evaluate(Series(series.chain, {m: c}))) for m, c in series.terms.items()]
+        return np.sum(parts, axis=0) if parts else np.zeros(self.size)
 
     @np.errstate(under="ignore")  # weights far below 1 vanish, which is what they should do
     def collect(

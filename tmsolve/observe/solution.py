@@ -15,6 +15,7 @@ from ..errors import NotApplicable, ParameterError, SolveError, listing, unknown
 from .correlations import Level, connected_correlation, decay, levels, sorted_spectrum
 from .evaluate import Laws
 from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
+from .structure import structure_factor
 
 __all__ = ["Solution"]
 
@@ -61,8 +62,9 @@ class Solution:
         return self._shaped(self.laws.evaluate(series), f"{quantity}")
 
     def _shaped(self, flat: np.ndarray, what: str) -> np.ndarray:
-        if np.isnan(flat).any():
-            index = int(np.flatnonzero(np.isnan(flat))[0])
+        unknown = np.asarray(flat != flat, dtype=bool)
+        if unknown.any():
+            index = int(np.argwhere(unknown)[0][0])
             raise SolveError(f"{what} could not be computed at {self.point.pick(index)}")
         return flat.reshape((*self.shape, *flat.shape[1:]))[()]
 
@@ -172,6 +174,30 @@ class Solution:
         shaped = self._shaped(values, f"correlation of {a} and {b}")
         return shaped[..., 0] if np.ndim(distances) == 0 else shaped
 
+    def structure_factor(self, a: str, k: Any) -> np.ndarray:
+        """Structure factor S(k) = Σ_r e^{ikr} (⟨a₀a_r⟩ − ⟨a⟩²) at wave numbers k per cell.
+
+        S(0) is T times the susceptibility. Shape (*batch, wave numbers), or the batch for a
+        single k.
+
+        Examples
+        --------
+        >>> from tmsolve import models, solve
+        >>> r = solve(models.load("ising").chain.at(T="1/20", J=1, h=0))
+        >>> print(f"{r.structure_factor('m', 1e-3):.8e}")       # sinh-free form: (1−t²)/(1−2t cos k+t²)
+        1.69934184e-11
+        """
+        wanted = np.atleast_1d(np.asarray(k, dtype=np.float64))
+        if wanted.ndim != 1 or not wanted.size or not np.isfinite(wanted).all():
+            raise ParameterError(f"wave numbers are finite numbers per cell, got {k!r}")
+        self.point.chain.observable(a)
+        window, _ = self.laws.resolved((a,))
+        values = self.laws.collect(
+            lambda segment: structure_factor(window, segment, a, wanted.tolist()), (a,), (wanted.size,)
+        )
+        shaped = self._shaped(values, f"structure factor of {a}")
+        return shaped[..., 0] if np.ndim(k) == 0 else shaped
+
     def correlation_length(self, a: str | None = None) -> np.ndarray:
         """Decay length ξ in cells: of the second eigenvalue, or of the slowest mode that ``a`` shows.
 
@@ -233,6 +259,40 @@ class Solution:
         log_modulus, phase = sorted_spectrum(segment)
         root = -float(self.free_energy) / float(self.point.number("T"))
         return levels(root, log_modulus[0], phase[0], k)
+
+    def error_bound(self, quantity: str) -> np.ndarray:
+        """Bound on the numerical error of a quantity that is a derivative of f, per point.
+
+        The quantity is evaluated again with longer numbers, whose own error is negligible,
+        and the bound is twice the difference plus rounding. Where the matrix is too large for
+        that, it is the rounding bound of the Perron vector times the size of all terms.
+
+        Parameters
+        ----------
+        quantity : str
+            Such as ``"specific_heat"`` or ``"susceptibility(m)"``.
+
+        Examples
+        --------
+        >>> from tmsolve import models, solve
+        >>> r = solve(models.load("ising").chain.at(T="0.02", J=1, h=0))
+        >>> bool(r.error_bound("entropy") < 1e-14 * r.entropy)          # s = 3.76e-42
+        True
+        """
+        parsed = parse_quantity(quantity, self.point.chain)
+        if parsed.name not in DIFFERENTIABLE:
+            raise NotApplicable(f"bounds are given for {listing(DIFFERENTIABLE)}, not for {parsed}")
+        series = series_of(parsed, self.point.chain)
+        value = self.laws.evaluate(series)
+        sharper = self.laws.sharper
+        if sharper is not None:
+            better = sharper.evaluate(series)
+            rounding = 2.0**-52 if self.laws.digits is None else 10.0 ** (1 - self.laws.digits)
+            bound = 2 * np.abs(value - better) + rounding * np.abs(better)
+        else:
+            size = self.laws.magnitude(series)
+            bound = size * (64 * 2.0**-53 + 8 * np.ravel(self.diagnostics["vector_error"]))
+        return self._shaped(np.asarray(bound).astype(np.float64), f"error bound of {parsed}")
 
     @property
     def log_eigenvalue(self) -> np.ndarray:

@@ -14,7 +14,7 @@ from typing import Any
 
 import numpy as np
 
-__all__ = ["DOUBLE", "Numbers", "multiprecision", "to_double"]
+__all__ = ["DOUBLE", "Numbers", "multiprecision", "to_digits", "to_double"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -141,6 +141,24 @@ def to_double(values: Any) -> np.ndarray:
     for i in range(flat.size):
         flat[i] = _round(source[i])
     return out
+
+
+def to_digits(values: Any, digits: int) -> np.ndarray:
+    """Round an array of long numbers to so many significant digits (mpmath numbers that print them)."""
+    context = _decimal_context(digits)
+    source = np.asarray(values, dtype=object)
+    out = np.empty(source.shape, dtype=object)
+    out.reshape(-1)[:] = [context.mpf(value) for value in source.reshape(-1)]
+    return out
+
+
+@lru_cache(maxsize=8)
+def _decimal_context(digits: int) -> Any:
+    import mpmath
+
+    context = mpmath.MPContext()
+    context.dps = digits
+    return context
 
 
 def _round(value: Any) -> float:
