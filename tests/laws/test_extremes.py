@@ -14,7 +14,7 @@ from tests.laws.readings import agree, readings
 from tests.laws.reference import Reference, growth
 from tests.laws.strategies import random_chains
 from tests.laws.zoo import BY_NAME, ZOO, Animal
-from tmsolve import open_chain, ring, solve
+from tmsolve import Chain, StateSet, bond, open_chain, ring, solve
 
 TEMPERATURES = ("1e-6", "1e-3", "0.02", "0.3", "1e2", "1e4", "1e6")
 #: Doublings that make ln(lambda) right to 1e-15 although amplitudes reach exp(1e7).
@@ -39,7 +39,22 @@ def frustrated(name: str, **values: str) -> Animal:
     return BY_NAME[name]._replace(values=dict(BY_NAME[name].values, **values))
 
 
+def table_chain(energies: dict[tuple[str, str], str]) -> Chain:
+    """Return a chain of states a, b, c whose bonds cost what the table says, else nothing; "inf" forbids."""
+    costs = {pair: float(cost) for pair, cost in energies.items()}
+    observables = {"m": lambda s: 1 if s == "a" else 0}
+    return Chain(
+        StateSet(("a", "b", "c")), [bond(lambda s, t: costs.get((s, t), 0))], observables=observables
+    )
+
+
+#: Every second site is a hub; the heaviest cycles have two steps and the largest eigenvalue is sqrt 2.
+HUB = table_chain({("a", "a"): "0.0375", **{(s, t): "inf" for s in "bc" for t in "bc"}})
+#: One alternating ground state; on every second site its two phases tie to second order.
+PHASES = table_chain({("b", "a"): "-0.25", ("b", "c"): "-0.25", ("c", "b"): "-0.125"})
+
 ALL = [(animal.name, animal) for animal in ZOO]
+ALL += [("hub", Animal("hub", HUB, {"T": "1"})), ("phases", Animal("phases", PHASES, {"T": "1"}))]
 ALL += [(f"{animal.name}-no-field", without_field(animal)) for animal in ZOO if "h" in animal.values]
 ALL += [
     ("ising-antiferro", frustrated("ising", J="-1", h="0")),
