@@ -12,17 +12,16 @@ from ..assemble.window import ChainWindow
 from ..declare import Point
 from ..eigen.components import communicating_classes
 from ..eigen.law import DoobLaw
-from ..eigen.periodic import periodic_pair
-from ..eigen.perron import TOLERANCE, PerronPair, perron_pair
+from ..eigen.perron import TOLERANCE, PerronPair
 from ..eigen.solvers import Dense
 from ..eigen.spectrum import ratios
 from ..errors import SolveError, TooLargeError
 from ..observe.segment import Segment
 from ..operators.numbers import multiprecision, to_double
+from .classes import FIRST_BITS, CommunicatingClass, Ties, exact_values
 
 __all__ = ["long_laws", "stationary_laws"]
 
-_FIRST_BITS = 128
 #: Longer numbers are worth their time for matrices up to this size.
 _CLIMB_LIMIT = 40
 #: What is accepted where longer numbers would take too long; `Solution.diagnostics` shows the bound.
@@ -73,13 +72,14 @@ def _solve_part(
             f"every configuration of the infinite chain is forbidden at {point.pick(int(indices[0]))}; "
             "check which terms return math.inf (or weight 0)"
         )
-    found = [_Class(part, states, edges[np.ix_(states, states)]) for states in classes]
+    found = [CommunicatingClass(part, states, edges[np.ix_(states, states)]) for states in classes]
+    confirm = Ties(part, point, indices)
     segments: list[Segment] = []
     best = _dominant(found, part, point, indices)
     for number in dict.fromkeys(best.tolist()):
         local = np.flatnonzero(best == number)
         chosen = found[number]
-        good = chosen.trusted[local]
+        good = chosen.settled(part, confirm)[local] if part.window.shape[0] <= _CLIMB_LIMIT else chosen.trusted[local]
         if len(chosen.states) > _CLIMB_LIMIT:
             good = chosen.pair.converged[local] & (chosen.pair.error[local] < _LARGE_TOLERANCE)
         if good.any():
@@ -90,24 +90,7 @@ def _solve_part(
     return segments
 
 
-class _Class:
-    """One communicating class of states with its Perron pair at every point of a batch."""
-
-    def __init__(self, part: Assembled, states: np.ndarray, edges: np.ndarray) -> None:
-        self.states = states
-        log, self.gauge = part.scaled_log(states, edges)
-        # Long numbers come one point at a time, with its own critical cycles.
-        solve = periodic_pair if part.numbers.exact_exponent else perron_pair
-        self.pair = solve(log, part.numbers)
-        self.trusted = self.pair.converged & (self.pair.error < TOLERANCE)
-        if not part.numbers.exact_exponent:
-            lowest = np.where(edges[..., None], log, 0.0).min(axis=(0, 1))
-            self.trusted &= lowest > np.log(part.numbers.tiny)
-        self.log_root = self.gauge.offset + part.numbers.log1p(self.pair.excess)
-        self.log_eigenvalue = self.log_root - part.beta * self.gauge.energy
-
-
-def _dominant(found: list[_Class], part: Assembled, point: Point, indices: np.ndarray) -> np.ndarray:
+def _dominant(found: list[CommunicatingClass], part: Assembled, point: Point, indices: np.ndarray) -> np.ndarray:
     """Return the number of the class with the largest root at every point; a tie is an error."""
     if len(found) == 1:
         return np.zeros(part.batch, dtype=np.intp)
@@ -144,7 +127,7 @@ def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, 
     """Solve one point again with longer and longer numbers."""
     size = part.window.shape[0]
     if size <= _CLIMB_LIMIT:
-        found = _solve_long(part.window, point, index, solver, _FIRST_BITS, TOLERANCE)
+        found = _solve_long(part.window, point, index, solver, FIRST_BITS, TOLERANCE)
         if found is not None:
             return found
     raise SolveError(
@@ -173,7 +156,7 @@ def long_laws(window: ChainWindow, point: Point, solver: Dense, digits: int) -> 
         )
     segments = []
     for index in range(point.size):
-        bits = _FIRST_BITS
+        bits = FIRST_BITS
         while bits < 3.33 * digits + 64:
             bits *= 2
         found = _solve_long(window, point, index, solver, bits, 10.0 ** -min(digits + 4, 300))
@@ -192,11 +175,14 @@ def _solve_long(
     """Solve one point with numbers of ``bits``, 2·bits, … until its bound is below the tolerance."""
     where = np.array([index])
     while bits <= solver.bits:
-        long = Assembled(window, _exact_values(point, index), 1, multiprecision(bits))
+        long = Assembled(window, exact_values(point, index), 1, multiprecision(bits))
         edges = long.pattern[..., 0]
         bits *= 2
         try:
-            found = [_Class(long, states, edges[np.ix_(states, states)]) for states in communicating_classes(edges)]
+            found = [
+                CommunicatingClass(long, states, edges[np.ix_(states, states)])
+                for states in communicating_classes(edges)
+            ]
         except ZeroDivisionError:  # a pivot cancelled to zero: these numbers are too short
             continue
         chosen = int(_dominant(found, long, point, where)[0])
@@ -205,11 +191,9 @@ def _solve_long(
     return None
 
 
-def _exact_values(point: Point, index: int) -> dict[str, Any]:
-    return dict(point.pick(int(index)).values) if point.shape else dict(point.values)
-
-
-def _segment(found: list[_Class], number: int, part: Assembled, local: np.ndarray, indices: np.ndarray) -> Segment:
+def _segment(
+    found: list[CommunicatingClass], number: int, part: Assembled, local: np.ndarray, indices: np.ndarray
+) -> Segment:
     chosen = found[number]
     pair = _restrict(chosen.pair, local)
     gauge = chosen.gauge.at(local)
@@ -280,7 +264,9 @@ def _edge_tables(
     return table
 
 
-def _other_spectrum(other: _Class, chosen: _Class, local: np.ndarray) -> Callable[[], tuple[np.ndarray, np.ndarray]]:
+def _other_spectrum(
+    other: CommunicatingClass, chosen: CommunicatingClass, local: np.ndarray
+) -> Callable[[], tuple[np.ndarray, np.ndarray]]:
     def spectrum() -> tuple[np.ndarray, np.ndarray]:
         shift = to_double(other.log_eigenvalue - chosen.log_eigenvalue)[local, None]
         log_modulus, phase = ratios(_restrict(other.pair, local))

@@ -48,16 +48,25 @@ class Gauge:
         What interior sums and weights leave in the logarithm; 0 where there is no entry.
     offset : ndarray, shape (batch,)
         What the residual logarithms add to ln λ beyond the excess.
+    uncertainty : ndarray, shape (n, n, batch)
+        Rounding of the logarithms of the entries.
     """
 
     energy: np.ndarray
     cost: np.ndarray
     residual: np.ndarray
     offset: np.ndarray
+    uncertainty: np.ndarray
 
     def at(self, points: np.ndarray) -> Gauge:
         """Return the gauge at some points of the batch."""
-        return Gauge(self.energy[points], self.cost[..., points], self.residual[..., points], self.offset[points])
+        return Gauge(
+            self.energy[points],
+            self.cost[..., points],
+            self.residual[..., points],
+            self.offset[points],
+            self.uncertainty[..., points],
+        )
 
 
 _ENERGY = handle("energy")
@@ -149,7 +158,9 @@ class Assembled:
             scaled = np.where(edges[..., None], -reduced_costs(-scaled, worst, lift, self.numbers.epsilon), scaled)
         zero = self.numbers.scalar(0)
         cost, residual = (np.where(edges[..., None], table, zero) for table in (cost, log))
-        return scaled, Gauge(least, cost, residual, offset)
+        scale = np.abs(energy) + np.abs(least) + np.abs(potentials[:, None]) + np.abs(potentials[None, :])
+        uncertainty = (self.beta * scale + np.abs(residual)) * (16 * self.numbers.epsilon)
+        return scaled, Gauge(least, cost, residual, offset, uncertainty)
 
     def edge_table(self, key: Key) -> np.ndarray | None:
         """Return the joint conditional cumulant per entry of named quantities, or None when it vanishes.

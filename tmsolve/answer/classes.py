@@ -1,0 +1,82 @@
+"""One communicating class of states: its Perron pairs, and whether doubles suffice for them."""
+
+from __future__ import annotations
+
+from collections.abc import Callable
+from typing import Any
+
+import numpy as np
+
+from ..assemble.matrix import Assembled
+from ..declare import Point
+from ..eigen.periodic import periodic_pair
+from ..eigen.perron import TOLERANCE, perron_pair
+from ..operators.numbers import multiprecision
+
+__all__ = ["FIRST_BITS", "CommunicatingClass", "Ties", "exact_values"]
+
+#: Length of the first numbers beyond doubles.
+FIRST_BITS = 128
+
+
+def exact_values(point: Point, index: int) -> dict[str, Any]:
+    """Return the values of one point of a batch; single numbers as exactly as the user gave them."""
+    return dict(point.pick(int(index)).values) if point.shape else dict(point.values)
+
+
+class CommunicatingClass:
+    """One communicating class of states with its Perron pair at every point of a batch."""
+
+    def __init__(self, part: Assembled, states: np.ndarray, edges: np.ndarray) -> None:
+        self.states = states
+        self.edges = edges
+        self.log, self.gauge = part.scaled_log(states, edges)
+        # Long numbers come one point at a time, with its own critical cycles.
+        solve = periodic_pair if part.numbers.exact_exponent else perron_pair
+        self.pair = solve(self.log, part.numbers)
+        self.trusted = self.pair.converged & (self.pair.error < TOLERANCE)
+        if not part.numbers.exact_exponent:
+            lowest = np.where(edges[..., None], self.log, 0.0).min(axis=(0, 1))
+            self.trusted &= lowest > np.log(part.numbers.tiny)
+        self.log_root = self.gauge.offset + part.numbers.log1p(self.pair.excess)
+        self.log_eigenvalue = self.log_root - part.beta * self.gauge.energy
+
+    def error(self, tied: bool) -> np.ndarray:
+        """Bound what the rounding of the entries does to the vector, that of exact ties included or not."""
+        with np.errstate(all="ignore"):
+            noise = self.gauge.uncertainty if tied else np.where(self.log == 0, 0.0, self.gauge.uncertainty)
+            amplified = self.pair.reduction.reach((self.pair.chance * noise).sum(axis=1))
+        return np.where(np.isfinite(amplified), amplified, np.inf)
+
+    def settled(self, part: Assembled, confirm: Callable[[CommunicatingClass, int], bool]) -> np.ndarray:
+        """Return at which points doubles know the entries well enough.
+
+        Cycles that tie in doubles may differ beyond them. Where that matters, because some
+        relaxation is slow enough to notice, the tie is confirmed with longer numbers.
+        """
+        good = self.error(tied=True) < TOLERANCE
+        doubtful = np.flatnonzero(self.trusted & ~good & (self.error(tied=False) < TOLERANCE))
+        for i in doubtful:
+            good[i] = confirm(self, int(i))
+        return self.trusted & good
+
+
+class Ties:
+    """Confirms with longer numbers that cycles which tie in doubles do tie; remembers the answers."""
+
+    def __init__(self, part: Assembled, point: Point, indices: np.ndarray) -> None:
+        self.part, self.point, self.indices = part, point, indices
+        self.known: dict[Any, bool] = {}
+
+    def __call__(self, chosen: CommunicatingClass, i: int) -> bool:
+        """Return whether the ties of a class at point i of its part hold to 128 bits."""
+        values = exact_values(self.point, int(self.indices[i]))
+        tie = np.asarray(chosen.log[..., i] == 0)
+        # Without weights and interior sites ties do not depend on the temperature.
+        free = not chosen.gauge.residual.any() and not self.part.chain.uses_temperature
+        key = (tuple(v for name, v in values.items() if name != "T" or not free), tie.tobytes())
+        if key not in self.known:
+            long = Assembled(self.part.window, values, 1, multiprecision(FIRST_BITS))
+            log, _ = long.scaled_log(chosen.states, chosen.edges)
+            self.known[key] = bool((np.asarray(log[..., 0] == 0, dtype=bool) == tie).all())
+        return self.known[key]
