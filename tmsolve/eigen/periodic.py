@@ -13,7 +13,7 @@ is formed without loss.
 
 from __future__ import annotations
 
-from math import gcd, lcm
+from math import lcm
 
 import numpy as np
 
@@ -28,7 +28,10 @@ _LONGEST = 60
 
 
 def critical_period(critical: np.ndarray) -> int:
-    """Return the least common multiple of the periods of the cyclic classes of a graph.
+    """Return the least common multiple of the cycle lengths of a critical graph.
+
+    1 where some class has more than one cycle: its root exceeds 1, no row loses it to
+    rounding, and a power would only bring eigenvalues of different phase together.
 
     Examples
     --------
@@ -37,23 +40,11 @@ def critical_period(critical: np.ndarray) -> int:
     """
     period = 1
     for members in communicating_classes(critical):
-        period = lcm(period, _period(critical[np.ix_(members, members)]))
+        inside = critical[np.ix_(members, members)]
+        if inside.sum() > len(members):
+            return 1
+        period = lcm(period, len(members))
     return period
-
-
-def _period(edges: np.ndarray) -> int:
-    """Return the greatest common divisor of the cycle lengths of a strongly connected graph."""
-    level = {0: 0}
-    queue = [0]
-    period = 0
-    for node in queue:
-        for other in np.flatnonzero(edges[node]):
-            if int(other) in level:
-                period = gcd(period, level[node] + 1 - level[int(other)])
-            else:
-                level[int(other)] = level[node] + 1
-                queue.append(int(other))
-    return abs(period) or 1
 
 
 def periodic_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
