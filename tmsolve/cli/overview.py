@@ -10,6 +10,7 @@ COMMANDS = {
     "derive": "closed forms: eigenvalues, partition function, free energy, as formulas",
     "scan": "any quantities over a grid of parameters, as table, file and figure",
     "crossovers": "where behaviour changes: maxima, half-way points, disorder points",
+    "ground": "ground states at T = 0, residual entropies, phase diagrams; exact",
     "models": "the shipped models; with a name, what that model declares",
 }
 
@@ -24,6 +25,7 @@ examples:
   tmsolve derive potts --option q=3 -p h=0
   tmsolve scan blume_capel --axis T=0.05:2:40 --read specific_heat,"susceptibility(m)" --plot c.png
   tmsolve crossovers ising --along T=0.1:5
+  tmsolve ground spin1_nnn --axes J2,D --plot phases.png
 
 exit codes:
   0 done   1 failed   2 the command line or the model cannot be used   3 some points failed

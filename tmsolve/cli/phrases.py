@@ -16,6 +16,7 @@ _PHRASES = (
     (r"(?<!\w)\.recurrence\b", "--quantity recurrence"),
     (r"(?<!\w)\.characteristic_polynomial\b", "--quantity polynomial"),
     (r"Use Dense\(max_size=\d+\), or shorten", "Shorten"),
+    (r"box=\{'(\w+)': \(low, high\)\}", r"--axes \1=LOW:HIGH"),
     (r"see the attribute of the form", "--quantity prints it"),
 )
 

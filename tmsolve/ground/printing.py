@@ -9,7 +9,7 @@ if TYPE_CHECKING:
     from .components import Component
     from .states import GroundState
 
-__all__ = ["number_text", "report", "value_text"]
+__all__ = ["number_text", "report", "results", "value_text"]
 
 _SHOWN = 12
 
@@ -43,8 +43,12 @@ def value_text(value: Fraction) -> str:
 def report(state: GroundState) -> str:
     """Return everything about a ground state as lines of text."""
     values = ", ".join(f"{name} = {number_text(value)}" for name, value in state.parameters.items())
+    return f"ground states of {state.chain.name}" + (f" at {values}" if values else "") + "\n" + results(state)
+
+
+def results(state: GroundState) -> str:
+    """Return what was found, without chain and parameters."""
     lines = [
-        f"ground states of {state.chain.name}" + (f" at {values}" if values else ""),
         f"energy per cell   {value_text(state.energy)}" + ("" if state.exact else "  (inexact)"),
         f"residual entropy  {_entropy(state)}",
         f"excitations       {_gap(state)}",

@@ -17,7 +17,16 @@ if TYPE_CHECKING:
     from .diagram import PhaseDiagram
     from .states import GroundState
 
-__all__ = ["affine_text", "diagram_text", "phase_name", "phase_number", "point_text", "table_rows", "write_csv"]
+__all__ = [
+    "affine_text",
+    "diagram_text",
+    "phase_name",
+    "phase_number",
+    "phases_text",
+    "point_text",
+    "table_rows",
+    "write_csv",
+]
 
 _NAMED = 3
 _COLUMNS = ("kind", "phases", "name", "period", "energy", "entropy", "entropy_text", "corners")
@@ -106,7 +115,13 @@ def diagram_text(diagram: PhaseDiagram) -> str:
         f"{name} from {number_text(low)} to {number_text(high)}"
         for name, (low, high) in zip(diagram.axes, diagram.box, strict=True)
     )
-    lines = [f"ground states of {diagram.chain.name}" + (f" at {fixed}" if fixed else ""), f"over {where}", ""]
+    head = f"ground states of {diagram.chain.name}" + (f" at {fixed}" if fixed else "")
+    return f"{head}\nover {where}\n\n{phases_text(diagram)}"
+
+
+def phases_text(diagram: PhaseDiagram) -> str:
+    """Return what was found, without chain, parameters and ranges."""
+    lines = []
     kinds = " ".join(diagram.chain.cell)
     lines.append(f"{len(diagram.phases)} phase{'s' * (len(diagram.phases) != 1)}, cells as ({kinds}):")
     for row in diagram.table():

@@ -5,5 +5,6 @@ from .files import check_figure_path, save_figure
 from .gaps import plot_gaps
 from .lines import plot_lines
 from .maps import plot_map
+from .phases import plot_phases
 
-__all__ = ["check_figure_path", "plot_events", "plot_gaps", "plot_lines", "plot_map", "save_figure"]
+__all__ = ["check_figure_path", "plot_events", "plot_gaps", "plot_lines", "plot_map", "plot_phases", "save_figure"]
