@@ -38,7 +38,8 @@ class CommunicatingClass:
         if not part.numbers.exact_exponent:
             lowest = np.where(edges[..., None], self.log, 0.0).min(axis=(0, 1))
             self.trusted &= lowest > np.log(part.numbers.tiny)
-        self.log_root = self.gauge.offset + part.numbers.log1p(self.pair.excess)
+        with np.errstate(all="ignore"):  # points that did not converge are solved again
+            self.log_root = self.gauge.offset + part.numbers.log1p(self.pair.excess)
         self.log_eigenvalue = self.log_root - part.beta * self.gauge.energy
 
     def error(self, tied: bool) -> np.ndarray:

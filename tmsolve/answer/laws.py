@@ -80,6 +80,8 @@ def _solve_part(
         local = np.flatnonzero(best == number)
         chosen = found[number]
         good = chosen.settled(part, confirm)[local] if part.window.shape[0] <= _CLIMB_LIMIT else chosen.trusted[local]
+        # Which class is the largest is known only where all of them are.
+        good &= np.all([other.pair.converged[local] for other in found], axis=0)
         if len(chosen.states) > _CLIMB_LIMIT:
             good = chosen.pair.converged[local] & (chosen.pair.error[local] < _LARGE_TOLERANCE)
         if good.any():
