@@ -19,7 +19,7 @@ import numpy as np
 
 from ..operators.numbers import Numbers
 from .components import communicating_classes
-from .perron import PerronPair, Search, make_pair, perron_pair, search
+from .perron import TOLERANCE, PerronPair, Search, make_pair, perron_pair, search
 from .reduction import heavy_first, reduce_states
 
 __all__ = ["critical_period", "periodic_pair"]
@@ -60,8 +60,20 @@ def periodic_pair(log: np.ndarray, numbers: Numbers) -> PerronPair:
     """
     critical = np.asarray(log[..., 0] == 0, dtype=bool)
     steps = critical_period(critical)
-    if steps == 1 or steps > _LONGEST:
-        return perron_pair(log, numbers)
+    plain: PerronPair | None = None
+    try:
+        plain = perron_pair(log, numbers)
+    except ZeroDivisionError:
+        if steps == 1:
+            raise
+    # A single critical cycle is well separated without a power; several are told apart only by it.
+    if plain is not None and (steps == 1 or steps > _LONGEST or (plain.converged[0] and plain.error[0] < TOLERANCE)):
+        return plain
+    power = _power_pair(log, critical, steps, numbers)
+    return power if plain is None or power.error[0] <= plain.error[0] else plain
+
+
+def _power_pair(log: np.ndarray, critical: np.ndarray, steps: int, numbers: Numbers) -> PerronPair:
     weights = numbers.exp(log)
     exact = numbers.array(critical.astype(float))[..., None]
     whole, rest = exact, weights - exact
