@@ -35,6 +35,7 @@ if TYPE_CHECKING:
     from .declare import spins as spins
     from .declare import term as term
     from .declare import weight as weight
+    from .enclose.certify_point import certify as certify
     from .errors import DeclarationError as DeclarationError
     from .errors import MissingExtra as MissingExtra
     from .errors import NotApplicable as NotApplicable
@@ -58,6 +59,7 @@ _HOMES = {
         "Chain", "StateSet", "bond", "clock", "colours", "cos_turns", "delta", "ising", "occupation", "site",
         "spins", "term", "weight",
     ),
+    "enclose.certify_point": ("certify",),
     "errors": (
         "DeclarationError", "MissingExtra", "NotApplicable", "ParameterError", "SolveError", "TmsolveError",
         "TooLargeError",

@@ -1,0 +1,1 @@
+"""Rigorous enclosures: intervals that provably contain the free energy and the spectrum of a chain."""
