@@ -132,10 +132,13 @@ def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, 
         found = _solve_long(part.window, point, index, solver, FIRST_BITS, TOLERANCE)
         if found is not None:
             return found
+    if size > _CLIMB_LIMIT:
+        means = f"with doubles, and matrices of more than {_CLIMB_LIMIT} states are not solved with longer numbers; raise"
+    else:
+        means = f"with numbers of {solver.bits} bits; raise Dense(bits=…),"
     raise SolveError(
-        f"the largest eigenvalue could not be separated at {point.pick(int(index))} "
-        f"with {'doubles' if size > _CLIMB_LIMIT else f'numbers of {solver.bits} bits'}; "
-        "raise Dense(bits=…), the temperature, or lift a near tie between ground states"
+        f"the largest eigenvalue could not be separated at {point.pick(int(index))} {means} "
+        "the temperature, or lift a near tie between ground states"
     )
 
 

@@ -235,5 +235,8 @@ def _solve_lapack(diagonal: np.ndarray, rates: np.ndarray, right: np.ndarray) ->
     for i in range(right.shape[-1]):
         matrix = -rates[..., i]
         matrix[np.arange(n), np.arange(n)] = diagonal[:, i]
-        y[:, i] = np.abs(np.linalg.solve(matrix, right[:, i]))
+        try:
+            y[:, i] = np.abs(np.linalg.solve(matrix, right[:, i]))
+        except np.linalg.LinAlgError:  # singular to rounding: no step from here
+            y[:, i] = np.nan
     return y
