@@ -2,18 +2,20 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from collections.abc import Callable, Mapping, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from ..observe.solution import Solution
 from .line import Line
 
-__all__ = ["Curve", "Level", "guards", "level_curve", "maximum_curve", "table"]
+__all__ = ["LEAST_STEP", "Curve", "Level", "guards", "level_curve", "maximum_curve", "speed", "table"]
 
 Function = Callable[[Solution], np.ndarray]
 _ROUNDING = 2.0**-49
+#: Steps of a first derivative of f that are smaller than this part of its size are not looked into.
+LEAST_STEP = 1e-9
 #: A value, or one that depends on the parameter of the line.
 Level = float | Callable[[np.ndarray], np.ndarray]
 
@@ -27,6 +29,8 @@ class Curve:
     name : str
     value, slope : callable
         Functions of a batched `Solution`, shape (points,).
+    quantity : str
+        What the value is the mean or the derivative of.
     height : callable
         What is reported as the height of an event.
     falling : bool
@@ -39,6 +43,7 @@ class Curve:
     """
 
     name: str
+    quantity: str
     value: Function
     slope: Function
     height: Function
@@ -51,6 +56,7 @@ def maximum_curve(line: Line, quantity: str) -> Curve:
     """Return the derivative of a quantity along the line: its falling roots are maxima."""
     along = line.along
     return Curve(
+        quantity,
         quantity,
         lambda solution: solution.derivative(along, of=quantity),
         lambda solution: solution.derivative(along, along, of=quantity),
@@ -85,26 +91,40 @@ def level_curve(line: Line, observable: str, level: Level = 0.0, size: float = 0
     def heights(solution: Solution) -> np.ndarray:
         return solution.mean(observable)
 
-    return Curve(observable, values, slopes, heights, floor=_ROUNDING * size, local=False)
+    return Curve(observable, f"mean({observable})", values, slopes, heights, floor=_ROUNDING * size, local=False)
 
 
-def guards(line: Line, observables: Sequence[str]) -> list[Curve]:
+def speed(line: Line, curve: Curve, solution: Solution, name: str) -> float:
+    """Return dx/dp of a root of a curve at the point of a solution."""
+    along = (line.along,) if curve.falling else ()
+    change = solution.derivative(*along, name, of=curve.quantity)
+    return float(np.ravel(change)[0] / np.ravel(curve.slope(solution))[0])
+
+
+def guards(line: Line, sizes: Mapping[str, float]) -> list[Curve]:
     """Return curves that are no events but betray one that hides between two points.
 
     A narrow maximum of a second derivative of f is a step of a first one, which is seen
     from afar.
+
+    Parameters
+    ----------
+    sizes : mapping of str to float
+        Largest modulus by observable; steps far smaller than it are let pass.
     """
     along = line.along
     found = [
         Curve(
             "slope of f",
+            "free_energy",
             lambda solution: solution.derivative(along),
             lambda solution: solution.derivative(along, along),
             lambda solution: solution.free_energy,
             local=False,
         )
     ]
-    return found + [level_curve(line, name) for name in observables]
+    means = (replace(level_curve(line, name), floor=LEAST_STEP * size) for name, size in sizes.items())
+    return [*found, *means]
 
 
 def table(curves: Sequence[Curve]) -> Function:

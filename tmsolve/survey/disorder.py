@@ -6,10 +6,12 @@ from collections.abc import Callable, Sequence
 
 import numpy as np
 
+from ..answer.solve import solve
 from ..observe.solution import Solution
 from .event import Event
 from .line import ISOLATED, Line
 from .merging import Leading, discriminant, leading, spectra
+from .rounding import shift_by_rounding
 
 __all__ = ["disorder_points"]
 
@@ -107,7 +109,7 @@ def _closest(line: Line, x: np.ndarray, mode: Leading) -> np.ndarray:
     continued from both sides; only where these meet below zero there can be roots.
     """
     size, place = np.abs(mode.split), line.place(x)
-    extra = [np.empty(0)]
+    chosen = set(_exchanges(mode))
     for i in range(1, x.size - 2):
         around = size[i - 1 : i + 3]
         if (mode.split[i - 1 : i + 3] < 0).sum() not in (0, 4) or not np.isfinite(around).all():
@@ -119,8 +121,16 @@ def _closest(line: Line, x: np.ndarray, mode: Leading) -> np.ndarray:
             continue
         meeting = (around[1] - around[2] + rise * length) / (rise - fall)
         if 0 < meeting < length and around[1] + fall * meeting <= 0:
-            extra.append(line.value(np.linspace(place[i], place[i + 1], _ZOOM_POINTS + 2)[1:-1]))
-    return np.concatenate(extra)
+            chosen.add(i)
+    extra = [np.linspace(place[i], place[i + 1], _ZOOM_POINTS + 2)[1:-1] for i in sorted(chosen)]
+    return line.value(np.concatenate(extra)) if extra else np.empty(0)
+
+
+def _exchanges(mode: Leading) -> list[int]:
+    """Return intervals over which another mode has become the slowest: more may have happened there."""
+    value = mode.value
+    jump = np.abs(np.diff(value)) > 0.5 * np.maximum(np.abs(value[1:]), np.abs(value[:-1]))
+    return np.flatnonzero(jump & (mode.oscillates[1:] == mode.oscillates[:-1])).tolist()
 
 
 def _explains(line: Line, channel: Channel, event: Event, ends: np.ndarray, oscillates_below: bool) -> bool:
@@ -173,6 +183,16 @@ def _merging(line: Line, low: float, high: float, centre: float, oscillates_belo
     if root is None:
         return None
     location, error, slope = root
+
+    def speed(solution: Solution, name: str) -> float:
+        point = solution.point
+        there = float(point.number(name))
+        step = 1e-5 * max(abs(there), 1e-3 * abs(location))
+        moved = [spectra(solve(point.replace(**{name: there + side * step}))) for side in (-1, 1)]
+        low, high = (discriminant(values, centre, size)[1][0] for values in moved)
+        return float((high - low) / (2 * step * slope))
+
+    error += shift_by_rounding(line, location, speed)
     mean = float(mean_and_split(np.array([location]))[0][0])
     side = ("below", "above")[not oscillates_below]
     kind = "monotonic" if mean > 0 else "alternating"

@@ -4,19 +4,23 @@ from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
+from fractions import Fraction
 from typing import Any
 
 import numpy as np
 
 from ..declare import Chain
+from ..declare.values import parse_value
 from ..errors import NotApplicable, ParameterError, SolveError, did_you_mean, listing
 from ..observe.quantities import DIFFERENTIABLE, parse_quantity
-from .curves import Curve, guards, level_curve, maximum_curve, table
+from ..observe.solution import Solution
+from .curves import Curve, guards, level_curve, maximum_curve, speed, table
 from .disorder import disorder_points
 from .event import Event
 from .levels import HalfWay, half_way
 from .line import Line, make_line
 from .roots import Root, polish, settle
+from .rounding import shift_by_rounding
 from .sampling import Samples, sample
 
 __all__ = ["crossovers"]
@@ -75,7 +79,10 @@ def crossovers(
     -----
     Where the derivative of a quantity is zero or rounding there is no event, and neither is
     there at a jump (two classes of states that exchange their rank). Maxima that are narrower
-    than the distance of the points are found through the step they make in ∂f/∂x.
+    than the distance of the points are found through the step they make in ∂f/∂x; those
+    narrower than neighbouring doubles are apart have no height that could be given, and only
+    their half-way points are reported. Disorder points of modes that decay by more than a
+    factor of 10⁴ per cell are not looked for.
 
     Examples
     --------
@@ -89,8 +96,9 @@ def crossovers(
     if isinstance(points, bool) or not isinstance(points, int) or points < 5:
         raise ParameterError(f"points is a whole number >= 5, got {points!r}")
     wanted = _wanted(line, watch)
-    levels = _levels(line, wanted, level)
-    events = _from_curves(line, [name for name in wanted if name != _DISORDER], levels, points)
+    ranges = {name: middle for name in chain.observables if (middle := half_way(line, name)) is not None}
+    levels = _levels(line, wanted, level, ranges)
+    events = _from_curves(line, [name for name in wanted if name != _DISORDER], levels, ranges, points)
     if _DISORDER in wanted:
         events += disorder_points(line, tuple(chain.observables), points)
     found = tuple(sorted(events, key=lambda event: event.location))
@@ -133,7 +141,7 @@ def _wanted(line: Line, watch: str | Sequence[str] | None) -> list[str]:
     return list(dict.fromkeys(wanted))
 
 
-def _levels(line: Line, wanted: Sequence[str], level: Any) -> dict[str, HalfWay]:
+def _levels(line: Line, wanted: Sequence[str], level: Any, ranges: Mapping[str, HalfWay]) -> dict[str, HalfWay]:
     """Return levels by observable, for those whose half-way points are wanted."""
     observables = [name[5:-1] for name in wanted if name.startswith("mean(")]
     given = level if isinstance(level, Mapping) else dict.fromkeys(observables, level)
@@ -141,23 +149,27 @@ def _levels(line: Line, wanted: Sequence[str], level: Any) -> dict[str, HalfWay]
         line.chain.observable(name)
     found = {}
     for name in observables:
-        middle = half_way(line, name)
-        if middle is not None:
-            chosen = given.get(name)
+        chosen = given.get(name)
+        if name in ranges:
+            middle = ranges[name]
             found[name] = middle if chosen is None else replace(middle, level=_level(name, chosen))
     return found
 
 
 def _level(name: str, value: Any) -> float:
-    if isinstance(value, (bool, str)) or not hasattr(value, "__float__"):
-        raise ParameterError(f"the level of {name!r} must be a number, got {value!r}")
-    number = float(value)
-    if not np.isfinite(number):
-        raise ParameterError(f"the level of {name!r} must be finite, got {number!r}")
-    return number
+    number = parse_value(f"level of {name}", value)
+    if not isinstance(number, Fraction):
+        raise ParameterError(f"the level of {name!r} must be a single finite number, got {value!r}")
+    return float(number)
 
 
-def _from_curves(line: Line, wanted: Sequence[str], levels: Mapping[str, HalfWay], points: int) -> list[Event]:
+def _from_curves(
+    line: Line,
+    wanted: Sequence[str],
+    levels: Mapping[str, HalfWay],
+    ranges: Mapping[str, HalfWay],
+    points: int,
+) -> list[Event]:
     curves = []
     for name in wanted:
         if not name.startswith("mean("):
@@ -167,7 +179,7 @@ def _from_curves(line: Line, wanted: Sequence[str], levels: Mapping[str, HalfWay
             curves.append(level_curve(line, name[5:-1], middle.level, middle.size))
     if not curves:
         return []
-    samples = sample(line, curves, guards(line, tuple(line.chain.observables)), points)
+    samples = sample(line, curves, guards(line, {name: middle.size for name, middle in ranges.items()}), points)
     events = []
     for number, curve in enumerate(curves):
         for root in _roots(line, curve, samples, number):
@@ -186,9 +198,10 @@ def _roots(line: Line, curve: Curve, samples: Samples, number: int) -> list[Root
     falling = samples.value[number, left] > 0
     low, high = samples.x[left], samples.x[right]
     x = polish(function, low, high, falling, line.step(high))
-    found = settle(function, x, line.step(x))
-    size = np.minimum(np.abs(samples.value[number, left]), np.abs(samples.value[number, right]))
-    return [root for root, s in zip(found, size, strict=True) if root is not None and s > 4 * root.noise]
+    beside = np.abs(samples.value[number, [left, right]])
+    found = settle(function, x, line.step(x), beside.max(axis=0))
+    sure = zip(found, beside.max(axis=0), strict=True)
+    return [root for root, size in sure if root is not None and size > 4 * root.noise]
 
 
 def _pointwise(line: Line, curve: Curve) -> Callable[[np.ndarray], tuple[np.ndarray, np.ndarray]]:
@@ -203,12 +216,26 @@ def _pointwise(line: Line, curve: Curve) -> Callable[[np.ndarray], tuple[np.ndar
 
 
 def _event(line: Line, curve: Curve, root: Root, levels: Mapping[str, HalfWay]) -> Event | None:
-    height = float(curve.height(line.solve(np.array([root.location])))[0])
-    if not curve.falling:
-        reach = levels[curve.name].reach
-        kind = f"half-way of {curve.name}"
-        return Event(kind, line.along, root.location, root.error, height, reach / abs(root.slope))
-    if root.slope >= 0:
+    if curve.falling and (root.slope >= 0 or root.steep):
         return None
-    width = float(np.sqrt(abs(height / root.slope)))
-    return Event(f"maximum of {curve.name}", line.along, root.location, root.error, height, width)
+    height = float(curve.height(line.solve(np.array([root.location])))[0])
+    error = root.error + shift_by_rounding(line, root.location, _speed(line, curve, root))
+    place = line.along, root.location, error, height
+    if curve.falling:
+        return Event(f"maximum of {curve.name}", *place, float(np.sqrt(abs(height / root.slope))))
+    note = "narrower than neighbouring numbers are apart; the width is a bound" if root.steep else ""
+    width = levels[curve.name].reach / abs(root.slope)
+    return Event(f"half-way of {curve.name}", *place, width, note)
+
+
+def _speed(line: Line, curve: Curve, root: Root) -> Callable[[Solution, str], float]:
+    """Return the function that gives dx/dp of a root."""
+    if not root.steep:
+        return lambda solution, name: speed(line, curve, solution, name)
+    sides = line.solve(np.array([root.location, root.location + root.error]))
+
+    def of_step(_: Solution, name: str) -> float:
+        # A step is where two branches of f cross.
+        return float(np.diff(sides.derivative(name))[0] / np.diff(sides.derivative(line.along))[0])
+
+    return of_step

@@ -27,12 +27,15 @@ class Root:
         Derivative there.
     noise : float
         Scatter of the function around the root.
+    steep : bool
+        Whether the function changes sign within a few neighbouring doubles.
     """
 
     location: float
     error: float
     slope: float
     noise: float
+    steep: bool = False
 
 
 def polish(function: Function, low: np.ndarray, high: np.ndarray, falling: np.ndarray, scale: np.ndarray) -> np.ndarray:
@@ -83,36 +86,64 @@ def polish(function: Function, low: np.ndarray, high: np.ndarray, falling: np.nd
     return x
 
 
-def settle(function: Function, x: np.ndarray, scale: np.ndarray) -> list[Root | None]:
+def settle(function: Function, x: np.ndarray, scale: np.ndarray, size: np.ndarray) -> list[Root | None]:
     """Return roots with error bounds, or None where there is no root after all.
 
     The function is taken at nine points so close together that it differs only by its
     rounding; every one of them gives an estimate of the root, and their scatter the error.
-    A jump through zero, or a function that is nothing but rounding, gives None.
+    A function that is nothing but rounding gives None, and so does a jump through zero that
+    cannot be solved on both sides.
 
     Parameters
     ----------
+    x : ndarray, shape (roots,)
+        From `polish`.
     scale : ndarray
         Sizes that roundings of x are relative to.
+    size : ndarray
+        Size of the function beside the root.
     """
     if not x.size:
         return []
-    offsets = np.arange(-4, 5)[:, None] * (scale * _SHAKE)
-    places = x + offsets
+    slope = np.abs(function(x)[1])
+    with np.errstate(all="ignore"):
+        # Where the function is very steep its own width sets the distance.
+        step = np.fmax(np.fmin(scale * _SHAKE, 0.02 * size / slope), np.spacing(np.abs(x)))
+    places = x + np.arange(-4, 5)[:, None] * step
     value, slope = (part.reshape(places.shape) for part in function(places.ravel()))
     with np.errstate(all="ignore"):
         estimates = places - value / slope
     found: list[Root | None] = []
     for i in range(x.size):
-        if not np.isfinite(estimates[:, i]).all():
-            found.append(None)
-            continue
-        mean = estimates[:, i].mean()
-        spread = np.abs(estimates[:, i] - mean).max()
-        if spread > 1e-4 * scale[i] or abs(mean - x[i]) > 1e-4 * scale[i]:
-            found.append(None)
-            continue
-        middle = float(slope[:, i].mean())
-        error = 2 * float(spread) + 4 * _EPSILON * abs(float(mean))
-        found.append(Root(float(mean), error, middle, float(spread) * abs(middle)))
+        root = _smooth(estimates[:, i], slope[:, i], x[i], scale[i])
+        found.append(root or _step(function, places[:, i], value[:, i], size[i]))
     return found
+
+
+def _smooth(estimates: np.ndarray, slope: np.ndarray, x: float, scale: float) -> Root | None:
+    if not np.isfinite(estimates).all():
+        return None
+    mean = float(estimates.mean())
+    spread = float(np.abs(estimates - mean).max())
+    if spread > 1e-4 * scale or abs(mean - x) > 1e-4 * scale:
+        return None
+    middle = float(slope.mean())
+    return Root(mean, 2 * spread + 4 * _EPSILON * abs(mean), middle, spread * abs(middle))
+
+
+def _step(function: Function, places: np.ndarray, value: np.ndarray, size: float) -> Root | None:
+    """Return the place of a change of sign that is steeper than neighbouring doubles resolve."""
+    if not (np.abs(value) > 0.1 * size).all() or (np.diff(np.sign(value)) != 0).sum() != 1:
+        return None
+    k = int(np.flatnonzero(np.diff(np.sign(value)))[0])
+    (low, high), (before, after) = places[k : k + 2], value[k : k + 2]
+    while (middle := (low + high) / 2) not in (low, high):
+        there = float(function(np.array([middle]))[0][0])
+        if not abs(there) > 0.1 * size:
+            return None
+        if (there > 0) == (before > 0):
+            low, before = middle, there
+        else:
+            high, after = middle, there
+    width = float(high - low)
+    return Root(float(low), width, float(after - before) / width, 0.0, steep=True)

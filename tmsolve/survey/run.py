@@ -24,7 +24,7 @@ from .tasks import Task, results
 
 __all__ = ["ScanInterrupted", "scan"]
 
-_BLOCK = 8192
+_SMALLEST_BLOCK, _LARGEST_BLOCK = 1024, 8192
 
 
 class ScanInterrupted(KeyboardInterrupt):
@@ -173,7 +173,7 @@ class _Collected:
 
 def _finished(plan: Plan, collected: _Collected, kept: Store | None, executor: Executor | None) -> Iterator[int]:
     """Compute what the store does not hold; yield the number of points done after every block."""
-    block = int(np.clip(plan.size // 16, 1024, _BLOCK))
+    block = min(max(plan.size // 16, _SMALLEST_BLOCK), _LARGEST_BLOCK)
     starts = range(0, plan.size, block)
     base = [] if kept is None else [_reading_key(plan, i) for i in range(len(plan.readings))]
     tasks: list[Task] = []

@@ -14,16 +14,19 @@ from itertools import pairwise
 
 import numpy as np
 
-from .curves import Curve, table
+from .curves import LEAST_STEP, Curve, table
 from .line import ISOLATED, Line
+from .pieces import Pieces
 
 __all__ = ["Samples", "sample"]
 
 _MOST_POINTS = 4000
-_NARROWEST = 1e-10
+_NARROWEST = 4e-15
 #: Relative displacements that leave a smooth function alone and shake its rounding.
 _SHAKES = (2.0**-45, -(2.0**-44.3))
 _SURE = 4.0
+#: So many halvings without gain show that an error is rounding.
+_STALE = 3
 
 
 @dataclass(frozen=True, eq=False)
@@ -67,17 +70,30 @@ def sample(line: Line, curves: Sequence[Curve], watching: Sequence[Curve], point
     """
     everything = [*curves, *watching]
     nodes = _first(line, everything, points)
-    active = [(i, i + 1) for i in range(nodes.x.size - 1)]
+    seen = np.nan_to_num(np.abs(nodes.value[len(curves) :])).max(axis=1, initial=0.0)
+    nodes.noise[len(curves) :] = np.maximum(nodes.noise[len(curves) :], LEAST_STEP * seen[:, None])
     whole = float(line.place(line.high) - line.place(line.low))
-    while active and nodes.x.size < _MOST_POINTS:
-        left, right = np.array(active).T
+    left = np.arange(points - 1)
+    right = left + 1
+    before, stale = np.full((len(curves), left.size), np.inf), np.zeros((len(curves), left.size))
+    while left.size and nodes.x.size < _MOST_POINTS:
         start, stop = line.place(nodes.x[left]), line.place(nodes.x[right])
-        first = nodes.x.size
+        middle = nodes.x.size + np.arange(left.size)
         nodes = _extended(line, everything, nodes, line.value((start + stop) / 2), left, right)
-        middle = np.arange(first, nodes.x.size)
-        wide = stop - start > _NARROWEST * whole
-        again = wide & ~_settled(line, nodes, (left, middle, right), stop - start, len(curves))
-        active = [pair for i in np.flatnonzero(again) for pair in ((left[i], middle[i]), (middle[i], right[i]))]
+        pieces = _pieces(line, nodes, (left, middle, right), stop - start)
+        error = pieces.error[: len(curves)]
+        stale = np.where(error > 0.5 * before, stale + 1, 0)
+        # Halving leaves the error of rounding as it is. (Steps do that too; the watched curves find them.)
+        good = np.concatenate([pieces.clear[: len(curves)] | (stale >= _STALE), pieces.smooth[len(curves) :]])
+        narrow = stop - start < 0.1 * ISOLATED * whole
+        # Points that cannot be solved are closed in upon, since they may be few.
+        done = np.where(pieces.incomplete, pieces.empty | narrow, good.all(axis=0))
+        again = ~done & (stop - start > _NARROWEST * whole)
+        left, right = (
+            np.concatenate([left[again], middle[again]]),
+            np.concatenate([middle[again], right[again]]),
+        )
+        before, stale = (np.tile(array[:, again], 2) for array in (error, stale))
     order = np.argsort(nodes.x, kind="stable")
     order = order[np.isfinite(nodes.value[:, order]).all(axis=0)]
     kept = [array[: len(curves), order] for array in (nodes.value, nodes.slope, nodes.noise, nodes.slope_noise)]
@@ -123,77 +139,14 @@ def _extended(
     )
 
 
-def _settled(
-    line: Line, nodes: Samples, where: tuple[np.ndarray, np.ndarray, np.ndarray], length: np.ndarray, targets: int
-) -> np.ndarray:
-    """Return which intervals need no further point.
-
-    Points that cannot be solved are closed in upon, since they may be few.
-    """
-    narrow = length < 0.1 * ISOLATED * (line.place(line.high) - line.place(line.low))
-    value = [nodes.value[:, i] for i in where]
-    slope = [nodes.slope[:, i] * line.rate(nodes.x[i]) for i in where]
-    noise = np.max([nodes.noise[:, i] for i in where], axis=0)
-    doubt = np.max([nodes.slope_noise[:, i] * line.rate(nodes.x[i]) for i in where], axis=0)
-    missing = [~np.isfinite(v).all(axis=0) for v in value]
-    with np.errstate(all="ignore"):
-        error = np.abs((value[0] + value[2]) / 2 + length / 8 * (slope[0] - slope[2]) - value[1])
-        error = np.maximum(error - length / 4 * doubt, 0)
-        log_step, log_error = _logarithmic(value, slope, length, noise)
-        smooth = _smooth(value, error, noise, log_step, log_error)
-        clear = _clear(value, slope, length, error, noise, log_step, log_error)
-    good = np.concatenate([clear[:targets], smooth[targets:]])
-    lost = np.where(np.any(missing, axis=0), np.all(missing, axis=0) | narrow, good.all(axis=0))
-    return np.asarray(lost)
-
-
-def _logarithmic(
-    value: list[np.ndarray], slope: list[np.ndarray], length: np.ndarray, noise: np.ndarray
-) -> tuple[np.ndarray, np.ndarray]:
-    """Return by how much the logarithm changes, and how wrong its interpolation is (inf if it has none)."""
-    same = (np.sign(value[0]) == np.sign(value[1])) & (np.sign(value[1]) == np.sign(value[2]))
-    same &= np.min(np.abs(value), axis=0) > noise
-    logs = [np.log(np.abs(v)) for v in value]
-    guess = (logs[0] + logs[2]) / 2 + length / 8 * (slope[0] / value[0] - slope[2] / value[2])
-    return np.abs(logs[2] - logs[0]), np.where(same, np.abs(guess - logs[1]), np.inf)
-
-
-def _smooth(
-    value: list[np.ndarray], error: np.ndarray, noise: np.ndarray, log_step: np.ndarray, log_error: np.ndarray
-) -> np.ndarray:
-    change = np.maximum(np.abs(value[1] - value[0]), np.abs(value[2] - value[1]))
-    return (error <= 0.03 * change + noise) | ((log_step > 1) & (log_error < 0.02 + 0.02 * log_step))
-
-
-def _clear(
-    value: list[np.ndarray],
-    slope: list[np.ndarray],
-    length: np.ndarray,
-    error: np.ndarray,
-    noise: np.ndarray,
-    log_step: np.ndarray,
-    log_error: np.ndarray,
-) -> np.ndarray:
-    """Return where a curve has no root, or one root and no room for another."""
-    curve = np.concatenate([_hermite(value[i : i + 2], slope[i : i + 2], length / 2) for i in (0, 1)])
-    sign = np.where(np.abs(curve) <= noise, 0.0, np.sign(curve))
-    positive, negative = (sign > 0).any(axis=0), (sign < 0).any(axis=0)
-    lowest = np.abs(curve).min(axis=0)
-    none = ~(positive & negative) & (error <= 0.5 * lowest + noise)
-    # One root: the signs, zeros left out, change once.
-    filled = sign.copy()
-    for k in range(1, len(filled)):
-        filled[k] = np.where(filled[k] == 0, filled[k - 1], filled[k])
-    changes = (filled[1:] * filled[:-1] < 0).sum(axis=0)
-    one = (changes == 1) & (error <= 0.1 * np.abs(curve).max(axis=0) + noise)
-    return none | one | (log_error < 0.3 + 0.1 * log_step)
-
-
-def _hermite(value: list[np.ndarray], slope: list[np.ndarray], length: np.ndarray) -> np.ndarray:
-    u = np.linspace(0, 1, 9)[:, None, None]
-    a, b = value
-    return (
-        a * (1 + 2 * u) * (1 - u) ** 2
-        + b * u**2 * (3 - 2 * u)
-        + length * u * (1 - u) * (slope[0] * (1 - u) - slope[1] * u)
+def _pieces(line: Line, nodes: Samples, where: tuple[np.ndarray, np.ndarray, np.ndarray], length: np.ndarray) -> Pieces:
+    """Return what is known at the ends and the middle of intervals, with slopes by the even coordinate."""
+    rates = [line.rate(nodes.x[i]) for i in where]
+    doubt = [nodes.slope_noise[:, i] * rate for i, rate in zip(where, rates, strict=True)]
+    return Pieces(
+        np.array([nodes.value[:, i] for i in where]),
+        np.array([nodes.slope[:, i] * rate for i, rate in zip(where, rates, strict=True)]),
+        length,
+        np.max([nodes.noise[:, i] for i in where], axis=0),
+        np.max(doubt, axis=0),
     )
