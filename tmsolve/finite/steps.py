@@ -1,10 +1,11 @@
-"""The windows of a chain of N cells: those at the ends lose sites and terms."""
+"""The windows of a chain of N cells: those at the ends lose sites and terms, impurities change others."""
 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 from fractions import Fraction
+from functools import cached_property
 from numbers import Real
 from typing import Any
 
@@ -14,8 +15,9 @@ from ..assemble.window import ChainWindow, SiteWeights, untouched
 from ..declare import Chain
 from ..errors import DeclarationError, ParameterError, listing
 from ..operators.window import Factor
+from .impurities import Impurities, Planted
 
-__all__ = ["Ends", "OpenWindows", "end_weights"]
+__all__ = ["Ends", "Windows", "check_cells", "end_weights"]
 
 #: Weights of the states of one site, by kind of site.
 Ends = Mapping[str, tuple[Any, ...]]
@@ -69,8 +71,8 @@ def _weight(weight: Any, side: str) -> Fraction:
 
 
 @dataclass(frozen=True, eq=False)
-class OpenWindows:
-    """The windows of an open chain, in order; the bulk is one window, many times.
+class Windows:
+    """The windows of a ring or an open chain, in order; most of them are one window, many times.
 
     Attributes
     ----------
@@ -78,44 +80,72 @@ class OpenWindows:
         The window of the infinite chain.
     cells : int
         Length N.
+    closed : bool
+        Whether the chain is a ring.
     left, right : mapping
         Weights of the end sites, by kind.
+    impurities : mapping
+        Cells that differ.
     """
 
     window: ChainWindow
     cells: int
+    closed: bool
     left: Ends
     right: Ends
+    impurities: Impurities
+    _known: dict[int, ChainWindow] = field(default_factory=dict, repr=False)
 
     @property
     def positions(self) -> range:
         """Positions of all windows: the window at w adds the sites (k, l_k + w)."""
+        if self.closed:
+            return range(self.cells)
         thresholds = self.window.cut.thresholds.values()
         return range(-max(thresholds), self.cells - min(thresholds))
 
-    @property
-    def bulk(self) -> range:
-        """Positions at which the window is that of the infinite chain."""
+    @cached_property
+    def special(self) -> frozenset[int]:
+        """Positions at which the window is not that of the infinite chain: at the ends and at impurities."""
+        inside = {cell for _, cell in (*self.window.left, *self.window.right, *self.window.interior)}
+        near = {impurity - cell for impurity in self.impurities for cell in inside}
+        if self.closed:
+            return frozenset(position % self.cells for position in near)
+        bulk = self._between_ends(inside)
+        outside = (*range(self.positions.start, bulk.start), *range(bulk.stop, self.positions.stop))
+        return frozenset((*outside, *(p for p in near if p in bulk)))
+
+    def _between_ends(self, inside: set[int]) -> range:
         thresholds = self.window.cut.thresholds.values()
-        inside = [cell for _, cell in (*self.window.left, *self.window.right, *self.window.interior)]
         first = max(-min(inside), 1 - min(thresholds) if self.left else -min(inside))
         last = self.cells - 1 - max(inside) - (1 if self.right else 0)
+        first = min(first, self.positions.stop)
         return range(first, max(first, last + 1))
 
     def at(self, position: int) -> ChainWindow:
         """Return the window at a position, without the sites and terms beyond the ends."""
-        if position in self.bulk:
+        if position not in self.special:
             return self.window
+        if position not in self._known:
+            self._known[position] = self._build(position)
+        return self._known[position]
+
+    def _build(self, position: int) -> ChainWindow:
+        planted = Planted(self.window, lambda cell: self._cell(cell + position), self.impurities)
+        window = planted.build() if self.impurities else self.window
 
         def keep(sites: tuple[Any, ...]) -> tuple[Any, ...]:
-            return tuple(s for s in sites if 0 <= s[1] + position < self.cells)
+            return tuple(s for s in sites if self.closed or 0 <= s[1] + position < self.cells)
 
-        left, right, interior = (keep(s) for s in (self.window.left, self.window.right, self.window.interior))
-        factors = [f for f in self.window.factors if len(keep(f.sites)) == len(f.sites)]
-        factors += self._ends(position)
-        sizes = {kind: len(states) for kind, states in self.window.chain.cell.items()}
-        factors += untouched(factors, (*left, *right, *interior), sizes)
-        return replace(self.window, left=left, right=right, interior=interior, factors=tuple(factors))
+        left, right, interior = (keep(s) for s in (window.left, window.right, window.interior))
+        factors = [f for f in window.factors if len(keep(f.sites)) == len(f.sites)]
+        if not self.closed:
+            factors += [Factor(f.source, (planted.site(f.sites[0]),)) for f in self._ends(position)]
+        factors += untouched(factors, (*left, *right, *interior), {k: len(s) for k, s in window.chain.cell.items()})
+        return replace(window, left=left, right=right, interior=interior, factors=tuple(factors))
+
+    def _cell(self, cell: int) -> int:
+        return cell % self.cells if self.closed else cell
 
     def _ends(self, position: int) -> list[Factor]:
         factors = []

@@ -2,9 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterable, Iterator, Mapping
 from dataclasses import dataclass, field
-from functools import reduce
 from typing import Any
 
 import numpy as np
@@ -15,7 +14,7 @@ from ..errors import TooLargeError
 from ..operators.algebras import LogSum, LogTable
 from ..operators.partitions import Key, sub_keys
 from ..operators.product import close, multiply, power
-from .steps import OpenWindows
+from .steps import Windows
 
 __all__ = ["Mark", "Track"]
 
@@ -31,27 +30,21 @@ class Track:
 
     Attributes
     ----------
-    window : ChainWindow
-        Window of the infinite chain, wide enough for the observables asked for.
-    cells : int
-        N.
-    opening : OpenWindows or None
-        Windows at the ends; ``None`` for a ring.
+    windows : Windows
+        The windows in order.
     values : mapping
         Parameters and ``T``, flat.
     batch : int
         Number of points.
     """
 
-    window: ChainWindow
-    cells: int
-    opening: OpenWindows | None
+    windows: Windows
     values: Mapping[str, Any]
     batch: int
     _known: dict[ChainWindow, Assembled] = field(default_factory=dict, repr=False)
 
     def __post_init__(self) -> None:
-        size = max(self.window.shape)
+        size = max(max(self.windows.at(position).shape) for position, _ in self.runs())
         if size > _LARGEST:
             raise TooLargeError(
                 f"finite chains are limited to {_LARGEST} joint states of the cut; this chain has {size}",
@@ -59,25 +52,48 @@ class Track:
             )
 
     @property
-    def positions(self) -> range:
-        """Positions of all windows."""
-        return range(self.cells) if self.opening is None else self.opening.positions
+    def window(self) -> ChainWindow:
+        """Window of the infinite chain."""
+        return self.windows.window
 
     @property
-    def bulk(self) -> range:
-        """Positions at which the window is that of the infinite chain."""
-        return range(self.cells) if self.opening is None else self.opening.bulk
+    def cells(self) -> int:
+        """N."""
+        return self.windows.cells
+
+    @property
+    def closed(self) -> bool:
+        """Whether the chain is a ring."""
+        return self.windows.closed
+
+    @property
+    def starts(self) -> int:
+        """Joint states of the first cut: 1 on an open chain."""
+        return self.windows.at(self.windows.positions.start).shape[0]
+
+    def runs(self, marked: Iterable[int] = ()) -> Iterator[tuple[int, int]]:
+        """Yield (position, count) of runs of equal windows; special and marked ones stand alone."""
+        positions = self.windows.positions
+        here = positions.start
+        for position in sorted({*self.windows.special, *(p for p in marked if p in positions)}):
+            if position > here:
+                yield here, position - here
+            yield position, 1
+            here = position + 1
+        if here < positions.stop:
+            yield here, positions.stop - here
 
     def assembled(self, position: int) -> Assembled:
         """Return tables and matrix of the window at a position."""
-        window = self.window if position in self.bulk or self.opening is None else self.opening.at(position)
+        window = self.windows.at(position)
         if window not in self._known:
             self._known[window] = Assembled(window, self.values, self.batch)
         return self._known[window]
 
     def algebra(self, key: Key = ()) -> LogSum:
         """Return the algebra that keeps the cumulants of ``key``."""
-        return LogSum(self.assembled(self.positions.start).beta, keys=(key,) if key else ())
+        beta = self.assembled(self.windows.positions.start).beta
+        return LogSum(beta, keys=(key,) if key else ())
 
     def step(self, position: int, mark: Mark, key: Key | None = None) -> LogTable:
         """Return the step table at a position, tilted by the quantities of a mark under their new names.
@@ -93,57 +109,51 @@ class Track:
                 tilts[names] = table
         return LogTable(energy, log, tilts)
 
-    @np.errstate(under="ignore")
     def everywhere(self, mark: Mark, key: Key) -> LogTable:
         """Multiply all windows, each tilted by the same quantities, and close the ends."""
-        algebra = self.algebra(key)
-        bulk = self.bulk or range(self.positions.stop, self.positions.stop)
-        parts = [self.step(p, mark, key) for p in range(self.positions.start, bulk.start)]
-        if bulk:
-            parts.append(power(algebra, self.step(bulk.start, mark, key), len(bulk)))
-        parts += [self.step(p, mark, key) for p in range(bulk.stop, self.positions.stop)]
-        return close(algebra, reduce(lambda x, y: multiply(algebra, x, y), parts), self.opening is None)
+        return self._product(((position, count, mark, key) for position, count in self.runs()), key)
 
-    @np.errstate(under="ignore")
     def marked(self, marks: Mapping[int, Mark], key: Key) -> LogTable:
         """Multiply all windows, tilted only at the marked positions, and close the ends."""
+        return self._product(((p, count, marks.get(p, {}), None) for p, count in self.runs(marks)), key)
+
+    @np.errstate(under="ignore")
+    def _product(self, parts: Iterable[tuple[int, int, Mark, Key | None]], key: Key) -> LogTable:
         algebra = self.algebra(key)
         result: LogTable | None = None
-        position = self.positions.start
-        while position < self.positions.stop:
-            count = 1
-            if position in self.bulk and position not in marks:
-                ahead = [p for p in marks if p > position]
-                count = min([self.bulk.stop, *ahead]) - position
-            part = power(algebra, self.step(position, marks.get(position, {})), count)
+        for position, count, mark, names in parts:
+            part = power(algebra, self.step(position, mark, names), count)
             result = part if result is None else multiply(algebra, result, part)
-            position += count
         assert result is not None
-        return close(algebra, result, self.opening is None)
+        return close(algebra, result, self.closed)
 
     @np.errstate(under="ignore")
     def sweep(self, quantity: str, anchor: int) -> dict[int, np.ndarray]:
-        """Return the mean of a quantity's part in every window of an open chain, by position.
+        """Return the mean of a quantity's part in every window, by position.
 
-        One pass forward and one backward along the chain (messages in the log domain).
+        One pass forward and one backward along the chain (messages in the log domain; on a
+        ring they keep the state of the first cut).
         """
         plain, tilted = self.algebra(), self.algebra(("x",))
         name = handle("observable", (), f"{quantity}@{anchor}")
         backward: dict[int, LogTable] = {}
         message: LogTable | None = None
-        for position in reversed(self.positions):
-            step = _summed(plain, self.step(position, {})) if message is None else self.step(position, {})
-            message = step if message is None else multiply(plain, step, message)
+        for position in reversed(self.windows.positions):
+            step = self.step(position, {})
+            if message is None:
+                message = step if self.closed else _summed(plain, step)
+            else:
+                message = multiply(plain, step, message)
             backward[position] = message
         means: dict[int, np.ndarray] = {}
         forward: LogTable | None = None
-        for position in self.positions:
+        for position in self.windows.positions:
             here = self.step(position, {"x": name})
             if here.tilts:
                 whole = here if forward is None else multiply(tilted, forward, here)
                 after = backward.get(position + 1)
                 whole = whole if after is None else multiply(tilted, whole, after)
-                means[position] = close(tilted, whole, False).tilts[("x",)]
+                means[position] = close(tilted, whole, self.closed).tilts[("x",)]
             bare = LogTable(here.energy, here.log)
             forward = bare if forward is None else multiply(plain, forward, bare)
         return means
