@@ -133,7 +133,7 @@ def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, 
         if found is not None:
             return found
     if size > _CLIMB_LIMIT:
-        means = f"with doubles, and matrices of more than {_CLIMB_LIMIT} states are not tried with longer numbers; raise"
+        means = f"with doubles, and matrices of more than {_CLIMB_LIMIT} states get no longer numbers; raise"
     else:
         means = f"with numbers of {solver.bits} bits; raise Dense(bits=…),"
     raise SolveError(
