@@ -78,6 +78,7 @@ BAD = [
     (["-p", "h=1", "--axes", "h=0:1"], 2, ["h varies over the diagram and is given with -p as well"]),
     (["--plot", "a.png"], 2, ["--plot draws a phase diagram", "--axes h=0:4"]),
     (["--out", "a.csv"], 2, [".json"]),
+    (["--axes", "T,h,J", "--plot", "a.png"], 2, ["--axes T"]),
     (["--axis", "h=0:1"], 2, ["no option '--axis'", "Did you mean '--axes'?"]),
 ]
 
@@ -90,11 +91,17 @@ def test_bad_input(tm, words, code, fragments):
         assert fragment in ended.err, ended.err
 
 
+def test_three_axes(tm, tmp_path):
+    words = ["ground", "ising_nnn", "--axes", "J1,J2,h"]
+    ended = tm(*words)
+    assert ended.code == 0 and "phases over J1 from -1 to 1, J2 from -1 to 1, h from -1 to 1" in ended.out
+    drawn = tm(*words, "--plot", tmp_path / "a.png")
+    assert drawn.code == 2 and "--plot draws one or two axes, got 3" in drawn.err
+
+
 def test_no_ground_state(tm, write):
     ended = tm("ground", "helix_coil", "--json")
     assert ended.code == 1 and ended.json["error"]["kind"] == "NotApplicable"
-    three = tm("ground", "spin1_nnn", "--axes", "J2,D,h")
-    assert three.code == 1 and "one or two axes, got 3" in three.err and "-p NAME=VALUE" in three.err
     curved = write(
         '"""Invented chain."""\n'
         "from tmsolve import Chain, bond, spins\n"

@@ -14,7 +14,7 @@ from hypothesis import strategies as st
 from tests.laws.zoo import BY_NAME
 from tests.refusal import refused
 from tmsolve import Chain, NotApplicable, ParameterError, bond, ground_state, ising, models, phase_diagram, site, spins
-from tmsolve.ground.polygons import clip, holds, value_at
+from tmsolve.ground.polytopes import box_polytope, in_order, value_at
 
 SPIN1_NNN = models.load("spin1_nnn").chain.fix(h=0)
 BEG = models.load("blume_emery_griffiths").chain.fix(K3=0)
@@ -159,7 +159,8 @@ def test_energies_that_are_not_affine_are_bisected():
     assert len(diagram.phases) == 2 and not diagram.exact
     ((edge,),) = diagram.boundaries[0].ends
     assert abs(float(edge) - math.sqrt(0.5)) <= 1e-6 and diagram.precision == F("1e-6")
-    assert "bisected to 1e-06" in str(diagram)
+    assert "bisected to 1e-06" in str(diagram) and "entropy unknown" in str(diagram)
+    assert diagram.boundaries[0].entropy is None and diagram.phase_at(J=1) is diagram.phases[1]
     refused(NotApplicable, lambda: phase_diagram(chain, ("J", "g")), "is not affine in J and g", "one axis at a time")
     refused(NotApplicable, lambda: phase_diagram(chain, "J"), "not affine in J", "give box=")
     # In g alone it is affine.
@@ -195,23 +196,104 @@ def test_bad_axes_and_boxes():
     refused(ParameterError, lambda: phase_diagram(chain, ("J1", "h")), "axis 'J1' is fixed at 1", "leave it free")
     refused(ParameterError, lambda: phase_diagram(chain, ("h", "h")), "axis 'h' is given twice")
     refused(ParameterError, lambda: phase_diagram(chain, ("T", "h")), "T is no axis", "scan")
-    refused(ParameterError, lambda: phase_diagram(chain, ()), "needs one or two axes")
+    refused(ParameterError, lambda: phase_diagram(chain, ()), "needs one to five axes")
     refused(ParameterError, lambda: phase_diagram(chain, "h"), "no value for J2", "chain.fix(J2=…)")
     refused(ParameterError, lambda: phase_diagram(chain, ("J2", "h"), {"J2": (0, 1)}), "no range for axis 'h'")
     refused(ParameterError, lambda: phase_diagram(chain, ("J2", "h"), {"J2": (1, 0), "h": (0, 1)}), "low < high")
     refused(ParameterError, lambda: phase_diagram(chain, ("J2", "h"), {"J2": 3, "h": (0, 1)}), "a pair (low, high)")
     refused(ParameterError, lambda: phase_diagram(chain, ("J2", "h"), {"D": (0, 1)}), "box= has 'D'", "J2, h")
-    refused(NotApplicable, lambda: phase_diagram(NNN, ("J1", "J2", "h")), "one or two axes, got 3", "chain.fix(…)")
+    many = Chain(ising(), [site(lambda s, a, b, c, d, e, f: (a + b + c + d + e + f) * s)])
+    refused(NotApplicable, lambda: phase_diagram(many, tuple("abcdef")), "one to five axes, got 6", "chain.fix(…)")
     diagram = phase_diagram(chain, ("J2", "h"))
     refused(ParameterError, lambda: diagram.phase_at(J2=0, D=1), "'D' is no axis", "J2, h")
     refused(ParameterError, lambda: diagram.phase_at(J2=0), "no value for axis h")
     refused(ParameterError, lambda: diagram.phase_at(J2=0, h=10**6), "(0, 1000000) lies outside")
 
 
+def test_bent_energies_that_tie_at_a_fraction_are_exact():
+    """J^2 = 1/9 at J = 1/3, where all three states tie and s = ln 3; also with a point of the search at the tie."""
+    chain = Chain(spins(1), [site(lambda s, J: (J * J - F(1, 9)) * s * s)])
+    diagram = phase_diagram(chain, "J", {"J": (0, 1)})
+    assert diagram.exact and [phase.name for phase in diagram.phases] == ["(-1) | (1) …", "(0)"]
+    (line,) = diagram.boundaries
+    assert line.ends == ((F(1, 3),),) and line.state.entropy_text == "ln(3)"
+    diagram = phase_diagram(chain, "J", {"J": (F(1, 12), F(13, 12))})  # the grid has the point 1/3
+    assert diagram.exact and [line.ends for line in diagram.boundaries] == [((F(1, 3),),)]
+
+
+def test_functions_that_are_not_defined_everywhere():
+    chain = Chain(ising(), [site(lambda s, x: -math.sqrt(x) * s), site(lambda s, h: -h * s)])
+    diagram = phase_diagram(chain.fix(h=-2), "x", {"x": (1, 10)})
+    assert [phase.name for phase in diagram.phases] == ["(-1)", "(1)"]
+    assert float(diagram.boundaries[0].ends[0][0]) == pytest.approx(4, abs=1e-9)
+
+
+@pytest.mark.parametrize(
+    "model, fixed, axes, phases",
+    [
+        ("blume_emery_griffiths", {"K3": 0}, ("J", "K", "D", "h"), 6),
+        ("spin1_nnn", {}, ("J1", "J2", "D", "h"), 27),
+    ],
+)
+def test_fans(model, fixed, axes, phases):
+    """All couplings at once: the cones of the fan that numerics counted as 6 and 27, derived.
+
+    By symmetry of h -> -h phases come alone or in pairs; energies are homogeneous.
+    """
+    diagram = phase_diagram(models.load(model).chain.fix(**fixed), axes)
+    assert len(diagram.phases) == phases and diagram.box == ((-1, 1),) * 4
+    assert all(phase.plane[0] == 0 and (0,) * 4 in phase.corners for phase in diagram.phases)
+    assert sum(volume(phase.corners) for phase in diagram.phases) == pytest.approx(16)
+    rng = random.Random(7)
+    for _ in range(20):
+        point = {axis: Fraction(rng.randint(-99, 99), 100) for axis in axes}
+        found = ground_state(diagram.chain.at(T=0, **point)).energy
+        assert found == value_at(diagram.phase_at(**point).plane, tuple(point.values()))
+    assert any(vertex.point == (0,) * 4 for vertex in diagram.vertices)
+
+
+def test_three_axes_cut_to_two():
+    """A cut through the diagram of three parameters is the diagram of two."""
+    whole = phase_diagram(NNN, ("J1", "J2", "h"), {"J1": (-1, 1), "J2": (-1, 1), "h": (-2, 2)})
+    plane = phase_diagram(NNN.fix(J1=-1), ("J2", "h"), {"J2": (-1, 1), "h": (-2, 2)})
+    cut = {phase.plane for phase in whole.phases if any(corner[0] == -1 for corner in phase.corners)}
+    for phase in plane.phases:
+        assert any((p[0] - p[1], *p[2:]) == phase.plane for p in cut)
+    assert "period" in str(whole)
+
+
+def volume(corners):
+    from scipy.spatial import ConvexHull
+
+    return ConvexHull([[float(x) for x in corner] for corner in corners]).volume
+
+
 def test_clipping():
-    square = [(F(0), F(0)), (F(1), F(0)), (F(1), F(1)), (F(0), F(1))]
-    assert clip(square, (F(1), F(1), F(0))) == [] and clip(square, (F(0), F(1), F(0))) == []
-    assert clip(square, (F(-2), F(1), F(0))) == square
-    assert set(clip(square, (F(-1), F(1), F(1)))) == {(F(0), F(0)), (F(1), F(0)), (F(0), F(1))}
-    assert clip([(F(0),), (F(2),)], (F(-1), F(1))) == [(F(0),), (F(1),)]
-    assert holds(square, (F(1, 2), F(1))) and not holds(square, (F(1, 2), F(9, 8)))
+    square = box_polytope([(F(0), F(1)), (F(0), F(1))])
+    assert square.clip((F(1), F(1), F(0))) is None and square.clip((F(0), F(1), F(0))) is None
+    assert set(square.clip((F(-2), F(1), F(0))).corners) == set(square.corners)
+    triangle = square.clip((F(-1), F(1), F(1)))
+    assert set(triangle.corners) == {(F(0), F(0)), (F(1), F(0)), (F(0), F(1))}
+    assert in_order(triangle.corners) == ((0, 0), (1, 0), (0, 1))
+    assert box_polytope([(F(0), F(2))]).clip((F(-1), F(1))).corners == ((F(0),), (F(1),))
+    # A cube cut through its main diagonal plane x + y + z = 3/2 is halved along a hexagon.
+    cube = box_polytope([(F(0), F(1))] * 3)
+    half = cube.clip((F(-3, 2), F(1), F(1), F(1)))
+    assert volume(half.corners) == pytest.approx(0.5)
+    assert sum(sum(corner) == F(3, 2) for corner in half.corners) == 6
+    # Degenerate: a plane through an edge of the cube.
+    wedge = cube.clip((F(-1), F(1), F(1), F(0)))
+    assert len(wedge.corners) == 6 and volume(wedge.corners) == pytest.approx(0.5)
+
+
+@settings(max_examples=30, deadline=None)
+@given(st.lists(st.tuples(*[st.integers(-3, 3)] * 4), min_size=1, max_size=8))
+def test_clipped_polytopes_have_the_corners_of_their_hull(cuts):
+    polytope = box_polytope([(F(-1), F(1))] * 3)
+    for cut in cuts:
+        clipped = polytope.clip(tuple(map(F, cut)))
+        polytope = clipped if clipped is not None else polytope
+    from scipy.spatial import ConvexHull
+
+    hull = ConvexHull([[float(x) for x in corner] for corner in polytope.corners])
+    assert len(hull.vertices) == len(polytope.corners)

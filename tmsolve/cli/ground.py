@@ -31,8 +31,8 @@ if TYPE_CHECKING:
 OPERANDS = "MODEL [--axes NAME=LOW:HIGH,…]"
 DESCRIPTION = """\
 Ground states at T = 0 in exact rational arithmetic: energy, configurations, residual entropy with its
-polynomial, limits of the observables, the cheapest excitations. With --axes the phases over one or two
-parameters: exact boundaries, and the entropies on them."""
+polynomial, limits of the observables, the cheapest excitations. With --axes the phases over one to
+five parameters: exact boundaries, and the entropies on them."""
 EXAMPLES = """\
   tmsolve ground ising -p J=-1 -p h=2
   tmsolve ground spin1_nnn -p J2=-0.6 -p D=0.5 --json
@@ -47,7 +47,7 @@ def configure(parser: Parser) -> None:
     parser.add_argument(
         "--axes",
         metavar="NAME=LOW:HIGH,…",
-        help="one or two parameters to draw a phase diagram over, separated by a comma; "
+        help="one to five parameters to divide into phases, separated by commas; "
         "without ranges, as in J2,D, they are chosen to show every point where phases meet",
     )
     add_out(parser, "also write the result to this file, ending in .json, or with --axes in .csv")
@@ -66,6 +66,8 @@ def run(arguments: argparse.Namespace) -> int:
     if "T" in given:
         raise UsageError("-p T: ground states belong to T = 0; leave T out, or use tmsolve solve")
     axes = _axes(arguments.axes, model, given)
+    if figure is not None and len(axes) > 2:
+        raise UsageError(f"--plot draws one or two axes, got {len(axes)}; fix the others with -p")
     values = fill(given, model, running=[*axes, "T"])
     return _diagram(arguments, model, values, axes, out, figure) if axes else _state(arguments, model, values, out)
 

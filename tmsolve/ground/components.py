@@ -96,7 +96,7 @@ class Component:
     def examples(self) -> tuple[Configuration, ...]:
         """Its configuration where it is a single cycle, else a few of the shortest period."""
         if self.single:
-            return (self.written(_path(self._follow, 0, 0)),)
+            return self._written_single(_path(self._follow, 0, 0))
         starts = np.unique(np.linspace(0, len(self.nodes) - 1, _TRIED).astype(int))
         cycles = sorted((_path(self._follow, start, start) for start in starts.tolist()), key=len)
         found: dict[tuple[str, ...], Configuration] = {}
@@ -121,6 +121,17 @@ class Component:
         edges = self.graph.edges
         steps = [self.graph.states_of(edges, edge) for edge in cycle]
         return configuration(self.graph.window, steps, math.prod(edges.count[list(cycle)].tolist()))
+
+    def _written_single(self, cycle: Sequence[int]) -> tuple[Configuration, ...]:
+        """Return a cycle with a few of its choices of interior sites, the same choice at every step."""
+        variants = [self.graph.variants(edge, _EXAMPLES) for edge in cycle]
+        multiplicity = math.prod(self.graph.edges.count[list(cycle)].tolist())
+        found: dict[tuple[str, ...], Configuration] = {}
+        for k in range(max(map(len, variants))):
+            steps = [choices[min(k, len(choices) - 1)] for choices in variants]
+            item = configuration(self.graph.window, steps, multiplicity)
+            found.setdefault(item.labels, item)
+        return tuple(found.values())
 
     def cycle_through(self, edge: int) -> list[int]:
         """Return a shortest cycle that contains a step."""

@@ -9,7 +9,7 @@ from pathlib import Path
 from typing import Any
 
 from ..declare import Chain
-from .polygons import Affine, Corner
+from .polytopes import Affine, Corner
 from .states import GroundState
 from .tabled import diagram_text, phase_name, phase_number, table_rows, write_csv
 
@@ -23,8 +23,8 @@ class Phase:
     Attributes
     ----------
     corners : tuple of points
-        Of its polygon, counter-clockwise, or the two ends of its interval; exact, unless
-        the diagram says otherwise.
+        Of its polygon, counter-clockwise, of its polytope, or the two ends of its interval;
+        exact, unless the diagram says otherwise.
     state : GroundState
         At the centre.
     plane : tuple of Fraction or None
@@ -53,31 +53,32 @@ class Phase:
 
 @dataclass(frozen=True, eq=False)
 class Boundary:
-    """Where two phases meet along a line (or at a point of one axis).
+    """Where two phases meet: a point of one axis, a line in a plane, a face in between.
 
     Attributes
     ----------
     phases : tuple of int
         Their numbers in the diagram.
     ends : tuple of points
-        Two ends of the line, or the single point.
-    state : GroundState
-        At its middle; its entropy is that of the boundary.
+        Two ends of the line, or the single point, or the corners of the face.
+    state : GroundState or None
+        At its middle; its entropy is that of the boundary. None where the boundary was
+        bisected and is not known exactly.
     """
 
     phases: tuple[int, int]
     ends: tuple[Corner, ...]
-    state: GroundState
+    state: GroundState | None
 
     @property
-    def entropy(self) -> float:
-        """Residual entropy per cell on the boundary."""
-        return self.state.entropy
+    def entropy(self) -> float | None:
+        """Residual entropy per cell on the boundary; None where that is not known exactly."""
+        return None if self.state is None else self.state.entropy
 
 
 @dataclass(frozen=True, eq=False)
 class Vertex:
-    """A point where three or more phases meet.
+    """A point where more phases meet than axes run: three or more in a plane.
 
     Attributes
     ----------
@@ -100,7 +101,7 @@ class Vertex:
 
 @dataclass(frozen=True, eq=False)
 class PhaseDiagram:
-    """Ground states over one or two parameters.
+    """Ground states over one to five parameters.
 
     Attributes
     ----------
@@ -144,7 +145,7 @@ class PhaseDiagram:
     def table(self) -> list[dict[str, Any]]:
         """Return one row per phase, boundary and multiphase point.
 
-        Every row has ``kind``, ``phases`` (numbers), ``name``, ``period``, ``energy``
+        Every row has ``kind``, ``phases`` (numbers, from 1), ``name``, ``period``, ``energy``
         (text, affine in the axes), ``entropy``, ``entropy_text`` and ``corners``.
         """
         return table_rows(self)

@@ -1,4 +1,4 @@
-"""Energies of configurations as affine functions of one or two parameters."""
+"""Energies of configurations as affine functions of a few parameters."""
 
 from __future__ import annotations
 
@@ -12,8 +12,9 @@ import numpy as np
 
 from ..assemble.window import ChainWindow
 from ..declare import Term
+from ..errors import TmsolveError
 from .graph import CutGraph
-from .polygons import Affine, Corner
+from .polytopes import Affine, Corner
 from .tables import exact_table
 
 __all__ = ["EnergyForms"]
@@ -46,7 +47,10 @@ class EnergyForms:
         self._tables: dict[int, list[np.ndarray]] = {}
         for number, factor in enumerate(window.factors):
             if isinstance(factor.source, Term):
-                tables = self._affine(factor.source, ranges)
+                try:
+                    tables = self._affine(factor.source, ranges)
+                except TmsolveError:  # not defined at some point tried, such as a root of a negative number
+                    tables = None
                 if tables is None:
                     self.culprit = self.culprit or f"the energy {factor.source.label}"
                 else:

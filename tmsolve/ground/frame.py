@@ -9,7 +9,7 @@ from typing import Any
 from ..declare import Chain
 from ..declare.values import parse_value
 from ..errors import NotApplicable, ParameterError, did_you_mean, listing, unknown_parameter
-from .polygons import Corner
+from .polytopes import Corner
 
 __all__ = ["choose_box", "read_axes", "read_box"]
 
@@ -17,13 +17,15 @@ Ranges = tuple[tuple[Fraction, Fraction], ...]
 
 #: The frame in which corners are looked for, in units of the energy scale.
 _FAR = 1000
+#: With more axes the number of corners explodes.
+_MOST = 5
 
 
 def read_axes(chain: Chain, axes: Sequence[str] | str) -> tuple[str, ...]:
     """Return the names of the axes, checked."""
     names = (axes,) if isinstance(axes, str) else tuple(axes)
     if not names:
-        raise ParameterError('phase_diagram needs one or two axes, such as axes=("J2", "D")')
+        raise ParameterError('phase_diagram needs one to five axes, such as axes=("J2", "D")')
     for i, name in enumerate(names):
         if name == "T":
             raise ParameterError("T is no axis of a phase diagram at T = 0; scan follows quantities along T")
@@ -33,10 +35,10 @@ def read_axes(chain: Chain, axes: Sequence[str] | str) -> tuple[str, ...]:
             raise ParameterError(f"axis {name!r} is fixed at {float(chain.fixed[name]):g} in this chain; leave it free")
         if name in names[:i]:
             raise ParameterError(f"axis {name!r} is given twice")
-    if len(names) > 2:
+    if len(names) > _MOST:
         raise NotApplicable(
-            f"a phase diagram has one or two axes, got {len(names)} ({listing(names)}); "
-            "fix the others with chain.fix(…) and draw several"
+            f"a phase diagram has one to five axes, got {len(names)} ({listing(names)}); "
+            "fix the others with chain.fix(…) and make several"
         )
     return names
 
@@ -63,22 +65,21 @@ def read_box(names: Sequence[str], box: Mapping[str, Sequence[Any]] | None) -> R
     return tuple(ranges)
 
 
-def choose_box(divide: Callable[[list[Corner]], list[Any]], dimension: int, scale: Fraction) -> Ranges:
+def choose_box(divide: Callable[[Ranges], list[Any]], dimension: int, scale: Fraction) -> Ranges:
     """Choose ranges that show every point where phases meet, with a margin.
 
     Parameters
     ----------
     divide : callable
-        Takes the corners of a frame and returns regions (plane, corners).
+        Takes the ranges of a frame and returns regions (plane, polytope).
     scale : Fraction
         Magnitude of the other couplings, for the margin.
     """
     far = _FAR * scale
-    frame: list[Corner] = [(-far,), (far,)]
-    if dimension == 2:
-        frame = [(-far, -far), (far, -far), (far, far), (-far, far)]
-    corners = {corner for _, region in divide(frame) for corner in region}
-    inside = [corner for corner in corners if all(abs(x) < far for x in corner)] or [(Fraction(0),) * dimension]
+    frame: Ranges = ((-far, far),) * dimension
+    corners = {corner for _, region in divide(frame) for corner in region.corners}
+    none: Corner = (Fraction(0),) * dimension
+    inside = [corner for corner in corners if all(abs(x) < far for x in corner)] or [none]
     ranges = []
     for xs in zip(*inside, strict=True):
         margin = max((max(xs) - min(xs)) / 2, scale)

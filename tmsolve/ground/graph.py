@@ -22,6 +22,7 @@ from .tables import exact_table
 __all__ = ["CutGraph", "Edges"]
 
 _INT64_ROOM = 2**61
+_INTERIOR_LIMIT = 2**18
 
 
 @dataclass(frozen=True, eq=False)
@@ -181,13 +182,40 @@ class CutGraph:
         """Least energy per cell."""
         return self.cheapest.mean / self.unit
 
-    def states_of(self, edges: Edges, number: int) -> dict[Any, int]:
-        """Return the states of all sites of the window along a step: one interior configuration of its energy."""
+    def _cut_states(self, edges: Edges, number: int) -> dict[Any, int]:
         window = self.window
         known: dict[Any, int] = {}
         for cut, index in ((window.left, int(edges.rows[number])), (window.right, int(edges.cols[number]))):
             for site in reversed(cut):
                 index, known[site] = divmod(index, window.sizes[site])
+        return known
+
+    def minima(self, number: int) -> list[tuple[int, ...]]:
+        """Return the states of the interior sites in every configuration of least energy of a step of `edges`.
+
+        Only one of them where the interior is too large to go through.
+        """
+        inside = self.window.interior
+        shape = tuple(self.window.sizes[site] for site in inside)
+        if math.prod(shape) > _INTERIOR_LIMIT:
+            states = self.states_of(self.edges, number)
+            return [tuple(states[site] for site in inside)]
+        factors = self._restricted(self._cut_states(self.edges, number))
+        table = eliminate(MinPlus(self.ceiling), factors, (), inside)
+        least = (table.energy == self.edges.energy[number]) & (table.count != 0)
+        places = np.argwhere(np.broadcast_to(least, (*shape, 1))[..., 0])
+        return [tuple(place) for place in places.tolist()]
+
+    def variants(self, number: int, most: int) -> list[dict[Any, int]]:
+        """Return the states of all sites along a step of `edges`, for its first few minima."""
+        outside = self._cut_states(self.edges, number)
+        choices = self.minima(number)[:most]
+        return [{**outside, **dict(zip(self.window.interior, choice, strict=True))} for choice in choices]
+
+    def states_of(self, edges: Edges, number: int) -> dict[Any, int]:
+        """Return the states of all sites of the window along a step: one interior configuration of its energy."""
+        window = self.window
+        known = self._cut_states(edges, number)
         target = edges.energy[number]
         algebra = MinPlus(self.ceiling, 2)
         for site in window.interior:

@@ -1,8 +1,8 @@
-"""The verb `phase_diagram`: which ground state prevails where, as exact intervals or polygons."""
+"""The verb `phase_diagram`: which ground state prevails where, as exact intervals, polygons or polytopes."""
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from fractions import Fraction
 from itertools import combinations
 from typing import Any
@@ -15,7 +15,7 @@ from .bisection import bisected
 from .diagram import Boundary, Phase, PhaseDiagram, Vertex
 from .energies import EnergyForms
 from .frame import choose_box, read_axes, read_box
-from .polygons import Affine, Corner, centre, holds, lower_regions
+from .polytopes import Affine, Corner, Polytope, centre, in_order, lower_regions, span
 from .states import GroundState, analyse
 from .tables import exact_values, refuse_thermal
 
@@ -29,18 +29,19 @@ def phase_diagram(
     *,
     precision: Any = Fraction(1, 10**9),
 ) -> PhaseDiagram:
-    """Divide a range of one or two parameters into the phases of the ground state.
+    """Divide a range of one to five parameters into the phases of the ground state.
 
     Where energies are affine in the axes, the least energy is a concave function made of
-    planes, one per configuration, and the division into convex polygons with rational
-    corners is exact. Along one axis other energies are bisected.
+    planes, one per configuration, and the division into intervals, convex polygons or
+    polytopes with rational corners is exact. Along one axis other energies are bisected.
 
     Parameters
     ----------
     chain : Chain
         Every other parameter fixed or with a default.
     axes : sequence of str
-        One or two parameters, such as ``("J2", "D")``.
+        One to five parameters, such as ``("J2", "D")``. When all couplings are axes, the
+        phases are the cones of a fan, cut off by the box.
     box : mapping of str to (low, high), optional
         Range of each axis. When left out, it is chosen to show every corner where phases meet.
     precision : number
@@ -55,12 +56,12 @@ def phase_diagram(
     ParameterError
         An unknown, fixed or doubled axis, a range that is none, a missing parameter.
     NotApplicable
-        More than two axes; two axes in which an energy is not affine; energies with T, weights.
+        More than five axes; several axes in which an energy is not affine; energies with T, weights.
 
     Notes
     -----
     Corners of the division are asked for their ground states until none lies below the
-    planes known; see `polygons.lower_regions`. A narrow phase between two points of the
+    planes known; see `polytopes.lower_regions`. A narrow phase between two points of the
     first grid can be missed where energies are not affine, and only there.
 
     Examples
@@ -86,7 +87,7 @@ def phase_diagram(
         return _bisected_diagram(chain, names, values, ranges, _positive(precision))
     if ranges is None:
         ranges = choose_box(lambda frame: lower_regions(frame, forms.plane_at), len(names), forms.scale)
-    regions = lower_regions(_corners(ranges), forms.plane_at)
+    regions = lower_regions(ranges, forms.plane_at)
     return _exact_diagram(chain, names, values, ranges, regions)
 
 
@@ -95,13 +96,6 @@ def _positive(precision: Any) -> Fraction:
     if not isinstance(number, Fraction) or number <= 0:
         raise ParameterError(f"precision= is the largest error of a boundary, a number above 0, got {precision!r}")
     return number
-
-
-def _corners(ranges: Sequence[tuple[Fraction, Fraction]]) -> list[Corner]:
-    if len(ranges) == 1:
-        return [(x,) for x in ranges[0]]
-    (left, right), (low, high) = ranges
-    return [(left, low), (right, low), (right, high), (left, high)]
 
 
 def _state(chain: Chain, names: Sequence[str], values: Mapping[str, Fraction], point: Corner) -> GroundState:
@@ -113,35 +107,44 @@ def _exact_diagram(
     names: tuple[str, ...],
     values: Mapping[str, Fraction],
     ranges: tuple[tuple[Fraction, Fraction], ...],
-    regions: Sequence[tuple[Affine, list[Corner]]],
+    regions: Sequence[tuple[Affine, Polytope]],
 ) -> PhaseDiagram:
-    ordered = sorted(regions, key=lambda region: centre(region[1]))
-    phases = [Phase(tuple(corners), _state(chain, names, values, centre(corners)), plane) for plane, corners in ordered]
+    sets = {plane: in_order(region.corners) for plane, region in regions}
+    ordered = sorted(sets.items(), key=lambda item: centre(item[1]))
+    phases = [Phase(corners, _state(chain, names, values, centre(corners)), plane) for plane, corners in ordered]
     boundaries = []
     for i, j in combinations(range(len(phases)), 2):
-        ends = _shared(phases[i].corners, phases[j].corners, len(names))
-        if ends:
-            boundaries.append(Boundary((i, j), ends, _state(chain, names, values, centre(ends))))
-    vertices = []
-    if len(names) == 2:
-        where = dict.fromkeys(corner for phase in phases for corner in phase.corners)
-        for point in where:
-            meeting = tuple(i for i, phase in enumerate(phases) if holds(phase.corners, point))
-            if len(meeting) > 2:
-                vertices.append(Vertex(meeting, point, _state(chain, names, values, point)))
+        # Regions where a concave function is linear meet face to face: corners of a common face belong to both.
+        common = sorted(set(phases[i].corners) & set(phases[j].corners))
+        if len(common) >= len(names) and span(common) == len(names) - 1:
+            boundaries.append(Boundary((i, j), tuple(common), _state(chain, names, values, centre(common))))
     notes = tuple(dict.fromkeys(note for phase in phases for note in phase.state.notes))
     return PhaseDiagram(
-        chain, names, ranges, dict(values), tuple(phases), tuple(boundaries), tuple(vertices), Fraction(0), notes
+        chain,
+        names,
+        ranges,
+        dict(values),
+        tuple(phases),
+        tuple(boundaries),
+        tuple(_vertices(chain, names, values, phases)),
+        Fraction(0),
+        notes,
     )
 
 
-def _shared(first: Sequence[Corner], second: Sequence[Corner], dimension: int) -> tuple[Corner, ...]:
-    """Return the ends of the piece of boundary that two convex regions share, if it has an extent."""
-    common = [c for c in first if holds(second, c)]
-    common += [c for c in second if c not in common and holds(first, c)]
-    if len(common) < dimension:
-        return ()
-    return (min(common), max(common)) if dimension == 2 else (common[0],)
+def _vertices(
+    chain: Chain, names: tuple[str, ...], values: Mapping[str, Fraction], phases: Sequence[Phase]
+) -> Iterator[Vertex]:
+    """Yield the points where more phases meet than anywhere around them."""
+    if len(names) == 1:
+        return
+    meeting: dict[Corner, list[int]] = {}
+    for i, phase in enumerate(phases):
+        for corner in phase.corners:
+            meeting.setdefault(corner, []).append(i)
+    for point, numbers in sorted(meeting.items()):
+        if len(numbers) > len(names):
+            yield Vertex(tuple(numbers), point, _state(chain, names, values, point))
 
 
 def _bisected_diagram(
@@ -156,12 +159,16 @@ def _bisected_diagram(
             f"the energy is not affine in {names[0]}, so no range can be chosen for it; "
             f"give box={{{names[0]!r}: (low, high)}}"
         )
-    pieces = bisected(lambda x: _state(chain, names, values, (x,)), *ranges[0], precision)
-    phases = tuple(Phase(((low,), (high,)), state, None) for low, high, state in pieces)
-    boundaries = tuple(
-        Boundary((i, i + 1), (phases[i].corners[1],), _state(chain, names, values, phases[i].corners[1]))
-        for i in range(len(phases) - 1)
-    )
-    notes = [f"not affine in {names[0]}: boundaries are bisected to {float(precision):.3g}, starting from 65 points"]
-    notes += dict.fromkeys(note for phase in phases for note in phase.state.notes)
-    return PhaseDiagram(chain, names, ranges, dict(values), phases, boundaries, (), precision, tuple(notes))
+    low, high = ranges[0]
+    states, edges = bisected(lambda x: _state(chain, names, values, (x,)), low, high, precision)
+    ends = [low, *(place for place, _ in edges), high]
+    phases = tuple(Phase(((a,), (b,)), state, None) for a, b, state in zip(ends[:-1], ends[1:], states, strict=True))
+    boundaries = tuple(Boundary((i, i + 1), ((place,),), tied) for i, (place, tied) in enumerate(edges))
+    exact = all(tied is not None for _, tied in edges)
+    notes = [
+        f"not affine in {names[0]}: phases narrower than the 64th part of the range may be missing"
+        + ("" if exact else f"; boundaries that are no simple fractions are bisected to {float(precision):.3g}")
+    ]
+    notes += dict.fromkeys(note for state in states for note in state.notes)
+    error = Fraction(0) if exact else precision
+    return PhaseDiagram(chain, names, ranges, dict(values), phases, boundaries, (), error, tuple(notes))

@@ -10,7 +10,7 @@ from typing import TYPE_CHECKING, Any
 
 from ..declare.values import parse_value
 from ..errors import ParameterError, listing
-from .polygons import holds
+from .polytopes import value_at
 from .printing import number_text
 
 if TYPE_CHECKING:
@@ -29,6 +29,8 @@ __all__ = [
 ]
 
 _NAMED = 3
+_LISTED = 60
+_CORNERS = 8
 _COLUMNS = ("kind", "phases", "name", "period", "energy", "entropy", "entropy_text", "corners")
 
 
@@ -87,10 +89,17 @@ def table_rows(diagram: PhaseDiagram) -> list[dict[str, Any]]:
 
 
 def _row(
-    kind: str, phases: Sequence[int], name: str, period: int | None, energy: str, state: GroundState, corners: Any
+    kind: str,
+    phases: Sequence[int],
+    name: str,
+    period: int | None,
+    energy: str,
+    state: GroundState | None,
+    corners: Any,
 ) -> dict[str, Any]:
-    entropy = state.entropy_text if state.entropy else "0"
-    values = (kind, tuple(i + 1 for i in phases), name, period, energy, state.entropy, entropy, tuple(corners))
+    entropy = None if state is None else state.entropy
+    text = "unknown" if state is None else state.entropy_text if entropy else "0"
+    values = (kind, tuple(i + 1 for i in phases), name, period, energy, entropy, text, tuple(corners))
     return dict(zip(_COLUMNS, values, strict=True))
 
 
@@ -102,8 +111,9 @@ def write_csv(diagram: PhaseDiagram, path: Path) -> Path:
         for row in table_rows(diagram):
             phases = " ".join(map(str, row["phases"]))
             corners = " ".join("(" + ", ".join(map(str, corner)) + ")" for corner in row["corners"])
+            number = "" if row["entropy"] is None else repr(row["entropy"])
             period = "" if row["period"] is None else row["period"]
-            text = {**row, "phases": phases, "period": period, "entropy": repr(row["entropy"]), "corners": corners}
+            text = {**row, "phases": phases, "period": period, "entropy": number, "corners": corners}
             writer.writerow([text[column] for column in _COLUMNS])
     return path
 
@@ -124,18 +134,28 @@ def phases_text(diagram: PhaseDiagram) -> str:
     lines = []
     kinds = " ".join(diagram.chain.cell)
     lines.append(f"{len(diagram.phases)} phase{'s' * (len(diagram.phases) != 1)}, cells as ({kinds}):")
-    for row in diagram.table():
-        if row["kind"] == "phase":
-            lines.append(f"  {row['phases'][0]}  {row['name']}  period {row['period']}{_energy(row)}{_entropy(row)}")
-            lines.append(f"     corners {' '.join(map(point_text, row['corners']))}")
+    rows = diagram.table()
+    for row in (row for row in rows if row["kind"] == "phase"):
+        lines.append(f"  {row['phases'][0]}  {row['name']}  period {row['period']}{_energy(row)}{_entropy(row)}")
+        lines.append(f"     corners {_points(row)}")
     for kind, head in (("boundary", "boundaries:"), ("point", "points where several phases meet:")):
-        chosen = [row for row in diagram.table() if row["kind"] == kind]
+        chosen = [row for row in rows if row["kind"] == kind]
         if chosen:
             lines += ["", head]
-        for row in chosen:
+        for row in chosen[:_LISTED]:
             meeting = " | ".join(map(str, row["phases"]))
-            lines.append(f"  {meeting}  at {' – '.join(map(point_text, row['corners']))}{_entropy(row)}")
+            lines.append(f"  {meeting}  at {_points(row)}{_entropy(row)}")
+        if len(chosen) > _LISTED:
+            lines.append(f"  … and {len(chosen) - _LISTED} more")
     return "\n".join([*lines, *(f"note: {note}" for note in diagram.notes)])
+
+
+def _points(row: Mapping[str, Any]) -> str:
+    corners = row["corners"]
+    if len(corners) > _CORNERS:
+        return f"{point_text(corners[0])} … ({len(corners)} corners)"
+    between = " – " if row["kind"] == "boundary" and len(corners) == 2 else " "
+    return between.join(map(point_text, corners))
 
 
 def _energy(row: Mapping[str, Any]) -> str:
@@ -143,6 +163,8 @@ def _energy(row: Mapping[str, Any]) -> str:
 
 
 def _entropy(row: Mapping[str, Any]) -> str:
+    if row["entropy"] is None:
+        return ", entropy unknown: not an exact boundary"
     if not row["entropy"]:
         return ", no entropy"
     return f", entropy {row['entropy_text']} = {row['entropy']:.12g}"
@@ -160,7 +182,11 @@ def phase_number(diagram: PhaseDiagram, point: Mapping[str, Any]) -> int:
     place = tuple(x for x in given if isinstance(x, Fraction))
     if len(place) < len(given):
         raise ParameterError("a point of a diagram has one finite number per axis")
-    for number, phase in enumerate(diagram.phases):
-        if holds(phase.corners, place):
-            return number
-    raise ParameterError(f"the point {point_text(place)} lies outside of the diagram's box")
+    inside = all(low <= x <= high for x, (low, high) in zip(place, diagram.box, strict=True))
+    if not inside:
+        raise ParameterError(f"the point {point_text(place)} lies outside of the diagram's box")
+    planes = [phase.plane for phase in diagram.phases]
+    if all(plane is not None for plane in planes):
+        energies = [value_at(plane, place) for plane in planes if plane is not None]
+        return energies.index(min(energies))
+    return next(i for i, phase in enumerate(diagram.phases) if phase.corners[0] <= place <= phase.corners[1])

@@ -9,7 +9,7 @@ from typing import Any
 from .._optional import require
 from ..errors import ParameterError
 from ..ground.diagram import Phase, PhaseDiagram
-from ..ground.polygons import centre
+from ..ground.polytopes import centre
 from ..ground.states import analyse
 from .labels import symbol_text, unit_text
 from .style import COLOURS, axes_for, finish, rc
@@ -49,7 +49,7 @@ def plot_phases(diagram: PhaseDiagram, ax: Any = None) -> Any:
     Raises
     ------
     ParameterError
-        Something that is no phase diagram.
+        Something that is no phase diagram, or one over more than two axes.
     MissingExtra
         matplotlib is not installed.
 
@@ -62,6 +62,11 @@ def plot_phases(diagram: PhaseDiagram, ax: Any = None) -> Any:
     """
     if not isinstance(diagram, PhaseDiagram):
         raise ParameterError(f"plot_phases draws what phase_diagram(…) returns, got {diagram!r}")
+    if len(diagram.axes) > 2:
+        raise ParameterError(
+            f"plot_phases draws one or two axes, and this diagram has {len(diagram.axes)}; "
+            "fix the others with chain.fix(…)"
+        )
     new = ax is None
     with rc():
         ax = axes_for(ax)
@@ -128,7 +133,7 @@ def _plane(ax: Any, diagram: PhaseDiagram) -> list[Any]:
         )
     for border in diagram.boundaries:
         xs, ys = zip(*((float(x), float(y)) for x, y in border.ends), strict=True)
-        ax.plot(xs, ys, color="black", linewidth=2.2 if border.entropy > 0 else 0.8, zorder=2, solid_capstyle="round")
+        ax.plot(xs, ys, color="black", linewidth=2.2 if border.entropy else 0.8, zorder=2, solid_capstyle="round")
     for vertex in diagram.vertices:
         fill = "black" if vertex.entropy > 0 else "white"
         point = [float(x) for x in vertex.point]
@@ -143,7 +148,7 @@ def _handles(diagram: PhaseDiagram) -> list[Any]:
     lines = require("matplotlib.lines", extra="plot")
     handles = [_handle(number, phase) for number, phase in enumerate(diagram.phases)]
     for rough, text in ((True, "boundary with entropy"), (False, "boundary without entropy")):
-        if any((line.entropy > 0) == rough for line in diagram.boundaries):
+        if any(bool(line.entropy) == rough for line in diagram.boundaries):
             handles.append(lines.Line2D([], [], color="black", linewidth=2.2 if rough else 0.8, label=text))
     return handles
 
@@ -165,7 +170,7 @@ def _line(ax: Any, diagram: PhaseDiagram) -> list[Any]:
         left, right = (float(corner[0]) for corner in phase.corners)
         ax.axvspan(left, right, linewidth=0.0, zorder=1, **_style(number))
     for border in diagram.boundaries:
-        ax.axvline(float(border.ends[0][0]), color="black", linewidth=2.2 if border.entropy > 0 else 0.8, zorder=2)
+        ax.axvline(float(border.ends[0][0]), color="black", linewidth=2.2 if border.entropy else 0.8, zorder=2)
     xs = _places(diagram)
     energies = [analyse(diagram.chain, {**diagram.parameters, axis: x}).energy for x in xs]
     ax.plot([float(x) for x in xs], [float(e) for e in energies], color="black", linewidth=1.4, zorder=3)
