@@ -47,8 +47,15 @@ if TYPE_CHECKING:
     from .finite.chains import ring as ring
     from .ground.phases import phase_diagram as phase_diagram
     from .ground.states import ground_state as ground_state
+    from .survey.activation import local_slope as local_slope
     from .survey.axes import axis as axis
+    from .survey.caloric import adiabatic_slope as adiabatic_slope
+    from .survey.caloric import entropy_change as entropy_change
+    from .survey.deviations import rate_function as rate_function
+    from .survey.ensemble import field_for_mean as field_for_mean
     from .survey.events import crossovers as crossovers
+    from .survey.information import fisher_information as fisher_information
+    from .survey.isentropes import isentrope as isentrope
     from .survey.run import scan as scan
     from .symbolic.forms import closed_form as closed_form
 
@@ -67,8 +74,14 @@ _HOMES = {
     "finite.chains": ("open_chain", "ring"),
     "ground.phases": ("phase_diagram",),
     "ground.states": ("ground_state",),
+    "survey.activation": ("local_slope",),
     "survey.axes": ("axis",),
+    "survey.caloric": ("adiabatic_slope", "entropy_change"),
+    "survey.deviations": ("rate_function",),
+    "survey.ensemble": ("field_for_mean",),
     "survey.events": ("crossovers",),
+    "survey.information": ("fisher_information",),
+    "survey.isentropes": ("isentrope",),
     "survey.run": ("scan",),
     "symbolic.forms": ("closed_form",),
 }  # fmt: skip
