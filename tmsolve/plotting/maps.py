@@ -85,7 +85,8 @@ def plot_map(
         ax = axes_for(ax)
         _colours(ax, grid, name, (across, up), values, log)
         if events is not None:
-            _overlay(ax, events, across, up)
+            shown = {axis: grid.coords[axis] for axis in (across, up)}
+            _overlay(ax, _rows(events, shown), shown)
         for axis, set_scale in ((across, ax.set_xscale), (up, ax.set_yscale)):
             if is_geometric(grid.coords[axis]):
                 set_scale("log")
@@ -125,7 +126,12 @@ def _edges(values: np.ndarray) -> np.ndarray:
     return np.exp(inner) if is_geometric(values) else inner
 
 
-def _overlay(ax: Any, events: Any, across: str, up: str) -> None:
+#: Events of one kind along a line across the map, with the value of the other axis.
+Branch = list[tuple[float, Event]]
+
+
+def _rows(events: Any, axes: Mapping[str, np.ndarray]) -> list[tuple[float, tuple[Event, ...]]]:
+    """Return the events of a map by the value of the other axis, in order."""
     if not isinstance(events, Mapping):
         raise ParameterError(
             f"events= of a map takes the value of one axis to the events along the other, got {events!r}"
@@ -133,11 +139,17 @@ def _overlay(ax: Any, events: Any, across: str, up: str) -> None:
     rows = [(float(value), checked_events(found)) for value, found in sorted(events.items())]
     for _, found in rows:
         for event in found:
-            if event.along not in (across, up):
+            if event.along not in axes:
                 raise ParameterError(
                     f"the event {event.kind!r} was found along {event.along!r}, which is no axis of this map "
-                    f"({across}, {up})"
+                    f"({', '.join(axes)})"
                 )
+    return rows
+
+
+def _overlay(ax: Any, rows: list[tuple[float, tuple[Event, ...]]], axes: Mapping[str, np.ndarray]) -> None:
+    across = next(iter(axes))
+    reach = max((float(np.ptp(axes[event.along])) for _, found in rows for event in found), default=0.0)
     kinds = list(dict.fromkeys(event.kind for _, found in rows for event in found))
     effects = require("matplotlib.patheffects", extra="plot")
     limits = ax.get_xlim(), ax.get_ylim()
@@ -145,7 +157,8 @@ def _overlay(ax: Any, events: Any, across: str, up: str) -> None:
         colour = _ON_MAP[number % len(_ON_MAP)]
         halo = "black" if colour == "#FFFFFF" else "white"
         text = kind_text(kind)
-        for branch in _branches([(value, [e for e in found if e.kind == kind]) for value, found in rows]):
+        of_kind = [(value, [e for e in found if e.kind == kind]) for value, found in rows]
+        for branch in _branches(of_kind, 0.25 * reach):
             points = [(e.location, v) if e.along == across else (v, e.location) for v, e in branch]
             ax.plot(
                 *np.transpose(points),
@@ -166,15 +179,10 @@ def _overlay(ax: Any, events: Any, across: str, up: str) -> None:
         ax.legend(framealpha=0.85, facecolor="#bfbfbf", edgecolor="none", handlelength=2.6, loc="best")
 
 
-Branch = list[tuple[float, Event]]
-
-
-def _branches(rows: list[tuple[float, list[Event]]]) -> list[Branch]:
-    """Join events of one kind into lines: from row to row the closest ones belong together."""
+def _branches(rows: list[tuple[float, list[Event]]], reach: float) -> list[Branch]:
+    """Join events of one kind into lines: from row to row the closest ones belong together, within reach."""
     done: list[Branch] = []
     growing: list[Branch] = []
-    everywhere = [event.location for _, found in rows for event in found]
-    reach = 0.25 * (max(everywhere) - min(everywhere)) if everywhere else 0.0
     for value, found in rows:
         ends = [branch[-1][1].location for branch in growing]
         steps = sorted((abs(e.location - end), i, j) for i, end in enumerate(ends) for j, e in enumerate(found))

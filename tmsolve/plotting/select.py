@@ -65,10 +65,13 @@ def cut(grid: Grid, reading: str, kept: tuple[str, ...], at: Mapping[str, float]
     """
     chosen = dict(at or {})
     for name in chosen:
-        if name not in grid.dims or name in kept:
+        if name not in grid.dims:
             raise ParameterError(
-                f"at={{{name!r}: …}}: the axes to choose from are {listing(d for d in grid.dims if d not in kept)}"
+                f"at={{{name!r}: …}}: the axes of this grid are {listing(grid.dims)}."
+                f"{did_you_mean(str(name), grid.dims)}"
             )
+        if name in kept:
+            raise ParameterError(f"at={{{name!r}: …}}: this axis is shown whole and cannot be cut; leave it out")
     index: list[Any] = []
     for name in grid.dims:
         values = grid.coords[name]
