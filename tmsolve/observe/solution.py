@@ -187,13 +187,14 @@ class Solution:
         >>> print(f"{r.structure_factor('m', 1e-3):.8e}")       # sinh-free form: (1−t²)/(1−2t cos k+t²)
         1.69934184e-11
         """
-        wanted = np.atleast_1d(np.asarray(k, dtype=np.float64))
-        if wanted.ndim != 1 or not wanted.size or not np.isfinite(wanted).all():
+        wanted = np.atleast_1d(np.asarray(k))
+        numeric = wanted.ndim == 1 and wanted.size and wanted.dtype.kind in "iuf"
+        if not numeric or not np.isfinite(wanted).all():
             raise ParameterError(f"wave numbers are finite numbers per cell, got {k!r}")
         self.point.chain.observable(a)
         window, _ = self.laws.resolved((a,))
         values = self.laws.collect(
-            lambda segment: structure_factor(window, segment, a, wanted.tolist()), (a,), (wanted.size,)
+            lambda segment: structure_factor(window, segment, a, wanted.astype(float).tolist()), (a,), (wanted.size,)
         )
         shaped = self._shaped(values, f"structure factor of {a}")
         return shaped[..., 0] if np.ndim(k) == 0 else shaped
