@@ -45,7 +45,7 @@ def check_limit(chain, values, state, T, tolerance):
         )
 
 
-@pytest.mark.parametrize("T", ["0.003", "0.001"])
+@pytest.mark.parametrize("T", ["0.003", "0.001", "0.0001"])
 @pytest.mark.parametrize("animal", COLD, ids=[a.name for a in COLD])
 def test_the_zoo_freezes_into_its_ground_states(animal, T):
     state = ground_state(fixed(animal))

@@ -221,6 +221,20 @@ def test_bent_energies_that_tie_at_a_fraction_are_exact():
     assert diagram.exact and [line.ends for line in diagram.boundaries] == [((F(1, 3),),)]
 
 
+def test_a_kink_is_not_taken_for_a_straight_line():
+    """|x - 3/2| is affine on either side; wherever the kink is in the box, it is seen."""
+    chain = Chain(spins(1), [site(lambda s, x: abs(x - F(3, 2)) * s + (s == 0) * F(-1, 3))])
+    for box in ((0, 2), (-10, 10), (-1, F(161, 100))):
+        found = phase_diagram(chain, "x", {"x": box})
+        names = ["(-1)", "(0)", "(-1)"] if box[1] > F(11, 6) else ["(-1)", "(0)"]
+        assert found.phases[0].plane is None and [phase.name for phase in found.phases] == names
+        assert [line.ends[0][0] for line in found.boundaries] == [F(7, 6), F(11, 6)][: len(names) - 1]
+    plane = Chain(spins(1), [site(lambda s, x, y: abs(x - F(3, 2)) * s + y * s)])
+    refused(
+        NotApplicable, lambda: phase_diagram(plane, ("x", "y"), {"x": (0, 2), "y": (0, 1)}), "not affine in x and y"
+    )
+
+
 def test_functions_that_are_not_defined_everywhere():
     chain = Chain(ising(), [site(lambda s, x: -math.sqrt(x) * s), site(lambda s, h: -h * s)])
     diagram = phase_diagram(chain.fix(h=-2), "x", {"x": (1, 10)})

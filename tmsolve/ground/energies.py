@@ -12,9 +12,9 @@ import numpy as np
 
 from ..assemble.window import ChainWindow
 from ..declare import Term
-from ..errors import TmsolveError
+from ..errors import NotApplicable, TmsolveError
 from .graph import CutGraph
-from .polytopes import Affine, Corner
+from .polytopes import Affine, Corner, value_at
 from .tables import exact_table
 
 __all__ = ["EnergyForms"]
@@ -105,7 +105,12 @@ class EnergyForms:
                 index = tuple(states[site] for site in self.window.factors[number].sites)
                 for k, table in enumerate(tables):
                     totals[k] += table[index]
-        return tuple(total / len(cycle) for total in totals)
+        plane = tuple(total / len(cycle) for total in totals)
+        if value_at(plane, point) != graph.energy:
+            raise NotApplicable(
+                f"an energy is not affine in {' and '.join(self.axes)} everywhere in the range; give a smaller box="
+            )
+        return plane
 
 
 def _probes(dimension: int, ranges: Any) -> list[Corner]:

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Iterable, Mapping, Sequence
 from fractions import Fraction
 from typing import Any
 
@@ -11,7 +11,7 @@ from ..declare.values import parse_value
 from ..errors import NotApplicable, ParameterError, did_you_mean, listing, unknown_parameter
 from .polytopes import Corner
 
-__all__ = ["choose_box", "read_axes", "read_box"]
+__all__ = ["choose_box", "far_frame", "read_axes", "read_box"]
 
 Ranges = tuple[tuple[Fraction, Fraction], ...]
 
@@ -65,23 +65,25 @@ def read_box(names: Sequence[str], box: Mapping[str, Sequence[Any]] | None) -> R
     return tuple(ranges)
 
 
-def choose_box(divide: Callable[[Ranges], list[Any]], dimension: int, scale: Fraction) -> Ranges:
-    """Choose ranges that show every point where phases meet, with a margin.
+def far_frame(dimension: int, scale: Fraction) -> Ranges:
+    """Return ranges that hold every point where phases meet, unless couplings differ by many orders of magnitude."""
+    return ((-_FAR * scale, _FAR * scale),) * dimension
+
+
+def choose_box(corners: Iterable[Corner], frame: Ranges, scale: Fraction) -> Ranges:
+    """Choose ranges that show every corner inside a frame, with a margin.
 
     Parameters
     ----------
-    divide : callable
-        Takes the ranges of a frame and returns regions (plane, polytope).
+    corners : iterable of points
+        Where phases meet each other or the frame.
     scale : Fraction
         Magnitude of the other couplings, for the margin.
     """
-    far = _FAR * scale
-    frame: Ranges = ((-far, far),) * dimension
-    corners = {corner for _, region in divide(frame) for corner in region.corners}
-    none: Corner = (Fraction(0),) * dimension
-    inside = [corner for corner in corners if all(abs(x) < far for x in corner)] or [none]
+    none: Corner = (Fraction(0),) * len(frame)
+    inside = [c for c in set(corners) if all(low < x < high for x, (low, high) in zip(c, frame, strict=True))]
     ranges = []
-    for xs in zip(*inside, strict=True):
+    for xs in zip(*(inside or [none]), strict=True):
         margin = max((max(xs) - min(xs)) / 2, scale)
         step = scale / 2
         ranges.append(((min(xs) - margin) // step * step, -(-(max(xs) + margin) // step) * step))

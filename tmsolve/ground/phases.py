@@ -14,8 +14,8 @@ from ..errors import DeclarationError, NotApplicable, ParameterError
 from .bisection import bisected
 from .diagram import Boundary, Phase, PhaseDiagram, Vertex
 from .energies import EnergyForms
-from .frame import choose_box, read_axes, read_box
-from .polytopes import Affine, Corner, Polytope, centre, in_order, lower_regions, span
+from .frame import choose_box, far_frame, read_axes, read_box
+from .polytopes import Affine, Corner, Polytope, centre, in_order, lower_regions, span, within
 from .states import GroundState, analyse
 from .tables import exact_values, refuse_thermal
 
@@ -85,9 +85,11 @@ def phase_diagram(
                 "draw one axis at a time, where they are bisected"
             )
         return _bisected_diagram(chain, names, values, ranges, _positive(precision))
+    regions = lower_regions(ranges or far_frame(len(names), forms.scale), forms.plane_at)
     if ranges is None:
-        ranges = choose_box(lambda frame: lower_regions(frame, forms.plane_at), len(names), forms.scale)
-    regions = lower_regions(ranges, forms.plane_at)
+        corners = (corner for _, region in regions for corner in region.corners)
+        ranges = choose_box(corners, far_frame(len(names), forms.scale), forms.scale)
+        regions = within(regions, ranges)
     return _exact_diagram(chain, names, values, ranges, regions)
 
 

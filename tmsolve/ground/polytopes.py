@@ -7,7 +7,18 @@ from dataclasses import dataclass
 from fractions import Fraction
 from itertools import product
 
-__all__ = ["Affine", "Corner", "Polytope", "box_polytope", "centre", "in_order", "lower_regions", "span", "value_at"]
+__all__ = [
+    "Affine",
+    "Corner",
+    "Polytope",
+    "box_polytope",
+    "centre",
+    "in_order",
+    "lower_regions",
+    "span",
+    "value_at",
+    "within",
+]
 
 #: Constant and slopes of an affine function of a few variables.
 Affine = tuple[Fraction, ...]
@@ -186,3 +197,19 @@ def _with_plane(
         if own is not None:
             own = own.clip(tuple(-a for a in above))
     return [*divided, *([(plane, own)] if own is not None else [])]
+
+
+def within(regions: Iterable[tuple[Affine, Polytope]], ranges: Ranges) -> list[tuple[Affine, Polytope]]:
+    """Return the parts of regions that lie in a smaller box."""
+    sides: list[Affine] = []
+    for k, (low, high) in enumerate(ranges):
+        unit = tuple(Fraction(int(i == k)) for i in range(len(ranges)))
+        sides += [(low, *(-x for x in unit)), (-high, *unit)]
+    cut = []
+    for plane, region in regions:
+        part: Polytope | None = region
+        for side in sides:
+            part = part.clip(side) if part is not None else None
+        if part is not None:
+            cut.append((plane, part))
+    return cut
