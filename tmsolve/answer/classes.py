@@ -13,8 +13,10 @@ from ..eigen.periodic import periodic_pair
 from ..eigen.perron import TOLERANCE, perron_pair
 from ..operators.numbers import multiprecision
 
-__all__ = ["FIRST_BITS", "CommunicatingClass", "Ties", "exact_values"]
+__all__ = ["CLIMB_LIMIT", "FIRST_BITS", "CommunicatingClass", "Ties", "exact_values"]
 
+#: Longer numbers are worth their time for matrices up to this size.
+CLIMB_LIMIT = 40
 #: Length of the first numbers beyond doubles.
 FIRST_BITS = 128
 

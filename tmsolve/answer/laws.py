@@ -18,12 +18,10 @@ from ..eigen.spectrum import ratios
 from ..errors import SolveError, TooLargeError
 from ..observe.segment import Segment
 from ..operators.numbers import multiprecision, to_double
-from .classes import FIRST_BITS, CommunicatingClass, Ties, exact_values
+from .classes import CLIMB_LIMIT, FIRST_BITS, CommunicatingClass, Ties, exact_values
 
-__all__ = ["long_laws", "stationary_laws"]
+__all__ = ["long_law", "long_laws", "stationary_laws"]
 
-#: Longer numbers are worth their time for matrices up to this size.
-_CLIMB_LIMIT = 40
 #: What is accepted where longer numbers would take too long; `Solution.diagnostics` shows the bound.
 _LARGE_TOLERANCE = 1e-6
 _TIE = 1e-11
@@ -79,10 +77,10 @@ def _solve_part(
     for number in dict.fromkeys(best.tolist()):
         local = np.flatnonzero(best == number)
         chosen = found[number]
-        good = chosen.settled(part, confirm)[local] if part.window.shape[0] <= _CLIMB_LIMIT else chosen.trusted[local]
+        good = chosen.settled(part, confirm)[local] if part.window.shape[0] <= CLIMB_LIMIT else chosen.trusted[local]
         # Which class is the largest is known only where all of them are.
         good &= np.all([other.pair.converged[local] for other in found], axis=0)
-        if len(chosen.states) > _CLIMB_LIMIT:
+        if len(chosen.states) > CLIMB_LIMIT:
             good = chosen.pair.converged[local] & (chosen.pair.error[local] < _LARGE_TOLERANCE)
         if good.any():
             keep = local[good]
@@ -128,12 +126,12 @@ def _names(window: ChainWindow, states: np.ndarray) -> str:
 def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, solver: Dense, point: Point) -> Segment:
     """Solve one point again with longer and longer numbers."""
     size = part.window.shape[0]
-    if size <= _CLIMB_LIMIT:
+    if size <= CLIMB_LIMIT:
         found = _solve_long(part.window, point, index, solver, FIRST_BITS, TOLERANCE)
         if found is not None:
             return found
-    if size > _CLIMB_LIMIT:
-        means = f"with doubles, and matrices of more than {_CLIMB_LIMIT} states get no longer numbers; raise"
+    if size > CLIMB_LIMIT:
+        means = f"with doubles, and matrices of more than {CLIMB_LIMIT} states get no longer numbers; raise"
     else:
         means = f"with numbers of {solver.bits} bits; raise Dense(bits=…),"
     raise SolveError(
@@ -153,25 +151,32 @@ def long_laws(window: ChainWindow, point: Point, solver: Dense, digits: int) -> 
         The matrix is too large for long numbers.
     """
     size = max(window.shape)
-    if size > _CLIMB_LIMIT:
+    if size > CLIMB_LIMIT:
         raise TooLargeError(
-            f"digits= is limited to {_CLIMB_LIMIT} joint states of the cut; this chain has {size}. "
+            f"digits= is limited to {CLIMB_LIMIT} joint states of the cut; this chain has {size}. "
             "Leave digits= out: doubles give about 14",
-            limit=_CLIMB_LIMIT,
+            limit=CLIMB_LIMIT,
         )
     segments = []
     for index in range(point.size):
         bits = FIRST_BITS
         while bits < 3.33 * digits + 64:
             bits *= 2
-        found = _solve_long(window, point, index, solver, bits, 10.0 ** -min(digits + 4, 300))
-        if found is None:
-            raise SolveError(
-                f"{digits} digits could not be reached at {point.pick(index)} with numbers of {solver.bits} bits; "
-                "raise Dense(bits=…) or ask for fewer digits"
-            )
-        segments.append(found)
+        segments.append(long_law(window, point, index, solver, bits, 10.0 ** -min(digits + 4, 300)))
     return segments
+
+
+def long_law(
+    window: ChainWindow, point: Point, index: int, solver: Dense, bits: int, tolerance: float = TOLERANCE
+) -> Segment:
+    """Solve one point with numbers of at least ``bits`` until the bound on its vector is below the tolerance."""
+    found = _solve_long(window, point, index, solver, bits, tolerance)
+    if found is None:
+        raise SolveError(
+            f"an accuracy of {tolerance:.0e} could not be reached at {point.pick(index)} with numbers of {solver.bits} "
+            "bits; raise Dense(bits=…) or ask for fewer digits"
+        )
+    return found
 
 
 def _solve_long(

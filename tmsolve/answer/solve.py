@@ -3,25 +3,25 @@
 from __future__ import annotations
 
 from collections.abc import Callable
+from dataclasses import replace
 from functools import partial
 from numbers import Integral
-
-import numpy as np
 
 from ..assemble.window import ChainWindow, build_window
 from ..declare import Chain, Point
 from ..eigen.solvers import Auto, Dense, Solver
-from ..errors import NotApplicable, ParameterError
+from ..errors import ParameterError
 from ..observe.evaluate import Laws
 from ..observe.segment import Segment
 from ..observe.solution import Solution
+from .cold import cold_laws, cold_notes, split, warm_part
 from .laws import long_laws, stationary_laws
 
 __all__ = ["solve"]
 
 
 def solve(point: Point, *, solver: Solver | None = None, digits: int | None = None) -> Solution:
-    """Solve an infinite chain at T > 0.
+    """Solve an infinite chain; at T = 0 every quantity is the limit from above.
 
     Parameters
     ----------
@@ -43,7 +43,7 @@ def solve(point: Point, *, solver: Solver | None = None, digits: int | None = No
     Raises
     ------
     NotApplicable
-        T = 0, which is the business of `ground_state`.
+        T = 0 in a chain with weights, or with energies that depend on T.
     SolveError, TooLargeError
         With the cause and the point.
 
@@ -67,10 +67,6 @@ def solve(point: Point, *, solver: Solver | None = None, digits: int | None = No
     chosen = Auto() if solver is None else solver
     if not isinstance(chosen, (Auto, Dense)):
         raise ParameterError(f"solver= takes Auto() or Dense(…), got {solver!r}")
-    if (np.asarray(point.number("T")) == 0).any():
-        raise NotApplicable(
-            "solve needs T > 0, got T = 0: at zero temperature ask for the ground state with ground_state(chain)"
-        )
     window = build_window(point.chain)
     dense = chosen.select(window.shape[0]) if isinstance(chosen, Auto) else chosen
     if digits is None:
@@ -89,16 +85,26 @@ def _laws(
     dense: Dense,
 ) -> Laws:
     """Solve now over the smallest window; wider ones, and sharper numbers, when they are asked for."""
-    base = laws_of(window, point)
+    warm, cold = split(point)
+
+    def everywhere(wide: ChainWindow) -> list[Segment]:
+        if not cold.size:
+            return laws_of(wide, point)
+        found = cold_laws(wide, point, cold, dense)
+        if warm.size:
+            found += [replace(s, indices=warm[s.indices]) for s in laws_of(wide, warm_part(point, warm))]
+        return found
+
+    base = everywhere(window)
 
     def widened(observables: tuple[str, ...]) -> tuple[ChainWindow, list[Segment]]:
         if not observables:
             return window, base
         wide = build_window(point.chain, observables)
-        return wide, laws_of(wide, point)
+        return wide, everywhere(wide)
 
     def sharper() -> Laws:
         more = 30 if digits is None else 2 * digits + 10
         return _laws(window, point, partial(long_laws, solver=dense, digits=more), more, dense)
 
-    return Laws(window, point.size, widened, digits, sharper)
+    return Laws(window, point.size, widened, digits, sharper, cold_notes(point, cold))

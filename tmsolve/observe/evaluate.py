@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+import math
+from collections.abc import Callable, Mapping, Sequence
 from fractions import Fraction
 from functools import cached_property
 from typing import Any
@@ -14,6 +15,9 @@ from ..errors import TooLargeError
 from ..operators.numbers import to_digits, to_double
 from .segment import Segment
 from .series import DISORDER, LEAST_ENERGY, ROOT, Monomial, Series
+
+#: Below this a cumulant at the temperature of the limit is zero, above its inverse infinite.
+_NOTHING = 1e-200
 
 __all__ = ["Laws", "fits"]
 
@@ -38,6 +42,8 @@ class Laws:
         Digits that values are rounded to; doubles when left out.
     sharper : callable, optional
         Returns the same laws with longer numbers.
+    notes : tuple of str
+        Reservations about some points.
     """
 
     def __init__(
@@ -47,12 +53,14 @@ class Laws:
         solve: Callable[[tuple[str, ...]], tuple[ChainWindow, list[Segment]]],
         digits: int | None = None,
         sharper: Callable[[], Laws] | None = None,
+        notes: tuple[str, ...] = (),
     ) -> None:
         self.window = window
         self.size = size
         self.digits = digits
         self._solve = solve
         self._sharper = sharper
+        self.notes = notes
         self._known: dict[tuple[str, ...], tuple[ChainWindow, list[Segment]]] = {}
 
     def segments(self, observables: Sequence[str] = ()) -> list[Segment]:
@@ -74,6 +82,9 @@ class Laws:
         names = {name for _, blocks in terms for block in blocks for name in _observables(block)}
         result = np.zeros(self.size, dtype=np.float64 if self.digits is None else object)
         for segment in self.segments(sorted(names)):
+            if segment.limit:
+                result[segment.indices] = _limit(segment, terms)
+                continue
             total = sum(
                 (_scaled(c, segment.beta, a) * _cumulant(segment, blocks) for (a, blocks), c in terms.items()),
                 start=segment.beta * 0,
@@ -108,6 +119,17 @@ class Laws:
 def _observables(block: str) -> list[str]:
     kind, name, _ = block.split("|")
     return [name] if kind == "observable" else []
+
+
+def _limit(segment: Segment, terms: Mapping[Monomial, Fraction]) -> float:
+    """Return the limit T → 0 of a sum of cumulants: powers of β go to 0 or infinity, tiny cumulants to 0."""
+    total = 0.0
+    for (a, blocks), c in terms.items():
+        value = float(to_double(_cumulant(segment, blocks))[0]) * float(c)
+        if abs(value) < _NOTHING or (a < 0 and blocks != (LEAST_ENERGY,)):
+            continue
+        total += value if a == 0 and abs(value) < 1 / _NOTHING else math.copysign(math.inf, value)
+    return total
 
 
 def _scaled(c: Fraction, beta: np.ndarray, power: int) -> Any:

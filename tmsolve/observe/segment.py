@@ -42,6 +42,8 @@ class Segment:
         ln |λ_k/λ₁| and phases, shape (points, m), of the dominant class.
     other_classes : tuple of callables
         ln (λ/λ₁) of all eigenvalues of other classes of states, and phases.
+    limit : bool
+        Whether the points stand for T = 0; ``beta`` is then large but has no meaning.
     """
 
     indices: np.ndarray
@@ -55,6 +57,7 @@ class Segment:
     edge_table: Callable[[tuple[str, ...]], np.ndarray | None]
     spectrum: Callable[[], tuple[np.ndarray, np.ndarray]]
     other_classes: tuple[Callable[[], tuple[np.ndarray, np.ndarray]], ...] = ()
+    limit: bool = False
 
     def double(self, values: Any) -> np.ndarray:
         """Round to doubles and spread over the points of the segment."""

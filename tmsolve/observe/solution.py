@@ -258,6 +258,8 @@ class Solution:
             _positive("k", k)
         segment = self.laws.segments()[0]
         log_modulus, phase = sorted_spectrum(segment)
+        if float(self.point.number("T")) == 0:
+            raise NotApplicable("at T = 0 eigenvalues have no finite logarithm; gaps(k) has the limits of their ratios")
         root = -float(self.free_energy) / float(self.point.number("T"))
         return levels(root, log_modulus[0], phase[0], k)
 
@@ -298,7 +300,14 @@ class Solution:
     @property
     def log_eigenvalue(self) -> np.ndarray:
         """Logarithm of the largest eigenvalue, ln λ₁ = −f/T."""
+        if (np.asarray(self.point.T) == 0).any():
+            raise NotApplicable("at T = 0 the largest eigenvalue has no finite logarithm")
         return np.asarray(-self.free_energy / self.point.T)[()]
+
+    @property
+    def notes(self) -> tuple[str, ...]:
+        """Reservations about some points, in words: limits at T = 0, near ties of ground states."""
+        return self.laws.notes
 
     @property
     def diagnostics(self) -> Mapping[str, Any]:

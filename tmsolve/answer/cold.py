@@ -1,0 +1,81 @@
+"""Points at T = 0: limits taken on the exact ground states.
+
+The ground states give energy and gap Δ exactly. The chain of states is taken at a temperature
+so far below Δ that every correction exp(−Δ/T) is nothing even beside the smallest numbers;
+long numbers hold it. What is finite there is the limit, what has grown or shrunk beyond all
+bounds is infinite or zero.
+"""
+
+from __future__ import annotations
+
+from dataclasses import replace
+from fractions import Fraction
+from types import MappingProxyType
+from typing import Any
+
+import numpy as np
+
+from ..assemble.window import ChainWindow
+from ..declare import Point
+from ..eigen.solvers import Dense
+from ..errors import TooLargeError
+from ..ground.states import ground_state
+from ..observe.segment import Segment
+from .classes import CLIMB_LIMIT, FIRST_BITS, exact_values
+from .laws import long_law
+
+__all__ = ["cold_laws", "cold_notes", "split"]
+
+#: The temperature of the limit, in units of the gap.
+_DEPTH = Fraction(1, 10**8)
+
+
+def split(point: Point) -> tuple[np.ndarray, np.ndarray]:
+    """Return the flat positions of the points at T > 0 and at T = 0."""
+    flat = np.broadcast_to(np.asarray(point.number("T"), dtype=np.float64), point.shape).ravel()
+    return np.flatnonzero(flat > 0), np.flatnonzero(flat == 0)
+
+
+def warm_part(point: Point, indices: np.ndarray) -> Point:
+    """Return the points of a batch at some positions, as a batch of its own."""
+    values: dict[str, Any] = {
+        name: value if isinstance(value, (Fraction, float)) else value[indices] for name, value in point.flat().items()
+    }
+    return Point(point.chain, MappingProxyType(values), (indices.size,))
+
+
+def cold_laws(window: ChainWindow, point: Point, indices: np.ndarray, solver: Dense) -> list[Segment]:
+    """Return the law of every point at T = 0, marked as a limit.
+
+    Raises
+    ------
+    NotApplicable
+        Energies that depend on T, and weights, have no ground state.
+    """
+    size = max(window.shape)
+    if size > CLIMB_LIMIT:
+        raise TooLargeError(
+            f"solve takes T = 0 for up to {CLIMB_LIMIT} joint states of the cut; this chain has {size}. "
+            "ground_state(chain) has no such limit",
+            limit=CLIMB_LIMIT,
+        )
+    segments = []
+    for index in indices:
+        values = exact_values(point, int(index))
+        gap = ground_state(point.pick(int(index)) if point.shape else point).gap.energy
+        depth = (gap if gap else Fraction(1)) * _DEPTH
+        there = Point(point.chain, MappingProxyType({**values, "T": depth}), ())
+        segment = long_law(window, there, 0, solver, FIRST_BITS)
+        segments.append(replace(segment, indices=np.array([index]), limit=True))
+    return segments
+
+
+def cold_notes(point: Point, indices: np.ndarray) -> tuple[str, ...]:
+    """Return what the ground states of the points at T = 0 have to say (near ties, inexact energies)."""
+    notes: dict[str, None] = {}
+    for index in indices:
+        at = point.pick(int(index)) if point.shape else point
+        notes.update(dict.fromkeys(f"T = 0: {note}" for note in ground_state(at).notes))
+    if indices.size:
+        notes["T = 0: quantities are limits from above; what diverges is inf"] = None
+    return tuple(notes)
