@@ -81,17 +81,7 @@ def plot_gaps(
     gaps = np.broadcast_to(line.gather(lambda solution: solution.gaps(int(k)).T, x), (int(k), x.size))
     with rc():
         ax = axes_for(ax)
-        for i, gap in enumerate(np.where(np.isfinite(gaps), gaps, np.nan)):
-            if np.isfinite(gap).any():
-                # Later curves are thinner and on top, so that two that coincide are both seen.
-                ax.plot(
-                    x,
-                    gap,
-                    color=COLOURS[i % len(COLOURS)],
-                    linestyle=STROKES[i % len(STROKES)],
-                    linewidth=2.0 - 1.0 * i / max(int(k) - 1, 1),
-                    label=rf"$i={i + 2}$",
-                )
+        _curves(ax, x, np.where(np.isfinite(gaps), gaps, np.nan))
         plot_events(ax, found, colour="black")
         if line.geometric:
             ax.set_xscale("log")
@@ -102,3 +92,17 @@ def plot_gaps(
         ax.legend(frameon=False, handlelength=2.6)
         finish(ax)
     return ax
+
+
+def _curves(ax: Any, x: np.ndarray, gaps: np.ndarray) -> None:
+    for i, gap in enumerate(gaps):
+        if np.isfinite(gap).any():
+            # Later curves are thinner and on top, so that two that coincide are both seen.
+            ax.plot(
+                x,
+                gap,
+                color=COLOURS[i % len(COLOURS)],
+                linestyle=STROKES[i % len(STROKES)],
+                linewidth=2.0 - 1.0 * i / max(len(gaps) - 1, 1),
+                label=rf"$i={i + 2}$",
+            )

@@ -183,16 +183,7 @@ def _merging(line: Line, low: float, high: float, centre: float, oscillates_belo
     if root is None:
         return None
     location, error, slope = root
-
-    def speed(solution: Solution, name: str) -> float:
-        point = solution.point
-        there = float(point.number(name))
-        step = 1e-5 * max(abs(there), 1e-3 * abs(location))
-        moved = [spectra(solve(point.replace(**{name: there + side * step}))) for side in (-1, 1)]
-        low, high = (discriminant(values, centre, size)[1][0] for values in moved)
-        return float((high - low) / (2 * step * slope))
-
-    error += shift_by_rounding(line, location, speed)
+    error += shift_by_rounding(line, location, _speed(centre, size, slope))
     mean = float(mean_and_split(np.array([location]))[0][0])
     side = ("below", "above")[not oscillates_below]
     kind = "monotonic" if mean > 0 else "alternating"
@@ -205,6 +196,19 @@ def _merging(line: Line, low: float, high: float, centre: float, oscillates_belo
         mean * mean / abs(slope),
         f"oscillating decay {side}, {kind} on the other side",
     )
+
+
+def _speed(centre: float, size: int, slope: float) -> Callable[[Solution, str], float]:
+    """Return the function that gives how fast a merging moves with a parameter, for its error."""
+
+    def speed(solution: Solution, name: str) -> float:
+        there = float(solution.point.number(name))
+        step = 1e-5 * max(abs(there), 1e-3)
+        moved = [solve(solution.point.replace(**{name: there + side * step})) for side in (-1, 1)]
+        low, high = (discriminant(spectra(other), centre, size)[1][0] for other in moved)
+        return float((high - low) / (2 * step * slope))
+
+    return speed
 
 
 def _root(

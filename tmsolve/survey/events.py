@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Callable, Mapping, Sequence
 from dataclasses import replace
 from fractions import Fraction
+from numbers import Integral
 from typing import Any
 
 import numpy as np
@@ -93,24 +94,32 @@ def crossovers(
     ('maximum of specific_heat', 0.833556559601, 0.439228839891)
     """
     line = make_line(chain, along, between)
-    if isinstance(points, bool) or not isinstance(points, int) or points < 5:
+    if isinstance(points, bool) or not isinstance(points, Integral) or points < 5:
         raise ParameterError(f"points is a whole number >= 5, got {points!r}")
     wanted = _wanted(line, watch)
     ranges = {name: middle for name in chain.observables if (middle := half_way(line, name)) is not None}
     levels = _levels(line, wanted, level, ranges)
     events = _from_curves(line, [name for name in wanted if name != _DISORDER], levels, ranges, points)
+    failure: SolveError | None = None
     if _DISORDER in wanted:
-        events += disorder_points(line, tuple(chain.observables), points)
-    found = tuple(sorted(events, key=lambda event: event.location))
+        try:
+            events += disorder_points(line, tuple(chain.observables), points)
+        except SolveError as error:
+            failure = error
+    return _checked(line, tuple(sorted(events, key=lambda event: event.location)), failure)
+
+
+def _checked(line: Line, found: tuple[Event, ...], failure: SolveError | None) -> tuple[Event, ...]:
+    """Return the events, or raise with them where parts of the line could not be solved."""
     lost = line.unsolved()
     if lost:
-        where, error = lost[0]
-        raise SolveError(
-            f"{len(lost)} points could not be solved, the first at {along} = {where!r}: {error}. "
-            "The events found elsewhere are in .partial",
-            found,
-        ) from error
-    return found
+        where, failure = lost[0]
+        text = f"{len(lost)} points could not be solved, the first at {line.along} = {where!r}: {failure}"
+    elif failure is not None:
+        text = f"a disorder point could not be followed: {failure}"
+    else:
+        return found
+    raise SolveError(f"{text}. The events found elsewhere are in .partial", found) from failure
 
 
 def _wanted(line: Line, watch: str | Sequence[str] | None) -> list[str]:
