@@ -16,7 +16,7 @@ from typing import Any
 
 from .boltzmann import Monomial, Terms
 
-__all__ = ["Alphabet", "Laurent", "Scale"]
+__all__ = ["Alphabet", "Laurent", "Scale", "common_measure"]
 
 #: Whole exponents of the symbols of a common monomial.
 Scale = tuple[int, ...]
@@ -46,7 +46,7 @@ class Alphabet:
         for each in terms:
             for monomial in each:
                 for key, exponent in monomial:
-                    measures[key] = _common_measure(measures.get(key, Fraction(0)), exponent)
+                    measures[key] = common_measure((measures.get(key, Fraction(0)), exponent))
         ordered = sorted(measures, key=lambda key: key.sort_key())
         return cls(tuple(ordered), tuple(measures[key] for key in ordered))
 
@@ -75,9 +75,7 @@ class Alphabet:
         ring = self.ring
         domain = ring.domain
         content = {
-            tuple(p - s for p, s in zip(self._powers(monomial), scale, strict=True)): domain(
-                c.numerator, c.denominator
-            )
+            tuple(p - s for p, s in zip(self._powers(monomial), scale, strict=True)): domain(c.numerator, c.denominator)
             for monomial, c in terms.items()
         }
         return ring.from_dict(content)
@@ -97,14 +95,18 @@ class Alphabet:
         }
 
 
-def _common_measure(a: Fraction, b: Fraction) -> Fraction:
-    """Greatest rational that divides both a whole number of times.
+def common_measure(numbers: Iterable[Fraction]) -> Fraction:
+    """Return the greatest rational of which all are whole multiples; 0 for none.
 
     Examples
     --------
-    >>> _common_measure(Fraction(1, 2), Fraction(1, 3))
+    >>> common_measure([Fraction(1, 2), Fraction(-1, 3)])
     Fraction(1, 6)
     """
-    return Fraction(
-        math.gcd(a.numerator * b.denominator, b.numerator * a.denominator), a.denominator * b.denominator
-    )
+    total = Fraction(0)
+    for c in numbers:
+        total = Fraction(
+            math.gcd(total.numerator * c.denominator, c.numerator * total.denominator),
+            total.denominator * c.denominator,
+        )
+    return total

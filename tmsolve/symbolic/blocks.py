@@ -11,13 +11,15 @@ from __future__ import annotations
 import itertools
 from collections.abc import Callable, Hashable, Sequence
 from dataclasses import dataclass, replace
-from typing import Any
+from typing import Any, TypeVar
 
 import numpy as np
 
 from .permutations import Permutation, involutions, orbits
 
 __all__ = ["Block", "components", "lump", "merged", "split"]
+
+Key = TypeVar("Key", bound=Hashable)
 
 _DIFFERENCES = "differences of equivalent states"
 
@@ -156,15 +158,18 @@ def components(block: Block, present: Callable[[Any], bool] = bool) -> list[Bloc
     return [replace(block, matrix=block.matrix[np.ix_(part, part)]) for part in parts]
 
 
-def merged(blocks: Sequence[Block], key: Callable[[Block], Hashable]) -> list[Block]:
-    """Count blocks with the same ``key`` (their characteristic polynomial) as one, the positive ones first."""
-    found: dict[Any, Block] = {}
-    for block in sorted(blocks, key=lambda b: not b.positive):
-        name = (key(block), block.size)
-        first = found.get(name)
-        if first is None:
-            found[name] = block
+def merged(blocks: Sequence[tuple[Block, Key]]) -> list[tuple[Block, Key]]:
+    """Count blocks with the same key (their characteristic polynomial) as one, the positive ones first.
+
+    Positive blocks stay apart from the others: two of them with one Perron root are a tie.
+    """
+    found: dict[Any, tuple[Block, Key]] = {}
+    for block, key in sorted(blocks, key=lambda pair: not pair[0].positive):
+        name = (key, block.size, block.positive)
+        if name not in found:
+            found[name] = block, key
             continue
-        label = first.label if first.positive or first.label == block.label else _DIFFERENCES
-        found[name] = replace(first, multiplicity=first.multiplicity + block.multiplicity, label=label)
+        first = found[name][0]
+        label = first.label if first.label == block.label else _DIFFERENCES
+        found[name] = replace(first, multiplicity=first.multiplicity + block.multiplicity, label=label), key
     return list(found.values())

@@ -105,7 +105,7 @@ def _exponential(exponent: Any) -> Terms:
         c = Fraction(int(number.p), int(number.q))
         base = key.args[0] if isinstance(key, sp.log) else None
         if base is not None and not base.is_Number and c.denominator == 1 and c > 0:
-            factor = multiply(factor, polynomial_terms(base ** c.numerator))
+            factor = multiply(factor, polynomial_terms(base**c.numerator))
         else:
             exponents[key] = exponents.get(key, Fraction(0)) + c
     monomial = frozenset((key, c) for key, c in exponents.items() if c)

@@ -92,9 +92,10 @@ class _AlarmClock:
         signal.setitimer(signal.ITIMER_REAL, self.seconds, _REPEAT)
 
     def _ring(self, _: int, frame: FrameType | None) -> None:
-        # Not while the timer is being set or turned off: it would go on ringing.
+        # Not while the timer is being set or turned off, or it would go on ringing; and not in a
+        # destructor, where the exception would be printed and lost. It rings again soon.
         own = (_AlarmClock.start.__code__, _AlarmClock.stop.__code__)
-        if frame is None or frame.f_code not in own:
+        if frame is None or (frame.f_code not in own and frame.f_code.co_name not in ("__del__", "_remove")):
             raise TimeUp
 
     def stop(self) -> None:
@@ -123,17 +124,23 @@ class _Watchdog:
     def stop(self) -> None:
         stopped = False
         while not stopped:
-            # An exception that was on its way arrives here at the latest.
+            # An exception that was on its way arrives here at the latest: the loop gives it the
+            # chance. (Taking it back would leave the interpreter's flag for it raised, with which
+            # CPython 3.11 never leaves a function that is being traced.)
             try:
                 self._done.set()
                 self._thread.join()
+                for _ in range(_BYTECODES):
+                    pass
                 stopped = True
             except TimeUp:
                 pass
-        _raise_in(self._target, None)
 
 
-def _raise_in(thread: int, error: type[BaseException] | None) -> None:
-    """Send an exception to a thread, or take back one that has not arrived."""
-    exception = ctypes.py_object(error) if error is not None else None
-    ctypes.pythonapi.PyThreadState_SetAsyncExc(ctypes.c_ulong(thread), exception)
+#: Turns of a loop after which an exception sent to this thread has certainly been raised.
+_BYTECODES = 1000
+
+
+def _raise_in(thread: int, error: type[BaseException]) -> None:
+    """Send an exception to a thread."""
+    ctypes.pythonapi.PyThreadState_SetAsyncExc(ctypes.c_ulong(thread), ctypes.py_object(error))

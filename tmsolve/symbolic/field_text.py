@@ -78,9 +78,11 @@ class FieldWriter:
             return total([self._quotient(times(b, Fraction(1, 2)), shift, []), self._quotient(a, shift, below)])
         ((exponents, c),) = shift.items()
         content, _ = _primitive({**{(0, x): v for x, v in a.items()}, **{(1, x): v for x, v in b.items()}})
-        a, b = (times(shifted(part, exponents, -1), 1 / content) for part in (a, b))
-        above = total([self.writer.draft(a), product([self.writer.draft(b), self._s()])])
-        return quotient(content / c, [above], below)
+        forms = []
+        for front in (content / 2, content, content * 2):
+            up, slope = (self.writer.draft(times(shifted(part, exponents, -1), 1 / front)) for part in (a, b))
+            forms.append(quotient(front / c, [total([up, product([slope, self._s()])])], below))
+        return shortest(forms)
 
     def _s(self) -> Draft:
         """Draft √D in units of the eigenvalue."""
@@ -118,7 +120,8 @@ class FieldWriter:
         parts = []
         for k, c in enumerate(poly):
             if c:
-                parts.append(product([self.writer.draft(self._plain(c, weight - k)), *([power(eigenvalue, k)] if k else [])]))
+                powers = [power(eigenvalue, k)] if k else []
+                parts.append(product([self.writer.draft(self._plain(c, weight - k)), *powers]))
         return total(parts)
 
     def _quotient(self, up: Laurent, down: Laurent, below: Sequence[Draft]) -> Draft:
@@ -148,9 +151,7 @@ def _is_monomial(key: Poly) -> bool:
 def _primitive(laurent: Mapping[Any, Fraction]) -> tuple[Fraction, Any]:
     """Split off the rational content."""
     values = list(laurent.values())
-    content = Fraction(
-        math.gcd(*(v.numerator for v in values)), math.lcm(*(v.denominator for v in values))
-    )
+    content = Fraction(math.gcd(*(v.numerator for v in values)), math.lcm(*(v.denominator for v in values)))
     if all(v < 0 for v in values):
         content = -content
     return content, {x: c / content for x, c in laurent.items()}

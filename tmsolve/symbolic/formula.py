@@ -6,12 +6,13 @@ costs milliseconds, and only the draft that is kept becomes an expression.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
+from functools import cmp_to_key
 from typing import Any
 
-__all__ = ["Draft", "atom", "call", "number", "power", "product", "quotient", "root", "total"]
+__all__ = ["Draft", "atom", "call", "distinct_total", "number", "power", "product", "quotient", "rational", "root", "total"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -47,13 +48,18 @@ def atom(expr: Any) -> Draft:
     return Draft(int(expr.count_ops()), len(str(expr)), lambda: expr)
 
 
-def number(c: Fraction) -> Draft:
-    """Return the draft of a number; fractions and signs count."""
+def rational(c: Fraction) -> Any:
+    """Return a number of sympy."""
     import sympy as sp
 
+    return sp.Rational(c.numerator, c.denominator)
+
+
+def number(c: Fraction) -> Draft:
+    """Return the draft of a number; fractions and signs count."""
     # A fraction inside a formula is harder on the eye than one operation.
     operations = 0 if c.denominator == 1 else 3
-    return Draft(operations, len(str(c)), lambda: sp.Rational(c.numerator, c.denominator), value=Fraction(c))
+    return Draft(operations, len(str(c)), lambda: rational(c), value=Fraction(c))
 
 
 def total(parts: Iterable[Draft]) -> Draft:
@@ -71,10 +77,23 @@ def total(parts: Iterable[Draft]) -> Draft:
     return Draft(operations, letters, lambda: sp.Add(*(part.build() for part in parts)), terms)
 
 
-def product(parts: Iterable[Draft]) -> Draft:
-    """Return the draft of a product; numbers are gathered in front."""
+def distinct_total(parts: Sequence[Draft]) -> Draft:
+    """Return the draft of a long sum of which no two terms can be combined; much faster to build."""
+    plain = total(parts)
+    return Draft(plain.operations, plain.letters, lambda: _summed([part.build() for part in parts]), plain.terms)
+
+
+def _summed(terms: list[Any]) -> Any:
     import sympy as sp
 
+    # In sympy's own order, so that the sum equals one that sympy has put together.
+    ordered = sorted(terms, key=cmp_to_key(lambda a, b: a.compare(b)))
+    numbers = [term for term in ordered if term.is_Number]
+    return sp.Add(*numbers, *(term for term in ordered if not term.is_Number), evaluate=False)
+
+
+def product(parts: Iterable[Draft]) -> Draft:
+    """Return the draft of a product; numbers are gathered in front."""
     front, factors = Fraction(1), []
     for part in parts:
         if part.value is None:
@@ -96,10 +115,11 @@ def product(parts: Iterable[Draft]) -> Draft:
 def _multiplied(sign: int, factors: list[Any]) -> Any:
     import sympy as sp
 
-    # sympy would multiply a number or a sign into a bracket.
-    if sign == 1 and len(factors) == 2 and factors[0].is_Number and factors[1].is_Add:
+    # sympy would multiply a number or a sign into a bracket, and looks long at a number times a function.
+    kept = factors[-1].is_Add or factors[-1].is_Function
+    if sign == 1 and len(factors) == 2 and factors[0].is_Number and kept:
         return sp.Mul(*factors, evaluate=False)
-    if sign == -1 and len(factors) == 1 and factors[0].is_Add:
+    if sign == -1 and len(factors) == 1 and kept:
         return sp.Mul(sign, *factors, evaluate=False)
     return sp.Mul(sign, *factors)
 
@@ -148,5 +168,9 @@ def call(name: str, argument: Draft) -> Draft:
     """Return the draft of a sympy function of one argument."""
     import sympy as sp
 
-    function = getattr(sp, name)
-    return Draft(argument.operations + 1, argument.letters + len(name) + 2, lambda: function(argument.build()))
+    def build() -> Any:
+        inside = argument.build()
+        # Numbers are looked at (exp(1) is E); what holds symbols has nothing to be found in it.
+        return getattr(sp, name)(inside, evaluate=bool(inside.is_number))
+
+    return Draft(argument.operations + 1, argument.letters + len(name) + 2, build)

@@ -28,7 +28,7 @@ class Jet:
         self.x, self.a, self.b, self.c = x, a, b, c
 
     @classmethod
-    def source(cls, one: Any, slope: Any, order: int) -> Jet:
+    def source(cls, order: int, one: Any, slope: Any) -> Jet:
         """Return 1 + φ·slope for ``order`` 0, 1 + ψ·slope for ``order`` 1."""
         return cls(one, slope) if order == 0 else cls(one, 0, slope)
 

@@ -7,6 +7,7 @@ from typing import Any
 
 from .alphabet import Laurent
 from .field_text import write_quotient
+from .roots import all_real, quadratic
 from .spectrum import Factor, Spectrum
 
 __all__ = ["correlation_length"]
@@ -16,33 +17,65 @@ def correlation_length(spectrum: Spectrum, eigenvalues: Sequence[tuple[Any, int]
     """Return −1/ln(|λ₂|/λ₁) in cells; 0 when every other eigenvalue vanishes."""
     import sympy as sp
 
-    first, multiplicity = eigenvalues[0]
-    if multiplicity > 1:
-        return sp.oo
-    dominated = _dominated(spectrum, first)
-    ratios = [
-        _ratio(spectrum, value, first) for value, _ in eigenvalues[1:] if value != 0 and value not in dominated
-    ]
-    if not ratios:
+    first = eigenvalues[0][0]
+    rivals = [f for f in spectrum.factors if not f.is_zero and f.roots != (first,)]
+    rivals = [f for f in rivals if not any(_dominates(spectrum, other, f) for other in rivals)]
+    if not rivals:
         return sp.Integer(0)
-    return -1 / sp.log(ratios[0] if len(ratios) == 1 else sp.Max(*ratios, evaluate=False))
+    if len(rivals) == 1 and rivals[0].degree == 1 and first in _linear(spectrum):
+        ratio = _ratio(spectrum, rivals[0], _linear(spectrum)[first])
+        return sp.oo if ratio == 1 else -1 / sp.log(ratio)
+    moduli = [modulus for factor in rivals for modulus in _moduli(spectrum, factor, first)]
+    second = moduli[0] if len(moduli) == 1 else sp.Max(*moduli, evaluate=False)
+    return -1 / sp.log(second / first)
 
 
-def _dominated(spectrum: Spectrum, first: Any) -> set[Any]:
-    """Return eigenvalues whose modulus is nowhere the second largest, for reasons of sign alone."""
-    found: set[Any] = set()
-    for factor in spectrum.factors:
-        # Of t/2 ± s the root with the sign of t is the larger one, or they are conjugate.
-        sign = _sign(_trace(spectrum, factor))
-        if factor.degree == 2 and factor.roots and sign and first not in factor.roots:
-            found.add(factor.roots[1 if sign == 1 else 0])
-    rivals = [(f.roots[0], _trace(spectrum, f)) for f in spectrum.factors if f.degree == 1 and f.roots]
-    rivals = [(value, trace) for value, trace in rivals if value != first]
-    for small, a in rivals:
-        for large, b in rivals:
-            if large is not small and _sign(_plus(b, a)) == 1 == _sign(_plus(b, a, -1)):
-                found.add(small)
-    return found
+def _linear(spectrum: Spectrum) -> dict[Any, Factor]:
+    return {f.roots[0]: f for f in spectrum.factors if f.degree == 1 and f.roots}
+
+
+def _dominates(spectrum: Spectrum, large: Factor, small: Factor) -> bool:
+    """Whether one simple eigenvalue is the larger modulus because all terms of both sum and difference are positive."""
+    if large is small or large.degree != 1 or small.degree != 1:
+        return False
+    a, b = _trace(spectrum, large), _trace(spectrum, small)
+    return _sign(_plus(a, b)) == 1 == _sign(_plus(a, b, -1))
+
+
+def _moduli(spectrum: Spectrum, factor: Factor, first: Any) -> list[Any]:
+    """Return expressions for the largest modulus among the roots of a factor, the Perron root left out."""
+    import sympy as sp
+
+    rest = [root for root in factor.roots if root != first]
+    if len(rest) == 1:
+        sign = _sign(_trace(spectrum, factor)) if factor.degree == 1 else 0
+        return [rest[0] * sign if sign else sp.Abs(rest[0], evaluate=False)]
+    if factor.degree != 2:
+        return [sp.Abs(root, evaluate=False) for root in rest]
+    return _pair(spectrum, factor)
+
+
+def _pair(spectrum: Spectrum, factor: Factor) -> list[Any]:
+    """Return real expressions whose maximum is the larger modulus of T ± √D, conjugate or not.
+
+    It is |T| + √D for D ≥ 0 and √(T² − D) for D < 0; each is the smaller one where it does not hold.
+    """
+    import sympy as sp
+
+    matrix = spectrum.matrix
+    block = factor.block.matrix if factor.block.size == 2 else None
+    form = quadratic(factor.polynomial, matrix, spectrum.writer, block)
+    front = sp.Rational(form.front.numerator, form.front.denominator)
+    trace_sign = _sign(_trace(spectrum, factor))
+    middle = trace_sign * form.middle.build() or sp.Abs(form.middle.build(), evaluate=False)
+    inside, outside = form.inside.build(), form.outside.build()
+    outside = outside if outside.is_positive else sp.Abs(outside, evaluate=False)
+    constant = sp.sqrt(sp.Abs(spectrum.writer.write(matrix.laurent(factor.polynomial[2], 2)), evaluate=False))
+    if inside.is_negative:
+        return [constant]
+    if inside.is_positive or all_real(matrix.entries):
+        return [front * (middle + outside * sp.sqrt(inside))]
+    return [front * (middle + outside * sp.sqrt(sp.Max(inside, 0, evaluate=False))), constant]
 
 
 def _trace(spectrum: Spectrum, factor: Factor) -> Laurent:
@@ -63,13 +96,11 @@ def _plus(a: Laurent, b: Laurent, sign: int = 1) -> Laurent:
     return {x: c for x, c in total.items() if c}
 
 
-def _ratio(spectrum: Spectrum, value: Any, first: Any) -> Any:
-    """Return |value|/first."""
+def _ratio(spectrum: Spectrum, factor: Factor, first: Factor) -> Any:
+    """Return the modulus of a simple eigenvalue over the Perron root, both being sums of exponentials."""
     import sympy as sp
 
-    traces = {f.roots[0]: _trace(spectrum, f) for f in spectrum.factors if f.degree == 1 and f.roots}
-    if value in traces and first in traces:
-        ratio = write_quotient(spectrum.writer, traces[value], traces[first]).build()
-        sign = _sign(traces[value])
-        return ratio * sign if sign else sp.Abs(ratio, evaluate=False)
-    return sp.Abs(value, evaluate=False) / first
+    trace = _trace(spectrum, factor)
+    ratio = write_quotient(spectrum.writer, trace, _trace(spectrum, first)).build()
+    sign = _sign(trace)
+    return ratio * sign if sign else sp.Abs(ratio, evaluate=False)

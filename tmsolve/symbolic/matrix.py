@@ -5,12 +5,12 @@ from __future__ import annotations
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
-from functools import cached_property
+from functools import cached_property, partial
 from typing import Any
 
 import numpy as np
 
-from ..assemble.window import ChainWindow, Degeneracy, build_window, place_in
+from ..assemble.window import ChainWindow, Degeneracy, SiteWeights, build_window, place_in
 from ..declare.chain import Chain
 from ..declare.terms import Term
 from ..operators.elimination import ArrayAlgebra
@@ -106,8 +106,9 @@ def _factor_tables(chain: Chain, window: ChainWindow) -> list[np.ndarray]:
     tables = []
     for factor in window.factors:
         source = factor.source
-        if isinstance(source, Degeneracy):
-            tables.append(_each(np.array(source.states.weights, dtype=object), _constant))
+        if isinstance(source, (Degeneracy, SiteWeights)):
+            weights = source.states.weights if isinstance(source, Degeneracy) else source.weights
+            tables.append(_each(np.array(weights, dtype=object), _constant))
             continue
         if source not in known:
             weigh = polynomial_terms if source.role == "weight" else lambda energy: boltzmann_terms(energy, inverse)
@@ -116,8 +117,8 @@ def _factor_tables(chain: Chain, window: ChainWindow) -> list[np.ndarray]:
     return tables
 
 
-def _constant(value: Fraction) -> Terms:
-    return {frozenset(): value}
+def _constant(value: Any) -> Terms:
+    return {frozenset(): Fraction(value)} if value else {}
 
 
 def _each(table: np.ndarray, convert: Callable[[Any], Any]) -> np.ndarray:
@@ -125,6 +126,10 @@ def _each(table: np.ndarray, convert: Callable[[Any], Any]) -> np.ndarray:
     for index in np.ndindex(table.shape):
         result[index] = convert(table[index])
     return result
+
+
+def _element(alphabet: Alphabet, scale: Scale, wrap: Callable[[Any], Any], terms: Terms) -> Any:
+    return wrap(alphabet.element(terms, scale))
 
 
 def _reduce(
@@ -140,17 +145,17 @@ def _reduce(
     for table in tables:
         scale = alphabet.scale(table.ravel())
         total = [a + b for a, b in zip(total, scale, strict=True)]
-        elements.append(_each(table, lambda terms, scale=scale: wrap(alphabet.element(terms, scale))))
+        elements.append(_each(table, partial(_element, alphabet, scale, wrap)))
     extra = []
     one: Terms = {frozenset(): Fraction(1)}
     for order, sites, table in sources:
         scale = alphabet.scale([one, *table.ravel()])
         total = [a + b for a, b in zip(total, scale, strict=True)]
         unit = alphabet.element(one, scale)
-        tilt = _each(table, lambda t, s=scale, u=unit, o=order: Jet.source(u, alphabet.element(t, s), o))
-        extra.append((sites, tilt))
-    reduced = window.reduce(ArrayAlgebra(), elements, extra)
-    shape = [window.sizes[site] for site in window.sites]
-    zero = wrap(alphabet.ring.zero)
-    matrix = window.matrix(np.broadcast_to(reduced, shape), zero)
-    return SymbolicMatrix(window, alphabet, matrix, tuple(total))
+        extra.append((sites, _each(table, partial(_element, alphabet, scale, partial(Jet.source, order, unit)))))
+    # A batch axis of length one, so that numpy never takes a lone element out of its array.
+    batched = [table[..., None] for table in elements]
+    reduced = window.reduce(ArrayAlgebra(), batched, [(sites, tilt[..., None]) for sites, tilt in extra])
+    shape = [*(window.sizes[site] for site in window.sites), 1]
+    matrix = window.matrix(np.broadcast_to(reduced, shape), wrap(alphabet.ring.zero))
+    return SymbolicMatrix(window, alphabet, matrix[..., 0], tuple(total))

@@ -50,6 +50,8 @@ def verified(table: np.ndarray, sites: Sequence[tuple[str, int]], sizes: Sequenc
     sizes : sequence of int
         Number of states of each.
     """
+    if not sites:
+        return []
     basis = np.array(list(itertools.product(*(range(size) for size in sizes))), dtype=np.intp).reshape(-1, len(sites))
     found: list[Permutation] = []
     images: set[bytes] = {np.arange(len(basis)).tobytes()}
@@ -94,9 +96,10 @@ def _state_moves(basis: np.ndarray, columns: list[int], sizes: set[int], name: s
     if len(sizes) != 1:
         return
     (q,) = sizes
-    maps = [(f"rotation of the states{name}", (np.arange(q) + 1) % q), (f"reflection of the states{name}", -np.arange(q) % q)]
+    identity = np.arange(q)
+    maps = [(f"rotation of the states{name}", (identity + 1) % q), (f"reflection of the states{name}", -identity % q)]
     for i, j in itertools.combinations(range(q if q <= _EXCHANGES else 0), 2):
-        swap = np.arange(q)
+        swap = identity.copy()
         swap[[i, j]] = j, i
         maps.append((f"exchange of states {i} and {j}{name}", swap))
     for label, image in maps:

@@ -38,7 +38,7 @@ def perron_of(chain: Chain, spectrum: Spectrum) -> Perron:
         value = sp.Max(*values, evaluate=False)
     else:
         value = eigenvalue_symbol()
-    return Perron(chain, spectrum, factor, value, tied=len(leading) > 1)
+    return Perron(chain, spectrum, factor, value, tied=len(leading) > 1 or factor.leading > 1)
 
 
 class Perron:
@@ -75,13 +75,18 @@ class Perron:
 
         return -sp.log(self.value) / self.beta
 
-    @cached_property
-    def _thermal(self) -> tuple[Thermal, FieldWriter]:
+    def require_one_root(self) -> None:
+        """Refuse what has a meaning for a simple largest eigenvalue only."""
         if self.tied:
             raise NotApplicable(
-                "the states of this chain fall into classes that never reach each other, and which one has the larger "
-                "eigenvalue depends on the parameters; there is no one formula for derivatives. Use solve(chain.at(…))"
+                "the states of this chain fall into classes that do not reach each other, and several have the "
+                "largest eigenvalue, here or at other parameters; there is no one formula for derivatives. Use "
+                "solve(chain.at(…))"
             )
+
+    @cached_property
+    def _thermal(self) -> tuple[Thermal, FieldWriter]:
+        self.require_one_root()
         matrix, factor = self.spectrum.matrix, self.factor
         field = RootField(factor.polynomial, matrix.alphabet.ring)
         block = factor.block.matrix if factor.degree == factor.block.size == 2 else None
@@ -118,12 +123,12 @@ class Perron:
 
     def mean(self, name: str) -> Any:
         """Return the mean of an observable per cell."""
-        assert self._thermal is not None
+        self.require_one_root()
         writer, element = mean_element(self.chain, name, self.value)
         return writer.write(element)
 
     def susceptibility(self, first: str, second: str) -> Any:
         """Return ∂⟨first⟩/∂φ for an added energy −φ·second."""
-        assert self._thermal is not None
+        self.require_one_root()
         writer, element = response_element(self.chain, first, second, self.value)
         return self.beta * writer.write(element)

@@ -109,9 +109,7 @@ def _factor_list(coefficients: Coefficients, ring: Any) -> list[tuple[Coefficien
 
     bigger = ring.clone(symbols=(sp.Symbol("lambda"), *ring.symbols))
     degree = len(coefficients) - 1
-    content = {
-        (degree - k, *powers): c for k, element in enumerate(coefficients) for powers, c in element.terms()
-    }
+    content = {(degree - k, *powers): c for k, element in enumerate(coefficients) for powers, c in element.terms()}
     _, found = bigger.from_dict(content).factor_list()
     return [(_monic(factor, ring), multiplicity) for factor, multiplicity in found]
 

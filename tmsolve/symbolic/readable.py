@@ -11,13 +11,13 @@ from collections.abc import Callable, Iterable
 from fractions import Fraction
 from typing import Any
 
-from .alphabet import Alphabet, Laurent
-from .formula import Draft, atom, call, number, power, product, total
+from .alphabet import Alphabet, Laurent, common_measure
+from .formula import Draft, atom, call, distinct_total, number, power, product, rational, total
 
 __all__ = ["Vector", "Writer", "shifted", "times"]
 
-#: Longer sums are written out term by term.
-_TERMS = 60
+#: Longer sums are not collected any more, and still longer ones only written term by term.
+_COLLECTED_TERMS, _FACTORED_TERMS = 24, 60
 
 #: Exponents of the classes.
 Vector = tuple[Fraction, ...]
@@ -39,8 +39,10 @@ class Writer:
         #: Powers of a weight w are no exponentials: nothing hyperbolic is written with ln w.
         self._proper = tuple(not isinstance(key, sp.log) for key in alphabet.classes)
         self._atoms = [atom(key if proper else key.args[0]) for key, proper in self._pairs_of_classes()]
+        shared = sp.Symbol("beta", positive=True)
+        self._over_beta = [key / shared if shared in sp.Mul.make_args(key) else None for key in alphabet.classes]
         self._known: dict[frozenset[tuple[Vector, Fraction]], Draft] = {}
-        self._centred: dict[Vector, Draft] = {}
+        self._arguments: dict[Vector, Draft] = {}
 
     def _pairs_of_classes(self) -> Iterable[tuple[Any, bool]]:
         return zip(self.alphabet.classes, self._proper, strict=True)
@@ -56,10 +58,15 @@ class Writer:
         if key not in self._known:
             # Held while the forms are drafted, in case a form asks for the same sum again.
             self._known[key] = self.plain(terms)
-            if 1 < len(terms) <= _TERMS:
-                drafts = [form(terms) for form in (self.plain, self._paired, self._collected, self._factored)]
-                self._known[key] = shortest(drafts)
+            self._known[key] = shortest([form(terms) for form in self._forms(len(terms))])
         return self._known[key]
+
+    def _forms(self, length: int) -> tuple[Callable[[Laurent], Draft | None], ...]:
+        if length < 2 or length > _FACTORED_TERMS:
+            return (self.plain,)
+        if length > _COLLECTED_TERMS:
+            return self.plain, self._paired, self._factored
+        return self.plain, self._paired, self._collected, self._factored
 
     def monomial(self, exponents: Vector, c: Fraction = Fraction(1)) -> Draft:
         """Return c · exp(Σ exponents · classes)."""
@@ -73,20 +80,39 @@ class Writer:
 
     def argument(self, exponents: Vector) -> Draft:
         """Return Σ exponents · classes over the proper exponentials, with β and numbers in front."""
-        if exponents not in self._centred:
-            import sympy as sp
-
-            parts = [
-                sp.Rational(exponent.numerator, exponent.denominator) * key
-                for (key, proper), exponent in zip(self._pairs_of_classes(), exponents, strict=False)
+        if exponents not in self._arguments:
+            used = [
+                (base, exponent)
+                for base, exponent, proper in zip(self._atoms, exponents, self._proper, strict=False)
                 if proper and exponent
             ]
-            self._centred[exponents] = atom(sp.factor_terms(sp.Add(*parts)) if len(parts) > 1 else sp.Add(*parts))
-        return self._centred[exponents]
+            content = common_measure(exponent for _, exponent in used)
+            numbers = sum(abs(exponent) != content for _, exponent in used)
+            # A denominator is harder on the eye than a factor.
+            numbers += (content.numerator != 1) + 2 * (content.denominator != 1)
+            operations = sum(base.operations for base, _ in used) + len(used) - 1 + numbers
+            letters = sum(base.letters for base, _ in used) + 3 * (len(used) - 1) + 2 * numbers + (used[0][1] < 0)
+            self._arguments[exponents] = Draft(operations, letters, lambda: self._argument(exponents, content))
+        return self._arguments[exponents]
+
+    def _argument(self, exponents: Vector, content: Fraction) -> Any:
+        import sympy as sp
+
+        used = [(k, exponent) for k, exponent in enumerate(exponents) if self._proper[k] and exponent]
+        if all(exponent < 0 for _, exponent in used):
+            content = -content
+        classes = self.alphabet.classes
+        if len(used) == 1:
+            return rational(content) * classes[used[0][0]]
+        if any(self._over_beta[k] is None for k, _ in used):
+            return sp.factor_terms(sp.Add(*(rational(exponent) * classes[k] for k, exponent in used)))
+        inside = sp.Add(*(rational(exponent / content) * self._over_beta[k] for k, exponent in used))
+        return sp.Mul(rational(content), sp.Symbol("beta", positive=True), inside)
 
     def plain(self, terms: Laurent) -> Draft:
         """Write exponentials as they come."""
-        return total(self.monomial(exponents, c) for exponents, c in terms.items())
+        parts = [self.monomial(exponents, c) for exponents, c in terms.items()]
+        return distinct_total(parts) if len(parts) > _FACTORED_TERMS else total(parts)
 
     def _paired(self, terms: Laurent) -> Draft | None:
         """Write exp(a + b) ± exp(a − b) as 2 exp(a) cosh(b) or sinh(b), simplest a first."""
@@ -226,8 +252,4 @@ def _weight(vector: Vector) -> tuple[int, Fraction]:
 
 
 def _rational_power(base: Draft, exponent: Fraction) -> Draft:
-    import sympy as sp
-
-    if exponent == 1:
-        return base
-    return atom(base.build() ** sp.Rational(exponent.numerator, exponent.denominator))
+    return base if exponent == 1 else atom(base.build() ** rational(exponent))

@@ -5,7 +5,6 @@ from __future__ import annotations
 from typing import TYPE_CHECKING, Any
 
 from .alphabet import Laurent
-from .lengths import correlation_length
 from .perron import eigenvalue_symbol
 from .plain import latex_text, plain_text
 from .polynomials import Coefficients
@@ -14,7 +13,7 @@ from .spectrum import Spectrum
 if TYPE_CHECKING:
     from .forms import ClosedForm
 
-__all__ = ["correlation_length", "latex", "long_sum", "matrix", "polynomial", "reason", "recurrence", "text"]
+__all__ = ["latex", "long_sum", "matrix", "polynomial", "reason", "recurrence", "text"]
 
 #: Sums with more terms are written out in exponentials without looking for a shorter form.
 _READABLE_TERMS = 12
@@ -52,9 +51,7 @@ def polynomial(spectrum: Spectrum) -> Any:
     root = eigenvalue_symbol()
     product = sp.Integer(1)
     for factor in spectrum.factors:
-        coefficients = [
-            _coefficient(spectrum, spectrum.matrix.laurent(c, k)) for k, c in enumerate(factor.polynomial)
-        ]
+        coefficients = [_coefficient(spectrum, spectrum.matrix.laurent(c, k)) for k, c in enumerate(factor.polynomial)]
         one = sp.Add(*(c * root ** (factor.degree - k) for k, c in enumerate(coefficients)))
         product *= one**factor.multiplicity
     return product
@@ -62,9 +59,7 @@ def polynomial(spectrum: Spectrum) -> Any:
 
 def recurrence(spectrum: Spectrum, minimal: Coefficients) -> tuple[Any, ...]:
     """Return c₁, c₂, … of Z_N = Σ c_k Z_{N−k}."""
-    return tuple(
-        _coefficient(spectrum, spectrum.matrix.laurent(-c, k)) for k, c in enumerate(minimal) if k > 0
-    )
+    return tuple(_coefficient(spectrum, spectrum.matrix.laurent(-c, k)) for k, c in enumerate(minimal) if k > 0)
 
 
 def reason(spectrum: Spectrum) -> str:
@@ -83,7 +78,9 @@ def reason(spectrum: Spectrum) -> str:
 def text(form: ClosedForm) -> str:
     """Return the readable text of a closed form."""
     size = form.spectrum.matrix.size
-    lines = [f"{form.chain.name}: transfer matrix {size} x {size}; beta = 1/T"]
+    fixed = form.chain.fixed.get("T")
+    beta = "beta = 1/T" if fixed is None else f"T = {fixed}"
+    lines = [f"{form.chain.name}: transfer matrix {size} x {size}; {beta}"]
     if form.is_closed:
         lines.append(f"  Z_N = {ring_text(form)}")
         lines.append("  eigenvalues (multiplicity)")
@@ -96,7 +93,7 @@ def text(form: ClosedForm) -> str:
             lines += _recurrence_lines(form)
     if len(form.blocks) > 1:
         lines.append("  blocks")
-        lines += [f"    {block.size} x {block.size}, {block.multiplicity} times: {block.label}" for block in form.blocks]
+        lines += [f"    {b.size} x {b.size}, {b.multiplicity} times: {b.label}" for b in form.blocks]
     return "\n".join(lines)
 
 

@@ -14,8 +14,8 @@ from typing import Any
 import numpy as np
 
 from .alphabet import Laurent
+from .formula import Draft, power, product, root, total
 from .matrix import SymbolicMatrix
-from .formula import Draft, number, power, product, root, total
 from .polynomials import Coefficients
 from .readable import Writer, shifted, shortest, times
 
@@ -65,7 +65,9 @@ class Quadratic:
         return value if front == 1 else sp.Mul(front, value, evaluate=False)
 
 
-def radicals(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, block: np.ndarray | None, real: bool) -> list[Any]:
+def radicals(
+    factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, block: np.ndarray | None, real: bool
+) -> list[Any]:
     """Return the roots λ of a factor as expressions, the largest real one first; empty if there is no form.
 
     Parameters
@@ -130,8 +132,8 @@ def _square_factors(inside: Laurent, writer: Writer) -> Iterator[tuple[Laurent, 
     if any(lowest):
         yield {half: Fraction(1)}, shifted(inside, lowest, -1)
     outside, rest = one, inside
-    for factor, power in factors:
-        for _ in range(power // 2):
+    for factor, exponent in factors:
+        for _ in range(exponent // 2):
             outside, rest = _product(outside, factor), _divide(rest, factor, writer)
     if outside is not one:
         # Each repeated factor brought back to its middle keeps both parts symmetric.
@@ -153,8 +155,8 @@ def _divide(terms: Laurent, factor: Laurent, writer: Writer) -> Laurent:
     """Divide by the square of a factor that is known to divide."""
     c, lowest, factors = writer.factor(terms)
     result: Laurent = {lowest: c}
-    for other, power in factors:
-        for _ in range(power - 2 if other == factor else power):
+    for other, exponent in factors:
+        for _ in range(exponent - 2 if other == factor else exponent):
             result = _product(result, other)
     return result
 

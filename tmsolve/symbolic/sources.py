@@ -113,7 +113,7 @@ def _leading(matrix: SymbolicMatrix, writer: Writer, lumped: np.ndarray) -> tupl
         block = Block(_each_value(part.matrix), "", positive=True)
         found = factors(tuple(jet.x for jet in jets), ring)
         for polynomial, _ in found:
-            factor = Factor(polynomial, block, 1)
+            factor = Factor(polynomial, block, 1, 1)
             if best is None or _larger(matrix, writer, factor, best[0]):
                 best = factor, jets, [(p, m) for p, m in found if p != polynomial]
     assert best is not None
@@ -144,12 +144,14 @@ def _lumped(matrix: SymbolicMatrix, keep_sources: bool) -> np.ndarray:
     lumped = np.empty((len(classes), len(classes)), dtype=object)
     for a, rows in enumerate(classes):
         for b, columns in enumerate(classes):
-            lumped[a, b] = entries[np.ix_(rows, columns)].sum().over(domain(len(columns)))
+            total: Any = entries[np.ix_(rows, columns)].sum()
+            lumped[a, b] = total.over(domain(len(columns)))
     return lumped
 
 
 def _each_value(entries: np.ndarray) -> np.ndarray:
     values = np.empty(entries.shape, dtype=object)
     for index in np.ndindex(entries.shape):
-        values[index] = entries[index].x
+        entry: Any = entries[index]
+        values[index] = entry.x
     return values

@@ -12,6 +12,7 @@ from typing import Any
 
 import numpy as np
 
+from ..errors import NotApplicable
 from .blocks import Block, merged, split
 from .deadline import Clock, TimeUp, limited
 from .matrix import SymbolicMatrix
@@ -21,8 +22,8 @@ from .roots import all_real, radicals
 
 __all__ = ["Factor", "Spectrum", "leading_factor", "solve_spectrum"]
 
-#: Parts of the remaining time that stages may use.
-_BLOCKS, _FACTORS, _ROOTS = 0.5, 0.5, 0.6
+#: Parts of the remaining time that stages may use; without a characteristic polynomial nothing follows.
+_BLOCKS, _POLYNOMIALS, _FACTORS, _ROOTS = 0.4, 0.9, 0.5, 0.6
 
 
 @dataclass(frozen=True, eq=False)
@@ -37,6 +38,8 @@ class Factor:
         Where it comes from.
     multiplicity : int
         How often it divides the characteristic polynomial of the whole matrix.
+    leading : int
+        How often it divides those of the blocks that can carry the Perron root.
     irreducible : bool
         Whether it is known not to factor further.
     roots : tuple of sympy expressions
@@ -46,6 +49,7 @@ class Factor:
     polynomial: Coefficients
     block: Block
     multiplicity: int
+    leading: int
     irreducible: bool = True
     roots: tuple[Any, ...] = ()
 
@@ -98,7 +102,8 @@ def solve_spectrum(matrix: SymbolicMatrix, clock: Clock) -> Spectrum:
     """Go as far as the time allows: blocks, characteristic polynomials, factors, roots."""
     spectrum = Spectrum(matrix, Writer(matrix.alphabet))
     stages: list[tuple[float, str, Callable[[Spectrum], Spectrum]]] = [
-        (_BLOCKS, "the characteristic polynomial", _with_blocks),
+        (_BLOCKS, "the search for symmetries", _with_blocks),
+        (_POLYNOMIALS, "the characteristic polynomial", _with_polynomials),
         (_FACTORS, "the factorisation of the characteristic polynomial", _with_factors),
         (_ROOTS, "the roots by radicals", _with_roots),
     ]
@@ -113,18 +118,14 @@ def solve_spectrum(matrix: SymbolicMatrix, clock: Clock) -> Spectrum:
 
 def _with_blocks(spectrum: Spectrum) -> Spectrum:
     matrix = spectrum.matrix
-    ring = matrix.alphabet.ring
-    polynomials: dict[int, Coefficients] = {}
+    return replace(spectrum, blocks=tuple(split(matrix.entries, matrix.permutations)))
 
-    def polynomial(block: Block) -> Coefficients:
-        if id(block) not in polynomials:
-            polynomials[id(block)] = characteristic(block.matrix, ring)
-        return polynomials[id(block)]
 
-    pieces = split(matrix.entries, matrix.permutations)
-    blocks = merged(pieces, polynomial)
-    whole = tuple(Factor(characteristic(b.matrix, ring), b, b.multiplicity, False) for b in blocks)
-    return replace(spectrum, blocks=tuple(blocks), factors=whole)
+def _with_polynomials(spectrum: Spectrum) -> Spectrum:
+    ring = spectrum.matrix.alphabet.ring
+    found = merged([(block, characteristic(block.matrix, ring)) for block in spectrum.blocks])
+    whole = [Factor(p, b, b.multiplicity, b.multiplicity * b.positive, irreducible=False) for b, p in found]
+    return replace(spectrum, blocks=tuple(block for block, _ in found), factors=tuple(whole))
 
 
 def _with_factors(spectrum: Spectrum) -> Spectrum:
@@ -132,8 +133,12 @@ def _with_factors(spectrum: Spectrum) -> Spectrum:
     found: dict[Coefficients, Factor] = {}
     for whole in spectrum.factors:
         for polynomial, power in factors(whole.polynomial, ring):
-            first = found.get(polynomial, Factor(polynomial, whole.block, 0))
-            found[polynomial] = replace(first, multiplicity=first.multiplicity + power * whole.multiplicity)
+            first = found.get(polynomial, Factor(polynomial, whole.block, 0, 0))
+            found[polynomial] = replace(
+                first,
+                multiplicity=first.multiplicity + power * whole.multiplicity,
+                leading=first.leading + power * whole.leading,
+            )
     return replace(spectrum, factors=tuple(found.values()))
 
 
@@ -166,7 +171,12 @@ def leading_factor(spectrum: Spectrum) -> list[int]:
     One index when the matrix is irreducible: its Perron root is simple, so that it cannot
     pass from one factor to another as parameters change.
     """
-    candidates = [i for i, f in enumerate(spectrum.factors) if f.block.positive]
+    candidates = [i for i, f in enumerate(spectrum.factors) if f.leading and not f.is_zero]
+    if not candidates:
+        raise NotApplicable(
+            "every configuration of this chain is forbidden: no two states can follow each other for ever; check which "
+            "energies are math.inf and which weights are 0"
+        )
     if len(candidates) < 2:
         return candidates
     winners: dict[int, None] = {}

@@ -31,8 +31,9 @@ def generic_points(alphabet: Alphabet, count: int, seed: int = 7) -> Iterator[di
     positive = {s for w in weights for s in w.free_symbols} | {s for s in symbols if s.is_positive}
     for _ in range(count):
         for _ in range(200):
-            point = {s: sp.Rational(draw.randint(2, 17), 11) * (1 if s in positive else draw.choice((1, -1))) for s in symbols}
-            if all((w.subs(point) > 0) == True for w in weights):  # noqa: E712 - a sympy truth value
+            signs = {s: 1 if s in positive else draw.choice((1, -1)) for s in symbols}
+            point = {s: sp.Rational(signs[s] * draw.randint(2, 17), 11) for s in symbols}
+            if all(w.subs(point).is_positive for w in weights):
                 yield point
                 break
 
@@ -89,10 +90,12 @@ def _number(element: Any, values: Sequence[Any], mp: Any) -> Any:
     return total
 
 
-def mismatch(matrix: SymbolicMatrix, eigenvalues: Sequence[tuple[Any, int]], points: int = 3) -> str | None:
+def mismatch(
+    matrix: SymbolicMatrix, eigenvalues: Sequence[tuple[Any, int]], largest: Any, points: int = 3
+) -> str | None:
     """Compare Σ λᵏ with the trace of the k-th power at random rational points.
 
-    The power sums for k = 1 … n determine the spectrum with its multiplicities. The first
+    The power sums for k = 1 … n determine the spectrum with its multiplicities. The ``largest``
     eigenvalue has to have the largest modulus as well.
 
     Returns
@@ -106,8 +109,9 @@ def mismatch(matrix: SymbolicMatrix, eigenvalues: Sequence[tuple[Any, int]], poi
         with mp.workdps(_DIGITS):
             numbers = [(evaluate(expr, point), m) for expr, m in eigenvalues]
             dense = numeric_matrix(matrix, point)
-            if any(abs(x) > abs(numbers[0][0]) * (1 + _TOLERANCE) for x, _ in numbers):
-                return f"the first eigenvalue is not the largest at {point}"
+            top = evaluate(largest, point)
+            if any(abs(x) > top * (1 + _TOLERANCE) for x, _ in numbers):
+                return f"what should be the largest eigenvalue is not, at {point}"
             power = mp.eye(matrix.size)
             for k in range(1, matrix.size + 1):
                 power = power * dense

@@ -96,12 +96,12 @@ def symbolic_table(chain: Chain, term: Term, symbols: Mapping[str, Any]) -> np.n
     DeclarationError
         The function branches on a free parameter, is not exact, or raises.
     """
-    states = [chain.cell[kind].values for kind, _ in term.places]
+    states = [chain.cell[kind].values for kind, _ in term.places if kind is not None]
     reference = _numeric(term, states, symbols)
     failure: DeclarationError | None = None
-    for convert in (_as_sympy, _as_fraction):
+    for convert in (_as_sympy, _as_fraction, _as_tracer):
         # A state of 1/2 is a sympy number that differs from the float 0.5; functions that
-        # compare it with decimals work with Fractions, so those are tried second.
+        # compare it with decimals work with Fractions, and those that call NumPy with tracers.
         try:
             table = _table(term, states, symbols, convert)
         except DeclarationError as error:
@@ -129,6 +129,12 @@ def _as_fraction(state: Any) -> Any:
     return state
 
 
+def _as_tracer(state: Any) -> Any:
+    if isinstance(state, tuple):
+        return tuple(_as_tracer(part) for part in state)
+    return state if isinstance(state, str) else Tracer(_as_sympy(state))
+
+
 def _as_float(state: Any) -> Any:
     if isinstance(state, tuple):
         return tuple(_as_float(part) for part in state)
@@ -138,11 +144,7 @@ def _as_float(state: Any) -> Any:
 def _table(term: Term, states: list, symbols: Mapping[str, Any], convert: Any) -> np.ndarray:
     import numpy as np
 
-    # A fixed parameter is passed as the number it is, so that functions may branch on it.
-    arguments = {
-        name: convert(Fraction(str(symbols[name]))) if symbols[name].is_Number else Tracer(symbols[name])
-        for name in term.parameters
-    }
+    arguments = {name: Tracer(symbols[name]) for name in term.parameters}
     table = np.empty([len(values) for values in states], dtype=object)
     for index in itertools.product(*(range(len(values)) for values in states)):
         here = [convert(values[i]) for values, i in zip(states, index, strict=True)]
@@ -192,7 +194,9 @@ def _checked(where: str, role: str, value: Any, returned: Any) -> Any:
     import sympy as sp
 
     if value is NotImplemented:
-        raise DeclarationError(f"{where} returned {returned!r}, which is not a number; return a number, as in -J*(s == t)")
+        raise DeclarationError(
+            f"{where} returned {returned!r}, which is not a number; return a number, as in -J*(s == t)"
+        )
     if isinstance(value, float):
         if role == "energy" and value == math.inf:
             return sp.oo

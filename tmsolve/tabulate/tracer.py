@@ -93,7 +93,10 @@ def _without_floats(expr: Any) -> Any:
 
 
 class Tracer:
-    """An exact expression in the parameters that behaves as a number in user functions."""
+    """An exact expression in the parameters that behaves as a number in user functions.
+
+    Without free symbols it is a number, and may be compared and converted as one.
+    """
 
     # Tells sympy's own numbers to leave the operation to this class.
     _op_priority = 1000.0
@@ -110,8 +113,8 @@ class Tracer:
         for _ in range(_CONVERSION_DEPTH):
             if frame is None:
                 break
-            if frame.f_code.co_name in ("__eq__", "__ne__"):
-                self._refuse("compares a parameter")
+            if self.names and frame.f_code.co_name in ("__eq__", "__ne__"):
+                raise NotSymbolic("compares a parameter", self.names)
             frame = frame.f_back  # type: ignore[assignment]
         return self.expr
 
@@ -167,38 +170,55 @@ class Tracer:
         """Parameters in the expression; an inverse temperature reads ``T``."""
         return tuple(sorted("T" if s.name == "beta" else s.name for s in self.expr.free_symbols))
 
-    def _refuse(self, what: str) -> Any:
-        raise NotSymbolic(what, self.names)
+    def _compare(self, other: Any, compare: Callable[[Any, Any], Any]) -> bool:
+        converted = unwrap(other)
+        names = self.names + (tuple(Tracer(converted).names) if hasattr(converted, "free_symbols") else ())
+        if names:
+            raise NotSymbolic("compares a parameter", names)
+        return NotImplemented if converted is NotImplemented else bool(compare(self.expr, converted))
+
+    def _number(self, what: str) -> Any:
+        if self.names:
+            raise NotSymbolic(what, self.names)
+        return self.expr
 
     def __bool__(self) -> bool:
-        return self._refuse("branches on a parameter")
+        return bool(self._number("branches on a parameter") != 0)
 
     def __lt__(self, other: Any) -> bool:
-        return self._refuse("compares a parameter")
+        return self._compare(other, operator.lt)
 
     def __le__(self, other: Any) -> bool:
-        return self._refuse("compares a parameter")
+        return self._compare(other, operator.le)
 
     def __gt__(self, other: Any) -> bool:
-        return self._refuse("compares a parameter")
+        return self._compare(other, operator.gt)
 
     def __ge__(self, other: Any) -> bool:
-        return self._refuse("compares a parameter")
+        return self._compare(other, operator.ge)
 
     def __eq__(self, other: object) -> bool:
-        return self._refuse("compares a parameter")
+        return self._compare(other, operator.eq)
 
     def __ne__(self, other: object) -> bool:
-        return self._refuse("compares a parameter")
+        return self._compare(other, operator.ne)
 
     def __float__(self) -> float:
-        return self._refuse("needs the value of a parameter as a float")
+        return float(self._number("needs the value of a parameter as a float"))
 
     def __int__(self) -> int:
-        return self._refuse("needs the value of a parameter as an integer")
+        return int(self._number("needs the value of a parameter as an integer"))
 
-    __index__ = __int__
-    __hash__ = None  # type: ignore[assignment]
+    def __index__(self) -> int:
+        value = self._number("needs the value of a parameter as an integer")
+        return operator.index(value)
+
+    def __hash__(self) -> int:
+        if self.names:
+            # In these words: sympy's cache then goes on without it.
+            raise TypeError("unhashable type: a free parameter cannot be looked up")
+        value = self.expr
+        return hash(Fraction(int(value.p), int(value.q))) if value.is_Rational else hash(value)
 
     def __getattr__(self, name: str) -> Callable[[], Tracer]:
         # np.exp(x) on an object calls x.exp(), and likewise for the other ufuncs.
