@@ -13,7 +13,7 @@ from ..assemble.window import ChainWindow
 from ..errors import TooLargeError
 from ..operators.algebras import LogSum, LogTable
 from ..operators.partitions import Key, sub_keys
-from ..operators.product import close, multiply, power
+from .products import Product, close, multiply, power, scaled
 from .steps import Windows
 
 __all__ = ["Mark", "Track"]
@@ -42,6 +42,7 @@ class Track:
     values: Mapping[str, Any]
     batch: int
     _known: dict[ChainWindow, Assembled] = field(default_factory=dict, repr=False)
+    _steps: dict[Any, Product] = field(default_factory=dict, repr=False)
 
     def __post_init__(self) -> None:
         size = max(max(self.windows.at(position).shape) for position, _ in self.runs())
@@ -95,19 +96,23 @@ class Track:
         beta = self.assembled(self.windows.positions.start).beta
         return LogSum(beta, keys=(key,) if key else ())
 
-    def step(self, position: int, mark: Mark, key: Key | None = None) -> LogTable:
+    def step(self, position: int, mark: Mark, key: Key | None = None) -> Product:
         """Return the step table at a position, tilted by the quantities of a mark under their new names.
 
         ``key`` names the cumulants wanted; by default each name once.
         """
-        assembled = self.assembled(position)
-        energy, log = assembled.reduced
-        tilts = {}
-        for names in sub_keys(tuple(sorted(mark)) if key is None else key):
-            table = assembled.edge_table(tuple(sorted(mark[name] for name in names)))
-            if table is not None:
-                tilts[names] = table
-        return LogTable(energy, log, tilts)
+        wanted = tuple(sorted(mark)) if key is None else key
+        what = (self.windows.at(position), wanted, tuple(sorted(mark.items())))
+        if what not in self._steps:
+            assembled = self.assembled(position)
+            energy, log = assembled.reduced
+            tilts = {}
+            for names in sub_keys(wanted):
+                table = assembled.edge_table(tuple(sorted(mark[name] for name in names)))
+                if table is not None:
+                    tilts[names] = table
+            self._steps[what] = scaled(self.algebra(), LogTable(energy, log, tilts))
+        return self._steps[what]
 
     def everywhere(self, mark: Mark, key: Key) -> LogTable:
         """Multiply all windows, each tilted by the same quantities, and close the ends."""
@@ -120,7 +125,7 @@ class Track:
     @np.errstate(under="ignore")
     def _product(self, parts: Iterable[tuple[int, int, Mark, Key | None]], key: Key) -> LogTable:
         algebra = self.algebra(key)
-        result: LogTable | None = None
+        result: Product | None = None
         for position, count, mark, names in parts:
             part = power(algebra, self.step(position, mark, names), count)
             result = part if result is None else multiply(algebra, result, part)
@@ -136,8 +141,8 @@ class Track:
         """
         plain, tilted = self.algebra(), self.algebra(("x",))
         name = handle("observable", (), f"{quantity}@{anchor}")
-        backward: dict[int, LogTable] = {}
-        message: LogTable | None = None
+        backward: dict[int, Product] = {}
+        message: Product | None = None
         for position in reversed(self.windows.positions):
             step = self.step(position, {})
             if message is None:
@@ -146,20 +151,20 @@ class Track:
                 message = multiply(plain, step, message)
             backward[position] = message
         means: dict[int, np.ndarray] = {}
-        forward: LogTable | None = None
+        forward: Product | None = None
         for position in self.windows.positions:
             here = self.step(position, {"x": name})
-            if here.tilts:
+            if here.table.tilts:
                 whole = here if forward is None else multiply(tilted, forward, here)
                 after = backward.get(position + 1)
                 whole = whole if after is None else multiply(tilted, whole, after)
                 means[position] = close(tilted, whole, self.closed).tilts[("x",)]
-            bare = LogTable(here.energy, here.log)
+            bare = self.step(position, {})
             forward = bare if forward is None else multiply(plain, forward, bare)
         return means
 
 
-def _summed(algebra: LogSum, table: LogTable) -> LogTable:
+def _summed(algebra: LogSum, step: Product) -> Product:
     """Sum over the columns, kept as one column."""
-    summed = algebra.sum(table, 1)
-    return LogTable(summed.energy[:, None], summed.log[:, None])
+    summed = algebra.sum(step.table, 1)
+    return scaled(algebra, LogTable(summed.energy[:, None], summed.log[:, None]), step.taken)
