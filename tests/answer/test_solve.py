@@ -37,6 +37,9 @@ FROZEN = Chain(
 )
 
 
+WEIGHED = Chain(ising(), [weight(lambda s, w: w if s > 0 else 1)])
+
+
 def broken(s, h):
     raise RuntimeError("no data")
 
@@ -48,8 +51,9 @@ def broken(s, h):
         (lambda: solve({"T": 1}), ParameterError, ("solve takes a point, got {'T': 1}", "make one with chain.at")),
         (lambda: solve(POINT, solver="dense"), ParameterError, ("Auto() or Dense(…), got 'dense'",)),
         (lambda: solve(POINT, solver=Dense), ParameterError, ("Auto() or Dense(…), got <class",)),
-        (lambda: solve(ISING.at(T=0, J=1)), NotApplicable, ("T > 0, got T = 0", "ground_state(chain)")),
-        (lambda: solve(ISING.at(T=[1, 0], J=1)), NotApplicable, ("T > 0, got T = 0",)),
+        (lambda: solve(WEIGHED.at(T=0, w=2)), NotApplicable, ("weight(…)", "no ground state", "small T > 0")),
+        (lambda: solve(WEIGHED.at(T=[1, 0], w=2)), NotApplicable, ("no ground state",)),
+        (lambda: solve(ISING.at(T=0, J=1)).spectrum(), NotApplicable, ("at T = 0", "gaps(k)")),
         (lambda: solve(POINT, solver=Dense(max_size=1)), TooLargeError, ("limited to 1 states; this chain has 2",)),
         (lambda: solve(POINT, digits=0), ParameterError, ("digits", "got 0")),
         (lambda: solve(POINT, digits=2.5), ParameterError, ("digits", "got 2.5")),

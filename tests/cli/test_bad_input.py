@@ -55,7 +55,7 @@ PARAMETERS = [
     (["solve", "ising", "-p", "J=1/0"], 2, ["-p J must be a finite number", "got '1/0'"]),
     (["solve", "ising", "-p", "J=1", "-p", "J=2"], 2, ["-p J= is given twice, 1 and 2; keep one of them"]),
     (["solve", "ising", "-p", "T=-1"], 2, ["T must be a finite temperature >= 0", "got -1.0"]),
-    (["solve", "ising", "-p", "T=0"], 1, ["solve needs T > 0, got T = 0", "ground_state"]),
+    (["solve", "helix_coil", "-p", "T=0"], 1, ["weight(…)", "has no ground state", "small T > 0"]),
 ]
 
 READINGS = [
@@ -68,7 +68,7 @@ READINGS = [
     (
         ["solve", "ising", "--read", "mean"],
         2,
-        ["mean takes 1 observables in brackets, got 0", "this chain has m"],
+        ["mean takes 1 observable in brackets, got 0", "this chain has m"],
     ),
     (["solve", "ising", "--read", "mean(q)"], 2, ["no observable 'q'; this chain has m"]),
     (["solve", "ising", "--read", "mean(m"], 2, ["--read 'mean(m' lacks a closing bracket"]),
@@ -131,7 +131,7 @@ SCAN = [
         2,
         ["there is no folder 'no'", "create it"],
     ),
-    (["scan", "ising", "--axis", "h=1:2:5", "-p", "T=0"], 1, ["all 5 points failed", "h = 1.0", "got T = 0"]),
+    (["scan", "helix_coil", "--axis", "s=1:2:5", "-p", "T=0"], 1, ["all 5 points failed", "s = 1.0", "no ground state"]),
 ]
 
 CROSSOVERS = [

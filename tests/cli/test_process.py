@@ -55,9 +55,10 @@ def finish(*words, folder):
     ("words", "code"),
     [
         (["solve", "ising"], 0),
-        (["solve", "ising", "-p", "T=0"], 1),
+        (["solve", "ising", "-p", "T=0"], 0),
+        (["solve", "helix_coil", "-p", "T=0"], 1),
         (["solve", "ising", "-p", "x=0"], 2),
-        (["scan", "ising", "--axis", "T=0:1:3", "--read", "entropy"], 3),
+        (["scan", "helix_coil", "--axis", "T=0:1:3", "--read", "entropy"], 3),
         (["--version"], 0),
         ([], 2),
     ],

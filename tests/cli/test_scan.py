@@ -89,12 +89,12 @@ def test_out_and_json_together(tm, tmp_path):
 
 
 def test_points_that_fail_are_nan_and_told(tm):
-    ended = tm("scan", "ising", "--axis", "T=0:1:3", "--read", "entropy")
+    ended = tm("scan", "helix_coil", "--axis", "T=0:1:3", "--read", "entropy")
     rows = rows_of(ended.out)
     assert ended.code == 3
     assert rows[1] == ["0.0", "nan"] and float(rows[2][1]) > 0
-    assert "1 of 3 points failed, the first at T = 0.0: solve needs T > 0" in ended.err
-    document = tm("scan", "ising", "--axis", "T=0:1:3", "--read", "entropy", "--json").json
+    assert "1 of 3 points failed, the first at T = 0.0: " in ended.err and "no ground state" in ended.err
+    document = tm("scan", "helix_coil", "--axis", "T=0:1:3", "--read", "entropy", "--json").json
     assert document["readings"]["entropy"][0] is None
     assert document["nonfinite"] == {"readings.entropy[0]": "nan"}
     assert document["failed"][0]["coordinates"] == {"T": 0.0}

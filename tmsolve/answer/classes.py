@@ -48,7 +48,13 @@ class CommunicatingClass:
         """Bound what the rounding of the entries does to the vector, that of exact ties included or not."""
         with np.errstate(all="ignore"):
             noise = self.gauge.uncertainty if tied else np.where(self.log == 0, 0.0, self.gauge.uncertainty)
-            amplified = self.pair.reduction.reach((self.pair.chance * noise).sum(axis=1))
+            reduction = self.pair.reduction
+            rows = (self.pair.chance * noise).sum(axis=1)
+            # A change of the heaviest state's row is one of all other rows, the other way round.
+            heaviest = np.argmax(reduction.stationary, axis=0)[None]
+            others = rows + np.take_along_axis(rows, heaviest, axis=0)
+            np.put_along_axis(others, heaviest, 0.0, axis=0)
+            amplified = np.fmin(reduction.reach(rows), reduction.reach(others))
         return np.where(np.isfinite(amplified), amplified, np.inf)
 
     def settled(self, part: Assembled, confirm: Callable[[CommunicatingClass, int], bool]) -> np.ndarray:

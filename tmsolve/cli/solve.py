@@ -61,7 +61,8 @@ def run(arguments: argparse.Namespace) -> int:
 
     solution = solve(model.chain.at(**values.numbers))
     found, failures = _evaluate(solution, readings)
-    spectrum = _spectrum(solution, levels, failures)
+    # At T = 0 eigenvalues have no finite logarithm; the gap above is the limit of their ratio.
+    spectrum = _spectrum(solution, levels if solution.point.T else 0, failures)
     if failures and not found:
         raise SolveError(next(iter(failures.values())))
     document = _document(model, values, solution, found, spectrum, failures)
@@ -71,7 +72,9 @@ def run(arguments: argparse.Namespace) -> int:
         print(json_text(document))
     else:
         parts = [heading(model, values), reading_table(found, digits), matrix_line(document)]
-        print("\n\n".join([*parts, level_table(spectrum, digits)] if spectrum else parts))
+        parts += [level_table(spectrum, digits)] if spectrum else []
+        parts += ["\n".join(solution.notes)] if solution.notes else []
+        print("\n\n".join(parts))
         for name, why in failures.items():
             print(f"tmsolve solve: {name} failed: {why}", file=sys.stderr)
     return SOME_FAILED if failures else DONE
@@ -152,6 +155,7 @@ def _document(
             "summed_out": facts["interior"],
         },
         "bits": facts["bits"],
+        "notes": list(solution.notes),
         "failed": failures,
         "tmsolve": __version__,
     }
