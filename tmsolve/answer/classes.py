@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
+from fractions import Fraction
 from typing import Any
 
 import numpy as np
@@ -13,7 +14,7 @@ from ..eigen.periodic import periodic_pair
 from ..eigen.perron import TOLERANCE, perron_pair
 from ..operators.numbers import multiprecision
 
-__all__ = ["CLIMB_LIMIT", "FIRST_BITS", "CommunicatingClass", "Ties", "exact_values"]
+__all__ = ["CLIMB_LIMIT", "FIRST_BITS", "CommunicatingClass", "Ties", "bits_for", "exact_values"]
 
 #: Longer numbers are worth their time for matrices up to this size.
 CLIMB_LIMIT = 40
@@ -24,6 +25,16 @@ FIRST_BITS = 128
 def exact_values(point: Point, index: int) -> dict[str, Any]:
     """Return the values of one point of a batch; single numbers as exactly as the user gave them."""
     return dict(point.pick(int(index)).values) if point.shape else dict(point.values)
+
+
+def bits_for(values: Mapping[str, Any]) -> int:
+    """Return a length of numbers that holds the sum of the largest and the smallest parameter."""
+    sizes = [abs(v) for name, v in values.items() if name != "T" and isinstance(v, Fraction) and v]
+    span = max(sizes) / min(sizes) if sizes else Fraction(1)
+    bits = FIRST_BITS
+    while bits < FIRST_BITS - 32 + (span.numerator // span.denominator).bit_length():
+        bits *= 2
+    return bits
 
 
 class CommunicatingClass:
@@ -78,14 +89,14 @@ class Ties:
         self.known: dict[Any, bool] = {}
 
     def __call__(self, chosen: CommunicatingClass, i: int) -> bool:
-        """Return whether the ties of a class at point i of its part hold to 128 bits."""
+        """Return whether the ties of a class at point i of its part hold in longer numbers."""
         values = exact_values(self.point, int(self.indices[i]))
         tie = np.asarray(chosen.log[..., i] == 0)
         # Without weights and interior sites ties do not depend on the temperature.
         free = not chosen.gauge.residual.any() and not self.part.chain.uses_temperature
         key = (tuple(v for name, v in values.items() if name != "T" or not free), tie.tobytes())
         if key not in self.known:
-            long = Assembled(self.part.window, values, 1, multiprecision(FIRST_BITS))
+            long = Assembled(self.part.window, values, 1, multiprecision(bits_for(values)))
             log, _ = long.scaled_log(chosen.states, chosen.edges)
             self.known[key] = bool((np.asarray(log[..., 0] == 0, dtype=bool) == tie).all())
         return self.known[key]

@@ -18,7 +18,7 @@ from ..eigen.spectrum import ratios
 from ..errors import SolveError, TooLargeError
 from ..observe.segment import Segment
 from ..operators.numbers import multiprecision, to_double
-from .classes import CLIMB_LIMIT, FIRST_BITS, CommunicatingClass, Ties, exact_values
+from .classes import CLIMB_LIMIT, FIRST_BITS, CommunicatingClass, Ties, bits_for, exact_values
 
 __all__ = ["long_law", "long_laws", "stationary_laws"]
 
@@ -184,6 +184,7 @@ def _solve_long(
 ) -> Segment | None:
     """Solve one point with numbers of ``bits``, 2·bits, … until its bound is below the tolerance."""
     where = np.array([index])
+    bits = max(bits, bits_for(exact_values(point, index)))
     while bits <= solver.bits:
         long = Assembled(window, exact_values(point, index), 1, multiprecision(bits))
         edges = long.pattern[..., 0]
