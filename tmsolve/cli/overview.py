@@ -11,6 +11,7 @@ COMMANDS = {
     "scan": "any quantities over a grid of parameters, as table, file and figure",
     "crossovers": "where behaviour changes: maxima, half-way points, disorder points",
     "ground": "ground states at T = 0, residual entropies, phase diagrams; exact",
+    "finite": "rings and open chains of N cells: partition function, profiles, distributions",
     "models": "the shipped models; with a name, what that model declares",
 }
 

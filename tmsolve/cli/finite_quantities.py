@@ -1,0 +1,130 @@
+"""The quantities of ``tmsolve finite``: their names on the command line, and how each is computed."""
+
+from __future__ import annotations
+
+import re
+from collections.abc import Callable
+from dataclasses import dataclass
+from typing import TYPE_CHECKING, Any
+
+from ..errors import ParameterError, did_you_mean, listing
+from .outcome import UsageError
+
+if TYPE_CHECKING:
+    from ..declare import Chain
+    from ..finite.distribution import Distribution
+    from ..finite.results import FiniteChain
+
+__all__ = ["FORMS", "LISTED", "Asked", "read_quantity"]
+
+#: Name -> how it is written.
+FORMS = {
+    "log_Z": "log_Z",
+    "free_energy": "free_energy",
+    "total": "total(a)",
+    "mean": "mean(a) or mean(a,i)",
+    "covariance": "covariance(a) or covariance(a,b)",
+    "correlation": "correlation(a,b,i,j)",
+    "cumulants": "cumulants(a)",
+    "moments": "moments(a)",
+    "profile": "profile(a)",
+    "distribution": "distribution(a)",
+}
+#: How many observables, and how many cells, may stand in the brackets.
+_SHAPES = {
+    "log_Z": {(0, 0)},
+    "free_energy": {(0, 0)},
+    "total": {(1, 0)},
+    "mean": {(1, 0), (1, 1)},
+    "covariance": {(1, 0), (2, 0)},
+    "correlation": {(2, 2)},
+    "cumulants": {(1, 0)},
+    "moments": {(1, 0)},
+    "profile": {(1, 0)},
+    "distribution": {(1, 0)},
+}
+#: Quantities with one number per cell or per value.
+LISTED = ("profile", "distribution")
+
+
+@dataclass(frozen=True)
+class Asked:
+    """A quantity as asked for.
+
+    Attributes
+    ----------
+    kind : str
+        A key of `FORMS`.
+    observables : tuple of str
+    cells : tuple of int
+    """
+
+    kind: str
+    observables: tuple[str, ...]
+    cells: tuple[int, ...]
+
+    @property
+    def name(self) -> str:
+        """Its name, written in one way."""
+        inside = ",".join([*self.observables, *map(str, self.cells)])
+        return f"{self.kind}({inside})" if inside else self.kind
+
+    @property
+    def unit(self) -> str:
+        """Its unit."""
+        return "energy" if self.kind == "free_energy" else "1"
+
+    def evaluate(self, chain: FiniteChain) -> float | list[float] | Distribution:
+        """Compute it: a number, one number per order or cell, or a distribution."""
+        if self.kind == "distribution":
+            return chain.distribution(self.observables[0])
+        found = _COMPUTE[self.kind](chain, *self.observables, *self.cells)
+        return [float(value) for value in found] if getattr(found, "shape", ()) else float(found)
+
+
+_COMPUTE: dict[str, Callable[..., Any]] = {
+    "log_Z": lambda chain: chain.log_Z,
+    "free_energy": lambda chain: chain.free_energy,
+    "total": lambda chain, a: chain.total(a),
+    "mean": lambda chain, a, *cells: chain.profile(a, cells)[0] if cells else chain.mean(a),
+    "covariance": lambda chain, *pair: chain.covariance(*pair),
+    "correlation": lambda chain, a, b, i, j: chain.correlation(a, b, i, j),
+    "cumulants": lambda chain, a: chain.cumulants(a),
+    "moments": lambda chain, a: chain.moments(a),
+    "profile": lambda chain, a: chain.profile(a),
+}
+
+
+def read_quantity(text: str, chain: Chain, cells: int) -> Asked:
+    """Read a name such as ``correlation(m,m,0,5)``.
+
+    Raises
+    ------
+    UsageError
+        Unknown quantity or observable, a wrong number of them, or a cell out of range.
+    """
+    found = re.fullmatch(r"\s*(\w+)\s*(?:\((.*)\))?\s*", text)
+    kind = found.group(1) if found else text
+    if found is None or kind not in FORMS:
+        hint = did_you_mean(kind, FORMS)
+        if kind in chain.observables:
+            hint = f" {kind!r} is an observable: mean({kind})"
+        raise UsageError(f"--read {text}: no quantity {kind!r}; finite chains have {listing(FORMS.values())}.{hint}")
+    inside = [part.strip() for part in (found.group(2) or "").split(",") if part.strip()]
+    observables = tuple(part for part in inside if not _is_number(part))
+    numbers = tuple(int(part) for part in inside if _is_number(part))
+    if (len(observables), len(numbers)) not in _SHAPES[kind] or inside != [*observables, *map(str, numbers)]:
+        raise UsageError(f"--read {text}: write {FORMS[kind]}, a and b observables, i and j cells")
+    for observable in observables:
+        try:
+            chain.observable(observable)
+        except ParameterError as error:
+            raise UsageError(f"--read {text}: {error}") from error
+    for number in numbers:
+        if not 0 <= number < cells:
+            raise UsageError(f"--read {text}: cells are numbered 0 to {cells - 1}, got {number}")
+    return Asked(kind, observables, numbers)
+
+
+def _is_number(text: str) -> bool:
+    return re.fullmatch(r"-?\d+", text) is not None
