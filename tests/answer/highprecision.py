@@ -31,7 +31,7 @@ def tables(drawn: Drawn) -> tuple[list[list[list[tuple[Fraction, int]]]], list[i
         row = []
         for t in range(n):
             base = drawn.bond[s][t]
-            inside = [Fraction(0)] if not drawn.inner else [drawn.inner[b][s] + drawn.inner[b][t] for b in range(len(drawn.inner))]
+            inside = [b[s] + b[t] for b in drawn.inner] or [Fraction(0)]
             row.append([] if base is None else [(base + e, drawn.weights[s]) for e in inside])
         entries.append(row)
     return entries, drawn.observable

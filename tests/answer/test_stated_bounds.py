@@ -1,4 +1,4 @@
-"""No accepted number is off by more than its stated bound: random small chains with ties, weights and interior sites."""
+"""No accepted number is off by more than its bound: random chains with ties, weights and interior sites."""
 
 from __future__ import annotations
 
