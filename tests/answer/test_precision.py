@@ -100,6 +100,25 @@ def test_doubles_and_longer_numbers_agree(name, T):
     assert short.gaps(2) == pytest.approx(long.gaps(2), rel=1e-9)
 
 
+@pytest.mark.parametrize("T", ["0.3", "0.1", "0.03"])
+@pytest.mark.parametrize(("J", "D"), [(1, "0.4"), (-1, "0.4"), (1, 2)])
+def test_tiny_entropies_of_sites_that_are_summed_out(T, J, D):
+    """A decorated chain: both the chain of nodes and the sites between them keep their digits."""
+    chain = Chain(
+        {"node": ising(), "mid": spins(1)},
+        [
+            bond(lambda s, t, J: -J * s * t, ("node", "mid"), shift=0),
+            bond(lambda s, t, J: -J * s * t, ("mid", "node")),
+            site(lambda s, D: D * s * s, "mid"),
+            site(lambda s: -s / 5, "node"),
+        ],
+    )
+    short, long = solve(chain.at(T=T, J=J, D=D)), solve(chain.at(T=T, J=J, D=D), digits=30)
+    assert short.diagnostics["bits"] == 53
+    for quantity in ("entropy", "specific_heat"):
+        assert float(getattr(short, quantity)) == pytest.approx(float(getattr(long, quantity)), rel=1e-11)
+
+
 @pytest.mark.parametrize("name", CHAINS)
 def test_no_step_where_the_numbers_change(name):
     """Along T the double range ends somewhere; f, u, s and c run on smoothly through it."""

@@ -43,6 +43,15 @@ def test_large_beta_keeps_the_least_energy_apart(beta):
     assert summed.energy.tolist() == [-3.0] and summed.log.tolist() == [pytest.approx(math.log(2))]
 
 
+@pytest.mark.parametrize("depth", [1.0, 40.0, 700.0])
+def test_what_rare_states_add_is_not_lost(depth):
+    """ln(1 + e^−d) to relative accuracy, whichever state is the likely one."""
+    for energy in ([0.0, depth], [depth, 0.0], [depth, 0.0, np.inf]):
+        log = np.where(np.isinf(energy), -np.inf, 0.0)[:, None]
+        table = LogTable(np.where(np.isinf(energy), 0.0, energy)[:, None], log)
+        assert LogSum(np.ones(1)).sum(table, 0).log[0] == pytest.approx(math.log1p(math.exp(-depth)), rel=1e-14)
+
+
 def test_a_sum_over_nothing_allowed_is_forbidden():
     table = LogTable(np.zeros((3, 2)), np.array([[-np.inf, 0.0]] * 3), {("x",): np.ones((3, 2))})
     summed = LogSum(np.ones(2), keys=(("x",),)).sum(table, 0)

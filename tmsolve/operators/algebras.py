@@ -94,8 +94,12 @@ class LogSum:
         empty = top == -infinite
         top = np.where(empty, zero, top)
         weights = self.numbers.exp(log - top)
-        total = np.where(empty, self.numbers.scalar(1), weights.sum(axis=axis, keepdims=True))
-        summed = np.where(empty, -infinite, self.numbers.log(total) + top)
+        # The largest weight is 1; what the others add to it may be far below rounding.
+        others = weights.copy()
+        np.put_along_axis(others, log.argmax(axis=axis, keepdims=True), zero, axis=axis)
+        more = others.sum(axis=axis, keepdims=True)
+        total = 1 + more
+        summed = np.where(empty, -infinite, self.numbers.log1p(more) + top)
         given = dict(table.tilts)
         if self.measured is not None:
             excess = np.where(table.log == -infinite, zero, table.energy - least)
