@@ -89,7 +89,9 @@ def main(points: int = 100_000, sample: int = 2_000) -> None:
         print(f"batched {fast * 1e6:.2f} µs per point, loop {slow * 1e6:.1f} µs per point, ratio {slow / fast:.0f}")
     print(f"{T.size} points, f u s c m χ ξ: median ratio {np.median(ratios):.0f} (CPU time, one run)")
     worst = np.abs(ours[:, chosen] - theirs).max(axis=1)
-    print("largest difference to the loop: " + ", ".join(f"{n} {w:.0e}" for n, w in zip("f u s c m χ ξ".split(), worst)))
+    names = ("f", "u", "s", "c", "m", "χ", "ξ")
+    differences = ", ".join(f"{name} {value:.0e}" for name, value in zip(names, worst, strict=True))
+    print(f"largest difference to the loop: {differences}")
 
 
 if __name__ == "__main__":
