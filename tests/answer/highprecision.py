@@ -63,7 +63,8 @@ def _matrices(entries, observable, beta):
 
 
 def _vectors(W):
-    power = W / mpmath.mnorm(W, 1)
+    # The unit matrix keeps the vectors and takes eigenvalues of equal modulus apart.
+    power = W / mpmath.mnorm(W, 1) + mpmath.eye(W.rows)
     for _ in range(20000):
         square = power * power
         square = square / mpmath.mnorm(square, 1)
