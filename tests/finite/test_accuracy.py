@@ -10,7 +10,8 @@ import mpmath
 import numpy as np
 import pytest
 
-from tmsolve import Chain, bond, ising, open_chain, ring, site, spins
+from tests.refusal import refused
+from tmsolve import Chain, ParameterError, TooLargeError, bond, ising, open_chain, ring, site, spins
 
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h=0: -h * s)], observables={"m": lambda s: s})
 
@@ -113,3 +114,31 @@ def test_a_profile_near_the_end_of_a_billion_cells():
     )
     cold = open_chain(ISING.at(T="1/400", J=1), 10**9 + 1, left=1, right=-1)
     assert cold.profile("m", cells=[10**8, 5 * 10**8]) == pytest.approx([0.8, 0], abs=1e-9)
+
+
+def test_cells_of_a_profile_are_named():
+    chain = open_chain(ISING.at(T=[1, 2], J=1), 30, left=1)
+    some = chain.profile("m", cells=[29, 0, np.int64(3), 0])
+    assert some == pytest.approx(chain.profile("m")[:, [29, 0, 3, 0]], abs=1e-15)
+    for cells, got in (([], "got []"), (5, "got 5"), ("12", "got '12'")):
+        refused(
+            ParameterError, lambda cells=cells: chain.profile("m", cells=cells), "cells= takes a list of cells", got
+        )
+    refused(ParameterError, lambda: chain.profile("m", cells=[30]), "numbered 0 to 29, got 30")
+    long = open_chain(ISING.at(T=1, J=1), 10**6)
+    refused(TooLargeError, lambda: long.profile("m"), "at most 200000 cells", "1000000", "profile(a, cells=[…])")
+    assert ring(ISING.at(T=1, J=1), 10**9).profile("m").shape == (10**9,)
+
+
+def test_cells_without_any_term():
+    free = Chain(ising(), [], observables={"m": lambda s: s})
+    for chain in (ring(free.at(T=1), 1), open_chain(free.at(T=1), 1)):
+        assert float(chain.log_Z) == pytest.approx(math.log(2), rel=1e-15)
+        assert chain.distribution("m").probabilities.tolist() == [0.5, 0.5]
+        assert chain.distribution("m").log_probability(np.int64(1)) == pytest.approx(-math.log(2))
+    planted = ring(free.at(T=1), 3, impurities={1: Chain(spins(1), [site(lambda s: 1e3 * s)]).at(T=1)})
+    found = planted.distribution("m")
+    assert found.values.tolist() == list(range(-3, 4))
+    assert found.probabilities == pytest.approx([0.25, 0, 0.5, 0, 0.25, 0, 0], abs=1e-300)
+    # Two free spins up beside an impurity that is up against 1000 T, of three states.
+    assert float(found.log_probability(3)) == pytest.approx(-2000 - math.log(4), rel=1e-15)

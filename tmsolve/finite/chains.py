@@ -92,4 +92,6 @@ def _check_point(point: Any, verb: str) -> None:
     if not isinstance(point, Point):
         raise ParameterError(f"{verb} takes a point, got {point!r}; make one with chain.at(T=…, …)")
     if (np.asarray(point.number("T")) == 0).any():
-        raise NotApplicable(f"{verb} needs T > 0, got T = 0")
+        raise NotApplicable(
+            f"{verb} needs T > 0, got T = 0: at zero temperature ask for the ground state with ground_state(chain)"
+        )

@@ -70,8 +70,9 @@ class Distribution:
     def log_probability(self, value: Any) -> np.ndarray:
         """Logarithm of P of one value of the total; −inf for a value that it cannot take."""
         try:
-            exact = Fraction(repr(float(value))) if isinstance(value, (float, np.floating)) else Fraction(value)
-        except (TypeError, ValueError) as cause:
+            plain = value.item() if isinstance(value, np.generic) else value
+            exact = Fraction(repr(plain)) if isinstance(plain, float) else Fraction(plain)
+        except (TypeError, ValueError, ZeroDivisionError) as cause:
             raise ParameterError(f"the total of {self.observable!r} is a number, got {value!r}") from cause
         place = (exact - self.lowest) / self.step
         if place.denominator != 1 or not 0 <= place < self.log_probabilities.shape[-1]:

@@ -139,8 +139,10 @@ class FiniteChain:
         """Mean of an observable in each cell, shape (*batch, N), or in some cells, shape (*batch, cells)."""
         self._must_exist()
         if cells is not None:
-            places = [self._cell(cell) for cell in cells]
-            return np.stack([np.asarray(self._in_cell(a, cell)) for cell in places], axis=-1)
+            if isinstance(cells, str) or not isinstance(cells, (Sequence, np.ndarray)) or not len(cells):
+                raise ParameterError(f"cells= takes a list of cells such as [0, 5], got {cells!r}")
+            means = {cell: np.asarray(self._in_cell(a, cell)) for cell in map(self._cell, cells)}
+            return np.stack([means[int(cell)] for cell in cells], axis=-1)
         if self._uniform:
             return np.broadcast_to(np.asarray(self.mean(a))[..., None], (*self.point.shape, self.cells))
         if self.cells > _LONGEST_PROFILE:
