@@ -5,6 +5,8 @@ import pytest
 
 from tests.finite.planted import Planted
 from tests.finite.test_distribution import same
+from tests.finite.test_ends import MIXED
+from tests.finite.test_ends import VALUES as VALUES_MIXED
 from tests.refusal import refused
 from tmsolve import (
     Chain,
@@ -96,6 +98,25 @@ def test_summed_out_sites_and_cells_without_a_bond(closed):
     values = {"T": 1, "J": "0.6"}
     found = (ring if closed else open_chain)(PAIRS.at(**values), 4, impurities={1: BARE.at(T=1, D="0.5")})
     agree(found, Planted(PAIRS, values, 4, closed, {1: (BARE, {"T": 1, "D": "0.5"})}), ("m", "next"))
+
+
+HEAVY = Chain(
+    {"a": ising(), "b": StateSet([-1, 1], weights=[2, 5]), "c": StateSet(["low", "middle", "high"], weights=[1, 1, 4])},
+    [bond(lambda s, t, k: k * s * t, ("a", "b"), shift=0), site(lambda s, k: k * (s == "middle"), "c")],
+)
+
+
+@pytest.mark.parametrize("closed", [True, False])
+@pytest.mark.parametrize("other", [{"g": 1, "J": "-0.2"}, HEAVY.at(T="0.8", k="0.3")])
+def test_degenerate_states_of_host_and_impurity(other, closed):
+    found = (ring if closed else open_chain)(MIXED.at(**VALUES_MIXED), 3, impurities={1: other})
+    changed = (HEAVY, {"T": "0.8", "k": "0.3"}) if not isinstance(other, dict) else (MIXED, {**VALUES_MIXED, **other})
+    wanted = Planted(MIXED, VALUES_MIXED, 3, closed, {1: changed})
+    assert float(found.log_Z) == pytest.approx(wanted.log_z, rel=1e-12)
+    for name in ("m", "low", "odd", "slanted"):
+        columns = [wanted.at(name, cell) for cell in range(3)]
+        assert found.profile(name) == pytest.approx([wanted.average(column) for column in columns], abs=1e-12)
+        same(found.distribution(name), sum(columns), wanted.probabilities)
 
 
 def test_ends_are_states_of_the_impurity():

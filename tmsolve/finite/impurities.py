@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import inspect
 from collections.abc import Callable, Mapping
+from copy import copy
 from dataclasses import dataclass, replace
 from typing import Any
 
@@ -100,9 +101,7 @@ def _nothing(*_: Any) -> int:
 
 def _with(chain: Chain, cell: Mapping[str, Any], observables: Mapping[str, tuple[Term, ...]]) -> Chain:
     """Return a chain with other observables (and kinds of site), its terms being the window's business."""
-    other = object.__new__(Chain)
-    for name in ("terms", "name", "parameters", "defaults", "fixed"):
-        object.__setattr__(other, name, getattr(chain, name))
+    other = copy(chain)
     object.__setattr__(other, "cell", cell)
     object.__setattr__(other, "observables", observables)
     return other
