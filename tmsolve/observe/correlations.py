@@ -106,31 +106,41 @@ def sorted_spectrum(segment: Segment) -> tuple[np.ndarray, np.ndarray]:
     return np.take_along_axis(log_modulus, order, -1), np.take_along_axis(phase, order, -1)
 
 
-def decay(window: ChainWindow, segment: Segment, observable: str | None) -> tuple[np.ndarray, np.ndarray]:
-    """Return ln |λ/λ₁| and wave number of the slowest mode that a quantity shows, per point.
+def decay(window: ChainWindow, segment: Segment, observable: str | None) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return ln |λ/λ₁|, wave number and amplitude of the slowest mode that a quantity shows, per point.
 
-    Without an observable: of the second-largest eigenvalue of the dominant class. −inf and
-    0 when no mode decays slower than at once.
+    Without an observable: of the second-largest eigenvalue of the dominant class, amplitude
+    1. −inf, 0 and 0 when no mode decays slower than at once.
     """
     log_modulus, phase = segment.spectrum()
-    if observable is None:
-        if log_modulus.shape[1] == 0:
-            return np.full(segment.indices.shape, -np.inf), np.zeros(segment.indices.shape)
-        return log_modulus[:, 0], np.abs(phase[:, 0])
-    slowest = np.full(segment.indices.shape, -np.inf)
-    waves = np.zeros(segment.indices.shape)
+    shape = segment.indices.shape
+    slowest, waves, amplitudes = np.full(shape, -np.inf), np.zeros(shape), np.zeros(shape)
     if log_modulus.shape[1] == 0:
-        return slowest, waves
+        return slowest, waves, amplitudes
+    if observable is None:
+        return log_modulus[:, 0], np.abs(phase[:, 0]), np.ones(shape)
     pairs = _sources(window, segment, observable)
     chances, laws = segment.law.double_chance(), _spread(segment.law.stationary, segment)
     for i in range(segment.indices.size):
         found = modes(chances[i], laws[:, i])
-        carried = [k for s, t in pairs for k in leading_modes(found, s[:, i], t[:, i], _AMPLITUDE)]
+        carried = [k for s, t, _ in pairs for k in leading_modes(found, s[:, i], t[:, i], _AMPLITUDE)]
         if carried:
             k = min(carried)
             slowest[i] = _accurate(found, k, log_modulus[i], phase[i])
             waves[i] = abs(found.phase[k])
-    return slowest, waves
+            amplitudes[i] = _amplitude(found, k, [(s[:, i], t[:, i], shift) for s, t, shift in pairs])
+    return slowest, waves, amplitudes
+
+
+def _amplitude(found: Modes, k: int, pairs: Sequence[tuple[np.ndarray, np.ndarray, int]]) -> float:
+    """Return A of the mode's part A cos(κr + φ) e^{−r/ξ} of a correlation function."""
+    group = next(g for g in clusters(found.log_modulus, found.phase) if k in g)
+    ratio = np.exp(found.log_modulus[k] + 1j * found.phase[k])
+    total = sum(
+        ((s @ found.right[:, group]) * (found.left[group] @ t)).sum() * ratio ** (shift - 1) for s, t, shift in pairs
+    )
+    alone = found.phase[k] == 0 or abs(abs(found.phase[k]) - np.pi) < 1e-9
+    return float(abs(total)) * (1 if alone else 2)
 
 
 def _accurate(found: Modes, k: int, log_modulus: np.ndarray, phase: np.ndarray) -> float:
@@ -141,14 +151,16 @@ def _accurate(found: Modes, k: int, log_modulus: np.ndarray, phase: np.ndarray) 
     return float(alike[rank]) if rank < alike.size and abs(alike[rank] - rough) < 1e-6 * (1 + abs(rough)) else rough
 
 
-def _sources(window: ChainWindow, segment: Segment, observable: str) -> list[tuple[np.ndarray, np.ndarray]]:
+def _sources(window: ChainWindow, segment: Segment, observable: str) -> list[tuple[np.ndarray, np.ndarray, int]]:
+    """Return deviation left behind, expectation, and difference of anchors, for every pair of parts."""
     pairs = []
-    tables = [segment.edge_table((handle("observable", (), f"{observable}@{c}"),)) for c in anchors(window, observable)]
-    for x in tables:
-        for y in tables:
+    cells = anchors(window, observable)
+    tables = [segment.edge_table((handle("observable", (), f"{observable}@{c}"),)) for c in cells]
+    for x, first in zip(tables, cells, strict=True):
+        for y, second in zip(tables, cells, strict=True):
             if x is not None and y is not None:
                 source, target = segment.law.centred_source(x), segment.law.conditional(y)
-                pairs.append((_spread(source, segment), _spread(target, segment)))
+                pairs.append((_spread(source, segment), _spread(target, segment), first - second))
     return pairs
 
 

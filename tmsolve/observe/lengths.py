@@ -11,13 +11,13 @@ __all__ = ["decays", "gaps", "lengths"]
 
 
 @np.errstate(under="ignore")
-def decays(laws: Laws, a: str | None) -> tuple[np.ndarray, np.ndarray]:
-    """Return ln |λ/λ₁| and wave number of the slowest mode (that ``a`` shows), shape (size,) each."""
+def decays(laws: Laws, a: str | None) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return ln |λ/λ₁|, wave number and amplitude of the slowest mode (that ``a`` shows), shape (size,) each."""
     window, segments = laws.resolved(() if a is None else (a,))
-    modulus, wave = np.empty(laws.size), np.empty(laws.size)
+    found = np.empty((3, laws.size))
     for segment in segments:
-        modulus[segment.indices], wave[segment.indices] = decay(window, segment, a)
-    return modulus, wave
+        found[:, segment.indices] = decay(window, segment, a)
+    return found[0], found[1], found[2]
 
 
 def lengths(log_modulus: np.ndarray) -> np.ndarray:

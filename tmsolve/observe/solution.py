@@ -209,7 +209,11 @@ class Solution:
         """Wave number in [0, π] per cell of the same mode: 0 monotonic, π alternating."""
         return self._shaped(self._decay(a)[1], "wave number")
 
-    def _decay(self, a: str | None) -> tuple[np.ndarray, np.ndarray]:
+    def correlation_amplitude(self, a: str) -> np.ndarray:
+        """Amplitude A of the same mode: ⟨a₀a_r⟩ − ⟨a⟩² → A cos(kr + φ) e^{−r/ξ} at large r; 0 where there is none."""
+        return self._shaped(self._decay(a)[2], "correlation amplitude")
+
+    def _decay(self, a: str | None) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
         if a is not None:
             self.point.chain.observable(a)
         return decays(self.laws, a)
