@@ -106,6 +106,31 @@ def test_a_billion_cells_of_nine_joint_states(seed, cells):
         near(found.covariance("m"), (high - 2 * middle + low) / step**2, rel=1e-13)
 
 
+COLD = [
+    # A cold antiferromagnet: the variance of 1e9 cells is 1.8e-17. Two ferromagnetic phases. A frustrated chain in a
+    # field. A ground state of energy 0, whose ln Z is 4e-32 for 1000 cells. Coexisting phases with residual entropy.
+    {"J": "-1", "K": "0", "D": "-3", "h": "0", "T": "0.05"},
+    {"J": "1", "K": "0", "D": "0.9", "h": "0", "T": "0.05"},
+    {"J": "-1", "K": "-0.5", "D": "0.2", "h": "0.3", "T": "0.02"},
+    {"J": "1", "K": "0.5", "D": "1.6", "h": "0.01", "T": "0.02"},
+    {"J": "-1", "K": "0.5", "D": "-1", "h": "2", "T": "0.01"},
+]
+
+
+@pytest.mark.parametrize("cells", [1000, 10**9])
+@pytest.mark.parametrize("values", COLD)
+def test_cold_chains_keep_their_digits(values, cells):
+    """ln Z within 1e-15, the variance within 1e-13 of a 600-digit power, however small they are."""
+    found = ring(SPIN.at(**values), cells)
+    with mpmath.workdps(600):
+        step = mpmath.mpf(10) ** -120
+        low, middle, high = (log_trace(values, cells, tilt) for tilt in (-step, 0, step))
+        near(found.log_Z, middle, rel=1e-15)
+        near(found.covariance("m"), (high - 2 * middle + low) / step**2, rel=1e-13)
+        if values["h"] != "0":
+            near(found.total("m"), (high - low) / (2 * step), rel=1e-13)
+
+
 def test_a_profile_near_the_end_of_a_billion_cells():
     """Fixed first spin: ⟨s_r⟩ = tanh(K)^r; the far end is free. Opposite ends meet in the middle at 0."""
     chain = open_chain(ISING.at(T=1, J=1), 10**9, left=1)

@@ -1,9 +1,8 @@
 """Long products of step tables whose size is kept apart.
 
 After N steps logarithms of weights have grown like N, while everything but ln Z hangs on
-their differences. Each product is therefore brought back to a largest entry of 1, with
-tilts counted from those of that entry; what has been taken out is summed to twice the
-length of a double.
+their differences. In each product one large entry is therefore brought back to 1, with tilts
+counted from its own; what has been taken out is summed to twice the length of a double.
 """
 
 from __future__ import annotations
@@ -31,7 +30,7 @@ class Product:
     Attributes
     ----------
     table : LogTable
-        (rows, columns, batch); its largest entry has logarithm, energy and tilts 0.
+        (rows, columns, batch); one large entry has logarithm, energy and tilts 0.
     taken : mapping
         What belongs to every entry: of "energy", "log" and of each tilt's key.
     """
@@ -49,12 +48,16 @@ def _plus(first: Taken, second: Taken) -> Taken:
 
 
 def scaled(algebra: LogSum, table: LogTable, taken: Mapping[Any, Taken] | None = None) -> Product:
-    """Take the size out of a table of two cuts."""
+    """Take the size out of a table of two cuts: that of its largest entry, on the diagonal where there is one."""
     shape = np.broadcast_shapes(table.log.shape, table.energy.shape, (1, 1, algebra.beta.shape[0]))
     parts: dict[Any, np.ndarray] = {"energy": table.energy, "log": table.log, **table.tilts}
     flat = {name: np.broadcast_to(part, shape).reshape(-1, shape[-1]) for name, part in parts.items()}
     there = flat["log"] != -np.inf
     size = np.where(there, flat["log"] - algebra.beta * flat["energy"], -np.inf)
+    if shape[0] == shape[1]:
+        # What returns to its start is what a long product repeats; its tilts may be tiny, those of detours are not.
+        returns = np.eye(shape[0], dtype=bool).ravel()[:, None] & there
+        size = np.where(returns | ~returns.any(axis=0), size, -np.inf)
     largest = (size.argmax(axis=0), np.arange(shape[-1]))
     some = there[largest]
     rest, out = {}, dict(taken or {})
