@@ -80,6 +80,18 @@ class CommunicatingClass:
             good[i] = confirm(self, int(i))
         return self.trusted & good
 
+    def reason(self, i: int) -> str:
+        """Say why doubles do not suffice at a point of the part."""
+        if not self.pair.converged[i]:
+            return "the search did not converge in doubles"
+        if self.pair.error[i] >= TOLERANCE:
+            return "rounding of the Perron vector in doubles"
+        if not self.trusted[i]:
+            return "weights underflow doubles"
+        if self.error(tied=False)[i] >= TOLERANCE:
+            return "rounding of the energies in doubles"
+        return "energies that tie in doubles differ"
+
 
 class Ties:
     """Confirms with longer numbers that cycles which tie in doubles do tie; remembers the answers."""

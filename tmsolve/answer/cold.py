@@ -66,7 +66,7 @@ def cold_laws(window: ChainWindow, point: Point, indices: np.ndarray, solver: De
         depth = (gap if gap else Fraction(1)) * _DEPTH
         there = Point(point.chain, MappingProxyType({**values, "T": depth}), ())
         segment = long_law(window, there, 0, solver, FIRST_BITS)
-        segments.append(replace(segment, indices=np.array([index]), limit=True))
+        segments.append(replace(segment, indices=np.array([index]), limit=True, reason="T = 0"))
     return segments
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from dataclasses import replace
 from typing import Any
 
 import numpy as np
@@ -47,7 +48,7 @@ def stationary_laws(window: ChainWindow, point: Point, solver: Dense) -> list[Se
     segments: list[Segment] = []
     for indices in _same_pattern(whole.pattern):
         part = whole if indices.size == point.size else Assembled(window, _pick(values, indices), indices.size)
-        segments.extend(_solve_part(part, values, indices, solver, point))
+        segments.extend(_solve_part(part, indices, solver, point))
     return segments
 
 
@@ -60,9 +61,7 @@ def _same_pattern(pattern: np.ndarray) -> list[np.ndarray]:
     return [np.flatnonzero(group == g) for g in range(group.max() + 1)]
 
 
-def _solve_part(
-    part: Assembled, values: Mapping[str, Any], indices: np.ndarray, solver: Dense, point: Point
-) -> list[Segment]:
+def _solve_part(part: Assembled, indices: np.ndarray, solver: Dense, point: Point) -> list[Segment]:
     edges = part.pattern[..., 0]
     classes = communicating_classes(edges)
     if not classes:
@@ -86,7 +85,7 @@ def _solve_part(
             keep = local[good]
             segments.append(_segment(found, number, part, keep, indices[keep]))
         for i in local[~good]:
-            segments.append(_climb(part, values, indices[i], number, solver, point))
+            segments.append(replace(_climb(part, indices[i], solver, point), reason=chosen.reason(int(i))))
     return segments
 
 
@@ -123,7 +122,7 @@ def _names(window: ChainWindow, states: np.ndarray) -> str:
     return "{" + "; ".join(shown) + ("; …" if len(states) > 4 else "") + "}"
 
 
-def _climb(part: Assembled, values: Mapping[str, Any], index: int, number: int, solver: Dense, point: Point) -> Segment:
+def _climb(part: Assembled, index: int, solver: Dense, point: Point) -> Segment:
     """Solve one point again with longer and longer numbers."""
     size = part.window.shape[0]
     if size <= CLIMB_LIMIT:
@@ -162,7 +161,8 @@ def long_laws(window: ChainWindow, point: Point, solver: Dense, digits: int) -> 
         bits = FIRST_BITS
         while bits < 3.33 * digits + 64:
             bits *= 2
-        segments.append(long_law(window, point, index, solver, bits, 10.0 ** -min(digits + 4, 300)))
+        law = long_law(window, point, index, solver, bits, 10.0 ** -min(digits + 4, 300))
+        segments.append(replace(law, reason=f"{digits} digits asked for"))
     return segments
 
 

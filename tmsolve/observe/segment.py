@@ -44,6 +44,8 @@ class Segment:
         ln (λ/λ₁) of all eigenvalues of other classes of states, and phases.
     limit : bool
         Whether the points stand for T = 0; ``beta`` is then large but has no meaning.
+    reason : str
+        Why numbers of this length were used.
     """
 
     indices: np.ndarray
@@ -58,6 +60,7 @@ class Segment:
     spectrum: Callable[[], tuple[np.ndarray, np.ndarray]]
     other_classes: tuple[Callable[[], tuple[np.ndarray, np.ndarray]], ...] = ()
     limit: bool = False
+    reason: str = "doubles suffice"
 
     def double(self, values: Any) -> np.ndarray:
         """Round to doubles and spread over the points of the segment."""

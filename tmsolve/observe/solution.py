@@ -287,7 +287,7 @@ class Solution:
 
     @property
     def diagnostics(self) -> Mapping[str, Any]:
-        """How the numbers were obtained: matrix size, length of numbers and rounding bound per point."""
+        """How the numbers were obtained: matrix size, per point length of numbers, why, and rounding bound."""
         facts = diagnose(self.laws)
-        shaped = {name: facts[name].reshape(self.shape)[()] for name in ("bits", "vector_error")}
+        shaped = {name: facts[name].reshape(self.shape)[()] for name in ("bits", "reason", "vector_error")}
         return {**facts, **shaped}
