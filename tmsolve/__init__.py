@@ -45,6 +45,7 @@ if TYPE_CHECKING:
     from .errors import TooLargeError as TooLargeError
     from .finite.chains import open_chain as open_chain
     from .finite.chains import ring as ring
+    from .finite.domains import domains as domains
     from .ground.phases import phase_diagram as phase_diagram
     from .ground.states import ground_state as ground_state
     from .survey.activation import local_slope as local_slope
@@ -72,6 +73,7 @@ _HOMES = {
         "TooLargeError",
     ),
     "finite.chains": ("open_chain", "ring"),
+    "finite.domains": ("domains",),
     "ground.phases": ("phase_diagram",),
     "ground.states": ("ground_state",),
     "survey.activation": ("local_slope",),
