@@ -19,7 +19,7 @@ from ..eigen.reduction import Reduction
 from ..operators.numbers import DOUBLE, Numbers, multiprecision
 from .arithmetic import Arithmetic
 from .raw import Raw, as_number, greater, log2_gap
-from .start import find_start
+from .start import LONG_LIMIT, find_start
 
 __all__ = ["Bracket"]
 
@@ -54,9 +54,9 @@ class Bracket:
         self.low: Raw = (0, 0, 0, 0)
         self.high: Raw | None = None
         self.vector: np.ndarray | None = None
-        self._flow: Reduction | None = None
-        self._flow_numbers = DOUBLE
+        self._flows: tuple[Reduction, ...] = ()
         self._tried = 0
+        self._loose = False
 
     def tighten(self, weights: np.ndarray, arithmetic: Arithmetic, target: float) -> None:
         """Bring the bounds to a relative distance of 2^target, as far as these numbers go.
@@ -77,9 +77,27 @@ class Bracket:
                 vector = self._restart(vector, weights, arithmetic, numbers)
             while True:
                 self.vector, distance = self._refine(vector, weights, arithmetic, numbers, aim)
+                self._loose = distance > aim
                 if distance <= aim or len(vector) == 1 or self._next() > max(arithmetic.bits, _FIRST_LONG):
                     return
                 vector = self._restart(self.vector, weights, arithmetic, numbers)
+
+    @property
+    def exhausted(self) -> bool:
+        """Whether longer intervals would not bring the bounds closer: the vector is the obstacle."""
+        return self._loose and len(self.states) > LONG_LIMIT
+
+    def balance(self) -> np.ndarray:
+        """Return the square roots of right over left Perron vector, as far as they are known.
+
+        Turned by them the class's part of the matrix has a norm close to its root, whatever
+        the scale of its entries.
+        """
+        assert self.vector is not None
+        if not self._flows:
+            return self.vector
+        law = np.maximum(self._flows[-1].stationary[:, 0].astype(np.float64), 1e-300)
+        return np.asarray(self.vector / np.sqrt(law))
 
     def _next(self) -> int:
         """Return the length of the numbers to begin with next time."""
@@ -97,7 +115,7 @@ class Bracket:
         start = find_start(log.astype(np.float64) if short is DOUBLE else short.array(log), self.edges, short)
         if start is None:
             return vector
-        self._flow, self._flow_numbers = start.flow, short
+        self._flows = start.flows
         return numbers.exp(numbers.array(start.log_vector - start.log_vector.max()))
 
     def _refine(
@@ -141,21 +159,21 @@ class Bracket:
         """Take one Newton step in the logarithms of the vector, on an approximate chain of Doob.
 
         The step solves (1 − P) g = r with r the rows' relative deviations; it gains as many
-        digits as the chain is known to. Where it is too large to be believed, half a step
-        of the power method is taken.
+        digits as the chain is known to. Where it is too large to be believed a softened
+        chain is asked, and at last half a step of the power method is taken.
         """
         deviation = rows / (rows.sum() / len(rows)) - 1
         scale = abs(deviation).max()
         if scale == 0:
             return vector
-        if self._flow is not None:
-            short = self._flow_numbers
-            scaled = deviation / scale
-            source = (scaled.astype(np.float64) if short is DOUBLE else short.array(scaled))[:, None]
+        scaled = deviation / scale
+        for flow in self._flows:
+            law = flow.stationary[:, 0]
+            source = scaled.astype(np.float64) if law.dtype != object else scaled
             with np.errstate(all="ignore"):
-                step = self._flow.poisson(source - (self._flow.stationary * source).sum(axis=0))[:, 0]
+                step = flow.poisson((source - (law * source).sum())[:, None])[:, 0]
             if np.isfinite(step.astype(np.float64)).all():
                 step = numbers.array(step) * scale
                 if abs(step).max() < 0.5:
-                    return vector * (1 + step)
-        return vector * (1 + deviation / 2)
+                    return np.asarray(vector * (1 + step))
+        return np.asarray(vector * (1 + deviation / 2))

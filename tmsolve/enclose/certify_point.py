@@ -29,6 +29,8 @@ __all__ = ["certify"]
 _MOST_DIGITS = 10000
 _LARGEST = 512
 _LARGEST_SPECTRUM = 64
+#: States times bits up to which a spectrum is tried again with longer numbers.
+_SPECTRUM_WORK = 2**16
 #: Bits beyond the digits asked for, to begin with.
 _MARGIN = 40
 #: First, coarse look at every class, as a binary exponent.
@@ -159,7 +161,8 @@ def _climb(
             # A logarithm near 0 needs the eigenvalue to more digits than it has itself.
             low, high = _tightened(weights, brackets, arithmetic, -math.inf)
             log = Enclosure(*arithmetic.log_ends(low, high))
-        if log.digits >= digits or bits >= cap:
+        stuck = any(bracket.exhausted and bracket.high and greater(bracket.high, low) for bracket in brackets)
+        if log.digits >= digits or bits >= cap or stuck:
             return log, arithmetic
         small = _binary_exponent(log)
         bits = min(cap, 2 * bits if small is None else max(bits + 64, needed - min(small, 0) + 64))
@@ -203,7 +206,7 @@ def _spectrum(
         )
     require("flint", extra="certified")
     wanted = Fraction(1, 10**digits)
-    longest = max(bits, 2 ** (12 - max(0, size.bit_length() - 3)))
+    longest = max(bits, min(4096, _SPECTRUM_WORK // size))
     while True:
         arithmetic = Balls(bits)
         with arithmetic.working():

@@ -14,7 +14,7 @@ from ..assemble.window import ChainWindow, Degeneracy, SiteWeights
 from ..declare import Chain, Term
 from ..errors import SolveError
 from ..tabulate.calling import call_sites, number_table
-from .literal import Literal, exact_entry
+from .literal import Literal, Rounded, exact_entry
 
 __all__ = ["Declared", "FactorTable", "declared_tables"]
 
@@ -116,9 +116,11 @@ def _term_table(chain: Chain, term: Term, values: Mapping[str, Fraction]) -> tup
         try:
             called = call_sites(term, states, convert, given)
             entries = [exact_entry(entry) for entry in called.ravel()]
-        except Exception:  # the function works on plain numbers only, as it did just before
+        except Rounded:
+            break
+        except Exception:  # states may have to be plain numbers, to number the rows of a list, say
             continue
-        if all(map(_agree, entries, doubles.ravel().tolist())):
+        if _agree(entries, doubles):
             return _objects(entries, doubles.shape), True
     rounded = [Fraction(entry) if math.isfinite(entry) else entry for entry in doubles.ravel().tolist()]
     return _objects(rounded, doubles.shape), False
@@ -130,8 +132,13 @@ def _exact_state(state: Any) -> Any:
     return tuple(_exact_state(part) for part in state) if isinstance(state, tuple) else state
 
 
-def _agree(exact: Fraction | float, double: float) -> bool:
-    """Whether the exact call means what the call in doubles means; branches may differ."""
-    if isinstance(exact, float) or math.isinf(double):
-        return exact == double
-    return abs(exact - Fraction(double)) <= Fraction(1, 10**9) * (1 + abs(exact))
+def _agree(entries: list[Fraction | float], doubles: np.ndarray) -> bool:
+    """Whether the exact calls mean what the calls in doubles mean; branches may differ."""
+    scale = Fraction(float(np.abs(doubles[np.isfinite(doubles)]).max(initial=0.0)))
+    for exact, double in zip(entries, doubles.ravel().tolist(), strict=True):
+        if isinstance(exact, float) or math.isinf(double):
+            if exact != double:
+                return False
+        elif abs(exact - Fraction(double)) > scale / 10**9:
+            return False
+    return True

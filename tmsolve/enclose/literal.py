@@ -60,7 +60,6 @@ class Literal(Fraction):
     """
 
     __slots__ = ()
-    __array_ufunc__ = None
     __hash__ = Fraction.__hash__
 
     def __float__(self) -> float:
@@ -74,6 +73,33 @@ class Literal(Fraction):
 
     def __abs__(self) -> Literal:
         return Literal(Fraction.__abs__(self))
+
+    def __array_ufunc__(self, ufunc: Any, method: str, *inputs: Any, **options: Any) -> Any:
+        compute = _UFUNCS.get(ufunc.__name__)
+        if compute is None or method != "__call__" or options:
+            raise Rounded(f"a function took numpy.{ufunc.__name__} of an exact number")
+        return compute(*(x.item() if isinstance(x, np.generic) else x for x in inputs))
+
+
+#: What NumPy's elementwise functions do that stays exact.
+_UFUNCS: dict[str, Callable[..., Any]] = {
+    "absolute": abs,
+    "add": operator.add,
+    "divide": operator.truediv,
+    "equal": operator.eq,
+    "greater": operator.gt,
+    "greater_equal": operator.ge,
+    "less": operator.lt,
+    "less_equal": operator.le,
+    "maximum": max,
+    "minimum": min,
+    "multiply": operator.mul,
+    "negative": operator.neg,
+    "not_equal": operator.ne,
+    "power": operator.pow,
+    "square": lambda x: x * x,
+    "subtract": operator.sub,
+}
 
 
 def _operand(other: Any) -> Any:
@@ -137,6 +163,8 @@ def exact_entry(value: Any) -> Fraction | float:
     >>> exact_entry(-0.5), exact_entry(math.inf)
     (Fraction(-1, 2), inf)
     """
+    if isinstance(value, np.ndarray) and value.ndim == 0:
+        value = value.item()
     number = NotImplemented if isinstance(value, (bool, np.bool_)) else _operand(value)
     if number is NotImplemented or (isinstance(number, float) and number != math.inf):
         raise Rounded(f"{value!r} is not an exact number")

@@ -135,10 +135,10 @@ def enclose_spectrum(weights: np.ndarray, brackets: Sequence[Bracket], arithmeti
 def _class_boxes(weights: np.ndarray, bracket: Bracket, arithmetic: Balls, exponent: int) -> list[_Box]:
     flint = arithmetic.flint
     n = len(weights)
-    assert bracket.vector is not None and bracket.high is not None
+    assert bracket.high is not None
     with arithmetic.working():
         x = np.empty(n, dtype=object)
-        x[:] = [arithmetic.exact(entry._mpf_) for entry in bracket.vector]
+        x[:] = [arithmetic.exact(entry._mpf_) for entry in bracket.balance()]
         shift = arithmetic.exact((0, 1, -exponent, 1))
         similar = weights * x[None, :] / x[:, None] * shift
         try:
