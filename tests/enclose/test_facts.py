@@ -8,9 +8,7 @@ from tmsolve import Chain, StateSet, bond, certify, colours, delta, ising, site,
 
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)])
 POTTS = Chain(colours(3), [bond(lambda s, t, J: -J * delta(s, t)), site(lambda s, h: -h * delta(s, 0))])
-SPIN1 = Chain(
-    spins(1), [bond(lambda s, t, J, K: -J * s * t - K * s * s * t * t), site(lambda s, D: D * s * s)]
-)
+SPIN1 = Chain(spins(1), [bond(lambda s, t, J, K: -J * s * t - K * s * s * t * t), site(lambda s, D: D * s * s)])
 # Ising chain in zero field, ln λ = ln(2 cosh K) at K = 1: E. Ising, Z. Phys. 31, 253 (1925).
 A01 = "1.12692801104297249644372680636"
 # Ising chain in a field, K = 0.5, L = 0.3: H. A. Kramers and G. H. Wannier, Phys. Rev. 60, 252 (1941).
@@ -82,7 +80,7 @@ def test_degenerate_eigenvalues_share_a_ball():
     first, rest = certify(chain.at(T=1, J=1)).spectrum
     assert (first.multiplicity, rest.multiplicity) == (1, 4)
     with mpmath.workdps(80):
-        assert first.contains(mpmath.e + 4) and rest.contains(mpmath.e - 1)      # R. B. Potts (1952), from memory
+        assert first.contains(mpmath.e + 4) and rest.contains(mpmath.e - 1)  # R. B. Potts (1952), from memory
     assert rest.real.radius < 1e-30 and "multiplicity 4" in str(rest)
 
 

@@ -169,5 +169,9 @@ def _placed(digits: int, last: int, doubt: str) -> str:
 
 
 def _rounded_up(value: Fraction) -> str:
-    exponent = decimal_exponent(value)
-    return _placed(math.ceil(value / Fraction(10) ** (exponent - 1)), exponent - 1, "").replace(".0e", "e")
+    """Write a positive number with two digits, not below its value."""
+    last = decimal_exponent(value) - 1
+    digits = math.ceil(value / Fraction(10) ** last)
+    while digits % 10 == 0:
+        digits, last = digits // 10, last + 1
+    return _placed(digits, last, "")
