@@ -70,6 +70,8 @@ def test_affine_forms_are_exact(function, constant, slopes):
         lambda s, J, K: J - math.inf,
         lambda s, J, K: J / 0,
         lambda s, J, K: J * 1j,
+        lambda s, J, K: J * 10**300,
+        lambda s, J, K: 1e250 * s,
         lambda s, J, K: "energy",
         lambda s, J, K: True,
         lambda s, J, K: None,

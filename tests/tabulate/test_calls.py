@@ -100,6 +100,8 @@ def fails_for_up(s, h):
         (lambda s, h: 1 / (s + 1), SolveError, ("(-1, h=0.5) raised ZeroDivisionError",)),
         (lambda s, h: math.exp(1e4 * h), SolveError, ("(-1, h=0.5) raised OverflowError",)),
         (lambda s, h: h.missing, SolveError, ("raised AttributeError", "missing")),
+        (lambda s, h: 10**400, SolveError, ("returned a number larger than 1e250", "a larger unit")),
+        (lambda s, h: -1e300 * h, SolveError, ("(-1, h=0.5) returned a number larger than 1e250",)),
         (lambda s, h: math.log(s), SolveError, ("(-1, h=0.5) raised ValueError",)),
     ],
 )

@@ -23,6 +23,10 @@ from .calling import call_sites, numeric_state
 __all__ = ["AffineTable", "affine_table"]
 
 
+#: Larger coefficients, times a parameter, would not fit a double.
+_LARGEST = 10**200
+
+
 class _NotAffine(Exception):
     """The tracer met an operation that is not affine."""
 
@@ -31,13 +35,20 @@ def _exact(value: Any) -> Fraction | float:
     if isinstance(value, (bool, np.bool_)):
         return Fraction(int(value))
     if isinstance(value, Rational):
-        return Fraction(int(value.numerator), int(value.denominator))
+        return _bounded(Fraction(int(value.numerator), int(value.denominator)))
     if isinstance(value, Real):
         number = float(value)
         if not math.isfinite(number):
             return number
-        return Fraction(repr(number))
+        return _bounded(Fraction(repr(number)))
     raise _NotAffine
+
+
+def _bounded(number: Fraction) -> Fraction:
+    # The general route tells the user that the number is too large.
+    if abs(number) > _LARGEST:
+        raise _NotAffine
+    return number
 
 
 class _Tracer:

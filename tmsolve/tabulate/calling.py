@@ -16,6 +16,9 @@ from ..errors import DeclarationError, SolveError, TmsolveError
 
 __all__ = ["call_sites", "describe_call", "number_table", "numeric_state", "over_batch"]
 
+#: Sums of such values still fit a double.
+_LARGEST = 1e250
+
 
 def numeric_state(state: Any) -> Any:
     """Return a state as numeric code expects it: ints stay, fractions become floats."""
@@ -153,6 +156,8 @@ def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
             number = np.asarray(float(entry))
         except (TypeError, ValueError) as cause:
             raise DeclarationError(f"{call()} returned {entry!r}, but {noun} is a real number") from cause
+        except OverflowError:
+            number = np.asarray(np.finfo(float).max)
     if number.size != 1 and number.shape != (batch,):
         raise DeclarationError(
             f"{call()} returned an array of shape {number.shape}, but {noun} is one number per point; "
@@ -168,6 +173,8 @@ def _check_finite(number: np.ndarray, call: Callable[[], str], term: Term) -> No
             f"{call()} returned NaN; where a term forbids a configuration return math.inf outright, "
             "not a product such as inf*0"
         )
+    if ((np.abs(number) > _LARGEST) & np.isfinite(number)).any():
+        raise SolveError(f"{call()} returned a number larger than 1e250 in modulus; measure energies in a larger unit")
     if term.role == "energy" and (number == -math.inf).any():
         raise SolveError(
             f"{call()} returned −inf, which no Boltzmann factor can hold; math.inf forbids a configuration"
