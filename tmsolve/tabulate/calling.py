@@ -163,8 +163,9 @@ def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
             f"{call()} returned an array of shape {number.shape}, but {noun} is one number per point; "
             "compute on the parameters elementwise"
         )
+    number = number.reshape(-1).astype(np.float64)
     _check_finite(number, call, term)
-    return number.reshape(-1)
+    return number
 
 
 def _check_finite(number: np.ndarray, call: Callable[[], str], term: Term) -> None:
