@@ -9,6 +9,7 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import partial
 from typing import Any
 
 import numpy as np
@@ -85,16 +86,8 @@ def power(algebra: LogSum, step: Product, count: int) -> Product:
     >>> float(many.taken["log"][0][0] / np.log(2)), many.table.log[..., 0].tolist()
     (999999999.0, [[0.0, 0.0], [0.0, 0.0]])
     """
-    result: Product | None = None
-    square = step
-    while True:
-        if count & 1:
-            result = square if result is None else multiply(algebra, result, square)
-        count >>= 1
-        if not count:
-            assert result is not None
-            return result
-        square = multiply(algebra, square, square)
+    product: Product = plain.repeated(partial(multiply, algebra), step, count)
+    return product
 
 
 def close(algebra: LogSum, whole: Product, ring: bool) -> LogTable:

@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Sequence
+from collections.abc import Callable
+from functools import partial
+from typing import Any
 
 import numpy as np
 
 from .algebras import LogSum, LogTable
 
-__all__ = ["close", "multiply", "power", "total"]
+__all__ = ["close", "multiply", "power", "repeated"]
 
 
 def multiply(algebra: LogSum, first: LogTable, second: LogTable) -> LogTable:
@@ -18,8 +20,27 @@ def multiply(algebra: LogSum, first: LogTable, second: LogTable) -> LogTable:
     return algebra.sum(algebra.product([left, right]), 1)
 
 
+def repeated(join: Callable[[Any, Any], Any], step: Any, count: int) -> Any:
+    """Join ``count`` ≥ 1 equal steps by repeated squaring.
+
+    Examples
+    --------
+    >>> repeated(lambda first, second: first + second, "ab", 5)
+    'ababababab'
+    """
+    result = None
+    square = step
+    while True:
+        if count & 1:
+            result = square if result is None else join(result, square)
+        count >>= 1
+        if not count:
+            return result
+        square = join(square, square)
+
+
 def power(algebra: LogSum, step: LogTable, count: int) -> LogTable:
-    """Multiply ``count`` ≥ 1 equal steps by repeated squaring.
+    """Multiply ``count`` ≥ 1 equal steps.
 
     Examples
     --------
@@ -27,24 +48,8 @@ def power(algebra: LogSum, step: LogTable, count: int) -> LogTable:
     >>> float(power(LogSum(np.ones(1)), LogTable(zero, zero), 5).log[0, 0, 0])     # 2⁴ paths
     2.772588722239781
     """
-    result: LogTable | None = None
-    square = step
-    while True:
-        if count & 1:
-            result = square if result is None else multiply(algebra, result, square)
-        count >>= 1
-        if not count:
-            assert result is not None
-            return result
-        square = multiply(algebra, square, square)
-
-
-def total(algebra: LogSum, parts: Sequence[LogTable]) -> LogTable:
-    """Multiply different steps in order."""
-    result = parts[0]
-    for part in parts[1:]:
-        result = multiply(algebra, result, part)
-    return result
+    product: LogTable = repeated(partial(multiply, algebra), step, count)
+    return product
 
 
 def close(algebra: LogSum, table: LogTable, ring: bool) -> LogTable:
