@@ -112,6 +112,17 @@ def test_classes_that_never_mix_are_all_taken_into_account(arithmetic):
         assert tie.contains(0)
 
 
+@pytest.mark.parametrize("temperature", ["0.005", "0.0003", "0.0000002"])
+def test_two_ground_states_of_which_one_has_entropy(temperature, arithmetic):
+    # Energy −2 per step: alternating 0 2 0 2 …, or 1 and 3 with no two 3s in a row, which has the entropy ln φ. The
+    # weights of the two in the Perron vector differ by a factor like exp(−600), or far less.
+    rows = [[3, 1, -2, 3], [1, -2, 3, -2], [-2, 3, 2, 3], [3, -2, 3, -1]]
+    certificate = certify(Chain(colours(4), [bond(lambda s, t: rows[s][t])]).at(T=temperature), digits=40)
+    with mpmath.workdps(90):
+        assert certificate.contains(-2 - mpmath.mpf(temperature) * mpmath.log(mpmath.phi))
+    assert certificate.certified
+
+
 def test_the_spectrum_needs_flint(arithmetic):
     certificate = certify(SPIN1.at(T=1, J=1, D="0.5", h=0))
     if arithmetic == "balls":

@@ -15,7 +15,7 @@ import math
 
 import numpy as np
 
-from ..eigen.reduction import Reduction
+from ..eigen.reduction import Reduction, solve_shifted
 from ..operators.numbers import DOUBLE, Numbers, multiprecision
 from .arithmetic import Arithmetic
 from .raw import Raw, as_number, greater, log2_gap
@@ -27,7 +27,9 @@ __all__ = ["Bracket"]
 _GUARD = 32
 #: First length of the numbers that a start is computed with, where doubles will not do.
 _FIRST_LONG = 128
-_STALLS = 3
+_STALLS = 6
+#: A row whose quotient is below this part of the largest does not know its entry.
+_FAR = 0.95
 
 
 class Bracket:
@@ -55,8 +57,10 @@ class Bracket:
         self.high: Raw | None = None
         self.vector: np.ndarray | None = None
         self._flows: tuple[Reduction, ...] = ()
+        self._law: np.ndarray | None = None
         self._tried = 0
         self._loose = False
+        self._middles: tuple[int, np.ndarray] | None = None
 
     def tighten(self, weights: np.ndarray, arithmetic: Arithmetic, target: float) -> None:
         """Bring the bounds to a relative distance of 2^target, as far as these numbers go.
@@ -94,9 +98,9 @@ class Bracket:
         the scale of its entries.
         """
         assert self.vector is not None
-        if not self._flows:
+        if self._law is None:
             return self.vector
-        law = np.maximum(self._flows[-1].stationary[:, 0].astype(np.float64), 1e-300)
+        law = np.maximum(self._law.astype(np.float64), 1e-300)
         return np.asarray(self.vector / np.sqrt(law))
 
     def _next(self) -> int:
@@ -116,6 +120,7 @@ class Bracket:
         if start is None:
             return vector
         self._flows = start.flows
+        self._law = start.flows[-1].stationary[:, 0]
         return numbers.exp(numbers.array(start.log_vector - start.log_vector.max()))
 
     def _refine(
@@ -133,7 +138,7 @@ class Bracket:
                 best, kept = distance, vector
             if best <= aim or stalls > _STALLS:
                 return kept, best
-            vector = self._improved(vector, rows, numbers)
+            vector = self._improved(vector, rows, weights, arithmetic, numbers)
 
     def _evaluate(
         self, vector: np.ndarray, weights: np.ndarray, arithmetic: Arithmetic, numbers: Numbers
@@ -155,12 +160,15 @@ class Bracket:
         self.high = high if self.high is None or greater(self.high, high) else self.high
         return rows, log2_gap(low, high)
 
-    def _improved(self, vector: np.ndarray, rows: np.ndarray, numbers: Numbers) -> np.ndarray:
+    def _improved(
+        self, vector: np.ndarray, rows: np.ndarray, weights: np.ndarray, arithmetic: Arithmetic, numbers: Numbers
+    ) -> np.ndarray:
         """Take one Newton step in the logarithms of the vector, on an approximate chain of Doob.
 
         The step solves (1 − P) g = r with r the rows' relative deviations; it gains as many
         digits as the chain is known to. Where it is too large to be believed a softened
-        chain is asked, and at last half a step of the power method is taken.
+        chain is asked, then one step of inverse iteration taken; in large matrices, half a
+        step of the power method.
         """
         deviation = rows / (rows.sum() / len(rows)) - 1
         scale = abs(deviation).max()
@@ -176,4 +184,33 @@ class Bracket:
                 step = numbers.array(step) * scale
                 if abs(step).max() < 0.5:
                     return np.asarray(vector * (1 + step))
-        return np.asarray(vector * (1 + deviation / 2))
+        if len(vector) > LONG_LIMIT:
+            return np.asarray(vector * (1 + deviation / 2))
+        # A chain whose steps were refused is not the chain of this vector; it is not asked again.
+        self._flows = ()
+        solved = self._noda(vector, rows, weights, arithmetic, numbers)
+        return solved if (solved > 0).all() else np.asarray(vector * (1 + deviation / 2))
+
+    def _noda(
+        self, vector: np.ndarray, rows: np.ndarray, weights: np.ndarray, arithmetic: Arithmetic, numbers: Numbers
+    ) -> np.ndarray:
+        """Solve (top − W) y = x with top the largest quotient (T. Noda, Numer. Math. 17, 382 (1971), from memory).
+
+        It brings order into groups of states with different roots, whose weights may differ
+        by any factor: entries that are far from solving their own row are left out of the
+        right side, and take the value that the others imply.
+        """
+        if self._middles is None or self._middles[0] != arithmetic.bits:
+            plain = numbers.array(np.zeros(self.edges.shape))
+            for i, j in np.argwhere(self.edges):
+                plain[i, j] = as_number(arithmetic.ends(weights[i, j])[1], numbers)
+            self._middles = (arithmetic.bits, plain)
+        plain = self._middles[1]
+        # In the gauge of the vector nothing cancels but what must.
+        scaled = plain * vector[None, :] / vector[:, None]
+        right = numbers.array(np.asarray(rows > rows.max() * _FAR, dtype=float))
+        diagonal = -np.diagonal(scaled)
+        solved = solve_shifted(
+            np.array([rows.max()]), diagonal[:, None], scaled[..., None], right[:, None], numbers.epsilon
+        )[:, 0]
+        return np.asarray(vector * solved / solved.max())

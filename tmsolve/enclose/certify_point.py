@@ -213,6 +213,6 @@ def _spectrum(
             weights = weight_matrix(window, declared, arithmetic)
         found = enclose_spectrum(weights, brackets, arithmetic)
         radius = max(max(ball.real_mantissa.radius, ball.imag_mantissa.radius) for ball in found)
-        if radius <= wanted or 2 * bits > longest:
+        if radius <= wanted or bits >= longest:
             return found
-        bits *= 2
+        bits = min(4 * bits, longest)
