@@ -9,6 +9,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Sequence
+from fractions import Fraction
 from functools import partial
 from typing import Any
 
@@ -17,7 +18,7 @@ import numpy as np
 from ..errors import NotApplicable
 from ..operators.partitions import index_partitions
 
-__all__ = ["Jet", "variable"]
+__all__ = ["Jet", "logarithm", "variable"]
 
 
 class Jet:
@@ -80,7 +81,10 @@ class Jet:
     __rmul__ = __mul__
 
     def __truediv__(self, other: Any) -> Jet:
-        return self * _power(other, -1) if isinstance(other, Jet) else self * (1 / other)
+        if isinstance(other, Jet):
+            return self * _power(other, -1)
+        exact = isinstance(self.value, Fraction) and isinstance(other, int)
+        return self * (Fraction(1, other) if exact else 1 / other)
 
     def __rtruediv__(self, other: Any) -> Jet:
         return _power(self, -1) * other
@@ -153,7 +157,7 @@ class Jet:
 
 def variable(value: Any, slots: Sequence[int]) -> Jet:
     """Return an independent variable that the given slots differentiate by."""
-    return Jet({0: value, **{1 << slot: 1.0 for slot in slots}})
+    return Jet({0: value, **{1 << slot: 1 for slot in slots}})
 
 
 def _parts(other: Any) -> dict[int, Any]:
@@ -187,11 +191,11 @@ def _compose(jet: Jet, derivatives: Sequence[Any]) -> Jet:
     parts: dict[int, Any] = {0: derivatives[0]}
     for mask in sorted(masks - {0}):
         bits = [bit for bit in range(mask.bit_length()) if mask >> bit & 1]
-        total: Any = 0.0
+        total: Any = 0
         for blocks in index_partitions(len(bits)):
             product = derivatives[len(blocks)]
             for block in blocks:
-                product = product * jet.parts.get(sum(1 << bits[i] for i in block), 0.0)
+                product = product * jet.parts.get(sum(1 << bits[i] for i in block), 0)
             total = total + product
         parts[mask] = total
     return Jet(parts)
@@ -199,17 +203,18 @@ def _compose(jet: Jet, derivatives: Sequence[Any]) -> Jet:
 
 def _power(jet: Jet, exponent: Any) -> Jet:
     x = jet.value
-    derivatives, factor = [], 1.0
+    derivatives: list[Any] = []
+    factor: Any = 1
     for order in range(_order(jet) + 1):
         # A factor of zero stands for the vanishing derivative of a polynomial, also at x = 0.
         vanishes = np.ndim(factor) == 0 and factor == 0
-        derivatives.append(0.0 if vanishes else factor * _raise(x, exponent - order))
+        derivatives.append(0 if vanishes else factor * _raise(x, exponent - order))
         factor = factor * (exponent - order)
     return _compose(jet, derivatives)
 
 
 def _raise(x: Any, exponent: Any) -> Any:
-    if isinstance(exponent, int) and exponent >= 0:
+    if isinstance(exponent, int) and (exponent >= 0 or isinstance(x, Fraction)):
         return x**exponent
     return np.power(np.asarray(x, dtype=np.float64), exponent)[()]
 
@@ -228,7 +233,16 @@ def _cycle(*names: str) -> Callable[[Any, int], list[Any]]:
 
 
 def _logarithm(x: Any, highest: int) -> list[Any]:
-    return [np.log(x), *(-math.factorial(k - 1) / (-x) ** k for k in range(1, highest + 1))]
+    return [np.log(x), *_logarithmic(x, highest)]
+
+
+def _logarithmic(x: Any, highest: int) -> list[Any]:
+    return [-math.factorial(k - 1) / (-x) ** k for k in range(1, highest + 1)]
+
+
+def logarithm(jet: Jet) -> Jet:
+    """Return the derivatives of the logarithm of a jet, exactly for Fractions; its value is left at 0."""
+    return _compose(jet, [0, *_logarithmic(jet.value, _order(jet))])
 
 
 _SERIES: dict[str, Callable[[Any, int], list[Any]]] = {

@@ -15,6 +15,7 @@ from ..operators.partitions import Key
 from .affine import affine_table
 from .calling import number_table
 from .derivatives import derivative_table
+from .exact import exact_table
 
 __all__ = ["SiteTables"]
 
@@ -80,6 +81,11 @@ class SiteTables:
         affine = None if term.role == "weight" else affine_table(term, self._states(term))
         if affine is not None:
             return self._affine(affine.constant, affine.slopes, key)
+        if self.numbers is not DOUBLE:
+            exact = exact_table(term, self._states(term), self.values, key)
+            if exact is not None:
+                table = self.numbers.array(exact)[..., None]
+                return self.numbers.log(table) if term.role == "weight" and not key else table
         if key:
             return self._differentiate(term, key)
         table = number_table(term, self._states(term), self._floats(), self.batch)
