@@ -94,6 +94,27 @@ def test_a_comparison_with_a_float_state_is_not_lost(third):
     assert form(lambda s, J: J * s, states) is not None
 
 
+def guarded(s, J):
+    try:
+        return math.floor(J) * s
+    except Exception:
+        return J * s
+
+
+@pytest.mark.parametrize(
+    "function",
+    [
+        guarded,
+        lambda s, J: J * s if isinstance(J, float) else 0,
+        lambda s, J: J if hasattr(J, "slopes") else s,
+        lambda s, J: J * s if isinstance(J, float) else math.inf,
+    ],
+)
+def test_a_function_that_tells_tracers_from_numbers_is_not_believed(function):
+    assert form(function, ising()) is None
+    assert number_table(site(function), [ising()], {"J": 1.5}, 1)[1, 0] == function(1, 1.5)
+
+
 @st.composite
 def affine_terms(draw):
     """Draw a function of two states made of sums, differences, and exact multiples of parameters."""

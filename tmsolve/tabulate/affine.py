@@ -8,7 +8,7 @@ the function is not affine, and the general route is taken.
 from __future__ import annotations
 
 import math
-from collections.abc import Callable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from numbers import Rational, Real
@@ -160,13 +160,15 @@ def affine_table(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
 def _trace(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
     if term.takes_temperature:
         return None
+    tracers = {name: _Tracer(Fraction(0), {name: Fraction(1)}) for name in term.parameters}
+    probe = {name: 0.5772156649 + 0.3183098862 * k for k, name in enumerate(term.parameters)}
     try:
-        shape, forms = _forms(term, states, lambda state: state)
-        if any(_rounds(state) for set_ in states for state in set_.values):
-            # A comparison such as s == 0.1 is false for the fraction 1/10 and true for the float.
-            _, rounded = _forms(term, states, numeric_state)
-            if not all(map(_agree, forms, rounded)):
-                return None
+        raw = call_sites(term, states, lambda state: state, tracers)
+        shape, forms = raw.shape, [_form(entry) for entry in raw.ravel()]
+        # A function may tell tracers from numbers, or the fraction 1/10 from the float 0.1.
+        numbers = call_sites(term, states, numeric_state, probe)
+        if not all(map(_agree, forms, numbers.ravel(), [probe] * len(forms))):
+            return None
     except Exception:  # whatever goes wrong is met again, and reported, on the numeric route
         return None
     constant = np.empty(shape, dtype=object)
@@ -180,26 +182,10 @@ def _trace(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
     return AffineTable(constant, slopes)
 
 
-def _forms(
-    term: Term, states: Sequence[StateSet], convert: Callable[[Any], Any]
-) -> tuple[tuple[int, ...], list[_Tracer]]:
-    tracers = {name: _Tracer(Fraction(0), {name: Fraction(1)}) for name in term.parameters}
-    raw = call_sites(term, states, convert, tracers)
-    return raw.shape, [_form(entry) for entry in raw.ravel()]
-
-
-def _rounds(state: Any) -> bool:
-    if isinstance(state, tuple):
-        return any(_rounds(part) for part in state)
-    return isinstance(state, Fraction) and Fraction(float(state)) != state
-
-
-def _agree(form: _Tracer, other: _Tracer) -> bool:
-    """Whether two forms are equal up to the rounding of states."""
-    none = Fraction(0)
-    pairs: list[tuple[Any, Any]] = [(form.constant, other.constant)]
-    pairs += [(form.slopes.get(n, none), other.slopes.get(n, none)) for n in {*form.slopes, *other.slopes}]
-    return all(a == b or abs(a - b) <= 1e-9 * (abs(a) + abs(b)) for a, b in pairs)
+def _agree(form: _Tracer, number: Any, values: Mapping[str, float]) -> bool:
+    parts = [float(form.constant), *(float(slope) * values[name] for name, slope in form.slopes.items())]
+    total, size = sum(parts), sum(map(abs, parts))
+    return bool(total == number or (math.isfinite(total) and abs(total - number) <= 1e-9 * size))
 
 
 def _form(entry: Any) -> _Tracer:
