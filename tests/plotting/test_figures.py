@@ -14,7 +14,7 @@ from matplotlib.figure import Figure
 
 from tests.house_graph import ROOT
 from tests.refusal import refused
-from tmsolve import Chain, MissingExtra, ParameterError, axis, bond, crossovers, ising, scan, site, spins
+from tmsolve import Chain, MissingExtra, ParameterError, axis, bond, crossovers, ising, scan, site, spins, weight
 from tmsolve.plotting import plot_events, plot_gaps, plot_lines, plot_map, save_figure
 from tmsolve.plotting.maps import _branches, _edges
 from tmsolve.plotting.style import COLOURS
@@ -23,7 +23,8 @@ from tmsolve.survey.outputs import OutputError
 
 CHAIN = Chain(
     spins(1),
-    [bond(lambda s, t, J: -J * s * t), site(lambda s, D, h=0: D * s * s - h * s)],
+    # The weight changes nothing but that there is no T = 0.
+    [bond(lambda s, t, J: -J * s * t), site(lambda s, D, h=0: D * s * s - h * s), weight(lambda s: 1)],
     observables={"m": lambda s: s, "q": lambda s: s * s},
     name="Blume-Capel",
 ).fix(J=1)

@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import math
 
-from tmsolve import Chain, bond, colours, ising, site, spins
+from tmsolve import Chain, bond, colours, ising, site, spins, weight
 
 ISING = Chain(
     ising(),
@@ -17,6 +17,10 @@ BLUME_CAPEL = Chain(
     [bond(lambda s, t, J: -J * s * t), site(lambda s, D, h=0: D * s * s - h * s)],
     observables={"m": lambda s: s, "q": lambda s: s * s},
     name="Blume-Capel",
+)
+#: The same with a weight of 1, which changes nothing but that there is no T = 0.
+WARM = Chain(
+    spins(1), [*BLUME_CAPEL.terms, weight(lambda s: 1)], observables=dict(BLUME_CAPEL.observables), name="Blume-Capel"
 )
 ZIGZAG = Chain(
     ising(),

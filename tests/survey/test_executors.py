@@ -8,12 +8,12 @@ import numpy as np
 import pytest
 
 from tests.refusal import refused
-from tests.survey.chains import BLUME_CAPEL, small_blocks
+from tests.survey.chains import WARM, small_blocks
 from tmsolve import Chain, MissingExtra, axis, bond, ising, scan
 from tmsolve.survey import tasks
 
 AXES = {"T": axis("T", "0.5", 2, 30), "D": axis("D", 0, 1, 3)}
-CHAIN = BLUME_CAPEL.fix(J=1)
+CHAIN = WARM.fix(J=1)
 
 
 def twice(solution):

@@ -7,7 +7,7 @@ import numpy as np
 import pytest
 
 from tests.refusal import refused
-from tests.survey.chains import BLUME_CAPEL, FROZEN, ISING
+from tests.survey.chains import FROZEN, ISING, WARM
 from tmsolve import ParameterError, scan
 from tmsolve.survey.grid import Grid
 from tmsolve.survey.outputs import OutputError, check_writable
@@ -16,7 +16,7 @@ from tmsolve.survey.outputs import OutputError, check_writable
 @pytest.fixture(scope="module")
 def grid():
     axes = {"T": [0.0, 0.1, 1 / 3, 2.0], "D": [0.7, 1.0, 1.3]}
-    return scan(BLUME_CAPEL.fix(J=1), axes, ["specific_heat", "susceptibility(m,q)", "correlation_length"])
+    return scan(WARM.fix(J=1), axes, ["specific_heat", "susceptibility(m,q)", "correlation_length"])
 
 
 def same(a, b):
