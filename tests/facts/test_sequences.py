@@ -63,7 +63,13 @@ def test_efficiencies_of_two_codes():
 
 @pytest.mark.parametrize(
     ("levels", "expected"),
-    [(3, "0.5"), (4, "0.6942419136306173"), (5, "0.7924812503605781"), (6, "0.8495491610973281"), (9, "0.9276029805371492")],
+    [
+        (3, "0.5"),
+        (4, "0.6942419136306173"),
+        (5, "0.7924812503605781"),
+        (6, "0.8495491610973281"),
+        (9, "0.9276029805371492"),
+    ],
 )
 def test_capacity_of_charge_constrained_sequences(levels, expected):
     """H03: log2 of 2 cos(pi/(N+1)), T. M. Chien, Bell Syst. Tech. J. 49, 2267 (1970) (from memory); a period-2 chain."""
@@ -127,7 +133,8 @@ def test_broken_bonds_of_ising_rings_and_chains():
     chain = Chain(ising(), [bond(lambda s, t: 0)], {"broken": bond(lambda s, t: int(s != t))})
     closed = ring(chain.at(T=1), 12).distribution("broken")
     found = dict(zip(closed.values, np.exp(closed.log_probabilities) * 2**12, strict=True))
-    assert {int(v): round(p) for v, p in found.items() if p > 0.5} == {2 * k: 2 * math.comb(12, 2 * k) for k in range(7)}
+    expected = {2 * k: 2 * math.comb(12, 2 * k) for k in range(7)}
+    assert {int(v): round(p) for v, p in found.items() if p > 0.5} == expected
     free = open_chain(chain.at(T=1), 11).distribution("broken")
     found = dict(zip(free.values, np.exp(free.log_probabilities) * 2**11, strict=True))
     assert {int(v): round(p) for v, p in found.items() if p > 0.5} == {k: 2 * math.comb(10, k) for k in range(11)}

@@ -1,9 +1,9 @@
 """Every fact that a shipped model states, checked against the solver."""
 
 import pytest
-from tmsolve.observe.readings import parse_reading
 
 from tmsolve import models, open_chain, ring, solve
+from tmsolve.observe.readings import parse_reading
 
 FACTS = [(name, fact) for name in models.names() for fact in models.load(name).facts]
 

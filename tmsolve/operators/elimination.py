@@ -45,7 +45,7 @@ def align(array: np.ndarray, sites: Sequence[Site], target: Sequence[Site]) -> n
     moved = array.transpose(*order, *range(len(sites), array.ndim))
     lengths = iter(moved.shape[: len(order)])
     shape = [next(lengths) if site in sites else 1 for site in target]
-    return moved.reshape(*shape, *moved.shape[len(order) :])
+    return moved.reshape((*shape, *moved.shape[len(order) :]))
 
 
 class ArrayAlgebra:
