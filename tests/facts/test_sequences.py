@@ -72,7 +72,7 @@ def test_efficiencies_of_two_codes():
     ],
 )
 def test_capacity_of_charge_constrained_sequences(levels, expected):
-    """H03: log2 of 2 cos(pi/(N+1)), T. M. Chien, Bell Syst. Tech. J. 49, 2267 (1970) (from memory); a period-2 chain."""
+    """H03: log2 of 2 cos(pi/(N+1)), T. M. Chien, Bell Syst. Tech. J. 49, 2267 (1970) (from memory); period 2."""
     walk = Chain(StateSet(range(levels)), [bond(lambda s, t: 0 if abs(s - t) == 1 else math.inf)])
     assert solve(walk.at(T=1)).entropy / math.log(2) == pytest.approx(float(expected), rel=1e-10)
 
