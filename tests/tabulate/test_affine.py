@@ -11,6 +11,7 @@ from hypothesis import strategies as st
 from tmsolve import StateSet, bond, cos_turns, delta, ising, site, spins
 from tmsolve.tabulate.affine import affine_table
 from tmsolve.tabulate.calling import number_table
+from tmsolve.tabulate.exact import exact_table
 
 HALF = Fraction(1, 2)
 
@@ -92,6 +93,27 @@ def test_a_comparison_with_a_float_state_is_not_lost(third):
     assert affine_table(term, [states]) is None
     assert number_table(term, [states], {"J": 2.0}, 1)[:, 0].tolist() == [2.0, 0.0]
     assert form(lambda s, J: J * s, states) is not None
+
+
+@pytest.mark.parametrize(
+    "function",
+    [
+        lambda s, J: J**2 if s == 0.1 else 0,
+        lambda s, J: J**2 * s if J == 0.1 else 0,
+        lambda s, J: J * J if s + J == 0.1 + 0.2 else 0,
+    ],
+)
+def test_exact_tables_do_not_lose_comparisons_with_floats(function):
+    states, term = StateSet([0.1, 0.2]), site(function)
+    values = {"J": Fraction(1, 10)}
+    exact = exact_table(term, [states], values, ())
+    plain = number_table(term, [states], {"J": 0.1}, 1)[:, 0]
+    assert exact is None or [float(x) for x in exact] == pytest.approx(plain)
+    assert plain.any()
+    assert exact_table(site(lambda s, J: J**2 * s), [states], values, ()).tolist() == [
+        Fraction(1, 1000),
+        Fraction(1, 500),
+    ]
 
 
 def guarded(s, J):

@@ -16,7 +16,7 @@ import numpy as np
 
 from ..declare import StateSet, Term
 from ..operators.partitions import Key
-from .calling import call_sites
+from .calling import call_sites, numeric_state
 from .jets import Jet, logarithm, variable
 
 __all__ = ["exact_table"]
@@ -44,6 +44,10 @@ def exact_table(term: Term, states: Sequence[StateSet], values: Mapping[str, Any
     try:
         raw = call_sites(term, states, lambda state: state, wanted)
         entries = [_entry(term, value, (1 << len(key)) - 1) for value in raw.ravel()]
+        # A comparison such as s == 0.1 is false for the fraction 1/10 and true for the float.
+        rounded = call_sites(term, states, numeric_state, {n: float(values[n]) for n in term.parameters})
+        if not _agree([_plain(value) for value in raw.ravel()], list(rounded.ravel())):
+            return None
     except Exception:  # whatever goes wrong is met again, and reported, on the way through doubles
         return None
     if any(entry is None for entry in entries):
@@ -51,6 +55,15 @@ def exact_table(term: Term, states: Sequence[StateSet], values: Mapping[str, Any
     table = np.empty(raw.shape, dtype=object)
     table.reshape(-1)[:] = entries
     return table
+
+
+def _plain(value: Any) -> float:
+    return float(value.value if isinstance(value, Jet) else value)
+
+
+def _agree(exact: Sequence[float], rounded: Sequence[float]) -> bool:
+    size = max((abs(value) for value in exact if math.isfinite(value)), default=0.0)
+    return all(a == b or (math.isfinite(a) and abs(a - b) <= 1e-9 * size) for a, b in zip(exact, rounded, strict=True))
 
 
 def _entry(term: Term, value: Any, mask: int) -> Fraction | float | None:
