@@ -12,7 +12,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
 from typing import Any
 
-from .polynomials import Coefficients
+from .polynomials import Coefficients, quotient
 
 __all__ = ["Element", "Poly", "RootField", "derivative"]
 
@@ -155,10 +155,12 @@ class RootField:
         norm = self.times(key, conjugate)[0] if key[1] else key[0]
         monomial = monomial_content(norm)
         core = norm.exquo(monomial)
-        parts = [c.div(core) for c in (self.times(up, conjugate) if key[1] else up)]
-        if any(rest for _, rest in parts):
-            return None
-        return tuple(quotient for quotient, _ in parts), monomial
+        parts = []
+        for c in self.times(up, conjugate) if key[1] else up:
+            parts.append(quotient(c, core))
+            if parts[-1] is None:
+                return None
+        return tuple(parts), monomial
 
     def _cancelled(self, a: Element) -> Element:
         below, weight = self.ring.one, 0

@@ -2,18 +2,20 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from typing import Any
 
 import numpy as np
 
-__all__ = ["Coefficients", "berkowitz", "characteristic", "factors", "power_sums"]
+__all__ = ["Coefficients", "berkowitz", "characteristic", "factorable", "factors", "power_sums", "quotient"]
 
 #: Coefficients of a monic polynomial in λ, highest power first: (1, c₁, …, cₙ).
 Coefficients = tuple[Any, ...]
 
-#: Largest number of terms of a polynomial that is handed to a full factorisation.
-_FACTORABLE_TERMS = 4000
+#: Largest polynomial that is factored: power of one symbol, and coefficients of its dense form. Numbers such
+#: as exp(-2.547 beta) make powers in the thousands, with which factorisation does not end.
+_POWER, _SIZE = 80, 60_000
 
 
 def characteristic(matrix: np.ndarray, ring: Any) -> Coefficients:
@@ -63,23 +65,31 @@ def _dot(a: Any, b: Any, zero: Any) -> Any:
     return sum((x * y for x, y in zip(a, b, strict=True)), zero)
 
 
-def factors(coefficients: Coefficients, ring: Any) -> list[tuple[Coefficients, int]]:
-    """Return the irreducible monic factors of a polynomial in λ with their multiplicities.
+def factors(coefficients: Coefficients, ring: Any) -> list[tuple[Coefficients, int, bool]]:
+    """Return the monic factors of a polynomial in λ, their multiplicities, and whether each is irreducible.
 
     A polynomial that is irreducible at one choice of numbers for the symbols is irreducible;
-    that settles most cases before the factorisation in many variables is asked.
+    that settles most cases before the factorisation in many variables is asked. One that is
+    too large for that is returned as it is.
     """
     degree = len(coefficients) - 1
     zeros = next(k for k, c in enumerate(reversed(coefficients)) if c)
-    found = [((ring.one, ring.zero), zeros)] if zeros else []
+    found = [((ring.one, ring.zero), zeros, True)] if zeros else []
     rest = coefficients[: degree + 1 - zeros]
     if len(rest) == 1:
         return found
     if len(rest) == 2 or _irreducible_somewhere(rest, ring):
-        return [*found, (rest, 1)]
-    if sum(len(c) for c in rest) > _FACTORABLE_TERMS:
-        return [*found, (rest, 1)]
-    return found + _factor_list(rest, ring)
+        return [*found, (rest, 1, True)]
+    polynomial = _in_one_ring(rest, ring)
+    if not factorable(polynomial):
+        return [*found, (rest, 1, False)]
+    return found + [(_monic(factor, ring), power, True) for factor, power in polynomial.factor_list()[1]]
+
+
+def factorable(element: Any, power: int = _POWER, size: int = _SIZE) -> bool:
+    """Whether a polynomial is small enough to be factored in any reasonable time."""
+    degrees = [degree for degree in element.degrees() if degree > 0]
+    return max(degrees, default=0) <= power and math.prod(degree + 1 for degree in degrees) <= size
 
 
 def _irreducible_somewhere(coefficients: Coefficients, ring: Any, attempts: int = 3) -> bool:
@@ -104,14 +114,48 @@ def _evaluate(element: Any, point: Sequence[tuple[int, Any]]) -> Any:
     return total
 
 
-def _factor_list(coefficients: Coefficients, ring: Any) -> list[tuple[Coefficients, int]]:
+def quotient(a: Any, b: Any) -> Any:
+    """Return a/b for polynomials if b divides a, else None.
+
+    The values at whole numbers are compared first: trying a long division in vain takes long.
+
+    Examples
+    --------
+    >>> from sympy import QQ, ring
+    >>> R, y = ring("y", QQ)
+    >>> quotient(y**2 - 1, y + 1), quotient(y**2 + 1, y + 1)
+    (y - 1, None)
+    """
+    if not a:
+        return a
+    if _whole_value(a) % _whole_value(b):
+        return None
+    result, rest = a.div(b)
+    return None if rest else result
+
+
+def _whole_value(element: Any) -> int:
+    """Return the value of the primitive part with whole coefficients at some whole numbers."""
+    numbers = [c for _, c in element.terms()]
+    denominator = math.lcm(*(int(c.denominator) for c in numbers))
+    content = math.gcd(*(int(c.numerator) * (denominator // int(c.denominator)) for c in numbers))
+    total = 0
+    for powers, c in element.terms():
+        term = int(c.numerator) * (denominator // int(c.denominator)) // content
+        for i, power in enumerate(powers):
+            term *= (3 + 2 * i) ** power
+        total += term
+    return total or 1
+
+
+def _in_one_ring(coefficients: Coefficients, ring: Any) -> Any:
+    """Return the polynomial in λ and the symbols."""
     import sympy as sp
 
     bigger = ring.clone(symbols=(sp.Symbol("lambda"), *ring.symbols))
     degree = len(coefficients) - 1
     content = {(degree - k, *powers): c for k, element in enumerate(coefficients) for powers, c in element.terms()}
-    _, found = bigger.from_dict(content).factor_list()
-    return [(_monic(factor, ring), multiplicity) for factor, multiplicity in found]
+    return bigger.from_dict(content)
 
 
 def _monic(factor: Any, ring: Any) -> Coefficients:

@@ -13,11 +13,15 @@ from typing import Any
 
 from .alphabet import Alphabet, Laurent, common_measure
 from .formula import Draft, atom, call, distinct_total, number, power, product, rational, total
+from .polynomials import factorable
 
 __all__ = ["Vector", "Writer", "shifted", "times"]
 
 #: Longer sums are not collected any more, and still longer ones only written term by term.
 _COLLECTED_TERMS, _FACTORED_TERMS = 24, 60
+
+#: Highest power and size in dense form of what is factored to be written; longer products are rarely found.
+_FACTORED_POWER, _FACTORED_SIZE = 40, 4_000
 
 #: Exponents of the classes.
 Vector = tuple[Fraction, ...]
@@ -43,6 +47,7 @@ class Writer:
         self._over_beta = [key / shared if shared in sp.Mul.make_args(key) else None for key in alphabet.classes]
         self._known: dict[frozenset[tuple[Vector, Fraction]], Draft] = {}
         self._arguments: dict[Vector, Draft] = {}
+        self._factors: dict[frozenset[tuple[Vector, Fraction]], tuple[Fraction, list[tuple[Laurent, int]]]] = {}
 
     def _pairs_of_classes(self) -> Iterable[tuple[Any, bool]]:
         return zip(self.alphabet.classes, self._proper, strict=True)
@@ -200,20 +205,32 @@ class Writer:
         return middle if centred.cost < self.draft(factor).cost else tuple(Fraction(0) for _ in middle)
 
     def factor(self, terms: Laurent) -> tuple[Fraction, Vector, list[tuple[Laurent, int]]]:
-        """Return number, monomial and irreducible factors with their powers."""
-        alphabet = self.alphabet
+        """Return number, monomial and irreducible factors with their powers; a large sum is taken as one factor."""
         lowest = tuple(map(min, zip(*terms, strict=True)))
-        ring = alphabet.ring
-        element = ring.from_dict(
-            {
-                tuple(int((e - low) / unit) for e, low, unit in zip(exponents, lowest, alphabet.units, strict=True))
-                or (0,): ring.domain(c.numerator, c.denominator)
-                for exponents, c in terms.items()
-            }
-        )
-        content, found = element.factor_list()
+        content = common_measure(terms.values())
+        if terms[max(terms)] < 0:
+            content = -content
+        primitive = times(shifted(terms, lowest, -1), 1 / content)
+        key = frozenset(primitive.items())
+        if key not in self._factors:
+            self._factors[key] = self._factor_list(primitive)
+        number_, factors = self._factors[key]
+        return content * number_, lowest, factors
+
+    def _factor_list(self, primitive: Laurent) -> tuple[Fraction, list[tuple[Laurent, int]]]:
+        alphabet = self.alphabet
+        content = {
+            tuple(int(e / unit) for e, unit in zip(x, alphabet.units, strict=True)) or (0,): alphabet.ring.domain(
+                c.numerator, c.denominator
+            )
+            for x, c in primitive.items()
+        }
+        element = alphabet.ring.from_dict(content)
+        if not factorable(element, _FACTORED_POWER, _FACTORED_SIZE):
+            return Fraction(1), [(primitive, 1)]
+        front, found = element.factor_list()
         factors = [(alphabet.laurent(factor, (0,) * alphabet.width), exponent) for factor, exponent in found]
-        return Fraction(int(content.numerator), int(content.denominator)), lowest, factors
+        return Fraction(int(front.numerator), int(front.denominator)), factors
 
     def _middle(self, laurent: Laurent) -> Vector:
         """Return the centre of a factor that reads the same (up to sign) from both ends, else zero."""

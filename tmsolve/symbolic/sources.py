@@ -112,10 +112,10 @@ def _leading(matrix: SymbolicMatrix, writer: Writer, lumped: np.ndarray) -> tupl
         jets = berkowitz(part.matrix, Jet(ring.one, ring.zero, ring.zero, ring.zero))
         block = Block(_each_value(part.matrix), "", positive=True)
         found = factors(tuple(jet.x for jet in jets), ring)
-        for polynomial, _ in found:
+        for polynomial, _, _ in found:
             factor = Factor(polynomial, block, 1, 1)
             if best is None or _larger(matrix, writer, factor, best[0]):
-                best = factor, jets, [(p, m) for p, m in found if p != polynomial]
+                best = factor, jets, [(p, m) for p, m, _ in found if p != polynomial]
     assert best is not None
     return best
 

@@ -132,8 +132,8 @@ def _with_factors(spectrum: Spectrum) -> Spectrum:
     ring = spectrum.matrix.alphabet.ring
     found: dict[Coefficients, Factor] = {}
     for whole in spectrum.factors:
-        for polynomial, power in factors(whole.polynomial, ring):
-            first = found.get(polynomial, Factor(polynomial, whole.block, 0, 0))
+        for polynomial, power, irreducible in factors(whole.polynomial, ring):
+            first = found.get(polynomial, Factor(polynomial, whole.block, 0, 0, irreducible))
             found[polynomial] = replace(
                 first,
                 multiplicity=first.multiplicity + power * whole.multiplicity,
@@ -157,6 +157,8 @@ def _with_roots(spectrum: Spectrum) -> Spectrum:
 
 def _no_radicals(factor: Factor, real: bool) -> str:
     where = f"the block of size {factor.block.size} ({factor.block.label})"
+    if not factor.irreducible:
+        return f"the characteristic polynomial of {where} has powers too high to be factored; fix fewer parameters"
     reason = (
         "a form by radicals that reads well exists for degrees 1, 2 and, if all eigenvalues are real, 3"
         if factor.degree != 3 or real

@@ -22,7 +22,8 @@ _DIGITS = 12
 #: Units in the last place by which a float may miss that decimal, as after 3*0.1 or cos(pi/3).
 _ULPS = 8
 #: Frames between a conversion to sympy and the comparison that asked for it.
-_CONVERSION_DEPTH = 4
+_CONVERSION_DEPTH = 6
+_COMPARISONS = ("__eq__", "__ne__", "__lt__", "__le__", "__gt__", "__ge__")
 
 
 class NotSymbolic(TypeError):
@@ -108,12 +109,12 @@ class Tracer:
 
     def _sympy_(self) -> Any:
         # sympy's numbers answer ``state == parameter`` by converting the parameter and finding it different,
-        # which would settle a branch in silence; a conversion asked for by __eq__ is therefore a comparison.
+        # which would settle a branch in silence; a conversion that a comparison asks for is refused here.
         frame = sys._getframe(1)
         for _ in range(_CONVERSION_DEPTH):
             if frame is None:
                 break
-            if self.names and frame.f_code.co_name in ("__eq__", "__ne__"):
+            if self.names and frame.f_code.co_name in _COMPARISONS:
                 raise NotSymbolic("compares a parameter", self.names)
             frame = frame.f_back  # type: ignore[assignment]
         return self.expr
