@@ -8,6 +8,7 @@ bounds is infinite or zero.
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import replace
 from fractions import Fraction
 from types import MappingProxyType
@@ -24,10 +25,25 @@ from ..observe.segment import Segment
 from .classes import CLIMB_LIMIT, FIRST_BITS, exact_values
 from .laws import long_law
 
-__all__ = ["cold_laws", "cold_notes", "split"]
+__all__ = ["with_limits"]
 
 #: The temperature of the limit, in units of the gap.
 _DEPTH = Fraction(1, 10**8)
+
+
+def with_limits(
+    laws_of: Callable[..., list[Segment]], point: Point, solver: Dense
+) -> tuple[Callable[[ChainWindow], list[Segment]], tuple[str, ...]]:
+    """Return a way to the laws of a batch with points at T = 0, and notes on those points."""
+    warm, cold = split(point)
+
+    def everywhere(window: ChainWindow) -> list[Segment]:
+        found = cold_laws(window, point, cold, solver)
+        if warm.size:
+            found += [replace(s, indices=warm[s.indices]) for s in laws_of(window, warm_part(point, warm))]
+        return found
+
+    return everywhere, cold_notes(point, cold)
 
 
 def split(point: Point) -> tuple[np.ndarray, np.ndarray]:

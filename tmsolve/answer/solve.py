@@ -3,9 +3,10 @@
 from __future__ import annotations
 
 from collections.abc import Callable
-from dataclasses import replace
 from functools import partial
 from numbers import Integral
+
+import numpy as np
 
 from ..assemble.window import ChainWindow, build_window
 from ..declare import Chain, Point
@@ -14,7 +15,6 @@ from ..errors import ParameterError
 from ..observe.evaluate import Laws
 from ..observe.segment import Segment
 from ..observe.solution import Solution
-from .cold import cold_laws, cold_notes, split, warm_part
 from .laws import long_laws, stationary_laws
 
 __all__ = ["solve"]
@@ -80,21 +80,18 @@ def solve(point: Point, *, solver: Solver | None = None, digits: int | None = No
 def _laws(
     window: ChainWindow,
     point: Point,
-    laws_of: Callable[[ChainWindow, Point], list[Segment]],
+    laws_of: Callable[..., list[Segment]],
     digits: int | None,
     dense: Dense,
 ) -> Laws:
     """Solve now over the smallest window; wider ones, and sharper numbers, when they are asked for."""
-    warm, cold = split(point)
+    everywhere: Callable[[ChainWindow], list[Segment]] = partial(laws_of, point=point)
+    notes: tuple[str, ...] = ()
+    if (np.asarray(point.number("T")) == 0).any():
+        # The room of ground states is large, and seldom needed here.
+        from .cold import with_limits
 
-    def everywhere(wide: ChainWindow) -> list[Segment]:
-        if not cold.size:
-            return laws_of(wide, point)
-        found = cold_laws(wide, point, cold, dense)
-        if warm.size:
-            found += [replace(s, indices=warm[s.indices]) for s in laws_of(wide, warm_part(point, warm))]
-        return found
-
+        everywhere, notes = with_limits(laws_of, point, dense)
     base = everywhere(window)
 
     def widened(observables: tuple[str, ...]) -> tuple[ChainWindow, list[Segment]]:
@@ -107,4 +104,4 @@ def _laws(
         more = 30 if digits is None else 2 * digits + 10
         return _laws(window, point, partial(long_laws, solver=dense, digits=more), more, dense)
 
-    return Laws(window, point.size, widened, digits, sharper, cold_notes(point, cold))
+    return Laws(window, point.size, widened, digits, sharper, notes)
