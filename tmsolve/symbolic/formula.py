@@ -12,7 +12,19 @@ from fractions import Fraction
 from functools import cmp_to_key
 from typing import Any
 
-__all__ = ["Draft", "atom", "call", "distinct_total", "number", "power", "product", "quotient", "rational", "root", "total"]
+__all__ = [
+    "Draft",
+    "atom",
+    "call",
+    "distinct_total",
+    "number",
+    "power",
+    "product",
+    "quotient",
+    "rational",
+    "root",
+    "total",
+]
 
 
 @dataclass(frozen=True, eq=False)
@@ -86,8 +98,11 @@ def distinct_total(parts: Sequence[Draft]) -> Draft:
 def _summed(terms: list[Any]) -> Any:
     import sympy as sp
 
+    def compare(first: Any, second: Any) -> int:
+        return int(first.compare(second))
+
     # In sympy's own order, so that the sum equals one that sympy has put together.
-    ordered = sorted(terms, key=cmp_to_key(lambda a, b: a.compare(b)))
+    ordered = sorted(terms, key=cmp_to_key(compare))
     numbers = [term for term in ordered if term.is_Number]
     return sp.Add(*numbers, *(term for term in ordered if not term.is_Number), evaluate=False)
 
