@@ -74,8 +74,8 @@ READINGS = [
     (["solve", "ising", "--read", "mean(m"], 2, ["--read 'mean(m' lacks a closing bracket"]),
     (["solve", "ising", "--read", "mean)m"], 2, ["lacks an opening bracket"]),
     (["solve", "ising", "--read", "entropy,,gap"], 2, ["has an empty name; separate names by single commas"]),
-    (["solve", "ising", "--digits", "0"], 2, ["--digits must be a whole number from 1 to 17, got '0'"]),
-    (["solve", "ising", "--digits", "1.5"], 2, ["--digits must be a whole number from 1 to 17, got '1.5'"]),
+    (["solve", "ising", "--digits", "0"], 2, ["--digits must be a whole number from 1 to 1000, got '0'"]),
+    (["solve", "ising", "--digits", "1.5"], 2, ["--digits must be a whole number from 1 to 1000, got '1.5'"]),
     (["solve", "ising", "--levels", "-1"], 2, ["--levels must be a whole number >= 0, got '-1'"]),
 ]
 
@@ -131,7 +131,7 @@ SCAN = [
         2,
         ["there is no folder 'no'", "create it"],
     ),
-    (["scan", "helix_coil", "--axis", "s=1:2:5", "-p", "T=0"], 1, ["all 5 points failed", "s = 1.0", "no ground state"]),
+    (["scan", "helix_coil", "--axis", "s=1:2:5", "-p", "T=0"], 1, ["all 5 points failed", "no ground state"]),
 ]
 
 CROSSOVERS = [

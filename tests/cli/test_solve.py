@@ -170,3 +170,12 @@ def test_what_fails_is_told_and_the_rest_is_printed(tm, monkeypatch):
     assert document["failed"]["correlation_length"] == "the spectrum did not converge"
     alone = tm("solve", "ising", "--read", "correlation_length")
     assert alone.code == 1 and alone.out == ""
+
+
+def test_many_digits_are_computed_with_longer_numbers(tm):
+    """C01's free energy, −ln λ₊ at T = 1, to the digits of the source (Blume and Capel 1966, from memory)."""
+    words = ("solve", "blume_capel", "-p", "T=1", "-p", "D=1/2", "--read", "free_energy,correlation_length")
+    assert " -0.96334521596866038170478607917775 " in tm(*words, "--digits", "32").out
+    document = tm(*words, "--digits", "32", "--json").json
+    assert document["decimals"] == {"free_energy": "-0.96334521596866038170478607917775"}
+    assert "decimals" not in tm(*words, "--json").json

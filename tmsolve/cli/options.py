@@ -75,10 +75,11 @@ def add_plot(parser: Parser, help_: str) -> None:
     parser.add_argument("--plot", metavar="PATH", help=f"{help_}; .png, .svg or .pdf (needs the extra 'plot')")
 
 
-def add_digits(parser: Parser, default: str = f"{DIGITS} in tables") -> None:
+def add_digits(parser: Parser, default: str = f"{DIGITS} in tables", highest: int = 17) -> None:
     """Add --digits."""
+    more = "; more than 17 are computed with longer numbers" if highest > 17 else ""
     parser.add_argument(
-        "--digits", metavar="N", help=f"significant digits that are printed, 1 to 17. Default: {default}"
+        "--digits", metavar="N", help=f"significant digits that are printed, 1 to {highest}{more}. Default: {default}"
     )
 
 
@@ -95,6 +96,6 @@ def add_common(parser: Parser) -> None:
     parser.add_argument("--quiet", action="store_true", help="nothing on stderr but errors")
 
 
-def digits_of(arguments: argparse.Namespace, default: int = DIGITS) -> int:
+def digits_of(arguments: argparse.Namespace, default: int = DIGITS, highest: int = 17) -> int:
     """Return how many significant digits are printed."""
-    return default if arguments.digits is None else whole(arguments.digits, "--digits", 1, 17)
+    return default if arguments.digits is None else whole(arguments.digits, "--digits", 1, highest)

@@ -14,6 +14,7 @@ from .model import Values, fill, given_values, load_model, readings_of
 from .options import add_common, add_digits, add_model, add_out, add_read, digits_of
 from .outcome import DONE, SOME_FAILED
 from .parser import Parser
+from .table import number_text
 from .words import split_names, whole
 
 if TYPE_CHECKING:
@@ -27,11 +28,14 @@ EXAMPLES = """\
   tmsolve solve ising -p T=0.5
   tmsolve solve potts --option q=5 -p T=0.7 --json
   tmsolve solve blume_capel -p T=0.4 -p D=9/10 --read free_energy,"susceptibility(m,q)" --digits 15
+  tmsolve solve ising -p T=0.01 -p h=1e-9 --read "susceptibility(m)" --digits 50
   tmsolve solve my_chain.py -p J=1 -p T=0.25 --out result.json
 """
 
 #: How many eigenvalues are shown.
 LEVELS = 8
+#: How many digits may be asked for.
+MOST_DIGITS = 1000
 
 
 def configure(parser: Parser) -> None:
@@ -43,14 +47,14 @@ def configure(parser: Parser) -> None:
         metavar="N",
         help=f"how many different eigenvalues are shown; 0 for none. Default: {LEVELS}, none with --read",
     )
-    add_digits(parser)
+    add_digits(parser, highest=MOST_DIGITS)
     add_out(parser, "also write the JSON document to this file, ending in .json")
     add_common(parser)
 
 
 def run(arguments: argparse.Namespace) -> int:
     """Solve and print."""
-    digits = digits_of(arguments)
+    digits = digits_of(arguments, highest=MOST_DIGITS)
     out = check_output(arguments.out, "--out", (".json",))
     model = load_model(arguments)
     values = fill(given_values(arguments, model), model)
@@ -59,7 +63,9 @@ def run(arguments: argparse.Namespace) -> int:
 
     from ..answer.solve import solve
 
-    solution = solve(model.chain.at(**values.numbers))
+    # Doubles hold 17 digits; beyond them the numbers themselves must be longer.
+    solution = solve(model.chain.at(**values.numbers), digits=digits if digits > 17 else None)
+    digits = digits if digits <= 17 else 15  # of what remains a double; long numbers know their own
     found, failures = _evaluate(solution, readings)
     # At T = 0 eigenvalues have no finite logarithm; the gap above is the limit of their ratio.
     spectrum = _spectrum(solution, levels if solution.point.T else 0, failures)
@@ -98,12 +104,13 @@ def _levels(arguments: argparse.Namespace) -> int:
     return whole(arguments.levels, "--levels", 0)
 
 
-def _evaluate(solution: Solution, readings: list[Reading]) -> tuple[dict[Reading, float], dict[str, str]]:
+def _evaluate(solution: Solution, readings: list[Reading]) -> tuple[dict[Reading, Any], dict[str, str]]:
     """Return what could be computed, and why the rest could not."""
-    found, failures = {}, {}
+    found: dict[Reading, Any] = {}
+    failures: dict[str, str] = {}
     for reading in readings:
         try:
-            found[reading] = float(reading.evaluate(solution))
+            found[reading] = reading.evaluate(solution)[()]
         except TmsolveError as error:
             failures[reading.name] = str(error)
     return found, failures
@@ -139,13 +146,15 @@ def _document(
     from .._version import __version__
 
     facts = solution.diagnostics
+    decimals = {r.name: number_text(v, 17) for r, v in found.items() if not isinstance(v, float)}
     return {
         "command": "solve",
         "model": model.name,
         "title": model.chain.name,
         "options": dict(model.options),
         **values.document(),
-        "results": {reading.name: value for reading, value in found.items()},
+        "results": {reading.name: float(value) for reading, value in found.items()},
+        **({"decimals": decimals} if decimals else {}),
         "units": {reading.name: reading.unit for reading in found},
         "eigenvalues": spectrum,
         "matrix": {

@@ -10,7 +10,7 @@ from typing import Any
 __all__ = ["Number", "number_text", "show_exact", "table"]
 
 
-def number_text(value: float, digits: int) -> str:
+def number_text(value: Any, digits: int) -> str:
     """Return a number with so many significant digits.
 
     Examples
@@ -18,6 +18,8 @@ def number_text(value: float, digits: int) -> str:
     >>> number_text(1/3, 5), number_text(0.5, 5), number_text(float("inf"), 5), number_text(-0.0, 5)
     ('0.33333', '0.5', 'inf', '0')
     """
+    if hasattr(value, "_mpf_"):  # a long number prints the digits it was computed to
+        return str(value)
     number = float(value)
     if not math.isfinite(number):
         return str(number)
