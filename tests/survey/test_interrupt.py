@@ -202,6 +202,7 @@ class Dying(Executor):
 
 
 def test_dying_workers_leave_what_they_have_done(monkeypatch):
+    pytest.importorskip("cloudpickle")
     small_blocks(monkeypatch, 8)
     with pytest.raises(SolveError) as caught:
         scan(CHAIN, AXES, ["entropy"], executor=Dying())
