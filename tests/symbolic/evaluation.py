@@ -62,9 +62,7 @@ def square(s):
 
 def ising_chain() -> Chain:
     """H = -J Σ s s' - h Σ s, s = ±1."""
-    return Chain(
-        ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)], observables={"m": spin}
-    )
+    return Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)], observables={"m": spin})
 
 
 def potts_chain(q: int) -> Chain:

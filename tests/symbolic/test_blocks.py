@@ -9,8 +9,7 @@ import numpy as np
 import pytest
 from sympy import QQ, ring
 
-from tmsolve.symbolic.blocks import components, lump, merged, split
-from tmsolve.symbolic.blocks import Block
+from tmsolve.symbolic.blocks import Block, components, lump, merged, split
 from tmsolve.symbolic.jet import Jet
 from tmsolve.symbolic.permutations import involutions, numbered, orbits, verified
 from tmsolve.symbolic.polynomials import berkowitz, characteristic, factors, power_sums
@@ -29,9 +28,9 @@ def next_nearest(states, entry):
     """Return a matrix over pairs of states, non-zero where they overlap."""
     pairs = list(itertools.product(range(len(states)), repeat=2))
     return matrix(
-        lambda i, j: entry(states[pairs[i][0]], states[pairs[i][1]], states[pairs[j][1]])
-        if pairs[i][1] == pairs[j][0]
-        else 0,
+        lambda i, j: (
+            entry(states[pairs[i][0]], states[pairs[i][1]], states[pairs[j][1]]) if pairs[i][1] == pairs[j][0] else 0
+        ),
         len(pairs),
     )
 
@@ -59,8 +58,10 @@ CASES = {
     ),
     "ladder": (
         matrix(
-            lambda i, j: y ** (LADDER[i][0] * LADDER[j][0] + LADDER[i][1] * LADDER[j][1] + 2)
-            * h ** (LADDER[i][0] * LADDER[i][1] + 1),
+            lambda i, j: (
+                y ** (LADDER[i][0] * LADDER[j][0] + LADDER[i][1] * LADDER[j][1] + 2)
+                * h ** (LADDER[i][0] * LADDER[i][1] + 1)
+            ),
             4,
         ),
         [("a", 0), ("b", 0)],
@@ -89,7 +90,10 @@ def test_blocks_have_the_spectrum_of_the_matrix(name):
     for block in split(entries, permutations):
         polynomial = characteristic(block.matrix, R)
         product = tuple(
-            sum((product[i] * polynomial[k - i] for i in range(k + 1) if i < len(product) and k - i < len(polynomial)), R.zero)
+            sum(
+                (product[i] * polynomial[k - i] for i in range(k + 1) if i < len(product) and k - i < len(polynomial)),
+                R.zero,
+            )
             for k in range(len(product) + block.size)
         )
     assert product == characteristic(entries, R)
@@ -114,7 +118,9 @@ def test_permutations_that_do_not_commute_are_not_taken():
     assert found("without symmetry")[1] == []
     for permutation in permutations:
         moved = entries[np.ix_(permutation.image, permutation.image)]
-        assert (numbered(moved) == numbered(moved)).all() and all(a == b for a, b in zip(moved.ravel(), entries.ravel(), strict=True))
+        assert (numbered(moved) == numbered(moved)).all() and all(
+            a == b for a, b in zip(moved.ravel(), entries.ravel(), strict=True)
+        )
 
 
 def test_exchanged_legs_and_flips_are_named():

@@ -46,9 +46,7 @@ def test_a01_free_energy(ising_zero_field):
 
 def test_a02_both_eigenvalues_in_a_field(ising_field):
     """A02: e^K cosh L ± sqrt(e^2K sinh² L + e^-2K). Kramers & Wannier, Phys. Rev. 60, 252 (1941); from memory."""
-    spectrum_agrees(
-        ising_field, ["2.510842662858650628671619", "0.9361010237939868098289908"], J="0.5", h="0.3"
-    )
+    spectrum_agrees(ising_field, ["2.510842662858650628671619", "0.9361010237939868098289908"], J="0.5", h="0.3")
     h = sp.Symbol("h", real=True)
     root = sp.sqrt(sp.exp(2 * BETA * J) * sp.sinh(BETA * h) ** 2 + sp.exp(-2 * BETA * J))
     middle = sp.exp(BETA * J) * sp.cosh(BETA * h)
@@ -304,9 +302,7 @@ def test_e11_mixed_spins():
     """E11: l = A ± B, A = 1 + 2e^-D cosh J, B = 1 + 2e^-D; decoration and iteration; from memory."""
     form = closed_form(mixed_spin())
     assert form.spectrum.matrix.size == 2
-    spectrum_agrees(
-        form, ["5.9829267272809629155", "1.3016465431384057125"], rtol="1e-19", J="1.3", D="0.4"
-    )
+    spectrum_agrees(form, ["5.9829267272809629155", "1.3016465431384057125"], rtol="1e-19", J="1.3", D="0.4")
 
 
 def test_e13_alternating_bonds():
@@ -341,7 +337,7 @@ def test_e15_degenerate_down_state():
 
 
 def test_g02_and_g03_helix_and_coil():
-    """G02, G03: theta(s) of the Zimm-Bragg chain, sigma = 2e-4, and its slope at s = 1. J. Chem. Phys. 31, 526 (1959)."""
+    """G02, G03: theta(s) of the Zimm-Bragg chain, sigma = 2e-4, and its slope. J. Chem. Phys. 31, 526 (1959)."""
     chain = Chain(
         StateSet(["coil", "helix"]),
         [

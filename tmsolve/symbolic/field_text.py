@@ -19,6 +19,10 @@ from .roots import Quadratic, quadratic
 __all__ = ["FieldWriter", "write_quotient"]
 
 
+#: Numbers of the field with more terms than this are written without looking for products.
+_SEARCHED_TERMS = 80
+
+
 class FieldWriter:
     """Writes elements of the field of an eigenvalue λ = scale · μ.
 
@@ -43,10 +47,12 @@ class FieldWriter:
         self.matrix = matrix
         self.writer = writer
         self.eigenvalue = eigenvalue
+        self._quick = False
         self._form: Quadratic | None = quadratic(field.polynomial, matrix, writer, block) if field.degree == 2 else None
 
     def write(self, element: Element) -> Any:
         """Return an element without dimension (as many powers of λ above as below) as an expression."""
+        self._quick = sum(len(c) for part in (element.up, *element.down) for c in part) > _SEARCHED_TERMS
         return self._draft(element).build()
 
     def _draft(self, element: Element) -> Draft:
@@ -80,7 +86,9 @@ class FieldWriter:
         content, _ = _primitive({**{(0, x): v for x, v in a.items()}, **{(1, x): v for x, v in b.items()}})
         forms = []
         for front in (content / 2, content, content * 2):
-            up, slope = (self.writer.draft(times(shifted(part, exponents, -1), 1 / front)) for part in (a, b))
+            up, slope = (
+                self.writer.draft(times(shifted(part, exponents, -1), 1 / front), self._quick) for part in (a, b)
+            )
             forms.append(quotient(front / c, [total([up, product([slope, self._s()])])], below))
         return shortest(forms)
 
@@ -121,14 +129,16 @@ class FieldWriter:
         for k, c in enumerate(poly):
             if c:
                 powers = [power(eigenvalue, k)] if k else []
-                parts.append(product([self.writer.draft(self._plain(c, weight - k)), *powers]))
+                parts.append(product([self.writer.draft(self._plain(c, weight - k), self._quick), *powers]))
         return total(parts)
 
     def _quotient(self, up: Laurent, down: Laurent, below: Sequence[Draft]) -> Draft:
-        return write_quotient(self.writer, up, down, below)
+        return write_quotient(self.writer, up, down, below, self._quick)
 
 
-def write_quotient(writer: Writer, up: Laurent, down: Laurent, below: Sequence[Draft] = ()) -> Draft:
+def write_quotient(
+    writer: Writer, up: Laurent, down: Laurent, below: Sequence[Draft] = (), quick: bool = False
+) -> Draft:
     """Draft up/(down · below), numbers in front, with a monomial moved to where it reads best."""
     if not up:
         return number(Fraction(0))
@@ -139,8 +149,9 @@ def write_quotient(writer: Writer, up: Laurent, down: Laurent, below: Sequence[D
         above, under = shifted(up, by, -1), shifted(down, by, -1)
         # Hyperbolic functions bring a 2 with them.
         for m, n in ((1, 1), (2, 1), (1, 2), (2, 2)):
-            parts = [writer.draft(times(above, Fraction(1, m)))], [writer.draft(times(under, Fraction(1, n))), *below]
-            drafts.append(quotient(c / d * Fraction(m, n), *parts))
+            ups = [writer.draft(times(above, Fraction(1, m)), quick)]
+            downs = [writer.draft(times(under, Fraction(1, n)), quick), *below]
+            drafts.append(quotient(c / d * Fraction(m, n), ups, downs))
     return shortest(drafts)
 
 

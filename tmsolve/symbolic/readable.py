@@ -18,10 +18,10 @@ from .polynomials import factorable
 __all__ = ["Vector", "Writer", "shifted", "times"]
 
 #: Longer sums are not collected any more, and still longer ones only written term by term.
-_COLLECTED_TERMS, _FACTORED_TERMS = 24, 60
+_COLLECTED_TERMS, _FACTORED_TERMS = 24, 40
 
 #: Highest power and size in dense form of what is factored to be written; longer products are rarely found.
-_FACTORED_POWER, _FACTORED_SIZE = 40, 4_000
+_FACTORED_POWER, _FACTORED_SIZE = 40, 1_500
 
 #: Exponents of the classes.
 Vector = tuple[Fraction, ...]
@@ -56,11 +56,13 @@ class Writer:
         """Return the shortest of the forms of a sum."""
         return self.draft(laurent).build()
 
-    def draft(self, laurent: Laurent) -> Draft:
-        """Return the shortest of the drafts of a sum."""
+    def draft(self, laurent: Laurent, quick: bool = False) -> Draft:
+        """Return the shortest of the drafts of a sum; ``quick`` leaves out the forms that take long to find."""
         terms = {exponents: c for exponents, c in laurent.items() if c}
         key = frozenset(terms.items())
         if key not in self._known:
+            if quick:
+                return shortest([self.plain(terms), self._paired(terms) if len(terms) <= _FACTORED_TERMS else None])
             # Held while the forms are drafted, in case a form asks for the same sum again.
             self._known[key] = self.plain(terms)
             self._known[key] = shortest([form(terms) for form in self._forms(len(terms))])

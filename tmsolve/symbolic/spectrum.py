@@ -19,6 +19,7 @@ from .matrix import SymbolicMatrix
 from .polynomials import Coefficients, characteristic, factors
 from .readable import Writer
 from .roots import all_real, radicals
+from .verify import generic_points, number_value, symbol_values
 
 __all__ = ["Factor", "Spectrum", "leading_factor", "solve_spectrum"]
 
@@ -168,7 +169,7 @@ def _no_radicals(factor: Factor, real: bool) -> str:
 
 
 def leading_factor(spectrum: Spectrum) -> list[int]:
-    """Return which factors have the largest root, somewhere among a few generic points.
+    """Return which factors have the largest root at one or other of a few generic points.
 
     One index when the matrix is irreducible: its Perron root is simple, so that it cannot
     pass from one factor to another as parameters change.
@@ -182,22 +183,19 @@ def leading_factor(spectrum: Spectrum) -> list[int]:
     if len(candidates) < 2:
         return candidates
     winners: dict[int, None] = {}
-    ring = spectrum.matrix.alphabet.ring
-    for k in range(5):
-        values = [((3 * i + 5 * k + 2) % 11 + 1) / (5.0 - k / 2) for i in range(ring.ngens)]
+    alphabet = spectrum.matrix.alphabet
+    for point in generic_points(alphabet, 5):
+        values = symbol_values(alphabet, point)
         radii = {i: _radius(spectrum.factors[i].polynomial, values) for i in candidates}
         winners[max(radii, key=lambda i: radii[i])] = None
     return list(winners)
 
 
-def _radius(polynomial: Coefficients, values: list[float]) -> float:
-    numbers = []
-    for c in polynomial:
-        total = 0.0
-        for powers, coefficient in c.terms():
-            term = float(coefficient)
-            for value, power in zip(values, powers, strict=True):
-                term *= value**power
-            total += term
-        numbers.append(total)
-    return max(abs(np.roots(numbers)), default=0.0)
+def _radius(polynomial: Coefficients, values: list[Any]) -> Any:
+    """Return the largest modulus of the roots, as a number of any size."""
+    numbers = [number_value(c, values) for c in polynomial]
+    scale = max((abs(c) ** (1 / type(c)(k)) for k, c in enumerate(numbers) if k and c), default=0)
+    if not scale:
+        return scale
+    scaled = [float(c / scale**k) for k, c in enumerate(numbers)]
+    return scale * float(max(abs(np.roots(scaled))))

@@ -11,7 +11,7 @@ import numpy as np
 from .alphabet import Alphabet
 from .matrix import SymbolicMatrix
 
-__all__ = ["evaluate", "generic_points", "mismatch"]
+__all__ = ["evaluate", "generic_points", "mismatch", "number_value", "numeric_matrix", "symbol_values"]
 
 _DIGITS = 50
 #: Agreement asked for, relative to the sum of moduli; what a formula may lose to cancellation is below it.
@@ -46,21 +46,43 @@ def evaluate(expr: Any, point: Mapping[Any, Any], digits: int = _DIGITS) -> Any:
     symbols = list(point)
     with mp.workdps(digits + 10):
         function = sp.lambdify(symbols, expr, modules="mpmath")
-        return mp.mpmathify(function(*(mp.mpf(int(v.p)) / int(v.q) for v in point.values())))
+        values = [sp.Rational(v) for v in point.values()]
+        return mp.mpmathify(function(*(mp.mpf(int(v.p)) / int(v.q) for v in values)))
+
+
+def symbol_values(alphabet: Alphabet, point: Mapping[Any, Any], digits: int = _DIGITS) -> list[Any]:
+    """Return the symbols of an alphabet, y = exp(unit · class), at a point as mpmath numbers."""
+    import mpmath as mp
+
+    with mp.workdps(digits + 10):
+        classes = [evaluate(key, point, digits) for key in alphabet.classes]
+        units = [mp.mpf(u.numerator) / u.denominator for u in alphabet.units]
+        return [mp.exp(c * u) for c, u in zip(classes, units, strict=True)]
+
+
+def number_value(element: Any, values: Sequence[Any]) -> Any:
+    """Return a polynomial at values of its symbols."""
+    import mpmath as mp
+
+    total = mp.mpf(0)
+    for powers, c in element.terms():
+        term = mp.mpf(int(c.numerator)) / int(c.denominator)
+        for value, power in zip(values, powers, strict=False):
+            term *= value**power
+        total += term
+    return total
 
 
 def numeric_matrix(matrix: SymbolicMatrix, point: Mapping[Any, Any], digits: int = _DIGITS) -> Any:
     """Return the matrix at a point, its scale included, as an mpmath matrix."""
     import mpmath as mp
 
-    alphabet = matrix.alphabet
     with mp.workdps(digits + 10):
-        classes = [evaluate(key, point, digits) for key in alphabet.classes]
-        values = [mp.exp(c * mp.mpf(u.numerator) / u.denominator) for c, u in zip(classes, alphabet.units, strict=True)]
+        values = symbol_values(matrix.alphabet, point, digits)
         scale = mp.fprod(v**s for v, s in zip(values, matrix.scale, strict=False))
         result = mp.zeros(matrix.size)
         for (i, j), element in np.ndenumerate(_hidden(matrix.entries)):
-            result[i, j] = scale * _number(element.value, values, mp)
+            result[i, j] = scale * number_value(element.value, values)
         return result
 
 
@@ -78,16 +100,6 @@ def _hidden(entries: np.ndarray) -> np.ndarray:
     for index in np.ndindex(entries.shape):
         held[index] = _Held(entries[index])
     return held
-
-
-def _number(element: Any, values: Sequence[Any], mp: Any) -> Any:
-    total = mp.mpf(0)
-    for powers, c in element.terms():
-        term = mp.mpf(int(c.numerator)) / int(c.denominator)
-        for value, power in zip(values, powers, strict=False):
-            term *= value**power
-        total += term
-    return total
 
 
 def mismatch(
