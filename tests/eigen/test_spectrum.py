@@ -74,6 +74,19 @@ def test_tiny_eigenvalues_of_two_states(ratio):
     assert modulus[0, 0] == pytest.approx(math.log(ratio / root**2), rel=1e-12)
 
 
+@pytest.mark.parametrize("depth", [300.0, 640.0, 700.0, 715.0])
+def test_eigenvalues_at_the_end_of_the_doubles(depth):
+    """Three states of which two are hardly ever visited: λ₂ and λ₃ of order e^−depth do not overflow or warn."""
+    log = np.array([[0.0, -depth, -depth], [0.0, -depth - 1, -depth], [0.0, -depth, -depth - 2]])
+    modulus, phase = ratios(pair_of(log))
+    # To leading order the others' own steps count, minus the way through the likely state.
+    a, b = math.exp(-1) - 1, math.exp(-2) - 1
+    assert modulus[0] == pytest.approx(
+        [-depth + math.log(-b), -depth + math.log(-a)], rel=1e-6 if depth > 700 else 1e-9
+    )
+    assert phase[0] == pytest.approx([math.pi, math.pi])
+
+
 def test_equal_rows_have_no_second_eigenvalue():
     for n in (2, 3, 5):
         row = np.random.default_rng(n).normal(size=n) * 20

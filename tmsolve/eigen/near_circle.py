@@ -17,7 +17,7 @@ from ..operators.numbers import to_double
 from .components import communicating_classes
 from .reduction import heavy_first, reduce_states
 
-__all__ = ["NEAR", "refine"]
+__all__ = ["NEAR", "refine", "tidy"]
 
 #: Within this distance from the circle (in ln|λ|) an eigenvalue is computed anew.
 NEAR = 1e-4
@@ -44,6 +44,12 @@ def refine(chance: np.ndarray, log_modulus: np.ndarray, phase: np.ndarray) -> No
         if steps:
             picked = np.array(members)
             _refine_group(chance[..., picked], steps, count, picked, log_modulus, phase)
+
+
+def tidy(phase: np.ndarray) -> np.ndarray:
+    """Return phases with those of real numbers exactly 0 or π."""
+    turned = np.where(np.abs(phase) < 1e-9, 0.0, phase)
+    return np.where(np.abs(np.abs(turned) - np.pi) < 1e-9, np.pi, turned)
 
 
 def _common_period(phase: np.ndarray) -> int:
@@ -115,7 +121,7 @@ def _from_deviation(
         moved = np.moveaxis(chance, -1, 0) @ vectors
         felt = (vectors.conj() * moved).sum(axis=1)
         phases = np.where(np.abs(felt) > 0.99, np.angle(felt), known)
-    phases[np.abs(phases) < 1e-9] = 0.0
+    phases = tidy(phases)
     order = np.argsort(-moduli, axis=-1, kind="stable")
     return np.take_along_axis(moduli, order, axis=-1), np.take_along_axis(phases, order, axis=-1)
 

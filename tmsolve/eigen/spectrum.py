@@ -13,7 +13,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..operators.numbers import to_double
-from .near_circle import refine
+from .near_circle import refine, tidy
 from .perron import PerronPair
 
 __all__ = ["Modes", "clusters", "leading_modes", "modes", "ratios"]
@@ -54,7 +54,8 @@ def ratios(pair: PerronPair) -> tuple[np.ndarray, np.ndarray]:
     if len(chance) == 1:
         return np.empty((chance.shape[-1], 0)), np.empty((chance.shape[-1], 0))
     rest, _ = _without_perron(chance, to_double(pair.reduction.stationary))
-    log_modulus, phase = _polar(_eigenvalues(rest), np.abs(rest).sum(axis=1).max(axis=0))
+    scaled, size = _scaled(rest)
+    log_modulus, phase = _polar(_eigenvalues(scaled), size)
     refine(pair.chance, log_modulus, phase)
     return log_modulus, phase
 
@@ -95,15 +96,19 @@ def _eigenvalues(rest: np.ndarray) -> np.ndarray:
     return np.take_along_axis(values, order, axis=-1)
 
 
+def _scaled(rest: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return a matrix of size 1, for numbers next to the smallest doubles are poor ones, and its size, (batch,)."""
+    size = np.abs(rest).sum(axis=1).max(axis=0)
+    size = np.where(size > 0, size, 1.0)
+    return rest / size, size
+
+
 def _polar(values: np.ndarray, size: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return ln |λ| and phases; what is rounding next to the size of its matrix counts as 0."""
+    """Return ln |λ·size| and phases; what is rounding next to a matrix of size 1 counts as 0."""
     modulus = np.abs(values)
-    zero = (modulus == 0) | (modulus < 1e-14 * values.shape[-1] * size[:, None])
-    with np.errstate(divide="ignore"):
-        log_modulus = np.where(zero, -np.inf, np.log(np.where(zero, 1.0, modulus)))
-    phase = np.where(zero, 0.0, np.angle(values))
-    phase[np.abs(phase) < 1e-9] = 0.0
-    return log_modulus, phase
+    zero = (modulus == 0) | (modulus < 1e-14 * values.shape[-1])
+    log_modulus = np.where(zero, -np.inf, np.log(np.where(zero, 1.0, modulus)) + np.log(size)[:, None])
+    return log_modulus, tidy(np.where(zero, 0.0, np.angle(values)))
 
 
 def modes(chance: np.ndarray, law: np.ndarray) -> Modes:
@@ -116,7 +121,8 @@ def modes(chance: np.ndarray, law: np.ndarray) -> Modes:
         Stationary law.
     """
     rest, kept = _without_perron(chance[..., None], law[:, None])
-    values, vectors = np.linalg.eig(rest[..., 0].astype(np.complex128))
+    scaled, size = _scaled(rest)
+    values, vectors = np.linalg.eig(scaled[..., 0].astype(np.complex128))
     order = np.argsort(-np.abs(values), kind="stable")
     inverse = np.linalg.pinv(vectors) if np.linalg.cond(vectors) > 1e14 else np.linalg.inv(vectors)
     right = np.zeros((len(law), len(values)), dtype=np.complex128)
@@ -125,7 +131,7 @@ def modes(chance: np.ndarray, law: np.ndarray) -> Modes:
     right[kept[:, 0]] = vectors[:, order]
     left[:, kept[:, 0]] = inverse[order]
     left[:, law.argmax()] = -inverse[order].sum(axis=1)
-    log_modulus, phase = _polar(values[None, order], np.abs(rest).sum(axis=1).max(axis=0))
+    log_modulus, phase = _polar(values[None, order], size)
     return Modes(log_modulus[0], phase[0], right, left)
 
 

@@ -22,7 +22,7 @@ def decays(laws: Laws, a: str | None) -> tuple[np.ndarray, np.ndarray, np.ndarra
 
 def lengths(log_modulus: np.ndarray) -> np.ndarray:
     """Return −1/ln |λ/λ₁|: 0 for an eigenvalue 0, inf for one on the circle of λ₁."""
-    with np.errstate(divide="ignore"):
+    with np.errstate(divide="ignore", over="ignore"):
         found = np.where(log_modulus == -np.inf, 0.0, -1.0 / np.minimum(log_modulus, -0.0))
     return np.where(log_modulus >= 0, np.inf, found)
 
