@@ -38,8 +38,10 @@ def main() -> None:
     point = row.at(T="4/5", w="3/2", mu="-1/4")
     print(f"coverage by formula {float(coverage.subs(at)):.15f}")
     print(f"coverage by solver  {float(solve(point).mean('coverage')):.15f}")
-    exact = form.partition_function(12).subs({s: values[s.name] for s in form.partition_function(12).free_symbols})
-    print(f"ln Z of a ring of 12 by formula {float(sympy.log(exact)):.12f}, by products {float(ring(point, 12).log_Z):.12f}")
+    twelve = form.partition_function(12)
+    exact = twelve.subs({symbol: values[symbol.name] for symbol in twelve.free_symbols})
+    by_formula, by_products = float(sympy.log(exact)), float(ring(point, 12).log_Z)
+    print(f"ln Z of a ring of 12 by formula {by_formula:.12f}, by products {by_products:.12f}")
 
 
 if __name__ == "__main__":

@@ -1,4 +1,4 @@
-"""Numbers at the extremes, against values computed once with mpmath at 60 digits and more (our own, from closed forms)."""
+"""Numbers at the extremes, against values computed once with mpmath at 60 digits and more (our own)."""
 
 from __future__ import annotations
 
