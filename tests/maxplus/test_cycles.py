@@ -9,7 +9,7 @@ from hypothesis import given, settings
 from hypothesis import strategies as st
 
 from tmsolve.maxplus.cycles import _howard, _karp, minimum_cycle_mean, reduced_costs
-from tmsolve.operators.numbers import multiprecision, to_double
+from tmsolve.operators.numbers import DOUBLE, multiprecision, to_double
 
 EPSILON = 2.0**-53
 
@@ -118,3 +118,18 @@ def test_ties_at_a_large_offset_are_ties():
     mean, potentials = minimum_cycle_mean(cost[..., None], np.ones((2, 2), bool))
     reduced = reduced_costs(cost[..., None], mean, potentials, EPSILON)[..., 0]
     assert [reduced[0, 0], reduced[0, 1], reduced[1, 0]] == [0, 0, 0]
+
+
+@pytest.mark.parametrize("unit", [1 / 3, 1 / 7, 0.1])
+def test_a_cheap_step_at_the_end_of_a_costly_path_is_on_the_cycle(unit):
+    """Its own cost and potentials are small; the rounding it inherits is not."""
+    steps = {(0, 2): -1.0, (1, 0): 0.0, (2, 3): -1.75, (3, 4): 1.0, (4, 1): 2.0}
+    for numbers in (DOUBLE, multiprecision(200)):
+        cost = np.full((5, 5), 9.0)
+        for step, value in steps.items():
+            cost[step] = value
+        edges = cost < 9
+        scaled = numbers.array(cost)[..., None] * unit
+        mean, potentials = minimum_cycle_mean(scaled, edges)
+        reduced = reduced_costs(scaled, mean, potentials, numbers.epsilon)[..., 0]
+        assert [float(reduced[step]) for step in steps] == [0.0] * 5

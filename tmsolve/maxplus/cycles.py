@@ -133,6 +133,8 @@ def reduced_costs(cost: np.ndarray, mean: np.ndarray, potentials: np.ndarray, ep
         Unit roundoff of the number system.
     """
     raw = cost - mean + potentials[:, None] - potentials[None, :]
-    scale = np.abs(cost) + np.abs(mean) + np.abs(potentials[:, None]) + np.abs(potentials[None, :])
+    # Potentials carry the rounding of the whole path they were added up along.
+    lifts = np.abs(potentials)
+    scale = np.abs(cost) + np.abs(mean) + lifts[:, None] + lifts[None, :] + lifts.max(axis=0)
     rounding = (np.abs(raw) <= 16 * epsilon * scale) & (raw < np.inf)
     return np.where(rounding, mean * 0, raw)
