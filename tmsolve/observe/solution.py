@@ -16,7 +16,7 @@ from .correlations import Level, connected_correlation, levels, sorted_spectrum
 from .evaluate import Laws
 from .lengths import decays, gaps, lengths
 from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
-from .structure import structure_factor
+from .structure import structure_factors
 
 __all__ = ["Solution"]
 
@@ -190,11 +190,7 @@ class Solution:
         """
         wanted = read_wave_numbers(k)
         self.point.chain.observable(a)
-        window, _ = self.laws.resolved((a,))
-        values = self.laws.collect(
-            lambda segment: structure_factor(window, segment, a, wanted), (a,), (len(wanted),)
-        )
-        shaped = self._shaped(values, f"structure factor of {a}")
+        shaped = self._shaped(structure_factors(self.laws, a, wanted), f"structure factor of {a}")
         return shaped[..., 0] if np.ndim(k) == 0 else shaped
 
     def correlation_length(self, a: str | None = None) -> np.ndarray:
