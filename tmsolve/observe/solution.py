@@ -185,7 +185,7 @@ class Solution:
         --------
         >>> from tmsolve import models, solve
         >>> r = solve(models.load("ising").chain.at(T="1/20", J=1, h=0))
-        >>> print(f"{r.structure_factor('m', 1e-3):.8e}")       # sinh-free form: (1−t²)/(1−2t cos k+t²)
+        >>> print(f"{r.structure_factor('m', 1e-3):.8e}")       # (1−t²)/(1−2t cos k+t²), t = tanh(J/T)
         1.69934184e-11
         """
         wanted = read_wave_numbers(k)

@@ -135,19 +135,19 @@ class _Collected:
     def __init__(self, plan: Plan) -> None:
         self.plan = plan
         self.values = np.full((len(plan.readings), plan.size), np.nan)
-        self.todo = np.full((len(plan.readings), plan.size), True)
+        self.pending = np.full((len(plan.readings), plan.size), True)
         self.failed: dict[tuple[int, str], None] = {}
 
     def take(self, reading: int, start: int, values: np.ndarray, failed: Sequence[tuple[int, str]]) -> None:
         """Enter one reading over one block."""
         self.values[reading, start : start + len(values)] = values
-        self.todo[reading, start : start + len(values)] = False
+        self.pending[reading, start : start + len(values)] = False
         self.failed.update({(start + point, message): None for point, message in failed})
 
     def grid(self) -> Grid:
         """Return what there is."""
         plan = self.plan
-        unreached = np.asarray(self.todo.any(axis=0))
+        unreached = np.asarray(self.pending.any(axis=0))
         mask = unreached.copy()
         mask[[point for point, _ in self.failed]] = True
         missing = int(unreached.sum())
@@ -198,7 +198,7 @@ def _finished(plan: Plan, collected: _Collected, kept: Store | None, executor: E
             collected.take(i, start, *record)
             if kept is not None:
                 kept.put(keys[start, i], record)
-        yield plan.size - int(collected.todo.any(axis=0).sum())
+        yield plan.size - int(collected.pending.any(axis=0).sum())
 
 
 def _reading_key(plan: Plan, number: int) -> str:
