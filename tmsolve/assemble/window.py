@@ -8,12 +8,13 @@ from functools import lru_cache
 from typing import Any
 
 from ..declare import Chain, StateSet, Term
+from ..declare.palettes import require_numbers
 from ..errors import TooLargeError
 from ..operators.elimination import elimination_order
 from ..operators.window import Factor, Window
 from .cut import Cut, smallest_cut
 
-__all__ = ["ChainWindow", "Degeneracy", "SiteWeights", "build_window", "place_in", "untouched"]
+__all__ = ["ChainWindow", "Degeneracy", "SiteWeights", "build_window", "place_in", "token_window", "untouched"]
 
 Site = tuple[str, int]
 
@@ -78,6 +79,15 @@ def build_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
     >>> window = build_window(Chain(spins(1), [bond(lambda s, t, J: -J*s*t, shift=2)]))
     >>> window.shape, window.nonzeros
     ((9, 9), 27)
+    """
+    require_numbers(chain.cell)
+    return _build(chain, tuple(sorted(set(observables))))
+
+
+def token_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
+    """Return the window of a chain whose states are a few colours that stand for any number of them.
+
+    Its sites, cuts and factors hold for every number of colours; its sizes do not.
     """
     return _build(chain, tuple(sorted(set(observables))))
 

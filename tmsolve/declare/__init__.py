@@ -1,8 +1,9 @@
 """What the user writes: states, terms, observables, chains and points. It computes nothing."""
 
 from .chain import Chain
+from .palettes import colours
 from .point import Point
-from .states import StateSet, clock, colours, ising, occupation, spins
+from .states import StateSet, clock, ising, occupation, spins
 from .terms import Term, bond, cos_turns, delta, site, term, weight
 
 __all__ = [

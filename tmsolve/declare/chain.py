@@ -87,6 +87,7 @@ class Chain:
         self._set("observables", MappingProxyType(observed))
         self._set("name", str(name))
         names = dict.fromkeys(p for t in everything for p in t.parameters if p != "T")
+        _check_numbers(cell, names)
         self._set("parameters", tuple(names))
         self._set("defaults", MappingProxyType(_defaults(everything)))
         self._set("fixed", MappingProxyType({}))
@@ -145,10 +146,18 @@ class Chain:
                 raise ParameterError(f"fix takes single numbers, got an array for {name!r}; give arrays to chain.at(…)")
         if "T" in values:
             check_temperature(fixed["T"])
+        return self._changed(fixed=MappingProxyType(fixed))
+
+    def with_states(self, cell: Mapping[str, StateSet]) -> Chain:
+        """Return the same terms and parameters over other states of the same kinds of site."""
+        if tuple(cell) != tuple(self.cell):
+            raise DeclarationError(f"this chain has sites of kind {listing(self.cell)}, got states for {listing(cell)}")
+        return self._changed(cell=MappingProxyType(_cell(cell)))
+
+    def _changed(self, **attributes: Any) -> Chain:
         other = object.__new__(Chain)
-        for attribute in ("cell", "terms", "observables", "name", "parameters", "defaults"):
-            other._set(attribute, getattr(self, attribute))
-        other._set("fixed", MappingProxyType(fixed))
+        for attribute in ("cell", "terms", "observables", "name", "parameters", "defaults", "fixed"):
+            other._set(attribute, attributes.get(attribute, getattr(self, attribute)))
         return other
 
     def _refuse_fixed(self, values: Mapping[str, Any]) -> None:
@@ -170,7 +179,7 @@ class Chain:
             ) from None
 
     def __repr__(self) -> str:
-        kinds = ", ".join(f"{kind}: {len(states)} states" for kind, states in self.cell.items())
+        kinds = ", ".join(f"{kind}: {states.count} states" for kind, states in self.cell.items())
         fixed = "".join(f", {name}={float(value):g}" for name, value in self.fixed.items())
         return f"<Chain {self.name!r}: {kinds}; parameters {listing(self.free)}{fixed}>"
 
@@ -191,6 +200,24 @@ def _cell(states: Any) -> dict[str, StateSet]:
         if not isinstance(set_, StateSet):
             raise DeclarationError(f"kind {kind!r} needs a state set, got {set_!r}; make one with StateSet([…])")
     return dict(states)
+
+
+def _check_numbers(cell: Mapping[str, StateSet], parameters: Iterable[str]) -> None:
+    """Refuse a symbolic number of colours that means two things."""
+    first: dict[str, StateSet] = {}
+    for kind, states in cell.items():
+        if states.number is None:
+            continue
+        if states.number in parameters:
+            raise DeclarationError(
+                f"{states.number!r} is a parameter of an energy and the number of colours of kind {kind!r}; rename one"
+            )
+        other = first.setdefault(states.number, states)
+        if states.special != other.special:
+            raise DeclarationError(
+                f"{other!r} and {states!r} have one number of colours but not the same special ones; "
+                "give both all colours that any energy singles out"
+            )
 
 
 def _defaults(terms: Iterable[Term]) -> dict[str, Value]:

@@ -10,6 +10,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from ..errors import ParameterError, did_you_mean, listing, unknown_parameter
+from .palettes import require_numbers
 from .values import Value, parse_value
 
 if TYPE_CHECKING:
@@ -107,6 +108,7 @@ def _show(value: Value) -> str:
 
 def bind(chain: Chain, values: Mapping[str, Any]) -> Point:
     """Check names and values against a chain and make a point of them."""
+    require_numbers(chain.cell)
     known = (*chain.parameters, "T")
     for name in values:
         if name not in known:

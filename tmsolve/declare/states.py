@@ -10,8 +10,9 @@ from numbers import Integral, Rational, Real
 from typing import Any
 
 from ..errors import DeclarationError
+from .tokens import Colour
 
-__all__ = ["StateSet", "clock", "colours", "ising", "occupation", "spins"]
+__all__ = ["StateSet", "clock", "ising", "occupation", "spins", "whole_count"]
 
 #: A local state as stored: numbers exact where they can be, else the user's own object.
 State = Any
@@ -34,6 +35,12 @@ class StateSet:
     labels : iterable of str, optional
         Names for tables and figures; made from the values when left out.
 
+    Attributes
+    ----------
+    number : str or None
+        Name of the number of colours where that is a symbol, see `colours`; the values are then
+        the special colours and one that stands for all others.
+
     Raises
     ------
     DeclarationError
@@ -51,6 +58,7 @@ class StateSet:
     values: tuple[State, ...]
     weights: tuple[Fraction | float, ...]
     labels: tuple[str, ...]
+    number: str | None
 
     def __init__(
         self,
@@ -76,6 +84,8 @@ class StateSet:
         object.__setattr__(self, "values", states)
         object.__setattr__(self, "weights", _weights(weights, states))
         object.__setattr__(self, "labels", _labels(labels, states))
+        number = next((value.number for value in states if isinstance(value, Colour)), None)
+        object.__setattr__(self, "number", number)
 
     def __len__(self) -> int:
         return len(self.values)
@@ -88,6 +98,16 @@ class StateSet:
         """Whether any degeneracy differs from 1."""
         return any(weight != 1 for weight in self.weights)
 
+    @property
+    def count(self) -> str:
+        """Number of states as text: digits, or the symbol of `colours`."""
+        return self.number or str(len(self.values))
+
+    @property
+    def special(self) -> tuple[State, ...]:
+        """States that are not one of many equal colours: all of them unless the number of colours is a symbol."""
+        return tuple(value for value in self.values if not isinstance(value, Colour))
+
     def index(self, state: State) -> int:
         """Return the position of a state (given as value or as label)."""
         try:
@@ -98,6 +118,10 @@ class StateSet:
         raise DeclarationError(f"{state!r} is not a state of this site; its states are {', '.join(self.labels)}")
 
     def __repr__(self) -> str:
+        if self.number is not None:
+            return (
+                f"colours({self.number!r}, special={self.special!r})" if self.special else f"colours({self.number!r})"
+            )
         parts = [f"[{', '.join(repr(_plain(value)) for value in self.values)}]"]
         if self.weighted:
             parts.append(f"weights=[{', '.join(str(weight) for weight in self.weights)}]")
@@ -121,7 +145,7 @@ def _state(value: Any) -> State:
             raise DeclarationError(f"a state must be finite, got {number!r}")
         exact = Fraction(repr(number))
         return exact if exact.denominator != 1 else int(exact)
-    if isinstance(value, str):
+    if isinstance(value, (str, Colour)):
         return value
     if isinstance(value, Sequence) and not isinstance(value, bytes):
         return tuple(_state(part) for part in value)
@@ -212,17 +236,6 @@ def ising() -> StateSet:
     return StateSet([-1, 1])
 
 
-def colours(q: int) -> StateSet:
-    """The q colours 0 … q−1 of a Potts variable.
-
-    Examples
-    --------
-    >>> colours(3).values
-    (0, 1, 2)
-    """
-    return StateSet(range(_count("colours", q)))
-
-
 def clock(q: int) -> StateSet:
     """The q positions 0 … q−1 of a clock variable; position n stands for the angle 2πn/q.
 
@@ -234,7 +247,7 @@ def clock(q: int) -> StateSet:
     >>> clock(4).labels
     ('0', '1/4 turn', '1/2 turn', '3/4 turn')
     """
-    count = _count("clock", q)
+    count = whole_count("clock", q)
     labels = ["0"] + [f"{Fraction(n, count)} turn" for n in range(1, count)]
     return StateSet(range(count), labels=labels)
 
@@ -250,7 +263,8 @@ def occupation() -> StateSet:
     return StateSet([0, 1])
 
 
-def _count(name: str, q: Any) -> int:
+def whole_count(name: str, q: Any) -> int:
+    """Return a number of states as an int, or refuse it."""
     if isinstance(q, bool) or not isinstance(q, Integral) or q < 1:
         raise DeclarationError(f"{name}(q) takes a whole number q >= 1, got {q!r}")
     return int(q)

@@ -13,6 +13,7 @@ from collections.abc import Mapping
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any
 
+from ..declare.tokens import Colour, ColourMisuse
 from ..errors import DeclarationError
 from .tracer import Inexact, NotSymbolic, Tracer, unwrap
 
@@ -122,7 +123,7 @@ def _as_sympy(state: Any) -> Any:
 
     if isinstance(state, tuple):
         return tuple(_as_sympy(part) for part in state)
-    return state if isinstance(state, str) else sp.Rational(Fraction(state))
+    return state if isinstance(state, (str, Colour)) else sp.Rational(Fraction(state))
 
 
 def _as_fraction(state: Any) -> Any:
@@ -132,7 +133,7 @@ def _as_fraction(state: Any) -> Any:
 def _as_tracer(state: Any) -> Any:
     if isinstance(state, tuple):
         return tuple(_as_tracer(part) for part in state)
-    return state if isinstance(state, str) else Tracer(_as_sympy(state))
+    return state if isinstance(state, (str, Colour)) else Tracer(_as_sympy(state))
 
 
 def _as_float(state: Any) -> Any:
@@ -164,6 +165,8 @@ def _entry(term: Term, states: list, arguments: dict[str, Any]) -> Any:
         ) from error
     except NotSymbolic as error:
         raise DeclarationError(_symbolic_message(where, error)) from error
+    except ColourMisuse as error:
+        raise DeclarationError(_colour_message(term, states, error)) from error
     except Exception as error:
         if "truth value of Relational" in str(error):
             raise DeclarationError(_symbolic_message(where, NotSymbolic("branches on a parameter", ()))) from error
@@ -187,6 +190,22 @@ def _symbolic_message(where: str, error: NotSymbolic) -> str:
         f"{where} {error.what} ({names}), but a closed form leaves {names} free; give it a value with "
         f"chain.fix({fix}), or write the function without branches or float functions of it "
         "(sympy.cos, numpy.exp … work)"
+    )
+
+
+def _colour_message(term: Term, states: list, error: ColourMisuse) -> str:
+    number = next(state.number for state in states if isinstance(state, Colour))
+    trace, line = error.__traceback__, 0
+    while trace is not None:
+        if trace.tb_frame.f_code is getattr(term.function, "__code__", None):
+            line = trace.tb_lineno
+        trace = trace.tb_next
+    name = getattr(term.function, "__name__", term.name)
+    where = f"{name} (line {line})" if line else name
+    return (
+        f"{where} at states ({', '.join(str(state) for state in states)}) {error.what}; "
+        f"the number of colours, {number}, is a symbol, so that a colour has no number: {error.cure}, "
+        "or give a number of colours as in colours(3)"
     )
 
 
