@@ -11,14 +11,16 @@ from ..declare.chain import Chain
 from ..errors import NotApplicable, ParameterError, SolveError, TooLargeError, did_you_mean, listing
 from ..tabulate.symbolic import beta
 from . import report
+from .arguments import whole_cells, whole_distance
 from .blocks import Block
-from .deadline import TimeUp, limited
+from .correlations import Correlation, correlation
+from .deadline import Clock, TimeUp, limited
 from .lengths import correlation_length
-from .perron import Perron, perron_of
+from .perron import Perron, ordered_eigenvalues, perron_of
 from .recurrence import minimal_polynomial, ring_sum, trace_of_power
-from .spectrum import Factor, Spectrum
+from .spectrum import Spectrum
 
-__all__ = ["ClosedForm", "ordered_eigenvalues"]
+__all__ = ["ClosedForm"]
 
 Result = TypeVar("Result")
 
@@ -55,6 +57,7 @@ class ClosedForm:
     why: str
     time_limit: float
     spectrum: Spectrum = field(repr=False)
+    _correlations: dict[tuple[str, str], Correlation] = field(default_factory=dict, init=False, repr=False)
 
     # --- the matrix and its spectrum
 
@@ -106,7 +109,7 @@ class ClosedForm:
         import sympy as sp
 
         if N is not None:
-            return self._ring(_cells(N, self.chain))
+            return self._ring(whole_cells(N, self.chain))
         if not self.is_closed:
             raise NotApplicable(
                 f"no closed form of Z_N for symbolic N: {self.why}. Use partition_function(12) for a given number of "
@@ -199,16 +202,59 @@ class ClosedForm:
         values = self.eigenvalues
         return self._within("the correlation length", lambda: correlation_length(self.spectrum, values))
 
+    def correlation(self, first: str, second: str | None = None, r: int | None = None, connected: bool = True) -> Any:
+        """Correlation ⟨a₀ b_r⟩ of two observables, b at r ≥ 0 cells after a; b is a when left out.
+
+        Parameters
+        ----------
+        first, second : str
+            The observables a and b.
+        r : int, optional
+            The distance in cells; the symbol ``r`` when left out.
+        connected : bool
+            Whether ⟨a⟩⟨b⟩ is subtracted.
+
+        Raises
+        ------
+        NotApplicable
+            Not every eigenvalue is written by radicals, or the chain falls into several classes.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, closed_form, ising
+        >>> form = closed_form(Chain(ising(), [bond(lambda s, t, J: -J*s*t)], {"m": lambda s: s}))
+        >>> form.correlation("m")
+        tanh(J*beta)**r
+        """
+        other = first if second is None else second
+        for name in (first, other):
+            self.chain.observable(name)
+        function = self._correlations.get((first, other))
+        if function is None:
+            function = self._correlations[first, other] = self._correlation(first, other)
+        return function.at(whole_distance(r), connected)
+
+    def _correlation(self, first: str, second: str) -> Correlation:
+        if not self.is_closed:
+            raise NotApplicable(f"the correlation function needs all eigenvalues: {self.why}")
+        try:
+            return correlation(self.chain, self.spectrum, first, second, Clock(self.time_limit))
+        except TimeUp:
+            raise self._late(f"the correlation of {first!r} and {second!r}") from None
+
     # --- what keeps the promises
 
     def _within(self, what: str, compute: Callable[[], Result]) -> Result:
         try:
             return limited(self.time_limit, compute)
         except TimeUp:
-            raise SolveError(
-                f"{what} was not finished within {self.time_limit:g} s; fix parameters with chain.fix(…), "
-                "give a longer time_limit, or use solve(chain.at(…)) for numbers"
-            ) from None
+            raise self._late(what) from None
+
+    def _late(self, what: str) -> SolveError:
+        return SolveError(
+            f"{what} was not finished within {self.time_limit:g} s; fix parameters with chain.fix(…), "
+            "give a longer time_limit, or use solve(chain.at(…)) for numbers"
+        )
 
     def _thermal(self, what: str, compute: Callable[[], Result]) -> Result:
         if "T" in self.chain.fixed:
@@ -234,33 +280,3 @@ class ClosedForm:
 
     def _repr_latex_(self) -> str:
         return report.latex(self)
-
-
-def _cells(N: Any, chain: Chain) -> int:
-    import operator
-
-    reach = max(term.reach for term in chain.terms) if chain.terms else 0
-    try:
-        cells = operator.index(N)
-    except TypeError:
-        raise NotApplicable(f"the number of cells must be a whole number, got {N!r}") from None
-    if cells < reach + 1 or isinstance(N, bool):
-        raise NotApplicable(
-            f"a ring of {N!r} cells is shorter than the longest bond, which spans {reach} cells; "
-            f"use at least {reach + 1} cells"
-        )
-    return cells
-
-
-def ordered_eigenvalues(spectrum: Spectrum, perron: Perron) -> list[tuple[Any, int]]:
-    """Return all eigenvalues with multiplicities, those of the factor with the Perron root first."""
-    import sympy as sp
-
-    first = perron.factor
-    ordered: list[Factor] = [first, *(f for f in spectrum.factors if f is not first)]
-    found: dict[Any, int] = {}
-    for factor in ordered:
-        values = [sp.Integer(0)] if factor.is_zero else list(factor.roots)
-        for value in values:
-            found[value] = found.get(value, 0) + factor.multiplicity
-    return [(value, m) for value, m in found.items()]

@@ -50,20 +50,23 @@ class FieldWriter:
         self._quick = False
         self._form: Quadratic | None = quadratic(field.polynomial, matrix, writer, block) if field.degree == 2 else None
 
-    def write(self, element: Element) -> Any:
-        """Return an element without dimension (as many powers of λ above as below) as an expression."""
-        self._quick = sum(len(c) for part in (element.up, *element.down) for c in part) > _SEARCHED_TERMS
-        return self._draft(element).build()
+    def write(self, element: Element, degree: int = 0) -> Any:
+        """Return an element as an expression.
 
-    def _draft(self, element: Element) -> Draft:
+        ``degree`` says how many more powers of λ are above than below.
+        """
+        self._quick = sum(len(c) for part in (element.up, *element.down) for c in part) > _SEARCHED_TERMS
+        return self._draft(element, degree).build()
+
+    def _draft(self, element: Element, degree: int) -> Draft:
         if not any(element.up):
             return number(Fraction(0))
         if self.field.degree == 1:
-            ((below,),) = element.down
-            return self._quotient(self._plain(element.up[0]), self._plain(below), [])
+            ((below,),) = element.down or {(self.field.ring.one,): 1}
+            return self._quotient(self._plain(element.up[0], degree), self._plain(below), [])
         if self.field.degree == 2:
-            return self._with_root(element)
-        return self._in_powers(element)
+            return self._with_root(element, degree)
+        return self._in_powers(element, degree)
 
     def _plain(self, element: Any, weight: int = 0) -> Laurent:
         return self.matrix.laurent(element, weight)
@@ -71,9 +74,9 @@ class FieldWriter:
     def _weight(self, down: Mapping[Poly, int]) -> int:
         return sum(power * self.field.weights[key] for key, power in down.items())
 
-    def _with_root(self, element: Element) -> Draft:
+    def _with_root(self, element: Element, degree: int) -> Draft:
         """Write (a + b s)/denominators with s = √D."""
-        weight = self._weight(element.down)
+        weight = self._weight(element.down) + degree
         a, b = self._plain(element.up[0], weight), self._plain(element.up[1], weight - 1)
         below, shift = self._denominators(element.down)
         if not b:
@@ -81,7 +84,8 @@ class FieldWriter:
         proper = {key: n for key, n in element.down.items() if not _is_monomial(key)}
         if proper == {self.field.slope: 1}:
             # (a + b s)/(2 s) reads better as b/2 + a/(2 s).
-            return total([self._quotient(times(b, Fraction(1, 2)), shift, []), self._quotient(a, shift, below)])
+            assert self._form is not None
+            return total([self._quotient(times(b, self._form.front), shift, []), self._quotient(a, shift, below)])
         ((exponents, c),) = shift.items()
         content, _ = _primitive({**{(0, x): v for x, v in a.items()}, **{(1, x): v for x, v in b.items()}})
         forms = []
@@ -104,7 +108,10 @@ class FieldWriter:
         for key, exponent in down.items():
             weight = self.field.weights[key]
             if key == self.field.slope:
-                drafts.append(power(product([number(Fraction(2)), self._s()]), exponent))
+                # 2 s = 2 · front · radical: the number joins those in front of the whole.
+                assert self._form is not None
+                drafts.append(power(self._form.radical, exponent))
+                shift = {x: c * (2 * self._form.front) ** exponent for x, c in shift.items()}
             elif key == self.field.mu:
                 drafts.append(power(atom(self.eigenvalue), exponent))
             elif _is_monomial(key):
@@ -117,9 +124,9 @@ class FieldWriter:
                 drafts.append(power(other, exponent))
         return drafts, shift
 
-    def _in_powers(self, element: Element) -> Draft:
+    def _in_powers(self, element: Element, degree: int) -> Draft:
         """Write polynomials in λ, for degrees where it cannot be removed from the denominator."""
-        weight = self._weight(element.down)
+        weight = self._weight(element.down) + degree
         below = [power(self._polynomial(key, self.field.weights[key]), n) for key, n in element.down.items()]
         return quotient(Fraction(1), [self._polynomial(element.up, weight)], below)
 

@@ -6,10 +6,13 @@ from typing import Any
 
 from ..declare.chain import Chain
 from ..errors import ParameterError, SolveError, TooLargeError
-from .closed import ClosedForm, ordered_eigenvalues
+from ..tabulate.colours import numbers_of_colours
+from .closed import ClosedForm
+from .colour_check import colour_mismatch
+from .colour_matrix import ColourMatrix, colour_matrix
 from .deadline import Clock, TimeUp, limited
-from .matrix import symbolic_matrix
-from .perron import perron_of
+from .matrix import SymbolicMatrix, symbolic_matrix
+from .perron import ordered_eigenvalues, perron_of
 from .report import reason
 from .spectrum import solve_spectrum
 from .verify import mismatch
@@ -54,7 +57,7 @@ def closed_form(chain: Chain, *, time_limit: float = 30) -> ClosedForm:
     """
     clock = Clock(_seconds(time_limit))
     try:
-        matrix = limited(clock.share(_ASSEMBLY), symbolic_matrix, chain)
+        matrix = limited(clock.share(_ASSEMBLY), _matrix, chain)
     except TimeUp:
         raise TooLargeError(
             f"the symbolic transfer matrix was not assembled within the time limit of {time_limit:g} s; "
@@ -63,6 +66,10 @@ def closed_form(chain: Chain, *, time_limit: float = 30) -> ClosedForm:
     spectrum = solve_spectrum(matrix, clock)
     closed = ClosedForm(chain, spectrum.is_solved, reason(spectrum), float(time_limit), spectrum)
     return _proof_read(closed, clock) if closed.is_closed else closed
+
+
+def _matrix(chain: Chain) -> SymbolicMatrix:
+    return colour_matrix(chain) if numbers_of_colours(chain) else symbolic_matrix(chain)
 
 
 def _proof_read(form: ClosedForm, clock: Clock) -> ClosedForm:
@@ -80,7 +87,10 @@ def _proof_read(form: ClosedForm, clock: Clock) -> ClosedForm:
 def _wrong(form: ClosedForm) -> str | None:
     # Not through the properties of the form, which run under a limit of their own.
     perron = perron_of(form.chain, form.spectrum)
-    return mismatch(form.spectrum.matrix, ordered_eigenvalues(form.spectrum, perron), perron.value)
+    matrix, eigenvalues = form.spectrum.matrix, ordered_eigenvalues(form.spectrum, perron)
+    if isinstance(matrix, ColourMatrix):
+        return colour_mismatch(form.chain, matrix, eigenvalues, perron.value)
+    return mismatch(matrix, eigenvalues, perron.value)
 
 
 def _seconds(limit: Any) -> float:

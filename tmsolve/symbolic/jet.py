@@ -29,8 +29,8 @@ class Jet:
 
     @classmethod
     def source(cls, order: int, one: Any, slope: Any) -> Jet:
-        """Return 1 + φ·slope for ``order`` 0, 1 + ψ·slope for ``order`` 1."""
-        return cls(one, slope) if order == 0 else cls(one, 0, slope)
+        """Return 1 + φ·slope for ``order`` 0, 1 + ψ·slope for ``order`` 1, 1 for any other."""
+        return cls(one, slope) if order == 0 else cls(one, 0, slope) if order == 1 else cls(one)
 
     def __add__(self, other: Jet) -> Jet:
         return Jet(self.x + other.x, self.a + other.a, self.b + other.b, self.c + other.c)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
@@ -20,7 +21,10 @@ from .boltzmann import Terms, boltzmann_terms, polynomial_terms
 from .jet import Jet
 from .permutations import Permutation, numbered, verified
 
-__all__ = ["SymbolicMatrix", "symbolic_matrix", "tilted_matrix"]
+__all__ = ["Insertions", "SymbolicMatrix", "inserted_matrices", "symbolic_matrix", "tilted_matrix"]
+
+#: Which observable, the anchor cell of one of its terms, the sites of that, its values.
+_Source = tuple[int, int, Any, np.ndarray]
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,6 +52,11 @@ class SymbolicMatrix:
     def size(self) -> int:
         """Number of rows."""
         return len(self.entries)
+
+    @property
+    def rows(self) -> Any:
+        """Number of rows to be shown."""
+        return self.size
 
     def laurent(self, element: Any, power: int = 1) -> Laurent:
         """Return a polynomial of degree ``power`` in the entries as the sum of exponentials it stands for."""
@@ -85,17 +94,74 @@ def tilted_matrix(chain: Chain, first: str, second: str | None = None) -> Symbol
     """
     names = [first] if second is None else [first, second]
     window = build_window(chain, names)
-    tables = _factor_tables(chain, window)
+    factors, sources = _weighed(chain, window, names)
+    alphabet = _alphabet(factors, sources)
+    return _reduce(window, alphabet, factors, [(order, sites, table) for order, _, sites, table in sources], Jet)
+
+
+@dataclass(frozen=True, eq=False)
+class Insertions:
+    """The transfer matrix with observables put into it, all with one scale.
+
+    Attributes
+    ----------
+    matrix : SymbolicMatrix
+        Without any.
+    first, second : dict
+        By anchor cell: the matrix with the part of the observable that is anchored there.
+    both : dict
+        By pair of anchor cells: the matrix with both observables in the same window.
+    """
+
+    matrix: SymbolicMatrix
+    first: dict[int, np.ndarray]
+    second: dict[int, np.ndarray]
+    both: dict[tuple[int, int], np.ndarray]
+
+
+def inserted_matrices(chain: Chain, first: str, second: str) -> Insertions:
+    """Put two observables into the transfer matrix, sorted by the cell that their copies in the window belong to."""
+    window = build_window(chain, [first, second])
+    factors, sources = _weighed(chain, window, [first, second])
+    alphabet = _alphabet(factors, sources)
+    anchors = [sorted({cell for order, cell, _, _ in sources if order == which}) for which in (0, 1)]
+    found: dict[tuple[int, int], SymbolicMatrix] = {}
+    for pair in itertools.product(*anchors):
+        # A source of order 2 is a unit: it only keeps the scale the same.
+        active = [(order if cell == pair[order] else 2, sites, table) for order, cell, sites, table in sources]
+        found[pair] = _reduce(window, alphabet, factors, active, Jet)
+    some = next(iter(found.values()))
+    matrix = SymbolicMatrix(window, alphabet, _part(some.entries, 0), some.scale)
+    by_first = {pair[0]: _part(jets.entries, 1) for pair, jets in found.items()}
+    by_second = {pair[1]: _part(jets.entries, 2) for pair, jets in found.items()}
+    return Insertions(matrix, by_first, by_second, {pair: _part(jets.entries, 3) for pair, jets in found.items()})
+
+
+def _part(jets: np.ndarray, i: int) -> np.ndarray:
+    parts = np.empty(jets.shape, dtype=object)
+    zero = jets[0, 0].x * 0
+    for index in np.ndindex(jets.shape):
+        jet: Any = jets[index]
+        parts[index] = jet.parts()[i] or zero
+    return parts
+
+
+def _weighed(chain: Chain, window: ChainWindow, names: Sequence[str]) -> tuple[list[np.ndarray], list[_Source]]:
+    """Return the weights of all factors, and the values of the observables with their places."""
     symbols = parameter_symbols(chain)
-    sources = []
+    sources: list[_Source] = []
     for order, name in enumerate(names):
         for term in chain.observable(name):
             place = place_in(window, term)
             assert place is not None, "the window is built wide enough for its observables"
-            sources.append((order, place[0], _each(symbolic_table(chain, term, symbols), polynomial_terms)))
-    everything = [terms for table in tables for terms in table.ravel()]
-    everything += [terms for _, _, table in sources for terms in table.ravel()]
-    return _reduce(window, Alphabet.of(everything), tables, sources, Jet)
+            table = _each(symbolic_table(chain, term, symbols), polynomial_terms)
+            sources.append((order, place[1], place[0], table))
+    return _factor_tables(chain, window), sources
+
+
+def _alphabet(factors: Sequence[np.ndarray], sources: Sequence[_Source]) -> Alphabet:
+    tables = [*factors, *(table for *_, table in sources)]
+    return Alphabet.of(terms for table in tables for terms in table.ravel())
 
 
 def _factor_tables(chain: Chain, window: ChainWindow) -> list[np.ndarray]:

@@ -15,7 +15,7 @@ from .sources import mean_element, response_element
 from .spectrum import Factor, Spectrum, leading_factor
 from .thermal import LogSum, Thermal
 
-__all__ = ["Perron", "eigenvalue_symbol", "perron_of"]
+__all__ = ["Perron", "eigenvalue_symbol", "ordered_eigenvalues", "perron_of"]
 
 
 def eigenvalue_symbol() -> Any:
@@ -76,8 +76,15 @@ class Perron:
         return -sp.log(self.value) / self.beta
 
     def require_one_root(self) -> None:
-        """Refuse what has a meaning for a simple largest eigenvalue only."""
-        if self.tied:
+        """Refuse what has a meaning for one largest eigenvalue only."""
+        self._require(not self.tied)
+
+    def require_simple_root(self) -> None:
+        """Refuse what has a meaning for a simple largest eigenvalue only, which symmetric states may share too."""
+        self._require(not self.tied and self.factor.multiplicity == 1)
+
+    def _require(self, fulfilled: bool) -> None:
+        if not fulfilled:
             raise NotApplicable(
                 "the states of this chain fall into classes that do not reach each other, and several have the "
                 "largest eigenvalue, here or at other parameters; there is no one formula for derivatives. Use "
@@ -132,3 +139,17 @@ class Perron:
         self.require_one_root()
         writer, element = response_element(self.chain, first, second, self.value)
         return self.beta * writer.write(element)
+
+
+def ordered_eigenvalues(spectrum: Spectrum, perron: Perron) -> list[tuple[Any, int]]:
+    """Return all eigenvalues with multiplicities, those of the factor with the Perron root first."""
+    import sympy as sp
+
+    first = perron.factor
+    ordered: list[Factor] = [first, *(f for f in spectrum.factors if f is not first)]
+    found: dict[Any, int] = {}
+    for factor in ordered:
+        values = [sp.Integer(0)] if factor.is_zero else list(factor.roots)
+        for value in values:
+            found[value] = found.get(value, 0) + factor.multiplicity
+    return [(value, m) for value, m in found.items()]

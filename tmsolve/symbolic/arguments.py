@@ -1,0 +1,44 @@
+"""Whole numbers that formulas are asked for: cells and distances."""
+
+from __future__ import annotations
+
+import operator
+from typing import Any
+
+from ..declare.chain import Chain
+from ..errors import NotApplicable
+
+__all__ = ["whole_cells", "whole_distance"]
+
+
+def whole_distance(r: Any) -> Any:
+    """Return a distance in cells, 0 or more, or the symbol r for ``None``."""
+    import sympy as sp
+
+    if r is None:
+        return sp.Symbol("r", integer=True, nonnegative=True)
+    try:
+        distance = operator.index(r)
+    except TypeError:
+        distance = -1
+    if distance < 0 or isinstance(r, bool):
+        raise NotApplicable(
+            f"the distance r must be a whole number of cells, 0 or more, got {r!r}; for negative distances exchange "
+            "the two observables"
+        )
+    return distance
+
+
+def whole_cells(N: Any, chain: Chain) -> int:
+    """Return the number of cells of a ring, which is longer than every bond."""
+    reach = max(term.reach for term in chain.terms) if chain.terms else 0
+    try:
+        cells = operator.index(N)
+    except TypeError:
+        raise NotApplicable(f"the number of cells must be a whole number, got {N!r}") from None
+    if cells < reach + 1 or isinstance(N, bool):
+        raise NotApplicable(
+            f"a ring of {N!r} cells is shorter than the longest bond, which spans {reach} cells; "
+            f"use at least {reach + 1} cells"
+        )
+    return cells
