@@ -72,7 +72,8 @@ class Colour:
         # Saying "different" would make a field on a colour that was never declared vanish in silence.
         raise ColourMisuse(
             f"compares a colour with {other!r}, which is not declared as special",
-            f"write colours({self.number!r}, special={(*self.special, other)}) if {other!r} is one of the colours, or {_COMPARE}",
+            f"write colours({self.number!r}, special={(*self.special, other)}) if {other!r} is one of the colours, "
+            f"or {_COMPARE}",
         )
 
     def __hash__(self) -> int:

@@ -14,7 +14,7 @@ from fractions import Fraction
 from functools import cached_property
 from typing import Any
 
-from .boltzmann import Monomial, Terms
+from .boltzmann import Monomial, Terms, polynomial_terms
 
 __all__ = ["Alphabet", "Laurent", "Scale", "common_measure"]
 
@@ -34,13 +34,16 @@ class Alphabet:
         Such as β J; ln w for a weight w.
     units : tuple of Fraction
         Least exponents.
+    counts : tuple of sympy symbols
+        Those of the parameters that are whole numbers, such as a number of colours.
     """
 
     classes: tuple[Any, ...]
     units: tuple[Fraction, ...]
+    counts: tuple[Any, ...] = ()
 
     @classmethod
-    def of(cls, terms: Iterable[Terms]) -> Alphabet:
+    def of(cls, terms: Iterable[Terms], counts: tuple[Any, ...] = ()) -> Alphabet:
         """Collect the classes of all monomials, with the greatest common measure of their exponents."""
         measures: dict[Any, Fraction] = {}
         for each in terms:
@@ -48,7 +51,7 @@ class Alphabet:
                 for key, exponent in monomial:
                     measures[key] = common_measure((measures.get(key, Fraction(0)), exponent))
         ordered = sorted(measures, key=lambda key: key.sort_key())
-        return cls(tuple(ordered), tuple(measures[key] for key in ordered))
+        return cls(tuple(ordered), tuple(measures[key] for key in ordered), counts)
 
     @cached_property
     def ring(self) -> Any:
@@ -79,6 +82,10 @@ class Alphabet:
             for monomial, c in terms.items()
         }
         return ring.from_dict(content)
+
+    def multiple(self, count: Any) -> Any:
+        """Return a multiplicity, a number or a polynomial in the `counts`, as a factor for elements."""
+        return count if isinstance(count, int) else self.element(polynomial_terms(count), (0,) * self.width)
 
     def _powers(self, monomial: Monomial) -> tuple[int, ...]:
         exponents = dict(monomial)

@@ -15,6 +15,7 @@ from typing import Any, TypeVar
 
 import numpy as np
 
+from .multiplicity import both
 from .permutations import Permutation, involutions, orbits
 
 __all__ = ["Block", "components", "lump", "merged", "split"]
@@ -34,15 +35,15 @@ class Block:
         Its entries, without the common scale of the whole matrix.
     label : str
         How its states behave under the permutations found.
-    multiplicity : int
-        How many times it occurs.
+    multiplicity : int or sympy expression
+        How many times it occurs; a polynomial where the number of colours is a symbol.
     positive : bool
         Whether it can carry the Perron root: its vector is the same on equivalent states.
     """
 
     matrix: np.ndarray
     label: str
-    multiplicity: int = 1
+    multiplicity: Any = 1
     positive: bool = False
 
     @property
@@ -51,7 +52,7 @@ class Block:
         return len(self.matrix)
 
     def __repr__(self) -> str:
-        times = f" x {self.multiplicity}" if self.multiplicity > 1 else ""
+        times = f" x {self.multiplicity}" if self.multiplicity != 1 else ""
         return f"<Block {self.size} x {self.size}{times}: {self.label}>"
 
 
@@ -171,5 +172,5 @@ def merged(blocks: Sequence[tuple[Block, Key]]) -> list[tuple[Block, Key]]:
             continue
         first = found[name][0]
         label = first.label if first.label == block.label else _DIFFERENCES
-        found[name] = replace(first, multiplicity=first.multiplicity + block.multiplicity, label=label), key
+        found[name] = replace(first, multiplicity=both(first.multiplicity, block.multiplicity), label=label), key
     return list(found.values())

@@ -7,7 +7,7 @@ from typing import Any
 
 from .alphabet import Laurent
 from .field_text import write_quotient
-from .roots import all_real, quadratic
+from .roots import is_reversible, quadratic
 from .spectrum import Factor, Spectrum
 
 __all__ = ["correlation_length"]
@@ -73,7 +73,7 @@ def _pair(spectrum: Spectrum, factor: Factor) -> list[Any]:
     constant = sp.sqrt(sp.Abs(spectrum.writer.write(matrix.laurent(factor.polynomial[2], 2)), evaluate=False))
     if inside.is_negative:
         return [constant]
-    if inside.is_positive or all_real(matrix.entries):
+    if inside.is_positive or is_reversible(matrix):
         return [front * (middle + outside * sp.sqrt(inside))]
     return [front * (middle + outside * sp.sqrt(sp.Max(inside, 0, evaluate=False))), constant]
 

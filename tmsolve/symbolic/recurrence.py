@@ -37,7 +37,7 @@ def ring_sum(spectrum: Spectrum, cells: int) -> Laurent:
     ring = spectrum.matrix.alphabet.ring
     total = ring.zero
     for factor in spectrum.factors:
-        total = total + _power_sum(factor, cells, ring) * factor.multiplicity
+        total = total + _power_sum(factor, cells, ring) * spectrum.matrix.alphabet.multiple(factor.multiplicity)
     return spectrum.matrix.laurent(total, cells)
 
 

@@ -4,7 +4,10 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
+from ..errors import NotApplicable
 from .alphabet import Laurent
+from .colour_matrix import ColourMatrix
+from .multiplicity import factor_text
 from .perron import eigenvalue_symbol
 from .plain import latex_text, plain_text
 from .polynomials import Coefficients
@@ -26,6 +29,11 @@ def matrix(spectrum: Spectrum) -> Any:
     import sympy as sp
 
     source = spectrum.matrix
+    if isinstance(source, ColourMatrix):
+        raise NotApplicable(
+            f"the transfer matrix of {source.number} colours has {source.rows} rows, a symbol; use .blocks, whose "
+            f"matrices hold polynomials in {source.number}, or give a number of colours"
+        )
     write = {}
     for entry in source.entries.ravel():
         if entry not in write:
@@ -77,14 +85,16 @@ def reason(spectrum: Spectrum) -> str:
 
 def text(form: ClosedForm) -> str:
     """Return the readable text of a closed form."""
-    size = form.spectrum.matrix.size
+    import sympy as sp
+
+    size = plain_text(sp.sympify(form.spectrum.matrix.rows))
     fixed = form.chain.fixed.get("T")
     beta = "beta = 1/T" if fixed is None else f"T = {fixed}"
-    lines = [f"{form.chain.name}: transfer matrix {size} x {size}; {beta}"]
+    lines = [f"{form.chain.name}: transfer matrix {size} x {size}; {beta}{_validity(form.spectrum)}"]
     if form.is_closed:
         lines.append(f"  Z_N = {ring_text(form)}")
         lines.append("  eigenvalues (multiplicity)")
-        lines += [f"    {plain_text(value)}  ({m})" for value, m in form.eigenvalues]
+        lines += [f"    {plain_text(value)}  ({_times(m)})" for value, m in form.eigenvalues]
         lines.append(f"  f = {plain_text(form.free_energy)}")
     else:
         lines.append(f"  no closed form: {form.why}")
@@ -93,8 +103,18 @@ def text(form: ClosedForm) -> str:
             lines += _recurrence_lines(form)
     if len(form.blocks) > 1:
         lines.append("  blocks")
-        lines += [f"    {b.size} x {b.size}, {b.multiplicity} times: {b.label}" for b in form.blocks]
+        lines += [f"    {b.size} x {b.size}, {_times(b.multiplicity)} times: {b.label}" for b in form.blocks]
     return "\n".join(lines)
+
+
+def _times(multiplicity: Any) -> str:
+    return str(multiplicity) if isinstance(multiplicity, int) else plain_text(multiplicity)
+
+
+def _validity(spectrum: Spectrum) -> str:
+    """Say for which numbers of colours all eigenvalues listed are there."""
+    matrix = spectrum.matrix
+    return f"; {matrix.number} whole, at least {matrix.least}" if isinstance(matrix, ColourMatrix) else ""
 
 
 def _recurrence_lines(form: ClosedForm) -> list[str]:
@@ -117,7 +137,7 @@ def ring_text(form: ClosedForm) -> str:
         if value != 0:
             base = plain_text(value)
             base = base if value.is_Atom or value.is_Function else f"({base})"
-            parts.append(f"{base}**N" if m == 1 else f"{m}*{base}**N")
+            parts.append(f"{base}**N" if m == 1 else f"{factor_text(m, _times(m))}*{base}**N")
     return " + ".join(parts)
 
 
@@ -130,5 +150,6 @@ def latex(form: ClosedForm) -> str:
     parts = []
     for value, m in form.eigenvalues:
         if value != 0:
-            parts.append(("" if m == 1 else f"{m} ") + f"\\left({latex_text(value)}\\right)^{{N}}")
+            times = "" if m == 1 else factor_text(m, m if isinstance(m, int) else latex_text(m)) + " "
+            parts.append(times + f"\\left({latex_text(value)}\\right)^{{N}}")
     return f"$\\displaystyle Z_{{N}} = {' + '.join(parts)}$"

@@ -14,12 +14,13 @@ from typing import Any
 import numpy as np
 
 from .alphabet import Laurent
+from .colour_matrix import ColourMatrix
 from .formula import Draft, power, product, root, total
 from .matrix import SymbolicMatrix
 from .polynomials import Coefficients
 from .readable import Writer, shifted, shortest, times
 
-__all__ = ["Quadratic", "all_real", "quadratic", "radicals"]
+__all__ = ["Quadratic", "all_real", "is_reversible", "quadratic", "radicals"]
 
 #: A trigonometric form with more operations does not read well any more; spin 1 in a field has 160.
 _TRIGONOMETRIC_OPERATIONS = 200
@@ -197,6 +198,11 @@ def _add(*parts: tuple[Fraction, Laurent]) -> Laurent:
         for x, c in laurent.items():
             total[x] = total.get(x, Fraction(0)) + by * c
     return {x: c for x, c in total.items() if c}
+
+
+def is_reversible(matrix: SymbolicMatrix) -> bool:
+    """Whether every eigenvalue of a transfer matrix is known to be real, see `all_real`."""
+    return matrix.is_reversible if isinstance(matrix, ColourMatrix) else all_real(matrix.entries)
 
 
 def all_real(matrix: np.ndarray) -> bool:

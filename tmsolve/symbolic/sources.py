@@ -17,7 +17,9 @@ from typing import Any
 import numpy as np
 
 from ..declare.chain import Chain
+from ..tabulate.colours import numbers_of_colours
 from .blocks import Block, components
+from .colour_matrix import ColourMatrix, tilted_colour_matrix
 from .field import Element, Poly, RootField, derivative
 from .field_text import FieldWriter
 from .jet import Jet
@@ -82,7 +84,7 @@ def response_element(chain: Chain, first: str, second: str, eigenvalue: Any) -> 
 
 
 def _tilted(chain: Chain, names: Sequence[str], eigenvalue: Any) -> _Tilted:
-    matrix = tilted_matrix(chain, *names)
+    matrix = tilted_colour_matrix(chain, *names) if numbers_of_colours(chain) else tilted_matrix(chain, *names)
     ring = matrix.alphabet.ring
     writer = Writer(matrix.alphabet)
     factor, jets, others = _leading(matrix, writer, _lumped(matrix, keep_sources=len(names) > 1))
@@ -136,6 +138,8 @@ def _lumped(matrix: SymbolicMatrix, keep_sources: bool) -> np.ndarray:
     the sources too.
     """
     entries = matrix.entries
+    if isinstance(matrix, ColourMatrix):
+        return entries
     table = numbered(entries) if keep_sources else numbered(_each_value(entries))
     left = matrix.window.left
     permutations = verified(table, left, [matrix.window.sizes[site] for site in left])

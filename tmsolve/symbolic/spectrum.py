@@ -14,11 +14,13 @@ import numpy as np
 
 from ..errors import NotApplicable
 from .blocks import Block, merged, split
+from .colour_matrix import ColourMatrix
 from .deadline import Clock, TimeUp, limited
 from .matrix import SymbolicMatrix
+from .multiplicity import both
 from .polynomials import Coefficients, characteristic, factors
 from .readable import Writer
-from .roots import all_real, radicals
+from .roots import is_reversible, radicals
 from .verify import generic_points, number_value, symbol_values
 
 __all__ = ["Factor", "Spectrum", "leading_factor", "solve_spectrum"]
@@ -119,13 +121,14 @@ def solve_spectrum(matrix: SymbolicMatrix, clock: Clock) -> Spectrum:
 
 def _with_blocks(spectrum: Spectrum) -> Spectrum:
     matrix = spectrum.matrix
-    return replace(spectrum, blocks=tuple(split(matrix.entries, matrix.permutations)))
+    blocks = matrix.sectors() if isinstance(matrix, ColourMatrix) else split(matrix.entries, matrix.permutations)
+    return replace(spectrum, blocks=tuple(blocks))
 
 
 def _with_polynomials(spectrum: Spectrum) -> Spectrum:
     ring = spectrum.matrix.alphabet.ring
     found = merged([(block, characteristic(block.matrix, ring)) for block in spectrum.blocks])
-    whole = [Factor(p, b, b.multiplicity, b.multiplicity * b.positive, irreducible=False) for b, p in found]
+    whole = [Factor(p, b, b.multiplicity, b.multiplicity if b.positive else 0, irreducible=False) for b, p in found]
     return replace(spectrum, blocks=tuple(block for block, _ in found), factors=tuple(whole))
 
 
@@ -137,7 +140,7 @@ def _with_factors(spectrum: Spectrum) -> Spectrum:
             first = found.get(polynomial, Factor(polynomial, whole.block, 0, 0, irreducible))
             found[polynomial] = replace(
                 first,
-                multiplicity=first.multiplicity + power * whole.multiplicity,
+                multiplicity=both(first.multiplicity, power * whole.multiplicity),
                 leading=first.leading + power * whole.leading,
             )
     return replace(spectrum, factors=tuple(found.values()))
@@ -145,7 +148,7 @@ def _with_factors(spectrum: Spectrum) -> Spectrum:
 
 def _with_roots(spectrum: Spectrum) -> Spectrum:
     matrix = spectrum.matrix
-    real = max(f.degree for f in spectrum.factors) > 2 and all_real(matrix.entries)
+    real = max(f.degree for f in spectrum.factors) > 2 and is_reversible(matrix)
     solved = []
     for factor in spectrum.factors:
         block = factor.block.matrix if factor.degree == factor.block.size == 2 else None

@@ -14,6 +14,8 @@ from .matrix import SymbolicMatrix
 __all__ = ["evaluate", "generic_points", "mismatch", "number_value", "numeric_matrix", "symbol_values"]
 
 _DIGITS = 50
+#: Numbers of colours at generic points.
+_COUNTS = 20, 60
 #: Agreement asked for, relative to the sum of moduli; what a formula may lose to cancellation is below it.
 _TOLERANCE = 1e-25
 
@@ -21,7 +23,8 @@ _TOLERANCE = 1e-25
 def generic_points(alphabet: Alphabet, count: int, seed: int = 7) -> Iterator[dict[Any, Any]]:
     """Yield rational values for the parameters and β of an alphabet, with every ln w defined.
 
-    Parameters that occur as weights come out positive, the others with either sign.
+    Parameters that occur as weights come out positive, the others with either sign; numbers of
+    colours come out whole and larger than any number of sites in a cut.
     """
     import sympy as sp
 
@@ -33,6 +36,7 @@ def generic_points(alphabet: Alphabet, count: int, seed: int = 7) -> Iterator[di
         for _ in range(200):
             signs = {s: 1 if s in positive else draw.choice((1, -1)) for s in symbols}
             point = {s: sp.Rational(signs[s] * draw.randint(2, 17), 11) for s in symbols}
+            point |= {s: sp.Integer(draw.randint(*_COUNTS)) for s in alphabet.counts}
             if all(w.subs(point).is_positive for w in weights):
                 yield point
                 break

@@ -12,7 +12,7 @@ from typing import TYPE_CHECKING, Any
 
 from ..declare.states import StateSet
 from ..declare.tokens import Colour
-from ..errors import DeclarationError
+from ..errors import DeclarationError, NotApplicable, listing
 from .symbolic import symbolic_table
 
 if TYPE_CHECKING:
@@ -21,12 +21,31 @@ if TYPE_CHECKING:
     from ..declare.chain import Chain
     from ..declare.terms import Term
 
-__all__ = ["colour_table", "numbers_of_colours", "plain_chain", "token_chain"]
+__all__ = ["colour_symbol", "colour_table", "numbers_of_colours", "plain_chain", "token_chain"]
 
 
 def numbers_of_colours(chain: Chain) -> tuple[str, ...]:
     """Return the names of the numbers of colours of a chain that are symbols."""
     return tuple(dict.fromkeys(states.number for states in chain.cell.values() if states.number is not None))
+
+
+def colour_symbol(chain: Chain) -> Any:
+    """Return the number of colours of a chain as a positive symbol.
+
+    Raises
+    ------
+    NotApplicable
+        Kinds of site have different symbols for their number of colours.
+    """
+    import sympy as sp
+
+    names = numbers_of_colours(chain)
+    if len(names) != 1:
+        raise NotApplicable(
+            f"this chain has {len(names)} symbols for numbers of colours ({listing(names)}); closed forms are written "
+            f"for one of them: give the others a number, as in colours(3)"
+        )
+    return sp.Symbol(names[0], positive=True)
 
 
 def token_chain(chain: Chain, tokens: int) -> Chain:
