@@ -9,11 +9,7 @@ from __future__ import annotations
 
 import numpy as np
 
-__all__ = ["class_members", "equitable", "interned", "is_equitable", "ranked"]
-
-#: Counting tables of at most so many entries per row are made; beyond that rows are sorted.
-_COUNTED = 8
-
+__all__ = ["checked", "class_members", "equitable", "hashed", "interned", "is_equitable", "mixed", "ranked", "refined"]
 
 def equitable(table: np.ndarray, colours: np.ndarray | None = None) -> np.ndarray:
     """Return the coarsest equitable partition of the states of a table of labels.
@@ -58,7 +54,7 @@ def equitable(table: np.ndarray, colours: np.ndarray | None = None) -> np.ndarra
     >>> equitable(ring, np.array([1, 0, 0, 0])).tolist()
     [0, 1, 2, 1]
     """
-    labels = _checked(table)
+    labels = checked(table)
     n = len(labels)
     if colours is None:
         classes = np.zeros(n, dtype=np.intp)
@@ -133,33 +129,27 @@ def is_equitable(table: np.ndarray, classes: np.ndarray) -> bool:
     >>> is_equitable(np.array([[0, 1], [2, 0]]), np.array([0, 0]))
     False
     """
-    labels = _checked(table)
+    labels = checked(table)
     classes = ranked(np.asarray(classes))
     _, first = np.unique(classes, return_index=True)
     representative = first[classes]
     if not np.array_equal(labels.diagonal(), labels.diagonal()[representative]):
         return False
-    codes = labels * len(first) + classes
-    if not _same_counts(codes, representative):
-        return False
-    return _same_counts(labels.T * len(first) + classes, representative)
+    narrow: type[np.signedinteger] = np.int32 if (labels.max(initial=0) + 1) * len(first) < 2**31 else np.int64
+    codes = labels.astype(narrow) * narrow(len(first))
+    return all(_same_counts(way + classes.astype(narrow), representative) for way in (codes, codes.T))
 
 
 def _same_counts(codes: np.ndarray, representative: np.ndarray) -> bool:
     """Whether each row holds the same codes, equally often, as the row that represents it."""
-    n = len(codes)
-    span = int(codes.max(initial=0)) + 1
-    if span <= _COUNTED * n:
-        flat = (codes + np.arange(n)[:, None] * span).ravel()
-        counts = np.bincount(flat, minlength=n * span).reshape(n, span)
-    else:
-        counts = np.sort(codes, axis=1)
-    return bool(np.array_equal(counts, counts[representative]))
+    ordered = np.ascontiguousarray(codes)
+    ordered.sort(axis=1)
+    return bool(np.array_equal(ordered, ordered[representative]))
 
 
 def hashed(labels: np.ndarray, seed: int = 0) -> np.ndarray:
     """Replace labels by pseudo-random 64-bit numbers, the same for the same label."""
-    return _mixed(np.arange(int(labels.max(initial=0)) + 1), 3 * seed)[labels]
+    return mixed(np.arange(int(labels.max(initial=0)) + 1), 3 * seed)[labels]
 
 
 def refined(numbers: np.ndarray, classes: np.ndarray, seed: int = 0) -> np.ndarray:
@@ -175,7 +165,7 @@ def refined(numbers: np.ndarray, classes: np.ndarray, seed: int = 0) -> np.ndarr
         Chooses the numbers that stand for the classes.
     """
     n = len(numbers)
-    row, column = _mixed(np.arange(n), 3 * seed + 1), _mixed(np.arange(n), 3 * seed + 2)
+    row, column = mixed(np.arange(n), 3 * seed + 1), mixed(np.arange(n), 3 * seed + 2)
     count = int(classes.max(initial=-1)) + 1
     while count < n:
         # Σ_k R(label) C(class): two rows with different counts agree with probability about 2⁻⁵⁴.
@@ -197,7 +187,7 @@ def _common(classes: np.ndarray, values: np.ndarray) -> np.ndarray:
     return ranked(joint)
 
 
-def _mixed(numbers: np.ndarray, seed: int) -> np.ndarray:
+def mixed(numbers: np.ndarray, seed: int) -> np.ndarray:
     """Return well scattered 64-bit numbers (the finaliser of splitmix64).
 
     G. L. Steele, D. Lea and C. H. Flood, OOPSLA 2014, 453; constants from memory.
@@ -209,7 +199,7 @@ def _mixed(numbers: np.ndarray, seed: int) -> np.ndarray:
     return x ^ (x >> np.uint64(31))
 
 
-def _checked(table: np.ndarray) -> np.ndarray:
+def checked(table: np.ndarray) -> np.ndarray:
     """Return a square table with labels that are small and not negative."""
     labels = np.asarray(table)
     if labels.ndim != 2 or labels.shape[0] != labels.shape[1] or labels.dtype.kind not in "iu":
