@@ -3,15 +3,16 @@
 E = sum_i [ -J delta(s_i, s_{i+1}) - h delta(s_i, 0) ],  s = 0 ... q-1
 
 Cooperative order among q equivalent states, one of which a field can favour; J < 0 gives colouring problems.
+With a name instead of a number for q, closed forms hold for every number of colours.
 """
 
 from tmsolve import Chain, bond, colours, delta, site
 
 
-def chain(q: int = 3) -> Chain:
+def chain(q: int | str = 3) -> Chain:
     """Declare the chain of q colours."""
     return Chain(
-        colours(q),
+        colours(q, special=(0,)),
         [
             bond(lambda s, t, J: -J*delta(s, t)),
             site(lambda s, h: -h*delta(s, 0)),

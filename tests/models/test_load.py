@@ -6,7 +6,7 @@ from fractions import Fraction
 
 import pytest
 
-from tmsolve import DeclarationError, models
+from tmsolve import DeclarationError, colours, models
 
 GOOD = """
 from tmsolve import Chain, bond, site, spins
@@ -221,14 +221,27 @@ def test_an_unknown_option():
     assert "Did you mean 'q'?" in message
 
 
-@pytest.mark.parametrize(
-    "value", ["3.5", "three", "", True, None, 2.5, [3], "1/0", float("inf"), float("nan")]
-)
+NO_WHOLE_NUMBERS = ["3.5", "", True, None, 2.5, [3], "1/0", float("inf"), float("nan")]
+
+
+@pytest.mark.parametrize("value", [*NO_WHOLE_NUMBERS, "three"])
 def test_a_value_of_the_wrong_type_for_a_whole_number(value):
+    assert failure("clock", q=value) == f"option 'q' of model clock takes a whole number such as 6, got {value!r}"
+
+
+@pytest.mark.parametrize("value", NO_WHOLE_NUMBERS)
+def test_a_value_that_is_neither_a_whole_number_nor_a_name(value):
     assert (
         failure("potts", q=value)
-        == f"option 'q' of model potts takes a whole number such as 3, got {value!r}"
+        == f"option 'q' of model potts takes a whole number such as 3, or a name for it such as 'q', got {value!r}"
     )
+
+
+@pytest.mark.parametrize("name", ["q", " q ", "colours"])
+def test_a_name_for_a_whole_number(name):
+    loaded = models.load("potts", q=name)
+    assert loaded.options == {"q": name.strip()}
+    assert loaded.chain.cell["s"] == colours(name.strip(), special=(0,))
 
 
 @pytest.mark.parametrize("value", [5, "5", " 5 ", 5.0, Fraction(10, 2)])

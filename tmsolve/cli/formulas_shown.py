@@ -43,9 +43,11 @@ def as_data(formula: Formula, value: Any, form: ClosedForm) -> Any:
     if formula.symbol == "Z_N":
         return ring_text(form)
     if formula.kind == "eigenvalues":
-        return [{"value": plain_text(item), "multiplicity": times} for item, times in value]
+        return [{"value": plain_text(item), "multiplicity": _count(times)} for item, times in value]
     if formula.kind == "blocks":
-        return [{"size": block.size, "multiplicity": block.multiplicity, "label": block.label} for block in value]
+        return [
+            {"size": block.size, "multiplicity": _count(block.multiplicity), "label": block.label} for block in value
+        ]
     if formula.kind == "recurrence":
         return [plain_text(item) for item in value]
     if formula.kind == "matrix":
@@ -59,19 +61,39 @@ def as_latex(formula: Formula, value: Any, form: ClosedForm) -> str:
 
     if formula.symbol == "Z_N":
         powers = (
-            ("" if times == 1 else f"{times} ") + rf"\left({latex_text(item)}\right)^{{N}}"
+            ("" if times == 1 else f"{_latex_count(times)} ") + rf"\left({latex_text(item)}\right)^{{N}}"
             for item, times in form.eigenvalues
             if item != 0
         )
         return f"{formula.latex} = {' + '.join(powers)}"
     if formula.kind == "eigenvalues":
         return "\n".join(
-            rf"\lambda_{{{k}}} = {latex_text(item)}" + (rf" \quad \text{{({times} times)}}" if times > 1 else "")
+            rf"\lambda_{{{k}}} = {latex_text(item)}" + _latex_times(times)
             for k, (item, times) in enumerate(value, start=1)
         )
     if formula.kind == "recurrence":
         return "\n".join(f"c_{{{k}}} = {latex_text(item)}" for k, item in enumerate(value, start=1))
     if formula.kind == "blocks":
-        sizes = (rf"{block.multiplicity} \times [{block.size} \times {block.size}]" for block in value)
+        sizes = (rf"{_latex_count(block.multiplicity)} \times [{block.size} \times {block.size}]" for block in value)
         return r"M \simeq " + r" \oplus ".join(sizes)
     return f"{formula.latex} = {latex_text(value)}"
+
+
+def _count(multiplicity: Any) -> int | str:
+    """Return a multiplicity as a number, or as text where it is a polynomial in a number of colours."""
+    from ..symbolic.plain import plain_text
+
+    return multiplicity if isinstance(multiplicity, int) else plain_text(multiplicity)
+
+
+def _latex_times(multiplicity: Any) -> str:
+    if isinstance(multiplicity, int):
+        return rf" \quad \text{{({multiplicity} times)}}" if multiplicity > 1 else ""
+    return rf" \quad ({_latex_count(multiplicity).strip('()')} \text{{ times}})"
+
+
+def _latex_count(multiplicity: Any) -> str:
+    from ..symbolic.multiplicity import factor_text
+    from ..symbolic.plain import latex_text
+
+    return str(multiplicity) if isinstance(multiplicity, int) else factor_text(multiplicity, latex_text(multiplicity))

@@ -55,10 +55,11 @@ class StateSet:
     4
     """
 
-    values: tuple[State, ...]
-    weights: tuple[Fraction | float, ...]
-    labels: tuple[str, ...]
+    # Compared in this order: colours without a number refuse to be compared with other values.
     number: str | None
+    labels: tuple[str, ...]
+    weights: tuple[Fraction | float, ...]
+    values: tuple[State, ...]
 
     def __init__(
         self,

@@ -5,6 +5,7 @@ from __future__ import annotations
 import inspect
 from collections.abc import Callable, Mapping
 from fractions import Fraction
+from types import UnionType
 from typing import Any
 
 from ..errors import DeclarationError, did_you_mean, listing
@@ -37,11 +38,21 @@ def bind_options(function: Callable[..., Any], given: Mapping[str, Any], model: 
     if missing:
         raise DeclarationError(f"model {model} needs a value for its option {missing[0]!r}")
     for name, value in given.items():
-        values[name] = _converted(value, values[name], name, model) if name in values else value
+        if name in values:
+            or_name = _takes_name(known[name])
+            named = or_name and isinstance(value, str) and value.strip().isidentifier()
+            value = value.strip() if named else _converted(value, values[name], name, model, or_name)
+        values[name] = value
     return values
 
 
-def _converted(value: Any, default: Any, name: str, model: str) -> Any:
+def _takes_name(parameter: inspect.Parameter) -> bool:
+    """Whether a number may be a symbol: its annotation says ``int | str``."""
+    kinds = str(parameter.annotation) if isinstance(parameter.annotation, (str, UnionType)) else ""
+    return type(parameter.default) is int and {"int", "str"} == {kind.strip() for kind in kinds.split("|")}
+
+
+def _converted(value: Any, default: Any, name: str, model: str, or_name: bool = False) -> Any:
     kind = type(default)
     try:
         if kind is bool:
@@ -55,6 +66,7 @@ def _converted(value: Any, default: Any, name: str, model: str) -> Any:
     except (KeyError, ValueError, TypeError, OverflowError, ZeroDivisionError):
         pass
     expected = f"{_WORDS.get(kind, kind.__name__)} such as {default!r}"
+    expected += ", or a name for it such as 'q'" if or_name else ""
     raise DeclarationError(f"option {name!r} of model {model} takes {expected}, got {value!r}")
 
 

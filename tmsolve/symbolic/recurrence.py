@@ -4,7 +4,11 @@ from __future__ import annotations
 
 from typing import Any
 
+import numpy as np
+
 from .alphabet import Laurent
+from .blocks import Block
+from .colour_matrix import ColourMatrix
 from .polynomials import Coefficients, power_sums
 from .spectrum import Factor, Spectrum
 
@@ -49,13 +53,21 @@ def _power_sum(factor: Factor, cells: int, ring: Any) -> Any:
 
 def trace_of_power(spectrum: Spectrum, cells: int) -> Laurent:
     """Return the trace of the N-th power by multiplying matrices, where no polynomial is known."""
+    matrix = spectrum.matrix
+    whole = Block(matrix.entries, "the whole matrix")
+    blocks = spectrum.blocks or (matrix.sectors() if isinstance(matrix, ColourMatrix) else (whole,))
+    total = matrix.alphabet.ring.zero
+    for block in blocks:
+        total = total + _trace(block.matrix, cells, matrix.alphabet.ring) * matrix.alphabet.multiple(block.multiplicity)
+    return matrix.laurent(total, cells)
+
+
+def _trace(entries: np.ndarray, cells: int, ring: Any) -> Any:
     from sympy.polys.matrices import DomainMatrix
 
-    matrix = spectrum.matrix
-    ring = matrix.alphabet.ring
-    rows = [[ring(entry) for entry in row] for row in matrix.entries]
-    power = DomainMatrix(rows, (matrix.size, matrix.size), ring.to_domain()) ** cells
+    rows = [[ring(entry) for entry in row] for row in entries]
+    power = DomainMatrix(rows, entries.shape, ring.to_domain()) ** cells
     total = ring.zero
-    for i in range(matrix.size):
+    for i in range(len(entries)):
         total = total + power[i, i].element
-    return matrix.laurent(total, cells)
+    return total
