@@ -2,11 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+import itertools
+from collections.abc import Callable, Mapping
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from functools import partial
 from typing import Any
+
+import numpy as np
 
 from ..declare.chain import Chain
 from ..tabulate.colours import colour_symbol
@@ -17,10 +20,10 @@ from .colour_patterns import Pattern, PatternAlgebra, PatternTable
 from .colour_sectors import Overlay, lumped, overlays, reversible, sector
 from .colour_tables import ColourTables, colour_tables
 from .jet import Jet
-from .matrix import SymbolicMatrix
+from .matrix import Insertions, SymbolicMatrix
 from .young import dimension_in, shapes
 
-__all__ = ["ColourMatrix", "colour_matrix", "tilted_colour_matrix"]
+__all__ = ["ColourMatrix", "colour_matrix", "inserted_colour_matrices", "tilted_colour_matrix"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -33,6 +36,8 @@ class ColourMatrix(SymbolicMatrix):
         The number of colours q.
     special : int
         How many colours something singles out.
+    boxes : int
+        Largest number of boxes below the first row in the representations that are asked for.
     patterns : mapping of Pattern to int
         Rows of ``entries``, and how many colours that are not special each has.
     overlays : tuple of Overlay
@@ -41,6 +46,7 @@ class ColourMatrix(SymbolicMatrix):
 
     number: Any
     special: int
+    boxes: int
     patterns: Mapping[Pattern, int]
     overlays: tuple[Overlay, ...]
 
@@ -54,21 +60,16 @@ class ColourMatrix(SymbolicMatrix):
         return sp.factor(sp.expand(sp.expand_func(total)))
 
     @property
-    def largest(self) -> int:
-        """Largest number of colours that a pattern has, special ones not counted."""
-        return max(self.patterns.values(), default=0)
-
-    @property
     def least(self) -> int:
         """Least q for which every representation that occurs is one."""
-        return self.special + 2 * self.largest
+        return self.special + 2 * self.boxes
 
     def sectors(self) -> list[Block]:
         """Return the blocks of all representations that occur, with polynomials in q as multiplicities."""
         falling = partial(_falling, self.alphabet, self.number - self.special)
         blocks = components(Block(self.entries, "symmetric: equal for all permutations of the colours", positive=True))
         zero = self.alphabet.ring.zero
-        for k in range(1, self.largest + 1):
+        for k in range(1, self.boxes + 1):
             for shape in shapes(k):
                 matrix = sector(self.overlays, self.patterns, shape, zero, falling)
                 label = f"representation ({self.number} - {self.special + k}, {', '.join(map(str, shape))}) of "
@@ -87,18 +88,46 @@ class ColourMatrix(SymbolicMatrix):
 
 def colour_matrix(chain: Chain) -> ColourMatrix:
     """Assemble the transfer matrix of a chain with a symbolic number of colours."""
-    return _assembled(chain, [], lambda element: element)
+    return _assembled(chain, colour_tables(chain, []), lambda element: element)
 
 
 def tilted_colour_matrix(chain: Chain, first: str, second: str | None = None) -> ColourMatrix:
     """Assemble the matrix with sources of one or two observables, see `tilted_matrix`; entries are `Jet` objects."""
-    return _assembled(chain, [first] if second is None else [first, second], Jet)
+    return _assembled(chain, colour_tables(chain, [first] if second is None else [first, second]), Jet)
 
 
-def _assembled(chain: Chain, names: Sequence[str], wrap: Callable[[Any], Any]) -> ColourMatrix:
+def inserted_colour_matrices(chain: Chain, first: str, second: str) -> Insertions:
+    """Put two observables into the block of symmetric functions, see `inserted_matrices`.
+
+    Observables that only compare colours take symmetric functions to symmetric ones, so that no
+    other block has a part in their correlations.
+    """
+    tables = colour_tables(chain, [first, second])
+    anchors = [sorted({local.cell for local in tables.sources if local.order == which}) for which in (0, 1)]
+    found: dict[tuple[int, int], ColourMatrix] = {}
+    for pair in itertools.product(anchors[0], anchors[1]):
+        sources = (s if s.cell == pair[s.order] else replace(s, order=2) for s in tables.sources)
+        found[pair] = _assembled(chain, replace(tables, sources=tuple(sources)), Jet)
+    some = next(iter(found.values()))
+    return Insertions(
+        replace(some, entries=_part(some.entries, 0), boxes=0),
+        {pair[0]: _part(jets.entries, 1) for pair, jets in found.items()},
+        {pair[1]: _part(jets.entries, 2) for pair, jets in found.items()},
+        {pair: _part(jets.entries, 3) for pair, jets in found.items()},
+    )
+
+
+def _part(jets: np.ndarray, i: int) -> np.ndarray:
+    parts = np.empty(jets.shape, dtype=object)
+    for index in np.ndindex(jets.shape):
+        jet: Any = jets[index]
+        parts[index] = jet.parts()[i] or jet.x * 0
+    return parts
+
+
+def _assembled(chain: Chain, tables: ColourTables, wrap: Callable[[Any], Any]) -> ColourMatrix:
     """Turn tables into ring elements, sum out the interior, and sort the result by patterns."""
     number = colour_symbol(chain)
-    tables = colour_tables(chain, names)
     window, palette = tables.window, tables.palette
     local = (*tables.factors, *tables.sources)
     terms = (entry for table in local for entry in table.terms.ravel())
@@ -113,7 +142,8 @@ def _assembled(chain: Chain, names: Sequence[str], wrap: Callable[[Any], Any]) -
     entries = overlays(palette, reduced, window.left, window.right)
     zero = wrap(alphabet.ring.zero)
     whole = lumped(entries, list(patterns), zero, lambda a, m: wrap(_falling(alphabet, number - palette.special, a, m)))
-    return ColourMatrix(window, alphabet, whole, scale, number, palette.special, patterns, tuple(entries))
+    boxes = max(patterns.values(), default=0)
+    return ColourMatrix(window, alphabet, whole, scale, number, palette.special, boxes, patterns, tuple(entries))
 
 
 def _in_ring(

@@ -31,12 +31,15 @@ class Local:
     terms : ndarray of Terms
         Values at all combinations of states.
     order : int
-        0 or 1 for values of the first or second observable, −1 for a weight.
+        0 or 1 for values of the first or second observable, 2 for one that is left out, −1 for a weight.
+    cell : int
+        Anchor cell of a term of an observable.
     """
 
     sites: tuple[Any, ...]
     terms: np.ndarray
     order: int = -1
+    cell: int = 0
 
 
 @dataclass(frozen=True, eq=False)
@@ -123,7 +126,8 @@ def _observed(tokens: Chain, window: ChainWindow, name: str, order: int) -> list
     for term in tokens.observable(name):
         place = place_in(window, term)
         assert place is not None, "the window is built wide enough for its observables"
-        found.append(Local(place[0], _each(colour_table(tokens, term, symbols), polynomial_terms), order))
+        table = _each(colour_table(tokens, term, symbols), polynomial_terms)
+        found.append(Local(place[0], table, order, place[1]))
     return found
 
 

@@ -12,6 +12,8 @@ from typing import Any
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable, SolveError
+from ..tabulate.colours import numbers_of_colours
+from .colour_matrix import inserted_colour_matrices
 from .correlation_modes import Modes
 from .correlation_values import PerronTrace
 from .deadline import Clock, limited
@@ -77,8 +79,9 @@ def correlation(chain: Chain, spectrum: Spectrum, first: str, second: str, clock
     NotApplicable
         Eigenvalues without a form by radicals, several Perron roots, or Jordan blocks.
     """
-    put = limited(clock.left, inserted_matrices, chain, first, second)
-    if not _same_symbols(put.matrix, spectrum.matrix):
+    coloured = bool(numbers_of_colours(chain))
+    put = limited(clock.left, inserted_colour_matrices if coloured else inserted_matrices, chain, first, second)
+    if coloured or not _same_symbols(put.matrix, spectrum.matrix):
         # Observables that are wide, or hold parameters of their own, change the matrix or its symbols.
         spectrum = solve_spectrum(put.matrix, clock)
     if not spectrum.is_solved:
