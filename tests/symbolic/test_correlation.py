@@ -34,7 +34,7 @@ def number(expr, values):
 
 def draws(chain, seed, count=3):
     source = random.Random(seed)
-    for _ in range(count):
+    for _ in range(count if chain.free else 1):
         values = {name: round(source.uniform(-0.9, 0.9), 3) for name in chain.free}
         yield {**values, "T": 0.8}
 
@@ -141,7 +141,7 @@ def test_observables_with_parameters_of_their_own():
 
 def test_a_cubic_root_gives_long_but_right_correlations():
     chain = models.load("blume_capel").chain.fix(J=1, D="1/2", h="1/3")
-    against_solver(chain, "m", "m", distances=(0, 1, 4))
+    against_solver(chain, "m", "m", distances=(0, 3))
 
 
 def test_correlation_sums_to_the_susceptibility():

@@ -29,13 +29,15 @@ def whole_distance(r: Any) -> Any:
     return distance
 
 
-def whole_cells(N: Any, chain: Chain) -> int:
-    """Return the number of cells of a ring, which is longer than every bond."""
-    reach = max(term.reach for term in chain.terms) if chain.terms else 0
+def whole_cells(N: Any, chain: Chain, ring: bool = True) -> int:
+    """Return a number of cells: of a ring longer than every bond, or of an open chain."""
+    reach = max((term.reach for term in chain.terms), default=0) if ring else 0
     try:
         cells = operator.index(N)
     except TypeError:
         raise NotApplicable(f"the number of cells must be a whole number, got {N!r}") from None
+    if not ring and (isinstance(N, bool) or cells < 1):
+        raise NotApplicable(f"the number of cells must be 1 or more, got {N!r}")
     if cells < reach + 1 or isinstance(N, bool):
         raise NotApplicable(
             f"a ring of {N!r} cells is shorter than the longest bond, which spans {reach} cells; "

@@ -8,7 +8,7 @@ from functools import cached_property
 from typing import Any, TypeVar
 
 from ..declare.chain import Chain
-from ..errors import NotApplicable, ParameterError, SolveError, TooLargeError, did_you_mean, listing
+from ..errors import NotApplicable, ParameterError, TooLargeError, did_you_mean, listing
 from ..tabulate.symbolic import beta
 from . import report
 from .arguments import whole_cells, whole_distance
@@ -16,7 +16,9 @@ from .blocks import Block
 from .correlations import Correlation, correlation
 from .deadline import Clock, TimeUp, limited
 from .lengths import correlation_length
+from .open_formula import long_open_sum, open_formula
 from .perron import Perron, ordered_eigenvalues, perron_of
+from .promises import finished, not_finished
 from .recurrence import minimal_polynomial, ring_sum, trace_of_power
 from .spectrum import Spectrum
 
@@ -115,7 +117,7 @@ class ClosedForm:
                 f"no closed form of Z_N for symbolic N: {self.why}. Use partition_function(12) for a given number of "
                 "cells, .recurrence, or .characteristic_polynomial"
             )
-        cells = sp.Symbol("N", integer=True, positive=True)
+        cells = report.cells_symbol()
         return sp.Add(*(m * value**cells for value, m in self.eigenvalues if value != 0))
 
     def _ring(self, cells: int) -> Any:
@@ -127,6 +129,30 @@ class ClosedForm:
                 f"Z_{cells} of this chain was not expanded within {self.time_limit:g} s; ask for fewer cells, fix "
                 "parameters with chain.fix(…), or give a longer time_limit"
             ) from None
+
+    def open_partition_function(self, N: int | None = None) -> Any:
+        """Partition function of an open chain of N cells; terms that reach beyond an end are left out.
+
+        Parameters
+        ----------
+        N : int, optional
+            Number of cells; then the exact sum of exponentials is returned, with or without a
+            closed form. A symbol when left out.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, closed_form, ising
+        >>> form = closed_form(Chain(ising(), [bond(lambda s, t, J: -J*s*t)]))
+        >>> form.open_partition_function()
+        2*(2*cosh(J*beta))**(N - 1)
+        """
+        if N is not None:
+            cells = whole_cells(N, self.chain, ring=False)
+            return self._within(f"Z_{cells} of an open chain", lambda: long_open_sum(self.chain, self.spectrum, cells))
+        if not self.is_closed:
+            raise NotApplicable(f"no closed form of Z_N for symbolic N: {self.why}. Give a number of cells")
+        formula = self._within("Z_N of an open chain", lambda: open_formula(self.chain, self.spectrum))
+        return formula.at(report.cells_symbol())
 
     # --- thermodynamics
 
@@ -240,21 +266,12 @@ class ClosedForm:
         try:
             return correlation(self.chain, self.spectrum, first, second, Clock(self.time_limit))
         except TimeUp:
-            raise self._late(f"the correlation of {first!r} and {second!r}") from None
+            raise not_finished(f"the correlation of {first!r} and {second!r}", self.time_limit) from None
 
     # --- what keeps the promises
 
     def _within(self, what: str, compute: Callable[[], Result]) -> Result:
-        try:
-            return limited(self.time_limit, compute)
-        except TimeUp:
-            raise self._late(what) from None
-
-    def _late(self, what: str) -> SolveError:
-        return SolveError(
-            f"{what} was not finished within {self.time_limit:g} s; fix parameters with chain.fix(…), "
-            "give a longer time_limit, or use solve(chain.at(…)) for numbers"
-        )
+        return finished(what, self.time_limit, compute)
 
     def _thermal(self, what: str, compute: Callable[[], Result]) -> Result:
         if "T" in self.chain.fixed:

@@ -16,10 +16,10 @@ from collections.abc import Sequence
 from typing import Any
 
 from .correlation_values import PerronTrace
-from .field import Element, Poly
+from .field import Poly
 from .field_text import FieldWriter, write_quotient
 from .perron import Perron
-from .polynomials import Coefficients
+from .polynomials import Coefficients, derivative_of, product_of
 from .roots import quadratic
 from .spectrum import Factor
 
@@ -114,7 +114,7 @@ class Modes:
                 keys.append(field.denominator(self._at([field.embed((c,)) for c in reversed(at)], root), len(at) - 1))
         below = field.over(field.embed((field.ring.one,)), *keys)
         element = field.product(self.trace.over(up, self.trace.top + 1), below)
-        return [(self.writer.write(self._signed(element)), self._ratio(factor))]
+        return [(self.writer.write(self.field.signed(element)), self._ratio(factor))]
 
     def _at(self, poly: Sequence[Poly], root: Poly) -> Poly:
         total = self.field.embed(())
@@ -129,24 +129,6 @@ class Modes:
             return write_quotient(writer, up, down).build()
         value = factor.roots[0] if factor.degree == 1 else factor.roots[1]
         return value / self.perron.value
-
-    def _signed(self, element: Element) -> Element:
-        """Write −2 s among the denominators as 2 s, and turn those that have more minus than plus signs."""
-        field = self.field
-        up, down = element.up, dict(element.down)
-        against = tuple(-c for c in field.slope)
-        if field.degree == 2 and against in down:
-            power = down.pop(against)
-            up = tuple(c * (-1) ** power for c in up)
-            down[field.slope] = down.get(field.slope, 0) + power
-        for key in [key for key in down if not any(key[1:])]:
-            coefficients = [c for _, c in key[0].terms()]
-            if 2 * sum(c < 0 for c in coefficients) > len(coefficients):
-                power = down.pop(key)
-                up = tuple(c * (-1) ** power for c in up)
-                turned = field.denominator(tuple(-c for c in key), field.weights[key])
-                down[turned] = down.get(turned, 0) + power
-        return Element(up, down)
 
     # --- eigenvalues outside of it
 
@@ -170,10 +152,8 @@ class Modes:
         keys = [field.denominator(field.embed((2 * norm,)), weight)]
         keys += [field.denominator(field.embed((factor.polynomial[2],)), 2)] * max(self.late, 0)
         below = field.over(field.embed((ring.one,)), *keys)
-        flat, steep = (
-            self.writer.write(self._signed(field.product(self.trace.over(part, self.trace.top + 1), below)), degree)
-            for part, degree in ((up[1], 0), (up[0], 1))
-        )
+        elements = [field.product(self.trace.over(part, self.trace.top + 1), below) for part in up]
+        steep, flat = (self.writer.write(field.signed(e), degree) for e, degree in zip(elements, (1, 0), strict=True))
         root = self._root(factor)
         return [(flat + sign * steep / root, factor.roots[k] / self.perron.value) for k, sign in ((0, 1), (1, -1))]
 
@@ -209,10 +189,10 @@ class Modes:
         """Return the modes of eigenvalues of higher degree, as P(x)/m'(x) with x = λ_i/λ."""
         import sympy as sp
 
-        minimal = self._seen_polynomial()
+        field = self.field
+        minimal = product_of([factor.polynomial for factor in self.seen], field.ring)
         size = len(minimal) - 1
         most = self.late + self.trace.top + size
-        field = self.field
         p = [self.writer.write(self.trace.over(part, most - j)) for j, part in enumerate(self.numerator)]
         slope = list(reversed(derivative_of(minimal)))
         inverse = [field.over(field.embed((c,)), *[field.mu] * (size - 1 - j)) for j, c in enumerate(slope)]
@@ -225,16 +205,6 @@ class Modes:
                 found.append((up / down * x ** (-self.late), x))
         return found
 
-    def _seen_polynomial(self) -> Coefficients:
-        total: list[Any] = [self.field.ring.one]
-        for factor in self.seen:
-            new = [self.field.ring.zero] * (len(total) + factor.degree)
-            for i, x in enumerate(total):
-                for j, y in enumerate(factor.polynomial):
-                    new[i + j] = new[i + j] + x * y
-            total = new
-        return tuple(total)
-
 
 def _plus(a: Poly, b: Poly) -> Poly:
     return tuple(x + y for x, y in zip(a, b, strict=True))
@@ -245,9 +215,3 @@ def _times(a: tuple[Poly, Poly], b: tuple[Poly, Poly], square: Any, field: Any) 
     both = field.times(a[1], b[1])
     first = _plus(field.times(a[0], b[0]), tuple(square * c for c in both))
     return first, _plus(field.times(a[0], b[1]), field.times(a[1], b[0]))
-
-
-def derivative_of(coefficients: Coefficients) -> Coefficients:
-    """Return the derivative of a polynomial given highest power first."""
-    degree = len(coefficients) - 1
-    return tuple(c * (degree - k) for k, c in enumerate(coefficients[:-1]))

@@ -10,7 +10,7 @@ import numpy as np
 from ..errors import NotApplicable
 from .field import Element, Poly, RootField
 from .matrix import Insertions
-from .polynomials import Coefficients
+from .polynomials import Coefficients, product_of
 from .spectrum import Factor
 
 __all__ = ["PerronTrace"]
@@ -50,7 +50,7 @@ class PerronTrace:
         self.ring = self.matrix.alphabet.ring
         self.leading = leading
         self.factors = [f for f in factors if not f.is_zero]
-        self.minimal = _product([f.polynomial for f in self.factors], self.ring)
+        self.minimal = product_of([f.polynomial for f in self.factors], self.ring)
         self.zeros = self._zeros(sum(f.multiplicity for f in factors if f.is_zero))
         self.field = RootField(leading.polynomial, self.ring)
         self.below = self._below()
@@ -158,17 +158,6 @@ def _identity(size: int, ring: Any) -> np.ndarray:
     for i in range(size):
         result[i, i] = ring.one
     return result
-
-
-def _product(polynomials: Sequence[Coefficients], ring: Any) -> Coefficients:
-    total: list[Any] = [ring.one]
-    for polynomial in polynomials:
-        new = [ring.zero] * (len(total) + len(polynomial) - 1)
-        for i, x in enumerate(total):
-            for j, y in enumerate(polynomial):
-                new[i + j] = new[i + j] + x * y
-        total = new
-    return tuple(total)
 
 
 def _value(polynomial: Coefficients, matrix: np.ndarray, ring: Any) -> np.ndarray:

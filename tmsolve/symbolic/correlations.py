@@ -123,8 +123,9 @@ def _sum(terms: Sequence[tuple[Any, Any]], r: Any) -> Any:
 def _agree(trace: PerronTrace, left: Any, right: Any) -> bool:
     import mpmath as mp
 
-    for point in generic_points(trace.matrix.alphabet, 3, seed=11):
-        a, b = (mp.mpmathify(evaluate(expr, point)) for expr in (left, right))
-        if abs(a - b) > mp.mpf(10) ** -25 * (1 + abs(a)):
-            return False
+    with mp.workdps(50):
+        for point in generic_points(trace.matrix.alphabet, 3, seed=11):
+            a, b = (mp.mpmathify(evaluate(expr, point)) for expr in (left, right))
+            if abs(a - b) > mp.mpf(10) ** -25 * (1 + abs(a)):
+                return False
     return True

@@ -171,6 +171,27 @@ class RootField:
         self.weights[(below,)] = weight
         return Element((up,), {(below,): 1})
 
+    def conjugate(self, a: Element) -> Element:
+        """Return the same expression of the other root of a quadratic."""
+        down: dict[Poly, int] = {}
+        for key, power in a.down.items():
+            turned = self.denominator((key[0], -key[1]), self.weights[key])
+            down = _joined(down, {turned: power})
+        return Element((a.up[0], -a.up[1]), down)
+
+    def signed(self, a: Element) -> Element:
+        """Write −2 s among the denominators as 2 s, and turn those that have more minus than plus signs."""
+        up, down = a.up, dict(a.down)
+        against = tuple(-c for c in self.slope)
+        for key in list(down):
+            coefficients = [] if any(key[1:]) else [c for _, c in key[0].terms()]
+            if (self.degree == 2 and key == against) or 2 * sum(c < 0 for c in coefficients) > len(coefficients):
+                power = down.pop(key)
+                up = tuple(c * (-1) ** power for c in up)
+                turned = self.denominator(tuple(-c for c in key), self.weights[key])
+                down[turned] = down.get(turned, 0) + power
+        return Element(up, down)
+
     # --- derivatives by the symbols of the alphabet
 
     def log_slope(self, k: int, scale: int) -> Element:

@@ -21,7 +21,7 @@ from .boltzmann import Terms, boltzmann_terms, polynomial_terms
 from .jet import Jet
 from .permutations import Permutation, numbered, verified
 
-__all__ = ["Insertions", "SymbolicMatrix", "inserted_matrices", "symbolic_matrix", "tilted_matrix"]
+__all__ = ["Insertions", "SymbolicMatrix", "inserted_matrices", "piece_matrices", "symbolic_matrix", "tilted_matrix"]
 
 #: Which observable, the anchor cell of one of its terms, the sites of that, its values.
 _Source = tuple[int, int, Any, np.ndarray]
@@ -126,7 +126,7 @@ def inserted_matrices(chain: Chain, first: str, second: str) -> Insertions:
     alphabet = _alphabet(factors, sources)
     anchors = [sorted({cell for order, cell, _, _ in sources if order == which}) for which in (0, 1)]
     found: dict[tuple[int, int], SymbolicMatrix] = {}
-    for pair in itertools.product(*anchors):
+    for pair in itertools.product(anchors[0], anchors[1]):
         # A source of order 2 is a unit: it only keeps the scale the same.
         active = [(order if cell == pair[order] else 2, sites, table) for order, cell, sites, table in sources]
         found[pair] = _reduce(window, alphabet, factors, active, Jet)
@@ -162,6 +162,11 @@ def _weighed(chain: Chain, window: ChainWindow, names: Sequence[str]) -> tuple[l
 def _alphabet(factors: Sequence[np.ndarray], sources: Sequence[_Source]) -> Alphabet:
     tables = [*factors, *(table for *_, table in sources)]
     return Alphabet.of(terms for table in tables for terms in table.ravel())
+
+
+def piece_matrices(chain: Chain, pieces: Sequence[ChainWindow], alphabet: Alphabet) -> list[SymbolicMatrix]:
+    """Assemble the matrices of windows at the ends of a chain in the symbols of its transfer matrix."""
+    return [_reduce(p, alphabet, _factor_tables(chain, p), [], lambda element: element) for p in pieces]
 
 
 def _factor_tables(chain: Chain, window: ChainWindow) -> list[np.ndarray]:

@@ -8,7 +8,10 @@ from typing import Any
 
 import numpy as np
 
-__all__ = ["Coefficients", "berkowitz", "characteristic", "factorable", "factors", "power_sums", "quotient"]
+__all__ = [
+    "Coefficients", "berkowitz", "characteristic", "derivative_of", "divided", "factorable", "factors", "power_sums",
+    "product_of", "quotient",
+]
 
 #: Coefficients of a monic polynomial in λ, highest power first: (1, c₁, …, cₙ).
 Coefficients = tuple[Any, ...]
@@ -185,3 +188,44 @@ def power_sums(coefficients: Coefficients, count: int, zero: Any) -> list[Any]:
             total = total - coefficients[j] * sums[k - 1 - j]
         sums.append(total)
     return sums
+
+
+def product_of(polynomials: Sequence[Coefficients], ring: Any) -> Coefficients:
+    """Return the product of polynomials given highest power first."""
+    total: list[Any] = [ring.one]
+    for polynomial in polynomials:
+        new = [ring.zero] * (len(total) + len(polynomial) - 1)
+        for i, x in enumerate(total):
+            for j, y in enumerate(polynomial):
+                new[i + j] = new[i + j] + x * y
+        total = new
+    return tuple(total)
+
+
+def derivative_of(coefficients: Coefficients) -> Coefficients:
+    """Return the derivative of a polynomial given highest power first.
+
+    Examples
+    --------
+    >>> derivative_of((1, -3, 2))
+    (2, -3)
+    """
+    degree = len(coefficients) - 1
+    return tuple(c * (degree - k) for k, c in enumerate(coefficients[:-1]))
+
+
+def divided(numerator: Sequence[Any], by: Coefficients) -> tuple[list[Any], list[Any]]:
+    """Divide a polynomial, lowest power first, by a monic one, highest power first.
+
+    Examples
+    --------
+    >>> divided([2, -3, 1], (1, -2))
+    ([-1, 1], [0])
+    """
+    rest, degree = list(numerator), len(by) - 1
+    quotient = [by[0] * 0] * max(len(rest) - degree, 0)
+    for top in range(len(rest) - 1, degree - 1, -1):
+        quotient[top - degree] = lead = rest[top]
+        for k, c in enumerate(by):
+            rest[top - k] = rest[top - k] - c * lead
+    return quotient, rest[:degree]

@@ -16,7 +16,7 @@ from .spectrum import Spectrum
 if TYPE_CHECKING:
     from .forms import ClosedForm
 
-__all__ = ["latex", "long_sum", "matrix", "polynomial", "reason", "recurrence", "text"]
+__all__ = ["cells_symbol", "latex", "long_sum", "matrix", "polynomial", "reason", "recurrence", "text"]
 
 #: Sums with more terms are written out in exponentials without looking for a shorter form.
 _READABLE_TERMS = 12
@@ -39,6 +39,13 @@ def matrix(spectrum: Spectrum) -> Any:
         if entry not in write:
             write[entry] = long_sum(spectrum, source.laurent(entry))
     return sp.ImmutableMatrix(source.size, source.size, lambda i, j: write[source.entries[i, j]])
+
+
+def cells_symbol() -> Any:
+    """Return the symbol N."""
+    import sympy as sp
+
+    return sp.Symbol("N", integer=True, positive=True)
 
 
 def long_sum(spectrum: Spectrum, laurent: Laurent) -> Any:
@@ -150,6 +157,6 @@ def latex(form: ClosedForm) -> str:
     parts = []
     for value, m in form.eigenvalues:
         if value != 0:
-            times = "" if m == 1 else factor_text(m, m if isinstance(m, int) else latex_text(m)) + " "
+            times = "" if m == 1 else factor_text(m, str(m) if isinstance(m, int) else latex_text(m)) + " "
             parts.append(times + f"\\left({latex_text(value)}\\right)^{{N}}")
     return f"$\\displaystyle Z_{{N}} = {' + '.join(parts)}$"
