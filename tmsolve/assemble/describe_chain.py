@@ -10,9 +10,10 @@ from typing import Any
 from ..declare import Chain, Point, Term
 from ..errors import DeclarationError, listing
 from ..tabulate.affine import affine_table
+from ..tabulate.colours import numbers_of_colours, token_chain
 from .allowed import allowed_entries
 from .trivial_symmetries import trivial_symmetries
-from .window import build_window
+from .window import build_window, token_window
 
 __all__ = ["Description", "describe"]
 
@@ -26,6 +27,7 @@ class Description:
     name : str
         Title of the chain.
     sites : tuple of (kind, number of states, labels)
+        The number is text where it is a symbol.
     terms : tuple of (role, text, places, parameters)
     parameters : tuple of (name, value or None)
         Fixed or default values where there are any.
@@ -33,9 +35,9 @@ class Description:
     cut, interior : tuple of str
         Sites of the left cut, and sites summed out, as ``kind[cell]``.
     matrix : (int, int)
-        Rows and columns of the transfer matrix.
+        Rows and columns of the transfer matrix; text such as ``"q^2"`` where the number of colours is a symbol.
     nonzeros : int
-        Entries that the cut allows.
+        Entries that the cut allows; text likewise.
     range : int
         Cells that the longest term spans.
     symmetries : tuple of str
@@ -43,20 +45,21 @@ class Description:
     """
 
     name: str
-    sites: tuple[tuple[str, int, tuple[str, ...]], ...]
+    sites: tuple[tuple[str, int | str, tuple[str, ...]], ...]
     terms: tuple[tuple[str, str, str, str], ...]
     parameters: tuple[tuple[str, str], ...]
     observables: tuple[tuple[str, str], ...]
     cut: tuple[str, ...]
     interior: tuple[str, ...]
-    matrix: tuple[int, int]
-    nonzeros: int
+    matrix: tuple[int | str, int | str]
+    nonzeros: int | str
     range: int
     symmetries: tuple[str, ...]
 
     def __str__(self) -> str:
         rows, columns = self.matrix
-        density = f"{self.nonzeros} non-zeros" + (" (full)" if self.nonzeros == rows * columns else "")
+        full = isinstance(rows, int) and isinstance(columns, int) and self.nonzeros == rows * columns
+        density = f"{self.nonzeros} non-zeros" + (" (full)" if full else "")
         cell = ", ".join(f"{kind} with {count} states ({_short(labels)})" for kind, count, labels in self.sites)
         lines = [
             f"{self.name}: unit cell of {len(self.sites)} site{'s' * (len(self.sites) > 1)}: {cell}",
@@ -108,20 +111,43 @@ def describe(chain: Chain | Point) -> Description:
         chain = chain.chain
     if not isinstance(chain, Chain):
         raise DeclarationError(f"describe takes a chain, got {chain!r}")
-    window = build_window(chain)
+    symbolic = bool(numbers_of_colours(chain))
+    # Cuts and symmetries are those of a few colours that stand for all of them.
+    window = token_window(token_chain(chain, chain.terms)) if symbolic else build_window(chain)
     return Description(
         name=chain.name,
-        sites=tuple((kind, len(states), states.labels) for kind, states in chain.cell.items()),
+        sites=tuple((kind, states.number or len(states), states.labels) for kind, states in chain.cell.items()),
         terms=tuple(_term_row(term, chain) for term in chain.terms),
         parameters=tuple((name, _value(chain, name)) for name in chain.parameters),
         observables=tuple((name, "; ".join(_places(t) for t in parts)) for name, parts in chain.observables.items()),
         cut=tuple(_site(site) for site in window.left),
         interior=tuple(_site(site) for site in window.interior),
-        matrix=window.shape,
-        nonzeros=allowed_entries(chain),
+        matrix=(_size(chain, window.left), _size(chain, window.right)) if symbolic else window.shape,
+        nonzeros=_size(chain, window.sites) if symbolic else allowed_entries(chain),
         range=max((term.reach for term in chain.terms), default=0),
-        symmetries=tuple(trivial_symmetries(chain)),
+        symmetries=tuple(_exchanges(chain) if symbolic else trivial_symmetries(chain)),
     )
+
+
+def _size(chain: Chain, sites: Sequence[tuple[str, int]]) -> str:
+    """Return the number of joint states of some sites as text, such as ``2·q^2``."""
+    count, powers = 1, dict.fromkeys(numbers_of_colours(chain), 0)
+    for kind, _ in sites:
+        states = chain.cell[kind]
+        if states.number is None:
+            count *= len(states)
+        else:
+            powers[states.number] += 1
+    parts = [f"{name}^{power}" if power > 1 else name for name, power in powers.items() if power]
+    return "·".join(parts if parts and count == 1 else [str(count), *parts])
+
+
+def _exchanges(chain: Chain) -> list[str]:
+    first = {states.number: states.special for states in chain.cell.values() if states.number is not None}
+    return [
+        f"any permutation of the {number} colours" + (f" other than {listing(special)}" if special else "")
+        for number, special in first.items()
+    ]
 
 
 def _site(site: Any) -> str:

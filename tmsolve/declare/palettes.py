@@ -77,8 +77,10 @@ def require_numbers(cell: Mapping[str, StateSet]) -> None:
     """
     for kind, states in cell.items():
         if states.number is not None:
+            name = states.number
             raise NotApplicable(
-                f"sites of kind {kind!r} have {states.number} colours, {states.number} being a symbol, which only "
-                "closed_form works with; give a number: declare the chain with colours(3), or load a model that "
-                f"takes it with models.load(…, {states.number}=3), --option {states.number}=3 on the command line"
+                f"sites of kind {kind!r} have {name} colours, {name} being a symbol; that is for "
+                "closed forms of rings and of the infinite chain, and this needs a number: declare the chain with "
+                f"colours(3), or load a model that takes it with models.load(…, {name}=3), "
+                f"--option {name}=3 on the command line"
             )

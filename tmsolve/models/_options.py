@@ -40,8 +40,8 @@ def bind_options(function: Callable[..., Any], given: Mapping[str, Any], model: 
     for name, value in given.items():
         if name in values:
             or_name = _takes_name(known[name])
-            named = or_name and isinstance(value, str) and value.strip().isidentifier()
-            value = value.strip() if named else _converted(value, values[name], name, model, or_name)
+            is_name = or_name and isinstance(value, str) and value.strip().isidentifier()
+            value = value.strip() if is_name else _converted(value, values[name], name, model, or_name)
         values[name] = value
     return values
 

@@ -92,13 +92,9 @@ def _size(matrix: ColourMatrix, colours: int) -> int:
 
 def _parameters(chain: Chain, point: dict[Any, Any]) -> dict[str, Fraction]:
     """Return exact values for all parameters and T; what does not occur in the matrix is 1."""
-    by_name = {symbol.name: Fraction(int(sp_p), int(sp_q)) for symbol, (sp_p, sp_q) in _ratios(point).items()}
-    values = {name: chain.fixed.get(name, by_name.get(name, Fraction(1))) for name in chain.parameters}
-    values["T"] = chain.fixed.get("T", 1 / by_name.get("beta", Fraction(1)))
-    return {name: Fraction(value) for name, value in values.items()}
-
-
-def _ratios(point: dict[Any, Any]) -> dict[Any, tuple[int, int]]:
-    import sympy as sp
-
-    return {symbol: (sp.Rational(value).p, sp.Rational(value).q) for symbol, value in point.items()}
+    values = dict.fromkeys((*chain.parameters, "T"), Fraction(1))
+    for symbol, value in point.items():
+        number = Fraction(str(value))
+        values["T" if symbol.name == "beta" else symbol.name] = 1 / number if symbol.name == "beta" else number
+    values |= {name: value for name, value in chain.fixed.items() if isinstance(value, Fraction)}
+    return {name: values[name] for name in (*chain.parameters, "T")}

@@ -57,7 +57,7 @@ class Palette:
             new = size is None and value == self.special + named
             yield from self._grown((*start, value), sites, named + new)
 
-    def restrict(self, pattern: Pattern, sites: Sequence[Any], to: Sequence[Any]) -> Pattern:
+    def restrict(self, pattern: Sequence[int], sites: Sequence[Any], to: Sequence[Any]) -> Pattern:
         """Return the pattern on some of its sites."""
         names: dict[int, int] = {}
         values = []
@@ -68,7 +68,7 @@ class Palette:
             values.append(value)
         return tuple(values)
 
-    def colours(self, pattern: Pattern, sites: Sequence[Any]) -> tuple[int, ...]:
+    def colours(self, pattern: Sequence[int], sites: Sequence[Any]) -> tuple[int, ...]:
         """Return the different colours of a pattern that are not special, in order of appearance."""
         shown = (v for v, site in zip(pattern, sites, strict=True) if self.coloured(site) and v >= self.special)
         return tuple(dict.fromkeys(shown))

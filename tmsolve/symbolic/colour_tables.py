@@ -86,16 +86,13 @@ class ColourTables:
 
 def colour_tables(chain: Chain, names: Sequence[str]) -> ColourTables:
     """Tabulate the energies of a chain, and the observables of some names."""
-    everything = [*chain.terms, *(term for name in names for term in chain.observable(name))]
-    coloured = {kind for kind, states in chain.cell.items() if states.number is not None}
-    tokens = token_chain(
-        chain, max((sum(kind in coloured for kind, _ in t.places) for t in everything), default=0) or 1
-    )
+    coloured = [kind for kind, states in chain.cell.items() if states.number is not None]
+    tokens = token_chain(chain, [*chain.terms, *(term for name in names for term in chain.observable(name))])
     window = token_window(tokens, names)
     factors = tuple(_factors(tokens, window))
     sources = tuple(local for order, name in enumerate(names) for local in _observed(tokens, window, name, order))
     sizes = {kind: None if kind in coloured else len(states) for kind, states in tokens.cell.items()}
-    declared = len(chain.cell[next(iter(coloured))].special)
+    declared = len(chain.cell[coloured[0]].special)
     full = Palette(sizes, declared)
     named = tuple(j for j in range(declared) if any(_singles_out(full, j, local) for local in (*factors, *sources)))
     return ColourTables(window, factors, sources, Palette(sizes, len(named)), named, declared)

@@ -7,7 +7,7 @@ them all.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Iterable, Mapping
 from typing import TYPE_CHECKING, Any
 
 from ..declare.states import StateSet
@@ -48,8 +48,13 @@ def colour_symbol(chain: Chain) -> Any:
     return sp.Symbol(names[0], positive=True)
 
 
-def token_chain(chain: Chain, tokens: int) -> Chain:
-    """Return the chain with some tokens, all different, in place of the colours that nothing singles out."""
+def token_chain(chain: Chain, terms: Iterable[Term]) -> Chain:
+    """Return the chain with different tokens in place of the colours that nothing singles out.
+
+    There are as many of them as any of the terms has coloured sites.
+    """
+    coloured = {kind for kind, states in chain.cell.items() if states.number is not None}
+    tokens = max((sum(kind in coloured for kind, _ in term.places) for term in terms), default=0) or 1
     return _recoloured(chain, lambda states: [Colour(i, str(states.number), states.special) for i in range(tokens)])
 
 
