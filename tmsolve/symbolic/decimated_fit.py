@@ -9,7 +9,7 @@ import numpy as np
 
 from .decimated_terms import Cuts, OwnTerms
 
-__all__ = ["Fit", "fit_energies", "symmetric_gauge"]
+__all__ = ["Basis", "Fit", "fit_energies", "symmetric_gauge"]
 
 #: Share of a column outside the span of the others below which it counts as dependent.
 _DEPENDENT = 1e-9
@@ -48,7 +48,7 @@ class Fit:
     changed: tuple[str, ...] = ()
 
 
-class _Basis:
+class Basis:
     """Columns over the allowed pairs of states, kept only where they add a direction."""
 
     def __init__(self, rows: np.ndarray) -> None:
@@ -62,8 +62,8 @@ class _Basis:
         column = table[self.rows]
         rest = column - self._directions @ (self._directions.T @ column)
         rest = rest - self._directions @ (self._directions.T @ rest)
-        length = np.linalg.norm(rest)
-        if length <= _DEPENDENT * max(np.linalg.norm(column), 1e-300):
+        length = float(np.linalg.norm(rest))
+        if length <= _DEPENDENT * max(float(np.linalg.norm(column)), 1e-300):
             return False
         self._directions = np.column_stack([self._directions, rest / length])
         self.columns.append(column)
@@ -102,7 +102,7 @@ def fit_energies(
     """
     rows = np.isfinite(energies[..., 0])
     n = len(rows)
-    basis = _Basis(rows)
+    basis = Basis(rows)
     basis.add(np.ones((n, n)))
     for a in range(n - 1):
         # The gauge g(b) − g(a), one state after the other.
@@ -132,9 +132,9 @@ def fit_energies(
     couplings = {cuts.indicator(*pair)[0]: np.full_like(T, np.inf) for pair in lost}
     if broken or misfit.any():
         constant, values = _complete(basis, cuts, target, broken)
-        for name, value in values.items():
-            if name and name not in parameters and (np.abs(value) > 10 * _ROUNDING * scale).any():
-                couplings[name] = value
+        for coupling, value in values.items():
+            if coupling and coupling not in parameters and (np.abs(value) > 10 * _ROUNDING * scale).any():
+                couplings[coupling] = value
     own_values = {name: _cleared(values[name], old[name], scale) for name in parameters}
     changed = tuple(cuts.indicator(*pair)[0] for pair in (*broken, *lost))
     return Fit(constant, own_values, tuple(held), couplings, misfit, closes, changed)
@@ -146,7 +146,7 @@ def _cleared(new: np.ndarray, old: np.ndarray, scale: np.ndarray) -> np.ndarray:
 
 
 def _complete(
-    basis: _Basis, cuts: Cuts, target: np.ndarray, broken: Sequence[tuple[int, int]]
+    basis: Basis, cuts: Cuts, target: np.ndarray, broken: Sequence[tuple[int, int]]
 ) -> tuple[np.ndarray, dict[str | None, np.ndarray]]:
     """Add couplings, the simplest first, until every table can be written, and solve again."""
     for pair in broken:

@@ -211,7 +211,12 @@ def _powered(assembled: Assembled, b: int) -> LogTable:
     for start in range(0, assembled.batch, count):
         some = slice(start, start + count)
         parts.append(power(LogSum(assembled.beta[some]), LogTable(energy[..., some], log[..., some]), b))
-    return LogTable(*(np.concatenate([getattr(p, name) for p in parts], axis=-1) for name in ("energy", "log")))
+    return LogTable(*_concatenated([(part.energy, part.log) for part in parts]))
+
+
+def _concatenated(parts: list[tuple[np.ndarray, np.ndarray]]) -> tuple[np.ndarray, np.ndarray]:
+    energies, logs = zip(*parts, strict=True)
+    return np.concatenate(energies, axis=-1), np.concatenate(logs, axis=-1)
 
 
 def _each_pattern(raw: np.ndarray, point: Point, cuts: Cuts, T: np.ndarray) -> tuple[Fit, np.ndarray]:
