@@ -9,8 +9,10 @@ from hypothesis import assume, given, settings
 
 from tests.eigen import exact
 from tests.eigen.matrices import gauged, weight_logs
+from tmsolve.eigen.modes import modes, shown
+from tmsolve.eigen.periodic import periodic_pair
 from tmsolve.eigen.perron import TOLERANCE, perron_pair
-from tmsolve.eigen.spectrum import clusters, leading_modes, modes, ratios
+from tmsolve.eigen.spectrum import clusters, ratios
 from tmsolve.operators.numbers import DOUBLE, multiprecision
 
 
@@ -33,7 +35,7 @@ def test_ratios_of_random_matrices(log):
     assume(len(log) > 1)
     pair = pair_of(log)
     assume(pair.converged[0] and pair.error[0] < TOLERANCE)
-    modulus, phase = ratios(pair)
+    modulus, phase, _ = ratios(pair)
     got = sorted(np.exp(modulus[0] + 1j * phase[0]), key=lambda z: (-round(abs(z), 6), z.imag))
     wanted = sorted((complex(v) for v in exact_ratios(log, 60)), key=lambda z: (-round(abs(z), 6), z.imag))
     # A double root moves by the square root of rounding.
@@ -51,7 +53,7 @@ def has_close_pair(values):
 def test_tiny_gaps_of_two_states(coupling, gap, sign):
     """Ising at coupling K: λ₂/λ₁ = ± tanh K, so 1 − tanh K = 2/(e^{2K} + 1)."""
     log = -2.0 * coupling * np.array([[0, 1], [1, 0]] if sign > 0 else [[1, 0], [0, 1]])
-    modulus, phase = ratios(pair_of(log))
+    modulus, phase, _ = ratios(pair_of(log))
     exact_gap = 2 * math.exp(-2 * coupling) / (1 + math.exp(-2 * coupling))
     assert exact_gap == pytest.approx(gap, rel=0.02)
     assert -modulus[0, 0] == pytest.approx(-math.log1p(-exact_gap), rel=2e-14)
@@ -59,17 +61,19 @@ def test_tiny_gaps_of_two_states(coupling, gap, sign):
 
 
 @pytest.mark.parametrize("coupling", [1e4, 1e8])
-def test_gaps_beyond_doubles_round_to_zero(coupling):
+def test_gaps_beyond_doubles_are_known_by_their_logarithm(coupling):
     numbers = multiprecision(128)
     pair = perron_pair(numbers.array(-2 * coupling * np.array([[0, 1], [1, 0]]))[..., None], numbers)
-    assert ratios(pair)[0][0, 0] == 0
+    found = ratios(pair, multiprecision(128))
+    assert found.log_modulus[0, 0] == 0
+    assert found.log_gap[0, 0] == pytest.approx(math.log(2) - 2 * coupling, rel=1e-15)
 
 
 @pytest.mark.parametrize("ratio", [1e-3, 1e-15, 1e-40, 1e-250])
 def test_tiny_eigenvalues_of_two_states(ratio):
     """[[1, √r], [√r, 2r]] with small r: λ₁λ₂ = r, so λ₂/λ₁ is about r and not rounding."""
     log = np.log(np.array([[1, math.sqrt(ratio)], [math.sqrt(ratio), 2 * ratio]]))
-    modulus, _ = ratios(pair_of(log))
+    modulus = ratios(pair_of(log)).log_modulus
     root = (1 + 2 * ratio + math.sqrt((1 - 2 * ratio) ** 2 + 4 * ratio)) / 2
     assert modulus[0, 0] == pytest.approx(math.log(ratio / root**2), rel=1e-12)
 
@@ -78,7 +82,7 @@ def test_tiny_eigenvalues_of_two_states(ratio):
 def test_eigenvalues_at_the_end_of_the_doubles(depth):
     """Three states of which two are hardly ever visited: λ₂ and λ₃ of order e^−depth do not overflow or warn."""
     log = np.array([[0.0, -depth, -depth], [0.0, -depth - 1, -depth], [0.0, -depth, -depth - 2]])
-    modulus, phase = ratios(pair_of(log))
+    modulus, phase, _ = ratios(pair_of(log))
     # To leading order the others' own steps count, minus the way through the likely state.
     a, b = math.exp(-1) - 1, math.exp(-2) - 1
     assert modulus[0] == pytest.approx(
@@ -90,7 +94,7 @@ def test_eigenvalues_at_the_end_of_the_doubles(depth):
 def test_equal_rows_have_no_second_eigenvalue():
     for n in (2, 3, 5):
         row = np.random.default_rng(n).normal(size=n) * 20
-        modulus, phase = ratios(pair_of(np.broadcast_to(row - row.max(), (n, n))))
+        modulus, phase, _ = ratios(pair_of(np.broadcast_to(row - row.max(), (n, n))))
         assert np.isneginf(modulus).all() and not phase.any()
 
 
@@ -104,7 +108,7 @@ def test_eigenvalues_next_to_roots_of_unity(length, leak):
     log = np.full((length, length), -np.inf)
     log[np.arange(length), (np.arange(length) + 1) % length] = 0.0
     np.fill_diagonal(log, leak)
-    modulus, phase = ratios(pair_of(log))
+    modulus, phase, _ = ratios(pair_of(log))
     with mpmath.workdps(400):
         w = mpmath.exp(mpmath.mpf(leak))
         values = [mpmath.expjpi(mpmath.mpf(2 * k) / length) + w for k in range(1, length)]
@@ -118,7 +122,7 @@ def test_eigenvalues_next_to_roots_of_unity(length, leak):
 def test_exact_cycles_stay_on_the_circle(length):
     log = np.full((length, length), -np.inf)
     log[np.arange(length), (np.arange(length) + 1) % length] = 0.0
-    modulus, phase = ratios(pair_of(log))
+    modulus, phase, _ = ratios(pair_of(log))
     assert modulus[0].tolist() == [0.0] * (length - 1)
     assert sorted(np.round(np.abs(phase[0]) * length / (2 * np.pi), 9)) == sorted(
         min(k, length - k) for k in range(1, length)
@@ -132,7 +136,7 @@ def test_multiplets_of_equivalent_states(temperature, q, field):
     energy = 1.0 - np.eye(q)
     energy += field * (np.arange(q)[:, None] > 1) + field * (np.arange(q)[None] > 1)
     log = gauged(energy, temperature)
-    modulus, phase = ratios(pair_of(log))
+    modulus, phase, _ = ratios(pair_of(log))
     digits = int(8 / temperature) + 60
     wanted = [v for v in exact_ratios(log, digits) if abs(v) > 1e-30]
     with mpmath.workdps(digits):
@@ -145,7 +149,7 @@ def test_complex_pairs():
     """The cyclic matrix (a, b, c) has λ = a + bω + cω²."""
     a, b, c = 0.5, 0.3, 0.1
     log = np.log(np.array([[a, b, c], [c, a, b], [b, c, a]]) / 0.5)
-    modulus, phase = ratios(pair_of(log - np.log(log.shape[0] / 3)))
+    modulus, phase, _ = ratios(pair_of(log - np.log(log.shape[0] / 3)))
     value = (a + b * np.exp(2j * np.pi / 3) + c * np.exp(-2j * np.pi / 3)) / (a + b + c)
     assert modulus[0] == pytest.approx([np.log(abs(value))] * 2, rel=1e-12)
     assert sorted(phase[0]) == pytest.approx([-np.angle(value), np.angle(value)], rel=1e-12)
@@ -167,28 +171,32 @@ def test_modes_are_biorthonormal_and_make_up_correlations(n):
     rng = np.random.default_rng(n)
     pair = pair_of(gauged(rng.normal(size=(n, n)), 1.0))
     chance, law = pair.chance[..., 0], pair.reduction.stationary[:, 0]
-    found = modes(chance, law)
-    assert found.left @ found.right == pytest.approx(np.eye(n - 1), abs=1e-12)
+    found = modes(pair.chance, pair.reduction.stationary)
+    assert found.left[0] @ found.right[0] == pytest.approx(np.eye(n - 1), abs=1e-12)
     source = law * rng.normal(size=n)
     source -= law * source.sum()
     target = rng.normal(size=n)
-    values = np.exp(found.log_modulus + 1j * found.phase)
+    values = np.exp(found.log_modulus[0] + 1j * found.phase[0])
     for steps in (0, 1, 5):
         direct = source @ np.linalg.matrix_power(chance, steps) @ target
-        assert (source @ found.right) * values**steps @ (found.left @ target) == pytest.approx(direct, abs=1e-12)
+        assert (source @ found.right[0]) * values**steps @ (found.left[0] @ target) == pytest.approx(direct, abs=1e-12)
 
 
-def test_leading_modes_skip_those_without_amplitude():
+def test_modes_without_amplitude_are_not_shown():
     """In a symmetric three-state chain an even quantity does not feel the odd mode, which is the slowest."""
     energy = np.array([[-1.0, 0, 1], [0, 0.2, 0], [1, 0, -1]])
     pair = pair_of(gauged(energy, 0.5))
     law = pair.reduction.stationary[:, 0]
-    found = modes(pair.chance[..., 0], law)
+    found = modes(pair.chance, law[:, None])
     odd, even = np.array([-1.0, 0, 1]), np.array([1.0, 0, 1])
-    felt = [leading_modes(found, law * (x - law @ x), x, 1e-11) for x in (odd, even)]
-    assert felt == [[0], [1]]
-    assert leading_modes(found, np.zeros(3), even, 1e-11) == []
-    assert sorted(leading_modes(found, law * (odd + even - law @ (odd + even)), odd + even, 1e-11)) == [0, 1]
+
+    def felt(x, y):
+        carried = shown(found, (law * (x - law @ x))[:, None], y[:, None], 1e-11).carried
+        return np.flatnonzero(carried[0]).tolist()
+
+    assert [felt(x, x) for x in (odd, even)] == [[0], [1]]
+    assert felt(odd * 0, even) == []
+    assert felt(odd + even, odd + even) == [0, 1]
 
 
 @pytest.mark.parametrize(
@@ -204,4 +212,48 @@ def test_leading_modes_skip_those_without_amplitude():
     ],
 )
 def test_clusters(log_modulus, phase, groups):
-    assert clusters(np.array(log_modulus), np.array(phase)) == groups
+    assert clusters(np.log(-np.array(log_modulus)), np.array(phase)) == groups
+
+
+def graded_chain(rates, temperature):
+    """Return logarithms of a symmetric matrix with off-diagonal weights e^{−E/T} and ones on the diagonal."""
+    energy = np.array(rates, dtype=float)
+    np.fill_diagonal(energy, 0.0)
+    return (-energy / temperature)[..., None]
+
+
+@pytest.mark.parametrize("temperature", [0.2, 0.05, 0.02])
+def test_gaps_of_very_different_size(temperature):
+    """Four states in detailed balance, linked by barriers 1, 2 and 3: gaps of order e^{−1/T}, e^{−2/T}, e^{−3/T}."""
+    log = graded_chain([[0, 1, 3, 3], [1, 0, 3, 3], [3, 3, 0, 2], [3, 3, 2, 0]], temperature)
+    found = ratios(pair_of(log))
+    digits = int(4 / temperature) + 60
+    with mpmath.workdps(digits):
+        logs = [float(mpmath.log(-mpmath.log(abs(v)))) for v in exact_ratios(log, digits)]
+    assert found.log_gap[0] == pytest.approx(np.array(sorted(logs)), rel=1e-13)
+    assert not found.phase.any()
+
+
+@pytest.mark.parametrize("temperature", [0.5, 0.1, 0.04])
+def test_gaps_of_very_different_size_without_detailed_balance(temperature):
+    """A driven ring of three states with one fast and one slow transition, and a fourth state far away."""
+    big = 6.0
+    log = graded_chain([[0, 1, 1.5, big], [2, 0, 1, big], [1, 2, 0, 5], [big, big, 5, 0]], temperature)
+    found = ratios(pair_of(log))
+    digits = int(8 / temperature) + 60
+    with mpmath.workdps(digits):
+        logs = [float(mpmath.log(-mpmath.log(abs(v)))) for v in exact_ratios(log, digits)]
+    assert found.log_gap[0] == pytest.approx(np.array(sorted(logs)), rel=1e-10)
+
+
+def test_gaps_of_very_different_size_in_alternating_chains():
+    """Two antiferromagnetic pairs of states, weakly linked: λ next to +1 and −1, gaps of different size."""
+    energy = np.array([[1.0, 0, 3, 3], [0, 1.0, 3, 3], [3, 3, 1.0, 0], [3, 3, 0, 1.0]])
+    log = (-energy / 0.05)[..., None]
+    numbers = multiprecision(128)
+    pair = periodic_pair(numbers.array(log), numbers)
+    found = ratios(pair, numbers)
+    with mpmath.workdps(200):
+        wanted = [(float(mpmath.log(-mpmath.log(abs(v)))), float(mpmath.arg(v))) for v in exact_ratios(log, 200)]
+    assert found.log_gap[0] == pytest.approx(np.array(sorted(gap for gap, _ in wanted)), rel=1e-13)
+    assert found.phase[0] == pytest.approx([0, np.pi, np.pi])

@@ -15,10 +15,10 @@ from ..eigen.components import communicating_classes
 from ..eigen.law import DoobLaw
 from ..eigen.perron import TOLERANCE, PerronPair
 from ..eigen.solvers import Dense
-from ..eigen.spectrum import ratios
+from ..eigen.spectrum import Ratios, ratios
 from ..errors import SolveError, TooLargeError
 from ..observe.segment import Segment
-from ..operators.numbers import multiprecision, to_double
+from ..operators.numbers import Numbers, multiprecision, to_double
 from .classes import CLIMB_LIMIT, FIRST_BITS, CommunicatingClass, Ties, bits_for, exact_values
 
 __all__ = ["long_law", "long_laws", "stationary_laws"]
@@ -209,12 +209,12 @@ def _segment(
     pair = _restrict(chosen.pair, local)
     gauge = chosen.gauge.at(local)
     tables = _edge_tables(part, chosen.states, gauge, local)
-    others = tuple(_other_spectrum(other, chosen, local) for i, other in enumerate(found) if i != number)
-    memory: list[tuple[np.ndarray, np.ndarray]] = []
+    others = tuple(_other_spectrum(other, chosen, local, part.numbers) for i, other in enumerate(found) if i != number)
+    memory: list[Ratios] = []
 
-    def spectrum() -> tuple[np.ndarray, np.ndarray]:
+    def spectrum() -> Ratios:
         if not memory:
-            memory.append(ratios(pair))
+            memory.append(ratios(pair, part.numbers))
         return memory[0]
 
     law = DoobLaw(pair, tables, part.numbers)
@@ -276,11 +276,14 @@ def _edge_tables(
 
 
 def _other_spectrum(
-    other: CommunicatingClass, chosen: CommunicatingClass, local: np.ndarray
-) -> Callable[[], tuple[np.ndarray, np.ndarray]]:
-    def spectrum() -> tuple[np.ndarray, np.ndarray]:
+    other: CommunicatingClass, chosen: CommunicatingClass, local: np.ndarray, numbers: Numbers
+) -> Callable[[], Ratios]:
+    def spectrum() -> Ratios:
         shift = to_double(other.log_eigenvalue - chosen.log_eigenvalue)[local, None]
-        log_modulus, phase = ratios(_restrict(other.pair, local))
-        return np.concatenate([shift, log_modulus + shift], -1), np.concatenate([shift * 0, phase], -1)
+        inside = ratios(_restrict(other.pair, local), numbers)
+        log_modulus = np.concatenate([shift, inside.log_modulus + shift], -1)
+        with np.errstate(divide="ignore"):
+            log_gap = np.log(np.maximum(-log_modulus, 0.0))
+        return Ratios(log_modulus, np.concatenate([shift * 0, inside.phase], -1), log_gap)
 
     return spectrum

@@ -10,14 +10,10 @@ import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow, place_in
-from ..eigen.spectrum import Modes, clusters, leading_modes, modes
-from ..operators.numbers import to_double
+from ..eigen.spectrum import Ratios, clusters
 from .segment import Segment
 
-__all__ = ["Level", "connected_correlation", "decay", "levels", "sorted_spectrum"]
-
-#: Amplitudes below this, relative to the product of the two quantities' sizes, count as zero.
-_AMPLITUDE = 1e-11
+__all__ = ["Level", "anchors", "connected_correlation", "levels", "sorted_spectrum"]
 
 
 @dataclass(frozen=True)
@@ -97,75 +93,12 @@ def _within_window(segment: Segment, names: tuple[str, str], x: Any, y: Any) -> 
     return covariance if inside is None else covariance + segment.law.average(inside)
 
 
-def sorted_spectrum(segment: Segment) -> tuple[np.ndarray, np.ndarray]:
-    """Return ln |λ_k/λ₁| and phases of all eigenvalues but λ₁, largest first: (points, m)."""
+def sorted_spectrum(segment: Segment) -> Ratios:
+    """Return all eigenvalues but λ₁ relative to it, smallest gap first: (points, m)."""
     parts = [segment.spectrum(), *(other() for other in segment.other_classes)]
-    log_modulus = np.concatenate([part[0] for part in parts], axis=-1)
-    phase = np.concatenate([part[1] for part in parts], axis=-1)
-    order = np.argsort(-log_modulus, axis=-1, kind="stable")
-    return np.take_along_axis(log_modulus, order, -1), np.take_along_axis(phase, order, -1)
-
-
-def decay(window: ChainWindow, segment: Segment, observable: str | None) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
-    """Return ln |λ/λ₁|, wave number and amplitude of the slowest mode that a quantity shows, per point.
-
-    Without an observable: of the second-largest eigenvalue of the dominant class, amplitude
-    1. −inf, 0 and 0 when no mode decays slower than at once.
-    """
-    log_modulus, phase = segment.spectrum()
-    shape = segment.indices.shape
-    slowest, waves, amplitudes = np.full(shape, -np.inf), np.zeros(shape), np.zeros(shape)
-    if log_modulus.shape[1] == 0:
-        return slowest, waves, amplitudes
-    if observable is None:
-        return log_modulus[:, 0], np.abs(phase[:, 0]), np.ones(shape)
-    pairs = _sources(window, segment, observable)
-    chances, laws = segment.law.double_chance(), _spread(segment.law.stationary, segment)
-    for i in range(segment.indices.size):
-        found = modes(chances[i], laws[:, i])
-        carried = [k for s, t, _ in pairs for k in leading_modes(found, s[:, i], t[:, i], _AMPLITUDE)]
-        if carried:
-            k = min(carried)
-            slowest[i] = _accurate(found, k, log_modulus[i], phase[i])
-            waves[i] = abs(found.phase[k])
-            amplitudes[i] = _amplitude(found, k, [(s[:, i], t[:, i], shift) for s, t, shift in pairs])
-    return slowest, waves, amplitudes
-
-
-def _amplitude(found: Modes, k: int, pairs: Sequence[tuple[np.ndarray, np.ndarray, int]]) -> float:
-    """Return A of the mode's part A cos(κr + φ) e^{−r/ξ} of a correlation function."""
-    group = next(g for g in clusters(found.log_modulus, found.phase) if k in g)
-    ratio = np.exp(found.log_modulus[k] + 1j * found.phase[k])
-    total = sum(
-        ((s @ found.right[:, group]) * (found.left[group] @ t)).sum() * ratio ** (shift - 1) for s, t, shift in pairs
-    )
-    alone = found.phase[k] == 0 or abs(abs(found.phase[k]) - np.pi) < 1e-9
-    return float(abs(total)) * (1 if alone else 2)
-
-
-def _accurate(found: Modes, k: int, log_modulus: np.ndarray, phase: np.ndarray) -> float:
-    """Return ln |λ| of a mode from the list of eigenvalues: the one of the same rank at the same phase."""
-    rank = int((np.abs(np.exp(1j * found.phase[:k]) - np.exp(1j * found.phase[k])) < 1e-3).sum())
-    alike = log_modulus[np.abs(np.exp(1j * phase) - np.exp(1j * found.phase[k])) < 1e-3]
-    rough = float(found.log_modulus[k])
-    return float(alike[rank]) if rank < alike.size and abs(alike[rank] - rough) < 1e-6 * (1 + abs(rough)) else rough
-
-
-def _sources(window: ChainWindow, segment: Segment, observable: str) -> list[tuple[np.ndarray, np.ndarray, int]]:
-    """Return deviation left behind, expectation, and difference of anchors, for every pair of parts."""
-    pairs = []
-    cells = anchors(window, observable)
-    tables = [segment.edge_table((handle("observable", (), f"{observable}@{c}"),)) for c in cells]
-    for x, first in zip(tables, cells, strict=True):
-        for y, second in zip(tables, cells, strict=True):
-            if x is not None and y is not None:
-                source, target = segment.law.centred_source(x), segment.law.conditional(y)
-                pairs.append((_spread(source, segment), _spread(target, segment), first - second))
-    return pairs
-
-
-def _spread(values: Any, segment: Segment) -> np.ndarray:
-    return np.broadcast_to(to_double(values), (len(values), segment.indices.size))
+    joined = Ratios(*(np.concatenate(columns, axis=-1) for columns in zip(*parts, strict=True)))
+    order = np.argsort(joined.log_gap, axis=-1, kind="stable")
+    return Ratios(*(np.take_along_axis(column, order, -1) for column in joined))
 
 
 def levels(log_root: float, log_modulus: np.ndarray, phase: np.ndarray, count: int | None) -> tuple[Level, ...]:

@@ -13,6 +13,7 @@ import numpy as np
 from ..assemble.window import ChainWindow, place_in
 from ..errors import TooLargeError
 from ..operators.numbers import to_digits, to_double
+from .decay import Decay
 from .segment import Segment
 from .series import DISORDER, LEAST_ENERGY, ROOT, Monomial, Series
 
@@ -62,6 +63,8 @@ class Laws:
         self._sharper = sharper
         self.notes = notes
         self._known: dict[tuple[str, ...], tuple[ChainWindow, list[Segment]]] = {}
+        #: Slowest modes by observable, once they have been asked for.
+        self.decays: dict[str | None, Decay] = {}
 
     def segments(self, observables: Sequence[str] = ()) -> list[Segment]:
         """Return segments whose window holds these observables."""

@@ -21,6 +21,7 @@ QUANTITIES = {
     "susceptibility": (1, 2),
     "temperature_susceptibility": (1, 2),
     "correlation_length": (0, 1),
+    "log_correlation_length": (0, 1),
     "wave_number": (0, 1),
     "gap": (0, 0),
 }

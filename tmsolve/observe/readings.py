@@ -25,6 +25,7 @@ _LOOKS = {
     "susceptibility": ("χ_{}", r"\chi_{{{}}}", "1/energy"),
     "temperature_susceptibility": ("T·χ_{}", r"T\chi_{{{}}}", "1"),
     "correlation_length": ("ξ", r"\xi", "cells"),
+    "log_correlation_length": ("ln ξ", r"\ln\xi", "1"),
     "wave_number": ("k", "k", "1/cell"),
     "gap": ("ln λ₁/|λ₂|", r"\ln\lambda_1/|\lambda_2|", "1/cell"),
 }
@@ -93,7 +94,7 @@ def parse_reading(reading: str | Callable[[Solution], Any], chain: Chain) -> Rea
     inside = ",".join(quantity.observables)
     upright = ",".join(_latex_name(name) for name in quantity.observables)
     # Subscripts name the observables; ξ and k carry one only where they were asked for one.
-    if quantity.name in ("correlation_length", "wave_number") and inside:
+    if quantity.name in ("correlation_length", "log_correlation_length", "wave_number") and inside:
         symbol, latex = symbol + "_{}", latex + "_{{{}}}"
     return Reading(
         str(quantity),

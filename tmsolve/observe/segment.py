@@ -8,6 +8,7 @@ from typing import Any
 
 import numpy as np
 
+from ..eigen.spectrum import Ratios
 from ..operators.numbers import to_double
 
 __all__ = ["Segment"]
@@ -39,9 +40,9 @@ class Segment:
     edge_table : callable
         Table per step of a quantity by its handle, on those states.
     spectrum : callable
-        ln |λ_k/λ₁| and phases, shape (points, m), of the dominant class.
+        All eigenvalues of the dominant class but λ₁, as `Ratios`.
     other_classes : tuple of callables
-        ln (λ/λ₁) of all eigenvalues of other classes of states, and phases.
+        All eigenvalues of other classes of states, relative to λ₁.
     limit : bool
         Whether the points stand for T = 0; ``beta`` is then large but has no meaning.
     reason : str
@@ -57,8 +58,8 @@ class Segment:
     bits: int
     states: np.ndarray
     edge_table: Callable[[tuple[str, ...]], np.ndarray | None]
-    spectrum: Callable[[], tuple[np.ndarray, np.ndarray]]
-    other_classes: tuple[Callable[[], tuple[np.ndarray, np.ndarray]], ...] = ()
+    spectrum: Callable[[], Ratios]
+    other_classes: tuple[Callable[[], Ratios], ...] = ()
     limit: bool = False
     reason: str = "doubles suffice"
 

@@ -13,8 +13,9 @@ from ..errors import NotApplicable, SolveError, listing, unknown_parameter
 from .arguments import check_count, read_distances, read_wave_numbers
 from .bounds import diagnose, error_bounds
 from .correlations import Level, connected_correlation, levels, sorted_spectrum
+from .decay import Decay
 from .evaluate import Laws
-from .lengths import decays, gaps, lengths
+from .lengths import decays, gaps, lengths, log_gaps
 from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
 from .structure import structure_factors
 
@@ -197,22 +198,37 @@ class Solution:
         """Decay length ξ in cells: of the second eigenvalue, or of the slowest mode that ``a`` shows.
 
         0 where nothing decays slower than at once; inf where two eigenvalues coincide in
-        modulus.
+        modulus, or where ξ exceeds the doubles, see `log_correlation_length`.
         """
-        return self._shaped(lengths(self._decay(a)[0]), "correlation length")
+        return self._shaped(lengths(self._decay(a)), "correlation length")
+
+    def log_correlation_length(self, a: str | None = None) -> np.ndarray:
+        """Natural logarithm ln ξ of the same length in cells, also where ξ exceeds all doubles.
+
+        −inf where ξ = 0; inf only where two eigenvalues coincide in modulus exactly, or in the
+        limit T → 0 where ξ diverges.
+
+        Examples
+        --------
+        >>> from tmsolve import models, solve
+        >>> r = solve(models.load("ising").chain.at(T="1e-8", J=1, h=0))
+        >>> print(f"{r.log_correlation_length():.9f}")              # 2J/T − ln 2
+        199999999.306852819
+        """
+        return self._shaped(-self._decay(a).log_gap, "logarithm of the correlation length")
 
     def wave_number(self, a: str | None = None) -> np.ndarray:
         """Wave number in [0, π] per cell of the same mode: 0 monotonic, π alternating."""
-        return self._shaped(self._decay(a)[1], "wave number")
+        return self._shaped(self._decay(a).wave_number, "wave number")
 
     def correlation_amplitude(self, a: str) -> np.ndarray:
         """Amplitude A of the same mode: ⟨a₀a_r⟩ − ⟨a⟩² → A cos(kr + φ) e^{−r/ξ} at large r; 0 where there is none."""
-        return self._shaped(self._decay(a)[2], "correlation amplitude")
+        return self._shaped(self._decay(a).amplitude, "correlation amplitude")
 
-    def _decay(self, a: str | None) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    def _decay(self, a: str | None) -> Decay:
         if a is not None:
             self.point.chain.observable(a)
-        return decays(self.laws, a)
+        return decays(self.laws, self.point, a)
 
     def gaps(self, k: int) -> np.ndarray:
         """Gaps ln λ₁/|λ_i| of the next k eigenvalues, counted with multiplicity, shape (*batch, k).
@@ -221,6 +237,14 @@ class Solution:
         """
         check_count("k", k)
         return self._shaped(gaps(self.laws, int(k)), "gaps")
+
+    def log_gaps(self, k: int) -> np.ndarray:
+        """Natural logarithms of the `gaps`, also where a gap is below all doubles, shape (*batch, k).
+
+        −inf only where two eigenvalues coincide in modulus exactly, or in the limit T → 0.
+        """
+        check_count("k", k)
+        return self._shaped(log_gaps(self.laws, int(k)), "logarithms of gaps")
 
     @np.errstate(under="ignore")
     def spectrum(self, k: int | None = None) -> tuple[Level, ...]:
@@ -239,7 +263,7 @@ class Solution:
         if k is not None:
             check_count("k", k)
         segment = self.laws.segments()[0]
-        log_modulus, phase = sorted_spectrum(segment)
+        log_modulus, phase, _ = sorted_spectrum(segment)
         if float(self.point.number("T")) == 0:
             raise NotApplicable("at T = 0 eigenvalues have no finite logarithm; gaps(k) has the limits of their ratios")
         root = -float(self.free_energy) / float(self.point.number("T"))

@@ -70,7 +70,7 @@ def structure_factor(window: ChainWindow, segment: Segment, a: str, wave_numbers
 
 def _resonant(segment: Segment, k: float) -> np.ndarray:
     """Whether 1 − e^{ik} λ/λ₁ is lost to rounding for some eigenvalue; slow modes at small k are not."""
-    log_modulus, phase = segment.spectrum()
+    log_modulus, phase, _ = segment.spectrum()
     if log_modulus.shape[1] == 0 or np.cos(k) > 0.5:
         return np.zeros(segment.indices.shape, dtype=bool)
     distance = np.abs(np.expm1(log_modulus + 1j * _folded(phase + k))).min(axis=1)

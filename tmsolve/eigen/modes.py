@@ -1,0 +1,115 @@
+"""The modes of a stationary chain with their vectors, and which of them two quantities show."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..operators.numbers import DOUBLE, Numbers, to_double
+from .near_circle import inverted, near_modes
+from .spectrum import polar, scaled_to_one, together, without_perron
+
+__all__ = ["Modes", "Shown", "modes", "shown"]
+
+
+@dataclass(frozen=True)
+class Modes:
+    """Eigenvalues of transition matrices except the Perron root, smallest gap first, with vectors.
+
+    Attributes
+    ----------
+    log_modulus, phase, log_gap : ndarray, shape (batch, m)
+        As in `Ratios`.
+    right, left : ndarray, shape (batch, n, m) and (batch, m, n)
+        Vectors with left·right = 1, of P up to a constant in each right one.
+    """
+
+    log_modulus: np.ndarray
+    phase: np.ndarray
+    log_gap: np.ndarray
+    right: np.ndarray
+    left: np.ndarray
+
+
+def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Modes:
+    """Return eigenvalues and biorthonormal vectors of transition matrices, Perron mode left out.
+
+    Parameters
+    ----------
+    chance : ndarray, shape (n, n, batch)
+    law : ndarray, shape (n, batch)
+        Stationary law.
+    numbers : Numbers
+        Number system of both.
+    """
+    doubles, weights = to_double(chance), to_double(law)
+    rest, kept = without_perron(doubles, weights)
+    n, batch = len(doubles), doubles.shape[-1]
+    scaled, size = scaled_to_one(rest)
+    values, vectors, inverse = _eigen(np.ascontiguousarray(np.moveaxis(scaled, -1, 0)))
+    right = np.zeros((batch, n, n - 1), dtype=np.complex128)
+    left = np.zeros((batch, n - 1, n), dtype=np.complex128)
+    # Constants are free in right vectors, and left vectors sum to 0: both are felt through differences only.
+    np.put_along_axis(right, kept.T[:, :, None], vectors, axis=1)
+    np.put_along_axis(left, kept.T[:, None, :], inverse, axis=2)
+    left[np.arange(batch), :, weights.argmax(axis=0)] = -inverse.sum(axis=2)
+    log_modulus, phase = polar(values, size)
+    with np.errstate(divide="ignore"):
+        log_gap = np.log(np.maximum(-log_modulus, 0.0))
+    found = Modes(log_modulus, phase, log_gap, right, left)
+    for near in near_modes(chance, log_modulus, phase, numbers):
+        near.replace_in(log_modulus, phase, log_gap)
+        if near.right is not None and near.left is not None:
+            right[near.points, :, : near.right.shape[2]] = near.right
+            left[near.points, : near.left.shape[1]] = near.left
+    return found
+
+
+def _eigen(matrix: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+    """Return eigenvalues, largest modulus first, right vectors and their inverse."""
+    if matrix.shape[1] == 1:
+        one = np.ones_like(matrix, dtype=np.complex128)
+        return matrix[:, 0].astype(np.complex128), one, one
+    # Cast at once: NumPy returns real or complex arrays depending on version and values.
+    raw, vectors = (part.astype(np.complex128) for part in np.linalg.eig(matrix))
+    order = np.argsort(-np.abs(raw), axis=-1, kind="stable")
+    values = np.take_along_axis(raw, order, axis=-1)
+    vectors = np.take_along_axis(vectors, order[:, None, :], axis=-1)
+    return values, vectors, inverted(vectors)
+
+
+@dataclass(frozen=True)
+class Shown:
+    """What modes contribute to a correlation function.
+
+    Attributes
+    ----------
+    amplitude : ndarray, shape (batch, m)
+        Summed over all modes that coincide with a mode.
+    carried : ndarray of bool, shape (batch, m)
+        Whether it is more than rounding.
+    """
+
+    amplitude: np.ndarray
+    carried: np.ndarray
+
+
+def shown(found: Modes, source: np.ndarray, target: np.ndarray, threshold: float) -> Shown:
+    """Return the amplitudes of the modes in the correlation of two quantities.
+
+    Parameters
+    ----------
+    found : Modes
+    source, target : ndarray, shape (n, batch)
+        Deviation left behind by the first quantity, expectation of the second.
+    threshold : float
+        Smallest amplitude that counts, relative to |source|·|target|.
+    """
+    before = np.einsum("nb,bnm->bm", source, found.right)
+    after = np.einsum("bmn,nb->bm", found.left, target)
+    alike = together(found.log_gap, found.phase)
+    amplitude = np.einsum("bkj,bj->bk", alike, before * after)
+    scale = np.abs(source).sum(axis=0) * np.abs(target).max(axis=0)
+    carried = (np.abs(amplitude) > threshold * scale[:, None]) & np.isfinite(found.log_modulus)
+    return Shown(amplitude, carried)
