@@ -64,13 +64,14 @@ def colour_mismatch(
         top = evaluate(largest, point)
         if colours >= matrix.least and any(abs(x) > top * (1 + _TOLERANCE) for x, _ in numbers):
             return f"what should be the largest eigenvalue is not, at {point}"
-        dense = plain_matrix(chain, colours, _parameters(chain, point)) / float(top)
-        power = np.eye(len(dense))
+        dense = plain_matrix(chain, colours, _parameters(chain, point))
+        scale = float(dense.sum(axis=1).max()) or 1.0
+        dense, power = dense / scale, np.eye(len(dense))
         for k in range(1, powers + 1):
             power = power @ dense
-            total = mp.fsum(m * (x / top) ** k for x, m in numbers)
-            size = mp.fsum(abs(m * (x / top) ** k) for x, m in numbers)
-            if not abs(np.trace(power) - total) <= _TOLERANCE * max(size, 1):
+            total = mp.fsum(m * (x / scale) ** k for x, m in numbers)
+            size = mp.fsum(abs(m * (x / scale) ** k) for x, m in numbers)
+            if not abs(np.trace(power) - total) <= _TOLERANCE * size:
                 return f"the power sum of order {k} is {mp.nstr(total, 12)}, not {np.trace(power)}, at {point}"
     return None
 
