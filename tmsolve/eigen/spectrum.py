@@ -16,7 +16,17 @@ from ..operators.numbers import DOUBLE, Numbers, to_double
 from .near_circle import near_modes, tidy
 from .perron import PerronPair
 
-__all__ = ["Ratios", "chain_ratios", "clusters", "polar", "ratios", "scaled_to_one", "together", "without_perron"]
+__all__ = [
+    "Ratios",
+    "chain_ratios",
+    "clusters",
+    "eigenvalues",
+    "polar",
+    "ratios",
+    "scaled_to_one",
+    "together",
+    "without_perron",
+]
 
 #: Eigenvalues whose gaps agree to this relative accuracy are counted as one cluster.
 _TOGETHER = 1e-9
@@ -64,7 +74,7 @@ def chain_ratios(chance: np.ndarray, stationary: np.ndarray, numbers: Numbers = 
         return Ratios(none, none.copy(), none.copy())
     rest, _ = without_perron(doubles, to_double(stationary))
     scaled, size = scaled_to_one(rest)
-    log_modulus, phase = polar(_eigenvalues(scaled), size)
+    log_modulus, phase = polar(eigenvalues(scaled), size)
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
     for near in near_modes(chance, log_modulus, phase, numbers):
@@ -91,7 +101,7 @@ def without_perron(chance: np.ndarray, law: np.ndarray) -> tuple[np.ndarray, np.
     return np.where(np.abs(rest) <= noise, 0.0, rest), kept
 
 
-def _eigenvalues(rest: np.ndarray) -> np.ndarray:
+def eigenvalues(rest: np.ndarray) -> np.ndarray:
     """Return the eigenvalues, shape (batch, m), largest modulus first."""
     if len(rest) == 1:
         return rest[0, 0].astype(np.complex128)[:, None]

@@ -1,49 +1,18 @@
-"""Two-point functions, decay lengths and spectra over the segments of a batch."""
+"""Two-point functions and spectra over the segments of a batch."""
 
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
 from typing import Any
 
 import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow, place_in
-from ..eigen.spectrum import Ratios, clusters
+from ..eigen.spectrum import Ratios
 from .segment import Segment
 
-__all__ = ["Level", "anchors", "connected_correlation", "levels", "sorted_spectrum"]
-
-
-@dataclass(frozen=True)
-class Level:
-    """One eigenvalue of the transfer matrix per cell.
-
-    Attributes
-    ----------
-    log_modulus : float
-        ln |λ|.
-    phase : float
-        Argument in (−π, π].
-    multiplicity : int
-        How many eigenvalues coincide here.
-    label : str
-        Running number, λ₁ first.
-    """
-
-    log_modulus: float
-    phase: float
-    multiplicity: int
-    label: str
-
-    @property
-    def value(self) -> complex:
-        """The eigenvalue itself (may overflow to inf at low temperature)."""
-        modulus = float(np.exp(self.log_modulus)) if self.log_modulus < 709 else float("inf")
-        if self.phase in (0.0, np.pi):
-            return complex(modulus if self.phase == 0 else -modulus)
-        return complex(modulus * np.cos(self.phase), modulus * np.sin(self.phase))
+__all__ = ["anchors", "connected_correlation", "sorted_spectrum"]
 
 
 def anchors(window: ChainWindow, observable: str) -> list[int]:
@@ -99,13 +68,3 @@ def sorted_spectrum(segment: Segment) -> Ratios:
     joined = Ratios(*(np.concatenate(columns, axis=-1) for columns in zip(*parts, strict=True)))
     order = np.argsort(joined.log_gap, axis=-1, kind="stable")
     return Ratios(*(np.take_along_axis(column, order, -1) for column in joined))
-
-
-def levels(log_root: float, log_modulus: np.ndarray, phase: np.ndarray, count: int | None) -> tuple[Level, ...]:
-    """Return the eigenvalues of one point as levels with multiplicities, λ₁ first."""
-    log_modulus, phase = np.concatenate([[0.0], log_modulus]), np.concatenate([[0.0], phase])
-    found = []
-    for number, group in enumerate(clusters(log_modulus, phase), start=1):
-        first = group[0]
-        found.append(Level(float(log_root + log_modulus[first]), float(phase[first]), len(group), f"λ{number}"))
-    return tuple(found if count is None else found[:count])

@@ -12,10 +12,11 @@ from ..declare import Point
 from ..errors import NotApplicable, SolveError, listing, unknown_parameter
 from .arguments import check_count, read_distances, read_wave_numbers
 from .bounds import diagnose, error_bounds
-from .correlations import Level, connected_correlation, levels, sorted_spectrum
+from .correlations import connected_correlation
 from .decay import Decay
 from .evaluate import Laws
 from .lengths import decays, gaps, lengths, log_gaps
+from .levels import Level, levels
 from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
 from .structure import structure_factors
 
@@ -239,35 +240,20 @@ class Solution:
         return self._shaped(gaps(self.laws, int(k)), "gaps")
 
     def log_gaps(self, k: int) -> np.ndarray:
-        """Natural logarithms of the `gaps`, also where a gap is below all doubles, shape (*batch, k).
-
-        −inf only where two eigenvalues coincide in modulus exactly, or in the limit T → 0.
-        """
+        """Natural logarithms of the `gaps`, finite where gaps are below all doubles; −inf where they vanish exactly."""
         check_count("k", k)
         return self._shaped(log_gaps(self.laws, int(k)), "logarithms of gaps")
 
     @np.errstate(under="ignore")
     def spectrum(self, k: int | None = None) -> tuple[Level, ...]:
-        """Eigenvalues of the transfer matrix of a single point, λ₁ first, with multiplicities.
+        """Eigenvalues of the transfer matrix of a single point, λ₁ first: multiplicities, complex pairs, Jordan blocks.
 
         Raises
         ------
         NotApplicable
             For a batch; take one point with ``point.pick(i)``, or `gaps` for all.
         """
-        if self.shape != ():
-            raise NotApplicable(
-                f"levels are told apart point by point, and this is a batch of shape {self.shape}; "
-                "solve(point.pick(i)).spectrum(), or gaps(k) for the whole batch"
-            )
-        if k is not None:
-            check_count("k", k)
-        segment = self.laws.segments()[0]
-        log_modulus, phase, _ = sorted_spectrum(segment)
-        if float(self.point.number("T")) == 0:
-            raise NotApplicable("at T = 0 eigenvalues have no finite logarithm; gaps(k) has the limits of their ratios")
-        root = -float(self.free_energy) / float(self.point.number("T"))
-        return levels(root, log_modulus[0], phase[0], k)
+        return levels(self.laws, self.point, k)
 
     def error_bound(self, quantity: str) -> np.ndarray:
         """Bound on the numerical error of a quantity that is a derivative of f, per point.

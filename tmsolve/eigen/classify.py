@@ -1,0 +1,158 @@
+"""Eigenvalues of one stationary chain as levels: which coincide, and whether they have vectors of their own.
+
+Two computed eigenvalues are one where their distance is what rounding makes of a single one:
+200 u times the smaller of their condition numbers. Their mean is then accurate although each
+alone is not. Counting the vanishing singular values of A − mean tells as many vectors as
+eigenvalues (semisimple) from fewer (a Jordan block).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+
+from ..operators.numbers import to_double
+from .near_circle import NEAR, inverted, tidy
+from .spectrum import Ratios, clusters, eigenvalues, scaled_to_one, without_perron
+
+__all__ = ["Cluster", "classified", "grouped"]
+
+_ROUNDING = 2.0**-53
+#: Rounding errors of an eigenvalue of condition 1, in units of _ROUNDING.
+_MANY = 200
+#: Vectors worse conditioned than this may belong to a Jordan block.
+_SUSPECT = 1e6
+#: A singular value below this belongs to a vector.
+_VANISHES = 1e-11
+#: Larger matrices are grouped by distance alone.
+_LARGEST = 256
+
+
+@dataclass(frozen=True)
+class Cluster:
+    """Eigenvalues that coincide.
+
+    Attributes
+    ----------
+    log_modulus, phase, log_gap : float
+        ln |λ/λ₁|, argument and ln(−ln |λ/λ₁|) of their mean.
+    multiplicity : int
+    kind : str
+        ``"simple"``, ``"semisimple"`` (several, each with a vector) or ``"Jordan"`` (fewer vectors
+        than eigenvalues).
+    condition : float
+        How many times rounding an eigenvalue moves; NaN where it was not looked at.
+    discriminant : float
+        Mean of (λ − mean)² as computed, in units of λ₁²: noise, since they coincide.
+    """
+
+    log_modulus: float
+    phase: float
+    log_gap: float
+    multiplicity: int
+    kind: str
+    condition: float = np.nan
+    discriminant: float = 0.0
+
+
+def grouped(found: Ratios) -> list[Cluster]:
+    """Return the levels of one point by distance alone, shape (m,) each."""
+    levels = []
+    for group in clusters(found.log_gap, found.phase):
+        kind = "simple" if len(group) == 1 else "semisimple"
+        modulus, phase, gap = (float(part[group[0]]) for part in found)
+        levels.append(Cluster(modulus, phase, gap, len(group), kind))
+    return levels
+
+
+def classified(chance: np.ndarray, law: np.ndarray, found: Ratios) -> list[Cluster]:
+    """Return the levels of one chain without the Perron root, largest modulus first.
+
+    Parameters
+    ----------
+    chance : ndarray, shape (n, n)
+        Transition probabilities.
+    law : ndarray, shape (n,)
+        Their stationary law.
+    found : Ratios
+        Its eigenvalues, shape (m,) each, accurate next to the unit circle.
+
+    Examples
+    --------
+    >>> from .spectrum import chain_ratios
+    >>> chance = np.array([[0.5, 0.5, 0, 0], [0, 0, 0.5, 0.5], [0.5, 0.5, 0, 0], [0, 0, 0.5, 0.5]])
+    >>> law = np.full(4, 0.25)
+    >>> found = Ratios(*(part[0] for part in chain_ratios(chance[..., None], law[:, None])))
+    >>> [(level.multiplicity, level.kind) for level in classified(chance, law, found)]
+    [(3, 'Jordan')]
+    """
+    if not 2 <= len(chance) <= _LARGEST:
+        return grouped(found)
+    rest, _ = without_perron(to_double(chance)[..., None], to_double(law)[:, None])
+    scaled, size = scaled_to_one(rest)
+    matrix, values = scaled[..., 0], eigenvalues(scaled)[0]
+    near = int((found.log_modulus > -NEAR).sum())
+    levels = grouped(Ratios(*(part[:near] for part in found)))
+    condition = _conditions(matrix, values)
+    for members in _clusters(values, condition, near):
+        levels.append(_level(matrix, values, condition, members, found, float(size[0])))
+    return sorted(levels, key=lambda level: level.log_gap)
+
+
+def _conditions(matrix: np.ndarray, values: np.ndarray) -> np.ndarray:
+    """Return the condition number of every eigenvalue; vectors that nearly coincide are found by singular values."""
+    raw, vectors = (part.astype(np.complex128) for part in np.linalg.eig(matrix))
+    inverse = inverted(vectors[None])[0]
+    with np.errstate(all="ignore"):
+        quick = np.linalg.norm(vectors, axis=0) * np.linalg.norm(inverse, axis=1)
+        worst = float(np.linalg.cond(vectors))
+    if worst < _SUSPECT:
+        return quick[np.abs(raw[None] - values[:, None]).argmin(axis=1)]
+    return np.array([_condition(matrix, value) for value in values])
+
+
+def _condition(matrix: np.ndarray, value: complex) -> float:
+    left, sizes, right = np.linalg.svd(matrix - value * np.eye(len(matrix)))
+    count = max(1, int((sizes <= _VANISHES * max(1.0, sizes[0])).sum()))
+    overlap = np.linalg.svd(left[:, -count:].conj().T @ right[-count:].conj().T, compute_uv=False)[-1]
+    return float(1 / max(overlap, _ROUNDING))
+
+
+def _clusters(values: np.ndarray, condition: np.ndarray, start: int) -> list[list[int]]:
+    """Group eigenvalues from number ``start`` on that rounding cannot tell apart."""
+    left = list(range(start, len(values)))
+    groups = []
+    while left:
+        group, waiting = [], [left.pop(0)]
+        while waiting:
+            k = waiting.pop()
+            group.append(k)
+            reach = _MANY * _ROUNDING * np.minimum(condition[k], condition)
+            close = [j for j in left if abs(values[k] - values[j]) <= reach[j]]
+            waiting += close
+            left = [j for j in left if j not in close]
+        groups.append(sorted(group))
+    return groups
+
+
+def _level(
+    matrix: np.ndarray, values: np.ndarray, condition: np.ndarray, members: list[int], found: Ratios, size: float
+) -> Cluster:
+    worst = float(condition[members].max())
+    if len(members) == 1:
+        modulus, turn, gap = (float(part[members[0]]) for part in found)
+        return Cluster(modulus, turn, gap, 1, "simple", worst)
+    mean = complex(values[members].mean())
+    split = complex(((values[members] - mean) ** 2).mean())
+    small = _MANY * _ROUNDING * len(values)
+    shifted = matrix - (0 if abs(mean) < small else mean) * np.eye(len(matrix))
+    sizes = np.linalg.svd(shifted, compute_uv=False)
+    vectors = int((sizes <= _VANISHES * max(1.0, sizes[0])).sum())
+    kind = "Jordan" if vectors < len(members) else "semisimple"
+    if abs(mean) < small:
+        return Cluster(-np.inf, 0.0, np.inf, len(members), kind, worst, 0.0)
+    phase = float(tidy(np.angle(np.array([mean])))[0])
+    log_modulus = float(np.log(abs(mean)) + np.log(size))
+    log_gap = float(np.log(-log_modulus))
+    return Cluster(log_modulus, phase, log_gap, len(members), kind, worst, float(split.real) * size**2)
