@@ -128,14 +128,19 @@ class Counts(Mapping[Any, int]):
 
 def _share(coefficient: Any, plan: Plan, walk: Walk, k: int) -> list[Any]:
     """Return what each power of a letter contributes to a value."""
-    low, step = walk.lows[k], plan.letters[k].step
-    return [coefficient * (low + step * power) for power in range(walk.tops[k] + 1)]
+    low, step = _plain(coefficient * walk.lows[k]), _plain(coefficient * plan.letters[k].step)
+    return [low + step * power for power in range(walk.tops[k] + 1)]
 
 
 def _sum(parts: list[Any]) -> Any:
-    total = sum(parts) if len(parts) != 1 else parts[0]
-    return int(total) if isinstance(total, Fraction) and total.denominator == 1 else total
+    return _plain(sum(parts[1:], parts[0]) if parts else 0)
+
+
+def _plain(value: Any) -> Any:
+    return int(value) if isinstance(value, Fraction) and value.denominator == 1 else value
 
 
 def _order(item: tuple[tuple[Any, ...], int]) -> tuple[Any, ...]:
+    if all(type(v) is int for v in item[0]):
+        return item[0]
     return tuple(v if isinstance(v, (int, Fraction)) else Fraction(float(v)) for v in item[0])

@@ -8,6 +8,7 @@ python-flint's fast multiplication and long chains.
 
 from __future__ import annotations
 
+import sys
 from collections.abc import Sequence
 from typing import Any
 
@@ -22,7 +23,7 @@ from .walk import Walk
 __all__ = ["characteristic_terms", "packed_total", "value_at_one"]
 
 #: Nanoseconds, about, of one operation on short numbers and per bit of long ones.
-_CALL, _SHIFT = 150.0, 0.03
+_CALL, _SHIFT = 150.0, 0.07
 _Terms = list[tuple[int, int]]
 
 
@@ -141,7 +142,7 @@ def _worth_a_polynomial(matrix: np.ndarray, count: int, starts: int, layout: Lay
     """Estimate whether the characteristic polynomial costs less than passing vectors."""
     size = len(matrix)
     small = _characteristic_layout(matrix, len(layout.tops))
-    polynomial = size**4 / 4 * _multiplication(small.length, _fast_integer() is not None)
+    polynomial = size**4 / 4 * _multiplication(small.length)
     half = _CALL + _SHIFT * layout.length / 2
     terms = size * small.slots / 4
     passing = starts * count * sum(len(entry.terms) for entry in matrix.flat) * half
@@ -175,7 +176,7 @@ def characteristic_terms(matrix: np.ndarray, letters: int) -> list[Sparse]:
     [{0: 1}, {1: -2}, {0: -1, 2: 1}]
     """
     layout = _characteristic_layout(matrix, letters)
-    fast = _fast_integer() if layout.length > _LONG else None
+    fast = _fast_integer(layout.length)
     packed = np.empty(matrix.shape, dtype=object)
     for index in np.ndindex(matrix.shape):
         entry: Any = matrix[index]
@@ -192,8 +193,9 @@ def _term(chi: list[Sparse], start: list[Any], index: int, layout: Layout) -> in
         return int(start[index])
     by_steps = (index - degree) * sum(map(len, steps)) * (_CALL + _SHIFT * layout.length / 2)
     if by_steps > _halving_cost(degree, index, layout):
-        return _by_halving(steps, start, index)
-    recent = list(start[:degree])
+        return _by_halving(steps, start, index, layout)
+    make = _fast_integer(layout.length) or int
+    recent = [make(number) for number in start[:degree]]
     for _ in range(index - degree + 1):
         recent.append(_following(steps, recent))
         del recent[0]
@@ -204,9 +206,9 @@ def _following(steps: list[_Terms], recent: Sequence[Any]) -> Any:
     return sum(_times(number, terms) for number, terms in zip(reversed(recent), steps, strict=False) if terms)
 
 
-def _by_halving(steps: list[_Terms], start: list[Any], index: int) -> int:
+def _by_halving(steps: list[_Terms], start: list[Any], index: int, layout: Layout) -> int:
     """Find the residue of x^(index // 2) modulo χ, square it, and put the terms of the sequence for powers of x."""
-    make = _fast_integer() or int
+    make = _fast_integer(layout.length / 2) or int
     degree = len(steps)
     terms = list(start[:degree])
     while len(terms) < 2 * degree:
@@ -246,12 +248,14 @@ def _reduced(numbers: list[Any], steps: list[_Terms]) -> list[Any]:
 # --- what multiplication costs
 
 
-#: Bits from which python-flint's integers are worth the conversion.
-_LONG = 4000
+#: Bits from which python-flint's integers are worth the conversion, and from which they are worth the import.
+_LONG, _VERY_LONG = 4_000, 200_000
 
 
-def _fast_integer() -> Any:
-    """Return the integers of python-flint, or None."""
+def _fast_integer(length: float) -> Any:
+    """Return the integers of python-flint, or None where Python's own do as well."""
+    if length < _LONG or (length < _VERY_LONG and "flint" not in sys.modules):
+        return None
     try:
         from flint import fmpz
     except ImportError:
@@ -259,13 +263,12 @@ def _fast_integer() -> Any:
     return fmpz
 
 
-def _multiplication(length: float, fast: bool) -> float:
+def _multiplication(length: float) -> float:
     """Estimate the nanoseconds of one multiplication."""
-    if fast:
-        return _CALL + 2.0 * length
-    return _CALL + 1.5 * (length / 30) ** 1.585
+    if _fast_integer(length) is not None:
+        return _CALL + (2.5 if length < _VERY_LONG else 7.0) * length
+    return _CALL + 4.0 * (length / 30) ** 1.585
 
 
 def _halving_cost(degree: int, count: int, layout: Layout) -> float:
-    last = _multiplication(layout.length / 2, _fast_integer() is not None)
-    return degree * (degree + 1) / 2 * (1.8 * last + 2 * _CALL * count.bit_length())
+    return degree * (degree + 1) / 2 * (1.8 * _multiplication(layout.length / 2) + 2 * _CALL * count.bit_length())

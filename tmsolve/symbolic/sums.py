@@ -148,7 +148,7 @@ def make_plan(chain: Chain, by: Sequence[str]) -> Plan:
     if len(set(names)) < len(names):
         raise ParameterError(f"each quantity is counted once, got {listing(names)}")
     observed = tuple(name for name in by if name in chain.observables)
-    plans = [_assemble(chain, observed, chosen, way) for way in (0, 1)]
+    plans = [_assemble(chain, observed, chosen, way) for way in range(max(len(ways) for _, ways in chosen))]
     best = min(plans, key=lambda plan: plan.slots)
     for letter in best.letters:
         if letter.span > _MOST_LEVELS:
@@ -190,7 +190,7 @@ def _energy(chain: Chain, terms: Sequence[Term]) -> list[tuple[str, list[_Conten
                 joined[constant] = _plus(joined.get(constant, {}), tables, number)
     columns: list[tuple[str, list[_Content]]] = []
     if apart or not free:
-        columns.append(("energy", [list(joined.items()), apart]))
+        columns.append(("energy", [list(joined.items()), *([apart] if len(apart) > 1 else [])]))
     for name in free:
         content = [(part[1], tables) for part, tables in parts.items() if part[0] == name]
         columns.append((f"dE/d{name}", [content]))
