@@ -1,0 +1,288 @@
+"""Symmetry-adapted states over the rationals, and the blocks that symmetric matrices have in them.
+
+In states that transform with a sign under some elements of the group (sums over orbits with signs)
+a representation of dimension d often occurs once for each time the full space contains it. A matrix
+with the symmetry then has one block there, of the size of the multiplicity, for d equal blocks of
+the full matrix. Entries of the block are sums of entries with rational coefficients.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Iterator, Sequence
+from dataclasses import dataclass
+from fractions import Fraction
+from typing import Any
+
+import numpy as np
+
+from .characters import Constituent, constituents, rational_average, sample
+from .groups import PermutationGroup
+from .permutations import compose, order_of, power
+from .refine import ranked
+from .signed import SignedOrbits
+
+__all__ = ["Adapted", "adapted_states"]
+
+#: Elements of the group that are tried as signs.
+_POOL = 32
+
+
+@dataclass(frozen=True, eq=False)
+class Adapted:
+    """Rational states in which a constituent occurs as few times as was found possible.
+
+    Attributes
+    ----------
+    constituent : Constituent
+        The representation.
+    members : tuple of tuple of int
+        Orbits of states; states that must have amplitude 0 are in none.
+    signs : tuple of tuple of int
+        The sign of each member relative to the first.
+    basis : ndarray of Fraction, shape (orbits, size)
+        Combinations of the signed sums over orbits; unit vectors in the ``pivots`` rows.
+    pivots : tuple of int
+        As many rows as columns.
+    times : int
+        How often the block occurs in the full matrix.
+    """
+
+    constituent: Constituent
+    members: tuple[tuple[int, ...], ...]
+    signs: tuple[tuple[int, ...], ...]
+    basis: np.ndarray
+    pivots: tuple[int, ...]
+    times: int
+
+    @property
+    def size(self) -> int:
+        """Number of rows of the block."""
+        return len(self.pivots)
+
+    def block(self, matrix: np.ndarray, number: Callable[[Fraction], Any] = Fraction) -> np.ndarray:
+        """Return the block of a matrix that has the symmetry.
+
+        Parameters
+        ----------
+        matrix : ndarray, shape (n, n)
+            Numbers, or objects with + − and the product with a number.
+        number : callable
+            Makes the numbers that the entries can be multiplied by from fractions.
+
+        Returns
+        -------
+        ndarray of object, shape (size, size)
+            Its eigenvalues, each ``times`` times, are eigenvalues of the matrix.
+        """
+        # Python's own integers do not overflow.
+        matrix = matrix.astype(object)
+        lumped = np.empty((self.size, len(self.members)), dtype=object)
+        for a, pivot in enumerate(self.pivots):
+            for b, column in enumerate(self.members):
+                lumped[a, b] = _signed_sum([matrix[i, column[0]] for i in self.members[pivot]], self.signs[pivot])
+        if self.size == len(self.members):
+            return lumped
+        result = np.empty((self.size, self.size), dtype=object)
+        for a in range(self.size):
+            for b in range(self.size):
+                result[a, b] = _combination(lumped[a], self.basis[:, b], number)
+        return result
+
+
+def adapted_states(
+    group: PermutationGroup, hints: Sequence[np.ndarray] = (), seed: int = 5
+) -> list[Adapted]:
+    """Return rational states of every constituent of the permutation representation.
+
+    Parameters
+    ----------
+    group : PermutationGroup
+        The group.
+    hints : sequence of permutations
+        Elements of it that make good signs, such as exchanges of two states.
+    seed : int
+        Chooses random elements.
+
+    Returns
+    -------
+    list of Adapted
+        The trivial representation first; sizes × times add up to n. A block holds each of its
+        constituent's complex representations once, except where no such states were found: there the
+        block is a whole number of times as large, and ``times`` as much smaller.
+
+    Examples
+    --------
+    Five equivalent states: the matrix with a on the diagonal and b elsewhere has the eigenvalue
+    a + 4b once and a − b four times.
+
+    >>> from tmsolve.symmetry.search import automorphisms
+    >>> parts = adapted_states(automorphisms(np.eye(5, dtype=int)))
+    >>> [(part.block(np.eye(5, dtype=int) * 6 + 1).tolist(), part.times) for part in parts]
+    [([[11]], 1), ([[6]], 4)]
+    """
+    elements = sample(group, seed)
+    parts = constituents(group, elements)
+    pool = _pool(group, [*hints, *group.generators, *elements])
+    starts = list(_starts(group, pool))
+    shares = _shares(starts, parts)
+    result = []
+    for k, part in enumerate(parts):
+        target = part.multiplicity * part.conjugates
+        cut = _linear(group, part) if part.dimension == 1 and part.conjugates == 1 else None
+        if cut is None:
+            cut = _smallest(starts, shares[:, k], target, part.dimension)
+            cut = _improved(cut, part, pool, target)
+        result.append(_adapted(group, cut, part, parts, elements))
+    return result
+
+
+def _pool(group: PermutationGroup, candidates: Sequence[np.ndarray]) -> list[np.ndarray]:
+    """Return different elements, those that are their own inverse first."""
+    found: dict[bytes, np.ndarray] = {}
+    products = [compose(a, b) for a in group.generators for b in group.generators]
+    for g in [*candidates, *products][: 4 * _POOL]:
+        order = order_of(g)
+        for image in (power(g, order // 2), g) if order % 2 == 0 else (g,):
+            if order > 1:
+                found.setdefault(image.tobytes(), image)
+    return sorted(found.values(), key=lambda g: order_of(g) > 2)[:_POOL]
+
+
+def _starts(group: PermutationGroup, pool: Sequence[np.ndarray]) -> Iterator[SignedOrbits]:
+    n = group.degree
+    single = SignedOrbits.alone(n)
+    yield single
+    for x in np.unique(group.orbits, return_index=True)[1]:
+        yield SignedOrbits(ranked(group.pair_orbits[x]), np.ones(n, dtype=int))
+    for g in pool:
+        for sign in (1, -1):
+            yield single.joined([(g, sign)])
+
+
+def _shares(cuts: Sequence[SignedOrbits], parts: Sequence[Constituent]) -> np.ndarray:
+    """Return the dimension that each constituent has in each space of functions."""
+    flat = np.array([part.projector.ravel() for part in parts])
+    return np.array([np.rint(flat @ cut.weights().ravel()) for cut in cuts]).astype(int)
+
+
+def _linear(group: PermutationGroup, part: Constituent) -> SignedOrbits:
+    """Return the functions that every element multiplies by its sign."""
+    n = group.degree
+    single = SignedOrbits.alone(n)
+    return single.joined([(g, round(float(part.characters(g)[0].real))) for g in group.generators])
+
+
+def _smallest(cuts: Sequence[SignedOrbits], shares: np.ndarray, target: int, dimension: int) -> SignedOrbits:
+    """Return the cut in which a constituent occurs least often, the smallest of those."""
+    useful = [i for i, share in enumerate(shares) if share and dimension % (share // target) == 0]
+    return cuts[min(useful, key=lambda i: (shares[i], cuts[i].size))]
+
+
+def _improved(cut: SignedOrbits, part: Constituent, pool: Sequence[np.ndarray], target: int) -> SignedOrbits:
+    """Ask for further signs as long as that leaves the constituent in, less often or in fewer functions."""
+    share = int(_shares([cut], [part])[0, 0])
+    for g in pool:
+        if (share, cut.size) == (target, target):
+            break
+        for sign in (1, -1):
+            smaller = cut.joined([(g, sign)])
+            fewer = int(_shares([smaller], [part])[0, 0])
+            useful = fewer and part.dimension % (fewer // target) == 0
+            if useful and (fewer, smaller.size) < (share, cut.size):
+                cut, share = smaller, fewer
+                break
+    return cut
+
+
+def _adapted(
+    group: PermutationGroup,
+    cut: SignedOrbits,
+    part: Constituent,
+    parts: Sequence[Constituent],
+    elements: Sequence[np.ndarray],
+) -> Adapted:
+    members = cut.members()
+    signs = [[int(cut.signs[i]) for i in each] for each in members]
+    share = int(_shares([cut], [part])[0, 0])
+    times = part.dimension * part.multiplicity * part.conjugates // share
+    frozen = tuple(map(tuple, members)), tuple(map(tuple, signs))
+    if share == cut.size:
+        return Adapted(part, *frozen, _unit(share), tuple(range(share)), times)
+    average, value = _telling(group, part, parts, elements)
+    pairs = group.pair_orbits
+    lumped = [
+        [_signed_sum([average[pairs[i, column[0]]] for i in rows], row_signs) for column in members]
+        for rows, row_signs in zip(members, signs, strict=True)
+    ]
+    for a in range(cut.size):
+        lumped[a][a] -= value
+    basis, pivots = _kernel(lumped)
+    if len(pivots) != share:
+        raise ArithmeticError(f"a constituent should have {share} states among signed orbits and has {len(pivots)}")
+    return Adapted(part, *frozen, basis, pivots, times)
+
+
+def _unit(n: int) -> np.ndarray:
+    return np.array([[Fraction(i == j) for j in range(n)] for i in range(n)], dtype=object).reshape(n, n)
+
+
+def _signed_sum(terms: Sequence[Any], signs: Sequence[int]) -> Any:
+    total = terms[0]
+    for term, sign in zip(terms[1:], signs[1:], strict=True):
+        total = total + term if sign > 0 else total - term
+    return total
+
+
+def _combination(terms: Iterable[Any], coefficients: Iterable[Fraction], number: Callable[[Fraction], Any]) -> Any:
+    total = None
+    for term, c in zip(terms, coefficients, strict=True):
+        if c == 0:
+            continue
+        part = term if abs(c) == 1 else term * number(abs(c))
+        if total is None:
+            total = part if c > 0 else -part
+        else:
+            total = total + part if c > 0 else total - part
+    return total
+
+
+def _telling(
+    group: PermutationGroup, part: Constituent, parts: Sequence[Constituent], elements: Sequence[np.ndarray]
+) -> tuple[list[Fraction], Fraction]:
+    """Return a rational combination of class averages and its value on one constituent, different from the others."""
+    values = [[each.average(g) for g in elements] for each in parts]
+    own = parts.index(part)
+    rng = np.random.default_rng(3)
+    for span in range(1, 1000):
+        weights = rng.integers(-span, span + 1, size=len(elements)).tolist()
+        sums = [sum((w * v for w, v in zip(weights, row, strict=True)), Fraction(0)) for row in values]
+        if sums.count(sums[own]) == 1:
+            return rational_average(group, elements, weights), sums[own]
+    raise ArithmeticError("the class averages chosen do not tell two representations apart")
+
+
+def _kernel(rows: list[list[Fraction]]) -> tuple[np.ndarray, tuple[int, ...]]:
+    """Return a basis of the kernel, as columns, with unit vectors in the rows returned (Gauss and Jordan)."""
+    n = len(rows)
+    rows = [row.copy() for row in rows]
+    leads: list[int] = []
+    for column in range(n):
+        top = len(leads)
+        pivot = next((r for r in range(top, n) if rows[r][column]), None)
+        if pivot is None:
+            continue
+        rows[top], rows[pivot] = rows[pivot], rows[top]
+        factor = rows[top][column]
+        rows[top] = [x / factor if x else x for x in rows[top]]
+        for r in range(n):
+            factor = rows[r][column]
+            if r != top and factor:
+                rows[r] = [x - factor * y if y else x for x, y in zip(rows[r], rows[top], strict=True)]
+        leads.append(column)
+    free = [c for c in range(n) if c not in set(leads)]
+    basis = np.full((n, len(free)), Fraction(0), dtype=object)
+    for k, column in enumerate(free):
+        basis[column, k] = Fraction(1)
+        for row, lead in enumerate(leads):
+            basis[lead, k] = -rows[row][column]
+    return basis, tuple(free)
