@@ -319,7 +319,7 @@ def test_text_and_latex():
     text = str(form)
     assert "Z_N = (exp(beta*J) + 2)**N + 2*(exp(beta*J) - 1)**N" in text
     assert "f = -log(exp(beta*J) + 2)/beta" in text
-    assert "1 x 1, 2 times: differences of equivalent states" in text
+    assert "1 x 1, 2 times: standard representation of the permutations of the 3 states" in text
     assert repr(form) == "<ClosedForm of 'chain': closed form, 3 x 3>"
     assert form._repr_latex_() == (
         r"$\displaystyle Z_{N} = \left(e^{\beta J} + 2\right)^{N} + 2 \left(e^{\beta J} - 1\right)^{N}$"
@@ -328,5 +328,5 @@ def test_text_and_latex():
 
 def test_blocks_are_labelled_by_what_they_do():
     labels = [b.label for b in closed_form(ladder()).blocks]
-    assert labels[0] == "symmetric: equal on equivalent states"
+    assert labels[0] == "even under reversal of the states and exchange of a and b"
     assert "odd under reversal of the states, even under exchange of a and b" in labels

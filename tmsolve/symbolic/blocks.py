@@ -1,28 +1,30 @@
-"""Splitting a transfer matrix by verified permutations of its states, in exact arithmetic.
+"""Splitting a transfer matrix by all permutations that leave it unchanged, in exact arithmetic.
 
-Commuting involutions (spin flip, leg exchange) sort signed sums of states into even and odd
-blocks. In the block even under all of them, the orbits of the whole group give the *lumped*
-matrix, which carries the Perron root, and the differences within orbits give the rest.
-Blocks that are not connected fall into their strong components.
+The symmetries are searched for in the table of entries: equal polynomials are equal numbers for
+all values of the parameters. Every irreducible representation of their group gives one block,
+with its dimension as multiplicity. The block of the trivial representation is the *lumped* matrix
+over orbits, which carries the Perron root. Blocks that are not connected fall into their strong
+components.
 """
 
 from __future__ import annotations
 
-import itertools
 from collections.abc import Callable, Hashable, Sequence
 from dataclasses import dataclass, replace
 from typing import Any, TypeVar
 
 import numpy as np
 
+from ..symmetry.adapted import adapted_states
+from ..symmetry.refine import class_members, equitable
+from ..symmetry.search import automorphisms
+from .labels import block_labels
 from .multiplicity import both
-from .permutations import Permutation, involutions, orbits
+from .permutations import Permutation, numbered
 
 __all__ = ["Block", "components", "lump", "merged", "split"]
 
 Key = TypeVar("Key", bound=Hashable)
-
-_DIFFERENCES = "differences of equivalent states"
 
 
 @dataclass(frozen=True, eq=False)
@@ -68,84 +70,45 @@ def lump(matrix: np.ndarray, classes: Sequence[Sequence[int]]) -> np.ndarray:
     return lumped
 
 
-def split(matrix: np.ndarray, permutations: Sequence[Permutation]) -> list[Block]:
-    """Return blocks whose sizes add up to that of the matrix and whose spectra add up to its spectrum."""
-    n = len(matrix)
-    if not permutations:
-        return components(Block(matrix, "the whole matrix", positive=True))
-    chosen = involutions(permutations)
-    classes = orbits(permutations, n)
+def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
+    """Return blocks whose sizes times multiplicities add up to the size of the matrix, and so do their spectra.
+
+    Parameters
+    ----------
+    matrix : ndarray of polynomials, shape (n, n)
+        The matrix.
+    named : sequence of Permutation
+        Symmetries of it that give blocks their labels.
+    """
+    table = numbered(matrix)
+    group = automorphisms(table)
+    if group.order == 1:
+        whole = Block(matrix, "the whole matrix", positive=True)
+        return [part for block in _alike(whole, np.arange(len(matrix)), table) for part in components(block)]
+    parts = adapted_states(group, [p.image for p in named])
+    labels = block_labels([part.constituent for part in parts], named)
+    domain = matrix[0, 0].ring.domain
     blocks: list[Block] = []
-    for signs in itertools.product((1, -1), repeat=len(chosen)):
-        signed = _signed_orbits(chosen, signs, n)
-        if not signed:
-            continue
-        reduced = _signed_lump(matrix, signed)
-        if all(sign == 1 for sign in signs):
-            blocks.extend(_lumped_and_rest(reduced, signed, classes))
-        else:
-            blocks.append(Block(reduced, _parities(chosen, signs)))
+    for k, (part, label) in enumerate(zip(parts, labels, strict=True)):
+        block = Block(part.block(matrix, lambda c: domain(c.numerator, c.denominator)), label, part.times, k == 0)
+        blocks.extend(_alike(block, group.orbits, table) if k == 0 else [block])
     return [component for block in blocks for component in components(block)]
 
 
-def _signed_orbits(chosen: Sequence[Permutation], signs: Sequence[int], n: int) -> list[dict[int, int]]:
-    """Return orbits of the involutions with a sign per state; those that contradict themselves are left out."""
-    orbits_: list[dict[int, int]] = []
-    met: set[int] = set()
-    for start in range(n):
-        if start in met:
-            continue
-        sign_of, queue, consistent = {start: 1}, [start], True
-        while queue:
-            i = queue.pop()
-            for permutation, sign in zip(chosen, signs, strict=True):
-                j = int(permutation.image[i])
-                if j not in sign_of:
-                    sign_of[j] = sign * sign_of[i]
-                    queue.append(j)
-                consistent &= sign_of[j] == sign * sign_of[i]
-        met.update(sign_of)
-        if consistent:
-            orbits_.append(sign_of)
-    return orbits_
-
-
-def _signed_lump(matrix: np.ndarray, signed: Sequence[dict[int, int]]) -> np.ndarray:
-    reduced = np.empty((len(signed), len(signed)), dtype=object)
-    starts = [next(iter(orbit)) for orbit in signed]
-    for a, orbit in enumerate(signed):
-        for b, column in enumerate(starts):
-            total = matrix[starts[a], column]
-            for i, sign in list(orbit.items())[1:]:
-                total = total + matrix[i, column] if sign == 1 else total - matrix[i, column]
-            reduced[a, b] = total
-    return reduced
-
-
-def _lumped_and_rest(
-    even: np.ndarray, signed: Sequence[dict[int, int]], classes: Sequence[Sequence[int]]
-) -> list[Block]:
-    class_of = {i: c for c, members in enumerate(classes) for i in members}
-    groups: dict[int, list[int]] = {}
-    for a, orbit in enumerate(signed):
-        groups.setdefault(class_of[next(iter(orbit))], []).append(a)
-    grouped = list(groups.values())
-    blocks = [Block(lump(even, grouped), "symmetric: equal on equivalent states", positive=True)]
+def _alike(block: Block, orbits: np.ndarray, table: np.ndarray) -> list[Block]:
+    """Split the block of the orbits further where counting cannot tell orbits apart."""
+    classes = equitable(table)
+    if classes.max() == orbits.max():
+        return [block]
+    _, first = np.unique(orbits, return_index=True)
+    grouped = [list(map(int, members)) for members in class_members(classes[first])]
     rest = [(a, members[0]) for members in grouped for a in members[1:]]
-    if rest:
-        difference = np.empty((len(rest), len(rest)), dtype=object)
-        for i, (a, _) in enumerate(rest):
-            for j, (b, reference) in enumerate(rest):
-                difference[i, j] = even[a, b] - even[a, reference]
-        blocks.append(Block(difference, _DIFFERENCES))
-    return blocks
-
-
-def _parities(chosen: Sequence[Permutation], signs: Sequence[int]) -> str:
-    odd = [p.label for p, sign in zip(chosen, signs, strict=True) if sign == -1]
-    even = [p.label for p, sign in zip(chosen, signs, strict=True) if sign == 1]
-    parts = [f"odd under {' and '.join(odd)}"] + ([f"even under {' and '.join(even)}"] if even else [])
-    return ", ".join(parts)
+    difference = np.empty((len(rest), len(rest)), dtype=object)
+    for i, (a, _) in enumerate(rest):
+        for j, (b, reference) in enumerate(rest):
+            difference[i, j] = block.matrix[a, b] - block.matrix[a, reference]
+    lumped = replace(block, matrix=lump(block.matrix, grouped))
+    return [lumped, Block(difference, "differences of states with equal sums of weights", block.multiplicity)]
 
 
 def components(block: Block, present: Callable[[Any], bool] = bool) -> list[Block]:
@@ -154,23 +117,20 @@ def components(block: Block, present: Callable[[Any], bool] = bool) -> list[Bloc
     reach |= np.eye(block.size, dtype=bool)
     for k in range(block.size):
         reach |= reach[:, k, None] & reach[None, k, :]
-    both = reach & reach.T
-    parts = {tuple(np.flatnonzero(row)): None for row in both}
+    strong = reach & reach.T
+    parts = {tuple(np.flatnonzero(row)): None for row in strong}
     return [replace(block, matrix=block.matrix[np.ix_(part, part)]) for part in parts]
 
 
 def merged(blocks: Sequence[tuple[Block, Key]]) -> list[tuple[Block, Key]]:
-    """Count blocks with the same key (their characteristic polynomial) as one, the positive ones first.
+    """Count blocks with the same label and the same key (their characteristic polynomial) as one, positive ones first.
 
     Positive blocks stay apart from the others: two of them with one Perron root are a tie.
     """
     found: dict[Any, tuple[Block, Key]] = {}
     for block, key in sorted(blocks, key=lambda pair: not pair[0].positive):
-        name = (key, block.size, block.positive)
-        if name not in found:
-            found[name] = block, key
-            continue
-        first = found[name][0]
-        label = first.label if first.label == block.label else _DIFFERENCES
-        found[name] = replace(first, multiplicity=both(first.multiplicity, block.multiplicity), label=label), key
+        name = (key, block.size, block.positive, block.label)
+        if name in found:
+            block = replace(found[name][0], multiplicity=both(found[name][0].multiplicity, block.multiplicity))
+        found[name] = block, key
     return list(found.values())

@@ -1,7 +1,7 @@
-"""Permutations of the cut states that obviously might leave a transfer matrix unchanged.
+"""Permutations of the cut states that have a name: what they do to local states or to legs.
 
-Candidates are named after what they do to the local states; a candidate counts only after
-it has been compared with the matrix entry by entry.
+A candidate counts only after it has been compared with the matrix entry by entry. The symmetries
+of a matrix are searched for without names; these are for telling what they mean.
 """
 
 from __future__ import annotations
@@ -13,18 +13,31 @@ from typing import Any
 
 import numpy as np
 
-__all__ = ["Permutation", "involutions", "numbered", "orbits", "verified"]
+__all__ = ["Permutation", "numbered", "orbits", "verified"]
 
-#: Most states of one site for which every exchange of two states is tried.
+#: Most states of one site for which every exchange of two states is tried; beyond, neighbours only.
 _EXCHANGES = 16
 
 
 @dataclass(frozen=True, eq=False)
 class Permutation:
-    """Where each basis state goes, and what that means for the local states."""
+    """Where each basis state goes, and what that means for the local states.
+
+    Attributes
+    ----------
+    label : str
+        What it does.
+    image : ndarray of int, shape (n,)
+        Where it goes.
+    move : tuple
+        What kind of move it is, in one word, and what it moves: ("reversal", name of the sites),
+        ("rotation", name, q), ("reflection", name, q), ("exchange", name, i, j), ("legs", a, b),
+        ("leg rotation", number of legs), ("leg reflection",), or ("combined",).
+    """
 
     label: str
     image: np.ndarray
+    move: tuple[Any, ...] = ("combined",)
 
     def commutes_with(self, table: np.ndarray) -> bool:
         """Whether a matrix of entry numbers is unchanged."""
@@ -54,13 +67,15 @@ def verified(table: np.ndarray, sites: Sequence[tuple[str, int]], sizes: Sequenc
         return []
     basis = np.array(list(itertools.product(*(range(size) for size in sizes))), dtype=np.intp).reshape(-1, len(sites))
     found: list[Permutation] = []
-    images: set[bytes] = {np.arange(len(basis)).tobytes()}
-    for label, moved in _candidates(basis, sites, sizes):
+    met: set[tuple[str, bytes]] = set()
+    for label, move, moved in _candidates(basis, sites, sizes):
         image = _number(moved, sizes)
-        if image.tobytes() in images:
+        # One permutation may be a move of several kinds: reversing three states exchanges the outer two.
+        key = (str(move[0]), image.tobytes())
+        if key in met or np.array_equal(image, np.arange(len(basis))):
             continue
-        images.add(image.tobytes())
-        candidate = Permutation(label, image)
+        met.add(key)
+        candidate = Permutation(label, image, move)
         if candidate.commutes_with(table):
             found.append(candidate)
     return found
@@ -73,51 +88,65 @@ def _number(states: np.ndarray, sizes: Sequence[int]) -> np.ndarray:
     return number
 
 
-def _candidates(basis: np.ndarray, sites: Any, sizes: Any) -> Iterator[tuple[str, np.ndarray]]:
+def _candidates(basis: np.ndarray, sites: Any, sizes: Any) -> Iterator[tuple[str, tuple, np.ndarray]]:
     kinds = list(dict.fromkeys(kind for kind, _ in sites))
     groups = [("", kinds)] + ([(f" of {kind}", [kind]) for kind in kinds] if len(kinds) > 1 else [])
     exchanges = list(_site_exchanges(basis, sites, sizes, kinds))
     for name, group in groups:
         columns = [i for i, (kind, _) in enumerate(sites) if kind in group]
-        flipped = basis.copy()
-        flipped[:, columns] = np.array(sizes)[columns] - 1 - basis[:, columns]
-        yield f"reversal of the states{name}", flipped
+        yield f"reversal of the states{name}", ("reversal", name), _reversed(basis, columns, sizes)
     yield from exchanges
     for name, group in groups:
         columns = [i for i, (kind, _) in enumerate(sites) if kind in group]
-        for label, moved in exchanges:
-            swapped = moved.copy()
-            swapped[:, columns] = np.array(sizes)[columns] - 1 - moved[:, columns]
-            yield f"{label} with reversal of the states{name}", swapped
+        for label, _, moved in exchanges:
+            swapped = _reversed(moved, columns, sizes)
+            yield f"{label} with reversal of the states{name}", ("combined",), swapped
         yield from _state_moves(basis, columns, {sizes[i] for i in columns}, name)
 
 
-def _state_moves(basis: np.ndarray, columns: list[int], sizes: set[int], name: str) -> Iterator[tuple[str, np.ndarray]]:
+def _reversed(states: np.ndarray, columns: list[int], sizes: Any) -> np.ndarray:
+    result = states.copy()
+    result[:, columns] = np.array(sizes)[columns] - 1 - states[:, columns]
+    return result
+
+
+def _state_moves(
+    basis: np.ndarray, columns: list[int], sizes: set[int], name: str
+) -> Iterator[tuple[str, tuple, np.ndarray]]:
     if len(sizes) != 1:
         return
     (q,) = sizes
     identity = np.arange(q)
-    maps = [(f"rotation of the states{name}", (identity + 1) % q), (f"reflection of the states{name}", -identity % q)]
-    for i, j in itertools.combinations(range(q if q <= _EXCHANGES else 0), 2):
+    maps: list[tuple[str, tuple, np.ndarray]] = []
+    if q > 2:
+        maps.append((f"rotation of the states{name}", ("rotation", name, q), (identity + 1) % q))
+        maps.append((f"reflection of the states{name}", ("reflection", name, q), -identity % q))
+    for i, j in itertools.combinations(range(q), 2) if q <= _EXCHANGES else itertools.pairwise(range(q)):
         swap = identity.copy()
         swap[[i, j]] = j, i
-        maps.append((f"exchange of states {i} and {j}{name}", swap))
-    for label, image in maps:
+        maps.append((f"exchange of states {i} and {j}{name}", ("exchange", name, i, j), swap))
+    for label, move, image in maps:
         moved = basis.copy()
         moved[:, columns] = image[basis[:, columns]]
-        yield label, moved
+        yield label, move, moved
 
 
-def _site_exchanges(basis: np.ndarray, sites: Any, sizes: Any, kinds: list[str]) -> Iterator[tuple[str, np.ndarray]]:
+def _site_exchanges(
+    basis: np.ndarray, sites: Any, sizes: Any, kinds: list[str]
+) -> Iterator[tuple[str, tuple, np.ndarray]]:
     """Exchange kinds of site in every cell of the cut: legs of a ladder."""
-    maps = [(f"exchange of {a} and {b}", {a: b, b: a}) for a, b in itertools.combinations(kinds, 2)]
+    maps: list[tuple[str, tuple, dict]] = [
+        (f"exchange of {a} and {b}", ("legs", a, b), {a: b, b: a}) for a, b in itertools.combinations(kinds, 2)
+    ]
     if len(kinds) > 2:
-        maps.append(("reversal of the legs", dict(zip(kinds, reversed(kinds), strict=True))))
-        maps.append(("rotation of the legs", dict(zip(kinds, [*kinds[1:], kinds[0]], strict=True))))
-    for label, names in maps:
+        mirrored = dict(zip(kinds, reversed(kinds), strict=True))
+        turned = dict(zip(kinds, [*kinds[1:], kinds[0]], strict=True))
+        maps.append(("reflection of the legs", ("leg reflection",), mirrored))
+        maps.append(("rotation of the legs", ("leg rotation", len(kinds)), turned))
+    for label, move, names in maps:
         targets = [(names.get(kind, kind), cell) for kind, cell in sites]
         if all(t in sites and sizes[sites.index(t)] == sizes[i] for i, t in enumerate(targets)):
-            yield label, basis[:, [sites.index(t) for t in targets]]
+            yield label, move, basis[:, [sites.index(t) for t in targets]]
 
 
 def orbits(permutations: Sequence[Permutation], n: int) -> list[list[int]]:
@@ -138,32 +167,3 @@ def orbits(permutations: Sequence[Permutation], n: int) -> list[list[int]]:
     for i in range(n):
         classes.setdefault(find(i), []).append(i)
     return list(classes.values())
-
-
-def involutions(permutations: Sequence[Permutation], limit: int = 4) -> list[Permutation]:
-    """Choose permutations that are their own inverse and commute with each other.
-
-    Powers of a rotation count; at most ``limit`` are taken, in the order given.
-    """
-    chosen: list[Permutation] = []
-    seen = {np.arange(len(p.image)).tobytes() for p in permutations[:1]}
-    for permutation in permutations:
-        image = _square_root_of_one(permutation.image)
-        if image is None or len(chosen) == limit:
-            continue
-        commutes = all(np.array_equal(image[c.image], c.image[image]) for c in chosen)
-        if commutes and image.tobytes() not in seen:
-            label = permutation.label if np.array_equal(image, permutation.image) else f"repeated {permutation.label}"
-            chosen.append(Permutation(label, image))
-            seen |= {image[np.frombuffer(s, dtype=np.intp)].tobytes() for s in seen}
-    return chosen
-
-
-def _square_root_of_one(image: np.ndarray) -> np.ndarray | None:
-    """Return the power of a permutation that has order two, if there is one."""
-    identity = np.arange(len(image))
-    powers = [image]
-    while not np.array_equal(powers[-1], identity):
-        powers.append(image[powers[-1]])
-    order = len(powers)
-    return powers[order // 2 - 1] if order % 2 == 0 else None

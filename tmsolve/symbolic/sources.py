@@ -17,6 +17,7 @@ from typing import Any
 import numpy as np
 
 from ..declare.chain import Chain
+from ..symmetry.refine import class_members, equitable
 from ..tabulate.colours import numbers_of_colours
 from .blocks import Block, components
 from .colour_matrix import ColourMatrix, tilted_colour_matrix
@@ -24,7 +25,7 @@ from .field import Element, Poly, RootField, derivative
 from .field_text import FieldWriter
 from .jet import Jet
 from .matrix import SymbolicMatrix, tilted_matrix
-from .permutations import numbered, orbits, verified
+from .permutations import numbered
 from .polynomials import berkowitz, factors
 from .readable import Writer
 from .spectrum import Factor, Spectrum, leading_factor
@@ -131,19 +132,16 @@ def _larger(matrix: SymbolicMatrix, writer: Writer, new: Factor, old: Factor) ->
 
 
 def _lumped(matrix: SymbolicMatrix, keep_sources: bool) -> np.ndarray:
-    """Average the matrix over equivalent states.
+    """Average the matrix over states that counting weights cannot tell apart.
 
-    To first order the average over the symmetries of the unperturbed matrix is enough,
-    because its Perron vectors are symmetric; to second order the symmetries must be those of
-    the sources too.
+    To first order the classes of the unperturbed matrix are enough, because its Perron vectors
+    are constant on them; to second order the classes must be those with the sources too.
     """
     entries = matrix.entries
     if isinstance(matrix, ColourMatrix):
         return entries
     table = numbered(entries) if keep_sources else numbered(_each_value(entries))
-    left = matrix.window.left
-    permutations = verified(table, left, [matrix.window.sizes[site] for site in left])
-    classes = orbits(permutations, len(entries))
+    classes = class_members(equitable(table))
     domain = matrix.alphabet.ring.domain
     lumped = np.empty((len(classes), len(classes)), dtype=object)
     for a, rows in enumerate(classes):
