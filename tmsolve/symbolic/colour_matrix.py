@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import itertools
-from collections.abc import Callable, Mapping
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, replace
 from fractions import Fraction
 from functools import partial
@@ -11,6 +11,7 @@ from typing import Any
 
 import numpy as np
 
+from ..assemble.window import ChainWindow
 from ..declare.chain import Chain
 from ..tabulate.colours import colour_symbol
 from .alphabet import Alphabet, Scale
@@ -23,7 +24,7 @@ from .jet import Jet
 from .matrix import Insertions, SymbolicMatrix
 from .young import dimension_in, shapes
 
-__all__ = ["ColourMatrix", "colour_matrix", "inserted_colour_matrices", "tilted_colour_matrix"]
+__all__ = ["ColourMatrix", "colour_matrix", "colour_pieces", "inserted_colour_matrices", "tilted_colour_matrix"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,8 +35,8 @@ class ColourMatrix(SymbolicMatrix):
     ----------
     number : sympy symbol
         The number of colours q.
-    special : int
-        How many colours something singles out.
+    tables : ColourTables
+        What it was made of.
     boxes : int
         Largest number of boxes below the first row in the representations that are asked for.
     patterns : mapping of Pattern to int
@@ -45,10 +46,15 @@ class ColourMatrix(SymbolicMatrix):
     """
 
     number: Any
-    special: int
+    tables: ColourTables
     boxes: int
     patterns: Mapping[Pattern, int]
     overlays: tuple[Overlay, ...]
+
+    @property
+    def special(self) -> int:
+        """How many colours something singles out."""
+        return self.tables.palette.special
 
     @property
     def rows(self) -> Any:
@@ -96,6 +102,15 @@ def tilted_colour_matrix(chain: Chain, first: str, second: str | None = None) ->
     return _assembled(chain, colour_tables(chain, [first] if second is None else [first, second]), Jet)
 
 
+def colour_pieces(matrix: ColourMatrix, windows: Sequence[ChainWindow]) -> list[SymbolicMatrix]:
+    """Assemble other windows of the same chain on symmetric functions, with the same symbols."""
+    found = []
+    for window in windows:
+        scale, _, entries = _reduced(matrix.tables.on(window), matrix.alphabet, matrix.number, lambda element: element)
+        found.append(SymbolicMatrix(window, matrix.alphabet, entries, scale))
+    return found
+
+
 def inserted_colour_matrices(chain: Chain, first: str, second: str) -> Insertions:
     """Put two observables into the block of symmetric functions, see `inserted_matrices`.
 
@@ -126,24 +141,34 @@ def _part(jets: np.ndarray, i: int) -> np.ndarray:
 
 
 def _assembled(chain: Chain, tables: ColourTables, wrap: Callable[[Any], Any]) -> ColourMatrix:
-    """Turn tables into ring elements, sum out the interior, and sort the result by patterns."""
+    """Assemble a matrix with symbols of its own."""
     number = colour_symbol(chain)
-    window, palette = tables.window, tables.palette
-    local = (*tables.factors, *tables.sources)
-    terms = (entry for table in local for entry in table.terms.ravel())
+    terms = (entry for local in (*tables.factors, *tables.sources) for entry in local.terms.ravel())
     alphabet = Alphabet.of([*terms, polynomial_terms(number)], counts=(number,))
+    scale, entries, whole = _reduced(tables, alphabet, number, wrap)
+    left = tables.window.left
+    patterns = {p: len(tables.palette.colours(p, left)) for p in tables.palette.patterns(left)}
+    boxes = max(patterns.values(), default=0)
+    return ColourMatrix(tables.window, alphabet, whole, scale, number, tables, boxes, patterns, tuple(entries))
+
+
+def _reduced(
+    tables: ColourTables, alphabet: Alphabet, number: Any, wrap: Callable[[Any], Any]
+) -> tuple[Scale, list[Overlay], np.ndarray]:
+    """Turn tables into ring elements, sum out the interior, and sort the result by patterns."""
+    window, palette = tables.window, tables.palette
     scale, factors, sources = _in_ring(tables, alphabet, wrap)
 
     def others(named: int) -> Any:
         return wrap(_others(alphabet, number, palette.special + named))
 
+    def falling(named: int, count: int) -> Any:
+        return wrap(_falling(alphabet, number - palette.special, named, count))
+
     reduced = window.reduce(PatternAlgebra(palette, others), factors, [(table.sites, table) for table in sources])
-    patterns = {p: len(palette.colours(p, window.left)) for p in palette.patterns(window.left)}
     entries = overlays(palette, reduced, window.left, window.right)
-    zero = wrap(alphabet.ring.zero)
-    whole = lumped(entries, list(patterns), zero, lambda a, m: wrap(_falling(alphabet, number - palette.special, a, m)))
-    boxes = max(patterns.values(), default=0)
-    return ColourMatrix(window, alphabet, whole, scale, number, palette.special, boxes, patterns, tuple(entries))
+    rows, columns = (list(palette.patterns(cut)) for cut in (window.left, window.right))
+    return scale, entries, lumped(entries, rows, columns, wrap(alphabet.ring.zero), falling)
 
 
 def _in_ring(

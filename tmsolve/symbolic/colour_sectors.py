@@ -71,7 +71,11 @@ def overlays(palette: Palette, table: PatternTable, left: Sequence[Any], right: 
 
 
 def lumped(
-    entries: Sequence[Overlay], patterns: Sequence[Pattern], zero: Any, falling: Callable[[int, int], Any]
+    entries: Sequence[Overlay],
+    rows: Sequence[Pattern],
+    columns: Sequence[Pattern],
+    zero: Any,
+    falling: Callable[[int, int], Any],
 ) -> np.ndarray:
     """Return the matrix on functions that are the same for all configurations of a pattern.
 
@@ -79,19 +83,19 @@ def lumped(
     ----------
     entries : sequence of Overlay
         The matrix.
-    patterns : sequence of Pattern
-        Its rows.
+    rows, columns : sequence of Pattern
+        The patterns on either cut.
     zero : ring element
         Zero.
     falling : callable
         ``falling(a, m)`` is the product (n − a)(n − a − 1) … of m factors.
     """
-    place = {pattern: i for i, pattern in enumerate(patterns)}
-    matrix = np.full((len(patterns), len(patterns)), None, dtype=object)
+    row, column = ({pattern: i for i, pattern in enumerate(patterns)} for patterns in (rows, columns))
+    matrix = np.full((len(rows), len(columns)), None, dtype=object)
     for index in np.ndindex(matrix.shape):
         matrix[index] = zero
     for entry in entries:
-        here = place[entry.row], place[entry.column]
+        here = row[entry.row], column[entry.column]
         matrix[here] = matrix[here] + entry.weight * falling(entry.colours, entry.partner.count(-1))
     return matrix
 

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
 
@@ -66,6 +66,10 @@ class ColourTables:
     palette: Palette
     named: tuple[int, ...]
     declared: int
+
+    def on(self, window: ChainWindow) -> ColourTables:
+        """Return the factors of another window of the same chain."""
+        return replace(self, window=window, factors=tuple(_factors(window.chain, window)), sources=())
 
     def by_pattern(self, local: Local, convert: Callable[[Terms], Any]) -> PatternTable:
         """Return a table over patterns, its values converted to elements of a ring."""

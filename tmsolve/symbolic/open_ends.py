@@ -12,8 +12,10 @@ from typing import Any
 
 import numpy as np
 
+from ..assemble.window import ChainWindow
 from ..declare.chain import Chain
 from .alphabet import Laurent
+from .colour_matrix import ColourMatrix, colour_pieces
 from .matrix import SymbolicMatrix, piece_matrices
 from .pieces import runs
 
@@ -45,7 +47,7 @@ class OpenProduct:
         while all(piece is not window for piece, _ in runs(window, cells, ring=False)):
             cells += 1
         pieces = runs(window, cells, ring=False)
-        matrices = piece_matrices(chain, [piece for piece, _ in pieces], matrix.alphabet)
+        matrices = _matrices(chain, [piece for piece, _ in pieces], matrix)
         bulk = next(i for i, (piece, _) in enumerate(pieces) if piece is window)
         self.matrix = matrix
         self.missing = cells - pieces[bulk][1]
@@ -70,12 +72,18 @@ class OpenProduct:
 def open_sum(chain: Chain, matrix: SymbolicMatrix, cells: int) -> Laurent:
     """Return Z_N of an open chain of any length as a sum of exponentials."""
     pieces = runs(matrix.window, cells, ring=False)
-    matrices = piece_matrices(chain, [piece for piece, _ in pieces], matrix.alphabet)
+    matrices = _matrices(chain, [piece for piece, _ in pieces], matrix)
     repeated = [m for m, (_, count) in zip(matrices, pieces, strict=True) for _ in range(count)]
     row = repeated[0].entries
     for piece in repeated[1:]:
         row = row.dot(piece.entries)
     return matrix.alphabet.laurent(row.sum(), _total([m.scale for m in repeated], matrix))
+
+
+def _matrices(chain: Chain, pieces: Sequence[ChainWindow], matrix: SymbolicMatrix) -> list[SymbolicMatrix]:
+    if isinstance(matrix, ColourMatrix):
+        return colour_pieces(matrix, pieces)
+    return piece_matrices(chain, pieces, matrix.alphabet)
 
 
 def _total(scales: Sequence[Sequence[int]], matrix: SymbolicMatrix) -> tuple[int, ...]:

@@ -8,6 +8,7 @@ from typing import Any
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable, SolveError
+from .colour_matrix import ColourMatrix
 from .field import Element, RootField
 from .field_text import FieldWriter
 from .open_ends import OpenProduct, open_sum
@@ -57,6 +58,9 @@ def open_formula(chain: Chain, spectrum: Spectrum) -> OpenFormula:
     NotApplicable
         The matrix cannot be made diagonal.
     """
+    if isinstance(spectrum.matrix, ColourMatrix):
+        # Free ends treat all colours alike.
+        spectrum = spectrum.symmetric_part()
     ends = OpenProduct(chain, spectrum.matrix)
     modes = _Modes(spectrum, ends)
     terms = tuple(term for factor in modes.seen for term in modes.terms(factor))

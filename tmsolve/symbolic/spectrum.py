@@ -95,6 +95,11 @@ class Spectrum:
         """Return the same spectrum with one more reason."""
         return replace(self, notes=(*self.notes, text))
 
+    def symmetric_part(self) -> Spectrum:
+        """Return what belongs to the blocks that can carry the Perron root."""
+        factors = (replace(f, multiplicity=f.leading) for f in self.factors if f.leading)
+        return replace(self, blocks=tuple(b for b in self.blocks if b.positive), factors=tuple(factors))
+
     @property
     def is_solved(self) -> bool:
         """Whether every eigenvalue has an expression."""
