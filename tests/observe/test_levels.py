@@ -46,6 +46,10 @@ def test_the_merging_pair_of_the_next_nearest_ising_chain():
     assert pair.log_modulus - levels[0].log_modulus == pytest.approx(wanted, rel=1e-14)
     assert abs(pair.discriminant) < 1e-15 and pair.condition > 1e6
     assert pair.phase in (0.0, math.pi)
+    r = solve(NEXT_NEAREST.at(T=[0.5, float(DISORDER)], J1=1, J2="-0.3", h=0))
+    for a in (None, "m"):
+        assert float(r.correlation_length(a)[1]) == pytest.approx(-1 / wanted, rel=1e-13)
+        assert r.wave_number(a)[1] == pair.phase
 
 
 @pytest.mark.parametrize(

@@ -57,9 +57,11 @@ def matrix_line(document: Mapping[str, Any]) -> str:
 
 
 def level_table(levels: Sequence[Mapping[str, Any]], digits: int) -> str:
-    """Return eigenvalues, largest modulus first, with multiplicities."""
+    """Return eigenvalues, largest modulus first, with multiplicities and, for complex pairs and Jordan blocks, their kind."""
     first = levels[0]["log_modulus"]
     turning = any(level["phase"] for level in levels)
+    # That several have vectors of their own goes without saying.
+    special = any(level["kind"] not in ("simple", "semisimple") for level in levels)
     rows = []
     for level in levels:
         row = [
@@ -69,9 +71,10 @@ def level_table(levels: Sequence[Mapping[str, Any]], digits: int) -> str:
             Number(number_text(level["phase"] / math.pi, digits)),
             str(level["multiplicity"]),
         ]
-        rows.append(row if turning else [*row[:3], row[4]])
-    heads = ["eigenvalue", "ln modulus", "modulus / largest", "phase / pi", "multiplicity"]
-    return table(rows, heads if turning else [*heads[:3], heads[4]])
+        row += [level["kind"]] if special else []
+        rows.append(row if turning else [*row[:3], *row[4:]])
+    heads = ["eigenvalue", "ln modulus", "modulus / largest", "phase / pi", "multiplicity", *(["kind"] * special)]
+    return table(rows, heads if turning else [*heads[:3], *heads[4:]])
 
 
 def _complex_text(value: complex, digits: int) -> str:

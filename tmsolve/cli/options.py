@@ -45,7 +45,8 @@ def add_read(parser: Parser, default: str) -> None:
         help=(
             "quantities, separated by commas: free_energy internal_energy entropy specific_heat mean(a) "
             "susceptibility(a) susceptibility(a,b) temperature_susceptibility(a) correlation_length "
-            "correlation_length(a) wave_number wave_number(a) gap; a, b are observables of the model. "
+            "correlation_length(a) log_correlation_length log_correlation_length(a) wave_number wave_number(a) "
+            "gap; a, b are observables of the model. "
             f"The shell needs quotes around brackets. Default: {default}"
         ),
     )

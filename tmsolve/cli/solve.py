@@ -130,6 +130,7 @@ def _spectrum(solution: Solution, levels: int, failures: dict[str, str]) -> list
             "log_modulus": level.log_modulus,
             "phase": level.phase,
             "multiplicity": level.multiplicity,
+            "kind": level.kind,
         }
         for level in spectrum
     ]

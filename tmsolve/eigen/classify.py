@@ -13,18 +13,12 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..operators.numbers import to_double
-from .near_circle import NEAR, inverted, tidy
+from .merging import MANY, ROUNDING, VANISHES, conditions, joined
+from .near_circle import NEAR, tidy
 from .spectrum import Ratios, clusters, eigenvalues, scaled_to_one, without_perron
 
 __all__ = ["Cluster", "classified", "grouped"]
 
-_ROUNDING = 2.0**-53
-#: Rounding errors of an eigenvalue of condition 1, in units of _ROUNDING.
-_MANY = 200
-#: Vectors worse conditioned than this may belong to a Jordan block.
-_SUSPECT = 1e6
-#: A singular value below this belongs to a vector.
-_VANISHES = 1e-11
 #: Larger matrices are grouped by distance alone.
 _LARGEST = 256
 
@@ -94,46 +88,10 @@ def classified(chance: np.ndarray, law: np.ndarray, found: Ratios) -> list[Clust
     matrix, values = scaled[..., 0], eigenvalues(scaled)[0]
     near = int((found.log_modulus > -NEAR).sum())
     levels = grouped(Ratios(*(part[:near] for part in found)))
-    condition = _conditions(matrix, values)
-    for members in _clusters(values, condition, near):
+    condition = conditions(matrix, values)
+    for members in joined(values, condition, near):
         levels.append(_level(matrix, values, condition, members, found, float(size[0])))
     return sorted(levels, key=lambda level: level.log_gap)
-
-
-def _conditions(matrix: np.ndarray, values: np.ndarray) -> np.ndarray:
-    """Return the condition number of every eigenvalue; vectors that nearly coincide are found by singular values."""
-    raw, vectors = (part.astype(np.complex128) for part in np.linalg.eig(matrix))
-    inverse = inverted(vectors[None])[0]
-    with np.errstate(all="ignore"):
-        quick = np.linalg.norm(vectors, axis=0) * np.linalg.norm(inverse, axis=1)
-        worst = float(np.linalg.cond(vectors))
-    if worst < _SUSPECT:
-        return quick[np.abs(raw[None] - values[:, None]).argmin(axis=1)]
-    return np.array([_condition(matrix, value) for value in values])
-
-
-def _condition(matrix: np.ndarray, value: complex) -> float:
-    left, sizes, right = np.linalg.svd(matrix - value * np.eye(len(matrix)))
-    count = max(1, int((sizes <= _VANISHES * max(1.0, sizes[0])).sum()))
-    overlap = np.linalg.svd(left[:, -count:].conj().T @ right[-count:].conj().T, compute_uv=False)[-1]
-    return float(1 / max(overlap, _ROUNDING))
-
-
-def _clusters(values: np.ndarray, condition: np.ndarray, start: int) -> list[list[int]]:
-    """Group eigenvalues from number ``start`` on that rounding cannot tell apart."""
-    left = list(range(start, len(values)))
-    groups = []
-    while left:
-        group, waiting = [], [left.pop(0)]
-        while waiting:
-            k = waiting.pop()
-            group.append(k)
-            reach = _MANY * _ROUNDING * np.minimum(condition[k], condition)
-            close = [j for j in left if abs(values[k] - values[j]) <= reach[j]]
-            waiting += close
-            left = [j for j in left if j not in close]
-        groups.append(sorted(group))
-    return groups
 
 
 def _level(
@@ -145,10 +103,10 @@ def _level(
         return Cluster(modulus, turn, gap, 1, "simple", worst)
     mean = complex(values[members].mean())
     split = complex(((values[members] - mean) ** 2).mean())
-    small = _MANY * _ROUNDING * len(values)
+    small = MANY * ROUNDING * len(values)
     shifted = matrix - (0 if abs(mean) < small else mean) * np.eye(len(matrix))
     sizes = np.linalg.svd(shifted, compute_uv=False)
-    vectors = int((sizes <= _VANISHES * max(1.0, sizes[0])).sum())
+    vectors = int((sizes <= VANISHES * max(1.0, sizes[0])).sum())
     kind = "Jordan" if vectors < len(members) else "semisimple"
     if abs(mean) < small:
         return Cluster(-np.inf, 0.0, np.inf, len(members), kind, worst, 0.0)

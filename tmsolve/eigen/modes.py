@@ -7,7 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers, to_double
-from .near_circle import inverted, near_modes
+from .merging import inverted, merge
+from .near_circle import near_modes
 from .spectrum import polar, scaled_to_one, together, without_perron
 
 __all__ = ["Modes", "Shown", "modes", "shown"]
@@ -47,7 +48,9 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
     rest, kept = without_perron(doubles, weights)
     n, batch = len(doubles), doubles.shape[-1]
     scaled, size = scaled_to_one(rest)
-    values, vectors, inverse = _eigen(np.ascontiguousarray(np.moveaxis(scaled, -1, 0)))
+    matrix = np.ascontiguousarray(np.moveaxis(scaled, -1, 0))
+    values, vectors, inverse = _eigen(matrix)
+    merge(matrix, values)
     right = np.zeros((batch, n, n - 1), dtype=np.complex128)
     left = np.zeros((batch, n - 1, n), dtype=np.complex128)
     # Constants are free in right vectors, and left vectors sum to 0: both are felt through differences only.

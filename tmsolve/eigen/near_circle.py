@@ -16,9 +16,10 @@ import numpy as np
 from ..operators.numbers import DOUBLE, Numbers, to_double
 from .components import communicating_classes
 from .graded import graded_modes
+from .merging import inverted
 from .reduction import heavy_first, reduce_states
 
-__all__ = ["NEAR", "NearModes", "inverted", "near_modes", "tidy"]
+__all__ = ["NEAR", "NearModes", "near_modes", "tidy"]
 
 #: Within this distance from the circle (in ln|λ|) an eigenvalue is computed anew.
 NEAR = 1e-4
@@ -28,8 +29,6 @@ _TURN = 2e-3
 _GRADED = 1e-5
 #: A number that makes (c + ω)/(1 − ω') differ for all roots of unity.
 _MARK = 2.3819660112501052
-#: Beyond this condition number vectors are told apart by least squares.
-_SINGULAR = 1e14
 
 
 @dataclass(frozen=True)
@@ -186,19 +185,6 @@ def _from_deviation(
         log_modulus, log_gap = _log_gaps(values / (_MARK + felt), scale, steps, numbers)
         good &= (np.abs(values[:, -1]) > _GRADED * np.abs(values[:, 0])) & ~np.isnan(log_gap).any(axis=1)
     return NearModes(points, log_modulus, tidy(np.angle(felt)), log_gap, right, left), good
-
-
-def inverted(vectors: np.ndarray) -> np.ndarray:
-    """Return the inverses of stacked matrices; where they are singular to rounding, the pseudo-inverses."""
-    try:
-        inverse = np.linalg.inv(vectors)
-        size = np.linalg.norm(vectors, axis=(1, 2)) * np.linalg.norm(inverse, axis=(1, 2))
-        bad = np.flatnonzero(~(size < _SINGULAR))
-    except np.linalg.LinAlgError:
-        inverse, bad = np.empty_like(vectors), np.arange(len(vectors))
-    for i in bad:
-        inverse[i] = np.linalg.pinv(vectors[i])
-    return inverse
 
 
 def _deviation(chance: np.ndarray, steps: int) -> np.ndarray:

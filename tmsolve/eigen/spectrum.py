@@ -13,6 +13,7 @@ from typing import NamedTuple
 import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers, to_double
+from .merging import merge
 from .near_circle import near_modes, tidy
 from .perron import PerronPair
 
@@ -74,7 +75,9 @@ def chain_ratios(chance: np.ndarray, stationary: np.ndarray, numbers: Numbers = 
         return Ratios(none, none.copy(), none.copy())
     rest, _ = without_perron(doubles, to_double(stationary))
     scaled, size = scaled_to_one(rest)
-    log_modulus, phase = polar(eigenvalues(scaled), size)
+    values = eigenvalues(scaled)
+    merge(np.moveaxis(scaled, -1, 0), values)
+    log_modulus, phase = polar(values, size)
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
     for near in near_modes(chance, log_modulus, phase, numbers):
