@@ -28,7 +28,7 @@ from .decimated_chain import table_point
 from .decimated_fit import Fit, fit_energies, symmetric_gauge
 from .decimated_terms import Cuts, own_terms
 
-__all__ = ["Decimation", "check_cells", "decimate", "prepared"]
+__all__ = ["Decimation", "check_cells", "decimate", "fitted", "prepared"]
 
 #: States of the cut: the log-sum product holds their number cubed, per point.
 _STATES = 64
@@ -165,10 +165,7 @@ def decimate(point: Point, b: int = 2) -> Decimation:
     True
     """
     assembled, cuts = prepared(point, b)
-    table = _powered(assembled, int(b))
-    T = np.broadcast_to(np.asarray(point.T, dtype=np.float64), point.shape).ravel()
-    raw = np.where(table.log == -np.inf, np.inf, table.energy - T * table.log)
-    fits, energies = _each_pattern(raw, point, cuts, T)
+    fits, energies = fitted(_powered(assembled, int(b)), point, cuts)
     return _collected(point, int(b), cuts, energies, fits)
 
 
@@ -219,8 +216,13 @@ def _concatenated(parts: list[tuple[np.ndarray, np.ndarray]]) -> tuple[np.ndarra
     return np.concatenate(energies, axis=-1), np.concatenate(logs, axis=-1)
 
 
-def _each_pattern(raw: np.ndarray, point: Point, cuts: Cuts, T: np.ndarray) -> tuple[Fit, np.ndarray]:
-    """Fit the energies (n, n, batch), points with the same forbidden pairs together."""
+def fitted(table: LogTable, point: Point, cuts: Cuts) -> tuple[Fit, np.ndarray]:
+    """Write the energies of a table (n, n, batch) with a chain's own terms, and bring them to their gauge.
+
+    Points with the same forbidden pairs are treated together.
+    """
+    T = np.broadcast_to(np.asarray(point.T, dtype=np.float64), point.shape).ravel()
+    raw = np.where(table.log == -np.inf, np.inf, table.energy - T * table.log)
     own = own_terms(point.chain, cuts)
     batch = raw.shape[-1]
     old = {name: np.broadcast_to(point.number(name), point.shape).ravel() for name in point.chain.parameters}

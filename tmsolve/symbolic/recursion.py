@@ -3,23 +3,28 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Callable
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property
-from typing import Any
+from typing import Any, TypeVar
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable, TmsolveError, TooLargeError, listing
 from ..tabulate.symbolic import parameter_symbols
 from .closed import ClosedForm
+from .deadline import TimeUp, limited
 from .decimation import check_cells
 from .forms import closed_form
+from .pieces import check_seconds
 from .plain import latex_text, plain_text
 from .readable import Writer
 from .recursion_closure import Closure, Image, close_family
 from .recursion_tables import WeightTable, weight_table
 
 __all__ = ["Recursion", "recursion"]
+
+Result = TypeVar("Result")
 
 #: Longer steps have powers with too many terms to be read.
 _LONGEST = 12
@@ -38,6 +43,8 @@ class Recursion:
         Of which family.
     b : int
         Old cells per new cell.
+    time_limit : float
+        Seconds that each later question may take.
     held : tuple of sympy expressions
         Combinations of parameters that a ring does not depend on but by a constant, or that act like
         others; they keep their values.
@@ -45,6 +52,7 @@ class Recursion:
 
     chain: Chain
     b: int
+    time_limit: float
     table: WeightTable
     closure: Closure
 
@@ -64,6 +72,9 @@ class Recursion:
     @cached_property
     def equations(self) -> tuple[Any, ...]:
         """The recursion relations, one sympy equation per coupling."""
+        return _in_time(self.time_limit, "the formulas", self._equations)
+
+    def _equations(self) -> tuple[Any, ...]:
         import sympy as sp
 
         return tuple(
@@ -74,7 +85,7 @@ class Recursion:
     @cached_property
     def constant(self) -> Any:
         """−βC of the free energy per new cell: b f(p) = f(p′) + C."""
-        return self._written(self.closure.constant)
+        return _in_time(self.time_limit, "the formulas", lambda: self._written(self.closure.constant))
 
     @cached_property
     def scaling(self) -> tuple[Any, ...]:
@@ -86,7 +97,7 @@ class Recursion:
         import sympy as sp
 
         try:
-            form = closed_form(self.chain)
+            form = closed_form(self.chain, time_limit=self.time_limit)
         except TmsolveError:
             return ()
         if not form.is_closed:
@@ -163,7 +174,7 @@ class Recursion:
         return "$\\displaystyle \\begin{aligned} " + r" \\ ".join(lines) + " \\end{aligned}$"
 
 
-def recursion(chain: Chain, b: int = 2) -> Recursion:
+def recursion(chain: Chain, b: int = 2, *, time_limit: float = 30) -> Recursion:
     """Derive the recursion relations of decimation for a family of chains that closes.
 
     The family closes when ln Wᵇ is of the chain's own form at all values of the free
@@ -175,6 +186,8 @@ def recursion(chain: Chain, b: int = 2) -> Recursion:
         Its free parameters are renormalised, those fixed by ``chain.fix`` must not change.
     b : int
         Old cells per new cell, 2 … 12.
+    time_limit : float
+        Seconds, for the derivation and for each later question to the result.
 
     Raises
     ------
@@ -196,14 +209,29 @@ def recursion(chain: Chain, b: int = 2) -> Recursion:
             f"b = {cells} gives powers too long to read; use b <= {_LONGEST}, or smaller steps one after the other",
             limit=_LONGEST,
         )
-    table = weight_table(chain)
-    closure = close_family(table, cells)
+    allowed = check_seconds(time_limit)
+    table, closure = _in_time(allowed, "the recursion relations", lambda: _derive(chain, cells))
     if closure.missing:
         raise NotApplicable(
             f"summing out cells of {chain.name} creates couplings that it has no term for: {listing(closure.missing)}; "
             "declare them with parameters of their own, or use decimate(chain.at(…)) for numbers"
         )
-    return Recursion(chain, cells, table, closure)
+    return Recursion(chain, cells, allowed, table, closure)
+
+
+def _derive(chain: Chain, b: int) -> tuple[WeightTable, Closure]:
+    table = weight_table(chain)
+    return table, close_family(table, b)
+
+
+def _in_time(seconds: float, what: str, compute: Callable[[], Result]) -> Result:
+    try:
+        return limited(seconds, compute)
+    except TimeUp:
+        raise TooLargeError(
+            f"{what} of this chain were not finished within {seconds:g} s; fix parameters with chain.fix(…), take a "
+            "smaller b, give a longer time_limit, or use decimate(chain.at(…)) for numbers"
+        ) from None
 
 
 def _number(c: Fraction) -> Any:

@@ -1,7 +1,7 @@
 """Whether the logarithms of Wᵇ lie in the span of a chain's own terms.
 
-Entries of Wᵇ are products of irreducible polynomials in Boltzmann factors. The logarithms of
-different ones are independent, so that ln Wᵇ is of the chain's own form, for all parameters,
+Entries of Wᵇ are products of polynomials in Boltzmann factors without common divisors. The
+logarithms of different ones are independent, so that ln Wᵇ is of the chain's own form, for all parameters,
 just when the table of exponents of each single factor is; that is a linear system with
 whole numbers.
 """
@@ -16,16 +16,13 @@ from typing import Any
 
 import numpy as np
 
-from .alphabet import Laurent, common_measure
+from .alphabet import Laurent
 from .decimated_fit import Basis
 from .exact_system import solve_exactly
-from .readable import Vector
+from .recursion_factors import Factored, Key, factor_all
 from .recursion_tables import WeightTable
 
 __all__ = ["Closure", "Image", "close_family", "own_weight"]
-
-#: An irreducible sum of exponentials, centred, as a hashable.
-Key = frozenset[tuple[Vector, Fraction]]
 
 
 @dataclass(eq=False)
@@ -35,7 +32,7 @@ class Image:
     Attributes
     ----------
     factors : dict
-        Irreducible sums of exponentials, with their shares.
+        Sums of exponentials, with their shares.
     powers : dict of int to Fraction
         Own classes, by their place in the alphabet.
     primes : dict of int to Fraction
@@ -74,9 +71,9 @@ class Closure:
 
 def close_family(table: WeightTable, b: int) -> Closure:
     """Solve for the renormalised coordinates of a chain, or find what is missing."""
-    power = table.power(b)
-    changed = [pair for pair in table.pairs if (power[pair] is None) != (pair not in table.weights)]
-    pairs = [pair for pair in table.pairs if power[pair] is not None and pair in table.weights]
+    power = {pair: laurent for pair, laurent in table.power(b).items() if laurent is not None}
+    changed = [pair for pair in table.pairs if (pair in power) != (pair in table.weights)]
+    pairs = [pair for pair in table.pairs if pair in power and pair in table.weights]
     own = {pair: own_weight(table, pair) for pair in pairs}
     classes = [k for k in range(len(table.alphabet.classes)) if any(own[pair][1].get(k) for pair in pairs)]
     gauge = sorted({table.kind(i) for pair in pairs for i in pair})[:-1]
@@ -84,8 +81,14 @@ def close_family(table: WeightTable, b: int) -> Closure:
     columns += [[Fraction((table.kind(j) == a) - (table.kind(i) == a)) for i, j in pairs] for a in gauge]
     start = len(columns)
     columns += [[own[pair][1].get(k, Fraction(0)) for pair in pairs] for k in classes]
-    targets = _targets(table, pairs, power, own)
+    known, independent = factor_all(table.alphabet, (power[pair] for pair in pairs))
+    targets = _targets(table, pairs, power, own, known)
     solved = solve_exactly(columns, targets)
+    if solved.impossible and not independent:
+        # What large sums share may make up for it.
+        known, _ = factor_all(table.alphabet, (power[pair] for pair in pairs), split=True)
+        targets = _targets(table, pairs, power, own, known)
+        solved = solve_exactly(columns, targets)
     pivots = {column: classes[column - start] for column in solved.pivots if column >= start}
     held = tuple(k for k in classes if k not in pivots.values())
     if solved.impossible or changed:
@@ -123,8 +126,9 @@ def own_weight(table: WeightTable, pair: tuple[int, int]) -> tuple[Fraction, dic
 def _targets(
     table: WeightTable,
     pairs: list[tuple[int, int]],
-    power: Mapping[tuple[int, int], Laurent | None],
+    power: Mapping[tuple[int, int], Laurent],
     own: Mapping[tuple[int, int], tuple[Fraction, dict[int, Fraction]]],
+    known: Mapping[Key, Factored],
 ) -> dict[tuple[str, Any], list[Fraction]]:
     """Return exponents of every factor, class and prime over the pairs."""
     targets: dict[tuple[str, Any], list[Fraction]] = {}
@@ -134,67 +138,16 @@ def _targets(
             column = targets.setdefault((what, name), [Fraction(0)] * len(pairs))
             column[row] += exponent
 
-    known: dict[Key, tuple[Fraction, Vector, list[tuple[Key, int]]]] = {}
     for row, pair in enumerate(pairs):
-        laurent = power[pair]
-        assert laurent is not None
-        same = frozenset(laurent.items())
-        if same not in known:
-            known[same] = _factored(table, laurent)
-        number, monomial, factors = known[same]
-        for sign, c in ((1, number), (-1, own[pair][0])):
+        product = known[frozenset(power[pair].items())]
+        for sign, c in ((1, product.number), (-1, own[pair][0])):
             for prime, times in _primes(c).items():
                 add("prime", prime, row, sign * times)
-        for k, exponent in enumerate(monomial[: len(table.alphabet.classes)]):
+        for k, exponent in enumerate(product.monomial[: len(table.alphabet.classes)]):
             add("class", k, row, exponent)
-        for factor, times in factors:
+        for factor, times in product.factors:
             add("factor", factor, row, times)
     return targets
-
-
-def _factored(table: WeightTable, laurent: Laurent) -> tuple[Fraction, Vector, list[tuple[Key, int]]]:
-    """Return number, monomial and irreducible factors; each factor divided by the monomial at its centre."""
-    alphabet = table.alphabet
-    lowest = tuple(map(min, zip(*laurent, strict=True)))
-    units = alphabet.units or (Fraction(1),)
-    content = {
-        tuple(int((e - low) / unit) for e, low, unit in zip(x, lowest, units, strict=False)) or (0,): (
-            alphabet.ring.domain(c.numerator, c.denominator)
-        )
-        for x, c in laurent.items()
-    }
-    front, found = alphabet.ring.from_dict(content).factor_list()
-    number, monomial = Fraction(int(front.numerator), int(front.denominator)), lowest
-    factors: list[tuple[Key, int]] = []
-    for element, times in found:
-        factor = alphabet.laurent(element, (0,) * alphabet.width)
-        measure = common_measure(factor.values())
-        number *= measure**times
-        factor = {x: c / measure for x, c in factor.items()}
-        middle = _middle(table, factor)
-        monomial = tuple(m + times * e for m, e in zip(monomial, middle, strict=False))
-        centred = {tuple(e - m for e, m in zip(x, middle, strict=True)): c for x, c in factor.items()}
-        if len(centred) > 1:
-            factors.append((frozenset(centred.items()), times))
-    return number, monomial, factors
-
-
-def _middle(table: WeightTable, factor: Laurent) -> Vector:
-    """Return the centre of a sum in those classes in which it reads the same from both ends, else nothing."""
-    import sympy as sp
-
-    spans = [(min(x), max(x)) for x in zip(*factor, strict=True)]
-    # Powers of a weight are no exponentials: nothing is gained by centring them.
-    proper = [not isinstance(key, sp.log) for key in table.alphabet.classes] or [False]
-    every = [k for k, is_proper in enumerate(proper) if is_proper]
-    middle = [Fraction(0)] * len(spans)
-    for chosen in ([every] if len(every) > 1 else []) + [[k] for k in every]:
-        trial = {k: (spans[k][0] + spans[k][1]) / 2 for k in chosen}
-        mirrored = {tuple(2 * trial[k] - e if k in trial else e for k, e in enumerate(x)): c for x, c in factor.items()}
-        if mirrored == factor:
-            for k in chosen:
-                middle[k] = trial[k]
-    return tuple(middle)
 
 
 def _primes(c: Fraction) -> dict[int, int]:
