@@ -19,6 +19,7 @@ from ..symmetry.adapted import adapted_states
 from ..symmetry.refine import class_members, equitable
 from ..symmetry.search import automorphisms
 from .labels import block_labels
+from .momenta import Momenta, momenta_of
 from .multiplicity import both
 from .permutations import Permutation, numbered
 
@@ -41,12 +42,15 @@ class Block:
         How many times it occurs; a polynomial where the number of colours is a symbol.
     positive : bool
         Whether it can carry the Perron root: its vector is the same on equivalent states.
+    momenta : Momenta or None
+        How it falls apart over cyclotomic numbers, where that is known.
     """
 
     matrix: np.ndarray
     label: str
     multiplicity: Any = 1
     positive: bool = False
+    momenta: Momenta | None = None
 
     @property
     def size(self) -> int:
@@ -88,9 +92,12 @@ def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
     parts = adapted_states(group, [p.image for p in named])
     labels = block_labels([part.constituent for part in parts], named)
     domain = matrix[0, 0].ring.domain
+    rotations = [p.image for p in named if "rotation" in p.move[0]]
     blocks: list[Block] = []
     for k, (part, label) in enumerate(zip(parts, labels, strict=True)):
-        block = Block(part.block(matrix, lambda c: domain(c.numerator, c.denominator)), label, part.times, k == 0)
+        entries = part.block(matrix, lambda c: domain(c.numerator, c.denominator))
+        momenta = momenta_of(group, part, entries, rotations)
+        block = Block(entries, label, part.times, k == 0, momenta)
         blocks.extend(_alike(block, group.orbits, table) if k == 0 else [block])
     return [component for block in blocks for component in components(block)]
 
@@ -119,7 +126,9 @@ def components(block: Block, present: Callable[[Any], bool] = bool) -> list[Bloc
         reach |= reach[:, k, None] & reach[None, k, :]
     strong = reach & reach.T
     parts = {tuple(np.flatnonzero(row)): None for row in strong}
-    return [replace(block, matrix=block.matrix[np.ix_(part, part)]) for part in parts]
+    if len(parts) == 1:
+        return [block]
+    return [replace(block, matrix=block.matrix[np.ix_(part, part)], momenta=None) for part in parts]
 
 
 def merged(blocks: Sequence[tuple[Block, Key]]) -> list[tuple[Block, Key]]:

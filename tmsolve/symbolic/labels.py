@@ -7,7 +7,7 @@ as a phase and its opposite, or as one representation of the permutations of equ
 from __future__ import annotations
 
 import math
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterable, Iterator, Sequence
 from fractions import Fraction
 
 import numpy as np
@@ -80,13 +80,18 @@ def _rotations(part: Constituent, named: Sequence[Permutation]) -> list[str]:
     for p in named:
         if p.move[0] == "leg rotation":
             turns = _turns(part, p.image, p.move[1])
-            texts += [f"momentum {' and '.join(map(_angle, turns))} round the legs"] if turns else []
+            texts += [f"momentum {_listed(map(_angle, turns))} round the legs"] if turns else []
         if p.move[0] == "rotation" and p.move[1] not in _families(named):
             order = p.move[2]
             turns = _turns(part, p.image, order)
             charges = [("±" if 0 < t < Fraction(1, 2) else "") + str(t * order) for t in turns]
-            texts += [f"Z{order} charge {' and '.join(charges)} of the states{p.move[1]}"] if turns else []
+            texts += [f"Z{order} charge {_listed(charges)} of the states{p.move[1]}"] if turns else []
     return texts
+
+
+def _listed(texts: Iterable[str]) -> str:
+    *first, last = texts
+    return f"{', '.join(first)} and {last}" if first else last
 
 
 def _turns(part: Constituent, image: np.ndarray, order: int) -> list[Fraction]:

@@ -157,11 +157,19 @@ def _with_roots(spectrum: Spectrum) -> Spectrum:
     solved = []
     for factor in spectrum.factors:
         block = factor.block.matrix if factor.degree == factor.block.size == 2 else None
-        roots = radicals(factor.polynomial, matrix, spectrum.writer, block, real)
+        roots = _by_momentum(factor, spectrum) or radicals(factor.polynomial, matrix, spectrum.writer, block, real)
         solved.append(replace(factor, roots=tuple(roots)))
         if not roots:
             spectrum = spectrum.note(_no_radicals(factor, real))
     return replace(spectrum, factors=tuple(solved))
+
+
+def _by_momentum(factor: Factor, spectrum: Spectrum) -> list[Any]:
+    """Return the roots of a factor that is a whole block with known momenta; square roots read better than two."""
+    momenta = factor.block.momenta
+    if momenta is None or factor.degree != factor.block.size or factor.degree < 3:
+        return []
+    return momenta.roots([spectrum.writer.write(spectrum.matrix.laurent(c)) for c in momenta.coefficients])
 
 
 def _no_radicals(factor: Factor, real: bool) -> str:
