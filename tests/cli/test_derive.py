@@ -117,3 +117,79 @@ def test_the_time_limit_ends_the_derivation(tm):
     ended = tm("derive", "clock", "--option", "q=12", "--time-limit", "0.001")
     assert ended.code == 1
     assert "time limit of 0.001 s; use tmsolve solve for numbers, or give a longer --time-limit" in ended.err
+
+
+def test_the_name_of_an_observable_is_its_mean(tm):
+    assert "<m> = " in tm("derive", "ising", "--quantity", "m").out
+    assert tm("derive", "ising", "--quantity", "chi").out == tm("derive", "ising", "--quantity", "chi(m)").out
+
+
+def test_correlation_function_at_a_symbolic_distance(tm):
+    # Textbook (E. Ising 1925 and later): tanh(K)**r at h = 0.
+    assert "<m; r> = tanh(beta*J)**r" in tm("derive", "ising", "-p", "h=0", "--quantity", "corr(m)").out
+
+
+def test_open_chains(tm):
+    out = tm("derive", "ising", "-p", "h=0", "--quantity", "Z", "--open").out
+    assert "Z_N = 2*(2*cosh(beta*J))**(N - 1)" in out
+    assert "Z_2 = 2*exp(beta*J) + 2*exp(-beta*J)" in tm("derive", "ising", "-p", "h=0", "--open", "--cells", "2").out
+
+
+def test_series_with_and_without_a_closed_form(tm):
+    out = tm("derive", "ising", "-p", "h=0", "--quantity", "series(c)", "--order", "4").out
+    # c = K² sech² K = K² − K⁴ + …
+    assert "c = beta**2*J**2 - beta**4*J**4 + O(beta**5)" in out
+    document = tm("derive", "spin1_nnn", "-p", "h=0", "--quantity", "series", "--order", "2", "--json").json
+    assert document["quantities"]["series(free_energy)"]["terms"][0] == {
+        "coefficient": "-log(3)",
+        "power": "-1",
+        "energy": "0",
+    }
+    low = tm("derive", "ising", "-p", "J=-1", "-p", "h=2", "--quantity", "series(entropy)", "--about", "low").out
+    assert "log(1/2 + sqrt(5)/2)" in low
+
+
+def test_limits_say_what_to_fix(tm):
+    out = tm("derive", "ising", "--quantity", "limits").out
+    assert "-p J=… -p h=…" in out and "T -> infinity" in out
+
+
+def test_counts_are_exact_and_need_a_length(tm):
+    ended = tm("derive", "ising", "-p", "J=1", "-p", "h=0", "--quantity", "counts", "--cells", "4")
+    assert ended.out.split()[-6:] == ["-4", "2", "0", "12", "4", "2"]
+    refused = tm("derive", "ising", "--quantity", "counts")
+    assert refused.code == 2 and "add --cells N" in refused.err
+    document = tm("derive", "ising", "--quantity", "counts(m)", "--cells", "3", "--open", "--json").json
+    assert document["quantities"]["counts(m)"] == {
+        "names": ["m"],
+        "counts": [["-3", "1"], ["-1", "3"], ["1", "3"], ["3", "1"]],
+    }
+
+
+def test_generating_function(tm):
+    # Σ (2 cosh K)ᴺ xᴺ + Σ (2 sinh K)ᴺ xᴺ
+    text = tm("derive", "ising", "-p", "h=0", "--quantity", "generating", "--json").json["quantities"]["generating"]
+    x, J, beta = sp.symbols("x J beta")
+    a, b = 2 * sp.cosh(J * beta) * x, 2 * sp.sinh(J * beta) * x
+    difference = sp.sympify(text, locals={"beta": beta}) - a / (1 - a) - b / (1 - b)
+    assert abs(difference.subs({x: 0.13, J: 0.7, beta: 0.9}).evalf()) < 1e-13
+
+
+def test_a_symbolic_number_of_colours(tm):
+    # F. Y. Wu, Rev. Mod. Phys. 54, 235 (1982).
+    out = tm("derive", "potts", "--option", "q=q", "-p", "h=0").out
+    assert "Z_N = (q + exp(beta*J) - 1)**N + (q - 1)*(exp(beta*J) - 1)**N" in out
+
+
+@pytest.mark.parametrize(
+    ("asked", "text"),
+    [
+        ("corr(k)", "corr(k): no observable 'k'; there are m"),
+        ("chi(m,m,m)", "chi takes one or two observables in brackets, got 'chi(m,m,m)'"),
+        ("free_energi", "Did you mean 'free_energy'?"),
+        ("f(m)", "f takes nothing in brackets, got 'f(m)'"),
+    ],
+)
+def test_wrong_names(tm, asked, text):
+    refused = tm("derive", "ising", "--quantity", asked)
+    assert refused.code == 2 and text in refused.err

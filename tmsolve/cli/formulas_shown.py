@@ -7,15 +7,17 @@ from typing import TYPE_CHECKING, Any
 from .table import table
 
 if TYPE_CHECKING:
-    from ..symbolic.forms import ClosedForm
+    from .derivation import Derivation
     from .formulas import Formula
 
 __all__ = ["as_data", "as_latex", "as_text"]
 
 
-def as_text(formula: Formula, value: Any, form: ClosedForm) -> str:
+def as_text(formula: Formula, value: Any, work: Derivation) -> str:
     """Return ``symbol = formula``, or a list with one formula per line."""
-    data = as_data(formula, value, form)
+    if formula.kind in ("series", "limits", "counts", "zeros"):
+        return str(value)
+    data = as_data(formula, value, work)
     if formula.kind == "eigenvalues":
         return _listed("eigenvalues (multiplicity)", [f"{item['value']}  ({item['multiplicity']})" for item in data])
     if formula.kind == "blocks":
@@ -35,13 +37,17 @@ def _listed(head: str, lines: list[str]) -> str:
     return "\n".join([head, *(f"  {line}" for line in lines)])
 
 
-def as_data(formula: Formula, value: Any, form: ClosedForm) -> Any:
+def as_data(formula: Formula, value: Any, work: Derivation) -> Any:
     """Return texts that read back as Python, in lists where there are several."""
     from ..symbolic.plain import plain_text
     from ..symbolic.report import ring_text
 
-    if formula.symbol == "Z_N":
-        return ring_text(form)
+    if formula.symbol == "Z_N" and not work.opened:
+        return ring_text(work.form)
+    if formula.kind == "counts":
+        return {"names": list(value.names), "counts": [[*map(str, key), str(count)] for key, count in value.items()]}
+    if formula.kind in ("series", "limits"):
+        return _expanded(formula.kind, value)
     if formula.kind == "eigenvalues":
         return [{"value": plain_text(item), "multiplicity": _count(times)} for item, times in value]
     if formula.kind == "blocks":
@@ -55,14 +61,14 @@ def as_data(formula: Formula, value: Any, form: ClosedForm) -> Any:
     return plain_text(value)
 
 
-def as_latex(formula: Formula, value: Any, form: ClosedForm) -> str:
+def as_latex(formula: Formula, value: Any, work: Derivation) -> str:
     """Return one equation per line, without dollar signs."""
     from ..symbolic.plain import latex_text
 
-    if formula.symbol == "Z_N":
+    if formula.symbol == "Z_N" and not work.opened:
         powers = (
             ("" if times == 1 else f"{_latex_count(times)} ") + rf"\left({latex_text(item)}\right)^{{N}}"
-            for item, times in form.eigenvalues
+            for item, times in work.form.eigenvalues
             if item != 0
         )
         return f"{formula.latex} = {' + '.join(powers)}"
@@ -71,6 +77,10 @@ def as_latex(formula: Formula, value: Any, form: ClosedForm) -> str:
             rf"\lambda_{{{k}}} = {latex_text(item)}" + _latex_times(times)
             for k, (item, times) in enumerate(value, start=1)
         )
+    if formula.kind == "series":
+        return value.latex.strip("$")
+    if formula.kind in ("limits", "counts", "zeros"):
+        return _verbatim(str(value))
     if formula.kind == "recurrence":
         return "\n".join(f"c_{{{k}}} = {latex_text(item)}" for k, item in enumerate(value, start=1))
     if formula.kind == "blocks":
@@ -97,3 +107,29 @@ def _latex_count(multiplicity: Any) -> str:
     from ..symbolic.plain import latex_text
 
     return str(multiplicity) if isinstance(multiplicity, int) else factor_text(multiplicity, latex_text(multiplicity))
+
+
+def _verbatim(text: str) -> str:
+    """Return a table as LaTeX."""
+    return "\n".join([r"\begin{verbatim}", text, r"\end{verbatim}"])
+
+
+def _expanded(kind: str, value: Any) -> Any:
+    """Return the terms of a series, or those of all limits."""
+    if kind == "limits":
+        return {end: {name: _terms(item) for name, item in getattr(value, end).items()} for end in ("high", "low")}
+    return _terms(value)
+
+
+def _terms(series: Any) -> Any:
+    from ..symbolic.plain import plain_text
+
+    return {
+        "of": series.of,
+        "about": series.about,
+        "order": series.order,
+        "terms": [
+            {"coefficient": plain_text(c), "power": str(power), "energy": plain_text(energy)}
+            for c, power, energy in series.terms
+        ],
+    }

@@ -3,11 +3,12 @@
 from __future__ import annotations
 
 import re
+from collections.abc import Callable
 
 __all__ = ["for_command_line"]
 
-_PHRASES = (
-    (r"chain\.fix\((\w+)=…\)", r"-p \1=…"),
+_PHRASES: tuple[tuple[str, str | Callable[[re.Match[str]], str]], ...] = (
+    (r"chain\.fix\(((?:\w+=…(?:, )?)+)\)", lambda found: f"-p {found[1]}".replace(", ", " -p ")),
     (r"chain\.fix\(…\)", "-p NAME=VALUE"),
     (r"solve\(chain\.at\(…\)\)", "tmsolve solve"),
     (r"\btime_limit\b", "--time-limit"),
