@@ -22,7 +22,25 @@ from tests.symbolic.colour_chains import (
     zoo,
 )
 from tests.symbolic.evaluation import potts_chain
-from tmsolve import Chain, NotApplicable, ParameterError, bond, closed_form, colours, ring, site, solve
+from tmsolve import (
+    Chain,
+    NotApplicable,
+    ParameterError,
+    SolveError,
+    bond,
+    certify,
+    closed_form,
+    colours,
+    crossovers,
+    describe,
+    ground_state,
+    open_chain,
+    phase_diagram,
+    ring,
+    scan,
+    site,
+    solve,
+)
 from tmsolve.symbolic.colour_check import colour_mismatch, plain_matrix
 from tmsolve.symbolic.colour_matrix import colour_matrix
 from tmsolve.symbolic.recurrence import ring_sum, trace_of_power
@@ -298,3 +316,72 @@ def test_the_text_says_for_which_numbers_of_colours_all_eigenvalues_are_there(fo
     assert "transfer matrix q x q; beta = 1/T; q whole, at least 3" in str(FIELD)
     assert "1 x 1, q - 2 times: representation (q - 2, 1) of q - 1 colours" in str(FIELD)
     assert "transfer matrix q**2 x q**2; beta = 1/T; q whole, at least 4" in str(forms("next nearest"))
+
+
+# --- open chains
+
+
+@pytest.mark.parametrize("name", [name for name in ZOO if name not in ("third neighbours", "sites alone")])
+def test_open_chains_equal_those_of_given_numbers_of_colours(name, forms):
+    chain, form = ZOO[name], forms(name)
+    values = values_of(chain, 3)
+    for q in (2, 3, 4):
+        numbers = plain_chain(chain, q).at(**values)
+        for cells in (1, 2, 4):
+            Z = float(form.open_partition_function(cells).subs(substitution(values, q)))
+            if Z == 0:  # the next-nearest hard core with two colours: no configuration at all
+                refused(SolveError, lambda n=cells, at=numbers: open_chain(at, n), "forbidden")
+            else:
+                assert Z == pytest.approx(math.exp(float(open_chain(numbers, cells).log_Z)), rel=1e-10)
+
+
+def test_open_chains_as_formulas():
+    """The chromatic polynomials of a path, and of a path with every two neighbours' ends joined; from memory."""
+    assert ZERO.open_partition_function() == Q * (sp.exp(BETA * J) + Q - 1) ** (N - 1)
+    path = closed_form(colouring(1)).open_partition_function()
+    assert sp.simplify(path - Q * (Q - 1) ** (N - 1)) == 0
+    triangles = SQUARE.open_partition_function()
+    assert all(sp.expand(triangles.subs(N, n) - Q * (Q - 1) * (Q - 2) ** (n - 2)) == 0 for n in (2, 3, 5))
+    assert triangles.subs(N, 1) == Q
+    field = FIELD.open_partition_function().subs(N, 6)
+    values = values_of(FIELD.chain, 4)
+    expected = math.exp(float(open_chain(plain_chain(FIELD.chain, 5).at(**values), 6).log_Z))
+    assert float(field.subs(substitution(values, 5))) == pytest.approx(expected, rel=1e-10)
+
+
+# --- verbs that need a number
+
+
+@pytest.mark.parametrize(
+    "act",
+    [
+        lambda chain: solve(chain.at(T=1)),
+        lambda chain: ring(chain.at(T=1), 5),
+        lambda chain: open_chain(chain.at(T=1), 5),
+        lambda chain: certify(chain.at(T=1), 20),
+        ground_state,
+        lambda chain: scan(chain, axes={"T": [0.5, 1]}, read=["free_energy"]),
+        lambda chain: crossovers(chain, along="T", between=(0.1, 2)),
+        lambda chain: phase_diagram(potts(), axes=("J", "h"), box={"J": (-1, 1), "h": (-1, 1)}),
+        lambda chain: chain.at(T=[1, 2]),
+    ],
+)
+def test_verbs_of_numbers_say_how_to_give_one(act):
+    refused(
+        NotApplicable,
+        lambda: act(potts().fix(J=1, h=0)),
+        "sites of kind 's' have q colours, q being a symbol; that is for closed forms",
+        "declare the chain with colours(3)",
+        "models.load(…, q=3), --option q=3 on the command line",
+    )
+
+
+def test_describe_works():
+    text = str(describe(ZOO["with spins"]))
+    assert "s with 2 states (-1, 1), c with q states (other)" in text
+    assert "Transfer matrix 2·q×2·q per cell, 4·q^2 non-zeros" in text
+    assert "any permutation of the q colours" in text
+    described = describe(potts())
+    assert described.matrix == ("q", "q") and described.nonzeros == "q^2" and described.cut == ("s[n]",)
+    assert described.symmetries == ("any permutation of the q colours other than 0",)
+    assert describe(ZOO["third neighbours"]).matrix == ("q^3", "q^3")

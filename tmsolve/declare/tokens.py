@@ -39,6 +39,9 @@ def _refusal(what: str) -> Callable[..., NoReturn]:
 class Colour:
     """One of the colours that no energy singles out; it knows only whether it equals another state.
 
+    There is no conversion to a number, not even one that refuses: sympy's numbers look for one
+    when they are compared.
+
     Parameters
     ----------
     index : int
@@ -88,5 +91,4 @@ class Colour:
     __neg__ = __pos__ = __abs__ = __invert__ = __round__ = _refusal("uses a colour as a number")
     __and__ = __rand__ = __or__ = __ror__ = __xor__ = __rxor__ = _refusal("uses a colour as a number")
     __lt__ = __le__ = __gt__ = __ge__ = _refusal("orders colours")
-    __float__ = __int__ = __index__ = __complex__ = _refusal("uses a colour as a number")
     __bool__ = _refusal("asks whether a colour is zero")

@@ -168,6 +168,9 @@ def _entry(term: Term, states: list, arguments: dict[str, Any]) -> Any:
     except ColourMisuse as error:
         raise DeclarationError(_colour_message(term, states, error)) from error
     except Exception as error:
+        if "Colour" in str(error) and any(isinstance(state, Colour) for state in states):
+            misuse = ColourMisuse("uses a colour as a number", "compare colours with ==, != or delta(s, t)")
+            raise DeclarationError(_colour_message(term, states, misuse.with_traceback(error.__traceback__))) from error
         if "truth value of Relational" in str(error):
             raise DeclarationError(_symbolic_message(where, NotSymbolic("branches on a parameter", ()))) from error
         raise DeclarationError(
