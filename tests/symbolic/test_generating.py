@@ -2,13 +2,15 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import pytest
 import sympy as sp
 
 from tests.laws.zoo import ZOO
 from tests.refusal import refused
 from tmsolve import Chain, ParameterError, bond, closed_form, colours, delta, ising, site, spins, weight
-from tmsolve.errors import NotApplicable
+from tmsolve.errors import NotApplicable, SolveError
 from tmsolve.symbolic.generating import generating_function
 from tmsolve.symbolic.open_ends import open_sum
 from tmsolve.symbolic.report import long_sum
@@ -92,6 +94,10 @@ def test_messages():
     refused(ParameterError, lambda: generating_function(chain, "J"), "'J' is a symbol of this chain already")
     refused(ParameterError, lambda: generating_function(chain, 2), "sympy Symbol", "got 2")
     refused(ParameterError, lambda: generating_function(chain, boundary="torus"), "'torus'")
-    form = closed_form(Chain(spins(2), [bond(lambda s, t, J, K: -J * s * t - K * s * s * t, shift=2)]), time_limit=0.05)
-    if not form.spectrum.factors:
-        refused(NotApplicable, lambda: generating_function(form), "needs the characteristic polynomial")
+    form = closed_form(chain)
+    late = replace(form, is_closed=False, why="only the matrix is known", spectrum=replace(form.spectrum, factors=()))
+    refused(
+        NotApplicable, lambda: generating_function(late), "needs the characteristic polynomial", "only the matrix is"
+    )
+    slow = replace(closed_form(CHAINS["blume-capel"]), time_limit=1e-4)
+    refused(SolveError, lambda: generating_function(slow, boundary="open"), "not finished within 0.0001 s")
