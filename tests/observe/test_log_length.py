@@ -33,7 +33,7 @@ def test_ising(T, J):
     with mpmath.workdps(60):
         # −ln tanh K = 2 artanh e^{−2K}, which needs no digits of tanh.
         wanted = float(-mpmath.log(2) - mpmath.log(mpmath.atanh(mpmath.exp(-2 * K))))
-    assert r.log_correlation_length() == r.log_correlation_length("m")
+    assert float(r.log_correlation_length("m")) == pytest.approx(float(r.log_correlation_length()), rel=1e-15)
     assert float(r.log_correlation_length()) == pytest.approx(wanted, rel=2e-16, abs=1e-15)
     assert float(r.log_gaps(1)[0]) == -float(r.log_correlation_length())
     assert float(r.wave_number()) == (0 if J > 0 else math.pi)
@@ -191,3 +191,29 @@ def test_reading():
     r = solve(ISING.at(T=[1e-8, 1.0], J=1, h=0))
     assert reading.evaluate(r) == pytest.approx([2e8 - math.log(2), -math.log(-math.log(math.tanh(1)))], rel=1e-13)
     assert parse_reading("log_correlation_length", ISING).symbol == "ln ξ"
+
+
+@pytest.mark.parametrize("T", ["1e3", "1e12", "1e20", "1e40"])
+def test_short_lengths_of_hot_chains(T):
+    """λ₂/λ₁ = tanh(1/T) is lost in doubles beside 1; ξ = −1/ln tanh(1/T) is not zero."""
+    for chain, a in ((ISING, "m"), (BLUME_CAPEL, "m")):
+        r = solve(chain.at(T=T, J=1, **({"h": 0} if chain is ISING else {"D": 0})))
+        with mpmath.workdps(200):
+            b = 1 / mpmath.mpf(T)
+            ratio = mpmath.tanh(b) if chain is ISING else odd_and_even(T, 1, 0)[0]
+            wanted = log_length(ratio)
+        assert float(r.log_correlation_length(a)) == pytest.approx(wanted, rel=1e-12)
+        assert float(r.log_correlation_length()) == pytest.approx(wanted, rel=1e-12)
+
+
+@pytest.mark.parametrize("T", ["0.01", "0.003", "0.001"])
+def test_small_eigenvalues_are_not_zero(T):
+    """All gaps of the Blume–Capel chain: the small even eigenvalue is e^{−0.1/T} of the largest."""
+    r = solve(BLUME_CAPEL.at(T=T, J=1, D="0.9"))
+    with mpmath.workdps(int(2 / float(T)) + 60):
+        odd, even = odd_and_even(T, 1, "0.9")
+        logs = [-log_length(odd), -log_length(even), math.inf]
+    assert r.log_gaps(3) == pytest.approx(np.array(logs), rel=1e-12)
+    assert r.gaps(3)[1] == pytest.approx(float(mpmath.exp(logs[1])), rel=1e-12)
+    assert [level.multiplicity for level in r.spectrum()] == [1, 1, 1]
+    assert r.spectrum()[2].log_gap == pytest.approx(logs[1], rel=1e-12)

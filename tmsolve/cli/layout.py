@@ -57,7 +57,7 @@ def matrix_line(document: Mapping[str, Any]) -> str:
 
 
 def level_table(levels: Sequence[Mapping[str, Any]], digits: int) -> str:
-    """Return eigenvalues, largest modulus first, with multiplicities and, for complex pairs and Jordan blocks, their kind."""
+    """Return eigenvalues, largest modulus first, with multiplicities, and which are complex pairs or Jordan blocks."""
     first = levels[0]["log_modulus"]
     turning = any(level["phase"] for level in levels)
     # That several have vectors of their own goes without saying.

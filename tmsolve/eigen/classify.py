@@ -12,10 +12,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..operators.numbers import to_double
+from ..operators.numbers import DOUBLE, Numbers
 from .merging import MANY, ROUNDING, VANISHES, conditions, joined
 from .near_circle import NEAR, tidy
-from .spectrum import Ratios, clusters, eigenvalues, scaled_to_one, without_perron
+from .spectrum import Ratios, clusters, deflated, eigenvalues
 
 __all__ = ["Cluster", "classified", "grouped"]
 
@@ -60,7 +60,7 @@ def grouped(found: Ratios) -> list[Cluster]:
     return levels
 
 
-def classified(chance: np.ndarray, law: np.ndarray, found: Ratios) -> list[Cluster]:
+def classified(chance: np.ndarray, law: np.ndarray, found: Ratios, numbers: Numbers = DOUBLE) -> list[Cluster]:
     """Return the levels of one chain without the Perron root, largest modulus first.
 
     Parameters
@@ -71,6 +71,8 @@ def classified(chance: np.ndarray, law: np.ndarray, found: Ratios) -> list[Clust
         Their stationary law.
     found : Ratios
         Its eigenvalues, shape (m,) each, accurate next to the unit circle.
+    numbers : Numbers
+        Number system of ``chance`` and ``law``.
 
     Examples
     --------
@@ -83,19 +85,18 @@ def classified(chance: np.ndarray, law: np.ndarray, found: Ratios) -> list[Clust
     """
     if not 2 <= len(chance) <= _LARGEST:
         return grouped(found)
-    rest, _ = without_perron(to_double(chance)[..., None], to_double(law)[:, None])
-    scaled, size = scaled_to_one(rest)
-    matrix, values = scaled[..., 0], eigenvalues(scaled)[0]
+    rest = deflated(chance[..., None], law[:, None], numbers)
+    matrix, values = rest.matrix[..., 0], eigenvalues(rest.matrix)[0]
     near = int((found.log_modulus > -NEAR).sum())
     levels = grouped(Ratios(*(part[:near] for part in found)))
     condition = conditions(matrix, values)
     for members in joined(values, condition, near):
-        levels.append(_level(matrix, values, condition, members, found, float(size[0])))
+        levels.append(_level(matrix, values, condition, members, found, float(rest.log_size[0])))
     return sorted(levels, key=lambda level: level.log_gap)
 
 
 def _level(
-    matrix: np.ndarray, values: np.ndarray, condition: np.ndarray, members: list[int], found: Ratios, size: float
+    matrix: np.ndarray, values: np.ndarray, condition: np.ndarray, members: list[int], found: Ratios, log_size: float
 ) -> Cluster:
     worst = float(condition[members].max())
     if len(members) == 1:
@@ -111,6 +112,6 @@ def _level(
     if abs(mean) < small:
         return Cluster(-np.inf, 0.0, np.inf, len(members), kind, worst, 0.0)
     phase = float(tidy(np.angle(np.array([mean])))[0])
-    log_modulus = float(np.log(abs(mean)) + np.log(size))
+    log_modulus = float(np.log(abs(mean)) + log_size)
     log_gap = float(np.log(-log_modulus))
-    return Cluster(log_modulus, phase, log_gap, len(members), kind, worst, float(split.real) * size**2)
+    return Cluster(log_modulus, phase, log_gap, len(members), kind, worst, float(split.real * np.exp(2 * log_size)))

@@ -6,10 +6,10 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from ..operators.numbers import DOUBLE, Numbers, to_double
+from ..operators.numbers import DOUBLE, Numbers
 from .merging import inverted, merge
 from .near_circle import near_modes
-from .spectrum import polar, scaled_to_one, together, without_perron
+from .spectrum import deflated, polar, together
 
 __all__ = ["Modes", "Shown", "modes", "shown"]
 
@@ -24,6 +24,8 @@ class Modes:
         As in `Ratios`.
     right, left : ndarray, shape (batch, n, m) and (batch, m, n)
         Vectors with left·right = 1, of P up to a constant in each right one.
+    log_noise : ndarray, shape (batch,)
+        Logarithm of the rounding of the matrix they were found from.
     """
 
     log_modulus: np.ndarray
@@ -31,6 +33,7 @@ class Modes:
     log_gap: np.ndarray
     right: np.ndarray
     left: np.ndarray
+    log_noise: np.ndarray
 
 
 def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Modes:
@@ -44,11 +47,9 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
     numbers : Numbers
         Number system of both.
     """
-    doubles, weights = to_double(chance), to_double(law)
-    rest, kept = without_perron(doubles, weights)
-    n, batch = len(doubles), doubles.shape[-1]
-    scaled, size = scaled_to_one(rest)
-    matrix = np.ascontiguousarray(np.moveaxis(scaled, -1, 0))
+    rest, log_size, log_noise, kept = deflated(chance, law, numbers)
+    n, batch = len(chance), chance.shape[-1]
+    matrix = np.ascontiguousarray(np.moveaxis(rest, -1, 0))
     values, vectors, inverse = _eigen(matrix)
     merge(matrix, values)
     right = np.zeros((batch, n, n - 1), dtype=np.complex128)
@@ -56,11 +57,11 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
     # Constants are free in right vectors, and left vectors sum to 0: both are felt through differences only.
     np.put_along_axis(right, kept.T[:, :, None], vectors, axis=1)
     np.put_along_axis(left, kept.T[:, None, :], inverse, axis=2)
-    left[np.arange(batch), :, weights.argmax(axis=0)] = -inverse.sum(axis=2)
-    log_modulus, phase = polar(values, size)
+    left[np.arange(batch), :, np.argmax(law, axis=0)] = -inverse.sum(axis=2)
+    log_modulus, phase = polar(values, log_size)
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
-    found = Modes(log_modulus, phase, log_gap, right, left)
+    found = Modes(log_modulus, phase, log_gap, right, left, log_noise)
     for near in near_modes(chance, log_modulus, phase, numbers):
         near.replace_in(log_modulus, phase, log_gap)
         if near.right is not None and near.left is not None:

@@ -18,15 +18,15 @@ from .near_circle import near_modes, tidy
 from .perron import PerronPair
 
 __all__ = [
+    "Deflated",
     "Ratios",
     "chain_ratios",
     "clusters",
+    "deflated",
     "eigenvalues",
     "polar",
     "ratios",
-    "scaled_to_one",
     "together",
-    "without_perron",
 ]
 
 #: Eigenvalues whose gaps agree to this relative accuracy are counted as one cluster.
@@ -69,15 +69,13 @@ def chain_ratios(chance: np.ndarray, stationary: np.ndarray, numbers: Numbers = 
     numbers : Numbers
         Number system of both.
     """
-    doubles = to_double(chance)
-    if len(doubles) == 1:
-        none = np.empty((doubles.shape[-1], 0))
+    if len(chance) == 1:
+        none = np.empty((chance.shape[-1], 0))
         return Ratios(none, none.copy(), none.copy())
-    rest, _ = without_perron(doubles, to_double(stationary))
-    scaled, size = scaled_to_one(rest)
-    values = eigenvalues(scaled)
-    merge(np.moveaxis(scaled, -1, 0), values)
-    log_modulus, phase = polar(values, size)
+    rest = deflated(chance, stationary, numbers)
+    values = eigenvalues(rest.matrix)
+    merge(np.moveaxis(rest.matrix, -1, 0), values)
+    log_modulus, phase = polar(values, rest.log_size)
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
     for near in near_modes(chance, log_modulus, phase, numbers):
@@ -85,13 +83,33 @@ def chain_ratios(chance: np.ndarray, stationary: np.ndarray, numbers: Numbers = 
     return Ratios(log_modulus, phase, log_gap)
 
 
-def without_perron(chance: np.ndarray, law: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return P_ij − P_rj for i, j ≠ r, with r the likeliest state, and the states kept, shape (n − 1, batch).
+class Deflated(NamedTuple):
+    """P_ij − P_rj for i, j ≠ r with r the likeliest state: all eigenvalues of P but the Perron root.
 
-    The matrix has all eigenvalues of P but the Perron root. A difference that is only
-    rounding is set to 0: it would pass for an eigenvalue.
+    Attributes
+    ----------
+    matrix : ndarray, shape (n − 1, n − 1, batch)
+        In doubles, of size 1: numbers next to the smallest doubles are poor ones.
+    log_size : ndarray, shape (batch,)
+        Logarithm of what it was divided by.
+    log_noise : ndarray, shape (batch,)
+        Logarithm of the rounding of an entry.
+    kept : ndarray of int, shape (n − 1, batch)
+        The states i.
     """
-    likeliest = law.argmax(axis=0)
+
+    matrix: np.ndarray
+    log_size: np.ndarray
+    log_noise: np.ndarray
+    kept: np.ndarray
+
+
+def deflated(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Deflated:
+    """Take the Perron mode out of transition matrices.
+
+    A difference that is only rounding is set to 0: it would pass for an eigenvalue.
+    """
+    likeliest = np.argmax(law, axis=0)
     others = np.arange(len(law) - 1)[:, None]
     kept = others + (others >= likeliest)
     points = np.arange(law.shape[-1])
@@ -99,9 +117,15 @@ def without_perron(chance: np.ndarray, law: np.ndarray) -> tuple[np.ndarray, np.
     entries = chance[kept[:, None], kept[None], points]
     rest = entries - reference[None]
     with np.errstate(divide="ignore"):
-        depth = 1 - np.log(np.minimum(entries, reference[None]))
-    noise = 4 * 2.0**-53 * np.where(np.isfinite(depth), depth, 1.0) * (entries + reference[None])
-    return np.where(np.abs(rest) <= noise, 0.0, rest), kept
+        depth = 1 - to_double(numbers.log(np.minimum(entries, reference[None])))
+    rounding = numbers.array(np.where(np.isfinite(depth), 4 * depth, 4.0)) * numbers.epsilon
+    sums = entries + reference[None]
+    rest = np.where(np.abs(rest) <= rounding * sums, numbers.scalar(0), rest)
+    size = np.abs(rest).sum(axis=1).max(axis=0)
+    size = np.where(size > 0, size, numbers.scalar(1))
+    with np.errstate(divide="ignore"):
+        log_noise = to_double(numbers.log(sums.max(axis=(0, 1)) * numbers.epsilon))
+    return Deflated(to_double(rest / size), to_double(numbers.log(size)), log_noise, kept)
 
 
 def eigenvalues(rest: np.ndarray) -> np.ndarray:
@@ -121,18 +145,11 @@ def eigenvalues(rest: np.ndarray) -> np.ndarray:
     return np.take_along_axis(values, order, axis=-1)
 
 
-def scaled_to_one(rest: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return a matrix of size 1, for numbers next to the smallest doubles are poor ones, and its size, (batch,)."""
-    size = np.abs(rest).sum(axis=1).max(axis=0)
-    size = np.where(size > 0, size, 1.0)
-    return rest / size, size
-
-
-def polar(values: np.ndarray, size: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
-    """Return ln |λ·size| and phases; what is rounding next to a matrix of size 1 counts as 0."""
+def polar(values: np.ndarray, log_size: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return ln |λ| + log_size and phases; what is rounding next to a matrix of size 1 counts as 0."""
     modulus = np.abs(values)
     zero = (modulus == 0) | (modulus < 1e-14 * values.shape[-1])
-    log_modulus = np.where(zero, -np.inf, np.log(np.where(zero, 1.0, modulus)) + np.log(size)[:, None])
+    log_modulus = np.where(zero, -np.inf, np.log(np.where(zero, 1.0, modulus)) + log_size[:, None])
     return log_modulus, tidy(np.where(zero, 0.0, np.angle(values)))
 
 

@@ -11,6 +11,7 @@ import numpy as np
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow
 from ..eigen.modes import Modes, modes, shown
+from ..eigen.spectrum import deflated
 from ..operators.numbers import to_double
 from .correlations import anchors
 from .segment import Segment
@@ -19,6 +20,8 @@ __all__ = ["Decay", "decay", "slowest"]
 
 #: Amplitudes below this, relative to the product of the two quantities' sizes, count as zero.
 _AMPLITUDE = 1e-11
+#: Smaller eigenvalues (ln |λ/λ₁|) may lose digits to rounding.
+_SMALL = -8.0
 #: Entries of the largest array that is made for many points at once.
 _AT_ONCE = 2**22
 
@@ -35,17 +38,25 @@ class Decay:
         |arg λ|; 0 where there is no mode.
     amplitude : ndarray
         A in A cos(kr + φ) e^{−r/ξ}; 0 where there is no mode.
+    log_noise : ndarray
+        Logarithm of the absolute rounding of λ/λ₁.
     """
 
     log_modulus: np.ndarray
     log_gap: np.ndarray
     wave_number: np.ndarray
     amplitude: np.ndarray
+    log_noise: np.ndarray
 
     @classmethod
     def none(cls, size: int) -> Decay:
         """Return what holds where nothing decays."""
-        return cls(np.full(size, -np.inf), np.full(size, np.inf), np.zeros(size), np.zeros(size))
+        nothing, zero = np.full(size, -np.inf), np.zeros(size)
+        return cls(nothing, -nothing, zero, zero.copy(), nothing.copy())
+
+    def at(self, points: np.ndarray) -> Decay:
+        """Return what holds at some points."""
+        return Decay(*(values[points] for values in vars(self).values()))
 
     def put(self, points: np.ndarray, part: Decay) -> None:
         """Store what was found at some points."""
@@ -58,7 +69,12 @@ def slowest(segment: Segment) -> Decay:
     log_modulus, phase, log_gap = segment.spectrum()
     if log_gap.shape[1] == 0:
         return Decay.none(segment.indices.size)
-    return Decay(log_modulus[:, 0], log_gap[:, 0], np.abs(phase[:, 0]), np.ones(segment.indices.size))
+    log_noise = np.full(segment.indices.size, -np.inf)
+    small = np.flatnonzero(log_modulus[:, 0] < _SMALL)
+    if small.size:
+        law = segment.law
+        log_noise[small] = deflated(law.pair.chance[..., small], law.stationary[:, small], law.numbers).log_noise
+    return Decay(log_modulus[:, 0], log_gap[:, 0], np.abs(phase[:, 0]), np.ones(len(log_noise)), log_noise)
 
 
 @dataclass(frozen=True)
@@ -127,13 +143,18 @@ def _slowest_shown(found: Modes, pairs: Sequence[_Pair]) -> Decay:
     k = carried[points].argmax(axis=1)
     phase = found.phase[points, k]
     ratio = np.exp(found.log_modulus[points, k] + 1j * phase)
-    total: Any = sum(
-        view.amplitude[points, k] * ratio ** (pair.shift - 1) * pair.size[points]
-        for view, pair in zip(views, pairs, strict=True)
-    )
+    with np.errstate(all="ignore"):  # eigenvalues below all doubles, raised to negative powers
+        total: Any = sum(
+            view.amplitude[points, k] * ratio ** (pair.shift - 1) * pair.size[points]
+            for view, pair in zip(views, pairs, strict=True)
+        )
     alone = (phase == 0) | (np.abs(phase) == np.pi)
     modulus, gap = found.log_modulus[points, k], found.log_gap[points, k]
-    result.put(points, Decay(modulus, gap, np.abs(phase), np.abs(total) * np.where(alone, 1, 2)))
+    amplitude = np.abs(total) * np.where(alone, 1, 2)
+    result.put(
+        points,
+        Decay(modulus, gap, np.abs(phase), amplitude, np.where(modulus < _SMALL, found.log_noise[points], -np.inf)),
+    )
     for values in vars(result).values():
         values[np.isnan(found.log_gap).any(axis=1)] = np.nan
     return result

@@ -12,8 +12,8 @@ from ..eigen.spectrum import Ratios
 from ..errors import NotApplicable
 from ..operators.numbers import to_double
 from .arguments import check_count
-from .correlations import sorted_spectrum
 from .evaluate import Laws
+from .lost import whole_spectrum
 
 __all__ = ["Level", "levels"]
 
@@ -96,13 +96,13 @@ def levels(laws: Laws, point: Point, count: int | None) -> tuple[Level, ...]:
         raise NotApplicable("at T = 0 eigenvalues have no finite logarithm; gaps(k) has the limits of their ratios")
     segment = laws.segments()[0]
     log_root = float(to_double(segment.log_root - segment.beta * segment.least_energy)[0])
-    joined = sorted_spectrum(segment)
-    here = Ratios(*(part[0] for part in joined))
+    here = Ratios(*(part[0] for part in whole_spectrum(laws, point, segment)))
     found: list[Cluster]
     if segment.other_classes or np.isnan(here.log_gap).any():
         found = grouped(here)
     else:
-        found = classified(segment.law.pair.chance[..., 0], segment.law.stationary[:, 0], here)
+        law = segment.law
+        found = classified(law.pair.chance[..., 0], law.stationary[:, 0], here, law.numbers)
     # λ₁ itself stands with those that coincide with it.
     first = [level for level in found if level.log_gap == -np.inf and level.phase == 0]
     rest = [level for level in found if level not in first]

@@ -24,7 +24,7 @@ from ..tabulate.affine import affine_table
 from ..tabulate.calling import number_table
 from ..tabulate.exact import exact_table
 
-__all__ = ["state_classes"]
+__all__ = ["state_classes", "vanishing"]
 
 _PRIMES = (2147483647, 2147483629)
 #: Points that have to be looked at one by one.
@@ -105,9 +105,17 @@ def _same_zeros(running: Mapping[str, np.ndarray], size: int) -> list[tuple[np.n
 
 
 def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observable: str) -> np.ndarray:
+    matrix = _labels(window, states, known, window.chain.observable(observable))
+    return equitable(interned((matrix[..., 0] << 31) + matrix[..., 1]))
+
+
+def _labels(
+    window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observables: Sequence[Term]
+) -> np.ndarray:
+    """Return the matrix modulo the primes, shape (states, states, primes)."""
     factors = [_factor(window, source.source, known) for source in window.factors]
     parts = []
-    for term in window.chain.observable(observable):
+    for term in observables:
         place = place_in(window, term)
         if place is not None:
             powers, _ = _powers(window, term, known, f"observable {place[1]}")
@@ -117,8 +125,47 @@ def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], 
     extra = [(sites, _hashed(powers, unit, None)) for sites, powers in parts]
     label = window.reduce(_Modular(), tables, extra)
     full = (*(window.sizes[site] for site in window.sites), len(_PRIMES))
-    matrix = window.matrix(np.broadcast_to(label, full), 0)[np.ix_(states, states)]
-    return equitable(interned((matrix[..., 0] << 31) + matrix[..., 1]))
+    return window.matrix(np.broadcast_to(label, full), 0)[np.ix_(states, states)]
+
+
+def vanishing(window: ChainWindow, states: np.ndarray, values: Mapping[str, Any], index: int) -> int | None:
+    """Return how many eigenvalues are 0 at every temperature, counted algebraically; None where that is not known.
+
+    Parameters
+    ----------
+    window : ChainWindow
+    states : ndarray of int
+        The states of the chain, out of all joint states of the cut.
+    values : mapping
+        Parameters and ``T``: Fractions, or arrays over the whole batch.
+    index : int
+        The point, in the batch.
+    """
+    known = {
+        name: value if np.ndim(value) == 0 else Fraction(repr(float(np.asarray(value)[index])))
+        for name, value in values.items()
+    }
+    try:
+        matrix = _labels(window, states, known, ())[..., 0].astype(object)
+    except _Unknown:
+        return None
+    # The rank of a high power counts the eigenvalues that are not 0.
+    power, steps = matrix, 1
+    while steps < len(matrix):
+        power, steps = power @ power % _PRIMES[0], 2 * steps
+    return len(matrix) - _rank(power, _PRIMES[0])
+
+
+def _rank(matrix: np.ndarray, prime: int) -> int:
+    rows, rank = matrix.copy(), 0
+    for column in range(len(rows)):
+        pivots = np.flatnonzero(rows[rank:, column])
+        if pivots.size:
+            rows[[rank, rank + pivots[0]]] = rows[[rank + pivots[0], rank]]
+            rows[rank] = rows[rank] * pow(int(rows[rank, column]), -1, prime) % prime
+            rows[rank + 1 :] = (rows[rank + 1 :] - rows[rank + 1 :, column, None] * rows[rank][None]) % prime
+            rank += 1
+    return rank
 
 
 def _factor(

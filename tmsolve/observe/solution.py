@@ -234,15 +234,15 @@ class Solution:
     def gaps(self, k: int) -> np.ndarray:
         """Gaps ln λ₁/|λ_i| of the next k eigenvalues, counted with multiplicity, shape (*batch, k).
 
-        inf where the matrix has no further eigenvalue or it is 0.
+        inf where the matrix has no further eigenvalue, or it is 0 or out of reach of the longest numbers.
         """
         check_count("k", k)
-        return self._shaped(gaps(self.laws, int(k)), "gaps")
+        return self._shaped(gaps(self.laws, self.point, int(k)), "gaps")
 
     def log_gaps(self, k: int) -> np.ndarray:
         """Natural logarithms of the `gaps`, finite where gaps are below all doubles; −inf where they vanish exactly."""
         check_count("k", k)
-        return self._shaped(log_gaps(self.laws, int(k)), "logarithms of gaps")
+        return self._shaped(log_gaps(self.laws, self.point, int(k)), "logarithms of gaps")
 
     @np.errstate(under="ignore")
     def spectrum(self, k: int | None = None) -> tuple[Level, ...]:

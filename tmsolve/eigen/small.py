@@ -1,0 +1,50 @@
+"""Eigenvalues far below the largest, one point at a time, in numbers long enough to hold them."""
+
+from __future__ import annotations
+
+import numpy as np
+
+from ..operators.numbers import Numbers, to_double
+from .near_circle import tidy
+
+__all__ = ["small_eigenvalues"]
+
+
+def small_eigenvalues(
+    chance: np.ndarray, law: np.ndarray, numbers: Numbers, zeros: int
+) -> tuple[np.ndarray, np.ndarray] | None:
+    """Return ln |λ/λ₁| and phases of all eigenvalues but λ₁, largest modulus first.
+
+    Parameters
+    ----------
+    chance : ndarray, shape (n, n)
+        Transition probabilities, in long numbers.
+    law : ndarray, shape (n,)
+        Their stationary law.
+    numbers : Numbers
+        Number system of both.
+    zeros : int
+        How many eigenvalues are exactly 0. They come out as rounding, of which a Jordan block
+        makes a root.
+
+    Returns
+    -------
+    log_modulus, phase : ndarray, shape (n − 1,)
+        Or ``None`` where these numbers are too short to tell the others from zeros.
+    """
+    likeliest = int(np.argmax(law))
+    kept = [i for i in range(len(law)) if i != likeliest]
+    rest = chance[np.ix_(kept, kept)] - chance[likeliest, kept][None]
+    context = type(numbers.scalar(1)).context
+    size = max(abs(entry) for entry in rest.ravel())
+    if len(kept) <= zeros or size == 0:
+        return np.full(len(kept), -np.inf), np.zeros(len(kept))
+    values = sorted(context.eig(context.matrix((rest / size).tolist()), left=False, right=False), key=lambda v: -abs(v))
+    there = values[: len(kept) - zeros]
+    # Rounding of a zero in a block of k vectors is the k-th root of that of a number.
+    noise = context.ldexp(context.mpf(1), -(numbers.bits - 40) // (zeros + 1))
+    if abs(there[-1]) <= noise:
+        return None
+    logs = [context.log(abs(value) * size) for value in there] + [context.mpf("-inf")] * zeros
+    phases = [float(context.arg(value)) for value in there] + [0.0] * zeros
+    return to_double(np.array(logs, dtype=object)), tidy(np.array(phases))
