@@ -123,17 +123,30 @@ def adapted_states(
     elements = sample(group, seed)
     parts = constituents(group, elements)
     pool = _pool(group, [*hints, *group.generators, *elements])
-    starts = list(_starts(group, pool))
-    shares = _shares(starts, parts)
-    result = []
+    cuts = _cuts(group, parts, pool)
+    return [_adapted(group, cut, part, parts, elements) for cut, part in zip(cuts, parts, strict=True)]
+
+
+def _cuts(group: PermutationGroup, parts: Sequence[Constituent], pool: Sequence[np.ndarray]) -> list[SignedOrbits]:
+    """Return functions in which each constituent occurs as few times, among as few others, as was found."""
+    found: dict[int, tuple[int, int, SignedOrbits]] = {}
     for k, part in enumerate(parts):
-        target = part.multiplicity * part.conjugates
-        cut = _linear(group, part) if part.dimension == 1 and part.conjugates == 1 else None
-        if cut is None:
-            cut = _smallest(starts, shares[:, k], target, part.dimension)
-            cut = _improved(cut, part, pool, target)
-        result.append(_adapted(group, cut, part, parts, elements))
-    return result
+        if part.dimension == part.conjugates == 1:
+            linear = _linear(group, part)
+            found[k] = linear.size, linear.size, linear
+    targets = [part.multiplicity * part.conjugates for part in parts]
+    pending = [k for k in range(len(parts)) if k not in found]
+    for cut in _starts(group, pool) if pending else ():
+        for k, share in zip(pending, _shares([cut], [parts[k] for k in pending])[0].tolist(), strict=True):
+            useful = share and parts[k].dimension % (share // targets[k]) == 0
+            if useful and (k not in found or (share, cut.size) < found[k][:2]):
+                found[k] = share, cut.size, cut
+        pending = [k for k in pending if k not in found or found[k][:2] != (targets[k], targets[k])]
+        if not pending:
+            break
+    for k in pending:
+        found[k] = 0, 0, _improved(found[k][2], parts[k], pool, targets[k])
+    return [found[k][2] for k in range(len(parts))]
 
 
 def _pool(group: PermutationGroup, candidates: Sequence[np.ndarray]) -> list[np.ndarray]:
@@ -170,12 +183,6 @@ def _linear(group: PermutationGroup, part: Constituent) -> SignedOrbits:
     n = group.degree
     single = SignedOrbits.alone(n)
     return single.joined([(g, round(float(part.characters(g)[0].real))) for g in group.generators])
-
-
-def _smallest(cuts: Sequence[SignedOrbits], shares: np.ndarray, target: int, dimension: int) -> SignedOrbits:
-    """Return the cut in which a constituent occurs least often, the smallest of those."""
-    useful = [i for i, share in enumerate(shares) if share and dimension % (share // target) == 0]
-    return cuts[min(useful, key=lambda i: (shares[i], cuts[i].size))]
 
 
 def _improved(cut: SignedOrbits, part: Constituent, pool: Sequence[np.ndarray], target: int) -> SignedOrbits:

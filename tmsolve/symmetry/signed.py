@@ -7,8 +7,6 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from .refine import ranked
-
 __all__ = ["SignedOrbits"]
 
 
@@ -88,17 +86,19 @@ class SignedOrbits:
                     low, high = sorted((ra, rb))
                     parent[high], parity[high] = low, relative
                     dead[low] |= dead[high]
-        roots = [find(c) if c >= 0 else (-1, 1) for c in classes]
-        alive = [r if r >= 0 and not dead[r] else -1 for r, _ in roots]
-        new_signs = np.array([s * t for s, (_, t) in zip(signs, roots, strict=True)])
-        return _first_positive(np.array(alive), new_signs)
+        return _first_positive(classes, signs, [find(c) for c in range(count)], dead)
 
 
-def _first_positive(classes: np.ndarray, signs: np.ndarray) -> SignedOrbits:
-    """Number classes in order of appearance, with the first member of each positive."""
-    inside = np.flatnonzero(classes >= 0)
-    numbers = np.full(len(classes), -1)
-    numbers[inside] = ranked(classes[inside])
-    _, first = np.unique(numbers[inside], return_index=True)
-    lead = signs[inside[first]]
-    return SignedOrbits(numbers, np.where(numbers >= 0, signs * lead[numbers] if len(lead) else signs, 1))
+def _first_positive(
+    classes: list[int], signs: list[int], roots: list[tuple[int, int]], dead: list[bool]
+) -> SignedOrbits:
+    """Number the joined classes in order of appearance, with the first member of each positive."""
+    names: dict[int, tuple[int, int]] = {}
+    numbers, result = [-1] * len(classes), [1] * len(classes)
+    for i, c in enumerate(classes):
+        if c >= 0 and not dead[roots[c][0]]:
+            root, relative = roots[c]
+            sign = signs[i] * relative
+            numbers[i], lead = names.setdefault(root, (len(names), sign))
+            result[i] = sign * lead
+    return SignedOrbits(np.array(numbers, dtype=np.intp), np.array(result, dtype=int))
