@@ -173,3 +173,20 @@ def test_random_groups(generators):
     assert sum(part.size * part.times for part in parts) == n
     sums = [sum(part.times * traces(part.block(matrix), n)[k] for part in parts) for k in range(n)]
     assert sums == traces(matrix, n)
+
+
+def test_elements_that_do_not_tell_representations_apart_are_noticed(monkeypatch):
+    group = automorphisms(pairs_that_overlap(4))
+    expected = sorted((p.size, p.times) for p in adapted_states(group))
+    asked = []
+
+    def poor(group, count):
+        asked.append(count)
+        return [np.arange(group.degree)] if len(asked) < 3 else sample(group, count)
+
+    monkeypatch.setattr("tmsolve.symmetry.adapted.sample", poor)
+    assert sorted((p.size, p.times) for p in adapted_states(group)) == expected
+    assert len(asked) == 3
+    monkeypatch.setattr("tmsolve.symmetry.adapted.sample", lambda group, count: [np.arange(group.degree)])
+    with pytest.raises(ArithmeticError, match="the representations of a group of order 24 were not told apart"):
+        adapted_states(group)

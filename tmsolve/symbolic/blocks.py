@@ -83,6 +83,15 @@ def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
         The matrix.
     named : sequence of Permutation
         Symmetries of it that give blocks their labels.
+
+    Examples
+    --------
+    >>> from sympy import QQ, ring
+    >>> R, y = ring("y", QQ)
+    >>> for block in split(np.array([[y, 1, 1], [1, y, 1], [1, 1, y]], dtype=object) * R.one):
+    ...     print(block.matrix.tolist(), block.multiplicity)
+    [[y + 2]] 1
+    [[y - 1]] 2
     """
     table = numbered(matrix)
     group = automorphisms(table)
@@ -94,7 +103,9 @@ def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
     domain = matrix[0, 0].ring.domain
     rotations = [p.image for p in named if "rotation" in p.move[0]]
     blocks: list[Block] = []
-    for k, (part, label) in enumerate(zip(parts, labels, strict=True)):
+    trivial, *others = zip(parts, labels, strict=True)
+    others.sort(key=lambda pair: (pair[0].constituent.dimension, pair[1]))
+    for k, (part, label) in enumerate([trivial, *others]):
         entries = part.block(matrix, lambda c: domain(c.numerator, c.denominator))
         momenta = momenta_of(group, part, entries, rotations)
         block = Block(entries, label, part.times, k == 0, momenta)

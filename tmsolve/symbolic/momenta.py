@@ -34,6 +34,11 @@ class Momenta:
         Angles, in turns, that the rotation stands for.
     real : bool
         Whether K(gʲ) is the cosine of j times the angle, else the phase.
+
+    Examples
+    --------
+    >>> Momenta((1, 2), (Fraction(1, 5), Fraction(2, 5)), real=True).roots([1, 2])
+    [1/2 + sqrt(5)/2, 1/2 - sqrt(5)/2]
     """
 
     coefficients: tuple[Any, ...]

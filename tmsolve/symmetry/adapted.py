@@ -25,6 +25,8 @@ __all__ = ["Adapted", "adapted_states"]
 
 #: Elements of the group that are tried as signs.
 _POOL = 32
+#: Random elements of a large group that have to tell its representations apart, more where fewer do not.
+_SAMPLES = (24, 96, 384)
 
 
 @dataclass(frozen=True, eq=False)
@@ -89,9 +91,7 @@ class Adapted:
         return result
 
 
-def adapted_states(
-    group: PermutationGroup, hints: Sequence[np.ndarray] = (), seed: int = 5
-) -> list[Adapted]:
+def adapted_states(group: PermutationGroup, hints: Sequence[np.ndarray] = ()) -> list[Adapted]:
     """Return rational states of every constituent of the permutation representation.
 
     Parameters
@@ -100,8 +100,6 @@ def adapted_states(
         The group.
     hints : sequence of permutations
         Elements of it that make good signs, such as exchanges of two states.
-    seed : int
-        Chooses random elements.
 
     Returns
     -------
@@ -120,11 +118,39 @@ def adapted_states(
     >>> [(part.block(np.eye(5, dtype=int) * 6 + 1).tolist(), part.times) for part in parts]
     [([[11]], 1), ([[6]], 4)]
     """
-    elements = sample(group, seed)
+    for count in _SAMPLES:
+        try:
+            parts = _attempt(group, hints, sample(group, count))
+        except ArithmeticError:
+            continue
+        if _complete(group, parts):
+            return parts
+    raise ArithmeticError(f"the representations of a group of order {group.order} were not told apart")
+
+
+def _attempt(
+    group: PermutationGroup, hints: Sequence[np.ndarray], elements: Sequence[np.ndarray]
+) -> list[Adapted]:
     parts = constituents(group, elements)
     pool = _pool(group, [*hints, *group.generators, *elements])
     cuts = _cuts(group, parts, pool)
     return [_adapted(group, cut, part, parts, elements) for cut, part in zip(cuts, parts, strict=True)]
+
+
+def _complete(group: PermutationGroup, parts: Sequence[Adapted]) -> bool:
+    """Whether the blocks of a random matrix with the symmetry have the traces of its powers."""
+    pairs = group.pair_orbits
+    matrix = np.random.default_rng(7).uniform(0.5, 1.5, size=int(pairs.max(initial=-1)) + 1)[pairs]
+    blocks = [(part.times, part.block(matrix, float).astype(float)) for part in parts]
+    if sum(times * len(block) for times, block in blocks) != group.degree:
+        return False
+    whole, powers, factors = matrix, [block for _, block in blocks], [block for _, block in blocks]
+    for _ in range(4):
+        total = sum(times * power.trace() for (times, _), power in zip(blocks, powers, strict=True))
+        if abs(total - whole.trace()) > 1e-8 * np.abs(whole.trace()):
+            return False
+        whole, powers = whole @ matrix, [p @ f for p, f in zip(powers, factors, strict=True)]
+    return True
 
 
 def _cuts(group: PermutationGroup, parts: Sequence[Constituent], pool: Sequence[np.ndarray]) -> list[SignedOrbits]:

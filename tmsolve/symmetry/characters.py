@@ -73,16 +73,23 @@ class Constituent:
         return Fraction(round(value * unit), unit)
 
 
-def sample(group: PermutationGroup, seed: int = 5) -> list[np.ndarray]:
+def sample(group: PermutationGroup, count: int = _RANDOM, seed: int = 5) -> list[np.ndarray]:
     """Return elements of different classes that tell representations apart.
 
-    Of a small group all classes, of a large one those of generators and of random elements.
+    Of a small group all classes, of a large one those of generators and of ``count`` random elements.
+
+    Examples
+    --------
+    >>> from tmsolve.symmetry.groups import generated
+    >>> ring = generated([np.array([1, 2, 3, 4, 5, 0]), np.array([5, 4, 3, 2, 1, 0])], 6)
+    >>> ring.order, len(sample(ring))
+    (12, 6)
     """
     if group.order <= _LISTED:
         chosen = list(group.elements())
     else:
         rng = np.random.default_rng(seed)
-        chosen = [*group.generators, *(group.random_element(rng) for _ in range(_RANDOM))]
+        chosen = [*group.generators, *(group.random_element(rng) for _ in range(count))]
     return list({class_average(group, g).tobytes(): g for g in chosen}.values())
 
 
@@ -101,6 +108,11 @@ def constituents(group: PermutationGroup, elements: Sequence[np.ndarray] | None 
     list of Constituent
         Dimension × multiplicity × conjugates add up to n. The squares of the multiplicities,
         each as often as it has conjugates, add up to the number of orbits of pairs.
+
+    Raises
+    ------
+    ArithmeticError
+        The elements do not tell two representations apart, and that was noticed.
 
     Notes
     -----
@@ -127,7 +139,8 @@ def constituents(group: PermutationGroup, elements: Sequence[np.ndarray] | None 
     for v, projector in zip(vectors, projectors, strict=True):
         multiplicity = math.isqrt(round(float((projector.real * fixed).sum())))
         dimension, rest = divmod(v.shape[1], multiplicity)
-        assert not rest, "the class averages chosen do not tell two representations apart"
+        if rest:
+            raise ArithmeticError("the class averages chosen do not tell two representations apart")
         one = Constituent(dimension, multiplicity, 1, projector[None])
         key = tuple(one.average(g) for g in elements)
         found.setdefault(key, []).append((dimension, multiplicity, projector))
@@ -192,7 +205,15 @@ def class_average(group: PermutationGroup, permutation: np.ndarray) -> np.ndarra
 def rational_average(
     group: PermutationGroup, elements: Sequence[np.ndarray], weights: Sequence[int]
 ) -> list[Fraction]:
-    """Return the exact entries, one per orbit of pairs, of Σ weight × mean of K(gᵗ) over t prime to the order of g."""
+    """Return the exact entries, one per orbit of pairs, of Σ weight × mean of K(gᵗ) over t prime to the order of g.
+
+    Examples
+    --------
+    >>> from tmsolve.symmetry.groups import generated
+    >>> turn = np.array([1, 2, 3, 0])
+    >>> [str(x) for x in rational_average(generated([turn], 4), [turn], [3])]
+    ['0', '3/2', '0', '3/2']
+    """
     pairs = group.pair_orbits
     sizes = np.bincount(pairs.ravel())
     states = np.arange(group.degree)
