@@ -41,7 +41,7 @@ from tmsolve import (
     site,
     solve,
 )
-from tmsolve.symbolic.colour_check import colour_mismatch, plain_matrix
+from tmsolve.symbolic.colour_check import colour_mismatch, from_symbols, plain_matrix
 from tmsolve.symbolic.colour_matrix import colour_matrix
 from tmsolve.symbolic.recurrence import ring_sum, trace_of_power
 from tmsolve.symbolic.spectrum import Spectrum
@@ -300,6 +300,24 @@ def test_a_wrong_form_is_found_out():
     ):
         assert "power sum of order" in colour_mismatch(chain, matrix, wrong, right[0][0])
     assert "largest eigenvalue" in colour_mismatch(chain, matrix, right, right[1][0])
+
+
+def test_functions_that_take_symbols_only_are_proof_read_too():
+    """T ln 3 as an energy is a weight of 1/3; sympy's logarithm of a number times a float is no number to NumPy."""
+    field = site(lambda s, T: -T * sp.log(3) * int(s == 0))
+    form = closed_form(Chain(colours("q", special=(0,)), [bond(lambda s, t, J: -J * (s == t)), field]))
+    assert form.is_closed
+    x = sp.exp(BETA * J)
+    first, second = (value for value, m in form.eigenvalues if m == 1)
+    assert sp.expand(first + second - 4 * x - Q + 2) == 0
+    assert sp.expand(first * second - 3 * (x**2 + (Q - 2) * x - Q + 1)) == 0
+
+
+@pytest.mark.parametrize("q", [2, 4])
+def test_matrices_from_numbers_and_from_symbols_are_the_same(q):
+    values = values_of(FIELD.chain, 8)
+    numbers = plain_matrix(FIELD.chain, q, values)
+    assert from_symbols(plain_chain(FIELD.chain, q), values) == pytest.approx(numbers, rel=1e-12)
 
 
 def test_what_has_no_meaning_for_a_symbol_is_refused():

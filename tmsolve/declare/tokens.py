@@ -70,7 +70,8 @@ class Colour:
             return (self.index, self.number) == (other.index, other.number)
         if not isinstance(other, (Number, str, tuple)):
             return NotImplemented
-        if any(other == named for named in self.special):
+        value: Any = other
+        if value in self.special:
             return False
         # Saying "different" would make a field on a colour that was never declared vanish in silence.
         raise ColourMisuse(

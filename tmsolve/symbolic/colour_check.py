@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from fractions import Fraction
 from typing import Any
 
@@ -11,11 +11,14 @@ import numpy as np
 from ..assemble.matrix import Assembled
 from ..assemble.window import build_window
 from ..declare.chain import Chain
+from ..errors import TmsolveError
 from ..tabulate.colours import plain_chain
+from ..tabulate.symbolic import beta, parameter_symbols
 from .colour_matrix import ColourMatrix
-from .verify import evaluate, generic_points
+from .matrix import symbolic_matrix
+from .verify import evaluate, generic_points, numeric_matrix
 
-__all__ = ["colour_mismatch", "plain_matrix"]
+__all__ = ["colour_mismatch", "from_symbols", "plain_matrix"]
 
 #: Most rows of a matrix that is compared with.
 _ROWS = 700
@@ -23,7 +26,7 @@ _ROWS = 700
 _TOLERANCE = 1e-9
 
 
-def plain_matrix(chain: Chain, colours: int, values: dict[str, Fraction]) -> np.ndarray:
+def plain_matrix(chain: Chain, colours: int, values: Mapping[str, Fraction]) -> np.ndarray:
     """Return the transfer matrix for a number of colours in doubles, as it is assembled for numbers.
 
     Parameters
@@ -37,8 +40,25 @@ def plain_matrix(chain: Chain, colours: int, values: dict[str, Fraction]) -> np.
     """
     plain = plain_chain(chain, colours)
     assembled = Assembled(build_window(plain), values, 1)
-    energy, log = assembled.reduced
+    try:
+        energy, log = assembled.reduced
+    except TmsolveError:
+        # A function may take symbols and refuse numbers, as one that calls sympy does.
+        return from_symbols(plain, values)
     return np.exp((log - assembled.beta * energy)[..., 0])
+
+
+def from_symbols(plain: Chain, values: Mapping[str, Fraction]) -> np.ndarray:
+    """Return the transfer matrix of a chain in doubles, each entry evaluated with many digits from its formula."""
+    import sympy as sp
+
+    point = {
+        symbol: sp.Rational(values[name].numerator, values[name].denominator)
+        for name, symbol in parameter_symbols(plain).items()
+        if name != "T" and symbol.is_Symbol
+    }
+    point[beta()] = sp.Rational(values["T"].denominator, values["T"].numerator)
+    return np.array(numeric_matrix(symbolic_matrix(plain), point).tolist(), dtype=float)
 
 
 def colour_mismatch(

@@ -39,8 +39,9 @@ class Factor:
         Monic in the root without the scale of the matrix.
     block : Block
         Where it comes from.
-    multiplicity : int
-        How often it divides the characteristic polynomial of the whole matrix.
+    multiplicity : int or sympy expression
+        How often it divides the characteristic polynomial of the whole matrix; a polynomial where
+        the number of colours is a symbol.
     leading : int
         How often it divides those of the blocks that can carry the Perron root.
     irreducible : bool
@@ -51,7 +52,7 @@ class Factor:
 
     polynomial: Coefficients
     block: Block
-    multiplicity: int
+    multiplicity: Any
     leading: int
     irreducible: bool = True
     roots: tuple[Any, ...] = ()
