@@ -18,6 +18,7 @@ from ..symmetry.adapted import Adapted
 from ..symmetry.characters import class_average
 from ..symmetry.groups import PermutationGroup
 from ..symmetry.permutations import order_of, power
+from ..symmetry.rational import inverse_rows
 
 __all__ = ["Momenta", "momenta_of"]
 
@@ -87,7 +88,7 @@ def momenta_of(
             continue
         averages = [_fractions(class_average(group, power(g, j)), group) for j in range(part.size)]
         columns = [part.block(average)[:, 0].tolist() for average in averages]
-        inverse = _inverse([list(row) for row in zip(*columns, strict=True)])
+        inverse = inverse_rows([list(row) for row in zip(*columns, strict=True)])
         if inverse is not None:
             domain = block[0, 0].ring.domain
             first = block[:, 0].tolist()
@@ -141,18 +142,3 @@ def _fractions(entries: np.ndarray, group: PermutationGroup) -> np.ndarray:
     exact = np.empty(len(sizes), dtype=object)
     exact[:] = [Fraction(round(x * size), size) for x, size in zip(entries.tolist(), sizes, strict=True)]
     return exact[group.pair_orbits]
-
-
-def _inverse(rows: list[list[Fraction]]) -> list[list[Fraction]] | None:
-    n = len(rows)
-    wide = [[*map(Fraction, row), *(Fraction(i == j) for j in range(n))] for i, row in enumerate(rows)]
-    for k in range(n):
-        pivot = next((r for r in range(k, n) if wide[r][k]), None)
-        if pivot is None:
-            return None
-        wide[k], wide[pivot] = wide[pivot], wide[k]
-        wide[k] = [x / wide[k][k] for x in wide[k]]
-        for r in range(n):
-            if r != k and wide[r][k]:
-                wide[r] = [x - wide[r][k] * y for x, y in zip(wide[r], wide[k], strict=True)]
-    return [row[n:] for row in wide]

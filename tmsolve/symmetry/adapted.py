@@ -8,7 +8,7 @@ the full matrix. Entries of the block are sums of entries with rational coeffici
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Iterator, Sequence
+from collections.abc import Callable, Iterable, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
@@ -16,15 +16,13 @@ from typing import Any
 import numpy as np
 
 from .characters import Constituent, constituents, rational_average, sample
+from .choices import shares, sign_choices
 from .groups import PermutationGroup
-from .permutations import compose, order_of, power
-from .refine import ranked
+from .rational import kernel
 from .signed import SignedOrbits
 
 __all__ = ["Adapted", "adapted_states"]
 
-#: Elements of the group that are tried as signs.
-_POOL = 32
 #: Random elements of a large group that have to tell its representations apart, more where fewer do not.
 _SAMPLES = (24, 96, 384)
 
@@ -132,8 +130,7 @@ def _attempt(
     group: PermutationGroup, hints: Sequence[np.ndarray], elements: Sequence[np.ndarray]
 ) -> list[Adapted]:
     parts = constituents(group, elements)
-    pool = _pool(group, [*hints, *group.generators, *elements])
-    cuts = _cuts(group, parts, pool)
+    cuts = sign_choices(group, parts, [*hints, *group.generators, *elements])
     return [_adapted(group, cut, part, parts, elements) for cut, part in zip(cuts, parts, strict=True)]
 
 
@@ -153,80 +150,6 @@ def _complete(group: PermutationGroup, parts: Sequence[Adapted]) -> bool:
     return True
 
 
-def _cuts(group: PermutationGroup, parts: Sequence[Constituent], pool: Sequence[np.ndarray]) -> list[SignedOrbits]:
-    """Return functions in which each constituent occurs as few times, among as few others, as was found."""
-    found: dict[int, tuple[int, int, SignedOrbits]] = {}
-    for k, part in enumerate(parts):
-        if part.dimension == part.conjugates == 1:
-            linear = _linear(group, part)
-            found[k] = linear.size, linear.size, linear
-    targets = [part.multiplicity * part.conjugates for part in parts]
-    pending = [k for k in range(len(parts)) if k not in found]
-    for cut in _starts(group, pool) if pending else ():
-        for k, share in zip(pending, _shares([cut], [parts[k] for k in pending])[0].tolist(), strict=True):
-            useful = share and parts[k].dimension % (share // targets[k]) == 0
-            if useful and (k not in found or (share, cut.size) < found[k][:2]):
-                found[k] = share, cut.size, cut
-        pending = [k for k in pending if k not in found or found[k][:2] != (targets[k], targets[k])]
-        if not pending:
-            break
-    for k in pending:
-        found[k] = 0, 0, _improved(found[k][2], parts[k], pool, targets[k])
-    return [found[k][2] for k in range(len(parts))]
-
-
-def _pool(group: PermutationGroup, candidates: Sequence[np.ndarray]) -> list[np.ndarray]:
-    """Return different elements, those that are their own inverse first."""
-    found: dict[bytes, np.ndarray] = {}
-    products = [compose(a, b) for a in group.generators for b in group.generators]
-    for g in [*candidates, *products][: 4 * _POOL]:
-        order = order_of(g)
-        for image in (power(g, order // 2), g) if order % 2 == 0 else (g,):
-            if order > 1:
-                found.setdefault(image.tobytes(), image)
-    return sorted(found.values(), key=lambda g: order_of(g) > 2)[:_POOL]
-
-
-def _starts(group: PermutationGroup, pool: Sequence[np.ndarray]) -> Iterator[SignedOrbits]:
-    n = group.degree
-    single = SignedOrbits.alone(n)
-    yield single
-    for x in np.unique(group.orbits, return_index=True)[1]:
-        yield SignedOrbits(ranked(group.pair_orbits[x]), np.ones(n, dtype=int))
-    for g in pool:
-        for sign in (1, -1):
-            yield single.joined([(g, sign)])
-
-
-def _shares(cuts: Sequence[SignedOrbits], parts: Sequence[Constituent]) -> np.ndarray:
-    """Return the dimension that each constituent has in each space of functions."""
-    flat = np.array([part.projector.ravel() for part in parts])
-    return np.array([np.rint(flat @ cut.weights().ravel()) for cut in cuts]).astype(int)
-
-
-def _linear(group: PermutationGroup, part: Constituent) -> SignedOrbits:
-    """Return the functions that every element multiplies by its sign."""
-    n = group.degree
-    single = SignedOrbits.alone(n)
-    return single.joined([(g, round(float(part.characters(g)[0].real))) for g in group.generators])
-
-
-def _improved(cut: SignedOrbits, part: Constituent, pool: Sequence[np.ndarray], target: int) -> SignedOrbits:
-    """Ask for further signs as long as that leaves the constituent in, less often or in fewer functions."""
-    share = int(_shares([cut], [part])[0, 0])
-    for g in pool:
-        if (share, cut.size) == (target, target):
-            break
-        for sign in (1, -1):
-            smaller = cut.joined([(g, sign)])
-            fewer = int(_shares([smaller], [part])[0, 0])
-            useful = fewer and part.dimension % (fewer // target) == 0
-            if useful and (fewer, smaller.size) < (share, cut.size):
-                cut, share = smaller, fewer
-                break
-    return cut
-
-
 def _adapted(
     group: PermutationGroup,
     cut: SignedOrbits,
@@ -236,7 +159,7 @@ def _adapted(
 ) -> Adapted:
     members = cut.members()
     signs = [[int(cut.signs[i]) for i in each] for each in members]
-    share = int(_shares([cut], [part])[0, 0])
+    share = int(shares([cut], [part])[0, 0])
     times = part.dimension * part.multiplicity * part.conjugates // share
     frozen = tuple(map(tuple, members)), tuple(map(tuple, signs))
     if share == cut.size:
@@ -249,7 +172,7 @@ def _adapted(
     ]
     for a in range(cut.size):
         lumped[a][a] -= value
-    basis, pivots = _kernel(lumped)
+    basis, pivots = kernel(lumped)
     if len(pivots) != share:
         raise ArithmeticError(f"a constituent should have {share} states among signed orbits and has {len(pivots)}")
     return Adapted(part, *frozen, basis, pivots, times)
@@ -292,30 +215,3 @@ def _telling(
         if sums.count(sums[own]) == 1:
             return rational_average(group, elements, weights), sums[own]
     raise ArithmeticError("the class averages chosen do not tell two representations apart")
-
-
-def _kernel(rows: list[list[Fraction]]) -> tuple[np.ndarray, tuple[int, ...]]:
-    """Return a basis of the kernel, as columns, with unit vectors in the rows returned (Gauss and Jordan)."""
-    n = len(rows)
-    rows = [row.copy() for row in rows]
-    leads: list[int] = []
-    for column in range(n):
-        top = len(leads)
-        pivot = next((r for r in range(top, n) if rows[r][column]), None)
-        if pivot is None:
-            continue
-        rows[top], rows[pivot] = rows[pivot], rows[top]
-        factor = rows[top][column]
-        rows[top] = [x / factor if x else x for x in rows[top]]
-        for r in range(n):
-            factor = rows[r][column]
-            if r != top and factor:
-                rows[r] = [x - factor * y if y else x for x, y in zip(rows[r], rows[top], strict=True)]
-        leads.append(column)
-    free = [c for c in range(n) if c not in set(leads)]
-    basis = np.full((n, len(free)), Fraction(0), dtype=object)
-    for k, column in enumerate(free):
-        basis[column, k] = Fraction(1)
-        for row, lead in enumerate(leads):
-            basis[lead, k] = -rows[row][column]
-    return basis, tuple(free)
