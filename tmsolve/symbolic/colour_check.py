@@ -16,14 +16,15 @@ from ..tabulate.colours import plain_chain
 from ..tabulate.symbolic import beta, parameter_symbols
 from .colour_matrix import ColourMatrix
 from .matrix import symbolic_matrix
-from .verify import evaluate, generic_points, numeric_matrix
+from .verify import evaluate, generic_points, number_value, numeric_matrix, symbol_values
 
 __all__ = ["colour_mismatch", "from_symbols", "plain_matrix"]
 
 #: Most rows of a matrix that is compared with.
 _ROWS = 700
-#: Agreement asked for, relative to the sum of moduli; the matrices are in doubles.
-_TOLERANCE = 1e-9
+#: Agreement asked for, relative to the sum of moduli, with matrices in doubles and with blocks of many digits.
+_TOLERANCE, _EXACT = 1e-9, 1e-25
+_DIGITS = 50
 
 
 def plain_matrix(chain: Chain, colours: int, values: Mapping[str, Fraction]) -> np.ndarray:
@@ -64,47 +65,80 @@ def from_symbols(plain: Chain, values: Mapping[str, Fraction]) -> np.ndarray:
 def colour_mismatch(
     chain: Chain, matrix: ColourMatrix, eigenvalues: Sequence[tuple[Any, Any]], largest: Any
 ) -> str | None:
-    """Compare Σ m λᵏ with traces of powers of plain matrices at random rational points, see `mismatch`.
+    """Compare Σ m λᵏ with traces of powers at random rational points, see `mismatch`.
 
-    The numbers of colours are the least ones for which every representation that occurs is one,
-    or fewer where the matrices would be too large: the identity holds for these too.
+    The blocks are compared with many digits, plain matrices in doubles. The numbers of colours
+    are the least ones for which every representation that occurs is one, or fewer where the
+    matrices would be too large: the identity holds for these too.
 
     Returns
     -------
     str or None
         Where they differ; ``None`` when they agree.
     """
-    import mpmath as mp
-
     powers = 2 * len(eigenvalues) + 1
-    points = generic_points(matrix.alphabet, 4)
-    for colours, point in zip(_numbers(matrix), points, strict=False):
+    for colours, point in zip(_numbers(matrix), generic_points(matrix.alphabet, 3), strict=False):
         point = {**point, matrix.number: colours}
         numbers = [(evaluate(value, point), evaluate(m, point)) for value, m in eigenvalues]
         top = evaluate(largest, point)
         if colours >= matrix.least and any(abs(x) > top * (1 + _TOLERANCE) for x, _ in numbers):
             return f"what should be the largest eigenvalue is not, at {point}"
-        dense = plain_matrix(chain, colours, _parameters(chain, point))
-        scale = float(dense.sum(axis=1).max()) or 1.0
-        dense, power = dense / scale, np.eye(len(dense))
-        for k in range(1, powers + 1):
-            power = power @ dense
-            total = mp.fsum(m * (x / scale) ** k for x, m in numbers)
-            size = mp.fsum(abs(m * (x / scale) ** k) for x, m in numbers)
-            if not abs(np.trace(power) - total) <= _TOLERANCE * size:
-                return f"the power sum of order {k} is {mp.nstr(total, 12)}, not {np.trace(power)}, at {point}"
+        plain = _plain_traces(plain_matrix(chain, colours, _parameters(chain, point)), powers)
+        for traces, tolerance in ((_block_traces(matrix, point, powers), _EXACT), (plain, _TOLERANCE)):
+            wrong = _first_difference(numbers, traces, tolerance)
+            if wrong is not None:
+                return f"{wrong}, at {point}"
     return None
 
 
-def _numbers(matrix: ColourMatrix) -> Iterator[int]:
-    """Yield numbers of colours, with all representations where matrices of that many colours are small enough."""
-    import sympy as sp
+def _first_difference(numbers: Sequence[tuple[Any, Any]], traces: Sequence[Any], tolerance: float) -> str | None:
+    import mpmath as mp
 
+    with mp.workdps(_DIGITS):
+        for k, trace in enumerate(traces, start=1):
+            total = mp.fsum(m * x**k for x, m in numbers)
+            size = mp.fsum(abs(m * x**k) for x, m in numbers)
+            if not abs(trace - total) <= tolerance * size:
+                return f"the power sum of order {k} is {mp.nstr(total, 12)}, not {mp.nstr(trace, 12)}"
+    return None
+
+
+def _block_traces(matrix: ColourMatrix, point: Mapping[Any, Any], powers: int) -> list[Any]:
+    """Return the sums over blocks of multiplicity times trace, with many digits."""
+    import mpmath as mp
+
+    with mp.workdps(_DIGITS):
+        values = symbol_values(matrix.alphabet, point)
+        scale = mp.fprod(v**s for v, s in zip(values, matrix.scale, strict=False))
+        traces = [mp.mpf(0)] * powers
+        for block in matrix.sectors():
+            size = range(block.size)
+            dense = mp.matrix([[scale * number_value(block.matrix[i, j], values) for j in size] for i in size])
+            power, times = mp.eye(block.size), evaluate(block.multiplicity, point)
+            for k in range(powers):
+                power = power * dense
+                traces[k] += times * mp.fsum(power[i, i] for i in size)
+        return traces
+
+
+def _plain_traces(dense: np.ndarray, powers: int) -> list[Any]:
+    import mpmath as mp
+
+    scale = float(dense.sum(axis=1).max()) or 1.0
+    power, traces = np.eye(len(dense)), []
+    for k in range(1, powers + 1):
+        power = power @ (dense / scale)
+        traces.append(mp.mpf(float(np.trace(power))) * mp.mpf(scale) ** k)
+    return traces
+
+
+def _numbers(matrix: ColourMatrix) -> Iterator[int]:
+    """Yield three numbers of colours whose matrices are small enough."""
     least = max(matrix.special, 1)
-    wanted = [matrix.least + 1, max(matrix.least, least), least + 1, least]
-    sizes = {q: int(sp.Integer(matrix.rows.subs(matrix.number, q))) for q in wanted}
-    largest = next((q for q in range(max(wanted), least, -1) if _size(matrix, q) <= _ROWS), least)
-    yield from dict.fromkeys(min(q, largest) for q in wanted if sizes[q])
+    largest = max(matrix.least + 1, least)
+    while largest > least and _size(matrix, largest) > _ROWS:
+        largest -= 1
+    yield from (largest, max(largest - 1, least), largest)
 
 
 def _size(matrix: ColourMatrix, colours: int) -> int:

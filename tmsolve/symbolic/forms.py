@@ -54,6 +54,13 @@ def closed_form(chain: Chain, *, time_limit: float = 30) -> ClosedForm:
     -log(2*cosh(J*beta))/beta
     >>> form.partition_function(3)
     2*exp(3*J*beta) + 6*exp(-J*beta)
+
+    The number of colours may be a symbol:
+
+    >>> from tmsolve import colours
+    >>> potts = Chain(colours("q"), [bond(lambda s, t, J: -J*(s == t))])
+    >>> closed_form(potts).partition_function()
+    (q - 1)*(exp(J*beta) - 1)**N + (q + exp(J*beta) - 1)**N
     """
     clock = Clock(_seconds(time_limit))
     try:
