@@ -96,7 +96,8 @@ def inverted(vectors: np.ndarray) -> np.ndarray:
     """Return the inverses of stacked matrices; where they are singular to rounding, the pseudo-inverses."""
     try:
         inverse = np.linalg.inv(vectors)
-        size = np.linalg.norm(vectors, axis=(1, 2)) * np.linalg.norm(inverse, axis=(1, 2))
+        with np.errstate(all="ignore"):
+            size = np.linalg.norm(vectors, axis=(1, 2)) * np.linalg.norm(inverse, axis=(1, 2))
         bad = np.flatnonzero(~(size < _SINGULAR))
     except np.linalg.LinAlgError:
         inverse, bad = np.empty_like(vectors), np.arange(len(vectors))
