@@ -127,7 +127,9 @@ def _minimal(log: LogSeries) -> Any:
     if not any(rest[1:]):
         return sp.Poly(rest[0].denominator * x - rest[0].numerator, x)
     if rest == [0, 1]:
-        return sp.Poly(field.polynomial.as_expr().subs(field.polynomial.gen, x), x, domain="QQ").clear_denoms()[1]
+        return sp.Poly(field.polynomial.as_expr().subs(field.polynomial.gen, x), x, domain="QQ").clear_denoms(
+            convert=True
+        )[1]
     return sp.Poly(sp.minimal_polynomial(log.growth_expression, x), x)
 
 

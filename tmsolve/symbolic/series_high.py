@@ -9,7 +9,7 @@ from typing import Any
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable, listing
-from .series_matrix import Constants, ExponentialMatrix, Part, exponential_matrix, source_parts
+from .series_matrix import Constants, ExponentialMatrix, Part, exponential_matrix, irrational_weight, source_parts
 from .series_numbers import rationals
 from .series_perturb import Index, below, logarithm, perron_series
 from .series_root import LeadingRoot, Rows, leading_root
@@ -79,6 +79,8 @@ def _root_at_infinity(matrix: ExponentialMatrix) -> LeadingRoot:
         for j, number in plain.items():
             if number is None:
                 names = constants.names(row[j])
+                if not names:
+                    raise irrational_weight(constants.expression(row[j]))
                 raise NotApplicable(
                     f"weights leave {listing(names)} in the transfer matrix at infinite temperature, and a series "
                     f"starts from numbers; fix them with chain.fix({'=…, '.join(names)}=…)"

@@ -9,7 +9,7 @@ from typing import Any
 from ..declare.chain import Chain
 from ..errors import NotApplicable
 from .series_balance import Balanced, balanced_classes, counted_steps
-from .series_matrix import Constants, Part, exponential_matrix, source_parts
+from .series_matrix import Constants, Part, exponential_matrix, irrational_weight, source_parts
 from .series_numbers import NumberField, rationals
 from .series_perturb import Index, below, logarithm, perron_series
 from .series_root import LeadingRoot, leading_root
@@ -82,10 +82,7 @@ def _numbers(balanced: Balanced, field: NumberField) -> list[Any]:
     for part, *_, exponents, c in balanced.exponents:
         number = constants.number(constants.coefficient(exponents, c)) if part == (0, 0) else field.domain.zero
         if number is None:
-            raise NotApplicable(
-                "a weight is an irrational number, and a series counts ground states with rational ones; write it as "
-                "an energy -T*log(…), or use solve(chain.at(…))"
-            )
+            raise irrational_weight(constants.expression(constants.coefficient(exponents, c)))
         numbers.append(number)
     return numbers
 
@@ -93,20 +90,18 @@ def _numbers(balanced: Balanced, field: NumberField) -> list[Any]:
 def _expanded(balanced: Balanced, root: LeadingRoot, sources: int, order: int) -> LogSeries:
     if len(root.parts) > 1:
         found = tied_series(balanced, root.field, root.value, sources, order)
-        field, value, constants, step = found.field, found.root, found.constants, balanced.step / found.ramification
-        logs = found.logs
+        constants, step, logs = found.constants, balanced.step / found.ramification, found.logs
         gap: int | None = found.gap
     else:
-        field, value, step = root.field, root.value, balanced.step
-        constants = Constants(balanced.matrix, field)
+        constants, step = Constants(balanced.matrix, root.field), balanced.step
         logs, gap = _simple(balanced, root, constants, sources, order)
     unit = _sympy(step) * balanced.quantum
     parts: dict[Part, list[SeriesTerm]] = {part: [] for part in source_parts(sources)}
     for (k, *part), c in logs.items():
         parts[part[0], part[1]].append(SeriesTerm(constants.expression(c), 0, k * unit))
     return LogSeries(
-        field,
-        value,
+        root.field,
+        root.value,
         parts,
         _sympy(balanced.ground) * balanced.quantum,
         None if gap is None else gap * unit,

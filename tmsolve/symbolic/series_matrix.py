@@ -10,14 +10,16 @@ import numpy as np
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable
+from ..maxplus.graphs import strong_labels
+from ..symmetry.refine import class_members, equitable
 from ..tabulate.symbolic import beta
 from .alphabet import Laurent
 from .jet import Jet
 from .matrix import SymbolicMatrix, symbolic_matrix, tilted_matrix
-from .permutations import numbered, orbits, verified
+from .permutations import numbered
 from .series_numbers import NumberField
 
-__all__ = ["Constants", "ExponentialMatrix", "Part", "exponential_matrix", "source_parts"]
+__all__ = ["Constants", "ExponentialMatrix", "Part", "exponential_matrix", "irrational_weight", "source_parts"]
 
 #: Powers of the sources φ and ψ.
 Part = tuple[int, int]
@@ -80,7 +82,7 @@ def exponential_matrix(chain: Chain, names: Sequence[str] = ()) -> ExponentialMa
         raise NotApplicable("a series in the temperature needs T free; it is fixed in this chain")
     matrix = tilted_matrix(chain, *names) if names else symbolic_matrix(chain)
     _check_classes(matrix.alphabet.classes)
-    lumped = _lumped(matrix, first_order=len(names) < 2)
+    lumped = _lumped(matrix, len(names))
     size = len(lumped)
     parts: dict[Part, dict[tuple[int, int], Laurent]] = {}
     for i in range(size):
@@ -105,22 +107,17 @@ def source_parts(count: int) -> tuple[Part, ...]:
     return ((0, 0), (1, 0), (0, 1), (1, 1))[: 2**count]
 
 
-def _lumped(matrix: SymbolicMatrix, first_order: bool) -> np.ndarray:
-    """Average the matrix over equivalent states.
+def _lumped(matrix: SymbolicMatrix, sources: int) -> np.ndarray:
+    """Average the matrix over states that counting weights cannot tell apart.
 
-    To first order in a source the symmetries of the matrix without it are enough, because its
-    Perron vectors are symmetric; to second order those of the sources count too.
+    To first order in a source the classes of the matrix without it are enough, because its
+    Perron vectors are constant on them; to second order the classes must be those with the
+    sources too. States that do not reach each other stay apart, so that a tie is noticed.
     """
     entries = matrix.entries
-    compared = entries
-    if first_order and isinstance(entries[0, 0], Jet):
-        compared = np.empty(entries.shape, dtype=object)
-        for index in np.ndindex(entries.shape):
-            jet: Any = entries[index]
-            compared[index] = jet.x
-    left = matrix.window.left
-    permutations = verified(numbered(compared), left, [matrix.window.sizes[site] for site in left])
-    classes = orbits(permutations, len(entries))
+    table = numbered(entries if sources != 1 else _values(entries))
+    colours = _components(_values(entries)) if sources else None
+    classes = class_members(equitable(table, colours))
     domain = matrix.alphabet.ring.domain
     lumped = np.empty((len(classes), len(classes)), dtype=object)
     for a, rows in enumerate(classes):
@@ -132,6 +129,21 @@ def _lumped(matrix: SymbolicMatrix, first_order: bool) -> np.ndarray:
     return lumped
 
 
+def _values(entries: np.ndarray) -> np.ndarray:
+    """Return the entries without sources."""
+    values = np.empty(entries.shape, dtype=object)
+    for index in np.ndindex(entries.shape):
+        entry: Any = entries[index]
+        values[index] = entry.x if isinstance(entry, Jet) else entry
+    return values
+
+
+def _components(values: np.ndarray) -> np.ndarray:
+    present = [(i, j) for i, j in np.ndindex(values.shape) if values[i, j]]
+    rows, cols = np.array(present, dtype=np.intp).reshape(-1, 2).T
+    return strong_labels(rows, cols, len(values))
+
+
 def _check_classes(classes: Sequence[Any]) -> None:
     for key in classes:
         if beta() in (key / beta()).free_symbols and beta() in key.free_symbols:
@@ -139,6 +151,14 @@ def _check_classes(classes: Sequence[Any]) -> None:
                 f"the logarithm of a Boltzmann factor contains {key}, which is not linear in beta = 1/T; a series "
                 "takes energies that do not depend on T, apart from -T*log(degeneracy)"
             )
+
+
+def irrational_weight(number: Any) -> NotApplicable:
+    """Return the error for a weight that is no rational number."""
+    return NotApplicable(
+        f"weights contain the irrational number {number}, and a series starts from rational ones; energies in T of the "
+        "form -T*log(g) with rational g are such weights. Use solve(chain.at(…)) for numbers"
+    )
 
 
 class Constants:
@@ -184,14 +204,21 @@ class Constants:
                 continue
             count = exponent / self._matrix.units[k]
             if count < 0:
-                raise NotApplicable(
-                    f"{self._expressions[self._place[k]]} occurs with a negative power, and the coefficients of a "
-                    "series are polynomials; fix it with chain.fix(…)"
-                )
+                raise self._inverse(self._expressions[self._place[k]])
             powers[self._place[k]] = int(count)
         if not any(powers):
             return number if self.ring is None else self.ring.ground_new(number)
         return self.ring.from_dict({tuple(powers): number})
+
+    @staticmethod
+    def _inverse(base: Any) -> NotApplicable:
+        names = sorted(str(symbol) for symbol in base.free_symbols)
+        if not names:
+            return irrational_weight(base)
+        return NotApplicable(
+            f"{base} occurs with a negative power, and the coefficients of a series are polynomials; fix it with "
+            f"chain.fix({'=…, '.join(names)}=…)"
+        )
 
     def rate(self, exponents: Sequence[Any]) -> Any:
         """Return Σ exponent · class / β."""

@@ -28,6 +28,8 @@ class NumberField:
         Irreducible over the rationals, of degree > 1; without it the field is Q.
     index : int
         Which of its real roots, in increasing order.
+    radical : sympy expression, optional
+        The root by radicals, where it is known.
 
     Attributes
     ----------
@@ -40,11 +42,12 @@ class NumberField:
     1/3
     """
 
-    def __init__(self, polynomial: Any = None, index: int = 0) -> None:
+    def __init__(self, polynomial: Any = None, index: int = 0, radical: Any = None) -> None:
         import sympy as sp
 
         self.polynomial = polynomial
         self.index = index
+        self._radical = radical
         self.domain = sp.QQ if polynomial is None else sp.QQ.alg_field_from_poly(polynomial, root_index=index)
 
     @property
@@ -57,8 +60,8 @@ class NumberField:
         """The root as a sympy expression: by radicals for quadratics and roots of numbers, else as a ``CRootOf``."""
         import sympy as sp
 
-        if self.is_rational:
-            return sp.Integer(1)
+        if self.is_rational or self._radical is not None:
+            return sp.Integer(1) if self.is_rational else self._radical
         _, *rest = self.polynomial.monic().all_coeffs()
         if len(rest) == 2:
             sign = 1 if self.index else -1
@@ -227,9 +230,21 @@ def _adjoined(field: NumberField, factor: Any, decimal: Any, power: int) -> Real
         if norm.is_sqf:
             break
     theta = decimal + k * field.decimal
-    larger = NumberField(norm.monic(), _real_index(norm, theta))
+    larger = NumberField(norm.monic(), _real_index(norm, theta), _radical(field, factor, decimal, k))
     image = _common_root(larger, sp.Poly(minimal, y, domain=sp.QQ), shifted, t, y)
     return RealRoot(larger, larger.generator - larger.number(k) * image, power, image)
+
+
+def _radical(field: NumberField, factor: Any, decimal: Any, k: int) -> Any:
+    """Return c + kρ by radicals where c is the root of a quadratic and ρ has radicals itself."""
+    import sympy as sp
+
+    if factor.degree() != 2 or field.root.has(sp.CRootOf):
+        return None
+    _, b, c = (field.expression(x) for x in factor.monic().rep.to_list())
+    root = sp.sqrt(sp.expand(b**2 / 4 - c))
+    sign = 1 if decimal > field.decimal_of(-factor.monic().rep.to_list()[1]) / 2 else -1
+    return sp.expand(-b / 2 + sign * root + k * field.root)
 
 
 def _in(field: NumberField, element: Any, symbol: Any) -> Any:

@@ -58,9 +58,8 @@ class Branch:
         self.head: list[tuple[Any, int]] = [(start, 0)]
         self._shift = 0
         self._rungs = self._moved([dict(rung) for rung in polynomial], start, 0)
-        while self._rungs[0] and self._crossing() > 1:
-            if not self._descend():
-                break
+        while self._crossing() > 1 and self._descend():
+            pass
 
     def _crossing(self) -> int:
         """Return how many roots vanish with t."""

@@ -10,6 +10,7 @@ from types import MappingProxyType
 from typing import Any
 
 from ..declare.chain import Chain
+from ..declare.point import check_temperature
 from ..declare.values import parse_value
 from ..errors import NotApplicable, ParameterError, did_you_mean, listing, unknown_parameter
 from ..tabulate.symbolic import beta, parameter_symbols
@@ -190,8 +191,9 @@ class Series:
         if missing:
             raise ParameterError(f"no value for {listing(missing)}; this series depends on {self._needed()}")
         numbers = {name: _number(parse_value(name, value)) for name, value in values.items()}
+        _check_positive(numbers["T"])
         arguments = {symbol: 1 / numbers["T"] if name == "beta" else numbers[name] for name, symbol in symbols.items()}
-        plain = self.expression.xreplace({root: root.evalf(20) for root in self.expression.atoms(sp.CRootOf)})
+        plain = self.expression.xreplace({root: root.evalf(20) for root in self._roots})
         return sp.lambdify(list(arguments), plain, modules="numpy")(*arguments.values()) + 0 * arguments[beta()]
 
     def _needed(self) -> str:
@@ -201,15 +203,14 @@ class Series:
     def __str__(self) -> str:
         import sympy as sp
 
-        rho = sp.Symbol("rho")
         text = ""
         for term in self.terms:
-            part = plain_text(self._named(self._written(term), rho))
+            part = plain_text(self._named(self._written(term)))
             text += f" - {part[1:]}" if text and part.startswith("-") else f" + {part}" if text else part
         lines = [f"{self.of} of {self.chain.name} at {self.about} temperature, beta = 1/T", f"  {self.symbol} = "]
         lines[1] += f"{text or '0'}{self._remainder()}"
-        if self._roots():
-            lines.append(f"  rho = {float(self._roots()[0]):.12g}, root of {plain_text(self._roots()[0].expr)}")
+        for root, name in self._roots.items():
+            lines.append(f"  {name} = {float(root):.12g}, root of {root.poly.as_expr(sp.Symbol('x'))}")
         return "\n".join(lines)
 
     def _remainder(self) -> str:
@@ -221,20 +222,24 @@ class Series:
 
         return f" + o({plain_text(sp.exp(-beta() * self.order * self.gap))})"
 
-    def _roots(self) -> list[Any]:
+    @cached_property
+    def _roots(self) -> dict[Any, Any]:
+        """Algebraic numbers without radicals, and their names in texts."""
         import sympy as sp
 
-        return sorted(self.expression.atoms(sp.CRootOf), key=str)
+        roots = sorted(self.expression.atoms(sp.CRootOf), key=lambda root: (root.poly.degree(), str(root)))
+        names = ["rho"] if len(roots) == 1 else [f"rho_{k}" for k in range(1, len(roots) + 1)]
+        return dict(zip(roots, map(sp.Symbol, names), strict=True))
 
-    def _named(self, expr: Any, rho: Any) -> Any:
-        return expr.xreplace(dict.fromkeys(self._roots(), rho))
+    def _named(self, expr: Any) -> Any:
+        return expr.xreplace(self._roots)
 
     @property
     def latex(self) -> str:
         """The series as LaTeX, with its remainder."""
         import sympy as sp
 
-        parts = [latex_text(self._named(self._written(term), sp.Symbol("rho"))) for term in self.terms]
+        parts = [latex_text(self._named(self._written(term))) for term in self.terms]
         text = "".join(part if part.startswith("-") or not k else f"+{part}" for k, part in enumerate(parts)) or "0"
         if not self.exact:
             high = self.about == "high"
@@ -247,6 +252,12 @@ class Series:
 
     def __repr__(self) -> str:
         return f"<Series of {self.of} of {self.chain.name!r} at {self.about} temperature: {len(self.terms)} terms>"
+
+
+def _check_positive(temperature: Any) -> None:
+    check_temperature(temperature)
+    if not (temperature > 0 if isinstance(temperature, float) else temperature.all()):
+        raise ParameterError("a series is evaluated at temperatures above 0, got T = 0; its limit is its first term")
 
 
 def _number(value: Any) -> Any:

@@ -41,7 +41,7 @@ class LogSeries:
     Attributes
     ----------
     field : NumberField
-        Field of the coefficients.
+        Field of the growth factor.
     growth : element
         ρ, the growth factor of what is counted at zeroth order.
     parts : mapping

@@ -26,9 +26,6 @@ class TiedSeries:
 
     Attributes
     ----------
-    field : NumberField
-    root : element
-        ρ.
     constants : Constants
         Ring of the coefficients.
     ramification : int
@@ -38,8 +35,6 @@ class TiedSeries:
         Least power of t in ln(λ/ρ).
     """
 
-    field: NumberField
-    root: Any
     constants: Constants
     ramification: int
     logs: dict[Index, Any]
@@ -77,7 +72,7 @@ def tied_series(balanced: Balanced, field: NumberField, start: Any, sources: int
         lifted = {part: _lifted(rungs, branch, field, final) for part, rungs in polynomial.items()}
         for part, series in _slopes(lifted, branch, final, sources, reach).items():
             logs.update({(k, *part): c for k, c in series.terms.items()})
-    return TiedSeries(branch.field, root, final, branch.ramification, logs, gap)
+    return TiedSeries(final, branch.ramification, logs, gap)
 
 
 def _first_power(branch: Branch) -> int:
