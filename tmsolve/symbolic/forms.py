@@ -32,6 +32,10 @@ def closed_form(chain: Chain, *, time_limit: float = 30) -> ClosedForm:
     compared with the matrix at random rational points before it is returned. Where there is
     none, or the time runs out, the factored polynomial and the recurrence of Z_N remain.
 
+    With ``colours("q")`` everything is a function of the positive symbol q, multiplicities too.
+    Z_N holds for every whole q; eigenvalues and what follows from single ones hold from the q on
+    that the text of the form names, below which some of them are not there.
+
     Parameters
     ----------
     chain : Chain
