@@ -1,0 +1,162 @@
+"""Classes of states that an observable resolves, and its decay length against mpmath on random symmetric chains."""
+
+from __future__ import annotations
+
+from fractions import Fraction
+
+import mpmath
+import numpy as np
+import pytest
+
+from tmsolve import Chain, StateSet, bond, colours, delta, ising, site, solve, spins, weight
+from tmsolve.assemble.window import build_window
+from tmsolve.observe.partition import state_classes, vanishing
+
+
+def classes(chain, observable, **values):
+    """Return groups of points and classes of a whole chain."""
+    point = chain.at(**values)
+    window = build_window(chain, (observable,))
+    states = np.arange(window.shape[0])
+    groups = state_classes(window, states, point.flat(), np.arange(point.size), observable)
+    return [(p.tolist(), None if c is None else c.tolist()) for p, c in groups]
+
+
+SPIN1 = Chain(
+    spins(1),
+    [bond(lambda s, t, J: -J * s * t), site(lambda s, D, h: D * s * s - h * s)],
+    observables={"m": lambda s: s, "q": lambda s: s * s, "e": bond(lambda s, t: s * t), "one": lambda s: 1},
+)
+
+
+@pytest.mark.parametrize(
+    ("observable", "h", "expected"),
+    [
+        ("m", 0, [0, 1, 2]),
+        ("q", 0, [0, 1, 0]),
+        ("e", 0, [0, 1, 0]),
+        ("one", 0, [0, 1, 0]),
+        ("q", "1e-40", [0, 1, 2]),
+    ],
+)
+def test_classes_of_the_spin_1_chain(observable, h, expected):
+    assert classes(SPIN1, observable, T=1, J=1, D="0.3", h=h) == [([0], expected)]
+
+
+def test_points_are_grouped_by_zeros():
+    found = classes(SPIN1, "q", T=[1.0, 2.0, 3.0, 4.0], J=1, D="0.3", h=[0.0, 0.1, 0.0, -0.2])
+    assert sorted(found) == [([0, 2], [0, 1, 0]), ([1, 3], [0, 1, 2])]
+
+
+def test_coincidences_of_fixed_parameters_count():
+    """At K = 3J, D = 2(J + K) in these units the three states of the Blume–Emery–Griffiths chain are Potts states."""
+    chain = Chain(
+        spins(1),
+        [
+            bond(lambda s, t, J, K: -J * s * t / 2 - K * (3 * s * s - 2) * (3 * t * t - 2) / 6),
+        ],
+        observables={"q": lambda s: s * s, "zero": lambda s: delta(s, 0)},
+    )
+    # s·t/2 + (3s²−2)(3t²−2)/6 is 2/3 for equal states and −1/3 for different ones.
+    assert classes(chain, "q", T=1, J=1, K=1) == [([0], [0, 1, 0])]
+    r = solve(chain.at(T="0.1", J=1, K=1))
+    assert [level.multiplicity for level in r.spectrum()] == [1, 2]
+    with mpmath.workdps(50):
+        x = mpmath.exp(10)
+        wanted = float(-1 / mpmath.log((x - 1) / (x + 2)))
+    assert float(r.correlation_length("zero")) == pytest.approx(wanted, rel=1e-13)
+
+
+def test_energies_beyond_rounding_differ():
+    """0.1 + 0.2 and 0.3 are equal as decimals and not as doubles; 1 and 1 + 1e-30 are different."""
+    table = {(0, 0): 0, (0, 1): Fraction(1), (1, 0): Fraction(1) + Fraction(1, 10**30), (1, 1): 0}
+    chain = Chain(
+        StateSet([0, 1]),
+        [bond(lambda s, t, g: g * table[(s, t)])],
+        observables={"first": bond(lambda s, t: 1)},
+    )
+    assert classes(chain, "first", T=1, g=1) == [([0], [0, 1])]
+    decimal = Chain(
+        StateSet([0, 1]),
+        [
+            site(lambda s, a: a if s else 0),
+            site(lambda s, b: b if s else 0),
+            site(lambda s, c: 0 if s else c),
+            bond(lambda s, t: 0),
+        ],
+        observables={"one": lambda s: 1},
+    )
+    assert classes(decimal, "one", T=1, a="0.1", b="0.2", c="0.3") == [([0], [0, 0])]
+
+
+def test_batches_without_affine_form_are_looked_at_singly_or_not_at_all():
+    chain = Chain(spins(1), [bond(lambda s, t, J: -(J**2) * s * t)], observables={"q": lambda s: s * s})
+    assert classes(chain, "q", T=1, J=[1.0, 2.0]) == [([0], [0, 1, 0]), ([1], [0, 1, 0])]
+    many = classes(chain, "q", T=1, J=np.linspace(1, 2, 65))
+    assert many == [(list(range(65)), None)]
+
+
+def test_weights_are_compared_exactly():
+    chain = Chain(
+        colours(3), [weight(lambda s, t, x: x if s == t else 1, 0, 1)], observables={"n": lambda s: delta(s, 0)}
+    )
+    assert classes(chain, "n", T=1, x="0.3") == [([0], [0, 1, 1])]
+
+
+@pytest.mark.parametrize(
+    ("chain", "values", "zeros"),
+    [
+        (Chain(ising(), [bond(lambda s, t, J: -J * s * t)]), {"J": 1}, 0),
+        (Chain(ising(), [bond(lambda s, t, J: -J * s * t)]), {"J": 0}, 1),
+        (Chain(colours(4), [site(lambda s, J: -J * s), bond(lambda s, t: 0)]), {"J": 1}, 3),
+        (Chain(ising(), [bond(lambda s, t, J: -J * s * t), bond(lambda s, t: 0, shift=3)]), {"J": 1}, 6),
+    ],
+)
+def test_eigenvalues_that_vanish(chain, values, zeros):
+    window = build_window(chain)
+    point = chain.at(T=1, **values)
+    assert vanishing(window, np.arange(window.shape[0]), point.flat(), 0) == zeros
+
+
+def slowest(energy, T, values):
+    """Return ln ξ of the slowest mode in the correlation of a quantity, in 120 digits, by projectors."""
+    with mpmath.workdps(120):
+        n = len(energy)
+        matrix = mpmath.matrix([[mpmath.exp(-mpmath.mpf(int(e)) / mpmath.mpf(T)) for e in row] for row in energy])
+        roots, left, right = mpmath.eig(matrix, left=True, right=True)
+        order = sorted(range(n), key=lambda k: -abs(roots[k]))
+        top = order[0]
+        groups: list[list[int]] = []
+        for k in order[1:]:
+            match = next((g for g in groups if abs(roots[g[0]] - roots[k]) < mpmath.mpf(10) ** -60), None)
+            match.append(k) if match else groups.append([k])
+        diagonal = mpmath.diag([mpmath.mpf(int(v)) for v in values])
+        for group in groups:
+            total = mpmath.mpc(0)
+            for k in group:
+                norm = (left[k, :] * right[:, k])[0]
+                total += (left[top, :] * diagonal * right[:, k])[0] * (left[k, :] * diagonal * right[:, top])[0] / norm
+            if abs(total) > mpmath.mpf(10) ** -50 and abs(roots[group[0]]) > mpmath.mpf(10) ** -50 * abs(roots[top]):
+                return float(-mpmath.log(-mpmath.log(abs(roots[group[0]] / roots[top]))))
+        return -np.inf
+
+
+@pytest.mark.parametrize("seed", range(24))
+def test_random_symmetric_chains(seed):
+    """States in pairs or triples that a symmetry exchanges; the observable respects it, breaks it, or changes sign."""
+    rng = np.random.default_rng(seed)
+    n = int(rng.integers(3, 6))
+    order = np.arange(n)
+    order[:2] = [1, 0]
+    if n > 3 and rng.integers(2):
+        order[2:4] = [3, 2]
+    energy = rng.integers(-3, 4, (n, n))
+    energy = energy + energy[order][:, order]
+    values = rng.integers(-2, 3, n)
+    if rng.integers(2):
+        values = values + (1 if rng.integers(2) else -1) * values[order]
+    T = ["2", "0.5", "0.2", "0.1"][seed % 4]
+    chain = Chain(colours(n), [bond(lambda s, t: int(energy[s, t]))], observables={"a": lambda s: int(values[s])})
+    r = solve(chain.at(T=T))
+    wanted = slowest(energy, T, values)
+    assert float(r.log_correlation_length("a")) == pytest.approx(wanted, rel=1e-9, abs=1e-9)
