@@ -9,6 +9,7 @@ from typing import Any
 
 import numpy as np
 
+from ..answer.solve import solve
 from ..assemble.matrix import handle
 from ..assemble.window import build_window
 from ..declare import Point
@@ -20,11 +21,14 @@ from .impurities import Impurities, renamed_values, spacious
 from .moments import check_order, moments_of
 from .steps import Ends, Windows
 from .track import Mark, Track
+from .uniform import far_correlation
 
 __all__ = ["FiniteChain"]
 
 #: Longest chain whose cells are all listed.
 _LONGEST_PROFILE = 2 * 10**5
+#: Correlations smaller than this have lost digits in products of matrices with the observables as they are.
+_FAINT = 1e-5
 
 
 @dataclass(frozen=True, eq=False)
@@ -35,7 +39,8 @@ class FiniteChain:
     Products of N matrices are formed by repeated squaring of logarithms, with energies kept
     apart and observables centred. For any N up to 10⁹ and beyond ln Z is accurate to about
     1e-15 of its size, cumulants of totals to 1e-12 of theirs, and means and correlations of
-    single cells to 1e-14 of the size of the observable.
+    single cells to 1e-14 of the size of the observable; correlations in a ring of equal cells
+    are accurate relatively, however far apart the cells are.
 
     Attributes
     ----------
@@ -172,10 +177,21 @@ class FiniteChain:
                 x = (f"{a}@{first}", self._position(i - first))
                 y = (f"{b}@{second}", self._position(j - second))
                 result += self._pair(track, x, y)
-        shaped = self._shaped(result)
+        shaped = self._shaped(self._far(result, a, b, i, j))
         if connected:
             return shaped
         return shaped + self._in_cell(a, i) * self._in_cell(b, j)
+
+    def _far(self, near: np.ndarray, a: str, b: str, i: int, j: int) -> np.ndarray:
+        """Replace what is lost in the rounding of the observables where all cells are alike."""
+        faint = abs(near) < _FAINT
+        if not self._uniform or not faint.any():
+            return near
+        try:
+            far = far_correlation(solve(self.point), self.cells, a, b, (j - i) % self.cells)
+        except SolveError:
+            return near
+        return near if far is None else np.where(faint, far, near)
 
     def _pair(self, track: Track, x: tuple[str, int], y: tuple[str, int]) -> np.ndarray:
         marks: dict[int, Mark] = {}
