@@ -26,7 +26,8 @@ def ising_matrix(K, L):
 
 
 @pytest.mark.parametrize(
-    ("cells", "r", "h"), [(1000, 200, "0.2"), (1000, 500, "0.2"), (1000, 3, "0.2"), (300, 100, "0"), (10**6, 900, "0.1")]
+    ("cells", "r", "h"),
+    [(1000, 200, "0.2"), (1000, 500, "0.2"), (1000, 3, "0.2"), (300, 100, "0"), (10**6, 900, "0.1")],
 )
 def test_ising_ring_far_apart_relatively(cells, r, h):
     with mp.workdps(300):
