@@ -19,7 +19,7 @@ from ..observe.solution import Solution
 
 __all__ = ["far_correlation"]
 
-DOUBLE_BITS = 53
+_DOUBLE_BITS = 53
 #: Below this part of its usual value the trace of Pᴺ has cancelled.
 _LEAST_TRACE = 1e-3
 
@@ -48,7 +48,7 @@ def far_correlation(solution: Solution, cells: int, a: str, b: str, distance: in
 
 
 def _unusual(segment: Segment, size: int) -> bool:
-    return bool(segment.other_classes) or segment.states.size != size or segment.bits != DOUBLE_BITS or segment.limit
+    return bool(segment.other_classes) or segment.states.size != size or segment.bits != _DOUBLE_BITS or segment.limit
 
 
 class _Ring:
