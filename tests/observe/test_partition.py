@@ -19,7 +19,7 @@ def classes(chain, observable, **values):
     window = build_window(chain, (observable,))
     states = np.arange(window.shape[0])
     groups = state_classes(window, states, point.flat(), np.arange(point.size), observable)
-    return [(p.tolist(), None if c is None else c.tolist()) for p, c in groups]
+    return [(p.tolist(), None if c is None else c.number.tolist()) for p, c in groups]
 
 
 SPIN1 = Chain(
@@ -120,7 +120,7 @@ def test_eigenvalues_that_vanish(chain, values, zeros):
 
 def slowest(energy, T, values):
     """Return ln ξ of the slowest mode in the correlation of a quantity, in 120 digits, by projectors."""
-    with mpmath.workdps(120):
+    with mpmath.workdps(1200):
         n = len(energy)
         matrix = mpmath.matrix([[mpmath.exp(-mpmath.mpf(int(e)) / mpmath.mpf(T)) for e in row] for row in energy])
         roots, left, right = mpmath.eig(matrix, left=True, right=True)
@@ -128,7 +128,7 @@ def slowest(energy, T, values):
         top = order[0]
         groups: list[list[int]] = []
         for k in order[1:]:
-            match = next((g for g in groups if abs(roots[g[0]] - roots[k]) < mpmath.mpf(10) ** -60), None)
+            match = next((g for g in groups if abs(roots[g[0]] - roots[k]) < mpmath.mpf(10) ** -700), None)
             match.append(k) if match else groups.append([k])
         diagonal = mpmath.diag([mpmath.mpf(int(v)) for v in values])
         for group in groups:
@@ -136,7 +136,7 @@ def slowest(energy, T, values):
             for k in group:
                 norm = (left[k, :] * right[:, k])[0]
                 total += (left[top, :] * diagonal * right[:, k])[0] * (left[k, :] * diagonal * right[:, top])[0] / norm
-            if abs(total) > mpmath.mpf(10) ** -50 and abs(roots[group[0]]) > mpmath.mpf(10) ** -50 * abs(roots[top]):
+            if abs(total) > mpmath.mpf(10) ** -600 and abs(roots[group[0]]) > mpmath.mpf(10) ** -600 * abs(roots[top]):
                 return float(-mpmath.log(-mpmath.log(abs(roots[group[0]] / roots[top]))))
         return -np.inf
 

@@ -9,9 +9,14 @@ import numpy as np
 from ..operators.numbers import DOUBLE, Numbers
 from .merging import inverted, merge
 from .near_circle import near_modes
+from .small import long_modes
 from .spectrum import deflated, polar, together
 
 __all__ = ["Modes", "Shown", "modes", "shown"]
+
+#: Eigenvalues so much smaller (in ln) than the matrix are looked for in long numbers, where there are any.
+_SMALL = -11.0
+_LARGEST = 40
 
 
 @dataclass(frozen=True)
@@ -59,6 +64,10 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
     np.put_along_axis(left, kept.T[:, None, :], inverse, axis=2)
     left[np.arange(batch), :, np.argmax(law, axis=0)] = -inverse.sum(axis=2)
     log_modulus, phase = polar(values, log_size)
+    if numbers.exact_exponent and n <= _LARGEST:
+        for i in np.flatnonzero((log_modulus - log_size[:, None] < _SMALL).any(axis=1)):
+            long = long_modes(chance[..., i], kept[:, i], int(np.argmax(law[:, i])), numbers)
+            log_modulus[i], phase[i], right[i], left[i] = long
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
     found = Modes(log_modulus, phase, log_gap, right, left, log_noise)

@@ -7,7 +7,7 @@ import numpy as np
 from ..operators.numbers import Numbers, to_double
 from .near_circle import tidy
 
-__all__ = ["small_eigenvalues"]
+__all__ = ["long_modes", "small_eigenvalues"]
 
 
 def small_eigenvalues(
@@ -48,3 +48,43 @@ def small_eigenvalues(
     logs = [context.log(abs(value) * size) for value in there] + [context.mpf("-inf")] * zeros
     phases = [float(context.arg(value)) for value in there] + [0.0] * zeros
     return to_double(np.array(logs, dtype=object)), tidy(np.array(phases))
+
+
+def long_modes(
+    chance: np.ndarray, kept: np.ndarray, likeliest: int, numbers: Numbers
+) -> tuple[np.ndarray, np.ndarray, np.ndarray, np.ndarray]:
+    """Return ln |λ|, phases, right and left vectors of a chain without its Perron mode, rounded to doubles.
+
+    Parameters
+    ----------
+    chance : ndarray, shape (n, n)
+        Transition probabilities, in long numbers.
+    kept : ndarray of int, shape (n − 1,)
+        All states but ``likeliest``, whose row is taken from the others.
+    likeliest : int
+    numbers : Numbers
+        Number system of ``chance``.
+    """
+    rest = chance[np.ix_(kept, kept)] - chance[likeliest, kept][None]
+    context = type(numbers.scalar(1)).context
+    size = max(abs(entry) for entry in rest.ravel())
+    m = len(kept)
+    right, left = np.zeros((m + 1, m), dtype=np.complex128), np.zeros((m, m + 1), dtype=np.complex128)
+    if size == 0:
+        return np.full(m, -np.inf), np.zeros(m), right, left
+    values, rows, columns = context.eig(context.matrix((rest / size).tolist()), left=True, right=True)
+    order = sorted(range(m), key=lambda k: -abs(values[k]))
+    # Rounding of a double zero without a vector of its own is the root of that of a number.
+    noise = context.ldexp(context.mpf(1), -(numbers.bits - 40) // 2)
+    log_modulus, phase = np.full(m, -np.inf), np.zeros(m)
+    for place, k in enumerate(order):
+        if abs(values[k]) > noise:
+            log_modulus[place] = float(context.log(abs(values[k]) * size))
+            phase[place] = float(context.arg(values[k]))
+        row = [rows[k, i] for i in range(m)]
+        norm = sum(row[i] * columns[i, k] for i in range(m))
+        if norm != 0:
+            right[kept, place] = [complex(columns[i, k]) for i in range(m)]
+            left[place, kept] = [complex(x / norm) for x in row]
+            left[place, likeliest] = -complex(sum(row) / norm)
+    return log_modulus, tidy(phase), right, left

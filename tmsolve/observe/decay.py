@@ -14,12 +14,15 @@ from ..eigen.modes import Modes, modes, shown
 from ..eigen.spectrum import deflated
 from ..operators.numbers import to_double
 from .correlations import anchors
+from .partition import Classes
 from .segment import Segment
 
 __all__ = ["Decay", "decay", "slowest"]
 
 #: Amplitudes below this, relative to the product of the two quantities' sizes, count as zero.
 _AMPLITUDE = 1e-11
+#: The same where all modes are known to be shown: both ends of an amplitude are rounding below this.
+_TINY = 1e-24
 #: Smaller eigenvalues (ln |λ/λ₁|) may lose digits to rounding.
 _SMALL = -8.0
 #: Entries of the largest array that is made for many points at once.
@@ -91,7 +94,7 @@ class _Pair:
 
 
 def decay(
-    window: ChainWindow, segment: Segment, observable: str, groups: Sequence[tuple[np.ndarray, np.ndarray | None]]
+    window: ChainWindow, segment: Segment, observable: str, groups: Sequence[tuple[np.ndarray, Classes | None]]
 ) -> Decay:
     """Return the slowest mode that an observable shows, per point.
 
@@ -107,15 +110,16 @@ def decay(
     pairs = _pairs(window, segment, observable)
     known, numbers = segment.law.pair, segment.law.numbers
     for positions, classes in groups:
-        size = len(segment.states) if classes is None else int(classes.max()) + 1
+        size = len(segment.states) if classes is None else int(classes.number.max()) + 1
         step = max(1, _AT_ONCE // size**2)
         for start in range(0, len(positions) if size > 1 else 0, step):
             here = positions[start : start + step]
             chance, law = known.chance[..., here], segment.law.stationary[:, here]
             shown_by = [pair.at(here) for pair in pairs]
             if classes is not None and size < len(segment.states):
-                chance, law, shown_by = _lumped(chance, law, shown_by, classes)
-            result.put(here, _slowest_shown(modes(chance, law, numbers), shown_by))
+                chance, law, shown_by = _lumped(chance, law, shown_by, classes.number)
+            whole = classes is not None and classes.whole
+            result.put(here, _slowest_shown(modes(chance, law, numbers), shown_by, whole))
     return result
 
 
@@ -133,11 +137,13 @@ def _lumped(
     return rows, gathered(law), [_Pair(gathered(p.source), p.target[first], p.size, p.shift) for p in pairs]
 
 
-def _slowest_shown(found: Modes, pairs: Sequence[_Pair]) -> Decay:
+def _slowest_shown(found: Modes, pairs: Sequence[_Pair], whole: bool) -> Decay:
     result = Decay.none(len(found.log_gap))
     if not pairs:
         return result
-    views = [shown(found, pair.source, pair.target, _AMPLITUDE) for pair in pairs]
+    # Where no symmetry hides a mode, a small amplitude is an amplitude.
+    threshold = _TINY if whole else _AMPLITUDE
+    views = [shown(found, pair.source, pair.target, threshold) for pair in pairs]
     carried = np.any([view.carried for view in views], axis=0)
     points = np.flatnonzero(carried.any(axis=1))
     k = carried[points].argmax(axis=1)

@@ -48,7 +48,7 @@ def _decays(laws: Laws, point: Point, a: str | None) -> tuple[Decay, np.ndarray]
         found.put(segment.indices, replace(part, log_gap=_limit(segment, part.log_gap)))
         nothing = np.isposinf(part.log_gap)
         for positions, classes in groups:
-            nothing[positions] &= classes is None or bool(classes.any())
+            nothing[positions] &= classes is None or bool(classes.number.any())
         if segment.limit or len(segment.states) > LARGEST or laws.size > MOST_POINTS:
             continue
         most = len(segment.states) - 1

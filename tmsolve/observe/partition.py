@@ -12,7 +12,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Mapping, Sequence
 from fractions import Fraction
-from typing import Any
+from typing import Any, NamedTuple
 
 import numpy as np
 
@@ -23,13 +23,16 @@ from ..symmetry.refine import equitable, interned
 from ..tabulate.affine import affine_table
 from ..tabulate.calling import number_table
 from ..tabulate.exact import exact_table
+from .reach import DualNumbers, all_reached, modulo, rank, residues
 
-__all__ = ["state_classes", "vanishing"]
+__all__ = ["Classes", "state_classes", "vanishing"]
 
 _PRIMES = (2147483647, 2147483629)
 #: Points that have to be looked at one by one.
 _SINGLY = 64
 _LARGEST = 2048
+#: Of larger chains of classes it is not asked which modes are hidden.
+_REACHED = 40
 _ENERGY = "energy"
 
 #: Exponents of named bases over the states of some sites, and where a configuration is allowed.
@@ -40,9 +43,16 @@ class _Unknown(Exception):
     """A term has no exact value that holds for all points together."""
 
 
+class Classes(NamedTuple):
+    """Classes of states, and whether the observable shows every mode of the chain of classes."""
+
+    number: np.ndarray
+    whole: bool
+
+
 def state_classes(
     window: ChainWindow, states: np.ndarray, values: Mapping[str, Any], indices: np.ndarray, observable: str
-) -> list[tuple[np.ndarray, np.ndarray | None]]:
+) -> list[tuple[np.ndarray, Classes | None]]:
     """Return groups of points with the classes of states that an observable resolves at them.
 
     Parameters
@@ -69,7 +79,7 @@ def state_classes(
     fixed = {name: value for name, value in values.items() if np.ndim(value) == 0}
     running = {name: np.asarray(value)[indices] for name, value in values.items() if np.ndim(value)}
     try:
-        groups: list[tuple[np.ndarray, np.ndarray | None]] = []
+        groups: list[tuple[np.ndarray, Classes | None]] = []
         for positions, zero in _same_zeros(running, indices.size):
             known = {**fixed, **dict.fromkeys(zero, Fraction(0))}
             groups.append((positions, _classes(window, states, known, observable)))
@@ -82,7 +92,7 @@ def state_classes(
 
 def _single(
     window: ChainWindow, states: np.ndarray, fixed: dict[str, Any], running: dict[str, np.ndarray], i: int, a: str
-) -> np.ndarray | None:
+) -> Classes | None:
     here = {name: Fraction(repr(float(column[i]))) for name, column in running.items()}
     try:
         return _classes(window, states, {**fixed, **here}, a)
@@ -104,9 +114,44 @@ def _same_zeros(running: Mapping[str, np.ndarray], size: int) -> list[tuple[np.n
     ]
 
 
-def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observable: str) -> np.ndarray:
-    matrix = _labels(window, states, known, window.chain.observable(observable))
-    return equitable(interned((matrix[..., 0] << 31) + matrix[..., 1]))
+def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observable: str) -> Classes:
+    terms = window.chain.observable(observable)
+    labels = _labels(window, states, known, terms)
+    classes = equitable(interned((labels[..., 0] << 31) + labels[..., 1]))
+    if not classes.any() or classes.max() >= _REACHED:
+        return Classes(classes, False)
+    cells = {place[1] for term in terms if (place := place_in(window, term))}
+    inserted = [_moments(window, states, known, terms, cell) for cell in sorted(cells)]
+    whole = all_reached(inserted[0][..., 0], [table[..., 1] for table in inserted], classes, _PRIMES[0])
+    return Classes(classes, whole)
+
+
+def _moments(
+    window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observables: Sequence[Term], cell: int
+) -> np.ndarray:
+    """Return the matrix and its entries times the parts anchored at a cell, modulo the first prime: (…, 2)."""
+    prime = _PRIMES[0]
+    factors = [_factor(window, source.source, known) for source in window.factors]
+    unit = _units([powers for powers, _ in factors])
+    tables = []
+    for powers, weight in factors:
+        plain = _hashed(powers, unit, weight)[..., 0]
+        tables.append(np.stack([plain, plain * 0], axis=-1))
+    # Several parts at one anchor add up, so each has a matrix of its own.
+    total: np.ndarray | None = None
+    for term in observables:
+        place = place_in(window, term)
+        if place is None or place[1] != cell:
+            continue
+        powers, _ = _powers(window, term, known, "value")
+        value = sum(residues(table, prime) * (1 + number * 104729) for number, table in enumerate(powers.values()))
+        part = np.stack([np.ones_like(value), value % prime], axis=-1)
+        found = window.reduce(DualNumbers(prime), tables, [(place[0], part)])
+        full = (*(window.sizes[site] for site in window.sites), 2)
+        here = window.matrix(np.broadcast_to(found, full), 0)[np.ix_(states, states)]
+        total = here if total is None else np.stack([here[..., 0], (here[..., 1] + total[..., 1]) % prime], axis=-1)
+    assert total is not None
+    return total
 
 
 def _labels(
@@ -153,19 +198,7 @@ def vanishing(window: ChainWindow, states: np.ndarray, values: Mapping[str, Any]
     power, steps = matrix, 1
     while steps < len(matrix):
         power, steps = power @ power % _PRIMES[0], 2 * steps
-    return len(matrix) - _rank(power, _PRIMES[0])
-
-
-def _rank(matrix: np.ndarray, prime: int) -> int:
-    rows, rank = matrix.copy(), 0
-    for column in range(len(rows)):
-        pivots = np.flatnonzero(rows[rank:, column])
-        if pivots.size:
-            rows[[rank, rank + pivots[0]]] = rows[[rank + pivots[0], rank]]
-            rows[rank] = rows[rank] * pow(int(rows[rank, column]), -1, prime) % prime
-            rows[rank + 1 :] = (rows[rank + 1 :] - rows[rank + 1 :, column, None] * rows[rank][None]) % prime
-            rank += 1
-    return rank
+    return len(matrix) - rank(power, _PRIMES[0])
 
 
 def _factor(
@@ -239,14 +272,9 @@ def _hashed(powers: _Powers, unit: Mapping[str, int], weight: np.ndarray | None)
             whole = [int(Fraction(entry) * unit[base]) % (prime - 1) for entry in table.ravel()]
             flat = [x * pow(drawn[bases[base]], e, prime) % prime for x, e in zip(flat, whole, strict=True)]
         if weight is not None:
-            flat = [x * _modulo(w, prime) % prime for x, w in zip(flat, weight.ravel(), strict=True)]
+            flat = [x * modulo(w, prime) % prime for x, w in zip(flat, weight.ravel(), strict=True)]
         result[..., column] = np.array(flat, dtype=np.int64).reshape(shape)
     return result
-
-
-def _modulo(weight: Any, prime: int) -> int:
-    fraction = Fraction(weight)
-    return fraction.numerator * pow(fraction.denominator, -1, prime) % prime
 
 
 class _Modular(ArrayAlgebra):
