@@ -8,6 +8,7 @@ import random
 import mpmath as mp
 import numpy as np
 import pytest
+import sympy as sp
 from sympy import QQ, ring
 from sympy.polys.matrices import DomainMatrix
 
@@ -214,6 +215,65 @@ def polynomials(entry, n):
     for i, j in itertools.product(range(n), repeat=2):
         result[i, j] = R(entry(i, j))
     return result
+
+
+def numbers(rows, point):
+    """Return a matrix of polynomials as floats."""
+    return np.array([[complex(R(entry)(*point) if entry else 0) for entry in row] for row in rows])
+
+
+def close(a, b):
+    """Whether two lists of complex numbers are equal up to order."""
+    rest = list(b)
+    for x in a:
+        rest.remove(nearest := min(rest, key=lambda z: abs(z - x)))
+        if abs(nearest - x) > 1e-7 * (1 + abs(x)):
+            return False
+    return not rest
+
+
+@pytest.mark.parametrize("q, turned", [(5, False), (5, True), (8, False), (4, True)])
+def test_blocks_of_one_momentum_with_two_rows(q, turned):
+    """A ring of q places with two states each: every momentum has a 2 × 2 block over cosines or phases."""
+    draw = random.Random(q)
+    terms = {
+        (d, a, b): draw.randint(1, 9) * y ** draw.randint(0, 4) + draw.randint(1, 9) * z
+        for d in range(q)
+        for a in range(2)
+        for b in range(2)
+    }
+
+    def entry(i, j):
+        d = (j // 2 - i // 2) % q
+        return terms[d if turned else min(d, q - d), i % 2, j % 2]
+
+    blocks = split(polynomials(entry, 2 * q))
+    assert sum(b.size * b.multiplicity for b in blocks) == 2 * q
+    resolved = [b for b in blocks if b.momenta is not None]
+    assert resolved and all(b.size == 2 * len(b.momenta.turns) for b in resolved)
+    point = (0.7, 1.3)
+    for block in resolved:
+        expected = np.linalg.eigvals(numbers(block.matrix, point))
+        parts = block.momenta.blocks(lambda c: c.as_expr())
+        values = [np.array(sp.Matrix(rows).subs({"y": 0.7, "z": 1.3}).evalf(), dtype=complex) for rows in parts]
+        assert close(np.concatenate([np.linalg.eigvals(v) for v in values]), expected)
+        roots = block.momenta.roots(lambda c: c.as_expr())
+        assert close([complex(root.subs({"y": 0.7, "z": 1.3}).evalf()) for root in roots], expected)
+
+
+def test_five_legs_round_a_cylinder():
+    """Momenta ±2π/5 and ±4π/5 share a rational block of twice the size of each of theirs."""
+    matrix = symbolic_matrix(legs(5, ising(), closed=True))
+    resolved = [b for b in split(matrix.entries, matrix.permutations) if b.momenta is not None]
+    assert [(b.size, b.multiplicity, b.momenta.size) for b in resolved] == [(6, 2, 3), (6, 2, 3)]
+    assert all(f"momentum ±2π/5 and ±4π/5 {ROUND}" in b.label for b in resolved)
+    for block in resolved:
+        assert block.momenta.roots(lambda c: c.as_expr()) == []
+        value_at = {symbol: v for symbol, v in zip(matrix.alphabet.ring.symbols, (0.6, 1.4), strict=True)}
+        whole = np.array(sp.Matrix([[c.as_expr() for c in row] for row in block.matrix]).subs(value_at), dtype=float)
+        parts = block.momenta.blocks(lambda c: c.as_expr())
+        values = [np.array(sp.Matrix(rows).subs(value_at).evalf(), dtype=complex) for rows in parts]
+        assert close(np.concatenate([np.linalg.eigvals(v) for v in values]), np.linalg.eigvals(whole))
 
 
 def test_symmetries_without_a_name_still_make_blocks():

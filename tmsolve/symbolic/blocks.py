@@ -16,6 +16,7 @@ from typing import Any, TypeVar
 import numpy as np
 
 from ..symmetry.adapted import adapted_states
+from ..symmetry.permutations import compose
 from ..symmetry.refine import class_members, equitable
 from ..symmetry.search import automorphisms
 from .labels import block_labels
@@ -101,7 +102,9 @@ def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
     parts = adapted_states(group, [p.image for p in named])
     labels = block_labels([part.constituent for part in parts], named)
     domain = matrix[0, 0].ring.domain
-    rotations = [p.image for p in named if "rotation" in p.move[0]]
+    # Two reflections make a rotation.
+    products = [compose(a, b) for a in group.generators for b in group.generators]
+    rotations = [*(p.image for p in named if "rotation" in p.move[0]), *group.generators, *products]
     blocks: list[Block] = []
     trivial, *others = zip(parts, labels, strict=True)
     others.sort(key=lambda pair: (pair[0].constituent.dimension, pair[1]))

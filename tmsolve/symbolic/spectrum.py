@@ -170,7 +170,7 @@ def _by_momentum(factor: Factor, spectrum: Spectrum) -> list[Any]:
     momenta = factor.block.momenta
     if momenta is None or factor.degree != factor.block.size or factor.degree < 3:
         return []
-    return momenta.roots([spectrum.writer.write(spectrum.matrix.laurent(c)) for c in momenta.coefficients])
+    return momenta.roots(lambda c: spectrum.writer.write(spectrum.matrix.laurent(c)))
 
 
 def _no_radicals(factor: Factor, real: bool) -> str:
