@@ -43,7 +43,7 @@ from tmsolve import (
     solve,
 )
 from tmsolve.symbolic.colour_check import colour_mismatch, from_symbols, plain_matrix
-from tmsolve.symbolic.colour_matrix import colour_matrix
+from tmsolve.symbolic.colour_matrix import colour_matrix, inserted_colour_matrices
 from tmsolve.symbolic.recurrence import ring_sum, trace_of_power
 from tmsolve.symbolic.spectrum import Spectrum
 from tmsolve.tabulate.colours import plain_chain
@@ -258,6 +258,24 @@ def test_bonds_as_observables():
     got = float(form.susceptibility("e", "m").subs(point))
     assert got == pytest.approx(float(solution.susceptibility("e", "m")), rel=1e-10)
     assert float(-form.derivative("J").subs(point)) == pytest.approx(float(solution.mean("e")), rel=1e-11)
+
+
+def test_three_real_roots_in_two_fields():
+    """The block of symmetric functions is reversible for every q, so that its cubic is solved in cosines."""
+    fields = site(lambda s, h: -h * (s == 0) - 2 * h * (s == 1))
+    chain = Chain(
+        colours("q", special=(0, 1)),
+        [bond(lambda s, t, J: -J * (s == t)), fields],
+        observables={"m": lambda s: int(s == 0)},
+    )
+    form = closed_form(chain.fix(J=1, h=1))
+    assert form.is_closed and form.eigenvalues[0][0].has(sp.cos)
+    solution = solve(plain_chain(chain, 5).at(J=1, h=1, T="0.9"))
+    point = {BETA: sp.Rational(10, 9), Q: 5}
+    assert float(form.free_energy.subs(point)) == pytest.approx(float(solution.free_energy), rel=1e-12)
+    assert float(form.correlation_length.subs(point)) == pytest.approx(float(solution.correlation_length()), rel=1e-10)
+    assert float(form.mean("m").subs(point)) == pytest.approx(float(solution.mean("m")), rel=1e-10)
+    assert inserted_colour_matrices(form.chain, "m", "m").matrix.is_reversible
 
 
 def test_observables_without_a_closed_form():

@@ -124,8 +124,9 @@ def inserted_colour_matrices(chain: Chain, first: str, second: str) -> Insertion
         sources = (s if s.cell == pair[s.order] else replace(s, order=2) for s in tables.sources)
         found[pair] = _assembled(chain, replace(tables, sources=tuple(sources)), Jet)
     some = next(iter(found.values()))
+    entries = tuple(replace(entry, weight=entry.weight.x) for entry in some.overlays if entry.weight.x)
     return Insertions(
-        replace(some, entries=_part(some.entries, 0), boxes=0),
+        replace(some, entries=_part(some.entries, 0), overlays=entries, boxes=0),
         {pair[0]: _part(jets.entries, 1) for pair, jets in found.items()},
         {pair[1]: _part(jets.entries, 2) for pair, jets in found.items()},
         {pair: _part(jets.entries, 3) for pair, jets in found.items()},
@@ -182,18 +183,13 @@ def _in_ring(
         is_source = local.order >= 0
         scale = alphabet.scale([*([one] if is_source else []), *local.terms.ravel()])
         total = [a + b for a, b in zip(total, scale, strict=True)]
-        element = partial(_element, alphabet, scale)
-        convert = partial(Jet.source, local.order, element(one)) if is_source else wrap
-        made[is_source].append(tables.by_pattern(local, partial(_chained, convert, element)))
+        convert = partial(Jet.source, local.order, alphabet.element(one, scale)) if is_source else wrap
+        made[is_source].append(tables.by_pattern(local, partial(_element, alphabet, scale, convert)))
     return tuple(total), made[False], made[True]
 
 
-def _element(alphabet: Alphabet, scale: Scale, terms: Terms) -> Any:
-    return alphabet.element(terms, scale)
-
-
-def _chained(last: Callable[[Any], Any], first: Callable[[Any], Any], terms: Terms) -> Any:
-    return last(first(terms))
+def _element(alphabet: Alphabet, scale: Scale, convert: Callable[[Any], Any], terms: Terms) -> Any:
+    return convert(alphabet.element(terms, scale))
 
 
 def _falling(alphabet: Alphabet, colours: Any, named: int, count: int) -> Any:
