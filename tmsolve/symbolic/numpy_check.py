@@ -171,7 +171,7 @@ class Reference:
             if signed:
                 some = draw.choice(signed)
                 yield {**point, some: Fraction(0)}, True
-                yield {**point, some: point[some] / 10**6}, True
+                yield {**point, some: point[some] / 10**3}, True
 
     def _agree(self, function: Any, point: dict[str, Fraction], expected: float, whose: str) -> None:
         given = {key: float(value) for key, value in point.items()}
