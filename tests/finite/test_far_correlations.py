@@ -6,7 +6,7 @@ import mpmath as mp
 import numpy as np
 import pytest
 
-from tmsolve import Chain, bond, models, ring, site, solve, spins
+from tmsolve import Chain, bond, models, open_chain, ring, site, solve, spins
 
 ISING = models.load("ising").chain
 BLUME_CAPEL = models.load("blume_capel").chain
@@ -76,3 +76,33 @@ def test_frustrated_rings_and_classes_keep_the_product():
     # N = 101, K = −50: one wall, anywhere; ⟨s₀s_r⟩ = (−1)ʳ (1 − 2r/N).
     assert cold.correlation("m", "m", 0, 1) == pytest.approx(-(1 - 2 / 101), rel=1e-12)
     assert cold.correlation("m", "m", 0, 50) == pytest.approx(1 - 100 / 101, rel=1e-12)
+
+
+@pytest.mark.parametrize("cell", [1, 30, 100, 800])
+def test_a_mean_far_behind_a_fixed_end(cell):
+    # Without a field ⟨s_i⟩ behind s₀ = 1 is tanh(K)ⁱ.
+    chain = open_chain(ISING.at(J=1, h=0, T=1), 1000, left=1)
+    with mp.workdps(40):
+        expected = float(mp.tanh(1) ** cell)
+    assert chain.profile("m", [cell])[0] == pytest.approx(expected, rel=1e-12)
+
+
+def test_a_whole_profile_is_accurate_relatively():
+    found = open_chain(ISING.at(J=1, h=0, T=1), 300, left=1).profile("m")
+    with mp.workdps(40):
+        assert found == pytest.approx([float(mp.tanh(1) ** i) for i in range(300)], rel=1e-12)
+
+
+def test_open_chains_and_impurities_far_apart_relatively():
+    free = open_chain(ISING.at(J=1, h=0, T=1), 1000).correlation("m", "m", 100, 300)
+    with mp.workdps(300):
+        assert float(free) == pytest.approx(float(mp.tanh(1) ** 200), rel=1e-12, abs=0)
+        host, weak = ising_matrix(1, mp.mpf("0.2")), ising_matrix(mp.mpf("0.5"), mp.mpf("0.2"))
+        spin = mp.diag([-1, 1])
+        trace = lambda m: m[0, 0] + m[1, 1]  # noqa: E731
+        inner, outer = host**5 * weak * host**194, host**800
+        whole = trace(inner * outer)
+        both = trace(spin * inner * spin * outer) / whole
+        expected = both - trace(spin * inner * outer) * trace(inner * spin * outer) / whole**2
+    changed = ring(ISING.at(J=1, h="0.2", T=1), 1000, impurities={10: {"J": "0.5"}})
+    assert float(changed.correlation("m", "m", 5, 205)) == pytest.approx(float(expected), rel=1e-11, abs=0)

@@ -17,6 +17,7 @@ from ..errors import ParameterError, SolveError, TooLargeError
 from ..observe.correlations import anchors
 from ..observe.evaluate import fits
 from .distribution import Distribution, distribute
+from .faint import Places, faint_profile, faint_value
 from .impurities import Impurities, renamed_values, spacious
 from .moments import check_order, moments_of
 from .steps import Ends, Windows
@@ -27,8 +28,8 @@ __all__ = ["FiniteChain"]
 
 #: Longest chain whose cells are all listed.
 _LONGEST_PROFILE = 2 * 10**5
-#: Correlations smaller than this have lost digits in products of matrices with the observables as they are.
-_FAINT = 1e-5
+#: Means and correlations below this part of the observables' size have lost digits to rounding.
+_FAINT = 1e-3
 
 
 @dataclass(frozen=True, eq=False)
@@ -39,8 +40,10 @@ class FiniteChain:
     Products of N matrices are formed by repeated squaring of logarithms, with energies kept
     apart and observables centred. For any N up to 10⁹ and beyond ln Z is accurate to about
     1e-15 of its size, cumulants of totals to 1e-12 of theirs, and means and correlations of
-    single cells to 1e-14 of the size of the observable; correlations in a ring of equal cells
-    are accurate relatively, however far apart the cells are.
+    single cells to 1e-14 of the size of the observable. Those below 1e-3 of that size are
+    computed anew, from centred chains of states or in long numbers, and are accurate
+    relatively however small they are (up to some ten joint states; a whole profile up to some
+    10⁵ cells of two states).
 
     Attributes
     ----------
@@ -164,38 +167,58 @@ class FiniteChain:
                 cell = self._position(position + anchor)
                 if 0 <= cell < self.cells:
                     values[:, cell] += mean
+        faint = _faint(values, _scale(track, self._places(track, a, self.cells // 2))[:, None])
+        for point in np.flatnonzero(faint.any(axis=1)):
+            far = faint_profile(track, int(point), a, anchors(track.window, a), faint[point])
+            if far is not None:
+                values[point] = np.where(faint[point], far, values[point])
         return self._shaped(values)
 
     def correlation(self, a: str, b: str, i: int, j: int, connected: bool = True) -> np.ndarray:
-        """Two-point function of ``a`` in cell i and ``b`` in cell j, cells numbered 0 … N−1."""
+        """Two-point function of ``a`` in cell i and ``b`` in cell j, cells numbered 0 … N−1.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, open_chain
+        >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)], observables={"m": lambda s: s})
+        >>> far = open_chain(chain.at(T=1, J=1), 1000).correlation("m", "m", 100, 300)
+        >>> round(float(far / np.tanh(1) ** 200), 12)
+        1.0
+        """
         i, j = self._cell(i), self._cell(j)
         self._must_exist()
         track = self._track((a, b))
-        result = np.zeros(self.point.size)
-        for first in anchors(track.window, a):
-            for second in anchors(track.window, b):
-                x = (f"{a}@{first}", self._position(i - first))
-                y = (f"{b}@{second}", self._position(j - second))
-                result += self._pair(track, x, y)
-        shaped = self._shaped(self._far(result, a, b, i, j))
+        x, y = self._places(track, a, i), self._places(track, b, j)
+        near = np.zeros(self.point.size)
+        for first in x:
+            for second in y:
+                near = near + self._pair(track, first, second)
+        shaped = self._shaped(self._far(track, near, a, b, i, j))
         if connected:
             return shaped
         return shaped + self._in_cell(a, i) * self._in_cell(b, j)
 
-    def _far(self, near: np.ndarray, a: str, b: str, i: int, j: int) -> np.ndarray:
-        """Replace what is lost in the rounding of the observables where all cells are alike."""
-        faint = abs(near) < _FAINT
-        if not self._uniform or not faint.any():
-            return near
-        try:
-            far = far_correlation(solve(self.point), self.cells, a, b, (j - i) % self.cells)
-        except SolveError:
-            return near
-        return near if far is None else np.where(faint, far, near)
+    def _places(self, track: Track, a: str, cell: int) -> Places:
+        """Return the windows that hold the parts of an observable in a cell; those beyond an end are left out."""
+        found = [(self._position(cell - anchor), f"{a}@{anchor}") for anchor in anchors(track.window, a)]
+        return [(position, name) for position, name in found if position in track.windows.positions]
 
-    def _pair(self, track: Track, x: tuple[str, int], y: tuple[str, int]) -> np.ndarray:
+    def _far(self, track: Track, near: np.ndarray, a: str, b: str, i: int, j: int) -> np.ndarray:
+        """Replace correlations that are lost in the rounding of the observables."""
+        x, y = self._places(track, a, i), self._places(track, b, j)
+        faint = _faint(near, _scale(track, x) * _scale(track, y))
+        if self._uniform and faint.any():
+            try:
+                far = far_correlation(solve(self.point), self.cells, a, b, (j - i) % self.cells)
+            except SolveError:
+                far = None
+            if far is not None:
+                return np.where(faint, far, near)
+        return _refined(track, near, faint, x, y)
+
+    def _pair(self, track: Track, x: tuple[int, str], y: tuple[int, str]) -> np.ndarray:
         marks: dict[int, Mark] = {}
-        for name, (quantity, position) in (("x", x), ("y", y)):
+        for name, (position, quantity) in (("x", x), ("y", y)):
             marks[position] = {**marks.get(position, {}), name: handle("observable", (), quantity)}
         table = track.marked(marks, ("x", "y"))
         return np.broadcast_to(table.tilts[("x", "y")] if ("x", "y") in table.tilts else 0.0, (self.point.size,))
@@ -210,11 +233,11 @@ class FiniteChain:
             return self.mean(a)
         track = self._track((a,))
         value = np.zeros(self.point.size)
-        for anchor in anchors(track.window, a):
-            marks = {self._position(cell - anchor): {"x": handle("observable", (), f"{a}@{anchor}")}}
-            table = track.marked(marks, ("x",))
+        places = self._places(track, a, cell)
+        for position, quantity in places:
+            table = track.marked({position: {"x": handle("observable", (), quantity)}}, ("x",))
             value = value + (table.tilts[("x",)] if ("x",) in table.tilts else 0.0)
-        return self._shaped(value)
+        return self._shaped(_refined(track, value, _faint(value, _scale(track, places)), places))
 
     def _cell(self, cell: Any) -> int:
         if isinstance(cell, bool) or not isinstance(cell, (int, np.integer)) or not 0 <= cell < self.cells:
@@ -245,3 +268,26 @@ class FiniteChain:
             index = int(np.argwhere(~np.isfinite(values))[0][0])
             raise SolveError(f"no configuration of {self.cells} cells is allowed at {self.point.pick(index)}")
         return values.reshape((*self.point.shape, *values.shape[1:]))[()]
+
+
+def _scale(track: Track, places: Places) -> np.ndarray:
+    """Return the largest absolute value of an observable's parts, by point."""
+    largest = np.zeros(track.batch)
+    for position, quantity in places:
+        table = track.assembled(position).edge_table((handle("observable", (), quantity),))
+        if table is not None:
+            largest = np.maximum(largest, abs(table).max(axis=(0, 1)))
+    return largest
+
+
+def _faint(values: np.ndarray, scale: np.ndarray) -> np.ndarray:
+    return np.asarray(abs(values) < _FAINT * scale)
+
+
+def _refined(track: Track, near: np.ndarray, faint: np.ndarray, x: Places, y: Places | None = None) -> np.ndarray:
+    """Replace what is lost in rounding by what long numbers give."""
+    result = np.array(near, dtype=float)
+    for point in np.flatnonzero(faint):
+        far = faint_value(track, int(point), x, y)
+        result[point] = result[point] if far is None else far
+    return result

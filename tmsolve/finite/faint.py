@@ -1,0 +1,199 @@
+"""Means and correlations of single cells far below rounding, by products in long numbers.
+
+A mean that decays from an end, or a connected correlation in a chain with ends and
+impurities, is a difference of sums that agree in nearly all their digits. Here the sums
+are formed with as many bits as it takes: what is left after the subtraction is compared
+with the sums, and the numbers are made longer until 64 bits remain.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Iterable, Mapping
+from functools import partial
+from typing import Any
+
+import numpy as np
+
+from ..assemble.matrix import Assembled, handle
+from ..assemble.window import ChainWindow
+from ..operators.numbers import Numbers, multiprecision
+from ..operators.product import repeated
+from .steps import Windows
+from .track import Track
+
+__all__ = ["Places", "faint_profile", "faint_value"]
+
+#: Where the parts of an observable sit: (position of the window, name of the quantity).
+Places = list[tuple[int, str]]
+
+#: Lengths tried; the last one tells a double from 0 even after two factors of the smallest size.
+_LADDER = (192, 512, 1280, 2560)
+#: Bits that must remain of the result.
+_KEPT = 64
+#: Multiplications of long numbers that are worth the wait.
+_WORK_LIMIT = 2 * 10**6
+
+
+def faint_value(track: Track, point: int, x: Places, y: Places | None = None) -> float | None:
+    """Return the mean of x, or the connected correlation of x and y, at one point of a batch.
+
+    ``None`` where the chain is too wide, or too rich in impurities, for long numbers.
+    """
+    marked = {position for position, _ in (*x, *(y or ()))}
+    runs = list(track.runs(marked))
+    size = max(max(track.windows.at(position).shape) for position, _ in runs)
+    squarings = sum(2 * count.bit_length() for _, count in runs)
+    if size**3 * squarings * (4 if y else 2) > _WORK_LIMIT:
+        return None
+    for bits in _LADDER:
+        line = _Line(track, point, multiprecision(bits), runs)
+        value, scale = line.mean(x) if y is None else line.connected(x, y)
+        if not scale or abs(value) > scale * line.numbers.power_of_two(_KEPT - bits):
+            break
+    return float(value)
+
+
+def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], wanted: np.ndarray) -> np.ndarray | None:
+    """Return the mean of an observable in every cell at one point of a batch; right in the cells wanted.
+
+    ``None`` where the chain is too long or too wide for long numbers.
+    """
+    positions = track.windows.positions
+    rows, size = track.starts, max(max(track.windows.at(position).shape) for position, _ in track.runs())
+    if 3 * len(positions) * rows * size**2 > _WORK_LIMIT:
+        return None
+    anchors, runs = tuple(anchors), [(position, 1) for position in positions]
+    for bits in _LADDER:
+        line = _Line(track, point, multiprecision(bits), runs)
+        parts = [(position, f"{a}@{anchor}", anchor) for anchor in anchors for position in positions]
+        values, scale = line.profile(parts)
+        found = np.array([values.get(cell, line.numbers.scalar(0)) for cell in range(track.cells)], dtype=object)
+        if not scale or (abs(found[wanted]) > scale * line.numbers.power_of_two(_KEPT - bits)).all():
+            break
+    return found.astype(float)
+
+
+class _Line:
+    """The windows of one finite chain at one point, in long numbers."""
+
+    def __init__(self, track: Track, point: int, numbers: Numbers, runs: list[tuple[int, int]]) -> None:
+        self.windows: Windows = track.windows
+        self.closed = track.closed
+        self.numbers = numbers
+        self.runs = runs
+        self.values: Mapping[str, Any] = {
+            name: value[point] if isinstance(value, np.ndarray) else value for name, value in track.values.items()
+        }
+        self._assembled: dict[ChainWindow, Assembled] = {}
+        self._powers: dict[tuple[ChainWindow, int], np.ndarray] = {}
+        self._plain: dict[ChainWindow, np.ndarray] = {}
+        self._sizes: dict[tuple[ChainWindow, str], Any] = {}
+
+    def mean(self, x: Places) -> tuple[Any, Any]:
+        """Return ⟨x⟩ and the size of what it may have lost digits to."""
+        whole = self._sum({})
+        parts = [self._sum({position: (name,)}) / whole for position, name in x]
+        return sum(parts), self._largest(x)
+
+    def connected(self, x: Places, y: Places) -> tuple[Any, Any]:
+        """Return ⟨xy⟩ − ⟨x⟩⟨y⟩ and the size of what it may have lost digits to."""
+        whole = self._sum({})
+        first, second = ([self._sum({p: (name,)}) / whole for p, name in part] for part in (x, y))
+        joint = []
+        for position, name in x:
+            for other, second_name in y:
+                marks: dict[int, tuple[str, ...]] = {position: (name,), other: (second_name,)}
+                if position == other:
+                    marks = {position: (name, second_name)}
+                joint.append(self._sum(marks) / whole)
+        return sum(joint) - sum(first) * sum(second), self._largest(x) * self._largest(y)
+
+    def profile(self, parts: list[tuple[int, str, int]]) -> tuple[dict[int, Any], Any]:
+        """Return the means of parts (position, quantity, anchor) by cell, and their size."""
+        before, after = self._messages()
+        whole = self._end(before[self.windows.positions.stop])
+        values: dict[int, Any] = {}
+        largest = self.numbers.scalar(0)
+        for position, name, anchor in parts:
+            table = self._table(position, (name,))
+            cell = (position + anchor) % self.windows.cells if self.closed else position + anchor
+            if table is None or not 0 <= cell < self.windows.cells:
+                continue
+            around = before[position] @ (self._weights(position) * table) @ after[position + 1]
+            values[cell] = values.get(cell, 0) + self._end(around) / whole
+            key = self.windows.at(position), name
+            if key not in self._sizes:
+                self._sizes[key] = max(abs(value) for value in table.flat)
+            largest = max(largest, self._sizes[key])
+        return values, largest
+
+    def _messages(self) -> tuple[dict[int, np.ndarray], dict[int, np.ndarray]]:
+        """Return the sums over all that lies before and after a cut."""
+        positions = self.windows.positions
+        first, last = self.windows.at(positions.start).shape[0], self.windows.at(positions.stop - 1).shape[1]
+        one, zero = self.numbers.scalar(1), self.numbers.scalar(0)
+        start = np.where(np.eye(first, dtype=bool), one, zero) if self.closed else np.full((1, first), one)
+        stop = np.where(np.eye(last, dtype=bool), one, zero) if self.closed else np.full((last, 1), one)
+        before, after = {positions.start: start}, {positions.stop: stop}
+        for position in positions:
+            before[position + 1] = before[position] @ self._weights(position)
+        for position in reversed(positions):
+            after[position] = self._weights(position) @ after[position + 1]
+        return before, after
+
+    def _end(self, table: np.ndarray) -> Any:
+        return np.trace(table) if self.closed else table.sum()
+
+    def _largest(self, x: Places) -> Any:
+        tables = [self._table(position, (name,)) for position, name in x]
+        return max([self.numbers.scalar(0), *(abs(value) for t in tables if t is not None for value in t.flat)])
+
+    def _at(self, position: int) -> Assembled:
+        window = self.windows.at(position)
+        if window not in self._assembled:
+            self._assembled[window] = Assembled(window, self.values, 1, self.numbers)
+        return self._assembled[window]
+
+    def _table(self, position: int, names: tuple[str, ...]) -> np.ndarray | None:
+        key = tuple(sorted(handle("observable", (), name) for name in names))
+        table = self._at(position).edge_table(key)
+        return None if table is None else np.broadcast_to(table, (*table.shape[:2], 1))[..., 0]
+
+    def _weights(self, position: int) -> np.ndarray:
+        window = self.windows.at(position)
+        if window not in self._plain:
+            assembled = self._at(position)
+            energy, log = assembled.reduced
+            self._plain[window] = self.numbers.exp(log - assembled.beta * energy)[..., 0]
+        return self._plain[window]
+
+    def _marked(self, position: int, names: tuple[str, ...]) -> np.ndarray:
+        """Return the weights of a window times the mean of a product of quantities."""
+        zero = self.numbers.scalar(0)
+        tables = [self._table(position, (name,)) for name in names]
+        product: Any = self.numbers.scalar(1)
+        for table in tables:
+            product = product * (zero if table is None else table)
+        if len(names) > 1:
+            joint = self._table(position, names)
+            product = product if joint is None else product + joint
+        return self._weights(position) * product
+
+    def _sum(self, marks: Mapping[int, tuple[str, ...]]) -> Any:
+        """Return the sum over all configurations of the weight times the marked quantities."""
+        result = None
+        for position, count in self.runs:
+            part = self._marked(position, marks[position]) if position in marks else self._power(position, count)
+            if result is None:
+                result = part if self.closed else part.sum(axis=0, keepdims=True)
+            else:
+                result = result @ part
+        assert result is not None
+        return self._end(result)
+
+    def _power(self, position: int, count: int) -> np.ndarray:
+        what = (self.windows.at(position), count)
+        if what not in self._powers:
+            join: Callable[[Any, Any], Any] = partial(np.matmul)
+            self._powers[what] = repeated(join, self._weights(position), count)
+        return self._powers[what]
