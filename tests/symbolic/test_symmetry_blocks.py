@@ -303,6 +303,16 @@ def test_states_that_count_alike_without_a_symmetry_share_a_block():
     assert sum(b.size * b.multiplicity for b in blocks) == 7
 
 
+def test_a_group_that_is_not_resolved_is_said_and_leaves_a_correct_block(monkeypatch):
+    def fails(group, hints):
+        raise ArithmeticError("the representations of a group of order 6 were not told apart")
+
+    monkeypatch.setattr("tmsolve.symbolic.blocks.adapted_states", fails)
+    blocks = split(polynomials(lambda i, j: y if i == j else z, 3))
+    assert [(b.size, b.matrix[0, 0]) for b in blocks] == [(1, y + 2 * z), (1, y - z), (1, y - z)]
+    assert blocks[0].label.startswith("the whole matrix, unreduced: the representations of a group of order 6")
+
+
 def test_decoupled_legs_have_blocks_of_the_whole_exchange_group():
     """Two Potts chains side by side: products of the levels, with the legs exchanged or not."""
     chain = Chain({"a": colours(3), "b": colours(3)}, [bond(lambda s, t, J: -J * delta(s, t), (k, k)) for k in "ab"])

@@ -97,9 +97,11 @@ def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
     table = numbered(matrix)
     group = automorphisms(table)
     if group.order == 1:
-        whole = Block(matrix, "the whole matrix", positive=True)
-        return [part for block in _alike(whole, np.arange(len(matrix)), table) for part in components(block)]
-    parts = adapted_states(group, [p.image for p in named])
+        return _unreduced(matrix, table, "the whole matrix")
+    try:
+        parts = adapted_states(group, [p.image for p in named])
+    except ArithmeticError as problem:
+        return _unreduced(matrix, table, f"the whole matrix, unreduced: {problem}")
     labels = block_labels([part.constituent for part in parts], named)
     domain = matrix[0, 0].ring.domain
     # Two reflections make a rotation.
@@ -114,6 +116,11 @@ def split(matrix: np.ndarray, named: Sequence[Permutation] = ()) -> list[Block]:
         block = Block(entries, label, part.times, k == 0, momenta)
         blocks.extend(_alike(block, group.orbits, table) if k == 0 else [block])
     return [component for block in blocks for component in components(block)]
+
+
+def _unreduced(matrix: np.ndarray, table: np.ndarray, label: str) -> list[Block]:
+    blocks = _alike(Block(matrix, label, positive=True), np.arange(len(matrix)), table)
+    return [part for block in blocks for part in components(block)]
 
 
 def _alike(block: Block, orbits: np.ndarray, table: np.ndarray) -> list[Block]:

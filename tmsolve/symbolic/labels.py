@@ -149,7 +149,8 @@ def _all_states(named: Sequence[Permutation], name: str) -> int:
 def _shape(part: Constituent, swaps: Sequence[Permutation], k: int) -> str:
     """Name the Young diagram from the sums of the contents of its boxes and of their squares.
 
-    These are eigenvalues of the sums of all exchanges and of all three-cycles: (Jucys, Murphy).
+    These are eigenvalues of the sum of all exchanges, and of that of all three-cycles with the number of pairs
+    added (elements of Jucys and Murphy, from memory).
     """
     pairs = k * (k - 1) // 2
     complete = len(swaps) == pairs
