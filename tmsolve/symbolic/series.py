@@ -7,6 +7,7 @@ from typing import Any
 from ..declare.chain import Chain
 from ..errors import DeclarationError, ParameterError, TooLargeError, did_you_mean
 from .deadline import TimeUp, limited
+from .series_functions import FunctionField
 from .series_high import high_series
 from .series_low import low_series
 from .series_numbers import NumberField
@@ -21,7 +22,8 @@ def series(chain: Chain, order: int, about: str = "high", of: str = "free_energy
     """Expand a quantity of the infinite chain at high or at low temperature, with exact coefficients.
 
     At high temperature the expansion is in powers of β = 1/T, and the coefficients are
-    polynomials in the free parameters; chains with forbidden configurations start from the
+    polynomials in the free parameters, and rational functions of weights and of a symbolic
+    number of colours; chains with forbidden configurations start from the
     growth factor of the allowed ones, and the coefficients lie in its number field. At low
     temperature it is in Boltzmann factors exp(−β E) of excitations, fractional powers included
     where ground states tie; the coefficients lie in the field of the growth factor of the
@@ -123,6 +125,8 @@ def _minimal(log: LogSeries) -> Any:
 
     x = sp.Symbol("x")
     field: NumberField = log.field
+    if isinstance(field, FunctionField):
+        return sp.Poly(x - log.growth_expression, x)
     rest = field.coordinates(log.growth)
     if not any(rest[1:]):
         return sp.Poly(rest[0].denominator * x - rest[0].numerator, x)

@@ -8,8 +8,8 @@ from fractions import Fraction
 from typing import Any
 
 from ..declare.chain import Chain
-from ..errors import NotApplicable, listing
-from .series_matrix import Constants, ExponentialMatrix, Part, exponential_matrix, irrational_weight, source_parts
+from ..errors import NotApplicable
+from .series_matrix import Constants, ExponentialMatrix, Part, exponential_matrix, source_parts
 from .series_numbers import rationals
 from .series_perturb import Index, below, logarithm, perron_series
 from .series_root import LeadingRoot, Rows, leading_root
@@ -33,8 +33,8 @@ def high_series(chain: Chain, names: Sequence[str], order: int) -> LogSeries:
     Raises
     ------
     NotApplicable
-        Weights leave symbols in the matrix at β = 0, or its states fall into several classes
-        with one growth factor.
+        The growth factor at β = 0 is no rational function of the weights that are symbols, or
+        states fall into several classes with one growth factor.
     """
     matrix = exponential_matrix(chain, names)
     root = _root_at_infinity(matrix)
@@ -68,24 +68,13 @@ def _with_rates(matrix: ExponentialMatrix) -> Any:
 
 
 def _root_at_infinity(matrix: ExponentialMatrix) -> LeadingRoot:
-    """Return the Perron root at β = 0."""
+    """Return the Perron root at β = 0: a number, or a rational function of weights and the number of colours."""
     constants = Constants(matrix, rationals())
-    rows: Rows = [{} for _ in range(matrix.size)]
-    for part, i, j, exponents, c in matrix.terms():
-        if part == (0, 0):
-            rows[i][j] = rows[i].get(j, constants.zero) + constants.coefficient(exponents, c)
-    numbers = [{j: constants.number(x) for j, x in row.items()} for row in rows]
-    for row, plain in zip(rows, numbers, strict=True):
-        for j, number in plain.items():
-            if number is None:
-                names = constants.names(row[j])
-                if not names:
-                    raise irrational_weight(constants.expression(row[j]))
-                raise NotApplicable(
-                    f"weights leave {listing(names)} in the transfer matrix at infinite temperature, and a series "
-                    f"starts from numbers; fix them with chain.fix({'=…, '.join(names)}=…)"
-                )
-    root = leading_root(numbers)
+    if all(constants.is_number(exponents) for part, _, _, exponents, _ in matrix.terms() if part == (0, 0)):
+        root = leading_root(_without_energies(matrix, constants))
+    else:
+        functions = constants.functions()
+        root = leading_root(_without_energies(matrix, Constants(matrix, functions)), functions)
     if root is None:
         raise NotApplicable(
             "every configuration of this chain is forbidden: no two states can follow each other for ever; check which "
@@ -98,6 +87,15 @@ def _root_at_infinity(matrix: ExponentialMatrix) -> LeadingRoot:
             "that there is no series in beta. Keep one class: forbid the states of the others"
         )
     return root
+
+
+def _without_energies(matrix: ExponentialMatrix, constants: Constants) -> Rows:
+    rows: Rows = [{} for _ in range(matrix.size)]
+    for part, i, j, exponents, c in matrix.terms():
+        if part == (0, 0):
+            number = constants.number(constants.coefficient(exponents, c))
+            rows[i][j] = rows[i][j] + number if j in rows[i] else number
+    return [{j: x for j, x in row.items() if x} for row in rows]
 
 
 @dataclass(frozen=True)

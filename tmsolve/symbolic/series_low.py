@@ -7,7 +7,8 @@ from collections.abc import Iterator, Mapping, Sequence
 from typing import Any
 
 from ..declare.chain import Chain
-from ..errors import NotApplicable
+from ..errors import NotApplicable, listing
+from ..tabulate.colours import numbers_of_colours
 from .series_balance import Balanced, balanced_classes, counted_steps
 from .series_matrix import Constants, Part, exponential_matrix, irrational_weight, source_parts
 from .series_numbers import NumberField, rationals
@@ -40,6 +41,11 @@ def low_series(chain: Chain, names: Sequence[str], order: int) -> LogSeries:
         Parameters are free, energies have no common measure, or classes of states that do
         not reach each other tie and observables are asked for.
     """
+    if numbers_of_colours(chain):
+        raise NotApplicable(
+            f"the number of colours is the symbol {listing(numbers_of_colours(chain))}; a series at low temperature "
+            "counts ground states and needs a number, as in colours(3)"
+        )
     classes = _largest(balanced_classes(exponential_matrix(chain, names)))
     if len(classes) == 1:
         return _expanded(*classes[0], len(names), order)

@@ -12,11 +12,14 @@ from ..declare.chain import Chain
 from ..errors import NotApplicable
 from ..maxplus.graphs import strong_labels
 from ..symmetry.refine import class_members, equitable
+from ..tabulate.colours import numbers_of_colours
 from ..tabulate.symbolic import beta
 from .alphabet import Laurent
+from .colour_matrix import ColourMatrix, colour_matrix, tilted_colour_matrix
 from .jet import Jet
 from .matrix import SymbolicMatrix, symbolic_matrix, tilted_matrix
 from .permutations import numbered
+from .series_functions import FunctionField
 from .series_numbers import NumberField
 
 __all__ = ["Constants", "ExponentialMatrix", "Part", "exponential_matrix", "irrational_weight", "source_parts"]
@@ -80,9 +83,9 @@ def exponential_matrix(chain: Chain, names: Sequence[str] = ()) -> ExponentialMa
     """
     if "T" in chain.fixed:
         raise NotApplicable("a series in the temperature needs T free; it is fixed in this chain")
-    matrix = tilted_matrix(chain, *names) if names else symbolic_matrix(chain)
+    matrix = _assembled(chain, names)
     _check_classes(matrix.alphabet.classes)
-    lumped = _lumped(matrix, len(names))
+    lumped = matrix.entries if isinstance(matrix, ColourMatrix) else _lumped(matrix, len(names))
     size = len(lumped)
     parts: dict[Part, dict[tuple[int, int], Laurent]] = {}
     for i in range(size):
@@ -94,6 +97,12 @@ def exponential_matrix(chain: Chain, names: Sequence[str] = ()) -> ExponentialMa
                     parts.setdefault(part, {})[i, j] = matrix.laurent(element)
     alphabet = matrix.alphabet
     return ExponentialMatrix(alphabet.classes, alphabet.units, size, parts)
+
+
+def _assembled(chain: Chain, names: Sequence[str]) -> SymbolicMatrix:
+    if numbers_of_colours(chain):
+        return tilted_colour_matrix(chain, *names) if names else colour_matrix(chain)
+    return tilted_matrix(chain, *names) if names else symbolic_matrix(chain)
 
 
 def source_parts(count: int) -> tuple[Part, ...]:
@@ -162,14 +171,14 @@ def irrational_weight(number: Any) -> NotApplicable:
 
 
 class Constants:
-    """The symbols other than β in the coefficients of a series, as a polynomial ring over a number field.
+    """The symbols other than β in the coefficients of a series, as a polynomial ring over a field.
 
     Parameters
     ----------
     matrix : ExponentialMatrix
         Its classes ln w make symbols w, its classes β J symbols J.
     field : NumberField
-        Numbers of the coefficients.
+        Numbers of the coefficients. Of a `FunctionField` the symbols w are elements.
     """
 
     def __init__(self, matrix: ExponentialMatrix, field: NumberField) -> None:
@@ -182,18 +191,24 @@ class Constants:
         self._expressions: list[Any] = []
         self._place: dict[int, int] = {}
         self._rates: dict[int, Any] = {}
+        inside = field.powers if isinstance(field, FunctionField) else {}
+        self._inside: dict[int, Any] = dict(inside)
         for k, (key, unit) in enumerate(zip(matrix.classes, matrix.units, strict=True)):
             if beta() not in key.free_symbols:
                 power = sp.Rational(unit.numerator, unit.denominator)
                 new = key.args[0] ** power if isinstance(key, sp.log) else sp.exp(key * power)
             else:
                 new = self._rates[k] = key / beta()
-            if not new.is_Rational:
+            if not new.is_Rational and k not in inside:
                 self._place[k] = len(self._expressions)
                 self._expressions.append(new)
         names = [sp.Symbol(f"g{k}") for k in range(len(self._expressions))]
         self.ring: Any = PolyRing(names, field.domain, lex) if names else None
         self.zero = self.ring.zero if self.ring is not None else field.domain.zero
+
+    def is_number(self, exponents: Sequence[Any]) -> bool:
+        """Whether the constant classes do not occur."""
+        return not any(exponent for k, exponent in enumerate(exponents) if k in self._place and k not in self._rates)
 
     def coefficient(self, exponents: Sequence[Any], c: Any) -> Any:
         """Return c times the constant classes to their powers."""
@@ -202,10 +217,13 @@ class Constants:
         for k, exponent in enumerate(exponents[: len(self._matrix.classes)]):
             if k in self._rates or not exponent:
                 continue
-            count = exponent / self._matrix.units[k]
+            count = int(exponent / self._matrix.units[k])
+            if k in self._inside:
+                number = number * self._inside[k] ** count
+                continue
             if count < 0:
                 raise self._inverse(self._expressions[self._place[k]])
-            powers[self._place[k]] = int(count)
+            powers[self._place[k]] = count
         if not any(powers):
             return number if self.ring is None else self.ring.ground_new(number)
         return self.ring.from_dict({tuple(powers): number})
@@ -249,9 +267,9 @@ class Constants:
         for powers, c in element.terms():
             factors = [base**power for base, power in zip(self._expressions, powers, strict=True) if power]
             total.append(sp.Mul(self.field.expression(c), *factors))
-        plain = all(base.is_Symbol for base in self._expressions)
-        return sp.Add(*total) if plain and self.field.is_rational else sp.expand(sp.Add(*total))
+        plain = all(base.is_Symbol for base in self._expressions) and self.field.is_rational
+        return sp.Add(*total) if plain or self._inside else sp.expand(sp.Add(*total))
 
-    def names(self, element: Any) -> list[str]:
-        """Return the symbols in an element by name."""
-        return sorted({str(symbol) for symbol in self.expression(element).free_symbols})
+    def functions(self) -> FunctionField:
+        """Return the field of rational functions of all classes that are free of β."""
+        return FunctionField({k: self._expressions[place] for k, place in self._place.items() if k not in self._rates})

@@ -13,6 +13,7 @@ from ..declare.chain import Chain
 from ..declare.point import check_temperature
 from ..declare.values import parse_value
 from ..errors import NotApplicable, ParameterError, did_you_mean, listing, unknown_parameter
+from ..tabulate.colours import numbers_of_colours
 from ..tabulate.symbolic import beta, parameter_symbols
 from .plain import latex_text, plain_text
 from .series_terms import SeriesTerm, by_beta, leading_first, scaled
@@ -173,7 +174,8 @@ class Series:
         Parameters
         ----------
         **values
-            ``T`` and every parameter in the coefficients: numbers, decimal strings or arrays.
+            ``T`` and every parameter or number of colours in the coefficients: numbers, decimal
+            strings or arrays.
 
         Raises
         ------
@@ -183,22 +185,20 @@ class Series:
         import sympy as sp
 
         symbols = {str(symbol): symbol for symbol in self.expression.free_symbols} | {"beta": beta()}
+        known = ["T", *self.chain.free, *numbers_of_colours(self.chain)]
+        needed = [name for name in known if name == "T" or name in symbols]
         for name in values:
-            if name not in ("T", *self.chain.free):
-                fixed = " It is fixed." if name in self.chain.fixed else did_you_mean(name, ["T", *self.chain.free])
-                raise ParameterError(f"no free parameter {name!r}; this series depends on {self._needed()}.{fixed}")
-        missing = [name for name in ("T", *self.chain.free) if name not in values and (name == "T" or name in symbols)]
+            if name not in known:
+                fixed = " It is fixed." if name in self.chain.fixed else did_you_mean(name, known)
+                raise ParameterError(f"no free parameter {name!r}; this series depends on {listing(needed)}.{fixed}")
+        missing = [name for name in needed if name not in values]
         if missing:
-            raise ParameterError(f"no value for {listing(missing)}; this series depends on {self._needed()}")
+            raise ParameterError(f"no value for {listing(missing)}; this series depends on {listing(needed)}")
         numbers = {name: _number(parse_value(name, value)) for name, value in values.items()}
         _check_positive(numbers["T"])
         arguments = {symbol: 1 / numbers["T"] if name == "beta" else numbers[name] for name, symbol in symbols.items()}
         plain = self.expression.xreplace({root: root.evalf(20) for root in self._roots})
         return sp.lambdify(list(arguments), plain, modules="numpy")(*arguments.values()) + 0 * arguments[beta()]
-
-    def _needed(self) -> str:
-        used = {str(symbol) for symbol in self.expression.free_symbols}
-        return listing(["T", *(name for name in self.chain.free if name in used)])
 
     def __str__(self) -> str:
         import sympy as sp

@@ -14,7 +14,8 @@ from typing import Any
 import numpy as np
 
 from ..maxplus.graphs import strong_labels
-from .series_numbers import NumberField, RealRoot, largest_real_root, rationals
+from .series_functions import FunctionField
+from .series_numbers import NumberField, largest_real_root, rationals
 
 __all__ = ["LeadingRoot", "Rows", "leading_root", "strong_parts"]
 
@@ -117,8 +118,10 @@ class LeadingRoot:
         return lambda residual, zero: [_dot(row, residual, zero) for row in rows]
 
 
-def leading_root(matrix: Sequence[Mapping[int, Any]]) -> LeadingRoot | None:
+def leading_root(matrix: Sequence[Mapping[int, Any]], functions: FunctionField | None = None) -> LeadingRoot | None:
     """Find the Perron root of a sparse non-negative matrix of rational numbers; None for a nilpotent one.
+
+    With ``functions`` the entries are rational functions, and so is the root.
 
     Examples
     --------
@@ -127,24 +130,24 @@ def leading_root(matrix: Sequence[Mapping[int, Any]]) -> LeadingRoot | None:
     >>> found.field.expression(found.value), len(found.parts)
     (1/2 + sqrt(5)/2, 1)
     """
-    best: RealRoot | None = None
+    best: tuple[NumberField, Any] | None = None
     parts: list[list[int]] = []
     for part in strong_parts(matrix):
         place = {i: k for k, i in enumerate(part)}
         inner = [{place[j]: x for j, x in matrix[i].items() if j in place} for i in part]
         if not any(inner):
             continue
-        root = _root_of(inner)
-        order = 1 if best is None else _compare(root.field, root.value, best.field, best.value)
+        root = _root_of(inner, functions or rationals())
+        order = 1 if best is None else _compare(*root, *best)
         if order > 0:
             best, parts = root, [part]
         elif order == 0:
             parts.append(part)
     if best is None:
         return None
-    field = best.field
+    field, value = best
     rows = [{j: field.domain.convert(x) for j, x in row.items()} for row in matrix]
-    return LeadingRoot(rows, field, best.value, tuple(parts))
+    return LeadingRoot(rows, field, value, tuple(parts))
 
 
 def strong_parts(matrix: Sequence[Mapping[int, Any]]) -> list[list[int]]:
@@ -158,22 +161,30 @@ def strong_parts(matrix: Sequence[Mapping[int, Any]]) -> list[list[int]]:
     return list(classes.values())
 
 
-def _root_of(rows: Rows) -> RealRoot:
-    """Return the Perron root of an irreducible matrix."""
+def _root_of(rows: Rows, field: NumberField) -> tuple[NumberField, Any]:
+    """Return the Perron root of an irreducible matrix, with the field that holds it."""
     from sympy.polys.matrices import DomainMatrix
 
     quotients = [_quotient(each, _lumped(each)) for each in (rows, _transposed(rows))]
     small = min(quotients, key=len)
-    field = rationals()
     n = len(small)
     dense = [[small[i].get(j, field.domain.zero) for j in range(n)] for i in range(n)]
-    root = largest_real_root(field, DomainMatrix(dense, (n, n), field.domain).charpoly())
+    polynomial = DomainMatrix(dense, (n, n), field.domain).charpoly()
+    if isinstance(field, FunctionField):
+        return field, field.largest_root(polynomial)
+    root = largest_real_root(field, polynomial)
     assert root is not None, "a non-negative matrix has a real eigenvalue"
-    return root
+    return root.field, root.value
 
 
 def _compare(field: NumberField, value: Any, other_field: NumberField, other: Any) -> int:
-    """Return the sign of the difference of two Perron roots; minimal polynomials decide about equality."""
+    """Return the sign of the difference of two Perron roots; minimal polynomials decide about equality.
+
+    Rational functions of which neither is the larger one everywhere count as equal.
+    """
+    if isinstance(field, FunctionField):
+        signs = {int(x > 0) - int(x < 0) for x in field.samples(value - other)}
+        return signs.pop() if len(signs) == 1 else 0
     if field.is_rational and other_field.is_rational:
         return int(value > other) - int(value < other)
     if field.polynomial == other_field.polynomial:
