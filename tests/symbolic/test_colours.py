@@ -228,25 +228,23 @@ def test_b02_b03_and_b04_potts_without_field():
 # --- physics at given numbers of colours
 
 
-@pytest.mark.parametrize("q", [3, 4, 7])
+@pytest.mark.parametrize("q", [3, 7])
 def test_thermodynamics_equal_the_solutions_for_numbers(q):
     for form, reference in ((FIELD, potts_chain(q)), (ZERO, potts_chain(q).fix(h=0))):
         values = {"J": "0.7", "T": "0.9"} | ({} if "h" in form.chain.fixed else {"h": "0.4"})
         solution = solve(reference.at(**values))
-        point = {J: sp.Rational(7, 10), H: sp.Rational(2, 5), BETA: sp.Rational(10, 9), Q: q}
+        point = {"J": Fraction(7, 10), "h": Fraction(2, 5), "T": Fraction(9, 10)}
         for name in ("free_energy", "internal_energy", "entropy", "specific_heat"):
-            got = float(getattr(form, name).subs(point))
+            got = in_q(getattr(form, name), point)(q)
             assert got == pytest.approx(float(getattr(solution, name)), rel=1e-11), name
-        assert float(form.mean("m").subs(point)) == pytest.approx(float(solution.mean("m")), rel=1e-11)
-        assert float(form.susceptibility("m").subs(point)) == pytest.approx(
-            float(solution.susceptibility("m")), rel=1e-11
-        )
-        assert float(form.correlation_length.subs(point)) == pytest.approx(
-            float(solution.correlation_length()), rel=1e-11
-        )
+        assert in_q(form.mean("m"), point)(q) == pytest.approx(float(solution.mean("m")), rel=1e-11)
+        response = float(solution.susceptibility("m"))
+        assert in_q(form.susceptibility("m"), point)(q) == pytest.approx(response, rel=1e-11)
+        length = float(solution.correlation_length())
+        assert in_q(form.correlation_length, point)(q) == pytest.approx(length, rel=1e-11)
         for r in range(4):
             expected = float(np.asarray(solution.correlation("m", "m", [r]))[0])
-            assert float(form.correlation("m", r=r).subs(point)) == pytest.approx(expected, rel=1e-10)
+            assert in_q(form.correlation("m", r=r), point)(q) == pytest.approx(expected, rel=1e-10)
 
 
 def test_bonds_as_observables():
@@ -271,10 +269,12 @@ def test_three_real_roots_in_two_fields():
     form = closed_form(chain.fix(J=1, h=1))
     assert form.is_closed and form.eigenvalues[0][0].has(sp.cos)
     solution = solve(plain_chain(chain, 5).at(J=1, h=1, T="0.9"))
-    point = {BETA: sp.Rational(10, 9), Q: 5}
-    assert float(form.free_energy.subs(point)) == pytest.approx(float(solution.free_energy), rel=1e-12)
-    assert float(form.correlation_length.subs(point)) == pytest.approx(float(solution.correlation_length()), rel=1e-10)
-    assert float(form.mean("m").subs(point)) == pytest.approx(float(solution.mean("m")), rel=1e-10)
+    for formula, number in (
+        (form.free_energy, solution.free_energy),
+        (form.correlation_length, solution.correlation_length()),
+        (form.mean("m"), solution.mean("m")),
+    ):
+        assert in_q(formula, {"T": Fraction(9, 10)})(5) == pytest.approx(float(number), rel=1e-11)
     assert inserted_colour_matrices(form.chain, "m", "m").matrix.is_reversible
 
 
