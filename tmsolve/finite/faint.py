@@ -26,8 +26,8 @@ __all__ = ["Places", "faint_profile", "faint_value"]
 #: Where the parts of an observable sit: (position of the window, name of the quantity).
 Places = list[tuple[int, str]]
 
-#: Lengths tried; the last one tells a double from 0 even after two factors of the smallest size.
-_LADDER = (192, 512, 1280, 2560)
+#: Lengths tried; the last one tells the smallest double from 0.
+_LADDER = (192, 512, 1280)
 #: Bits that must remain of the result.
 _KEPT = 64
 #: Multiplications of long numbers that are worth the wait.
@@ -84,7 +84,7 @@ class _Line:
         self.values: Mapping[str, Any] = {
             name: value[point] if isinstance(value, np.ndarray) else value for name, value in track.values.items()
         }
-        self._assembled: dict[ChainWindow, Assembled] = {}
+        self._assembled: dict[ChainWindow, Assembled] = track.long_windows(point, numbers.bits)
         self._powers: dict[tuple[ChainWindow, int], np.ndarray] = {}
         self._plain: dict[ChainWindow, np.ndarray] = {}
         self._sizes: dict[tuple[ChainWindow, str], Any] = {}

@@ -43,6 +43,8 @@ class Track:
     batch: int
     _known: dict[ChainWindow, Assembled] = field(default_factory=dict, repr=False)
     _steps: dict[Any, Product] = field(default_factory=dict, repr=False)
+    #: Windows in long numbers, by point of the batch and bits.
+    _long: dict[tuple[int, int], dict[ChainWindow, Assembled]] = field(default_factory=dict, repr=False)
 
     def __post_init__(self) -> None:
         size = max(max(self.windows.at(position).shape) for position, _ in self.runs())
@@ -90,6 +92,10 @@ class Track:
         if window not in self._known:
             self._known[window] = Assembled(window, self.values, self.batch)
         return self._known[window]
+
+    def long_windows(self, point: int, bits: int) -> dict[ChainWindow, Assembled]:
+        """Return what is kept of the windows at one point in numbers of so many bits."""
+        return self._long.setdefault((point, bits), {})
 
     def algebra(self, key: Key = ()) -> LogSum:
         """Return the algebra that keeps the cumulants of ``key``."""
