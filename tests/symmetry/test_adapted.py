@@ -163,7 +163,7 @@ def test_signed_orbits():
     assert SignedOrbits.alone(3).joined([(three, -1)]).size == 0
 
 
-@settings(max_examples=40, deadline=None)
+@settings(max_examples=25, deadline=None)
 @given(st.integers(2, 6).flatmap(lambda n: st.lists(st.permutations(range(n)), min_size=1, max_size=2)))
 def test_random_groups(generators):
     group = generated([np.array(g) for g in generators], len(generators[0]))

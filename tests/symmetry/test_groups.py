@@ -141,7 +141,7 @@ def tables(draw):
     return table, np.array(draw(st.lists(st.integers(0, 1), min_size=n, max_size=n)))
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=100, deadline=None)
 @given(tables())
 def test_random_tables_against_every_permutation(case):
     table, colours = case
@@ -162,7 +162,7 @@ def test_random_graphs_against_another_library(seed):
     assert automorphisms(nx.to_numpy_array(graph, dtype=int)).order == count
 
 
-@settings(max_examples=60, deadline=None)
+@settings(max_examples=40, deadline=None)
 @given(st.integers(2, 6).flatmap(lambda n: st.lists(st.permutations(range(n)), min_size=1, max_size=3)))
 def test_generated_groups_against_closing_the_set(generators):
     generators = [np.array(g) for g in generators]

@@ -43,7 +43,7 @@ def tables(draw):
     return table, np.array(draw(st.lists(st.integers(0, 1), min_size=n, max_size=n)))
 
 
-@settings(max_examples=150, deadline=None)
+@settings(max_examples=100, deadline=None)
 @given(tables())
 def test_the_same_classes_as_counting_by_hand(case):
     table, colours = case
@@ -52,7 +52,7 @@ def test_the_same_classes_as_counting_by_hand(case):
     assert is_equitable(table, classes)
 
 
-@settings(max_examples=40, deadline=None)
+@settings(max_examples=25, deadline=None)
 @given(tables())
 def test_joining_any_two_classes_is_not_equitable_or_joins_colours(case):
     table, colours = case
