@@ -80,7 +80,7 @@ def require_numbers(cell: Mapping[str, StateSet]) -> None:
             name = states.number
             raise NotApplicable(
                 f"sites of kind {kind!r} have {name} colours, {name} being a symbol; that is for "
-                "closed forms of rings and of the infinite chain, and this needs a number: declare the chain with "
+                "closed forms and series, and this needs a number: declare the chain with "
                 f"colours(3), or load a model that takes it with models.load(…, {name}=3), "
                 f"--option {name}=3 on the command line"
             )
