@@ -378,6 +378,12 @@ def test_branches_of_known_polynomials():
     # (z - 1)(z - 1 - x)(z - 1 + x): the largest is 1 + x
     three = branch({0: -1, 2: 1}, {0: 3, 2: -1}, {0: -3}, {0: 1}, start=1)
     assert three.series(4).terms == {0: QQ(1), 1: QQ(1)}
+    # (z - 1 + x)(z - 1 + x²): of two smaller ones the one that comes nearer to 1
+    below = branch({0: 1, 1: -1, 2: -1, 3: 1}, {0: -2, 1: 1, 2: 1}, {0: 1}, start=1)
+    assert below.series(4).terms == {0: QQ(1), 2: QQ(-1)}
+    # (z - 1)(z - 1 + x): nothing is larger than 1 itself
+    whole = branch({0: 1, 1: -1}, {0: -2, 1: 1}, {0: 1}, start=1)
+    assert whole.series(4).terms == {0: QQ(1)}
 
 
 def test_numbers_of_towers_of_fields():

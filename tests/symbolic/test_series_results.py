@@ -146,6 +146,17 @@ def test_limits_with_one_end_only():
         limits(3)
 
 
+def test_corrections_of_higher_order_are_found():
+    chain = Chain(
+        ising(), [bond(lambda s, t, J: -J * s * t)], {"far": bond(lambda s, t: s * t, shift=3), "m": lambda s: s}
+    )
+    found = limits(chain.fix(J=1))
+    # ⟨s_0 s_3⟩ = tanh³(βJ)
+    assert found.high["mean(far)"].expression == BETA**3
+    assert found.low["mean(far)"].expression == 1 - 6 * sp.exp(-2 * BETA)
+    assert (found.high["mean(m)"].order, found.low["mean(m)"].order) == (1, 1)
+
+
 @pytest.mark.parametrize("D", ["0.4", "1.3"])
 def test_leading_corrections_are_those_of_the_numeric_solver(D):
     chain = spin1_chain().fix(J=1, K=0, D=D, h=0)

@@ -19,6 +19,8 @@ __all__ = ["Limits", "limits"]
 #: At high temperature the power of β with the leading correction: it is the variance of the energy, or linear in β.
 _HIGH = {"free_energy": 1, "internal_energy": 1, "entropy": 2, "specific_heat": 2}
 _HIGH_MEAN, _HIGH_SUSCEPTIBILITY = 1, 2
+#: Orders beyond the usual ones in which a correction is looked for; of a mean that vanishes by symmetry there is none.
+_FURTHER = 4
 
 
 @dataclass(frozen=True, eq=False, repr=False)
@@ -33,7 +35,8 @@ class Limits:
         What was looked at.
     high, low : mapping of str to Series
         By name of the quantity: its limit and leading corrections. At low temperature these
-        are all terms up to exp(−Δ/T), Δ the least excitation energy.
+        are all terms up to exp(−Δ/T), Δ the least excitation energy, or up to the first power
+        of that with a correction.
     why : str
         Why there is nothing at low temperature; empty where there is.
 
@@ -127,12 +130,23 @@ def limits(chain: Chain | ClosedForm, *, time_limit: float = 30) -> Limits:
     return Limits(declared, MappingProxyType(high), MappingProxyType(low), why_low)
 
 
+def _corrected(chain: Chain, order: int, about: str, name: str, time_limit: float) -> Series:
+    """Return the series of the least order with a correction; that of ``order`` where there is none for long."""
+    first = series(chain, order, about, name, time_limit=time_limit)
+    found = first
+    for further in range(order + 1, order + 1 + _FURTHER):
+        if found.exact or any(term.energy != 0 if about == "low" else term.power > 0 for term in found.terms):
+            return found
+        found = series(chain, further, about, name, time_limit=time_limit)
+    return first
+
+
 def _collected(chain: Chain, orders: Mapping[str, int], about: str, time_limit: float) -> tuple[dict[str, Series], str]:
     """Return the series of all quantities that have one, and why others have none."""
     found, why = {}, ""
     for name, order in orders.items():
         try:
-            found[name] = series(chain, order, about, name, time_limit=time_limit)
+            found[name] = _corrected(chain, order, about, name, time_limit)
         except NotApplicable as error:
             why = why or str(error)
             if name == "free_energy":
