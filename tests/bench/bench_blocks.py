@@ -135,7 +135,8 @@ def fresh(name: str, way: str) -> tuple[float, str]:
         if run.returncode < 0:
             return float("inf"), f"passes {LIMIT} s"
         if run.returncode:
-            return float("inf"), f"fails: {run.stderr.strip().splitlines()[-1].rpartition('.')[2][:50]}"
+            error = run.stderr.strip().splitlines()[-1].partition(":")[0]
+            return float("inf"), f"fails: {error.rpartition('.')[2]}"
         seconds, text = run.stdout.strip().split(" ", 1)
         best = min(best, float(seconds))
         if best > 10:

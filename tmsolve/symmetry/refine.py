@@ -37,6 +37,8 @@ def equitable(table: np.ndarray, colours: np.ndarray | None = None) -> np.ndarra
     ------
     ValueError
         Not a square table of integers, or not one colour per state.
+    ArithmeticError
+        Every hash function tried collided, for which no table is known.
 
     Notes
     -----
