@@ -40,7 +40,7 @@ def draws(chain, seed, count=3):
 
 
 def against_solver(chain, first, second, distances=(0, 1, 2, 3, 7), seed=3):
-    form = closed_form(chain)
+    form = closed_form(chain, time_limit=120)
     function = form.correlation(first, second)
     for point in draws(chain, seed):
         exact = solve(chain.at(**point), digits=20).correlation(first, second, list(distances))

@@ -82,6 +82,12 @@ def test_a_root_zero_and_short_chains_are_special_cases():
         assert math.log(found.evalf(20)) == pytest.approx(exact, rel=1e-13)
 
 
+def test_independent_sites():
+    form = closed_form(Chain(ising(), [site(lambda s, h: -h * s)]))
+    h, N = sp.Symbol("h", real=True), sp.Symbol("N", integer=True, positive=True)
+    assert form.open_partition_function() == (2 * sp.cosh(beta * h)) ** N
+
+
 def test_bad_input():
     form = closed_form(models.load("ising").chain.fix(h=0))
     for wrong in (0, -3):

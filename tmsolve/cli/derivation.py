@@ -51,6 +51,13 @@ class Derivation:
         return closed_form(self.chain, time_limit=self.seconds)
 
     @property
+    def counted(self) -> list[str]:
+        """Names of symbolic numbers of colours."""
+        from ..tabulate.colours import numbers_of_colours
+
+        return list(numbers_of_colours(self.chain))
+
+    @property
     def boundary(self) -> str:
         """The boundary in the words of the library."""
         return "open" if self.opened else "ring"

@@ -164,7 +164,9 @@ def _usual(work: Derivation, summarised: bool) -> list[str]:
         return sums
     if work.form.is_closed:
         return ["eigenvalues", "Z", "f"]
-    return [*(["polynomial", "recurrence"] if work.form.spectrum.factors else ["matrix"]), *sums]
+    if work.form.spectrum.factors:
+        return ["polynomial", "recurrence", *sums]
+    return ["blocks" if work.counted else "matrix", *sums]
 
 
 def _compute(formulas: Sequence[Formula]) -> tuple[dict[Formula, Any], dict[str, str]]:
@@ -192,7 +194,7 @@ def _document(
         "title": model.chain.name,
         "options": dict(model.options),
         "fixed": {name: str(value) for name, value in work.chain.fixed.items()},
-        "symbols": [*work.chain.free, "beta"],
+        "symbols": [*work.chain.free, *work.counted, "beta"],
         **closed,
         "quantities": {formula.name: as_data(formula, value, work) for formula, value in found.items()},
         "latex": {formula.name: as_latex(formula, value, work) for formula, value in found.items()},

@@ -64,7 +64,7 @@ def open_formula(chain: Chain, spectrum: Spectrum) -> OpenFormula:
     ends = OpenProduct(chain, spectrum.matrix)
     modes = _Modes(spectrum, ends)
     terms = tuple(term for factor in modes.seen for term in modes.terms(factor))
-    start = modes.zeros + ends.missing
+    start = max(1, modes.zeros + ends.missing)
     short = [long_open_sum(chain, spectrum, n) for n in range(1, start + 3)]
     while start > 1 and _agree(spectrum, terms, start - 1 - ends.missing, short[start - 2]):
         start -= 1
