@@ -66,7 +66,7 @@ def test_shipped_models(name, fixed):
     if name == "clock":
         chain = chain.fix(h=0)
     form = closed_form(chain)
-    for quantity in ("f", "s", "c", "xi"):
+    for quantity in ("f", "c", "xi"):
         numpy_function(form, quantity, solver=solve)
 
 
@@ -112,6 +112,11 @@ def test_arrays_broadcast_and_temperatures_are_checked(field):
         function([1.0, 0.0], 1.0, 0.0)
 
 
+def test_any_name_of_a_chain_stays_a_comment():
+    chain = Chain(ising(), [bond(lambda s, t, J: -J * s * t)], name='a """\nraise SystemExit\n""" b\\')
+    assert numpy_function(closed_form(chain), "f")(0.01, 1.0) == pytest.approx(-1)
+
+
 def test_fixed_temperature_and_parameters():
     form = closed_form(FIELD.fix(T="0.5", J=1))
     function = numpy_function(form, "f")
@@ -146,3 +151,21 @@ def test_refused(field):
     renamed = Chain(ising(), [bond(lambda s, t, level: -level * s * t)])
     with refuses(NotApplicable, "a parameter called 'level'", "rename"):
         numpy_function(closed_form(renamed), "f")
+
+
+def test_lengths_and_responses_of_next_nearest_neighbours():
+    # Two quadratic blocks, one with complex eigenvalues where the couplings compete.
+    chain = models.load("ising_nnn").chain.fix(h=0)
+    form = closed_form(chain)
+    for quantity in ("xi", "susceptibility(m)"):
+        numpy_function(form, quantity, solver=solve)
+    T = np.array([1.0, 0.2, 0.1])
+    expected = np.asarray(solve(chain.at(T=T, J1=1, J2="-0.75")).correlation_length())
+    assert numpy_function(form, "xi")(T, 1.0, -0.75) == pytest.approx(expected, rel=1e-9)
+
+
+def test_response_that_grows_with_the_length(capel):
+    function = numpy_function(capel, "susceptibility(m)", solver=solve)
+    T = np.array([1.0, 0.2, 0.05])
+    expected = np.asarray(solve(CAPEL.at(T=T, J=1, D="0.2")).susceptibility("m"))
+    assert function(T, 1.0, 0.2) == pytest.approx(expected, rel=1e-9) and expected[-1] > 1e16

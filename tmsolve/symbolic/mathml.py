@@ -198,9 +198,7 @@ def _relation(expr: Any) -> str:
 
 
 def _matrix(expr: Any) -> str:
-    rows = [
-        _element("mtr", *(_element("mtd", _write(expr[i, j])) for j in range(expr.cols))) for i in range(expr.rows)
-    ]
+    rows = [_element("mtr", *(_element("mtd", _write(expr[i, j])) for j in range(expr.cols))) for i in range(expr.rows)]
     return _bracketed(_element("mtable", *rows))
 
 

@@ -9,6 +9,7 @@ from __future__ import annotations
 from typing import Any
 
 from ..errors import NotApplicable
+from .numpy_surds import Exponentials, as_exponentials, as_surd
 
 __all__ = ["expression_lines", "python_text"]
 
@@ -88,6 +89,10 @@ class _Writer:
 
         if not expr.has(sp.Function):
             return f"_number({self.plain(expr)})"
+        if expr.is_Add:
+            text = self._sum(expr)
+            if text is not None:
+                return text
         many: dict[Any, str] = {sp.Add: "_plus", sp.Mul: "_times", sp.Max: "_largest"}
         if expr.func in many:
             return f"{many[expr.func]}({', '.join(map(self.signed, expr.args))})"
@@ -106,6 +111,34 @@ class _Writer:
         if _tame(expr):
             return f"_number({self.plain(expr)})"
         raise NotApplicable(f"{expr.func.__name__} has no NumPy form here; use solve(chain.at(…)) for numbers")
+
+    def _sum(self, expr: Any) -> str | None:
+        """Write a sum of exponentials, or one with a square root, without cancellation; None if it is neither."""
+        terms = as_exponentials(expr)
+        if terms is not None:
+            return self._total(terms)
+        surd = as_surd(expr)
+        if surd is None:
+            return None
+        plain, radical, square, below = surd
+        parts = [as_exponentials(part) for part in (plain, radical, plain**2 - radical**2 * square, square)]
+        if any(part is None for part in parts) or not parts[0] or not parts[1]:
+            return None
+        first, second, product, inside = (self._named(self._total(part or {})) for part in parts)
+        root = self._named(f"_power({inside}, 1, 2)")
+        text = f"_surd({first}, _times({second}, {root}), {product})"
+        return f"_times({text}, _power({root}, {-below}))" if below else text
+
+    def _total(self, terms: Exponentials) -> str:
+        written = [f"({self.plain(c)}, {self.plain(x)})" for x, c in terms.items()]
+        return f"_total({', '.join(written)})" if written else "_number(0.0)"
+
+    def _named(self, text: str) -> str:
+        """Give a text a name, once."""
+        if text not in self._known:
+            self._known[text] = f"_{len(self._known)}"
+            self.lines.append(f"{self._known[text]} = {text}")
+        return self._known[text]
 
 
 def _tame(expr: Any) -> bool:

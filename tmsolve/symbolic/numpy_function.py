@@ -42,6 +42,7 @@ _FROM_LEVELS = {
     "specific_heat": "beta**2 * level[2]",
 }
 
+
 def numpy_function(form: ClosedForm, quantity: str, *, solver: Callable[[Any], Any] | None = None) -> Any:
     """Return a quantity of a closed form as a NumPy function of T and the parameters.
 
@@ -133,7 +134,9 @@ def _source(form: ClosedForm, name: str, observables: tuple[str, ...]) -> str:
     if clash:
         raise NotApplicable(f"a parameter called {clash[0]!r} has another meaning in a NumPy function; rename it")
     words = _WORDS[name].format(" and ".join(observables))
-    head = [f"def {name}({', '.join(arguments)}):", f'    """{words}: {chain.name}."""']
+    # The name of a chain is anything; as text within quotes it must stay text.
+    title = " ".join(chain.name.replace("\\", "/").replace('"', "'").split())
+    head = [f"def {name}({', '.join(arguments)}):", f'    """{words}: {title}."""']
     if "T" in arguments:
         head += [
             "    if numpy.any(numpy.asarray(T) <= 0.0):",

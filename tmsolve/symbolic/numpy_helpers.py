@@ -89,6 +89,29 @@ def _larger_root(a, d, bc, beta):
 '''
 
 SIGNED = '''
+def _total(*terms):
+    """Sum of c*exp(x) over the terms (c, x), as (sign, logarithm); equal exponentials cancel exactly."""
+    shape = numpy.broadcast_shapes(*(numpy.shape(part) for term in terms for part in term))
+    c, x = (numpy.stack([numpy.broadcast_to(term[k], shape) for term in terms]) * 1.0 for k in range(2))
+    order = numpy.argsort(-x, axis=0, kind="stable")
+    x, c = numpy.take_along_axis(x, order, 0), numpy.take_along_axis(c, order, 0)
+    total = numpy.zeros(shape)
+    for weight in c * numpy.exp(x - x[:1]):
+        total = total + weight
+    with numpy.errstate(divide="ignore"):
+        return numpy.sign(total), x[0] + numpy.log(numpy.abs(total))
+
+
+def _surd(plain, radical, product):
+    """Add A and B*sqrt(S), by (A**2 - B**2*S)/(A - B*sqrt(S)) where they have opposite signs."""
+    alike = plain[0] * radical[0] >= 0
+    up = _plus(plain, radical)
+    below = _plus(plain, (-radical[0], radical[1]))
+    with numpy.errstate(invalid="ignore"):
+        down = product[0] * below[0], product[1] - below[1]
+    return numpy.where(alike, up[0], down[0]), numpy.where(alike, up[1], down[1])
+
+
 def _number(x):
     """A number as (sign, logarithm of its modulus)."""
     with numpy.errstate(divide="ignore"):

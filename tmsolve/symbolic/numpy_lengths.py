@@ -22,20 +22,6 @@ from .spectrum import Factor, Spectrum
 __all__ = ["LENGTHS", "length_lines"]
 
 LENGTHS = '''
-def _total(*terms):
-    """Sum of c*exp(x) over the terms (c, x), as (sign, logarithm); equal exponentials cancel exactly."""
-    shape = numpy.broadcast_shapes(*(numpy.shape(x) for _, x in terms))
-    x = numpy.stack([numpy.broadcast_to(x, shape) for _, x in terms]) * 1.0
-    c = numpy.broadcast_to(numpy.array([c for c, _ in terms], dtype=float).reshape(-1, *(1,) * len(shape)), x.shape)
-    order = numpy.argsort(-x, axis=0, kind="stable")
-    x, c = numpy.take_along_axis(x, order, 0), numpy.take_along_axis(c, order, 0)
-    total = numpy.zeros(shape)
-    for weight in c * numpy.exp(x - x[:1]):
-        total = total + weight
-    with numpy.errstate(divide="ignore"):
-        return numpy.sign(total), x[0] + numpy.log(numpy.abs(total))
-
-
 def _half_sum(w, root, product):
     """(w + root)/2, which is product/(2*(root - w)) where w < 0, as a logarithm."""
     up = _plus(w, root)[1] - numpy.log(2.0)
@@ -102,6 +88,24 @@ class _Sums:
             self.lines.append(f"{self._known[key]} = {text}")
         return self._known[key]
 
+    def between(self, sign: str, first: tuple[Laurent, Laurent], second: tuple[Laurent, Laurent], radius: str) -> str:
+        """Return ln(λ − |μ|) for larger roots of two quadratics with square roots p and r.
+
+        (w + p) − r is ((w + p)² − r²)/(w + p + r) with w = t − |s|, and its numerator a sum with one root.
+        """
+        (t, d), (s, e) = first, second
+        one, two = _add((1, _product(t, t)), (-4, d)), _add((1, _product(s, s)), (-4, e))
+        plain, radical, product = [], [], []
+        for k in (-1, 1):
+            w = _add((1, t), (k, s))
+            w2 = _product(w, w)
+            plain.append(_add((1, w2), (1, one), (-1, two)))
+            radical.append(w)
+            product.append(_add((1, _product(plain[-1], plain[-1])), (-4, _product(w2, one))))
+        a, w_name, b = (self.either(sign, *pair) for pair in (plain, radical, product))
+        above = f"_surd({a}, _times((1.0, numpy.log(2.0)), {w_name}, _root), {b})[1]"
+        return f"{above} - _plus({w_name}, _root, {radius})[1] - numpy.log(2.0)"
+
     def square(self, factor: Factor) -> str:
         """Return the name of t² − 4d, as (a − d)² + 4bc where a block of two rows is known."""
         block, matrix = factor.block, self.matrix
@@ -162,11 +166,20 @@ class _Sums:
             w = self.either(sign, _add((2, t), (-1, s)), _add((2, t), (1, s)))
             gap = f"{product}[1] - numpy.log(2.0) - _plus({w}, {radius})[1]"
         else:
-            squares = _add((1, _product(t, t)), (-4, d), (-1, _product(s, s)), (4, e))
-            roots = f"_times({self.name(squares)}, _power(_plus(_root, {radius}), -1))"
-            w = self.either(sign, _add((1, t), (-1, s)), _add((1, t), (1, s)))
-            gap = f"_plus({w}, {roots})[1] - numpy.log(2.0)"
-        return self.rate(modulus, f"numpy.where({square}[0] < 0, _top, {gap})")
+            gap = self.between(sign, (t, d), (s, e), radius)
+        pair = self.from_pair(first, t, d, e)
+        return self.rate(modulus, f"numpy.where({square}[0] < 0, {pair}, {gap})")
+
+    def from_pair(self, first: Factor, t: Laurent, d: Laurent, e: Laurent) -> str:
+        """Return ln(λ − √e) for a pair of complex eigenvalues: (λ² − e)/(λ + √e) with λ² = tλ − d."""
+        t2 = _product(t, t)
+        if first.degree == 1:
+            above = f"{self.name(_add((1, t2), (-1, e)))}[1]"
+        else:
+            plain = _add((1, t2), (-2, d), (-2, e))
+            both = self.name(_add((1, _product(plain, plain)), (-1, _product(t2, _add((1, t2), (-4, d))))))
+            above = f"_surd({self.name(plain)}, _times({self.name(t)}, _root), {both})[1] - numpy.log(2.0)"
+        return f"{above} - _plus((1.0, _top), (1.0, 0.5 * {self.name(e)}[1]))[1]"
 
 
 def _product(a: Laurent, b: Laurent) -> Laurent:

@@ -98,9 +98,7 @@ def close_family(table: WeightTable, b: int) -> Closure:
     # A class that cannot be told apart keeps its value; the others then take what is left.
     own_rest = solve_exactly(columns, {k: columns[start + classes.index(k)] for k in held})
     images = {k: _image(solved.coefficients, own_rest.coefficients, column) for column, k in pivots.items()}
-    return Closure(
-        tuple(pivots.values()), held, images, _image(solved.coefficients, own_rest.coefficients, 0), ()
-    )
+    return Closure(tuple(pivots.values()), held, images, _image(solved.coefficients, own_rest.coefficients, 0), ())
 
 
 def _image(found: Mapping[Any, dict[int, Fraction]], held: Mapping[Any, dict[int, Fraction]], column: int) -> Image:
