@@ -97,7 +97,7 @@ class FunctionField(NumberField):
         factor = factors[winners[0]]
         if factor.degree() != 1 or len(set(winners)) > 1:
             names = sorted({str(symbol) for base in self._bases for symbol in base.free_symbols})
-            cure = f"fix {listing(names)} at exact numbers" if names else "use solve(chain.at(…)) for numbers"
+            cure = f"give {listing(names)} exact numbers" if names else "use solve(chain.at(…)) for numbers"
             raise NotApplicable(
                 f"the growth factor at infinite temperature is no rational function of {listing(self._bases)}, which a "
                 f"series with symbols starts from; {cure}"

@@ -2,13 +2,14 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from fractions import Fraction
 from typing import Any
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable
+from ..tabulate.symbolic import beta
 from .series_matrix import Constants, ExponentialMatrix, Part, exponential_matrix, source_parts
 from .series_numbers import rationals
 from .series_perturb import Index, below, logarithm, perron_series
@@ -38,8 +39,8 @@ def high_series(chain: Chain, names: Sequence[str], order: int) -> LogSeries:
     """
     matrix = exponential_matrix(chain, names)
     root = _root_at_infinity(matrix)
-    if not any(any(rate) for *_, rate, _ in _with_rates(matrix)):
-        order = 0
+    moves = any(any(rate) for *_, rate, _ in _with_rates(matrix))
+    order = order if moves else 0
     constants = Constants(matrix, root.field)
     operator = _Taylor(matrix, constants)
     sources = source_parts(len(names))
@@ -49,7 +50,7 @@ def high_series(chain: Chain, names: Sequence[str], order: int) -> LogSeries:
     parts: dict[Part, list[SeriesTerm]] = {part: [] for part in sources}
     for (k, *part), c in logs.items():
         parts[part[0], part[1]].append(SeriesTerm(constants.expression(c), k, _zero()))
-    return LogSeries(root.field, root.value, parts, _zero(), None, None, exact=False)
+    return LogSeries(root.field, root.value, parts, _zero(), None, None, exact=not moves)
 
 
 def _zero() -> Any:
@@ -58,9 +59,8 @@ def _zero() -> Any:
     return sp.Integer(0)
 
 
-def _with_rates(matrix: ExponentialMatrix) -> Any:
-    from ..tabulate.symbolic import beta
-
+def _with_rates(matrix: ExponentialMatrix) -> Iterator[tuple[Part, int, int, tuple[Any, ...], tuple[Any, ...], Any]]:
+    """Yield the exponentials of a matrix, with the exponents that belong to energies once more."""
     linear = [beta() in key.free_symbols for key in matrix.classes]
     for part, i, j, exponents, c in matrix.terms():
         rate = tuple(e for e, is_linear in zip(exponents, linear, strict=False) if is_linear)
@@ -90,6 +90,7 @@ def _root_at_infinity(matrix: ExponentialMatrix) -> LeadingRoot:
 
 
 def _without_energies(matrix: ExponentialMatrix, constants: Constants) -> Rows:
+    """Return the matrix at β = 0."""
     rows: Rows = [{} for _ in range(matrix.size)]
     for part, i, j, exponents, c in matrix.terms():
         if part == (0, 0):

@@ -19,8 +19,8 @@ from .series_tied import tied_series
 
 __all__ = ["low_series"]
 
-#: Coefficients in 80 digits that differ by less, relative to 1, are equal.
-_EQUAL = 1e-60
+#: Coefficients of different classes are compared in so many digits; those that differ by less are equal.
+_DIGITS, _EQUAL = 80, 1e-60
 
 
 def low_series(chain: Chain, names: Sequence[str], order: int) -> LogSeries:
@@ -186,9 +186,11 @@ def _compare(a: LogSeries, b: LogSeries) -> int:
     import mpmath as mp
 
     numbers: dict[Any, Any] = {}
-    for series, sign in ((a, 1), (b, -1)):
-        for term in series.parts[0, 0]:
-            numbers[term.energy] = numbers.get(term.energy, 0) + sign * mp.mpmathify(term.coefficient.evalf(80))
+    with mp.workdps(_DIGITS):
+        for series, sign in ((a, 1), (b, -1)):
+            for term in series.parts[0, 0]:
+                number = mp.mpmathify(term.coefficient.evalf(_DIGITS))
+                numbers[term.energy] = numbers.get(term.energy, 0) + sign * number
     for energy in sorted(numbers, key=float):
         if abs(numbers[energy]) > _EQUAL:
             return 1 if numbers[energy] > 0 else -1

@@ -45,7 +45,8 @@ class Series:
         Growth factor per cell of what is counted at zeroth order: of all configurations at
         high temperature, of ground states at low.
     polynomial : sympy.Poly
-        Minimal polynomial of ``growth``, which is its largest real root.
+        Minimal polynomial of ``growth``, which is its largest real root; x − growth where that is
+        a rational function of weights or of a number of colours.
     ground : sympy number or None
         Ground-state energy per cell; None at high temperature.
     gap : sympy number or None
@@ -53,6 +54,8 @@ class Series:
         every allowed configuration is a ground state.
     step : sympy number or None
         All E are whole multiples of it; None at high temperature.
+    exact : bool
+        Whether there are no further terms: nothing depends on T but through f = −T ln λ.
 
     Examples
     --------
