@@ -64,6 +64,13 @@ def test_the_temperature_as_variable_and_the_file(tmp_path):
     assert (tmp_path / "zeros.png").stat().st_size > 5000
 
 
+def test_far_zeros_are_counted_not_drawn():
+    far = zeros(ISING.fix(J=1, h=0), 16, variable="T")
+    ax = plot_zeros(far)
+    hidden = int((np.abs(far.array) > ax.get_xlim()[1] - ax.get_xlim()[0]).sum())
+    assert hidden == 1 and ax.texts[0].get_text() == "1 further out, up to $|z| = 103$"
+
+
 def test_messages(found):
     points, _ = found
     refused(ParameterError, lambda: plot_zeros([1j]), "result of zeros(…)", "[1j]")

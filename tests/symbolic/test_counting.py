@@ -310,6 +310,14 @@ def test_messages():
     refused(ParameterError, lambda: counts(ISING, 4, by="dE/dx"), "'dE/dx'", "dE/dJ, dE/dh")
 
 
+def test_what_is_no_chain_or_has_no_number_of_states():
+    refused(ParameterError, lambda: counts(ISING.at(J=1, h=0, T=1), 4), "counts takes a chain", "got Point")
+    tokens = Chain(colours("q"), [bond(lambda s, t: -delta(s, t))])
+    refused(NotApplicable, lambda: counts(tokens, 4), "q being a symbol", "needs a number")
+    infinite = ISING.fix(J=math.inf, h=0)
+    refused(ParameterError, lambda: counts(infinite, 4), "'J' is fixed at inf", "finite number")
+
+
 def test_weights_that_are_no_whole_numbers():
     chain = Chain(StateSet([0, 1], weights=["1/2", 1]), [])
     refused(DeclarationError, lambda: counts(chain, 3), "not a whole number", "multiply the weights")

@@ -265,6 +265,11 @@ def test_a_curve_in_the_coupling_without_edges():
 
 
 def test_messages():
+    refused(ParameterError, lambda: zeros(ISING.at(J=1, h=0, T=1), 4), "zeros takes a chain", "got Point")
+    refused(ParameterError, lambda: limiting_curve(3), "limiting_curve takes a chain", "got 3")
+    tokens = Chain(colours("q"), [bond(lambda s, t, J: -J * delta(s, t))])
+    refused(NotApplicable, lambda: zeros(tokens, 4, variable="J"), "q being a symbol")
+    refused(NotApplicable, lambda: limiting_curve(tokens, variable="J"), "q being a symbol")
     refused(ParameterError, lambda: zeros(ISING.fix(J=1), 4), "besides 'h'", "chain.fix(T=…)")
     refused(ParameterError, lambda: zeros(ISING.fix(J=1, T=0), 4), "temperature above 0")
     refused(ParameterError, lambda: zeros(ISING.fix(T=1), 4), "numbers for J", "chain.fix(J=…)")

@@ -1,4 +1,4 @@
-"""Figures of grids, gap spectra and events (extra ``plot``); functions return Axes and show nothing."""
+"""Figures of grids, gap spectra, events and zeros (extra ``plot``); functions return Axes and show nothing."""
 
 from .events import plot_events
 from .files import check_figure_path, save_figure
@@ -6,5 +6,15 @@ from .gaps import plot_gaps
 from .lines import plot_lines
 from .maps import plot_map
 from .phases import plot_phases
+from .zeros import plot_zeros
 
-__all__ = ["check_figure_path", "plot_events", "plot_gaps", "plot_lines", "plot_map", "plot_phases", "save_figure"]
+__all__ = [
+    "check_figure_path",
+    "plot_events",
+    "plot_gaps",
+    "plot_lines",
+    "plot_map",
+    "plot_phases",
+    "plot_zeros",
+    "save_figure",
+]

@@ -20,7 +20,7 @@ def plot_zeros(zeros: Zeros, curve: LimitingCurve | None = None, *, circle: bool
     r"""Draw zeros in the complex plane of z, with equal scales on both axes.
 
     Zeros of higher multiplicity bear it as a number. The part of the plane that is shown is
-    that of the zeros.
+    that of the zeros; those far outside the others are only counted in a note.
 
     Parameters
     ----------
@@ -106,13 +106,22 @@ def _draw_curve(ax: Any, curve: LimitingCurve, power: int) -> None:
 
 def _frame(ax: Any, points: np.ndarray) -> None:
     """Show the zeros, and the unit circle where they are of its size; squares stay squares."""
-    near = points.size == 0 or 0.2 < np.abs(points).max() < 5
-    corners = np.concatenate([points, [1 + 1j, -1 - 1j] if near else [0]])
+    moduli = np.abs(points)
+    usual = float(np.quantile(moduli, 0.85)) if points.size else 1.0
+    # A few far zeros would shrink all others to a dot.
+    far = moduli > 4 * usual
+    shown = points[~far]
+    near = shown.size == 0 or 0.2 < np.abs(shown).max() < 5
+    corners = np.concatenate([shown, [1 + 1j, -1 - 1j] if near else [0]])
     middle = 0.5 * (corners.real.max() + corners.real.min())
     half = 1.12 * max(0.5 * np.ptp(corners.real), np.abs(corners.imag).max())
     ax.set_aspect("equal", adjustable="box")
     ax.set_xlim(middle - half, middle + half)
     ax.set_ylim(-half, half)
+    if far.any():
+        note = f"{far.sum()} further out, up to $|z| = {moduli.max():.3g}$"
+        paper = {"facecolor": "white", "edgecolor": "none", "alpha": 0.8, "pad": 1.0}
+        ax.text(0.03, 0.03, note, transform=ax.transAxes, fontsize=6.5, bbox=paper)
 
 
 def _title(fugacity: Fugacity) -> str:

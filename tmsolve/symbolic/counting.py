@@ -11,7 +11,7 @@ from .counted import Counts
 from .deadline import Clock, TimeUp, limited
 from .packing import Layout
 from .passing import sparse_total
-from .pieces import check_boundary, check_cells, check_seconds
+from .pieces import check_boundary, check_cells, check_chain, check_seconds
 from .powers import packed_total, value_at_one
 from .sparse import powers_of
 from .sums import Plan, make_plan
@@ -78,6 +78,7 @@ def counts(
         2  -1      1
         2   1      1
     """
+    check_chain(chain, "counts")
     ring = check_boundary(boundary)
     cells = check_cells(chain, N, ring)
     names = _names(by)

@@ -23,7 +23,7 @@ from .certified import by_argument, certified_roots
 from .deadline import TimeUp, limited
 from .fugacity import Fugacity, check_variable, numeric_coefficients
 from .pairs import PairProduct
-from .pieces import check_seconds
+from .pieces import check_chain, check_seconds
 from .secular import Secular, secular
 from .squarefree import MixedTerms, generators, square_free_parts
 
@@ -118,6 +118,7 @@ def limiting_curve(
     >>> math.isclose(math.asin(curve.edges[0].imag), 2 * math.asin(math.exp(-1)))
     True
     """
+    check_chain(chain, "limiting_curve")
     check_variable(chain, variable)
     allowed = check_seconds(time_limit)
     for name, value, least, most in (("points", points, 2, 100_000), ("digits", digits, 1, 1000)):

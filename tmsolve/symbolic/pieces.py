@@ -9,7 +9,7 @@ from ..assemble.window import ChainWindow, untouched
 from ..declare.chain import Chain
 from ..errors import ParameterError
 
-__all__ = ["check_boundary", "check_cells", "check_seconds", "runs"]
+__all__ = ["check_boundary", "check_cells", "check_chain", "check_seconds", "runs"]
 
 
 def check_boundary(boundary: Any) -> bool:
@@ -17,6 +17,12 @@ def check_boundary(boundary: Any) -> bool:
     if boundary not in ("ring", "open"):
         raise ParameterError(f'boundary is "ring" or "open", got {boundary!r}')
     return bool(boundary == "ring")
+
+
+def check_chain(chain: Any, verb: str) -> None:
+    """Refuse what is no chain, such as a point."""
+    if not isinstance(chain, Chain):
+        raise ParameterError(f"{verb} takes a chain, with numbers given by chain.fix(…), got {chain!r}")
 
 
 def check_cells(chain: Chain, N: Any, ring: bool) -> int:

@@ -14,7 +14,7 @@ from .counted import Counts
 from .counting import levels_of
 from .deadline import TimeUp, limited
 from .fugacity import Fugacity, check_variable, numeric_coefficients, polynomial_of
-from .pieces import check_boundary, check_cells, check_seconds
+from .pieces import check_boundary, check_cells, check_chain, check_seconds
 from .squarefree import MixedTerms, generators, square_free_parts
 from .sums import make_plan
 from .walk import make_walk
@@ -155,6 +155,7 @@ def zeros(
     2 cells (open), z = exp(-beta*J), errors at most ...
                         -0.5 + 0.0 i
     """
+    check_chain(chain, "zeros")
     ring = check_boundary(boundary)
     cells = check_cells(chain, N, ring)
     allowed = check_seconds(time_limit)
