@@ -262,3 +262,19 @@ def test_text():
     assert "1 of 2 sites summed out of every 2 cells" in text and "kept: s[2n]" in text
     assert "does not close: the chain has no term for s**2*s'**2" in text
     assert "the family closes" in str(decimate(ISING.at(T=1, J=1, h=0)))
+
+
+def test_fixed_parameters_are_renormalised_too():
+    point = ISING.fix(J="0.9").at(T="0.5", h="0.2")
+    step = decimate(point)
+    assert float(step.renormalised.number("J")) != 0.9
+    assert (free_energy(step.renormalised) + step.constant) / 2 == pytest.approx(free_energy(point), rel=1e-13)
+
+
+def test_many_points_are_treated_in_pieces():
+    T = np.linspace(0.1, 3, 500)
+    chain = Chain(ising(), [bond(lambda s, t, J: -J * s * t, shift=4)])
+    step = decimate(chain.at(T=T, J=1), 4)
+    assert step.energies.shape == (500, 16, 16)
+    assert step.parameters["J"] == pytest.approx(np.ones(500), rel=1e-9)
+    assert flow(chain.at(T=T, J=1), steps=1).parameters["J"].shape == (2, 500)

@@ -108,6 +108,8 @@ def test_arrays_broadcast_and_temperatures_are_checked(field):
     function = numpy_function(field, "f")
     assert function([[1.0], [2.0]], [0.5, 1.0, 1.5], 0.1).shape == (2, 3)
     assert np.shape(function(1.0, 1.0, 0.0)) == ()
+    nothing = numpy_function(closed_form(FIELD.fix(h=0)), "mean(m)")
+    assert nothing([1.0, 2.0], [[1.0], [2.0]]).tolist() == [[0.0, 0.0], [0.0, 0.0]]
     with pytest.raises(ValueError, match="T must be a temperature above 0"):
         function([1.0, 0.0], 1.0, 0.0)
 

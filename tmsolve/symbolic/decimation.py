@@ -28,7 +28,7 @@ from .decimated_chain import table_point
 from .decimated_fit import Fit, fit_energies, symmetric_gauge
 from .decimated_terms import Cuts, own_terms
 
-__all__ = ["Decimation", "check_cells", "decimate", "fitted", "prepared"]
+__all__ = ["Decimation", "check_cells", "decimate", "fitted", "powered", "prepared"]
 
 #: States of the cut: the log-sum product holds their number cubed, per point.
 _STATES = 64
@@ -165,7 +165,13 @@ def decimate(point: Point, b: int = 2) -> Decimation:
     True
     """
     assembled, cuts = prepared(point, b)
-    fits, energies = fitted(_powered(assembled, int(b)), point, cuts)
+    if b < cuts.steps:
+        raise ParameterError(
+            f"b = {b}, but this chain is cut at {len(cuts.window.left)} sites over {cuts.steps} cells, and cuts "
+            f"{b} cells apart overlap; use b >= {cuts.steps}"
+        )
+    table = powered(LogTable(*assembled.reduced), assembled.beta, int(b))
+    fits, energies = fitted(table, point, cuts)
     return _collected(point, int(b), cuts, energies, fits)
 
 
@@ -178,7 +184,7 @@ def check_cells(b: Any) -> int:
 
 def prepared(point: Point, b: Any) -> tuple[Assembled, Cuts]:
     """Check a point and b, and return the transfer matrix with what its cuts are."""
-    cells = check_cells(b)
+    check_cells(b)
     if not isinstance(point, Point):
         raise ParameterError(f"decimate takes a point, chain.at(T=…, …), got {point!r}")
     if (np.asarray(point.T) == 0).any():
@@ -192,22 +198,17 @@ def prepared(point: Point, b: Any) -> tuple[Assembled, Cuts]:
         raise TooLargeError(
             f"the cut of this chain has {n} joint states; decimate takes at most {_STATES}", limit=_STATES
         )
-    if cells < cuts.steps:
-        raise ParameterError(
-            f"b = {cells}, but this chain is cut at {len(window.left)} sites over {cuts.steps} cells, and cuts "
-            f"{cells} cells apart overlap; use b >= {cuts.steps}"
-        )
     return Assembled(window, point.flat(), point.size), cuts
 
 
-def _powered(assembled: Assembled, b: int) -> LogTable:
-    """Return the b-th power of the matrix, a few points of the batch at a time."""
-    energy, log = assembled.reduced
+def powered(table: LogTable, beta: np.ndarray, b: int) -> LogTable:
+    """Return the b-th power of a matrix (n, n, batch), a few points of the batch at a time."""
+    energy, log = table.energy, table.log
     count = max(1, _HELD // len(energy) ** 3)
     parts = []
-    for start in range(0, assembled.batch, count):
+    for start in range(0, len(beta), count):
         some = slice(start, start + count)
-        parts.append(power(LogSum(assembled.beta[some]), LogTable(energy[..., some], log[..., some]), b))
+        parts.append(power(LogSum(beta[some]), LogTable(energy[..., some], log[..., some]), b))
     return LogTable(*_concatenated([(part.energy, part.log) for part in parts]))
 
 

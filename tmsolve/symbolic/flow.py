@@ -11,10 +11,9 @@ import numpy as np
 
 from ..declare.point import Point
 from ..errors import ParameterError, did_you_mean, listing
-from ..operators.algebras import LogSum, LogTable
-from ..operators.product import power
+from ..operators.algebras import LogTable
 from .decimated_fit import Fit
-from .decimation import fitted, prepared
+from .decimation import fitted, powered, prepared
 
 __all__ = ["Flow", "flow"]
 
@@ -107,14 +106,13 @@ def flow(point: Point, b: int = 2, steps: int = 8) -> Flow:
     if isinstance(steps, bool) or not isinstance(steps, Integral) or not 1 <= steps <= 60:
         raise ParameterError(f"steps is a whole number from 1 to 60, got {steps!r}")
     assembled, cuts = prepared(point, b)
-    algebra = LogSum(assembled.beta)
     first = LogTable(*assembled.reduced)
     # One step for cuts that overlap is the fewest cells after which they do not.
-    table, base = power(algebra, first, cuts.steps), np.zeros(point.size)
+    table, base = powered(first, assembled.beta, cuts.steps), np.zeros(point.size)
     fits: list[Fit] = []
     for k in range(int(steps) + 1):
         if k:
-            table, base = power(algebra, table, int(b)), base * int(b)
+            table, base = powered(table, assembled.beta, int(b)), base * int(b)
         table, lowest = _lowered(table, assembled.beta)
         base = base + lowest
         fit, _ = fitted(table, point, cuts)

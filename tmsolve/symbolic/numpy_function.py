@@ -150,6 +150,10 @@ def _source(form: ClosedForm, name: str, observables: tuple[str, ...]) -> str:
     if names:
         comma = "," if "," not in names else ""
         head.append(f"    {names}{comma} = {spread}{comma}")
+    if arguments:
+        # Quantities that do not depend on some argument have its shape all the same.
+        shapes = ", ".join(f"numpy.shape({argument})" for argument in arguments)
+        body = [*body[:-1], f"{body[-1]} + numpy.zeros(numpy.broadcast_shapes({shapes}))"]
     text = "import numpy\n\n" + helpers.rstrip() + "\n\n\n" + "\n".join([*head, *(f"    {line}" for line in body)])
     return text + "\n"
 
