@@ -151,7 +151,15 @@ def test_bad_input():
         recursion(Chain(ising(), [site(lambda s, h: -h * s)]))
     with refuses(DeclarationError, "chain.fix(J=…)"):
         recursion(Chain(ising(), [bond(lambda s, t, J: -J * s * t if J > 0 else 0)]))
-    with refuses(NotApplicable, "no value for T", "at(T=1, …)"):
+    with refuses(ParameterError, "no free parameter 'j'", "Did you mean 'J'?"):
+        recursion(ISING).at(T=1, j=1)
+    with refuses(ParameterError, "'J' must be a number", "two"):
+        recursion(ISING).at(T=1, J="two")
+    with refuses(ParameterError, "'J' must be a single finite number"):
+        recursion(ISING).at(T=1, J=[1, 2])
+    with refuses(ParameterError, "temperature above 0", "got 0"):
+        recursion(ISING).at(T=0, J=1)
+    with refuses(ParameterError, "no value for T", "at(T=1, …)"):
         recursion(ISING).at(J=1)
     with refuses(NotApplicable, "single Boltzmann factors"):
         recursion(Chain(ising(), [weight(lambda s, t, w: 1 + w if s == t else 1, ("s", 0), ("s", 1))]))

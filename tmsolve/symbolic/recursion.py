@@ -3,14 +3,15 @@
 from __future__ import annotations
 
 import math
-from collections.abc import Callable
+from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import cached_property
 from typing import Any, TypeVar
 
 from ..declare.chain import Chain
-from ..errors import NotApplicable, TmsolveError, TooLargeError, listing
+from ..declare.values import parse_value
+from ..errors import NotApplicable, ParameterError, TmsolveError, TooLargeError, did_you_mean, listing
 from ..tabulate.symbolic import parameter_symbols
 from .closed import ClosedForm
 from .deadline import TimeUp, limited
@@ -115,22 +116,38 @@ class Recursion:
         >>> print(f"{step.at(J=0.5, T=1)['J']:.6f}")
         0.216890
         """
-        import sympy as sp
-
-        point: dict[Any, Any] = {}
-        for name, value in values.items():
-            number = sp.Rational(str(value)) if not isinstance(value, Fraction) else sp.Rational(value)
-            point["beta" if name == "T" else name] = 1 / number if name == "T" else number
+        point = self._numbers(values)
         found = {}
         for equation in self.equations:
             right = equation.rhs
             wanted = [s.name for s in right.free_symbols if s.name not in point]
             if wanted:
                 names = ["T" if name == "beta" else name for name in sorted(wanted)]
-                raise NotApplicable(f"no value for {listing(names)}; give all of them, as in at(T=1, …)")
+                raise ParameterError(f"no value for {listing(names)}; give all of them, as in at(T=1, …)")
             number = right.xreplace({s: point[s.name] for s in right.free_symbols}).evalf(30)
             found[str(equation.lhs).replace("'", "")] = float(number)
         return found
+
+    def _numbers(self, values: Mapping[str, Any]) -> dict[str, Any]:
+        """Check names and values; T becomes beta."""
+        import sympy as sp
+
+        known = [*self.chain.free, *([] if "T" in self.chain.fixed else ["T"])]
+        known += [self.table.number.name] if self.table.number is not None else []
+        point: dict[str, Any] = {}
+        for name, value in values.items():
+            if name not in known:
+                raise ParameterError(
+                    f"no free parameter {name!r} in these relations; they take {listing(known)}."
+                    f"{did_you_mean(name, known)}"
+                )
+            number = parse_value(name, value)
+            if not isinstance(number, Fraction) or (name == "T" and number <= 0):
+                wanted = "a temperature above 0" if name == "T" else "a single finite number"
+                raise ParameterError(f"{name!r} must be {wanted}, got {value!r}")
+            exact = sp.Rational(number.numerator, number.denominator)
+            point["beta" if name == "T" else name] = 1 / exact if name == "T" else exact
+        return point
 
     def _solved(self, left: Any, right: Any) -> tuple[Any, Any]:
         """Bring β, or the logarithm of a weight, to the other side."""
