@@ -6,15 +6,17 @@ import random
 from collections.abc import Callable, Iterator, Sequence
 from fractions import Fraction
 from functools import cached_property
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 import numpy as np
 
 from ..errors import NotApplicable, SolveError
 from ..tabulate.symbolic import beta
-from .closed import ClosedForm
 from .perron import eigenvalue_symbol
 from .spectrum import Factor, leading_factor
+
+if TYPE_CHECKING:
+    from .closed import ClosedForm
 
 __all__ = ["Reference", "formula", "leading"]
 

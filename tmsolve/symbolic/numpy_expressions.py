@@ -42,7 +42,8 @@ def expression_lines(expr: Any) -> list[str]:
         A function that has no NumPy form.
     """
     writer = _Writer()
-    return [*writer.lines, f"result = {text}"] if (text := writer.plain(expr)) else []
+    text = writer.plain(expr)
+    return [*writer.lines, f"result = {text}"]
 
 
 class _Writer:

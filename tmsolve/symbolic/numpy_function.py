@@ -4,17 +4,19 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable
-from typing import Any
+from typing import TYPE_CHECKING, Any
 
 from ..errors import NotApplicable, ParameterError, SolveError, did_you_mean, listing
 from ..tabulate.symbolic import parameter_symbols
-from .closed import ClosedForm
 from .deadline import TimeUp, limited
 from .numpy_check import Reference, formula, leading
 from .numpy_expressions import expression_lines, python_text
 from .numpy_helpers import LEVELS, ROOT, SIGNED
 from .numpy_lengths import LENGTHS, length_lines
 from .numpy_levels import level_lines
+
+if TYPE_CHECKING:
+    from .closed import ClosedForm
 
 __all__ = ["numpy_function", "numpy_source"]
 
@@ -97,7 +99,7 @@ def _made(form: ClosedForm, name: str, observables: tuple[str, ...], solver: Cal
     reference = Reference(form, name, observables)
     source = _source(form, name, observables)
     space: dict[str, Any] = {}
-    exec(compile(source, f"<{name} of {form.chain.name}>", "exec"), space)
+    exec(compile(source, f"<exported {name}>", "exec"), space)
     function = space[name]
     function.source = source
     reference.compare(function, _arguments(form), solver)
