@@ -86,7 +86,7 @@ class FunctionField(NumberField):
         polynomial = sp.Poly(list(coefficients), sp.Symbol("t"), domain=self.domain)
         winners = []
         factors = [factor for factor, _ in polynomial.factor_list()[1]]
-        values = [[self.samples(c) for c in factor.rep.to_list()] for factor in factors]
+        values = [[self.samples(c) for c in factor.rep.all_coeffs()] for factor in factors]
         for point in range(len(_SAMPLES)):
             with mp.workdps(40):
                 radii = [
@@ -102,5 +102,5 @@ class FunctionField(NumberField):
                 f"the growth factor at infinite temperature is no rational function of {listing(self._bases)}, which a "
                 f"series with symbols starts from; {cure}"
             )
-        leading, constant = factor.rep.to_list()
+        leading, constant = factor.rep.all_coeffs()
         return -constant / leading

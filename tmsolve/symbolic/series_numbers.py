@@ -184,7 +184,7 @@ def largest_real_root(field: NumberField, coefficients: Sequence[Any]) -> RealRo
         return None
     decimal, factor, power = best
     if factor.degree() == 1:
-        leading, constant = factor.rep.to_list()
+        leading, constant = factor.rep.all_coeffs()
         return RealRoot(field, -constant / leading, power, field.generator)
     if field.is_rational:
         larger = NumberField(factor, _real_index(factor, decimal))
@@ -196,7 +196,7 @@ def _real_roots(field: NumberField, factor: Any) -> list[Any]:
     """Return the real roots of an irreducible polynomial in increasing order."""
     import mpmath as mp
 
-    numbers = [field.decimal_of(c) for c in factor.rep.to_list()]
+    numbers = [field.decimal_of(c) for c in factor.rep.all_coeffs()]
     if len(numbers) == 2:
         return [-numbers[1] / numbers[0]]
     roots = mp.polyroots(numbers, maxsteps=500, extraprec=4 * _DIGITS + 60 * len(numbers))
@@ -224,7 +224,7 @@ def _adjoined(field: NumberField, factor: Any, decimal: Any, power: int) -> Real
     minimal = field.polynomial.as_expr().subs(field.polynomial.gen, y)
     for k in range(1, 20):
         shifted = sp.S.Zero
-        for c in factor.rep.to_list():
+        for c in factor.rep.all_coeffs():
             shifted = sp.expand(shifted * (t - k * y) + _in(field, c, y))
         norm = sp.Poly(sp.resultant(minimal, shifted, y), t, domain=sp.QQ)
         if norm.is_sqf:
@@ -241,9 +241,9 @@ def _radical(field: NumberField, factor: Any, decimal: Any, k: int) -> Any:
 
     if factor.degree() != 2 or field.root.has(sp.CRootOf):
         return None
-    _, b, c = (field.expression(x) for x in factor.monic().rep.to_list())
+    _, b, c = (field.expression(x) for x in factor.monic().rep.all_coeffs())
     root = sp.sqrt(sp.expand(b**2 / 4 - c))
-    sign = 1 if decimal > field.decimal_of(-factor.monic().rep.to_list()[1]) / 2 else -1
+    sign = 1 if decimal > field.decimal_of(-factor.monic().rep.all_coeffs()[1]) / 2 else -1
     return sp.expand(-b / 2 + sign * root + k * field.root)
 
 
@@ -266,5 +266,5 @@ def _common_root(larger: NumberField, minimal: Any, shifted: Any, t: Any, y: Any
         coefficients.append(total)
     other = sp.Poly(coefficients, y, domain=larger.domain)
     common = sp.Poly(minimal, y, domain=larger.domain).gcd(other)
-    leading, constant = common.rep.to_list()
+    leading, constant = common.rep.all_coeffs()
     return -constant / leading

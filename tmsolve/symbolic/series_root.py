@@ -80,7 +80,7 @@ class LeadingRoot:
         scale = self.value**steps
         for i, power in enumerate(self._powers(steps)):
             weight = self.right[i] * scale
-            if any(power.get(j, 0) != weight * y for j, y in enumerate(self.left)):
+            if any(power.get(j, self.field.domain.zero) != weight * y for j, y in enumerate(self.left)):
                 return False
         return True
 
@@ -109,9 +109,10 @@ class LeadingRoot:
         from sympy.polys.matrices import DomainMatrix
 
         n, domain = len(self.rows), self.field.domain
-        dense = [[self.value * x * y - self.rows[i].get(j, 0) for j, y in enumerate(self.left)]
-                 for i, x in enumerate(self.right)]  # fmt: skip
-        for i in range(n):
+        dense = [[self.value * x * y for y in self.left] for x in self.right]
+        for i, row in enumerate(self.rows):
+            for j, x in row.items():
+                dense[i][j] = dense[i][j] - x
             dense[i][i] = dense[i][i] + self.value
         inverse = DomainMatrix([[domain.convert(x) for x in row] for row in dense], (n, n), domain).inv().to_list()
         rows = [{j: x for j, x in enumerate(row) if x} for row in inverse]
@@ -207,10 +208,7 @@ def _lumped(rows: Rows) -> list[int]:
         signatures: dict[Any, int] = {}
         new = []
         for i, row in enumerate(rows):
-            sums: dict[int, Any] = {}
-            for j, x in row.items():
-                sums[classes[j]] = sums.get(classes[j], 0) + x
-            key = (classes[i], frozenset(sums.items()))
+            key = (classes[i], frozenset(_sums(row, classes).items()))
             new.append(signatures.setdefault(key, len(signatures)))
         if len(signatures) == len(set(classes)):
             return new
@@ -219,13 +217,14 @@ def _lumped(rows: Rows) -> list[int]:
 
 def _quotient(rows: Rows, classes: Sequence[int]) -> Rows:
     """Return the matrix of the sums over classes."""
-    quotient: Rows = []
-    for c in range(max(classes) + 1):
-        sums: dict[int, Any] = {}
-        for j, x in rows[classes.index(c)].items():
-            sums[classes[j]] = sums.get(classes[j], 0) + x
-        quotient.append(sums)
-    return quotient
+    return [_sums(rows[classes.index(c)], classes) for c in range(max(classes) + 1)]
+
+
+def _sums(row: Mapping[int, Any], classes: Sequence[int]) -> dict[int, Any]:
+    sums: dict[int, Any] = {}
+    for j, x in row.items():
+        sums[classes[j]] = sums[classes[j]] + x if classes[j] in sums else x
+    return sums
 
 
 def _vector(rows: Rows, field: NumberField, value: Any) -> list[Any]:
@@ -235,7 +234,9 @@ def _vector(rows: Rows, field: NumberField, value: Any) -> list[Any]:
     classes = _lumped(rows)
     small = _quotient(rows, classes)
     n, domain = len(small), field.domain
-    dense = [[domain.convert(small[i].get(j, 0)) - (value if i == j else 0) for j in range(n)] for i in range(n)]
+    dense = [[domain.convert(small[i].get(j, domain.zero)) for j in range(n)] for i in range(n)]
+    for i in range(n):
+        dense[i][i] = dense[i][i] - value
     (kernel,) = DomainMatrix(dense, (n, n), domain).nullspace().to_list()
     scale = next(x for x in kernel if x)
     return [kernel[c] / scale for c in classes]
