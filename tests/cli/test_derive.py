@@ -193,3 +193,18 @@ def test_a_symbolic_number_of_colours(tm):
 def test_wrong_names(tm, asked, text):
     refused = tm("derive", "ising", "--quantity", asked)
     assert refused.code == 2 and text in refused.err
+
+
+def test_zeros_lie_on_the_unit_circle_and_are_drawn(tm, tmp_path):
+    # T. D. Lee and C. N. Yang, Phys. Rev. 87, 410 (1952).
+    pytest.importorskip("matplotlib")
+    path = tmp_path / "zeros.png"
+    words = ["derive", "ising", "-p", "J=1", "-p", "T=2", "--cells", "6", "--quantity", "zeros", "--json"]
+    document = tm(*words, "--plot", str(path)).json
+    found = document["quantities"]["zeros(h)"]
+    assert found["variable"] == "z = exp(-2*beta*h)" and len(found["zeros"]) == 6
+    for real, imaginary, times in found["zeros"]:
+        assert times == 1 and abs(sp.Float(real, 40) ** 2 + sp.Float(imaginary, 40) ** 2 - 1) < 1e-29
+    assert path.stat().st_size > 5000
+    refused = tm("derive", "ising", "--quantity", "f", "--plot", str(path))
+    assert refused.code == 2 and "--plot draws zeros" in refused.err

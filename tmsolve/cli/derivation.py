@@ -92,6 +92,22 @@ class Derivation:
 
         return counts(self.chain, self.length("counts"), names or ("energy",), self.boundary, time_limit=self.seconds)
 
+    def zeros(self, variable: str) -> Any:
+        """Find the zeros of Z_N in the complex plane."""
+        from ..symbolic.zeros import zeros
+
+        return zeros(self.chain, self.length("zeros"), variable, self.boundary, time_limit=self.seconds)
+
+    def limiting_curve(self, variable: str) -> Any:
+        """Return the curve on which zeros of long chains lie, or nothing where it cannot be traced."""
+        from ..errors import TmsolveError
+        from ..symbolic.limiting import limiting_curve
+
+        try:
+            return limiting_curve(self.chain, variable, time_limit=self.seconds)
+        except TmsolveError:
+            return None
+
     def generating_function(self) -> Any:
         """Return the sum of Z_N xᴺ as a rational function of x."""
         from ..symbolic.generating import generating_function

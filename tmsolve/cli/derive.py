@@ -94,7 +94,7 @@ def run(arguments: argparse.Namespace) -> int:
     if failures and not found and not summary:
         raise SolveError(next(iter(failures.values())))
     if figure is not None:
-        _draw(figure, found)
+        _draw(figure, found, work)
     if arguments.json:
         print(json_text(_document(model, work, found, failures)))
         return SOME_FAILED if failures else DONE
@@ -126,14 +126,14 @@ def _figure(path: str | None, asked: Sequence[Formula]) -> Path | None:
     return figure_path(path)
 
 
-def _draw(path: Path, found: Mapping[Formula, Any]) -> None:
+def _draw(path: Path, found: Mapping[Formula, Any], work: Derivation) -> None:
+    from ..plotting.files import save_figure
+    from ..plotting.zeros import plot_zeros
+
     for formula, value in found.items():
         if formula.kind == "zeros":
-            from ..plotting.files import save_figure
-            from ..plotting.zeros import plot_zeros
-
-            save_figure(plot_zeros(value), path)
-            print(f"figure written to {path}", file=sys.stderr)
+            save_figure(plot_zeros(value, work.limiting_curve(formula.arguments[0])), path)
+            print(f"figure: {path}", file=sys.stderr)
 
 
 def _summary(work: Derivation) -> str:

@@ -74,6 +74,8 @@ class Formula:
         Canonical text such as ``"mean(m)"``.
     kind : str
         Short name without brackets.
+    arguments : tuple of str
+        What stood in brackets.
     symbol, latex : str
         Left-hand side, as text and as LaTeX.
     compute : callable
@@ -82,6 +84,7 @@ class Formula:
 
     name: str
     kind: str
+    arguments: tuple[str, ...]
     symbol: str
     latex: str
     compute: Callable[[], Any]
@@ -113,7 +116,7 @@ def parse_formula(text: str, work: Derivation) -> Formula:
     symbol, latex = (part.format(", ".join(arguments)) if arguments else part for part in (look.symbol, look.latex))
     if kind == "Z" and work.cells is not None:
         symbol, latex = f"Z_{work.cells}", f"Z_{{{work.cells}}}"
-    return Formula(shown, kind, symbol, latex, _computation(kind, look.long, arguments, work))
+    return Formula(shown, kind, tuple(arguments), symbol, latex, _computation(kind, look.long, arguments, work))
 
 
 def _split(inside: str) -> list[str]:

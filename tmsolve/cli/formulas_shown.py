@@ -46,6 +46,12 @@ def as_data(formula: Formula, value: Any, work: Derivation) -> Any:
         return ring_text(work.form)
     if formula.kind == "counts":
         return {"names": list(value.names), "counts": [[*map(str, key), str(count)] for key, count in value.items()]}
+    if formula.kind == "zeros":
+        return {
+            "variable": value.variable,
+            "zeros": [[_long(z.real), _long(z.imag), m] for z, m in zip(value.zeros, value.multiplicities, strict=True)],
+            "error": float(value.error),
+        }
     if formula.kind in ("series", "limits"):
         return _expanded(formula.kind, value)
     if formula.kind == "eigenvalues":
@@ -107,6 +113,14 @@ def _latex_count(multiplicity: Any) -> str:
     from ..symbolic.plain import latex_text
 
     return str(multiplicity) if isinstance(multiplicity, int) else factor_text(multiplicity, latex_text(multiplicity))
+
+
+def _long(number: Any) -> str:
+    """Return a long number with the digits that zeros are known to."""
+    import mpmath as mp
+
+    text: str = mp.nstr(number, 30)
+    return text
 
 
 def _verbatim(text: str) -> str:
