@@ -60,12 +60,17 @@ def test_correlation_lengths_beyond_what_a_quotient_can_say(capel):
     assert function(T, 1.0, 0.2) == pytest.approx(expected, rel=1e-9) and expected[-1] > 1e38
 
 
-@pytest.mark.parametrize("name, fixed", [("lattice_gas", {}), ("helix_coil", {}), ("ladder", {"h": 0}), ("clock", {})])
+@pytest.mark.parametrize(
+    "name, fixed",
+    [
+        ("lattice_gas", {}),
+        ("helix_coil", {}),
+        pytest.param("ladder", {"h": 0}, marks=pytest.mark.slow),
+        pytest.param("clock", {"h": 0}, marks=pytest.mark.slow),
+    ],
+)
 def test_shipped_models(name, fixed):
-    chain = models.load(name).chain.fix(**fixed)
-    if name == "clock":
-        chain = chain.fix(h=0)
-    form = closed_form(chain)
+    form = closed_form(models.load(name).chain.fix(**fixed))
     for quantity in ("f", "c", "xi"):
         numpy_function(form, quantity, solver=solve)
 

@@ -55,7 +55,7 @@ def test_ising_in_a_field_conserves_its_invariant():
     assert same(before, after, beta=sp.Rational(6, 5), J=sp.Rational(2, 3), h=sp.Rational(1, 7))
 
 
-@pytest.mark.parametrize("b", [2, 3, 5])
+@pytest.mark.parametrize("b", [2, 3, pytest.param(5, marks=pytest.mark.slow)])
 def test_potts_for_any_number_of_colours(b):
     # t = (x − 1)/(x + q − 1), x = e^K, goes to tᵇ: ratios of the two eigenvalues of F. Y. Wu,
     # Rev. Mod. Phys. 54, 235 (1982); from memory.
