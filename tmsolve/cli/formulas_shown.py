@@ -49,7 +49,10 @@ def as_data(formula: Formula, value: Any, work: Derivation) -> Any:
     if formula.kind == "zeros":
         return {
             "variable": value.variable,
-            "zeros": [[_long(z.real), _long(z.imag), m] for z, m in zip(value.zeros, value.multiplicities, strict=True)],
+            "zeros": [
+                [_long(z.real), _long(z.imag), times]
+                for z, times in zip(value.zeros, value.multiplicities, strict=True)
+            ],
             "error": float(value.error),
         }
     if formula.kind in ("series", "limits"):
