@@ -29,6 +29,7 @@ _TURN = 2e-3
 _GRADED = 1e-5
 #: A number that makes (c + ω)/(1 − ω') differ for all roots of unity.
 _MARK = 2.3819660112501052
+_ROUNDS = 5
 
 
 @dataclass(frozen=True)
@@ -182,9 +183,23 @@ def _from_deviation(
         left = np.take_along_axis(inverse, order[:, :, None], axis=1)
         felt = np.einsum("bkn,bnk->bk", left, doubles @ right)
         felt = np.where(np.abs(felt) > 0.99, felt, np.exp(1j * known))
+        felt = _settled(values, felt, scale, steps)
         log_modulus, log_gap = _log_gaps(values / (_MARK + felt), scale, steps, numbers)
         good &= (np.abs(values[:, -1]) > _GRADED * np.abs(values[:, 0])) & ~np.isnan(log_gap).any(axis=1)
     return NearModes(points, log_modulus, tidy(np.angle(felt)), log_gap, right, left), good
+
+
+def _settled(values: np.ndarray, felt: np.ndarray, scale: np.ndarray, steps: int) -> np.ndarray:
+    """Return λ from v = μ (c + λ), λ^h = 1 − 1/(μ·scale): vectors may be poor, and tell which root of unity is near.
+
+    Each round multiplies the error by about |1 − λ^h|.
+    """
+    shrink = np.array([float(1 / s) for s in scale])[:, None]
+    nearest = np.exp(2j * math.pi * np.round(np.angle(felt) * steps / (2 * math.pi)) / steps)
+    result = nearest
+    for _ in range(_ROUNDS):
+        result = nearest * np.exp(np.log1p(-shrink * (_MARK + result) / values) / steps)
+    return np.asarray(result)
 
 
 def _deviation(chance: np.ndarray, steps: int) -> np.ndarray:

@@ -39,7 +39,12 @@ def small_eigenvalues(
     size = max(abs(entry) for entry in rest.ravel())
     if len(kept) <= zeros or size == 0:
         return np.full(len(kept), -np.inf), np.zeros(len(kept))
-    values = sorted(context.eig(context.matrix((rest / size).tolist()), left=False, right=False), key=lambda v: -abs(v))
+    scaled = rest / size
+    # mpmath gives a number and its vectors for one state, whatever is asked for.
+    found = [scaled[0, 0]]
+    if len(kept) > 1:
+        found = context.eig(context.matrix(scaled.tolist()), left=False, right=False)
+    values = sorted(found, key=lambda v: -abs(v))
     there = values[: len(kept) - zeros]
     # Rounding of a zero in a block of k vectors is the k-th root of that of a number.
     noise = context.ldexp(context.mpf(1), -(numbers.bits - 40) // (zeros + 1))
