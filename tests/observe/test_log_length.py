@@ -221,10 +221,10 @@ def test_small_eigenvalues_are_not_zero(T):
 
 def test_lengths_beside_a_state_that_hardly_occurs():
     # The vectors of this matrix are poor ones; Blume-Emery-Griffiths, closed form by mpmath with 60 digits.
-    with mp.workdps(60):
-        b, J, K, D = mp.mpf(100), mp.mpf("0.5"), mp.mpf("0.54"), mp.mpf("-0.83")
-        even = 2 * mp.exp(b * (K - D)) * mp.cosh(b * J)
-        first = (1 + even + mp.sqrt((1 - even) ** 2 + 8 * mp.exp(-b * D))) / 2
-        expected = -1 / mp.log(2 * mp.exp(b * (K - D)) * mp.sinh(b * J) / first)
+    with mpmath.workdps(60):
+        b, J, K, D = mpmath.mpf(100), mpmath.mpf("0.5"), mpmath.mpf("0.54"), mpmath.mpf("-0.83")
+        even = 2 * mpmath.exp(b * (K - D)) * mpmath.cosh(b * J)
+        first = (1 + even + mpmath.sqrt((1 - even) ** 2 + 8 * mpmath.exp(-b * D))) / 2
+        expected = -1 / mpmath.log(2 * mpmath.exp(b * (K - D)) * mpmath.sinh(b * J) / first)
     point = models.load("blume_emery_griffiths").chain.at(J="0.5", K="0.54", D="-0.83", h=0, K3=0, T="0.01")
-    assert abs(mp.mpf(float(solve(point).correlation_length("m"))) / expected - 1) < 1e-12
+    assert abs(mpmath.mpf(float(solve(point).correlation_length("m"))) / expected - 1) < 1e-12
