@@ -208,3 +208,23 @@ def test_zeros_lie_on_the_unit_circle_and_are_drawn(tm, tmp_path):
     assert path.stat().st_size > 5000
     refused = tm("derive", "ising", "--quantity", "f", "--plot", str(path))
     assert refused.code == 2 and "--plot draws zeros" in refused.err
+
+
+def test_numpy_text_runs_alone(tm, tmp_path):
+    text = tm("derive", "blume_capel", "-p", "h=0", "--quantity", "c", "--numpy").out
+    space = {}
+    exec(compile(text, "printed", "exec"), space)
+    answer = tm("solve", "blume_capel", "-p", "J=1", "-p", "D=0.9", "-p", "h=0", "-p", "T=0.2", "--json").json
+    assert float(space["specific_heat"](0.2, 1.0, 0.9)) == pytest.approx(answer["results"]["specific_heat"], rel=1e-12)
+    refused = tm("derive", "ising", "--quantity", "Z", "--numpy")
+    assert refused.code == 2 and "--numpy writes f, u, s, c, xi" in refused.err
+
+
+def test_mathml_is_well_formed(tm):
+    from xml.etree import ElementTree
+
+    out = tm("derive", "ising", "-p", "h=0", "--quantity", "f,chi(m)", "--mathml").out
+    elements = [ElementTree.fromstring(line) for line in out.splitlines()]
+    assert [element.tag for element in elements] == ["{http://www.w3.org/1998/Math/MathML}math"] * 2
+    refused = tm("derive", "ising", "--quantity", "blocks", "--mathml")
+    assert refused.code == 2 and "writes single formulas" in refused.err

@@ -12,7 +12,7 @@ from ..errors import SolveError, TmsolveError
 from .derivation import Derivation
 from .files import figure_path
 from .formulas import NAMES, OF_FORM, Formula, parse_formula
-from .formulas_shown import as_data, as_latex, as_text
+from .formulas_shown import as_data, as_latex, as_mathml, as_numpy, as_text
 from .jsontext import json_text
 from .layout import energy_lines, title
 from .model import given_values, load_model
@@ -45,6 +45,7 @@ EXAMPLES = """\
   tmsolve derive ising_nnn -p h=0 --cells 12 --time-limit 10
   tmsolve derive potts --option q=q -p h=0
   tmsolve derive ising --quantity Z --open
+  tmsolve derive blume_capel -p h=0 --quantity c --numpy
   tmsolve derive ising_nnn -p h=0 --quantity "series(free_energy)" --order 6
   tmsolve derive ising -p J=-1 -p h=2 --quantity "series(entropy)" --about low
   tmsolve derive ising -p J=1 --cells 12 --quantity "counts(energy,m)"
@@ -71,7 +72,12 @@ def configure(parser: Parser) -> None:
         "--about", choices=("high", "low"), default="high", help="temperature that series are about. Default: high"
     )
     add_plot(parser, "draw the zeros")
-    parser.add_argument("--latex", action="store_true", help="print LaTeX instead of plain formulas")
+    looks = parser.add_mutually_exclusive_group()
+    looks.add_argument("--latex", action="store_true", help="print LaTeX instead of plain formulas")
+    looks.add_argument("--mathml", action="store_true", help="print presentation MathML")
+    looks.add_argument(
+        "--numpy", action="store_true", help="print NumPy functions of f, u, s, c, xi, mean(a), chi(a) to paste elsewhere"
+    )
     parser.add_argument(
         "--time-limit",
         metavar="SECONDS",
@@ -87,7 +93,8 @@ def run(arguments: argparse.Namespace) -> int:
     work = _work(arguments, model)
     asked = [parse_formula(name, work) for name in split_names(arguments.quantity, "--quantity")]
     figure = _figure(arguments.plot, asked)
-    plain = not (arguments.json or arguments.latex)
+    show = as_latex if arguments.latex else as_mathml if arguments.mathml else as_numpy if arguments.numpy else as_text
+    plain = show is as_text and not arguments.json
     summary = "" if asked or not plain else _summary(work)
     formulas = asked or [parse_formula(name, work) for name in _usual(work, bool(summary))]
     found, failures = _compute(formulas)
@@ -100,7 +107,6 @@ def run(arguments: argparse.Namespace) -> int:
         return SOME_FAILED if failures else DONE
     if plain:
         print(_heading(model, work, summary, any(formula.kind in OF_FORM for formula in formulas)))
-    show = as_text if plain else as_latex
     for formula, value in found.items():
         print(for_command_line(show(formula, value, work)))
     for name, why in failures.items():

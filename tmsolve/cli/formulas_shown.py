@@ -4,13 +4,14 @@ from __future__ import annotations
 
 from typing import TYPE_CHECKING, Any
 
+from .outcome import UsageError
 from .table import table
 
 if TYPE_CHECKING:
     from .derivation import Derivation
     from .formulas import Formula
 
-__all__ = ["as_data", "as_latex", "as_text"]
+__all__ = ["as_data", "as_latex", "as_mathml", "as_numpy", "as_text"]
 
 
 def as_text(formula: Formula, value: Any, work: Derivation) -> str:
@@ -124,6 +125,32 @@ def _long(number: Any) -> str:
 
     text: str = mp.nstr(number, 30)
     return text
+
+
+def as_mathml(formula: Formula, value: Any, work: Derivation) -> str:
+    """Return a formula as a MathML element."""
+    from ..symbolic.mathml import mathml
+
+    if not hasattr(value, "free_symbols"):
+        raise UsageError(f"--mathml writes single formulas; {formula.name} is none. Use --latex or --json")
+    return mathml(value, left=_symbol(formula))
+
+
+def _symbol(formula: Formula) -> Any:
+    import sympy as sp
+
+    return sp.Symbol({"mean": f"<{', '.join(formula.arguments)}>"}.get(formula.kind, formula.symbol))
+
+
+def as_numpy(formula: Formula, value: Any, work: Derivation) -> str:
+    """Return the text of a NumPy function."""
+    from ..answer.exported import numpy_function
+
+    if formula.kind not in ("f", "u", "s", "c", "xi", "mean", "chi"):
+        raise UsageError(f"--numpy writes f, u, s, c, xi, mean(a) and chi(a); {formula.name} is none of them")
+    name = formula.name.replace("chi(", "susceptibility(")
+    source: str = numpy_function(work.form, name).source
+    return source
 
 
 def _verbatim(text: str) -> str:
