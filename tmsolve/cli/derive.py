@@ -76,7 +76,7 @@ def configure(parser: Parser) -> None:
     looks.add_argument("--latex", action="store_true", help="print LaTeX instead of plain formulas")
     looks.add_argument("--mathml", action="store_true", help="print presentation MathML")
     looks.add_argument(
-        "--numpy", action="store_true", help="print NumPy functions of f, u, s, c, xi, mean(a), chi(a) to paste elsewhere"
+        "--numpy", action="store_true", help="print NumPy functions of f, u, s, c, xi, mean(a), chi(a)"
     )
     parser.add_argument(
         "--time-limit",
