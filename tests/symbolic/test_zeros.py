@@ -31,6 +31,7 @@ from tmsolve import (
 )
 from tmsolve.errors import NotApplicable
 from tmsolve.symbolic.certified import certified_roots
+from tmsolve.symbolic.deadline import TimeUp
 from tmsolve.symbolic.limiting import limiting_curve
 from tmsolve.symbolic.squarefree import square_free_parts
 from tmsolve.symbolic.zeros import zeros
@@ -289,6 +290,16 @@ def test_messages():
     refused(TooLargeError, lambda: limiting_curve(slow, time_limit=0.05), "within 0.05 s", "fewer points")
     wide = Chain(spins(3), [bond(lambda s, t: Fraction(1, 1 + abs(s - t) ** 3)), site(lambda s, h: -h * s)])
     refused(TooLargeError, lambda: zeros(wide.fix(T=1), 30), "entries of", "fewer cells")
+
+
+def test_a_curve_is_kept_when_the_time_is_over_before_its_edges(monkeypatch):
+    def late(*_):
+        raise TimeUp
+
+    monkeypatch.setattr("tmsolve.symbolic.limiting._edges", late)
+    curve = limiting_curve(ISING.fix(J=1, T=1), points=8)
+    assert len(curve.points) == 16 and not curve.has_edges and repr(curve).endswith("16 points, edges not known>")
+    refused(NotApplicable, lambda: curve.discriminant, "not found within the time limit")
 
 
 def test_too_many_eigenvalues(monkeypatch):

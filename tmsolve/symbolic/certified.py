@@ -18,7 +18,7 @@ from typing import Any
 
 from ..errors import SolveError
 
-__all__ = ["Coefficients", "by_argument", "certified_roots"]
+__all__ = ["Coefficients", "by_argument", "certified_roots", "newton_polygon_points", "together"]
 
 #: Coefficients from the constant term up, and bounds of their errors, at the working precision of mpmath.
 Coefficients = Callable[[], tuple[list[Any], list[Any]]]
@@ -80,8 +80,8 @@ def _approximate(values: list[Any], start: list[Any] | None) -> list[Any]:
         try:
             start = _by_flint(values)
         except (ImportError, ValueError):
-            start = _newton_polygon_points(values)
-    return _aberth(values, start)
+            start = newton_polygon_points(values)
+    return together(values, start)
 
 
 def _by_flint(values: list[Any]) -> list[Any]:
@@ -110,7 +110,7 @@ def _number(middle: Any) -> Any:
     return mp.ldexp(mp.mpf(int(man)), int(exponent))
 
 
-def _newton_polygon_points(values: list[Any]) -> list[Any]:
+def newton_polygon_points(values: list[Any]) -> list[Any]:
     """Return points on circles whose radii are the slopes of the upper hull of ln |a_k|."""
     import mpmath as mp
 
@@ -135,7 +135,8 @@ def _below(a: tuple[int, Any], b: tuple[int, Any], c: tuple[int, Any]) -> bool:
     return bool((b[1] - a[1]) * (c[0] - a[0]) <= (c[1] - a[1]) * (b[0] - a[0]))
 
 
-def _aberth(values: list[Any], start: list[Any]) -> list[Any]:
+def together(values: list[Any], start: list[Any]) -> list[Any]:
+    """Improve approximations of all roots at once, at the working precision of mpmath."""
     import mpmath as mp
 
     roots = list(start)

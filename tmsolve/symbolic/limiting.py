@@ -12,15 +12,16 @@ References
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+import math
+from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
 
 from ..declare.chain import Chain
-from ..errors import ParameterError, TooLargeError
+from ..errors import NotApplicable, ParameterError, TooLargeError
 from .certified import by_argument, certified_roots
-from .deadline import TimeUp, limited
+from .deadline import Clock, TimeUp, limited
 from .fugacity import Fugacity, check_variable, numeric_coefficients
 from .pairs import PairProduct
 from .pieces import check_chain, check_seconds
@@ -46,6 +47,8 @@ class LimitingCurve:
         θ, with λ₁/λ₂ = e^{iθ}, of each point, 0 < θ ≤ π.
     edges : tuple of mpmath.mpc
         End points: the roots of the discriminant where the two largest eigenvalues merge.
+    has_edges : bool
+        False when the time was over before the edges were looked for.
     errors : tuple of mpmath.mpf
         Proved bounds of their errors.
     arcs : tuple of ndarray
@@ -58,12 +61,17 @@ class LimitingCurve:
     errors: tuple[Any, ...]
     arcs: tuple[np.ndarray, ...]
     fugacity: Fugacity
-    _discriminant: MixedTerms = field(repr=False)
+    _discriminant: MixedTerms | None = field(repr=False)
 
     @property
     def variable(self) -> str:
         """What z is."""
         return self.fugacity.text
+
+    @property
+    def has_edges(self) -> bool:
+        """Whether the edges are known; the curve alone takes less time."""
+        return self._discriminant is not None
 
     @property
     def discriminant(self) -> Any:
@@ -73,6 +81,8 @@ class LimitingCurve:
         """
         import sympy as sp
 
+        if self._discriminant is None:
+            raise NotApplicable("the discriminant was not found within the time limit; give a longer time_limit")
         return sp.Poly.from_dict(dict(self._discriminant), *generators(1 + len(self.fugacity.rates)), domain=sp.ZZ)
 
     @property
@@ -81,7 +91,8 @@ class LimitingCurve:
         return self.fugacity.factors
 
     def __repr__(self) -> str:
-        return f"<LimitingCurve in {self.variable}: {len(self.points)} points, {len(self.edges)} edges>"
+        edges = f"{len(self.edges)} edges" if self.has_edges else "edges not known"
+        return f"<LimitingCurve in {self.variable}: {len(self.points)} points, {edges}>"
 
 
 def limiting_curve(
@@ -100,7 +111,7 @@ def limiting_curve(
     digits : int
         Asked of the edges.
     time_limit : float
-        Seconds.
+        Seconds. When the time is over after the curve has been traced, it is returned without edges.
 
     Raises
     ------
@@ -124,16 +135,30 @@ def limiting_curve(
     for name, value, least, most in (("points", points, 2, 100_000), ("digits", digits, 1, 1000)):
         if isinstance(value, bool) or not isinstance(value, int) or not least <= value <= most:
             raise ParameterError(f"{name} is a whole number from {least} to {most}, got {value!r}")
+    clock = Clock(allowed)
     try:
-        return limited(allowed, _traced, chain, variable, points, digits)
+        polynomial, product, found = limited(clock.left, _traced, chain, variable, points)
     except TimeUp:
         raise TooLargeError(
             f"the limiting curve was not traced within {allowed:g} s; ask for fewer points, fix parameters at shorter "
             "decimals, or give a longer time_limit"
         ) from None
+    angles = np.concatenate([np.full(len(z), angle) for z, angle in zip(found, _angles(points), strict=True)])
+    curve = LimitingCurve(np.concatenate(found), angles, (), (), _linked(found), polynomial.fugacity, None)
+    try:
+        discriminant, edges = limited(clock.left, _edges, polynomial, product, digits)
+    except TimeUp:
+        return curve
+    ends, errors = (tuple(edge[k] for edge in edges) for k in range(2))
+    return replace(curve, edges=ends, errors=errors, _discriminant=discriminant)
 
 
-def _traced(chain: Chain, variable: str, points: int, digits: int) -> LimitingCurve:
+def _angles(points: int) -> list[float]:
+    # Between neighbours, so that neither end of (0, π) is hit.
+    return [math.pi * (k + 0.5) / points for k in range(points)]
+
+
+def _traced(chain: Chain, variable: str, points: int) -> tuple[Secular, PairProduct | None, list[np.ndarray]]:
     polynomial = secular(chain, variable)
     if polynomial.degree > _LARGEST:
         raise TooLargeError(
@@ -143,14 +168,11 @@ def _traced(chain: Chain, variable: str, points: int, digits: int) -> LimitingCu
         )
     nothing = np.empty(0, dtype=np.complex128)
     if polynomial.degree == 1:
-        return LimitingCurve(nothing, nothing.real, (), (), (), polynomial.fugacity, {(0,) * _width(polynomial): 1})
+        return polynomial, None, [nothing] * points
     product = PairProduct(polynomial)
-    discriminant = _discriminant(polynomial)
-    edges = _edges(discriminant, polynomial, product, digits)
-    # The mean of neighbouring angles, so that neither end of (0, π) is hit.
-    angles = [float(angle) for angle in np.pi * (np.arange(points) + 0.5) / points]
     # Polynomials of high degree are solved at some of the angles; the curve leads on from there.
     stride = 1 if product.size <= _MANY else max(1, points // _SEEDS)
+    angles = _angles(points)
     found = [
         product.curve_points(angle, nothing if k % stride else product.candidates(angle))
         for k, angle in enumerate(angles)
@@ -158,16 +180,7 @@ def _traced(chain: Chain, variable: str, points: int, digits: int) -> LimitingCu
     for sweep in (range(1, points), range(points - 2, -1, -1)):
         for k in sweep:
             found[k] = product.curve_points(angles[k], np.concatenate([found[k], found[k - sweep.step]]))
-    where = np.concatenate([np.full(len(z), angle) for z, angle in zip(found, angles, strict=True)])
-    return LimitingCurve(
-        np.concatenate(found),
-        where,
-        tuple(z for z, _ in edges),
-        tuple(radius for _, radius in edges),
-        _linked(found),
-        polynomial.fugacity,
-        discriminant,
-    )
+    return polynomial, product, found
 
 
 def _width(polynomial: Secular) -> int:
@@ -186,16 +199,19 @@ def _discriminant(polynomial: Secular) -> MixedTerms:
     return {tuple(p - q for p, q in zip(powers, least, strict=True)): int(c) for powers, c in terms}
 
 
-def _edges(terms: MixedTerms, polynomial: Secular, product: PairProduct, digits: int) -> list[tuple[Any, Any]]:
+def _edges(polynomial: Secular, product: PairProduct | None, digits: int) -> tuple[MixedTerms, list[tuple[Any, Any]]]:
+    """Return the discriminant, and its roots where the largest eigenvalues merge, with their errors."""
     edges: list[tuple[Any, Any]] = []
-    if max(powers[0] for powers in terms) == 0:
-        return edges
-    for part, multiplicity in square_free_parts(terms):
+    if product is None:
+        return {(0,) * _width(polynomial): 1}, edges
+    terms = _discriminant(polynomial)
+    parts = square_free_parts(terms) if max(powers[0] for powers in terms) else []
+    for part, multiplicity in parts:
         # At a root of even order eigenvalues cross without being exchanged.
         if multiplicity % 2:
             roots, radii = certified_roots(numeric_coefficients(part, polynomial.fugacity.rates), digits)
             edges += [(z, r) for z, r in zip(roots, radii, strict=True) if product.merges_at_the_top(z)]
-    return sorted(edges, key=lambda edge: by_argument(edge[0]))
+    return terms, sorted(edges, key=lambda edge: by_argument(edge[0]))
 
 
 def _linked(found: list[np.ndarray]) -> tuple[np.ndarray, ...]:

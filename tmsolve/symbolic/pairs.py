@@ -6,6 +6,7 @@ from typing import Any
 
 import numpy as np
 
+from .certified import newton_polygon_points, together
 from .fugacity import numeric_coefficients
 from .secular import Secular
 from .swarm import roots_in_doubles
@@ -74,7 +75,9 @@ class PairProduct:
 
         with mp.workdps(_DIGITS):
             column = [mp.polyval(coefficients[::-1], z) for coefficients in self._exact]
-            values = sorted(mp.polyroots(column[::-1], maxsteps=500, extraprec=400), key=abs, reverse=True)
+            found = together(column, newton_polygon_points(column))
+            zero = [mp.mpc(0)] * (self._degree - len(found))
+            values = sorted([*found, *zero], key=abs, reverse=True)
         # A double root keeps half of the digits of z at least.
         return bool(abs(values[0] - values[1]) <= 1e-7 * abs(values[0]))
 
@@ -144,26 +147,42 @@ def _interpolated(columns: list[list[Any]], degree: int) -> list[list[Any]]:
     slope = max((mp.mpf(len(column) - 1) / (degree - k) for k, column in enumerate(columns[:-1])), default=0)
     # The product is of degree n (n − 1) in λ, and its leading coefficient is that of χ to the power 2 (n − 1).
     size = int(mp.floor(degree * (degree - 1) * slope)) + 1 + 2 * (degree - 1) * leading
-    samples = []
+    samples, places = [], []
+    roots: list[Any] = []
     for k in range(size):
         z = mp.expjpi(2 * (k + mp.mpf("0.37")) / size)
         column = [mp.polyval(coefficients[::-1], z) for coefficients in columns]
-        roots = mp.polyroots(column[::-1], maxsteps=500, extraprec=400)
-        samples.append((z, _pair_polynomial(roots, column[-1] ** (2 * (degree - 1)))))
-    count = degree * (degree - 1) // 2 + 1
-    return [
-        [mp.fsum(values[m] * z**-j for z, values in samples).real / size for m in range(count)] for j in range(size)
-    ]
+        roots = together(column, roots or newton_polygon_points(column))
+        places.append(z)
+        samples.append(_pair_polynomial(roots, column[-1] ** (2 * (degree - 1))))
+    return _fourier(samples, places)
+
+
+def _fourier(samples: list[list[Any]], places: list[Any]) -> list[list[Any]]:
+    """Return the real coefficients of z^j of polynomials known at points z of the unit circle."""
+    import mpmath as mp
+
+    size = len(places)
+    parts = [([v.real for v in column], [v.imag for v in column]) for column in zip(*samples, strict=True)]
+    waves, inverse = [mp.mpc(1)] * size, [mp.conj(z) for z in places]
+    result = []
+    for _ in range(size):
+        real, imag = [w.real for w in waves], [w.imag for w in waves]
+        result.append([(mp.fdot(a, real) - mp.fdot(b, imag)) / size for a, b in parts])
+        waves = [w * v for w, v in zip(waves, inverse, strict=True)]
+    return result
 
 
 def _pair_polynomial(roots: list[Any], factor: Any) -> list[Any]:
     """Return factor · Π (a − 2 c b) over pairs, a = λ_i² + λ_j², b = λ_i λ_j, as ascending coefficients of c."""
-    total = [factor]
+    import mpmath as mp
+
+    total = [mp.mpc(factor)]
     for i, x in enumerate(roots):
         for y in roots[:i]:
             a, b = x * x + y * y, -2 * x * y
-            shifted = [0, *(t * b for t in total)]
-            total = [a * t + s for t, s in zip([*total, 0], shifted, strict=True)]
+            shifted = [mp.mpc(0), *(t * b for t in total)]
+            total = [a * t + s for t, s in zip([*total, mp.mpc(0)], shifted, strict=True)]
     return total
 
 
