@@ -3,7 +3,7 @@
 import mpmath
 import numpy as np
 import pytest
-from hypothesis import given, settings
+from hypothesis import example, given, settings
 from hypothesis import strategies as st
 
 from tests.eigen import exact
@@ -49,6 +49,7 @@ def test_stationary_law_has_full_relative_accuracy(rates):
 
 @settings(max_examples=30)
 @given(rate_matrices(decades=50), st.integers(0, 999))
+@example(np.array([[0.0, 1e-32], [1e-35, 0.0]]), 0)
 def test_poisson_and_deviation(rates, seed):
     """A deviation that is a difference of nearly equal parts is accurate relative to those parts."""
     first = reduce_states(rates[..., None])

@@ -91,8 +91,10 @@ class Reduction:
         columns = []
         for j in range(n):
             source = np.zeros_like(self.stationary)
-            source[j] = source[j] + 1
-            columns.append(self.poisson(source - self.stationary[j]))
+            source = source - self.stationary[j]
+            # 1 − π_j, which a rounded difference would spoil where j is nearly always the state.
+            source[j] = self.stationary[np.arange(n) != j].sum(axis=0)
+            columns.append(self.poisson(source))
         return np.stack(columns, axis=1)
 
 
