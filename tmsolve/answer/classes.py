@@ -3,23 +3,50 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping
+from copy import copy
+from dataclasses import fields
 from fractions import Fraction
 from typing import Any
 
 import numpy as np
 
-from ..assemble.matrix import Assembled
+from ..assemble.matrix import Assembled, Gauge
 from ..declare import Point
 from ..eigen.periodic import periodic_pair
-from ..eigen.perron import TOLERANCE, perron_pair
-from ..operators.numbers import multiprecision
+from ..eigen.perron import TOLERANCE, PerronPair, perron_pair
+from ..eigen.reduction import Reduction
+from ..operators.midpoints import flint_module, long_numbers
+from ..operators.numbers import Numbers
 
-__all__ = ["CLIMB_LIMIT", "FIRST_BITS", "CommunicatingClass", "Ties", "bits_for", "exact_values"]
+__all__ = [
+    "FIRST_BITS",
+    "USUAL_LIMIT",
+    "CommunicatingClass",
+    "Ties",
+    "bits_for",
+    "climb_limit",
+    "exact_values",
+    "what_lifts_the_limit",
+]
 
-#: Longer numbers are worth their time for matrices up to this size.
-CLIMB_LIMIT = 40
+#: Up to this size longer numbers take no time worth mentioning, and doubles are held to a strict tolerance.
+USUAL_LIMIT = 40
+#: With the numbers of python-flint matrices of this size still take seconds.
+_FAST_LIMIT = 100
 #: Length of the first numbers beyond doubles.
 FIRST_BITS = 128
+
+
+def climb_limit() -> int:
+    """Return up to which size of the matrix longer numbers are worth their time."""
+    return USUAL_LIMIT if flint_module() is None else _FAST_LIMIT
+
+
+def what_lifts_the_limit() -> str:
+    """Return what a message about `climb_limit` adds: how to raise it, where it can be raised."""
+    if flint_module() is not None:
+        return ""
+    return f' (up to {_FAST_LIMIT} with python-flint: python -m pip install "tmsolve[certified]")'
 
 
 def exact_values(point: Point, index: int) -> dict[str, Any]:
@@ -54,6 +81,19 @@ class CommunicatingClass:
         with np.errstate(all="ignore"):  # points that did not converge are solved again
             self.log_root = self.gauge.offset + part.numbers.log1p(self.pair.excess)
         self.log_eigenvalue = self.log_root - part.beta * self.gauge.energy
+
+    def moved(self, numbers: Numbers) -> CommunicatingClass:
+        """Return the same class with its results in another system of long numbers."""
+        result = copy(self)
+        into = numbers.array
+        result.log = into(self.log)
+        result.gauge = Gauge(*(into(getattr(self.gauge, field.name)) for field in fields(Gauge)))
+        flow, pair = self.pair.reduction, self.pair
+        reduction = Reduction(into(flow.rates), into(flow.pivots), into(flow.stationary), flow.order)
+        known = (into(pair.excess), into(pair.vector), into(pair.chance), reduction)
+        result.pair = PerronPair(*known, pair.converged, pair.error)
+        result.log_root, result.log_eigenvalue = into(self.log_root), into(self.log_eigenvalue)
+        return result
 
     def error(self, tied: bool) -> np.ndarray:
         """Bound what the rounding of the entries does to the vector, that of exact ties included or not."""
@@ -108,7 +148,9 @@ class Ties:
         free = not chosen.gauge.residual.any() and not self.part.chain.uses_temperature
         key = (tuple(v for name, v in values.items() if name != "T" or not free), tie.tobytes())
         if key not in self.known:
-            long = Assembled(self.part.window, values, 1, multiprecision(bits_for(values)))
-            log, _ = long.scaled_log(chosen.states, chosen.edges)
-            self.known[key] = bool((np.asarray(log[..., 0] == 0, dtype=bool) == tie).all())
+            numbers = long_numbers(bits_for(values))
+            with numbers.working():
+                long = Assembled(self.part.window, values, 1, numbers)
+                log, _ = long.scaled_log(chosen.states, chosen.edges)
+                self.known[key] = bool((np.asarray(log[..., 0] == 0, dtype=bool) == tie).all())
         return self.known[key]

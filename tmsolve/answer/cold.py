@@ -22,8 +22,8 @@ from ..eigen.solvers import Dense
 from ..errors import TooLargeError
 from ..ground.states import ground_state
 from ..observe.segment import Segment
-from .classes import CLIMB_LIMIT, FIRST_BITS, exact_values
-from .laws import long_law
+from .classes import FIRST_BITS, climb_limit, exact_values, what_lifts_the_limit
+from .long import long_law
 
 __all__ = ["with_limits"]
 
@@ -68,12 +68,12 @@ def cold_laws(window: ChainWindow, point: Point, indices: np.ndarray, solver: De
     NotApplicable
         Energies that depend on T, and weights, have no ground state.
     """
-    size = max(window.shape)
-    if size > CLIMB_LIMIT:
+    size, limit = max(window.shape), climb_limit()
+    if size > limit:
         raise TooLargeError(
-            f"solve takes T = 0 for up to {CLIMB_LIMIT} joint states of the cut; this chain has {size}. "
-            "ground_state(chain) has no such limit",
-            limit=CLIMB_LIMIT,
+            f"solve takes T = 0 for up to {limit} joint states of the cut{what_lifts_the_limit()}; "
+            f"this chain has {size}. ground_state(chain) has no such limit",
+            limit=limit,
         )
     segments = []
     for index in indices:

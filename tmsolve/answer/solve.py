@@ -15,7 +15,8 @@ from ..errors import ParameterError
 from ..observe.evaluate import Laws
 from ..observe.segment import Segment
 from ..observe.solution import Solution
-from .laws import long_laws, stationary_laws
+from .laws import stationary_laws
+from .long import long_laws
 
 __all__ = ["solve"]
 

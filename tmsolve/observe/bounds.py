@@ -33,20 +33,22 @@ def error_bounds(laws: Laws, series: Series) -> np.ndarray:
 
 
 def diagnose(laws: Laws) -> Mapping[str, Any]:
-    """Return matrix size, and per point length of numbers, why, and the rounding bound of the vector."""
+    """Return matrix size, and per point length of numbers, whose, why, and the rounding bound of the vector."""
     window, segments = laws.resolved()
     bits = np.full(laws.size, 53)
     error = np.zeros(laws.size)
-    reason = np.empty(laws.size, dtype=object)
+    reason, arithmetic = np.empty(laws.size, dtype=object), np.empty(laws.size, dtype=object)
     for segment in segments:
         bits[segment.indices] = segment.bits
         error[segment.indices] = segment.double(segment.law.bound)
         reason[segment.indices] = segment.reason
+        arithmetic[segment.indices] = segment.arithmetic
     return {
         "matrix": window.shape,
         "nonzeros": allowed_entries(window.chain),
         "interior": len(window.interior),
         "bits": bits,
+        "arithmetic": arithmetic,
         "reason": reason,
         "vector_error": error,
     }

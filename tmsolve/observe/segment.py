@@ -47,6 +47,8 @@ class Segment:
         Whether the points stand for T = 0; ``beta`` is then large but has no meaning.
     reason : str
         Why numbers of this length were used.
+    arithmetic : str
+        Whose numbers the Perron pair was found with.
     """
 
     indices: np.ndarray
@@ -62,6 +64,7 @@ class Segment:
     other_classes: tuple[Callable[[], Ratios], ...] = ()
     limit: bool = False
     reason: str = "doubles suffice"
+    arithmetic: str = "doubles"
 
     def double(self, values: Any) -> np.ndarray:
         """Round to doubles and spread over the points of the segment."""

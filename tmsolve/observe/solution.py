@@ -294,7 +294,7 @@ class Solution:
 
     @property
     def diagnostics(self) -> Mapping[str, Any]:
-        """How the numbers were obtained: matrix size, per point length of numbers, why, and rounding bound."""
+        """How the numbers were obtained: matrix size, per point length of numbers, whose, why, and rounding bound."""
         facts = diagnose(self.laws)
-        shaped = {name: facts[name].reshape(self.shape)[()] for name in ("bits", "reason", "vector_error")}
+        shaped = {n: facts[n].reshape(self.shape)[()] for n in ("bits", "arithmetic", "reason", "vector_error")}
         return {**facts, **shaped}

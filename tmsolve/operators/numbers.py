@@ -7,6 +7,9 @@ text serves double arrays and object arrays of multi-precision numbers alike.
 from __future__ import annotations
 
 import math
+import sys
+from collections.abc import Callable
+from contextlib import AbstractContextManager, nullcontext
 from dataclasses import dataclass
 from fractions import Fraction
 from functools import lru_cache
@@ -15,6 +18,9 @@ from typing import Any
 import numpy as np
 
 __all__ = ["DOUBLE", "Numbers", "multiprecision", "to_digits", "to_double"]
+
+
+_LARGEST = sys.float_info.max
 
 
 @dataclass(frozen=True, eq=False)
@@ -31,6 +37,10 @@ class Numbers:
         Unit roundoff; a long number where a double would hold it as 0.
     tiny : float
         Magnitude below which results lose relative accuracy; 0 with unlimited exponents.
+    arithmetic : str
+        Whose arithmetic it is.
+    working : callable
+        Returns the context in which its numbers must be computed with, scalars included.
     """
 
     bits: int
@@ -43,6 +53,8 @@ class Numbers:
     log1p: Any
     power_of_two: Any
     scalar: Any
+    arithmetic: str = "doubles"
+    working: Callable[[], AbstractContextManager[None]] = nullcontext
 
     @property
     def exact_exponent(self) -> bool:
@@ -103,6 +115,8 @@ def multiprecision(bits: int) -> Numbers:
             return context.mpf(value.numerator) / value.denominator
         if isinstance(value, (np.floating, np.integer)):
             return context.mpf(value.item())
+        if hasattr(value, "man_exp") and not hasattr(value, "_mpf_"):  # a midpoint of python-flint
+            return _from_midpoint(value, context)
         return context.mpf(value)
 
     def expm1(x: Any) -> Any:
@@ -128,7 +142,15 @@ def multiprecision(bits: int) -> Numbers:
         log1p=each(context.log1p),
         power_of_two=each(power),
         scalar=scalar,
+        arithmetic="mpmath",
     )
+
+
+def _from_midpoint(value: Any, context: Any) -> Any:
+    if not value.is_finite():
+        return context.mpf(float(value))
+    mantissa, exponent = value.man_exp()
+    return context.ldexp(context.mpf(int(mantissa)), int(exponent))
 
 
 def to_double(values: Any) -> np.ndarray:
@@ -163,6 +185,8 @@ def _decimal_context(digits: int) -> Any:
 
 def _round(value: Any) -> float:
     try:
-        return float(value)
+        number = float(value)
     except OverflowError:
         return math.inf if value > 0 else -math.inf
+    # python-flint rounds what exceeds the range to the largest double.
+    return math.copysign(math.inf, number) if abs(number) >= _LARGEST and abs(value) > _LARGEST else number
