@@ -345,6 +345,7 @@ def test_what_would_not_fit():
     error = refused(TooLargeError, lambda: counts(chain, 400, by=("energy", "m")), "entries of", "bits", "fewer cells")
     assert error.limit == 2_000_000
     refused(TooLargeError, lambda: counts(ISING.fix(J=1, h=0), 60_000), "60001 entries", "bits")
+    refused(TooLargeError, lambda: counts(ISING.fix(J=1, h=0), 10**12), "about 3e+11 digits", "fewer cells")
 
 
 def test_few_of_many_possible_values():

@@ -55,7 +55,7 @@ def test_lee_yang_zeros_lie_on_the_unit_circle(boundary):
 
 
 def test_zeros_of_the_ising_ring_have_a_closed_form():
-    """λ₁ᴺ = −λ₂ᴺ: cosh² βh = cos² k sinh-free form; Lee & Yang (1952): cos θ = −e^−4K + (1 − e^−4K) cos 2k."""
+    """Lee & Yang (1952): λ₁ᴺ = −λ₂ᴺ gives cos θ = −e^−4K + (1 − e^−4K) cos((2n + 1) π/N)."""
     N = 12
     found = zeros(ISING.fix(J=1, T=2), N)
     with mp.workdps(50):
@@ -86,7 +86,7 @@ def test_edge_angle_from_the_discriminant(T):
 
 
 def test_antiferromagnet_has_its_zeros_on_the_negative_axis():
-    """C. N. Yang's equation for K < 0: cos θ < −1 throughout; all zeros are real and negative."""
+    """For K < 0 the same formula has cos θ < −1: all zeros are real and negative."""
     found = zeros(ISING.fix(J=-1, T=1), 10)
     assert all(z.imag == 0 and z.real < 0 for z in found.zeros)
 

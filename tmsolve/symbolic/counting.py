@@ -2,8 +2,11 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Sequence
 from typing import Any
+
+import numpy as np
 
 from ..declare.chain import Chain
 from ..errors import DeclarationError, ParameterError, SolveError, TooLargeError
@@ -21,6 +24,8 @@ __all__ = ["counts", "levels_of"]
 
 #: Largest result, in entries and in bits of all of them.
 _ENTRIES, _BITS = 2_000_000, 1_200_000_000
+#: Longest single number.
+_DIGITS = 3_000_000
 #: Tables with so many more entries than configurations, or more than can be laid out, are filled term by term,
 #: in the hope that few of their entries are taken; not if even that is beyond hope.
 _THIN, _HOPE = 4, 50 * _ENTRIES
@@ -97,7 +102,7 @@ def counts(
 def _count(chain: Chain, names: tuple[str, ...], cells: int, ring: bool) -> tuple[Walk, Plan, dict]:
     plan = make_plan(chain, names)
     walk = make_walk(plan, cells, ring)
-    if walk.denominator != 1:
+    if not walk.whole:
         raise DeclarationError(
             "a state or term of this chain has a weight that is not a whole number, and a fraction of a configuration "
             "cannot be counted; multiply the weights to whole numbers, or ask zeros(…) or ring(…) for sums of weights"
@@ -113,6 +118,13 @@ def levels_of(walk: Walk) -> dict[tuple[int, ...], int]:
     TooLargeError
         The result would not fit into the memory.
     """
+    digits = sum(count * math.log10(max(2, _row_sum(matrix))) for matrix, count in walk.steps)
+    if digits > _DIGITS:
+        raise TooLargeError(
+            f"the number of configurations itself has about {digits:.2g} digits; at most {_DIGITS} are computed. Ask "
+            "for fewer cells",
+            limit=_DIGITS,
+        )
     total = value_at_one(walk)
     layout = Layout.for_size(walk.tops, total)
     if not total:
@@ -131,6 +143,10 @@ def levels_of(walk: Walk) -> dict[tuple[int, ...], int]:
     if sum(found.values()) != total:
         raise SolveError(f"the counts add up to {sum(found.values())} instead of {total}; please report this chain")
     return found
+
+
+def _row_sum(matrix: np.ndarray) -> int:
+    return max((sum(entry.sum for entry in row) for row in matrix), default=0)
 
 
 def _names(by: Any) -> tuple[str, ...]:

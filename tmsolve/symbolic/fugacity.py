@@ -159,11 +159,11 @@ def numeric_coefficients(terms: MixedTerms, rates: Sequence[Any]) -> Coefficient
         values = [mp.mpf(0)] * (max(powers[0] for powers in terms) + 1)
         errors = list(values)
         for powers, c in terms.items():
-            exponent = mp.fsum(power * e for power, e in zip(powers[1:], exponents, strict=True))
-            size = mp.exp(-exponent) if exponent else mp.mpf(1)
+            parts = [power * e for power, e in zip(powers[1:], exponents, strict=True)]
+            size = mp.exp(-mp.fsum(parts)) if parts else mp.mpf(1)
             values[powers[0]] += c * size
             # Roundings of the exponent, the exponential, the product and the sum.
-            errors[powers[0]] += abs(c) * size * (abs(exponent) + 8 + len(terms))
+            errors[powers[0]] += abs(c) * size * (mp.fsum(map(abs, parts)) + 8 + len(terms))
         unit = mp.ldexp(1, 2 - mp.mp.prec)
         return values, [error * unit for error in errors]
 

@@ -34,29 +34,29 @@ class Walk:
         Closed by the trace; else by the sum of all entries.
     lows, tops : tuple
         Value of each letter at power 0; highest power it can reach.
-    denominator : int
-        The coefficients of the whole product are larger than the weights by this factor.
+    whole : bool
+        Whether all weights are whole numbers; else the product is a multiple of the sum of weights.
     """
 
     steps: list[tuple[np.ndarray, int]]
     ring: bool
     lows: tuple[Fraction, ...]
     tops: tuple[int, ...]
-    denominator: int
+    whole: bool
 
 
 def make_walk(plan: Plan, cells: int, ring: bool) -> Walk:
     """Return the matrices of all windows of N cells."""
     window = build_window(plan.chain, plan.observables)
     tables = _Tables(plan)
-    steps, lows, tops, denominator = [], [Fraction(0)] * len(plan.letters), [0] * len(plan.letters), 1
+    steps, lows, tops, whole = [], [Fraction(0)] * len(plan.letters), [0] * len(plan.letters), True
     for piece, count in runs(window, cells, ring):
         matrix, low, top, scale = tables.matrix(piece)
         steps.append((matrix, count))
         lows = [a + count * b for a, b in zip(lows, low, strict=True)]
         tops = [a + count * b for a, b in zip(tops, top, strict=True)]
-        denominator *= scale**count
-    return Walk(steps, ring, tuple(lows), tuple(tops), denominator)
+        whole = whole and scale == 1
+    return Walk(steps, ring, tuple(lows), tuple(tops), whole)
 
 
 class _Tables:
