@@ -1,6 +1,7 @@
 """What the user writes: states, terms, observables, chains and points. It computes nothing."""
 
 from .chain import Chain
+from .grids import circle, interval, line, sphere
 from .palettes import colours
 from .point import Point
 from .states import StateSet, clock, ising, occupation, spins
@@ -12,13 +13,17 @@ __all__ = [
     "StateSet",
     "Term",
     "bond",
+    "circle",
     "clock",
     "colours",
     "cos_turns",
     "delta",
+    "interval",
     "ising",
+    "line",
     "occupation",
     "site",
+    "sphere",
     "spins",
     "term",
     "weight",

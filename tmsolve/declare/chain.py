@@ -8,6 +8,7 @@ from types import MappingProxyType
 from typing import Any
 
 from ..errors import DeclarationError, ParameterError, did_you_mean, listing, unknown_parameter
+from .grids import require_warm
 from .point import Point, bind, check_temperature
 from .resolve import resolve_observables, resolve_terms
 from .states import StateSet
@@ -146,6 +147,7 @@ class Chain:
                 raise ParameterError(f"fix takes single numbers, got an array for {name!r}; give arrays to chain.at(…)")
         if "T" in values:
             check_temperature(fixed["T"])
+            require_warm(self.cell, fixed["T"])
         return self._changed(fixed=MappingProxyType(fixed))
 
     def with_states(self, cell: Mapping[str, StateSet]) -> Chain:

@@ -10,6 +10,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from ..errors import ParameterError, did_you_mean, listing, unknown_parameter
+from .grids import require_warm
 from .palettes import require_numbers
 from .values import Value, parse_value
 
@@ -128,6 +129,7 @@ def bind(chain: Chain, values: Mapping[str, Any]) -> Point:
             f"chain.at({', '.join(f'{name}=…' for name in missing)}, …)"
         )
     check_temperature(bound["T"])
+    require_warm(chain.cell, bound["T"])
     return Point(chain, MappingProxyType(bound), _shape(bound))
 
 

@@ -12,7 +12,7 @@ from typing import Any
 from ..errors import DeclarationError
 from .tokens import Colour
 
-__all__ = ["StateSet", "clock", "ising", "occupation", "spins", "whole_count"]
+__all__ = ["StateSet", "clock", "ising", "occupation", "on_grid", "spins", "whole_count"]
 
 #: A local state as stored: numbers exact where they can be, else the user's own object.
 State = Any
@@ -40,6 +40,9 @@ class StateSet:
     number : str or None
         Name of the number of colours where that is a symbol, see `colours`; the values are then
         the special colours and one that stands for all others.
+    grid : str or None
+        The quadrature rule whose nodes the states are, such as ``"circle(64)"``; ``None`` for
+        states that are a list of their own. Values and weights of a grid are floats.
 
     Raises
     ------
@@ -60,6 +63,7 @@ class StateSet:
     labels: tuple[str, ...]
     weights: tuple[Fraction | float, ...]
     values: tuple[State, ...]
+    grid: str | None
 
     def __init__(
         self,
@@ -87,6 +91,7 @@ class StateSet:
         object.__setattr__(self, "labels", _labels(labels, states))
         number = next((value.number for value in states if isinstance(value, Colour)), None)
         object.__setattr__(self, "number", number)
+        object.__setattr__(self, "grid", None)
 
     def __len__(self) -> int:
         return len(self.values)
@@ -112,13 +117,15 @@ class StateSet:
     def index(self, state: State) -> int:
         """Return the position of a state (given as value or as label)."""
         try:
-            return self.values.index(_state(state))
+            return self.values.index(state if self.grid else _state(state))
         except (ValueError, DeclarationError):
             if isinstance(state, str) and state in self.labels:
                 return self.labels.index(state)
         raise DeclarationError(f"{state!r} is not a state of this site; its states are {', '.join(self.labels)}")
 
     def __repr__(self) -> str:
+        if self.grid is not None:
+            return self.grid
         if self.number is not None:
             return (
                 f"colours({self.number!r}, special={self.special!r})" if self.special else f"colours({self.number!r})"
@@ -129,6 +136,17 @@ class StateSet:
         if self.labels != _labels(None, self.values):
             parts.append(f"labels={list(self.labels)}")
         return f"StateSet({', '.join(parts)})"
+
+
+def on_grid(grid: str, values: Sequence[State], weights: Sequence[float], labels: Sequence[str]) -> StateSet:
+    """Return the nodes of a quadrature rule as states, weighted by the rule; all floats."""
+    states = object.__new__(StateSet)
+    parts = {"values": values, "weights": weights, "labels": labels}
+    for name, part in parts.items():
+        object.__setattr__(states, name, tuple(part))
+    object.__setattr__(states, "number", None)
+    object.__setattr__(states, "grid", grid)
+    return states
 
 
 def _state(value: Any) -> State:

@@ -158,7 +158,7 @@ def affine_table(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
 
 
 def _trace(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
-    if term.takes_temperature:
+    if term.takes_temperature or any(one.grid for one in states):
         return None
     tracers = {name: _Tracer(Fraction(0), {name: Fraction(1)}) for name in term.parameters}
     probe = {name: 0.5772156649 + 0.3183098862 * k for k, name in enumerate(term.parameters)}

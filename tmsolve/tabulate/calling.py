@@ -4,7 +4,6 @@ from __future__ import annotations
 
 import math
 from collections.abc import Callable, Mapping, Sequence
-from fractions import Fraction
 from functools import partial
 from itertools import product
 from typing import Any
@@ -13,20 +12,12 @@ import numpy as np
 
 from ..declare import StateSet, Term
 from ..errors import DeclarationError, SolveError, TmsolveError
+from .whole import numeric_state, whole_table
 
 __all__ = ["call_sites", "describe_call", "number_table", "numeric_state", "over_batch"]
 
 #: Sums of such values still fit a double.
 _LARGEST = 1e250
-
-
-def numeric_state(state: Any) -> Any:
-    """Return a state as numeric code expects it: ints stay, fractions become floats."""
-    if isinstance(state, Fraction):
-        return float(state)
-    if isinstance(state, tuple):
-        return tuple(numeric_state(part) for part in state)
-    return state
 
 
 def call_sites(
@@ -68,6 +59,9 @@ def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, An
     """
 
     def tabulate(given: Mapping[str, Any], count: int) -> np.ndarray:
+        whole = whole_table(term, states, given, count)
+        if whole is not None and (term.role != "weight" or (whole >= 0).all()):
+            return whole
         try:
             with np.errstate(all="ignore"):
                 raw = call_sites(term, states, numeric_state, given)

@@ -12,6 +12,7 @@ from ..errors import DeclarationError, NotApplicable, SolveError, TmsolveError
 from ..operators.partitions import Key
 from .calling import call_sites, describe_call, numeric_state, over_batch
 from .jets import Jet, variable
+from .whole import whole_table
 
 __all__ = ["derivative_table"]
 
@@ -38,10 +39,14 @@ def derivative_table(
         jets = dict(given)
         for name in dict.fromkeys(key):
             jets[name] = variable(given[name], [i for i, other in enumerate(key) if other == name])
+        mask = (1 << len(key)) - 1
+        whole = whole_table(term, states, jets, count, lambda entry: _coefficient(term, entry, mask))
+        if whole is not None and np.isfinite(whole).all():
+            return whole
         try:
             with np.errstate(all="ignore"):
                 raw = call_sites(term, states, numeric_state, jets)
-                table = _collect(term, raw, (1 << len(key)) - 1, count)
+                table = _collect(term, raw, mask, count)
         except TmsolveError:
             raise
         except Exception as cause:

@@ -37,7 +37,7 @@ def exact_table(term: Term, states: Sequence[StateSet], values: Mapping[str, Any
     Fraction(-4, 27)
     """
     wanted = {name: values[name] for name in term.parameters}
-    if not all(isinstance(value, Fraction) for value in wanted.values()):
+    if not all(isinstance(value, Fraction) for value in wanted.values()) or any(one.grid for one in states):
         return None
     for name in dict.fromkeys(key):
         wanted[name] = variable(wanted[name], [i for i, other in enumerate(key) if other == name])
