@@ -10,14 +10,14 @@ from typing import Any
 import numpy as np
 
 from ..assemble.matrix import Assembled
-from ..assemble.window import SiteWeights, place_in
+from ..assemble.window import place_in
 from ..declare import Term
 from ..errors import NotApplicable, ParameterError
 from ..observe.segment import Segment
 from ..observe.solution import Solution
-from ..operators.algebras import LogSum, LogTable
-from ..operators.numbers import DOUBLE, to_double
+from ..operators.numbers import to_double
 from .levels import exact_values
+from .masks import check_single, read_value, restricted
 
 __all__ = ["Domains", "domains"]
 
@@ -81,9 +81,9 @@ class Domains:
         with np.errstate(divide="ignore", invalid="ignore"):
             found = self._collect(value, ratio)
         if not np.isfinite(found).all():
+            taken = float(read_value(self.values, self.observable, value))
             raise NotApplicable(
-                f"{self.observable} = {float(self._value(value)):g} has no runs that begin and end: "
-                "the value is never or always taken"
+                f"{self.observable} = {taken:g} has no runs that begin and end: the value is never or always taken"
             )
         return found
 
@@ -113,19 +113,9 @@ class Domains:
         with np.errstate(under="ignore"):
             return np.exp(self.log_probabilities(value, longest))
 
-    def _value(self, value: Any) -> Fraction:
-        try:
-            exact = Fraction(repr(float(value))) if isinstance(value, (float, np.floating)) else Fraction(value)
-        except (TypeError, ValueError):
-            exact = None
-        if exact not in self.values:
-            shown = ", ".join(f"{float(v):g}" for v in self.values)
-            raise ParameterError(f"{self.observable!r} takes the values {shown}, got {value!r}")
-        return exact
-
     @np.errstate(under="ignore")
     def _collect(self, value: Any, compute: Callable[..., np.ndarray], extra: tuple[int, ...] = ()) -> np.ndarray:
-        number = self.values.index(self._value(value))
+        number = self.values.index(read_value(self.values, self.observable, value))
         result = np.zeros((self.solution.point.size, *extra))
         for segment, law, steps in self._segments:
             leave = np.delete(steps, number, axis=0).sum(axis=0)
@@ -160,19 +150,14 @@ def domains(solution: Solution, observable: str) -> Domains:
     """
     if not isinstance(solution, Solution):
         raise ParameterError(f"domains takes a solution, got {solution!r}; make one with solve(chain.at(T=…, …))")
-    parts = solution.point.chain.observable(observable)
-    if len(parts) != 1 or len(parts[0].sites) != 1:
-        raise NotApplicable(
-            f"domains are runs of equal values of one site per cell; {observable!r} has "
-            f"{len(parts)} parts on {', '.join(str(len(part.sites)) for part in parts)} sites. "
-            'Declare one with observables={"a": site(f, "kind")}'
-        )
+    check_single(solution.point.chain, observable)
+    (part,) = solution.point.chain.observable(observable)
     window, segments = solution.laws.resolved((observable,))
     point = solution.point
     assembled = Assembled(window, point.flat(), point.size)
-    table = exact_values(assembled.sites, parts[0], observable)
+    table = exact_values(assembled.sites, part, observable)
     values = tuple(sorted(set(table.flat)))
-    share = _shares(assembled, parts[0], [np.array([v == value for v in table.flat]) for value in values])
+    share = _shares(assembled, part, [np.array([v == value for v in table.flat]) for value in values])
     found = []
     for segment in segments:
         pick = share[:, segment.states[:, None], segment.states][..., segment.indices]
@@ -182,22 +167,16 @@ def domains(solution: Solution, observable: str) -> Domains:
 
 def _shares(assembled: Assembled, part: Term, masks: list[np.ndarray]) -> np.ndarray:
     """Return for each mask the chance that the part's site is in it, given both cuts; (masks, n, n, batch)."""
-    window = assembled.window
-    place = place_in(window, part)
+    place = place_in(assembled.window, part)
     assert place is not None
-    algebra = LogSum(assembled.beta, DOUBLE)
-    tables = [assembled.local_table(factor.source) for factor in window.factors]
     energy, log = assembled.reduced
     found = []
     for mask in masks:
-        only = (place[0], assembled.local_table(SiteWeights(tuple(mask.astype(int)))))
-        kept = window.reduce(algebra, tables, [only])
-        full = (*(window.sizes[s] for s in window.sites), assembled.batch)
-        kept = LogTable(np.broadcast_to(kept.energy, full), np.broadcast_to(kept.log, full))
-        some = window.matrix(kept.log, -np.inf)
+        kept = restricted(assembled, place[0][0], mask)
+        some = kept.log
         there = some != -np.inf
         ratio = np.where(there, some, 0.0) - np.where(there, log, 0.0)
-        ratio = ratio - assembled.beta * np.where(there, window.matrix(kept.energy, 0.0) - energy, 0.0)
+        ratio = ratio - assembled.beta * np.where(there, kept.energy - energy, 0.0)
         found.append(np.where(there, np.exp(ratio), 0.0))
     return np.array(found)
 

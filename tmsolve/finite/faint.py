@@ -21,7 +21,7 @@ from ..operators.product import repeated
 from .steps import Windows
 from .track import Track
 
-__all__ = ["Places", "faint_profile", "faint_value"]
+__all__ = ["Places", "faint_profile", "is_faint", "refined", "scale_of"]
 
 #: Where the parts of an observable sit: (position of the window, name of the quantity).
 Places = list[tuple[int, str]]
@@ -30,6 +30,8 @@ Places = list[tuple[int, str]]
 _LADDER = (192, 512, 1280)
 #: Bits that must remain of the result.
 _KEPT = 64
+#: Means and correlations below this part of the observables' size have lost digits to rounding.
+_FAINT = 1e-3
 #: Multiplications of long numbers that are worth the wait.
 _WORK_LIMIT = 2 * 10**6
 
@@ -71,6 +73,30 @@ def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], want
         if not scale or (abs(found[wanted]) > scale * line.numbers.power_of_two(_KEPT - bits)).all():
             break
     return found.astype(float)
+
+
+def scale_of(track: Track, places: Places) -> np.ndarray:
+    """Return the largest absolute value of an observable's parts, by point."""
+    largest = np.zeros(track.batch)
+    for position, quantity in places:
+        table = track.assembled(position).edge_table((handle("observable", (), quantity),))
+        if table is not None:
+            largest = np.maximum(largest, abs(table).max(axis=(0, 1)))
+    return largest
+
+
+def is_faint(values: np.ndarray, scale: np.ndarray) -> np.ndarray:
+    """Return where values have lost digits to the rounding of what they are differences of."""
+    return np.asarray(abs(values) < _FAINT * scale)
+
+
+def refined(track: Track, near: np.ndarray, faint: np.ndarray, x: Places, y: Places | None = None) -> np.ndarray:
+    """Replace what is lost in rounding by what long numbers give."""
+    result = np.array(near, dtype=float)
+    for point in np.flatnonzero(faint):
+        far = faint_value(track, int(point), x, y)
+        result[point] = result[point] if far is None else far
+    return result
 
 
 class _Line:

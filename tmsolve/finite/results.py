@@ -17,7 +17,8 @@ from ..errors import ParameterError, SolveError, TooLargeError
 from ..observe.correlations import anchors
 from ..observe.evaluate import fits
 from .distribution import Distribution, distribute
-from .faint import Places, faint_profile, faint_value
+from .faint import Places, faint_profile, is_faint, refined, scale_of
+from .finite_domains import FiniteDomains, find_domains
 from .impurities import Impurities, renamed_values, spacious
 from .moments import check_order, moments_of
 from .steps import Ends, Windows
@@ -28,8 +29,6 @@ __all__ = ["FiniteChain"]
 
 #: Longest chain whose cells are all listed.
 _LONGEST_PROFILE = 2 * 10**5
-#: Means and correlations below this part of the observables' size have lost digits to rounding.
-_FAINT = 1e-3
 
 
 @dataclass(frozen=True, eq=False)
@@ -143,6 +142,27 @@ class FiniteChain:
         lowest, step, log = distribute(self._track((a,)), a)
         return Distribution(a, lowest, step, log.reshape((*self.point.shape, log.shape[-1])))
 
+    def domains(self, a: str) -> FiniteDomains:
+        """Numbers and lengths of the domains of an observable: maximal runs of cells in which it keeps its value.
+
+        The domains of the infinite chain, ``domains(solution, a)``, are the limit of long chains.
+
+        Raises
+        ------
+        NotApplicable
+            The observable is not a function of one site per cell.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, ring
+        >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)], observables={"m": lambda s: s})
+        >>> found = ring(chain.at(T=1, J=1), 10**9).domains("m")
+        >>> round(float(found.mean_length(1)), 12)                             # 1 + e², as without ends
+        8.389056098931
+        """
+        self._must_exist()
+        return find_domains(self._track((a,)), a, self.point.shape)
+
     def profile(self, a: str, cells: Sequence[int] | None = None) -> np.ndarray:
         """Mean of an observable in each cell, shape (*batch, N), or in some cells, shape (*batch, cells)."""
         self._must_exist()
@@ -167,7 +187,7 @@ class FiniteChain:
                 cell = self._position(position + anchor)
                 if 0 <= cell < self.cells:
                     values[:, cell] += mean
-        faint = _faint(values, _scale(track, self._places(track, a, self.cells // 2))[:, None])
+        faint = is_faint(values, scale_of(track, self._places(track, a, self.cells // 2))[:, None])
         for point in np.flatnonzero(faint.any(axis=1)):
             far = faint_profile(track, int(point), a, anchors(track.window, a), faint[point])
             if far is not None:
@@ -206,7 +226,7 @@ class FiniteChain:
     def _far(self, track: Track, near: np.ndarray, a: str, b: str, i: int, j: int) -> np.ndarray:
         """Replace correlations that are lost in the rounding of the observables."""
         x, y = self._places(track, a, i), self._places(track, b, j)
-        faint = _faint(near, _scale(track, x) * _scale(track, y))
+        faint = is_faint(near, scale_of(track, x) * scale_of(track, y))
         if self._uniform and faint.any():
             try:
                 far = far_correlation(solve(self.point), self.cells, a, b, (j - i) % self.cells)
@@ -214,7 +234,7 @@ class FiniteChain:
                 far = None
             if far is not None:
                 return np.where(faint, far, near)
-        return _refined(track, near, faint, x, y)
+        return refined(track, near, faint, x, y)
 
     def _pair(self, track: Track, x: tuple[int, str], y: tuple[int, str]) -> np.ndarray:
         marks: dict[int, Mark] = {}
@@ -237,7 +257,7 @@ class FiniteChain:
         for position, quantity in places:
             table = track.marked({position: {"x": handle("observable", (), quantity)}}, ("x",))
             value = value + (table.tilts[("x",)] if ("x",) in table.tilts else 0.0)
-        return self._shaped(_refined(track, value, _faint(value, _scale(track, places)), places))
+        return self._shaped(refined(track, value, is_faint(value, scale_of(track, places)), places))
 
     def _cell(self, cell: Any) -> int:
         if isinstance(cell, bool) or not isinstance(cell, (int, np.integer)) or not 0 <= cell < self.cells:
@@ -268,26 +288,3 @@ class FiniteChain:
             index = int(np.argwhere(~np.isfinite(values))[0][0])
             raise SolveError(f"no configuration of {self.cells} cells is allowed at {self.point.pick(index)}")
         return values.reshape((*self.point.shape, *values.shape[1:]))[()]
-
-
-def _scale(track: Track, places: Places) -> np.ndarray:
-    """Return the largest absolute value of an observable's parts, by point."""
-    largest = np.zeros(track.batch)
-    for position, quantity in places:
-        table = track.assembled(position).edge_table((handle("observable", (), quantity),))
-        if table is not None:
-            largest = np.maximum(largest, abs(table).max(axis=(0, 1)))
-    return largest
-
-
-def _faint(values: np.ndarray, scale: np.ndarray) -> np.ndarray:
-    return np.asarray(abs(values) < _FAINT * scale)
-
-
-def _refined(track: Track, near: np.ndarray, faint: np.ndarray, x: Places, y: Places | None = None) -> np.ndarray:
-    """Replace what is lost in rounding by what long numbers give."""
-    result = np.array(near, dtype=float)
-    for point in np.flatnonzero(faint):
-        far = faint_value(track, int(point), x, y)
-        result[point] = result[point] if far is None else far
-    return result

@@ -8,7 +8,7 @@ twice the length of a double, so that long sums of them do not round either.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass
 from typing import Any
 
@@ -16,9 +16,11 @@ import numpy as np
 
 from ..operators.algebras import LogTable
 
-__all__ = ["Scaled", "add", "from_logs", "log_ratio", "times"]
+__all__ = ["Scaled", "add", "along", "from_logs", "log_ratio", "none", "ratio", "rearranged", "times"]
 
 _LN2 = float(np.log(2.0))
+#: Powers of two that doubles hold.
+_FAR = 1000
 
 
 @dataclass(frozen=True)
@@ -42,6 +44,18 @@ class Scaled:
 
     def __getitem__(self, index: Any) -> Scaled:
         return Scaled(self.mantissa[index], self.exponent[index], self.energy[index], self.rest[index])
+
+
+def rearranged(function: Callable[..., np.ndarray], *tables: Scaled) -> Scaled:
+    """Apply a function that moves entries about to each of the four arrays."""
+    names = ("mantissa", "exponent", "energy", "rest")
+    return Scaled(*(function(*(getattr(table, name) for table in tables)) for name in names))
+
+
+def none(shape: tuple[int, ...]) -> Scaled:
+    """Return zeros."""
+    zero = np.zeros(shape)
+    return Scaled(zero, zero, zero, zero)
 
 
 def from_logs(table: LogTable) -> Scaled:
@@ -90,6 +104,24 @@ def add(parts: Sequence[Scaled], beta: np.ndarray) -> Scaled:
     return _normal(total, largest.exponent, largest.energy, largest.rest)
 
 
+def along(table: Scaled, axis: int, beta: np.ndarray) -> Scaled:
+    """Add along one axis, which is not the last one.
+
+    Examples
+    --------
+    >>> ones = Scaled(np.full((3, 1), 0.5), np.ones((3, 1)), np.full((3, 1), 7.0), np.zeros((3, 1)))
+    >>> total = along(ones, 0, np.array([100.0]))
+    >>> float(total.mantissa[0] * 2 ** total.exponent[0]), float(total.energy[0])
+    (3.0, 7.0)
+    """
+    best = np.expand_dims(_size(table, beta).argmax(axis=axis), axis)
+    parts = np.broadcast_arrays(table.mantissa, table.exponent, table.energy, table.rest)
+    largest = Scaled(*(np.take_along_axis(part, best, axis) for part in parts))
+    terms = table.mantissa * np.exp(np.where(table.mantissa > 0, _distance(table, largest, beta), 0.0))
+    exponent, energy, rest = (np.squeeze(p, axis) for p in (largest.exponent, largest.energy, largest.rest))
+    return _normal(terms.sum(axis=axis), exponent, energy, rest)
+
+
 def _size(part: Scaled, beta: np.ndarray) -> np.ndarray:
     return np.where(part.mantissa > 0, part.exponent * _LN2 - beta * part.energy, -np.inf)
 
@@ -118,3 +150,15 @@ def log_ratio(first: Scaled, second: Scaled, beta: np.ndarray) -> np.ndarray:
     """Return the logarithm of a quotient, −inf where the numerator is 0."""
     with np.errstate(divide="ignore"):
         return np.log(first.mantissa / second.mantissa) + _distance(first, second, beta)
+
+
+def ratio(first: Scaled, second: Scaled, beta: np.ndarray) -> np.ndarray:
+    """Return a quotient as a double; 0 below their range, inf above."""
+    distance = np.where(first.mantissa > 0, _distance(first, second, beta), 0.0)
+    shift = np.where(first.mantissa > 0, first.exponent - second.exponent, 0.0)
+    quotient = first.mantissa / second.mantissa
+    equal = (first.energy == second.energy) & (first.rest == second.rest) & (abs(shift) < _FAR)
+    # Powers of two do not round.
+    exact = np.ldexp(quotient, np.where(equal, shift, 0.0).astype(np.int64))
+    with np.errstate(over="ignore", under="ignore"):
+        return np.where(equal, exact, quotient * np.exp(distance))
