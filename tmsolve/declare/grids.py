@@ -151,7 +151,7 @@ def circle(nodes: int) -> StateSet:
         common = math.gcd(k, count)
         labels.append(f"{k // common}/{count // common} turn" if k else "0")
     return on_grid(
-        f"circle({count})", [2 * math.pi * k / count for k in range(count)], [2 * math.pi / count] * count, labels
+        f"circle({count})", [2 * math.pi * k / count for k in range(count)], [NodeWeight(2 * math.pi / count)] * count, labels
     )
 
 
@@ -190,7 +190,7 @@ def sphere(degree: int, rule: str = "product") -> StateSet:
     labels = [f"({x:.4f},{y:.4f},{z:.4f})" for x, y, z in values]
     if len(set(labels)) < len(labels):
         labels = [str(value) for value in values]
-    return on_grid(f"sphere({least}, {rule!r})", values, [float(w) for w in weights], labels)
+    return on_grid(f"sphere({least}, {rule!r})", values, [NodeWeight(w) for w in weights], labels)
 
 
 def _product_rule(degree: int) -> tuple[np.ndarray, np.ndarray]:
@@ -224,6 +224,26 @@ def _lebedev(degree: int) -> tuple[np.ndarray, np.ndarray]:
     )
 
 
+class NodeWeight(float):
+    """Weight of a quadrature node: a float that refuses to be taken for an exact fraction.
+
+    Exact questions turn the weights of states into fractions, and so none of them mistakes
+    the nodes for the states that the user meant.
+    """
+
+    __slots__ = ()
+
+    def as_integer_ratio(self) -> tuple[int, int]:
+        """Refuse, as every exact conversion comes here.
+
+        Raises
+        ------
+        NotApplicable
+            Always.
+        """
+        raise _inexact("This question", "the states")
+
+
 def require_discrete(cell: Mapping[str, StateSet], what: str) -> None:
     """Refuse an exact question where states are nodes of a quadrature rule.
 
@@ -234,11 +254,15 @@ def require_discrete(cell: Mapping[str, StateSet], what: str) -> None:
     """
     for kind, states in cell.items():
         if states.grid is not None:
-            raise NotApplicable(
-                f"{what} is exact, and the states of kind {kind!r} are not: {states.grid} stands for a continuous "
-                "variable by the nodes of a quadrature rule. Use solve(chain.at(T=…, …)) for numbers, or declare "
-                "discrete states such as clock(q)"
-            )
+            raise _inexact(what, f"{states.grid}, the states of kind {kind!r},")
+
+
+def _inexact(what: str, which: str) -> NotApplicable:
+    return NotApplicable(
+        f"{what} has an exact answer, and continuous states have none: {which} stand for a continuous variable by "
+        "the nodes of a quadrature rule. Use solve(chain.at(T=…, …)) for numbers, or declare discrete states such "
+        "as clock(q)"
+    )
 
 
 def require_warm(cell: Mapping[str, StateSet], temperature: Value) -> None:
@@ -270,7 +294,7 @@ def _numbers(grid: str, where: np.ndarray, weights: np.ndarray) -> StateSet:
             break
     if any(not x < y for x, y in pairwise(values)):
         raise DeclarationError(f"the nodes of {grid} are too close together for doubles; give fewer, or wider ends")
-    return on_grid(grid, values, [float(w) for w in weights], labels)
+    return on_grid(grid, values, [NodeWeight(w) for w in weights], labels)
 
 
 def _finite(what: str, value: Any) -> float:

@@ -102,7 +102,7 @@ class StateSet:
     @property
     def weighted(self) -> bool:
         """Whether any degeneracy differs from 1."""
-        return any(weight != 1 for weight in self.weights)
+        return self.grid is not None or any(weight != 1 for weight in self.weights)
 
     @property
     def count(self) -> str:

@@ -13,6 +13,7 @@ from collections.abc import Mapping
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any
 
+from ..declare.grids import require_discrete
 from ..declare.tokens import Colour, ColourMisuse
 from ..errors import DeclarationError
 from .tracer import Inexact, NotSymbolic, Tracer, unwrap
@@ -47,9 +48,12 @@ def parameter_symbols(chain: Chain) -> dict[str, Any]:
     ------
     DeclarationError
         A free parameter has a name that closed forms need, or a fixed value is not finite.
+    NotApplicable
+        The states are nodes of a quadrature rule.
     """
     import sympy as sp
 
+    require_discrete(chain.cell, "a closed form")
     symbols: dict[str, Any] = {}
     for name in chain.parameters:
         if name in chain.fixed:
