@@ -20,6 +20,7 @@ from ._version import __version__
 if TYPE_CHECKING:
     from . import errors as errors
     from . import models as models
+    from .answer.exported import numpy_function as numpy_function
     from .answer.solve import solve as solve
     from .assemble.describe_chain import describe as describe
     from .declare import Chain as Chain
@@ -58,9 +59,21 @@ if TYPE_CHECKING:
     from .survey.information import fisher_information as fisher_information
     from .survey.isentropes import isentrope as isentrope
     from .survey.run import scan as scan
+    from .symbolic.counting.counts import counts as counts
+    from .symbolic.counting.generating import generating_function as generating_function
+    from .symbolic.counting.limiting import limiting_curve as limiting_curve
+    from .symbolic.counting.zeros import zeros as zeros
+    from .symbolic.decimation.decimate import decimate as decimate
+    from .symbolic.decimation.fixed_points import fixed_points as fixed_points
+    from .symbolic.decimation.flow import flow as flow
+    from .symbolic.decimation.recursion import recursion as recursion
+    from .symbolic.expansion.limits import limits as limits
+    from .symbolic.expansion.series import series as series
+    from .symbolic.export.mathml import mathml as mathml
     from .symbolic.forms import closed_form as closed_form
 
 _HOMES = {
+    "answer.exported": ("numpy_function",),
     "answer.solve": ("solve",),
     "assemble.describe_chain": ("describe",),
     "declare": (
@@ -85,6 +98,17 @@ _HOMES = {
     "survey.information": ("fisher_information",),
     "survey.isentropes": ("isentrope",),
     "survey.run": ("scan",),
+    "symbolic.counting.counts": ("counts",),
+    "symbolic.counting.generating": ("generating_function",),
+    "symbolic.counting.limiting": ("limiting_curve",),
+    "symbolic.counting.zeros": ("zeros",),
+    "symbolic.decimation.decimate": ("decimate",),
+    "symbolic.decimation.fixed_points": ("fixed_points",),
+    "symbolic.decimation.flow": ("flow",),
+    "symbolic.decimation.recursion": ("recursion",),
+    "symbolic.expansion.limits": ("limits",),
+    "symbolic.expansion.series": ("series",),
+    "symbolic.export.mathml": ("mathml",),
     "symbolic.forms": ("closed_form",),
 }  # fmt: skip
 _HOME_OF = {name: home for home, names in _HOMES.items() for name in names}

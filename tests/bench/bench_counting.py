@@ -19,7 +19,7 @@ import sys, time
 if {blocked}: sys.modules["flint"] = None
 else: import flint
 from tmsolve import Chain, bond, ising, site, spins
-from tmsolve.symbolic.counting import counts
+from tmsolve.symbolic.counting.counts import counts
 begun = time.process_time()
 {declare}
 table = {count}

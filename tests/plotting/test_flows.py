@@ -7,7 +7,7 @@ from tests.symbolic.refusing import refuses
 from tmsolve import Chain, bond, ising, site, spins
 from tmsolve.errors import ParameterError
 from tmsolve.plotting.flows import plot_flow
-from tmsolve.symbolic.flow import flow
+from tmsolve.symbolic.decimation.flow import flow
 
 FIELD = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)])
 CAPEL = Chain(spins(1), [bond(lambda s, t, J: -J * s * t), site(lambda s, D: D * s * s)])

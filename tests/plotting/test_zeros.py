@@ -8,8 +8,8 @@ pytest.importorskip("matplotlib")
 from tests.refusal import refused
 from tmsolve import Chain, ParameterError, bond, ising, site, spins
 from tmsolve.plotting.zeros import plot_zeros
-from tmsolve.symbolic.limiting import limiting_curve
-from tmsolve.symbolic.zeros import zeros
+from tmsolve.symbolic.counting.limiting import limiting_curve
+from tmsolve.symbolic.counting.zeros import zeros
 
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)])
 BLUME_CAPEL = Chain(spins(1), [bond(lambda s, t, J: -J * s * t), site(lambda s, D, h: D * s * s - h * s)])

@@ -42,8 +42,8 @@ from tmsolve import (
     site,
     solve,
 )
-from tmsolve.symbolic.colour_check import colour_mismatch, from_symbols, plain_matrix
-from tmsolve.symbolic.colour_matrix import colour_matrix, inserted_colour_matrices
+from tmsolve.symbolic.colours.check import colour_mismatch, from_symbols, plain_matrix
+from tmsolve.symbolic.colours.matrix import colour_matrix, inserted_colour_matrices
 from tmsolve.symbolic.recurrence import ring_sum, trace_of_power
 from tmsolve.symbolic.spectrum import Spectrum
 from tmsolve.tabulate.colours import plain_chain

@@ -11,8 +11,8 @@ import pytest
 from tests.symbolic.refusing import refuses
 from tmsolve import Chain, StateSet, bond, clock, colours, delta, ising, models, occupation, site, solve, spins, weight
 from tmsolve.errors import NotApplicable, ParameterError, TooLargeError
-from tmsolve.symbolic.decimation import decimate
-from tmsolve.symbolic.flow import flow
+from tmsolve.symbolic.decimation.decimate import decimate
+from tmsolve.symbolic.decimation.flow import flow
 
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)], {"m": lambda s: s})
 BEG = models.load("blume_emery_griffiths").chain

@@ -11,7 +11,7 @@ from tests.laws.zoo import ZOO
 from tests.refusal import refused
 from tmsolve import Chain, ParameterError, bond, closed_form, colours, delta, ising, site, spins, weight
 from tmsolve.errors import NotApplicable, SolveError
-from tmsolve.symbolic.generating import generating_function
+from tmsolve.symbolic.counting.generating import generating_function
 from tmsolve.symbolic.open_ends import open_sum
 from tmsolve.symbolic.report import long_sum
 

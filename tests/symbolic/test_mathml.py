@@ -6,8 +6,8 @@ import pytest
 import sympy as sp
 
 from tmsolve import Chain, bond, closed_form, ising, models, site
-from tmsolve.symbolic.mathml import mathml
-from tmsolve.symbolic.recursion import recursion
+from tmsolve.symbolic.decimation.recursion import recursion
+from tmsolve.symbolic.export.mathml import mathml
 
 B = sp.Symbol("beta", positive=True)
 J, h, J2, new = (sp.Symbol(name, real=True) for name in ("J", "h", "J2", "J'"))

@@ -10,8 +10,8 @@ import pytest
 from tests.symbolic.refusing import refuses
 from tmsolve import Chain, bond, closed_form, colours, delta, ising, models, site, solve, spins
 from tmsolve.errors import NotApplicable, ParameterError, SolveError
-from tmsolve.symbolic import numpy_check
-from tmsolve.symbolic.numpy_function import numpy_function, numpy_source
+from tmsolve.symbolic.export import numpy_check
+from tmsolve.symbolic.export.numpy_function import numpy_function, numpy_source
 
 FIELD = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)], {"m": lambda s: s})
 CAPEL = Chain(

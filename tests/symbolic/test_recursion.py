@@ -9,9 +9,9 @@ import sympy as sp
 from tests.symbolic.refusing import refuses
 from tmsolve import Chain, StateSet, bond, colours, delta, ising, models, site, spins, weight
 from tmsolve.errors import DeclarationError, NotApplicable, ParameterError, TooLargeError
-from tmsolve.symbolic.decimation import decimate
-from tmsolve.symbolic.fixed_points import fixed_points
-from tmsolve.symbolic.recursion import recursion
+from tmsolve.symbolic.decimation.decimate import decimate
+from tmsolve.symbolic.decimation.fixed_points import fixed_points
+from tmsolve.symbolic.decimation.recursion import recursion
 
 BETA = sp.Symbol("beta", positive=True)
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t)])

@@ -38,7 +38,7 @@ from tmsolve import (
     solve,
     weight,
 )
-from tmsolve.symbolic.series import series
+from tmsolve.symbolic.expansion.series import series
 
 BETA = symbol("beta")
 ANIMALS = {animal.name: animal for animal in ZOO}

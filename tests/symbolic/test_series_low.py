@@ -23,16 +23,16 @@ from tests.symbolic.evaluation import (
     symbol,
 )
 from tmsolve import Chain, NotApplicable, StateSet, bond, ground_state, ising, occupation, site, solve, spins
+from tmsolve.symbolic.expansion.balance import balanced_classes, counted_steps
+from tmsolve.symbolic.expansion.laurent import Laurent
+from tmsolve.symbolic.expansion.low import _numbers, _simple
+from tmsolve.symbolic.expansion.matrix import Constants, exponential_matrix
+from tmsolve.symbolic.expansion.numbers import largest_real_root, rationals
+from tmsolve.symbolic.expansion.puiseux import Branch
+from tmsolve.symbolic.expansion.root import leading_root
+from tmsolve.symbolic.expansion.series import series
+from tmsolve.symbolic.expansion.tied import tied_series
 from tmsolve.symbolic.matrix import symbolic_matrix
-from tmsolve.symbolic.series import series
-from tmsolve.symbolic.series_balance import balanced_classes, counted_steps
-from tmsolve.symbolic.series_laurent import Laurent
-from tmsolve.symbolic.series_low import _numbers, _simple
-from tmsolve.symbolic.series_matrix import Constants, exponential_matrix
-from tmsolve.symbolic.series_numbers import largest_real_root, rationals
-from tmsolve.symbolic.series_puiseux import Branch
-from tmsolve.symbolic.series_root import leading_root
-from tmsolve.symbolic.series_tied import tied_series
 from tmsolve.symbolic.verify import numeric_matrix
 from tmsolve.tabulate.symbolic import parameter_symbols, symbolic_table
 

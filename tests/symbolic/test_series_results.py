@@ -24,8 +24,8 @@ from tmsolve import (
     site,
     solve,
 )
-from tmsolve.symbolic.series import series
-from tmsolve.symbolic.series_limits import limits
+from tmsolve.symbolic.expansion.limits import limits
+from tmsolve.symbolic.expansion.series import series
 
 BETA, J, H = symbol("beta"), symbol("J"), symbol("h")
 

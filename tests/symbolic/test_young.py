@@ -6,7 +6,7 @@ import numpy as np
 import pytest
 import sympy as sp
 
-from tmsolve.symbolic.young import dimension, dimension_in, representation, shapes
+from tmsolve.symbolic.colours.young import dimension, dimension_in, representation, shapes
 
 
 @pytest.mark.parametrize("k", range(5))

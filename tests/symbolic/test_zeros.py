@@ -30,11 +30,11 @@ from tmsolve import (
     weight,
 )
 from tmsolve.errors import NotApplicable
-from tmsolve.symbolic.certified import certified_roots
+from tmsolve.symbolic.counting.certified import certified_roots
+from tmsolve.symbolic.counting.limiting import limiting_curve
+from tmsolve.symbolic.counting.squarefree import square_free_parts
+from tmsolve.symbolic.counting.zeros import zeros
 from tmsolve.symbolic.deadline import TimeUp
-from tmsolve.symbolic.limiting import limiting_curve
-from tmsolve.symbolic.squarefree import square_free_parts
-from tmsolve.symbolic.zeros import zeros
 
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)])
 BLUME_CAPEL = Chain(spins(1), [bond(lambda s, t, J: -J * s * t), site(lambda s, D, h: D * s * s - h * s)])
@@ -296,13 +296,13 @@ def test_a_curve_is_kept_when_the_time_is_over_before_its_edges(monkeypatch):
     def late(*_):
         raise TimeUp
 
-    monkeypatch.setattr("tmsolve.symbolic.limiting._edges", late)
+    monkeypatch.setattr("tmsolve.symbolic.counting.limiting._edges", late)
     curve = limiting_curve(ISING.fix(J=1, T=1), points=8)
     assert len(curve.points) == 16 and not curve.has_edges and repr(curve).endswith("16 points, edges not known>")
     refused(NotApplicable, lambda: curve.discriminant, "not found within the time limit")
 
 
 def test_too_many_eigenvalues(monkeypatch):
-    monkeypatch.setattr("tmsolve.symbolic.limiting._LARGEST", 2)
+    monkeypatch.setattr("tmsolve.symbolic.counting.limiting._LARGEST", 2)
     error = refused(TooLargeError, lambda: limiting_curve(BLUME_CAPEL.fix(J=1, D=1, T=1)), "at most 2", "has 3")
     assert error.limit == 2

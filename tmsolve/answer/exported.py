@@ -5,7 +5,7 @@ from __future__ import annotations
 from typing import Any
 
 from ..symbolic.closed import ClosedForm
-from ..symbolic.numpy_function import numpy_function as written
+from ..symbolic.export.numpy_function import numpy_function as written
 from .solve import solve
 
 __all__ = ["numpy_function"]

@@ -76,32 +76,32 @@ class Derivation:
 
     def series(self, name: str) -> Any:
         """Expand a quantity."""
-        from ..symbolic.series import series
+        from ..symbolic.expansion.series import series
 
         return series(self.chain, self.order, self.about, name, time_limit=self.seconds)
 
     def limits(self) -> Any:
         """Return limits and leading corrections at both ends of the temperatures."""
-        from ..symbolic.series_limits import limits
+        from ..symbolic.expansion.limits import limits
 
         return limits(self.chain, time_limit=self.seconds)
 
     def counts(self, names: tuple[str, ...]) -> Any:
         """Count configurations by energy or observables."""
-        from ..symbolic.counting import counts
+        from ..symbolic.counting.counts import counts
 
         return counts(self.chain, self.length("counts"), names or ("energy",), self.boundary, time_limit=self.seconds)
 
     def zeros(self, variable: str) -> Any:
         """Find the zeros of Z_N in the complex plane."""
-        from ..symbolic.zeros import zeros
+        from ..symbolic.counting.zeros import zeros
 
         return zeros(self.chain, self.length("zeros"), variable, self.boundary, time_limit=self.seconds)
 
     def limiting_curve(self, variable: str) -> Any:
         """Return the curve on which zeros of long chains lie, or nothing where it cannot be traced."""
         from ..errors import TmsolveError
-        from ..symbolic.limiting import limiting_curve
+        from ..symbolic.counting.limiting import limiting_curve
 
         try:
             return limiting_curve(self.chain, variable, time_limit=self.seconds)
@@ -110,7 +110,7 @@ class Derivation:
 
     def generating_function(self) -> Any:
         """Return the sum of Z_N xᴺ as a rational function of x."""
-        from ..symbolic.generating import generating_function
+        from ..symbolic.counting.generating import generating_function
 
         return generating_function(self.form, "x", self.boundary)
 

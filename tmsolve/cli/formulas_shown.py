@@ -129,7 +129,7 @@ def _long(number: Any) -> str:
 
 def as_mathml(formula: Formula, value: Any, work: Derivation) -> str:
     """Return a formula as a MathML element."""
-    from ..symbolic.mathml import mathml
+    from ..symbolic.export.mathml import mathml
 
     if not hasattr(value, "free_symbols"):
         raise UsageError(f"--mathml writes single formulas; {formula.name} is none. Use --latex or --json")

@@ -1,7 +1,8 @@
-"""Figures of grids, gap spectra, events and zeros (extra ``plot``); functions return Axes and show nothing."""
+"""Figures of grids, gap spectra, events, zeros and flows (extra ``plot``); functions return Axes and show nothing."""
 
 from .events import plot_events
 from .files import check_figure_path, save_figure
+from .flows import plot_flow
 from .gaps import plot_gaps
 from .lines import plot_lines
 from .maps import plot_map
@@ -11,6 +12,7 @@ from .zeros import plot_zeros
 __all__ = [
     "check_figure_path",
     "plot_events",
+    "plot_flow",
     "plot_gaps",
     "plot_lines",
     "plot_map",

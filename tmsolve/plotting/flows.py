@@ -9,7 +9,7 @@ import numpy as np
 
 from .._optional import require
 from ..errors import ParameterError
-from ..symbolic.flow import Flow
+from ..symbolic.decimation.flow import Flow
 from .labels import symbol_text
 from .style import COLOURS, axes_for, finish, rc
 
@@ -31,7 +31,7 @@ def plot_flow(
     Parameters
     ----------
     flow : Flow or sequence of Flow
-        Made by `tmsolve.symbolic.flow.flow`.
+        Made by `tmsolve.symbolic.decimation.flow.flow`.
     x, y : str, optional
         Couplings, such as ``"J"`` or one of the missing ``"s**2*s'**2"``; the first two that move when left
         out. Without a second one, the steps are the horizontal axis.
@@ -54,7 +54,7 @@ def plot_flow(
     Examples
     --------
     >>> from tmsolve import Chain, bond, ising, site
-    >>> from tmsolve.symbolic.flow import flow
+    >>> from tmsolve.symbolic.decimation.flow import flow
     >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t), site(lambda s, h: -h*s)])
     >>> ax = plot_flow(flow(chain.at(T=1, J=[1, 2], h=0.1)))
     >>> ax.get_xlabel(), ax.get_ylabel()

@@ -8,9 +8,9 @@ from typing import Any
 import numpy as np
 
 from ..errors import ParameterError
-from ..symbolic.fugacity import Fugacity
-from ..symbolic.limiting import LimitingCurve
-from ..symbolic.zeros import Zeros
+from ..symbolic.counting.fugacity import Fugacity
+from ..symbolic.counting.limiting import LimitingCurve
+from ..symbolic.counting.zeros import Zeros
 from .style import COLOURS, axes_for, finish, rc
 
 __all__ = ["plot_zeros"]
@@ -47,7 +47,7 @@ def plot_zeros(zeros: Zeros, curve: LimitingCurve | None = None, *, circle: bool
     Examples
     --------
     >>> from tmsolve import Chain, bond, ising, site
-    >>> from tmsolve.symbolic.zeros import zeros
+    >>> from tmsolve.symbolic.counting.zeros import zeros
     >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t), site(lambda s, h: -h*s)])
     >>> ax = plot_zeros(zeros(chain.fix(J=1, T=2), 8))
     >>> ax.get_xlabel(), ax.get_title()

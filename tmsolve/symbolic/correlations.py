@@ -13,7 +13,7 @@ from typing import Any
 from ..declare.chain import Chain
 from ..errors import NotApplicable, SolveError
 from ..tabulate.colours import numbers_of_colours
-from .colour_matrix import inserted_colour_matrices
+from .colours.matrix import inserted_colour_matrices
 from .correlation_modes import Modes
 from .correlation_values import PerronTrace
 from .deadline import Clock, limited

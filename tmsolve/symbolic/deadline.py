@@ -16,6 +16,8 @@ Result = TypeVar("Result")
 
 #: Seconds between two interruptions of a computation that did not stop at the first.
 _REPEAT = 0.25
+#: Functions in which an exception is printed and lost: destructors and what the garbage collector calls.
+_QUIET = ("__del__", "_remove", "gc_callback")
 
 
 class TimeUp(BaseException):
@@ -95,7 +97,7 @@ class _AlarmClock:
         # Not while the timer is being set or turned off, or it would go on ringing; and not in a
         # destructor, where the exception would be printed and lost. It rings again soon.
         own = (_AlarmClock.start.__code__, _AlarmClock.stop.__code__)
-        if frame is None or (frame.f_code not in own and frame.f_code.co_name not in ("__del__", "_remove")):
+        if frame is None or (frame.f_code not in own and frame.f_code.co_name not in _QUIET):
             raise TimeUp
 
     def stop(self) -> None:

@@ -8,8 +8,8 @@ from ..declare.chain import Chain
 from ..errors import ParameterError, SolveError, TooLargeError
 from ..tabulate.colours import numbers_of_colours
 from .closed import ClosedForm
-from .colour_check import colour_mismatch
-from .colour_matrix import ColourMatrix, colour_matrix
+from .colours.check import colour_mismatch
+from .colours.matrix import ColourMatrix, colour_matrix
 from .deadline import Clock, TimeUp, limited
 from .matrix import SymbolicMatrix, symbolic_matrix
 from .perron import ordered_eigenvalues, perron_of

@@ -15,7 +15,7 @@ import numpy as np
 from ..assemble.window import ChainWindow
 from ..declare.chain import Chain
 from .alphabet import Laurent
-from .colour_matrix import ColourMatrix, colour_pieces
+from .colours.matrix import ColourMatrix, colour_pieces
 from .matrix import SymbolicMatrix, piece_matrices
 from .pieces import runs
 

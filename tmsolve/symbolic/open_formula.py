@@ -8,7 +8,7 @@ from typing import Any
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable, SolveError
-from .colour_matrix import ColourMatrix
+from .colours.matrix import ColourMatrix
 from .field import Element, RootField
 from .field_text import FieldWriter
 from .open_ends import OpenProduct, open_sum

@@ -8,7 +8,7 @@ import numpy as np
 
 from .alphabet import Laurent
 from .blocks import Block
-from .colour_matrix import ColourMatrix
+from .colours.matrix import ColourMatrix
 from .polynomials import Coefficients, power_sums
 from .spectrum import Factor, Spectrum
 

@@ -6,7 +6,7 @@ from typing import TYPE_CHECKING, Any
 
 from ..errors import NotApplicable
 from .alphabet import Laurent
-from .colour_matrix import ColourMatrix
+from .colours.matrix import ColourMatrix
 from .multiplicity import factor_text
 from .perron import eigenvalue_symbol
 from .plain import latex_text, plain_text

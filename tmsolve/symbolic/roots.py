@@ -14,7 +14,7 @@ from typing import Any
 import numpy as np
 
 from .alphabet import Laurent
-from .colour_matrix import ColourMatrix
+from .colours.matrix import ColourMatrix
 from .formula import Draft, power, product, root, total
 from .matrix import SymbolicMatrix
 from .polynomials import Coefficients

@@ -20,7 +20,7 @@ from ..declare.chain import Chain
 from ..symmetry.refine import class_members, equitable
 from ..tabulate.colours import numbers_of_colours
 from .blocks import Block, components
-from .colour_matrix import ColourMatrix, tilted_colour_matrix
+from .colours.matrix import ColourMatrix, tilted_colour_matrix
 from .field import Element, Poly, RootField, derivative
 from .field_text import FieldWriter
 from .jet import Jet

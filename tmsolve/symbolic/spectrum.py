@@ -14,7 +14,7 @@ import numpy as np
 
 from ..errors import NotApplicable
 from .blocks import Block, merged, split
-from .colour_matrix import ColourMatrix
+from .colours.matrix import ColourMatrix
 from .deadline import Clock, TimeUp, limited
 from .matrix import SymbolicMatrix
 from .multiplicity import both

@@ -1,0 +1,1 @@
+"""Exact numbers of configurations, generating functions, and zeros of partition functions."""

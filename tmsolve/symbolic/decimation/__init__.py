@@ -1,0 +1,1 @@
+"""Decimation: renormalised energies, recursion relations, fixed points and flows."""

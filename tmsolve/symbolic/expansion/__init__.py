@@ -1,0 +1,1 @@
+"""Exact series at high and low temperature, and limits."""

@@ -1,0 +1,1 @@
+"""Formulas for other programs: NumPy functions with their source, MathML."""
