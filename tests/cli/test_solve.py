@@ -179,3 +179,45 @@ def test_many_digits_are_computed_with_longer_numbers(tm):
     document = tm(*words, "--digits", "32", "--json").json
     assert document["decimals"] == {"free_energy": "-0.96334521596866038170478607917775"}
     assert "decimals" not in tm(*words, "--json").json
+
+
+def test_numbers_print_with_the_digits_they_are_known_to(tm):
+    """A field-free chain has no magnetisation: its mean prints as 0, not as what rounding leaves."""
+    out = tm("solve", "blume_capel", "-p", "T=1").out
+    row = next(line.split() for line in out.splitlines() if line.startswith("mean(m)"))
+    assert row[2] == "0"
+    document = tm("solve", "blume_capel", "-p", "T=1", "--json").json
+    assert abs(document["results"]["mean(m)"]) <= document["errors"]["mean(m)"] < 1e-12
+    assert set(document["errors"]) == set(document["results"])
+
+
+def test_digits_asked_for_are_computed(tm):
+    """f = −T ln 2cosh(J/T) with J = 1, T = 0.8: fifteen digits are more than doubles are sure of."""
+    import mpmath
+
+    words = ("solve", "ising", "-p", "h=0", "-p", "T=0.8", "--read", "free_energy,mean(m)", "--digits", "15")
+    ended = tm(*words)
+    with mpmath.workdps(40):
+        exact = -mpmath.log(2 * mpmath.cosh(mpmath.mpf(10) / 8)) * 8 / 10
+    assert f" {mpmath.nstr(exact, 15)} " in ended.out
+    assert "solved in numbers of 128 bits" in ended.out
+    assert "double precision" in tm(*words[:-3], "free_energy", "--digits", "8").out
+
+
+def test_a_matrix_too_large_for_longer_numbers_prints_what_is_known(tm, write, monkeypatch):
+    monkeypatch.setattr("tmsolve.answer.classes.flint_module", lambda: None)
+    path = write(
+        "from tmsolve import Chain, bond, spins\n"
+        "CHAIN = Chain(spins(3), [bond(lambda s, t, J: -J*s*t/9), bond(lambda s, t, K: -K*s*t/9, shift=2)])\n"
+        "DEFAULTS = {'J': 1, 'K': 0.45, 'T': 1}\n"
+    )
+    ended = tm("solve", path, "--read", "free_energy", "--digits", "17")
+    assert ended.code == 0 and "double precision" in ended.out
+    row = next(line.split() for line in ended.out.splitlines() if line.startswith("free_energy"))
+    assert 10 <= len(row[2].strip("-0").replace(".", "")) < 17
+
+
+def test_help_says_how_digits_are_chosen(tm):
+    text = " ".join(tm("solve", "--help").out.split())
+    assert "digits they are known to" in text and 'bounds on their errors under "errors"' in text
+    assert "computed with longer numbers where needed" in text

@@ -33,6 +33,10 @@ def make_segment(
             memory.append(ratios(pair, part.numbers))
         return memory[0]
 
+    def input_error() -> np.ndarray:
+        # Long numbers are chosen so long that it does not count.
+        return np.zeros(local.size) if part.numbers.exact_exponent else chosen.error(tied=False)[local]
+
     law = DoobLaw(pair, tables, part.numbers)
 
     def entropy() -> np.ndarray:
@@ -54,6 +58,8 @@ def make_segment(
         edge_table=tables,
         spectrum=spectrum,
         other_classes=others,
+        largest_cost=gauge.cost.max(axis=(0, 1)),
+        input_error=input_error,
     )
 
 

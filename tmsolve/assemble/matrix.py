@@ -23,6 +23,8 @@ __all__ = ["Assembled", "Gauge", "handle"]
 def handle(kind: str, key: Key = (), name: str = "") -> str:
     """Name a quantity for the law: energy, log weight or observable, differentiated by ``key``.
 
+    ``"absolute"`` stands for the absolute values of an observable's terms: the size of what its mean is a sum of.
+
     An observable's name may carry ``@cell``: only the parts whose copy in the window is
     anchored at that cell.
 
@@ -201,7 +203,7 @@ class Assembled:
         kind, observable, key_text = name.split("|")
         key: Key = tuple(filter(None, key_text.split(",")))
         found: list[tuple[int | None, Any, np.ndarray]] = []
-        if kind == "observable":
+        if kind in ("observable", "absolute"):
             wanted, _, anchor = observable.partition("@")
             for term in self.chain.observable(wanted):
                 place = place_in(self.window, term)
@@ -209,7 +211,7 @@ class Assembled:
                     continue
                 table = self.sites.table(term, key)
                 if table is not None and anchor in ("", str(place[1])):
-                    found.append((None, place[0], table))
+                    found.append((None, place[0], np.abs(table) if kind == "absolute" else table))
             return found
         for index, factor in enumerate(self.window.factors):
             term = factor.source

@@ -40,9 +40,9 @@ def energy_lines(model: LoadedModel) -> list[str]:
     return next((part.splitlines() for part in paragraphs if " = " in part.splitlines()[0]), [])
 
 
-def reading_table(found: Mapping[Reading, float], digits: int) -> str:
-    """Return readings with symbol, value and unit."""
-    rows = [[r.name, r.symbol, Number(number_text(value, digits)), r.unit] for r, value in found.items()]
+def reading_table(found: Mapping[Reading, float], digits: int, errors: Mapping[Reading, float]) -> str:
+    """Return readings with symbol, value to the digits that are known, and unit."""
+    rows = [[r.name, r.symbol, Number(number_text(value, digits, errors[r])), r.unit] for r, value in found.items()]
     return table(rows, ["quantity", "symbol", "value", "unit"])
 
 

@@ -6,7 +6,7 @@ import argparse
 import sys
 from typing import TYPE_CHECKING, Any
 
-from ..errors import SolveError, TmsolveError
+from ..errors import SolveError, TmsolveError, TooLargeError
 from .files import check_output
 from .jsontext import json_text
 from .layout import heading, level_table, matrix_line, reading_table
@@ -14,7 +14,7 @@ from .model import Values, fill, given_values, load_model, readings_of
 from .options import add_common, add_digits, add_model, add_out, add_read, digits_of
 from .outcome import DONE, SOME_FAILED
 from .parser import Parser
-from .table import number_text
+from .table import known_digits, number_text
 from .words import split_names, whole
 
 if TYPE_CHECKING:
@@ -23,7 +23,11 @@ if TYPE_CHECKING:
     from ..observe.solution import Solution
 
 OPERANDS = "MODEL"
-DESCRIPTION = "Solve an infinite chain at one point: thermodynamics per cell, correlations, eigenvalues."
+DESCRIPTION = """\
+Solve an infinite chain at one point: thermodynamics per cell, correlations, eigenvalues. Numbers print
+with the digits they are known to, and as 0 where they do not exceed their error; the JSON document holds
+them in full, with bounds on their errors under "errors". Lengths, wave numbers, gaps and eigenvalues
+remain doubles, known to about eleven digits."""
 EXAMPLES = """\
   tmsolve solve ising -p T=0.5
   tmsolve solve potts --option q=5 -p T=0.7 --json
@@ -34,6 +38,8 @@ EXAMPLES = """\
 
 #: How many eigenvalues are shown.
 LEVELS = 8
+#: To how many digits eigenvalues are known; they remain doubles.
+LEVEL_DIGITS = 12
 #: How many digits may be asked for.
 MOST_DIGITS = 1000
 
@@ -47,7 +53,8 @@ def configure(parser: Parser) -> None:
         metavar="N",
         help=f"how many different eigenvalues are shown; 0 for none. Default: {LEVELS}, none with --read",
     )
-    add_digits(parser, highest=MOST_DIGITS)
+    default = "10 in tables, fewer where fewer are known; asked for, they are computed with longer numbers where needed"
+    add_digits(parser, default, MOST_DIGITS)
     add_out(parser, "also write the JSON document to this file, ending in .json")
     add_common(parser)
 
@@ -61,24 +68,20 @@ def run(arguments: argparse.Namespace) -> int:
     readings = readings_of(split_names(arguments.read, "--read") or _everything(model), model)
     levels = _levels(arguments)
 
-    from ..answer.solve import solve
-
-    # Doubles hold 17 digits; beyond them the numbers themselves must be longer.
-    solution = solve(model.chain.at(**values.numbers), digits=digits if digits > 17 else None)
-    digits = digits if digits <= 17 else 15  # of what remains a double; long numbers know their own
-    found, failures = _evaluate(solution, readings)
+    solution, found, errors, failures = _solve(model, values, readings, digits, arguments.digits is not None)
+    digits = min(digits, 17)  # of what remains a double; long numbers know their own
     # At T = 0 eigenvalues have no finite logarithm; the gap above is the limit of their ratio.
     spectrum = _spectrum(solution, levels if solution.point.T else 0, failures)
     if failures and not found:
         raise SolveError(next(iter(failures.values())))
-    document = _document(model, values, solution, found, spectrum, failures)
+    document = _document(model, values, solution, found, errors, spectrum, failures)
     if out is not None:
         out.write_text(json_text(document) + "\n", encoding="utf-8")
     if arguments.json:
         print(json_text(document))
     else:
-        parts = [heading(model, values), reading_table(found, digits), matrix_line(document)]
-        parts += [level_table(spectrum, digits)] if spectrum else []
+        parts = [heading(model, values), reading_table(found, digits, errors), matrix_line(document)]
+        parts += [level_table(spectrum, min(digits, LEVEL_DIGITS))] if spectrum else []
         parts += ["\n".join(solution.notes)] if solution.notes else []
         print("\n\n".join(parts))
         for name, why in failures.items():
@@ -104,16 +107,44 @@ def _levels(arguments: argparse.Namespace) -> int:
     return whole(arguments.levels, "--levels", 0)
 
 
-def _evaluate(solution: Solution, readings: list[Reading]) -> tuple[dict[Reading, Any], dict[str, str]]:
-    """Return what could be computed, and why the rest could not."""
+def _solve(
+    model: LoadedModel, values: Values, readings: list[Reading], digits: int, asked: bool
+) -> tuple[Solution, dict[Reading, Any], dict[Reading, float], dict[str, str]]:
+    """Return solution, readings, their errors and failures; with longer numbers where doubles know too few digits."""
+    from ..answer.solve import solve
+    from ..observe.known import is_derivative
+
+    point = model.chain.at(**values.numbers)
+    # Doubles hold 17 digits; beyond them the numbers themselves must be longer.
+    solution = solve(point, digits=digits if digits > 17 else None)
+    found, errors, failures = _evaluate(solution, readings)
+    short = any(known_digits(value, errors[r]) < digits for r, value in found.items() if is_derivative(r.name))
+    if asked and digits <= 17 and short:
+        try:
+            longer = solve(point, digits=digits)
+        except TooLargeError:  # the table then shows what is known
+            return solution, found, errors, failures
+        return longer, *_evaluate(longer, readings)
+    return solution, found, errors, failures
+
+
+def _evaluate(
+    solution: Solution, readings: list[Reading]
+) -> tuple[dict[Reading, Any], dict[Reading, float], dict[str, str]]:
+    """Return what could be computed, how well it is known, and why the rest could not."""
+    from ..observe.known import known_error
+
     found: dict[Reading, Any] = {}
+    errors: dict[Reading, float] = {}
     failures: dict[str, str] = {}
     for reading in readings:
         try:
-            found[reading] = reading.evaluate(solution)[()]
+            value = reading.evaluate(solution)[()]
+            errors[reading] = float(known_error(solution, reading.name))
+            found[reading] = value
         except TmsolveError as error:
             failures[reading.name] = str(error)
-    return found, failures
+    return found, errors, failures
 
 
 def _spectrum(solution: Solution, levels: int, failures: dict[str, str]) -> list[dict[str, Any]]:
@@ -140,7 +171,8 @@ def _document(
     model: LoadedModel,
     values: Values,
     solution: Solution,
-    found: dict[Reading, float],
+    found: dict[Reading, Any],
+    errors: dict[Reading, float],
     spectrum: list[dict[str, Any]],
     failures: dict[str, str],
 ) -> dict[str, Any]:
@@ -155,6 +187,7 @@ def _document(
         "options": dict(model.options),
         **values.document(),
         "results": {reading.name: float(value) for reading, value in found.items()},
+        "errors": {reading.name: errors[reading] for reading in found},
         **({"decimals": decimals} if decimals else {}),
         "units": {reading.name: reading.unit for reading in found},
         "eigenvalues": spectrum,

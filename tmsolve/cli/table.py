@@ -7,23 +7,57 @@ from collections.abc import Sequence
 from fractions import Fraction
 from typing import Any
 
-__all__ = ["Number", "number_text", "show_exact", "table"]
+#: An error that goes without saying.
+_TINY = 1e-6
+
+__all__ = ["Number", "known_digits", "number_text", "show_exact", "table"]
 
 
-def number_text(value: Any, digits: int) -> str:
-    """Return a number with so many significant digits.
+def number_text(value: Any, digits: int, error: float = 0.0) -> str:
+    """Return a number with so many significant digits, or with those that an error leaves.
+
+    A number that does not exceed its error is written 0, with the error where that is not tiny,
+    and ? where there is no bound on it.
 
     Examples
     --------
     >>> number_text(1/3, 5), number_text(0.5, 5), number_text(float("inf"), 5), number_text(-0.0, 5)
     ('0.33333', '0.5', 'inf', '0')
+    >>> number_text(1/3, 5, 2e-4), number_text(-2.5e-16, 5, 1e-15)
+    ('0.333', '0')
     """
+    if abs(value) <= error < math.inf:
+        return "0" if error < _TINY else f"0 +- {error:.1g}"
+    if error == math.inf and abs(value) < math.inf:
+        return "?"
     if hasattr(value, "_mpf_"):  # a long number prints the digits it was computed to
-        return str(value)
+        return str(value) if known_digits(value, error) >= value.context.dps else _shortened(value, error)
     number = float(value)
     if not math.isfinite(number):
         return str(number)
-    return f"{number + 0.0:.{digits}g}"
+    return f"{number + 0.0:.{max(1, min(digits, known_digits(number, error)))}g}"
+
+
+def _shortened(value: Any, error: float) -> str:
+    return str(value.context.nstr(value, int(max(1, known_digits(value, error)))))
+
+
+def known_digits(value: Any, error: float) -> int | float:
+    """Return how many significant digits of a number an error leaves, 0 where it leaves none.
+
+    Examples
+    --------
+    >>> known_digits(1/3, 2e-4), known_digits(2.0, 3.0), known_digits(1.0, 0.0)
+    (3, 0, inf)
+    """
+    size = abs(value)
+    if not error or size == math.inf:
+        return math.inf
+    if size <= error:
+        return 0
+    # Long numbers may be outside the range of doubles.
+    quotient = size / error
+    return max(0, math.floor(math.log10(quotient) if quotient < 1e300 else 300))
 
 
 def show_exact(value: Any) -> str:

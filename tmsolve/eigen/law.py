@@ -131,6 +131,23 @@ class DoobLaw:
         relative = (table - reference[:, None]) + (slope[None] - onward[:, None])
         return relative - (chance * relative).sum(axis=1)[:, None]
 
+    def centred_error(self, name: str, unit: float) -> np.ndarray:
+        """Bound what rounding by ``unit`` does to the centred table of a quantity: its mean square, shape (batch,).
+
+        Along the likeliest steps, from which differences are formed, only what is rare adds to it.
+        """
+        given, chance = self.tables((name,)), self.pair.chance
+        if given is None:
+            return self.stationary[0] * 0
+        full = np.abs(np.broadcast_to(given, chance.shape))
+        source = (chance * full).sum(axis=1)
+        slope = self.pair.reduction.reach((source + (self.stationary * source).sum(axis=0)) * unit)
+        rows, points = np.arange(len(chance))[:, None], np.arange(chance.shape[-1])
+        doubt = unit * (full + full[rows, self._likeliest, points][:, None]) + slope
+        doubt[rows, self._likeliest, points] = self.numbers.scalar(0)
+        doubt = doubt + (chance * doubt).sum(axis=1)[:, None]
+        return self.average(doubt * doubt)
+
     @cached_property
     def _likeliest(self) -> np.ndarray:
         """The likeliest step out of each state, shape (n, batch)."""

@@ -9,6 +9,7 @@ import numpy as np
 
 from ..assemble.allowed import allowed_entries
 from .evaluate import Laws
+from .rounding import rounding_bounds
 from .series import Series
 
 __all__ = ["diagnose", "error_bounds"]
@@ -18,8 +19,8 @@ def error_bounds(laws: Laws, series: Series) -> np.ndarray:
     """Return bounds on the error of a sum of cumulants, shape (size,).
 
     It is evaluated again with longer numbers, whose own error is negligible; the bound is
-    twice the difference plus rounding. Where the matrix is too large for that, it is the
-    rounding bound of the Perron vector times the size of all terms.
+    twice the difference plus rounding. Where the matrix is too large for that, rounding is
+    propagated from parameters and Perron vector instead.
     """
     value = laws.evaluate(series)
     if laws.sharper is not None:
@@ -28,8 +29,7 @@ def error_bounds(laws: Laws, series: Series) -> np.ndarray:
         with np.errstate(invalid="ignore"):
             bound = np.where(value == better, 0, 2 * np.abs(value - better))
         return np.asarray(bound + np.where(np.abs(better) < np.inf, rounding * np.abs(better), 0), dtype=np.float64)
-    error = np.ravel(diagnose(laws)["vector_error"])
-    return np.asarray(laws.magnitude(series) * (64 * 2.0**-53 + 8 * error), dtype=np.float64)
+    return rounding_bounds(laws, series)
 
 
 def diagnose(laws: Laws) -> Mapping[str, Any]:

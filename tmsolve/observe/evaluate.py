@@ -103,11 +103,6 @@ class Laws:
         except TooLargeError:
             return None
 
-    def magnitude(self, series: Series) -> np.ndarray:
-        """Return the sum of the absolute values of a series' terms, shape (size,)."""
-        parts = [np.abs(self.evaluate(Series(series.chain, {m: c}))) for m, c in series.terms.items()]
-        return np.sum(parts, axis=0) if parts else np.zeros(self.size)
-
     @np.errstate(under="ignore")  # weights far below 1 vanish, which is what they should do
     def collect(
         self, of_segment: Callable[[Segment], Any], observables: Sequence[str] = (), extra: tuple[int, ...] = ()

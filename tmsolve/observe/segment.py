@@ -49,6 +49,10 @@ class Segment:
         Why numbers of this length were used.
     arithmetic : str
         Whose numbers the Perron pair was found with.
+    largest_cost : ndarray
+        Largest difference of energies from the least, once potentials are taken out.
+    input_error : callable
+        Bound on what rounding of the parameters does to the vector, relative.
     """
 
     indices: np.ndarray
@@ -65,6 +69,8 @@ class Segment:
     limit: bool = False
     reason: str = "doubles suffice"
     arithmetic: str = "doubles"
+    largest_cost: Any = 0.0
+    input_error: Callable[[], Any] = float
 
     def double(self, values: Any) -> np.ndarray:
         """Round to doubles and spread over the points of the segment."""
