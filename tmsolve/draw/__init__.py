@@ -1,0 +1,1 @@
+"""Random configurations: exact samples of finite and infinite chains, and dynamic simulations to lay beside them."""
