@@ -260,7 +260,7 @@ class Solution:
         """Bound on the numerical error of a quantity that is a derivative of f, per point.
 
         From an evaluation with longer numbers, which takes about a millisecond per point;
-        for more than 40 joint states of the cut, from the rounding bound of the Perron vector.
+        above 40 joint states of the cut (100 with python-flint), from rounding as it is propagated.
 
         Parameters
         ----------
