@@ -19,7 +19,7 @@ def classes(chain, observable, **values):
     window = build_window(chain, (observable,))
     states = np.arange(window.shape[0])
     groups = state_classes(window, states, point.flat(), np.arange(point.size), observable)
-    return [(p.tolist(), None if c is None else c.number.tolist()) for p, c in groups]
+    return [(p.tolist(), None if c is None else c.tolist()) for p, c in groups]
 
 
 SPIN1 = Chain(

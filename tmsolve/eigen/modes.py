@@ -17,6 +17,8 @@ __all__ = ["Modes", "Shown", "modes", "shown"]
 #: Eigenvalues so much smaller (in ln) than the matrix are looked for in long numbers, where there are any.
 _SMALL = -11.0
 _LARGEST = 40
+#: Vectors of this condition number lose no more digits than an amplitude may lose anyway.
+USUAL_CONDITION = 1e2
 
 
 @dataclass(frozen=True)
@@ -100,15 +102,16 @@ class Shown:
     ----------
     amplitude : ndarray, shape (batch, m)
         Summed over all modes that coincide with a mode.
-    carried : ndarray of bool, shape (batch, m)
-        Whether it is more than rounding.
+    size : ndarray, shape (batch, m)
+        |source|·|target| times the condition of the vectors: the amplitude is known to
+        rounding relative to this.
     """
 
     amplitude: np.ndarray
-    carried: np.ndarray
+    size: np.ndarray
 
 
-def shown(found: Modes, source: np.ndarray, target: np.ndarray, threshold: float) -> Shown:
+def shown(found: Modes, source: np.ndarray, target: np.ndarray) -> Shown:
     """Return the amplitudes of the modes in the correlation of two quantities.
 
     Parameters
@@ -116,13 +119,12 @@ def shown(found: Modes, source: np.ndarray, target: np.ndarray, threshold: float
     found : Modes
     source, target : ndarray, shape (n, batch)
         Deviation left behind by the first quantity, expectation of the second.
-    threshold : float
-        Smallest amplitude that counts, relative to |source|·|target|.
     """
     before = np.einsum("nb,bnm->bm", source, found.right)
     after = np.einsum("bmn,nb->bm", found.left, target)
     alike = together(found.log_gap, found.phase)
     amplitude = np.einsum("bkj,bj->bk", alike, before * after)
     scale = np.abs(source).sum(axis=0) * np.abs(target).max(axis=0)
-    carried = (np.abs(amplitude) > threshold * scale[:, None]) & np.isfinite(found.log_modulus)
-    return Shown(amplitude, carried)
+    condition = np.abs(found.right).max(axis=1) * np.abs(found.left).sum(axis=2)
+    worst = np.einsum("bkj,bj->bk", alike, condition)
+    return Shown(amplitude, scale[:, None] * np.maximum(1.0, worst / USUAL_CONDITION))

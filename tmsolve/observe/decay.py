@@ -4,25 +4,22 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
-from typing import Any
+from typing import NamedTuple
 
 import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow
 from ..eigen.modes import Modes, modes, shown
-from ..eigen.spectrum import deflated
+from ..eigen.spectrum import clusters, deflated
 from ..operators.numbers import to_double
 from .correlations import anchors
-from .partition import Classes
 from .segment import Segment
 
-__all__ = ["Decay", "decay", "slowest"]
+__all__ = ["Decay", "Found", "decay", "slowest"]
 
-#: Amplitudes below this, relative to the product of the two quantities' sizes, count as zero.
+#: Amplitudes below this, relative to the product of the two quantities' sizes, are not told from rounding.
 _AMPLITUDE = 1e-11
-#: The same where all modes are known to be shown: both ends of an amplitude are rounding below this.
-_TINY = 1e-24
 #: Smaller eigenvalues (ln |λ/λ₁|) may lose digits to rounding.
 _SMALL = -8.0
 #: Entries of the largest array that is made for many points at once.
@@ -57,6 +54,22 @@ class Decay:
         nothing, zero = np.full(size, -np.inf), np.zeros(size)
         return cls(nothing, -nothing, zero, zero.copy(), nothing.copy())
 
+    @classmethod
+    def unknown(cls, size: int) -> Decay:
+        """Return what stands where the mode is not known."""
+        nothing = np.full(size, np.nan)
+        return cls(nothing, nothing.copy(), nothing.copy(), nothing.copy(), np.full(size, np.inf))
+
+    @property
+    def undecided(self) -> np.ndarray:
+        """Where the mode is not known."""
+        return np.isnan(self.log_gap) & np.isposinf(self.log_noise)
+
+    def poor(self, accuracy: float = 1e-11) -> np.ndarray:
+        """Whether rounding may have changed a length by more than ``accuracy``, relative to it."""
+        with np.errstate(invalid="ignore"):
+            return np.asarray(self.log_noise - self.log_modulus - self.log_gap > np.log(accuracy))
+
     def at(self, points: np.ndarray) -> Decay:
         """Return what holds at some points."""
         return Decay(*(values[points] for values in vars(self).values()))
@@ -65,6 +78,38 @@ class Decay:
         """Store what was found at some points."""
         for mine, other in zip(vars(self).values(), vars(part).values(), strict=True):
             mine[points] = other
+
+
+class Found(NamedTuple):
+    """What doubles say on the slowest mode that an observable shows, per point.
+
+    Attributes
+    ----------
+    chosen : Decay
+        The slowest mode whose amplitude is above rounding.
+    leading : Decay
+        The slowest mode of all; of unknown amplitude.
+    seen : ndarray of int
+        How many eigenvalues are surely shown, multiple ones counted once.
+    unsure : ndarray of bool
+        Whether there is a slower mode than the chosen one, or none was chosen.
+    """
+
+    chosen: Decay
+    leading: Decay
+    seen: np.ndarray
+    unsure: np.ndarray
+
+    @classmethod
+    def none(cls, size: int) -> Found:
+        """Return what holds where nothing decays."""
+        return cls(Decay.none(size), Decay.none(size), np.zeros(size, dtype=np.intp), np.zeros(size, dtype=bool))
+
+    def put(self, points: np.ndarray, part: Found) -> None:
+        """Store what was found at some points."""
+        self.chosen.put(points, part.chosen)
+        self.leading.put(points, part.leading)
+        self.seen[points], self.unsure[points] = part.seen, part.unsure
 
 
 def slowest(segment: Segment) -> Decay:
@@ -94,9 +139,9 @@ class _Pair:
 
 
 def decay(
-    window: ChainWindow, segment: Segment, observable: str, groups: Sequence[tuple[np.ndarray, Classes | None]]
-) -> Decay:
-    """Return the slowest mode that an observable shows, per point.
+    window: ChainWindow, segment: Segment, observable: str, groups: Sequence[tuple[np.ndarray, np.ndarray | None]]
+) -> Found:
+    """Return the slowest mode that an observable shows, per point, as far as doubles tell.
 
     Parameters
     ----------
@@ -106,20 +151,19 @@ def decay(
     groups : sequence of (positions in the segment, classes of states or None)
         Equitable partitions that resolve the observable.
     """
-    result = Decay.none(segment.indices.size)
+    result = Found.none(segment.indices.size)
     pairs = _pairs(window, segment, observable)
     known, numbers = segment.law.pair, segment.law.numbers
     for positions, classes in groups:
-        size = len(segment.states) if classes is None else int(classes.number.max()) + 1
+        size = len(segment.states) if classes is None else int(classes.max()) + 1
         step = max(1, _AT_ONCE // size**2)
         for start in range(0, len(positions) if size > 1 else 0, step):
             here = positions[start : start + step]
             chance, law = known.chance[..., here], segment.law.stationary[:, here]
             shown_by = [pair.at(here) for pair in pairs]
             if classes is not None and size < len(segment.states):
-                chance, law, shown_by = _lumped(chance, law, shown_by, classes.number)
-            whole = classes is not None and classes.whole
-            result.put(here, _slowest_shown(modes(chance, law, numbers), shown_by, whole))
+                chance, law, shown_by = _lumped(chance, law, shown_by, classes)
+            result.put(here, _slowest_shown(modes(chance, law, numbers), shown_by))
     return result
 
 
@@ -137,33 +181,53 @@ def _lumped(
     return rows, gathered(law), [_Pair(gathered(p.source), p.target[first], p.size, p.shift) for p in pairs]
 
 
-def _slowest_shown(found: Modes, pairs: Sequence[_Pair], whole: bool) -> Decay:
-    result = Decay.none(len(found.log_gap))
+def _slowest_shown(found: Modes, pairs: Sequence[_Pair]) -> Found:
+    batch = len(found.log_gap)
+    result = Found.none(batch)
     if not pairs:
         return result
-    # Where no symmetry hides a mode, a small amplitude is an amplitude.
-    threshold = _TINY if whole else _AMPLITUDE
-    views = [shown(found, pair.source, pair.target, threshold) for pair in pairs]
-    carried = np.any([view.carried for view in views], axis=0)
-    points = np.flatnonzero(carried.any(axis=1))
-    k = carried[points].argmax(axis=1)
-    phase = found.phase[points, k]
-    ratio = np.exp(found.log_modulus[points, k] + 1j * phase)
+    amplitude, size = _amplitudes(found, pairs)
+    there = np.isfinite(found.log_modulus)
+    carried = (np.abs(amplitude) > _AMPLITUDE * size) & there
+    any_carried = carried.any(axis=1)
+    k = np.where(any_carried, carried.argmax(axis=1), 0)
+    unsure = ~any_carried | (k > 0)
+    apart = np.flatnonzero(unsure)
+    seen = any_carried.astype(np.intp)
+    seen[apart] = [_distinct(found.log_gap[i], found.phase[i], carried[i]) for i in apart]
+    chosen = Decay.none(batch)
+    some = np.flatnonzero(any_carried)
+    chosen.put(some, _picked(found, amplitude, some, k[some]))
+    leading = Decay.none(batch)
+    some = np.flatnonzero(there[:, 0])
+    leading.put(some, _picked(found, amplitude * np.nan, some, k[some] * 0))
+    lost = np.isnan(found.log_gap).any(axis=1)
+    for values in (*vars(chosen).values(), *vars(leading).values()):
+        values[lost] = np.nan
+    return Found(chosen, leading, seen, unsure & ~lost)
+
+
+def _amplitudes(found: Modes, pairs: Sequence[_Pair]) -> tuple[np.ndarray, np.ndarray]:
+    """Return the amplitudes of all modes, summed over the parts of an observable, and what they are relative to."""
+    views = [shown(found, pair.source, pair.target) for pair in pairs]
     with np.errstate(all="ignore"):  # eigenvalues below all doubles, raised to negative powers
-        total: Any = sum(
-            view.amplitude[points, k] * ratio ** (pair.shift - 1) * pair.size[points]
-            for view, pair in zip(views, pairs, strict=True)
-        )
+        ratio = np.exp(found.log_modulus + 1j * found.phase)
+        weights = [ratio ** (pair.shift - 1) * pair.size[:, None] for pair in pairs]
+        amplitude = sum((v.amplitude * w for v, w in zip(views, weights, strict=True)), start=ratio * 0)
+        size = sum((v.size * np.abs(w) for v, w in zip(views, weights, strict=True)), start=np.abs(ratio) * 0)
+    return amplitude, size
+
+
+def _distinct(log_gap: np.ndarray, phase: np.ndarray, carried: np.ndarray) -> int:
+    return sum(any(carried[k] for k in group) for group in clusters(log_gap, phase))
+
+
+def _picked(found: Modes, amplitude: np.ndarray, points: np.ndarray, k: np.ndarray) -> Decay:
+    phase, modulus = found.phase[points, k], found.log_modulus[points, k]
     alone = (phase == 0) | (np.abs(phase) == np.pi)
-    modulus, gap = found.log_modulus[points, k], found.log_gap[points, k]
-    amplitude = np.abs(total) * np.where(alone, 1, 2)
-    result.put(
-        points,
-        Decay(modulus, gap, np.abs(phase), amplitude, np.where(modulus < _SMALL, found.log_noise[points], -np.inf)),
-    )
-    for values in vars(result).values():
-        values[np.isnan(found.log_gap).any(axis=1)] = np.nan
-    return result
+    noise = np.where(modulus < _SMALL, found.log_noise[points], -np.inf)
+    height = np.abs(amplitude[points, k]) * np.where(alone, 1, 2)
+    return Decay(modulus, found.log_gap[points, k], np.abs(phase), height, noise)
 
 
 def _pairs(window: ChainWindow, segment: Segment, observable: str) -> list[_Pair]:
@@ -179,7 +243,7 @@ def _pairs(window: ChainWindow, segment: Segment, observable: str) -> list[_Pair
     return pairs
 
 
-def _scaled(values: Any, segment: Segment) -> tuple[np.ndarray, np.ndarray]:
+def _scaled(values: np.ndarray, segment: Segment) -> tuple[np.ndarray, np.ndarray]:
     """Return values over the points of a segment with the largest brought to 1, and its size."""
     size = np.abs(values).max(axis=0)
     size = np.where(size > 0, size, size * 0 + 1)

@@ -7,56 +7,94 @@ from dataclasses import replace
 import numpy as np
 
 from ..declare import Point
+from ..errors import SolveError
 from .decay import Decay, decay, slowest
 from .evaluate import Laws
 from .lost import LARGEST, MOST_POINTS, whole_spectrum
 from .partition import state_classes, vanishing
 from .segment import Segment
+from .settle import Settler
 
 __all__ = ["decays", "gaps", "lengths", "log_gaps"]
 
-#: Relative error of a length from which on longer numbers are asked.
-_ACCURACY = 1e-11
+#: Relative error of a length beyond which it is not given, where longer numbers are out of reach.
+_TOLERABLE = 1e-9
 #: At the temperature of the limit T → 0 what is smaller than this is zero.
 _NOTHING = -460.0
 
 
 def decays(laws: Laws, point: Point, a: str | None) -> Decay:
-    """Return the slowest mode (that ``a`` shows) at every point, shape (size,) each."""
+    """Return the slowest mode (that ``a`` shows) at every point, shape (size,) each.
+
+    Raises
+    ------
+    SolveError
+        Which mode is the slowest that ``a`` shows could not be decided somewhere; the message names
+        the first such point, and ``partial`` holds the lengths ξ of the batch, NaN where undecided.
+    """
     if a not in laws.decays:
-        found, doubtful = _decays(laws, point, a)
-        if doubtful.size and laws.size <= MOST_POINTS:
-            # What doubles lose may be small instead of absent.
-            sharper = laws.sharper
-            if sharper is not None:
-                better, _ = _decays(sharper, point, a)
-                found.put(doubtful, better.at(doubtful))
-        laws.decays[a] = found
-    return laws.decays[a]
+        laws.decays[a] = _sharpened(laws, point, a)
+    found = laws.decays[a]
+    undecided = np.flatnonzero(found.undecided)
+    if undecided.size:
+        others = f", nor at {undecided.size - 1} more points" if undecided.size > 1 else ""
+        raise SolveError(
+            f"which mode decays slowest in the correlation of {a} is not decided at "
+            f"{point.pick(int(undecided[0]))}{others}: in doubles its amplitude is lost in rounding, and longer "
+            f"numbers are out of reach (at most {LARGEST} joint states of the cut, and about half a minute for all "
+            "points together). Raise T, ask for fewer points at a time, or for correlation_length() of the whole chain",
+            lengths(found).reshape(point.shape),
+        )
+    return found
+
+
+def _sharpened(laws: Laws, point: Point, a: str | None) -> Decay:
+    """Return the slowest modes, poor ones from longer numbers."""
+    look = _slowest if a is None else _slowest_shown
+    found, doubtful = look(laws, point, a)
+    # What doubles lose may be small instead of absent.
+    sharper = laws.sharper if doubtful.size and laws.size <= MOST_POINTS else None
+    if sharper is not None:
+        found.put(doubtful, look(sharper, point, a)[0].at(doubtful))
+    elif a is not None:
+        lost = doubtful[found.at(doubtful).poor(_TOLERABLE)]
+        found.put(lost, Decay.unknown(lost.size))
+    return found
 
 
 @np.errstate(under="ignore")
-def _decays(laws: Laws, point: Point, a: str | None) -> tuple[Decay, np.ndarray]:
-    """Return the slowest modes, and the points where it is lost, or poorly known, in doubles."""
-    window, segments = laws.resolved(() if a is None else (a,))
-    values = point.flat()
+def _slowest(laws: Laws, point: Point, _: str | None) -> tuple[Decay, np.ndarray]:
+    """Return the slowest modes, and the points where doubles know them poorly."""
     found = Decay.none(laws.size)
     doubtful: list[int] = []
-    for segment in segments:
-        groups = [] if a is None else state_classes(window, segment.states, values, segment.indices, a)
-        part = slowest(segment) if a is None else decay(window, segment, a, groups)
+    for segment in laws.segments():
+        part = slowest(segment)
         found.put(segment.indices, replace(part, log_gap=_limit(segment, part.log_gap)))
-        nothing = np.isposinf(part.log_gap)
-        for positions, classes in groups:
-            nothing[positions] &= classes is None or bool(classes.number.any())
         if segment.limit or len(segment.states) > LARGEST or laws.size > MOST_POINTS:
             continue
-        most = len(segment.states) - 1
-        lost = [i for i in segment.indices[nothing] if vanishing(window, segment.states, values, int(i)) != most]
-        with np.errstate(invalid="ignore"):
-            poor = part.log_noise - part.log_modulus - part.log_gap > np.log(_ACCURACY)
-        doubtful += [*lost, *segment.indices[poor & ~nothing]]
+        nothing, most = np.isposinf(part.log_gap), len(segment.states) - 1
+        zeros = {int(i): vanishing(laws.window, segment.states, point.flat(), i) for i in segment.indices[nothing]}
+        doubtful += [i for i, count in zeros.items() if count != most]
+        doubtful += segment.indices[part.poor() & ~nothing].tolist()
     return found, np.array(doubtful, dtype=np.intp)
+
+
+@np.errstate(under="ignore")
+def _slowest_shown(laws: Laws, point: Point, a: str | None) -> tuple[Decay, np.ndarray]:
+    """Return the slowest modes that an observable shows, and the points where they are still poorly known."""
+    assert a is not None
+    window, segments = laws.resolved((a,))
+    settler = Settler(window, point, a)
+    found = Decay.none(laws.size)
+    doubtful = [np.array([], dtype=np.intp)]
+    for segment in segments:
+        groups = state_classes(window, segment.states, point.flat(), segment.indices, a)
+        part = decay(window, segment, a, groups)
+        for positions, classes in groups:
+            poor = settler.settle(segment, part, positions, classes)
+            doubtful.append(segment.indices[poor])
+        found.put(segment.indices, replace(part.chosen, log_gap=_limit(segment, part.chosen.log_gap)))
+    return found, np.concatenate(doubtful)
 
 
 def _limit(segment: Segment, log_gap: np.ndarray) -> np.ndarray:

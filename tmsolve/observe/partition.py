@@ -12,7 +12,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterable, Mapping, Sequence
 from fractions import Fraction
-from typing import Any, NamedTuple
+from typing import Any
 
 import numpy as np
 
@@ -23,16 +23,14 @@ from ..symmetry.refine import equitable, interned
 from ..tabulate.affine import affine_table
 from ..tabulate.calling import number_table
 from ..tabulate.exact import exact_table
-from .reach import DualNumbers, all_reached, modulo, rank, residues
+from .residues import modulo, rank
 
-__all__ = ["Classes", "state_classes", "vanishing"]
+__all__ = ["state_classes", "vanishing"]
 
 _PRIMES = (2147483647, 2147483629)
 #: Points that have to be looked at one by one.
 _SINGLY = 64
 _LARGEST = 2048
-#: Of larger chains of classes it is not asked which modes are hidden.
-_REACHED = 40
 _ENERGY = "energy"
 
 #: Exponents of named bases over the states of some sites, and where a configuration is allowed.
@@ -43,16 +41,9 @@ class _Unknown(Exception):
     """A term has no exact value that holds for all points together."""
 
 
-class Classes(NamedTuple):
-    """Classes of states, and whether the observable shows every mode of the chain of classes."""
-
-    number: np.ndarray
-    whole: bool
-
-
 def state_classes(
     window: ChainWindow, states: np.ndarray, values: Mapping[str, Any], indices: np.ndarray, observable: str
-) -> list[tuple[np.ndarray, Classes | None]]:
+) -> list[tuple[np.ndarray, np.ndarray | None]]:
     """Return groups of points with the classes of states that an observable resolves at them.
 
     Parameters
@@ -79,7 +70,7 @@ def state_classes(
     fixed = {name: value for name, value in values.items() if np.ndim(value) == 0}
     running = {name: np.asarray(value)[indices] for name, value in values.items() if np.ndim(value)}
     try:
-        groups: list[tuple[np.ndarray, Classes | None]] = []
+        groups: list[tuple[np.ndarray, np.ndarray | None]] = []
         for positions, zero in _same_zeros(running, indices.size):
             known = {**fixed, **dict.fromkeys(zero, Fraction(0))}
             groups.append((positions, _classes(window, states, known, observable)))
@@ -92,7 +83,7 @@ def state_classes(
 
 def _single(
     window: ChainWindow, states: np.ndarray, fixed: dict[str, Any], running: dict[str, np.ndarray], i: int, a: str
-) -> Classes | None:
+) -> np.ndarray | None:
     here = {name: Fraction(repr(float(column[i]))) for name, column in running.items()}
     try:
         return _classes(window, states, {**fixed, **here}, a)
@@ -114,44 +105,10 @@ def _same_zeros(running: Mapping[str, np.ndarray], size: int) -> list[tuple[np.n
     ]
 
 
-def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observable: str) -> Classes:
+def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observable: str) -> np.ndarray:
     terms = window.chain.observable(observable)
     labels = _labels(window, states, known, terms)
-    classes = equitable(interned((labels[..., 0] << 31) + labels[..., 1]))
-    if not classes.any() or classes.max() >= _REACHED:
-        return Classes(classes, False)
-    cells = {place[1] for term in terms if (place := place_in(window, term))}
-    inserted = [_moments(window, states, known, terms, cell) for cell in sorted(cells)]
-    whole = all_reached(inserted[0][..., 0], [table[..., 1] for table in inserted], classes, _PRIMES[0])
-    return Classes(classes, whole)
-
-
-def _moments(
-    window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observables: Sequence[Term], cell: int
-) -> np.ndarray:
-    """Return the matrix and its entries times the parts anchored at a cell, modulo the first prime: (…, 2)."""
-    prime = _PRIMES[0]
-    factors = [_factor(window, source.source, known) for source in window.factors]
-    unit = _units([powers for powers, _ in factors])
-    tables = []
-    for powers, weight in factors:
-        plain = _hashed(powers, unit, weight)[..., 0]
-        tables.append(np.stack([plain, plain * 0], axis=-1))
-    # Several parts at one anchor add up, so each has a matrix of its own.
-    total: np.ndarray | None = None
-    for term in observables:
-        place = place_in(window, term)
-        if place is None or place[1] != cell:
-            continue
-        powers, _ = _powers(window, term, known, "value")
-        value = sum(residues(table, prime) * (1 + number * 104729) for number, table in enumerate(powers.values()))
-        part = np.stack([np.ones_like(value), value % prime], axis=-1)
-        found = window.reduce(DualNumbers(prime), tables, [(place[0], part)])
-        full = (*(window.sizes[site] for site in window.sites), 2)
-        here = window.matrix(np.broadcast_to(found, full), 0)[np.ix_(states, states)]
-        total = here if total is None else np.stack([here[..., 0], (here[..., 1] + total[..., 1]) % prime], axis=-1)
-    assert total is not None
-    return total
+    return equitable(interned((labels[..., 0] << 31) + labels[..., 1]))
 
 
 def _labels(
