@@ -14,9 +14,8 @@ __all__ = ["numpy_function"]
 def numpy_function(form: ClosedForm, quantity: str) -> Any:
     """Return a quantity of a closed form as a NumPy function of T and the parameters.
 
-    The function works with logarithms, so that it holds at any temperature above 0, and on
-    arrays that broadcast. Before it is returned it is compared with the formula in long numbers
-    at random points down to T = 0.01 (in units of the couplings), and with `solve` there.
+    It is what `tmsolve.symbolic.export.numpy_function` writes, compared with `solve` as well at
+    random points down to T = 0.01 (in units of the couplings) before it is returned.
 
     Parameters
     ----------

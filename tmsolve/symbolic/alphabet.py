@@ -16,7 +16,7 @@ from typing import Any
 
 from .boltzmann import Monomial, Terms, polynomial_terms
 
-__all__ = ["Alphabet", "Laurent", "Scale", "common_measure"]
+__all__ = ["Alphabet", "Laurent", "Scale", "common_measure", "product_of_sums"]
 
 #: Whole exponents of the symbols of a common monomial.
 Scale = tuple[int, ...]
@@ -117,3 +117,13 @@ def common_measure(numbers: Iterable[Fraction]) -> Fraction:
             total.denominator * c.denominator,
         )
     return total
+
+
+def product_of_sums(a: Laurent, b: Laurent) -> Laurent:
+    """Return the product of two sums of exponentials."""
+    total: Laurent = {}
+    for x, c in a.items():
+        for y, d in b.items():
+            z = tuple(e + f for e, f in zip(x, y, strict=True))
+            total[z] = total.get(z, Fraction(0)) + c * d
+    return {x: c for x, c in total.items() if c}

@@ -1,4 +1,4 @@
-"""Whole numbers that formulas are asked for: cells and distances."""
+"""What formulas are asked for: cells, distances, seconds."""
 
 from __future__ import annotations
 
@@ -6,9 +6,9 @@ import operator
 from typing import Any
 
 from ..declare.chain import Chain
-from ..errors import NotApplicable
+from ..errors import NotApplicable, ParameterError
 
-__all__ = ["whole_cells", "whole_distance"]
+__all__ = ["positive_seconds", "whole_cells", "whole_distance"]
 
 
 def whole_distance(r: Any) -> Any:
@@ -44,3 +44,14 @@ def whole_cells(N: Any, chain: Chain, ring: bool = True) -> int:
             f"use at least {reach + 1} cells"
         )
     return cells
+
+
+def positive_seconds(limit: Any) -> float:
+    """Return a time limit as a number of seconds."""
+    try:
+        seconds = float(limit)
+    except (TypeError, ValueError):
+        seconds = 0.0
+    if not 0 < seconds < float("inf"):
+        raise ParameterError(f"time_limit is a positive number of seconds, got {limit!r}")
+    return seconds

@@ -2,11 +2,10 @@
 
 from __future__ import annotations
 
-from typing import Any
-
 from ..declare.chain import Chain
-from ..errors import ParameterError, SolveError, TooLargeError
+from ..errors import SolveError, TooLargeError
 from ..tabulate.colours import numbers_of_colours
+from .arguments import positive_seconds
 from .closed import ClosedForm
 from .colours.check import colour_mismatch
 from .colours.matrix import ColourMatrix, colour_matrix
@@ -66,7 +65,7 @@ def closed_form(chain: Chain, *, time_limit: float = 30) -> ClosedForm:
     >>> closed_form(potts).partition_function()
     (q - 1)*(exp(J*beta) - 1)**N + (q + exp(J*beta) - 1)**N
     """
-    clock = Clock(_seconds(time_limit))
+    clock = Clock(positive_seconds(time_limit))
     try:
         matrix = limited(clock.share(_ASSEMBLY), _matrix, chain)
     except TimeUp:
@@ -102,13 +101,3 @@ def _wrong(form: ClosedForm) -> str | None:
     if isinstance(matrix, ColourMatrix):
         return colour_mismatch(form.chain, matrix, eigenvalues, perron.value)
     return mismatch(matrix, eigenvalues, perron.value)
-
-
-def _seconds(limit: Any) -> float:
-    try:
-        seconds = float(limit)
-    except (TypeError, ValueError):
-        seconds = 0.0
-    if not 0 < seconds < float("inf"):
-        raise ParameterError(f"time_limit is a positive number of seconds, got {limit!r}")
-    return seconds

@@ -9,7 +9,7 @@ from ..assemble.window import ChainWindow, untouched
 from ..declare.chain import Chain
 from ..errors import ParameterError
 
-__all__ = ["check_boundary", "check_cells", "check_chain", "check_seconds", "runs"]
+__all__ = ["check_boundary", "check_cells", "check_chain", "runs"]
 
 
 def check_boundary(boundary: Any) -> bool:
@@ -39,17 +39,6 @@ def check_cells(chain: Chain, N: Any, ring: bool) -> int:
         why = f", because the longest term spans {reach} cells further" if reach else ""
         raise ParameterError(f"N is the number of cells, for {what} of this chain at least {reach + 1}{why}; got {N!r}")
     return cells
-
-
-def check_seconds(limit: Any) -> float:
-    """Return a time limit as a number of seconds."""
-    try:
-        seconds = float(limit)
-    except (TypeError, ValueError):
-        seconds = 0.0
-    if not 0 < seconds < float("inf"):
-        raise ParameterError(f"time_limit is a positive number of seconds, got {limit!r}")
-    return seconds
 
 
 def runs(window: ChainWindow, cells: int, ring: bool) -> list[tuple[ChainWindow, int]]:

@@ -9,7 +9,7 @@ import numpy as np
 from .alphabet import Laurent
 from .blocks import Block
 from .colours.matrix import ColourMatrix
-from .polynomials import Coefficients, power_sums
+from .polynomials import Coefficients, power_sums, product_of
 from .spectrum import Factor, Spectrum
 
 __all__ = ["minimal_polynomial", "ring_sum", "trace_of_power"]
@@ -20,20 +20,8 @@ def minimal_polynomial(spectrum: Spectrum) -> Coefficients:
 
     Z_N = Σ m λᴺ, N ≥ 1, obeys the recurrence of this polynomial.
     """
-    ring = spectrum.matrix.alphabet.ring
-    total: Coefficients = (ring.one,)
-    for factor in spectrum.factors:
-        if not factor.is_zero:
-            total = _product(total, factor.polynomial, ring.zero)
-    return total
-
-
-def _product(a: Coefficients, b: Coefficients, zero: Any) -> Coefficients:
-    result = [zero] * (len(a) + len(b) - 1)
-    for i, x in enumerate(a):
-        for j, y in enumerate(b):
-            result[i + j] = result[i + j] + x * y
-    return tuple(result)
+    factors = [factor.polynomial for factor in spectrum.factors if not factor.is_zero]
+    return product_of(factors, spectrum.matrix.alphabet.ring)
 
 
 def ring_sum(spectrum: Spectrum, cells: int) -> Laurent:

@@ -13,7 +13,7 @@ from typing import Any
 
 import numpy as np
 
-from .alphabet import Laurent
+from .alphabet import Laurent, product_of_sums
 from .colours.matrix import ColourMatrix
 from .formula import Draft, power, product, root, total
 from .matrix import SymbolicMatrix
@@ -135,21 +135,12 @@ def _square_factors(inside: Laurent, writer: Writer) -> Iterator[tuple[Laurent, 
     outside, rest = one, inside
     for factor, exponent in factors:
         for _ in range(exponent // 2):
-            outside, rest = _product(outside, factor), _divide(rest, factor, writer)
+            outside, rest = product_of_sums(outside, factor), _divide(rest, factor, writer)
     if outside is not one:
         # Each repeated factor brought back to its middle keeps both parts symmetric.
         middle = tuple((min(x) + max(x)) / 2 for x in zip(*outside, strict=True))
         yield shifted(outside, middle, -1), shifted(rest, tuple(2 * m for m in middle))
         yield outside, rest
-
-
-def _product(a: Laurent, b: Laurent) -> Laurent:
-    total: Laurent = {}
-    for x, c in a.items():
-        for y, d in b.items():
-            z = tuple(e + f for e, f in zip(x, y, strict=True))
-            total[z] = total.get(z, Fraction(0)) + c * d
-    return {x: c for x, c in total.items() if c}
 
 
 def _divide(terms: Laurent, factor: Laurent, writer: Writer) -> Laurent:
@@ -158,7 +149,7 @@ def _divide(terms: Laurent, factor: Laurent, writer: Writer) -> Laurent:
     result: Laurent = {lowest: c}
     for other, exponent in factors:
         for _ in range(exponent - 2 if other == factor else exponent):
-            result = _product(result, other)
+            result = product_of_sums(result, other)
     return result
 
 
@@ -181,9 +172,9 @@ def _trigonometric(coefficients: Sequence[Laurent], writer: Writer, limit: int) 
     import sympy as sp
 
     a, b, c = times(coefficients[1], Fraction(-1)), coefficients[2], times(coefficients[3], Fraction(-1))
-    square, cube = _product(a, a), _product(a, _product(a, a))
+    square, cube = product_of_sums(a, a), product_of_sums(a, product_of_sums(a, a))
     p = writer.draft(_add((Fraction(1), square), (Fraction(-3), b)))
-    q = writer.draft(_add((Fraction(1), cube), (Fraction(-9, 2), _product(a, b)), (Fraction(27, 2), c)))
+    q = writer.draft(_add((Fraction(1), cube), (Fraction(-9, 2), product_of_sums(a, b)), (Fraction(27, 2), c)))
     trace = writer.draft(a)
     if trace.operations + 2 * p.operations + q.operations > limit:
         return []

@@ -10,8 +10,9 @@ import numpy as np
 
 from ...declare.chain import Chain
 from ...errors import DeclarationError, ParameterError, SolveError, TooLargeError
+from ..arguments import positive_seconds
 from ..deadline import Clock, TimeUp, limited
-from ..pieces import check_boundary, check_cells, check_chain, check_seconds
+from ..pieces import check_boundary, check_cells, check_chain
 from .counted import Counts
 from .packing import Layout
 from .passing import sparse_total
@@ -87,7 +88,7 @@ def counts(
     ring = check_boundary(boundary)
     cells = check_cells(chain, N, ring)
     names = _names(by)
-    allowed = check_seconds(time_limit)
+    allowed = positive_seconds(time_limit)
     clock = Clock(allowed)
     try:
         walk, plan, found = limited(clock.left, _count, chain, names, cells, ring)

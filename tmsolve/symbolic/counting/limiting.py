@@ -20,8 +20,9 @@ import numpy as np
 
 from ...declare.chain import Chain
 from ...errors import NotApplicable, ParameterError, TooLargeError
+from ..arguments import positive_seconds
 from ..deadline import Clock, TimeUp, limited
-from ..pieces import check_chain, check_seconds
+from ..pieces import check_chain
 from .certified import by_argument, certified_roots
 from .fugacity import Fugacity, check_variable, numeric_coefficients
 from .pairs import PairProduct
@@ -131,7 +132,7 @@ def limiting_curve(
     """
     check_chain(chain, "limiting_curve")
     check_variable(chain, variable)
-    allowed = check_seconds(time_limit)
+    allowed = positive_seconds(time_limit)
     for name, value, least, most in (("points", points, 2, 100_000), ("digits", digits, 1, 1000)):
         if isinstance(value, bool) or not isinstance(value, int) or not least <= value <= most:
             raise ParameterError(f"{name} is a whole number from {least} to {most}, got {value!r}")

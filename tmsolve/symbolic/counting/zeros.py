@@ -9,8 +9,9 @@ import numpy as np
 
 from ...declare.chain import Chain
 from ...errors import NotApplicable, ParameterError, TooLargeError
+from ..arguments import positive_seconds
 from ..deadline import TimeUp, limited
-from ..pieces import check_boundary, check_cells, check_chain, check_seconds
+from ..pieces import check_boundary, check_cells, check_chain
 from .certified import by_argument, certified_roots
 from .counted import Counts
 from .counts import levels_of
@@ -158,7 +159,7 @@ def zeros(
     check_chain(chain, "zeros")
     ring = check_boundary(boundary)
     cells = check_cells(chain, N, ring)
-    allowed = check_seconds(time_limit)
+    allowed = positive_seconds(time_limit)
     check_variable(chain, variable)
     if isinstance(digits, bool) or not isinstance(digits, int) or not 1 <= digits <= 1000:
         raise ParameterError(f"digits is a whole number from 1 to 1000, got {digits!r}")

@@ -13,10 +13,10 @@ from ...declare.chain import Chain
 from ...declare.values import parse_value
 from ...errors import NotApplicable, ParameterError, TmsolveError, TooLargeError, did_you_mean, listing
 from ...tabulate.symbolic import parameter_symbols
+from ..arguments import positive_seconds
 from ..closed import ClosedForm
 from ..deadline import TimeUp, limited
 from ..forms import closed_form
-from ..pieces import check_seconds
 from ..plain import latex_text, plain_text
 from ..readable import Writer
 from .decimate import check_cells
@@ -226,7 +226,7 @@ def recursion(chain: Chain, b: int = 2, *, time_limit: float = 30) -> Recursion:
             f"b = {cells} gives powers too long to read; use b <= {_LONGEST}, or smaller steps one after the other",
             limit=_LONGEST,
         )
-    allowed = check_seconds(time_limit)
+    allowed = positive_seconds(time_limit)
     table, closure = _in_time(allowed, "the recursion relations", lambda: _derive(chain, cells))
     if closure.missing:
         raise NotApplicable(

@@ -17,9 +17,9 @@ from typing import Any
 import numpy as np
 
 from ..alphabet import Laurent
-from .recursion_factors import Factored, Key, factor_all
 from .exact_system import solve_exactly
 from .fit import Basis
+from .recursion_factors import Factored, Key, factor_all
 from .recursion_tables import WeightTable
 
 __all__ = ["Closure", "Image", "close_family", "own_weight"]

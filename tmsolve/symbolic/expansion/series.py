@@ -6,6 +6,7 @@ from typing import Any
 
 from ...declare.chain import Chain
 from ...errors import DeclarationError, ParameterError, TooLargeError, did_you_mean
+from ..arguments import positive_seconds
 from ..deadline import TimeUp, limited
 from .functions import FunctionField
 from .high import high_series
@@ -84,7 +85,7 @@ def series(chain: Chain, order: int, about: str = "high", of: str = "free_energy
         hint = did_you_mean(str(about), ["high", "low"])
         raise ParameterError(f"about= is 'high' or 'low', the temperature to expand about; got {about!r}.{hint}")
     quantity = parse_quantity(of, chain)
-    limit = _seconds(time_limit)
+    limit = positive_seconds(time_limit)
     try:
         return limited(limit, _expand, chain, order, about, quantity)
     except TimeUp:
@@ -135,13 +136,3 @@ def _minimal(log: LogSeries) -> Any:
             convert=True
         )[1]
     return sp.Poly(sp.minimal_polynomial(log.growth_expression, x), x)
-
-
-def _seconds(limit: Any) -> float:
-    try:
-        seconds = float(limit)
-    except (TypeError, ValueError):
-        seconds = 0.0
-    if not 0 < seconds < float("inf"):
-        raise ParameterError(f"time_limit is a positive number of seconds, got {limit!r}")
-    return seconds

@@ -15,7 +15,7 @@ from collections.abc import Callable
 from fractions import Fraction
 from typing import Any
 
-from ..alphabet import Laurent
+from ..alphabet import Laurent, product_of_sums
 from ..formula import rational
 from ..spectrum import Factor, Spectrum
 
@@ -94,14 +94,14 @@ class _Sums:
         (w + p) − r is ((w + p)² − r²)/(w + p + r) with w = t − |s|, and its numerator a sum with one root.
         """
         (t, d), (s, e) = first, second
-        one, two = _add((1, _product(t, t)), (-4, d)), _add((1, _product(s, s)), (-4, e))
+        one, two = _add((1, product_of_sums(t, t)), (-4, d)), _add((1, product_of_sums(s, s)), (-4, e))
         plain, radical, product = [], [], []
         for k in (-1, 1):
             w = _add((1, t), (k, s))
-            w2 = _product(w, w)
+            w2 = product_of_sums(w, w)
             plain.append(_add((1, w2), (1, one), (-1, two)))
             radical.append(w)
-            product.append(_add((1, _product(plain[-1], plain[-1])), (-4, _product(w2, one))))
+            product.append(_add((1, product_of_sums(plain[-1], plain[-1])), (-4, product_of_sums(w2, one))))
         a, w_name, b = (self.either(sign, *pair) for pair in (plain, radical, product))
         above = f"_surd({a}, _times((1.0, numpy.log(2.0)), {w_name}, _root), {b})[1]"
         return f"{above} - _plus({w_name}, _root, {radius})[1] - numpy.log(2.0)"
@@ -111,7 +111,7 @@ class _Sums:
         block, matrix = factor.block, self.matrix
         if block.size != 2:
             t, d = self.parts(factor)
-            return self.name(_add((1, _product(t, t)), (-4, d)))
+            return self.name(_add((1, product_of_sums(t, t)), (-4, d)))
         difference = matrix.laurent(block.matrix[0, 0] - block.matrix[1, 1])
         others = matrix.laurent(block.matrix[0, 1] * block.matrix[1, 0], 2)
         text = f"_plus(_power({self.name(difference)}, 2), {self.name(_add((4, others)))})"
@@ -151,7 +151,7 @@ class _Sums:
             if first.degree == 1:
                 return self.rate(f"{sign}[1]", f"{self.either(sign, _add((1, t), (-1, s)), _add((1, t), (1, s)))}[1]")
             w = self.either(sign, _add((1, t), (-2, s)), _add((1, t), (2, s)))
-            at = [_add((1, _product(s, s)), (k, _product(t, s)), (1, d)) for k in (-1, 1)]
+            at = [_add((1, product_of_sums(s, s)), (k, product_of_sums(t, s)), (1, d)) for k in (-1, 1)]
             product = self.either(sign, _add((-4, at[0])), _add((-4, at[1])))
             return self.rate(f"{sign}[1]", f"_half_sum({w}, _root, {product})")
         square = self.square(other)
@@ -161,7 +161,7 @@ class _Sums:
         real = f"_plus(({sign}[0] ** 2, {sign}[1]), {radius})[1] - numpy.log(2.0)"
         modulus = f"numpy.where({square}[0] < 0, 0.5 * {self.name(e)}[1], {real})"
         if first.degree == 1:
-            at = [_add((1, _product(t, t)), (k, _product(t, s)), (1, e)) for k in (-1, 1)]
+            at = [_add((1, product_of_sums(t, t)), (k, product_of_sums(t, s)), (1, e)) for k in (-1, 1)]
             product = self.either(sign, _add((4, at[0])), _add((4, at[1])))
             w = self.either(sign, _add((2, t), (-1, s)), _add((2, t), (1, s)))
             gap = f"{product}[1] - numpy.log(2.0) - _plus({w}, {radius})[1]"
@@ -172,23 +172,15 @@ class _Sums:
 
     def from_pair(self, first: Factor, t: Laurent, d: Laurent, e: Laurent) -> str:
         """Return ln(λ − √e) for a pair of complex eigenvalues: (λ² − e)/(λ + √e) with λ² = tλ − d."""
-        t2 = _product(t, t)
+        t2 = product_of_sums(t, t)
         if first.degree == 1:
             above = f"{self.name(_add((1, t2), (-1, e)))}[1]"
         else:
             plain = _add((1, t2), (-2, d), (-2, e))
-            both = self.name(_add((1, _product(plain, plain)), (-1, _product(t2, _add((1, t2), (-4, d))))))
+            rest = product_of_sums(t2, _add((1, t2), (-4, d)))
+            both = self.name(_add((1, product_of_sums(plain, plain)), (-1, rest)))
             above = f"_surd({self.name(plain)}, _times({self.name(t)}, _root), {both})[1] - numpy.log(2.0)"
         return f"{above} - _plus((1.0, _top), (1.0, 0.5 * {self.name(e)}[1]))[1]"
-
-
-def _product(a: Laurent, b: Laurent) -> Laurent:
-    total: Laurent = {}
-    for x, c in a.items():
-        for y, d in b.items():
-            z = tuple(e + f for e, f in zip(x, y, strict=True))
-            total[z] = total.get(z, Fraction(0)) + c * d
-    return {x: c for x, c in total.items() if c}
 
 
 def _add(*parts: tuple[int, Laurent]) -> Laurent:
