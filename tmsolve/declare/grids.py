@@ -150,9 +150,8 @@ def circle(nodes: int) -> StateSet:
     for k in range(count):
         common = math.gcd(k, count)
         labels.append(f"{k // common}/{count // common} turn" if k else "0")
-    return on_grid(
-        f"circle({count})", [2 * math.pi * k / count for k in range(count)], [NodeWeight(2 * math.pi / count)] * count, labels
-    )
+    angles = [2 * math.pi * k / count for k in range(count)]
+    return on_grid(f"circle({count})", angles, [NodeWeight(2 * math.pi / count)] * count, labels)
 
 
 def sphere(degree: int, rule: str = "product") -> StateSet:

@@ -18,6 +18,7 @@ from weakref import WeakKeyDictionary
 import numpy as np
 
 from ..declare import StateSet, Term
+from .affine_nodes import trace_nodes
 from .calling import call_sites, numeric_state
 
 __all__ = ["AffineTable", "affine_table"]
@@ -158,8 +159,10 @@ def affine_table(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
 
 
 def _trace(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
-    if term.takes_temperature or any(one.grid for one in states):
+    if term.takes_temperature:
         return None
+    if any(one.grid for one in states):
+        return _over_nodes(term, states)
     tracers = {name: _Tracer(Fraction(0), {name: Fraction(1)}) for name in term.parameters}
     probe = {name: 0.5772156649 + 0.3183098862 * k for k, name in enumerate(term.parameters)}
     try:
@@ -180,6 +183,22 @@ def _trace(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
             slopes[name] = np.empty(shape, dtype=object)
             slopes[name].reshape(-1)[:] = column
     return AffineTable(constant, slopes)
+
+
+def _over_nodes(term: Term, states: Sequence[StateSet]) -> AffineTable | None:
+    found = trace_nodes(term, states)
+    if found is None:
+        return None
+    constant, slopes = found
+    return AffineTable(_fractions(constant), {name: _fractions(slope) for name, slope in slopes.items()})
+
+
+def _fractions(table: np.ndarray) -> np.ndarray:
+    """Return doubles as the exact numbers they are; equal ones, of which there are many, are converted once."""
+    values, which = np.unique(table.ravel(), return_inverse=True)
+    exact = np.empty(values.size, dtype=object)
+    exact[:] = [Fraction(x) if math.isfinite(x) else x for x in values.tolist()]
+    return np.asarray(exact[which.ravel()].reshape(table.shape))
 
 
 def _agree(form: _Tracer, number: Any, values: Mapping[str, float]) -> bool:

@@ -12,7 +12,7 @@ import numpy as np
 
 from ..declare import StateSet, Term
 from ..errors import DeclarationError, SolveError, TmsolveError
-from .whole import numeric_state, whole_table
+from .whole import numeric_state, whole_table, without_noise
 
 __all__ = ["call_sites", "describe_call", "number_table", "numeric_state", "over_batch"]
 
@@ -61,7 +61,7 @@ def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, An
     def tabulate(given: Mapping[str, Any], count: int) -> np.ndarray:
         whole = whole_table(term, states, given, count)
         if whole is not None and (term.role != "weight" or (whole >= 0).all()):
-            return whole
+            return without_noise(whole)
         try:
             with np.errstate(all="ignore"):
                 raw = call_sites(term, states, numeric_state, given)
@@ -69,7 +69,8 @@ def number_table(term: Term, states: Sequence[StateSet], values: Mapping[str, An
             raise
         except Exception as cause:
             raise _failed(term, states, given, cause) from cause
-        return _collect(term, states, given, raw, count)
+        table = _collect(term, states, given, raw, count)
+        return without_noise(table) if any(one.grid for one in states) else table
 
     return over_batch(tabulate, term, values, batch)
 
