@@ -1,0 +1,196 @@
+"""What is random in a chain: checked input, one draw per copy of a term, and the draws themselves."""
+
+from __future__ import annotations
+
+import inspect
+from collections.abc import Mapping
+from dataclasses import dataclass
+from numbers import Integral
+from typing import Any
+
+import numpy as np
+
+from ..declare import Chain, Term
+from ..errors import DeclarationError, NotApplicable, ParameterError, did_you_mean, listing
+from .laws import Law, Realisation, as_law
+
+__all__ = ["Problem", "generator", "positive", "read_problem"]
+
+
+@dataclass(frozen=True, eq=False)
+class Problem:
+    """A chain whose random parameters have a name of their own per copy.
+
+    Attributes
+    ----------
+    chain : Chain
+        With every copy of a random parameter renamed.
+    values : mapping
+        Values of all parameters that are not random, and ``T``.
+    laws : mapping of str to Law
+        By the user's name.
+    copies : mapping of str to tuple of str
+        User's name to the names of its copies.
+    observables : tuple of str
+        Those that take no random parameter.
+    """
+
+    chain: Chain
+    values: Mapping[str, Any]
+    laws: Mapping[str, Law]
+    copies: Mapping[str, tuple[str, ...]]
+    observables: tuple[str, ...]
+
+    @property
+    def temperature(self) -> float:
+        """Temperature in energy units."""
+        return float(self.values["T"])
+
+    @property
+    def parameters(self) -> tuple[str, ...]:
+        """User's names of all parameters of the energy and the weights."""
+        own = {copy: name for name, copies in self.copies.items() for copy in copies}
+        return tuple(dict.fromkeys(own.get(p, p) for t in self.chain.terms for p in t.parameters if p != "T"))
+
+    @property
+    def draws(self) -> list[tuple[str, Law, int, int]]:
+        """Name of every copy, its law, its number among the copies of that parameter, and their count."""
+        return [
+            (copy, self.laws[name], number, len(copies))
+            for name, copies in self.copies.items()
+            for number, copy in enumerate(copies)
+        ]
+
+    @property
+    def listed(self) -> bool:
+        """Whether any parameter is one given realisation."""
+        return any(isinstance(law, Realisation) for law in self.laws.values())
+
+    def draw(self, rng: np.random.Generator, start: int, steps: int, replicas: int) -> dict[str, np.ndarray]:
+        """Draw every copy for some cells: arrays of shape (steps, replicas)."""
+        found = {}
+        for copy, law, number, count in self.draws:
+            if isinstance(law, Realisation):
+                row = law.values[number + count * start : number + count * (start + steps) : count]
+                found[copy] = np.broadcast_to(row[:, None], (steps, replicas))
+            else:
+                found[copy] = law.draw(rng, (steps, replicas))
+        return found
+
+
+def read_problem(chain: Any, random: Any, cells: int | None = None, *, cold: bool = False) -> Problem:
+    """Check a chain and its random parameters.
+
+    Parameters
+    ----------
+    chain : Chain
+        With everything but the random parameters fixed or defaulted, the temperature included.
+    random : mapping of str to law
+        See `as_law`.
+    cells : int, optional
+        Length that lists of values must have.
+    cold : bool
+        Whether T = 0 is meant: then the temperature need not be fixed.
+    """
+    if not isinstance(chain, Chain):
+        raise DeclarationError(f"the first argument is a chain with its temperature fixed, got {chain!r}")
+    laws = _laws(chain, random)
+    values = dict(chain.at(**{name: 0 for name in laws}, **({"T": 0} if cold else _temperature(chain))).values)
+    for name in laws:
+        del values[name]
+    renamed, copies = _rename(chain, tuple(laws))
+    for name, law in laws.items():
+        if isinstance(law, Realisation) and cells is not None and len(law.values) < cells * len(copies[name]):
+            raise DeclarationError(
+                f"the list for {name!r} has {len(law.values)} values, but {cells} cells with {len(copies[name])} "
+                f"copies each need {cells * len(copies[name])}; give a longer list or fewer cells"
+            )
+    observables = tuple(
+        name for name, parts in chain.observables.items() if not any(p in laws for part in parts for p in part.parameters)
+    )
+    return Problem(renamed, values, laws, copies, observables)
+
+
+def _temperature(chain: Chain) -> dict[str, Any]:
+    if "T" not in chain.fixed:
+        raise ParameterError("the temperature is not fixed; give chain.fix(T=…)")
+    if not chain.fixed["T"]:
+        raise NotApplicable("T = 0 has averages of its own: use disordered_ground_state(chain, random={…}, …)")
+    return {}
+
+
+def _laws(chain: Chain, random: Any) -> dict[str, Law]:
+    if not isinstance(random, Mapping) or not random:
+        raise DeclarationError(f'random= takes the laws of the random parameters, as in {{"h": norm(0, 1)}}, got {random!r}')
+    laws = {}
+    for name, given in random.items():
+        if name == "T":
+            raise ParameterError("the temperature cannot be random; one temperature holds for the whole chain")
+        if name not in chain.parameters:
+            raise ParameterError(
+                f"no parameter {name!r} to be random; this chain has {listing(chain.parameters)}."
+                f"{did_you_mean(str(name), chain.parameters)}"
+            )
+        if name in chain.fixed:
+            raise ParameterError(f"parameter {name!r} is fixed in this chain and cannot be random; start from the chain before fix(…)")
+        if not any(name in term.parameters for term in chain.terms):
+            raise ParameterError(f"parameter {name!r} occurs in observables only; a random one belongs to an energy or a weight")
+        laws[name] = as_law(given)
+    return laws
+
+
+def _rename(chain: Chain, names: tuple[str, ...]) -> tuple[Chain, dict[str, tuple[str, ...]]]:
+    """Give every copy of a random parameter a name of its own."""
+    copies: dict[str, list[str]] = {name: [] for name in names}
+    terms = []
+    for term in chain.terms:
+        own = {}
+        for name in names:
+            if name in term.parameters:
+                own[f"{name}_copy_{len(copies[name])}"] = name
+                copies[name].append(f"{name}_copy_{len(copies[name])}")
+        terms.append(_with_names(term, own) if own else term)
+    kept = {
+        name: parts for name, parts in chain.observables.items() if not any(p in names for part in parts for p in part.parameters)
+    }
+    renamed = Chain(chain.cell, terms, observables=kept, name=chain.name)
+    return renamed, {name: tuple(found) for name, found in copies.items()}
+
+
+def _with_names(term: Term, names: Mapping[str, str]) -> Term:
+    function = term.function
+    back = dict(names)
+
+    def call(*arguments: Any, **values: Any) -> Any:
+        return function(*arguments, **{back.get(name, name): value for name, value in values.items()})
+
+    forward = {user: own for own, user in back.items()}
+    states = [inspect.Parameter(f"state_{i}", inspect.Parameter.POSITIONAL_ONLY) for i in range(len(term.places))]
+    keywords = [inspect.Parameter(forward.get(p, p), inspect.Parameter.KEYWORD_ONLY) for p in term.parameters]
+    call.__signature__ = inspect.Signature([*states, *keywords])  # type: ignore[attr-defined]
+    call.__name__ = term.name
+    return Term(call, term.places, term.role)
+
+
+def positive(value: Any, name: str, least: int = 1) -> int:
+    """Return a whole number of at least ``least``."""
+    if isinstance(value, bool) or not isinstance(value, (Integral, np.integer)) or value < least:
+        raise ParameterError(f"{name} is a whole number >= {least}, got {value!r}")
+    return int(value)
+
+
+def generator(rng: Any) -> np.random.Generator:
+    """Return a generator of random numbers from a seed, or the one given.
+
+    Raises
+    ------
+    ParameterError
+        Neither a whole number ≥ 0 nor a numpy Generator.
+    """
+    if isinstance(rng, np.random.Generator):
+        return rng
+    if rng is None:
+        return np.random.default_rng()
+    if isinstance(rng, bool) or not isinstance(rng, (Integral, np.integer)) or rng < 0:
+        raise ParameterError(f"rng= takes a seed, a whole number >= 0, or a numpy.random.Generator, got {rng!r}")
+    return np.random.default_rng(int(rng))

@@ -1,0 +1,159 @@
+"""The verb ``quenched``: averages over products of random transfer matrices."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from itertools import combinations_with_replacement
+from typing import Any
+
+import numpy as np
+
+from ..declare import Chain
+from ..errors import NotApplicable, ParameterError, SolveError
+from .laws import Realisation
+from .message import start
+from .problem import Problem, generator, positive, read_problem
+from .result import QuenchedChain
+from .steps import BETA, StepMaker, observable
+from .strata import node_count
+from .walk import burn_in, walk
+
+__all__ = ["quenched"]
+
+#: Replicas when none are asked for.
+_REPLICAS = 64
+#: Observables up to which all pairs of them are carried along.
+_PAIRED = 3
+#: Cells after which messages that still differ are let be.
+_SHORTEST_LIMIT = 2000
+
+
+def quenched(
+    chain: Chain,
+    random: Mapping[str, Any],
+    *,
+    cells: int = 1000,
+    replicas: int | None = None,
+    rng: int | np.random.Generator | None = None,
+    control_variates: bool = True,
+    derivatives: Iterable[tuple[str, str]] = (),
+) -> QuenchedChain:
+    """Average an infinite chain over quenched disorder: −T E ln Z per cell, and its derivatives.
+
+    Random parameters are independent from cell to cell and for every copy of a term that takes them. Messages and
+    their exact derivatives by T, parameters and fields are carried along a product of random transfer matrices in the
+    log domain; nothing is a finite difference. Error bars come from independent replicas.
+
+    Parameters
+    ----------
+    chain : Chain
+        With T and everything that is neither random nor defaulted fixed.
+    random : mapping of str to law
+        By parameter; a law is anything `as_law` reads. A list of values is one realisation, of
+        ``cells`` times the number of copies per cell, on a chain with a free left end.
+    cells : int
+        Cells averaged over per replica, after a burn-in that is found by itself.
+    replicas : int, optional
+        Independent chains, at least 2; 64 when left out, 1 when everything random is listed.
+    rng : int or numpy Generator, optional
+        Seed. The same seed gives the same numbers.
+    control_variates : bool
+        Take noise out of the free energy and first derivatives by averages over the next draw.
+    derivatives : iterable of pairs of names
+        Second derivatives of the free energy to carry along, beyond c and the susceptibilities.
+
+    Returns
+    -------
+    QuenchedChain
+        Averages with ``.value`` and ``.error``.
+
+    Raises
+    ------
+    ParameterError, DeclarationError
+        Unusable names, laws, counts or seeds.
+    NotApplicable
+        T = 0.
+
+    Notes
+    -----
+    H. Furstenberg and H. Kesten, Ann. Math. Stat. 31, 457 (1960) for the limit (from memory).
+
+    Examples
+    --------
+    >>> from tmsolve import Chain, bond, ising
+    >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)])
+    >>> average = quenched(chain.fix(T=1), {"J": {-1: 0.5, 1: 0.5}}, cells=50, replicas=4, rng=1).free_energy
+    >>> round(average.value, 12), average.error < 1e-15                            # −ln 2cosh 1 whatever the signs
+    (-1.126928011043, True)
+    """
+    cells = positive(cells, "cells=")
+    problem = read_problem(chain, random, cells)
+    replicas = _replicas(problem, replicas)
+    seed = int(generator(rng).integers(2**62)) if not _is_seed(rng) else int(generator_seed(rng))
+    stream = np.random.default_rng([seed, 0])
+    maker = _maker(problem, derivatives)
+    controls = bool(control_variates) and not problem.listed and node_count(problem) > 0
+    notes: tuple[str, ...] = ()
+    if problem.listed:
+        message, walked = start(maker.states, len(maker.tilts), len(maker.pairs), replicas), 0
+    else:
+        burnt = burn_in(maker, stream, replicas, max(cells, _SHORTEST_LIMIT))
+        message, walked = burnt.message, burnt.cells
+        if not burnt.forgotten:
+            notes = (
+                f"messages from different ends still differ after {walked // 2} cells: averages may depend on the end; "
+                "take more cells",
+            )
+    rates = walk(maker, stream, message, cells, controls)
+    return QuenchedChain(cells, replicas, walked, seed, controls, notes, maker, rates)
+
+
+def _is_seed(rng: Any) -> bool:
+    return rng is not None and not isinstance(rng, np.random.Generator)
+
+
+def generator_seed(rng: Any) -> int:
+    """Return a seed after checking it as `generator` does."""
+    generator(rng)
+    return int(rng)
+
+
+def _replicas(problem: Problem, replicas: Any) -> int:
+    single = all(isinstance(law, Realisation) for law in problem.laws.values())
+    if replicas is None:
+        return 1 if single else _REPLICAS
+    count = positive(replicas, "replicas=")
+    if single and count > 1:
+        raise ParameterError(f"lists are one realisation, got replicas={count}; leave replicas out")
+    if not single and count < 2:
+        raise ParameterError(f"an error bar needs at least 2 replicas, got {count}")
+    return count
+
+
+def _maker(problem: Problem, derivatives: Iterable[tuple[str, str]]) -> StepMaker:
+    """Choose the tangents: temperature, observables, and every parameter that the energy is smooth in."""
+    observed = [observable(name) for name in problem.observables]
+    tilts = [BETA, *observed]
+    tilts += [name for name in problem.parameters if _smooth(problem, name)]
+    pairs = [(BETA, BETA)]
+    pairs += list(combinations_with_replacement(observed, 2)) if len(observed) <= _PAIRED else [(a, a) for a in observed]
+    for names in derivatives:
+        if not isinstance(names, (tuple, list)) or len(names) != 2:
+            raise ParameterError(f'derivatives= takes pairs of names such as ("J", "h"), got {names!r}')
+        pair = [BETA if name == "T" else name for name in names]
+        for name in pair:
+            if name not in tilts:
+                raise ParameterError(f"the energy has no smooth parameter {name!r} to differentiate by")
+        pairs.append((pair[0], pair[1]))
+    numbers = {tuple(sorted((tilts.index(a), tilts.index(b)))) for a, b in pairs}
+    return StepMaker(problem, tuple(tilts), tuple(sorted((i, j) for i, j in numbers)))
+
+
+def _smooth(problem: Problem, name: str) -> bool:
+    probe = StepMaker(problem, (name,))
+    drawn = {copy: np.full(1, law.quadrature(4)[0][0] if law.support else law.mean) for copy, law, _, _ in problem.draws}
+    try:
+        probe.steps(drawn, 1)
+    except (NotApplicable, SolveError):
+        return False
+    return True

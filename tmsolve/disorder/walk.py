@@ -1,0 +1,178 @@
+"""Walking along many replicas of a disordered chain and adding up what every cell contributes."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass
+from functools import partial
+
+import numpy as np
+
+from .controls import Expected, expected
+from .message import Growth, Message, advance, start
+from .problem import Problem
+from .steps import StepMaker, Steps
+from .strata import next_draws, node_count
+
+__all__ = ["Burnt", "Rates", "burn_in", "random_steps", "walk"]
+
+#: Matrix entries, tangents included, that are made at a time.
+_BLOCK = 1_500_000
+#: Messages from different starts that agree so closely have forgotten them.
+_FORGOTTEN = 1e-9
+#: Weight of the states that a start does not favour, by its logarithm.
+_FAINT = -100.0
+#: Batches per replica from which control variates are fitted.
+_BATCHES = 20
+
+
+@dataclass(frozen=True, eq=False)
+class Burnt:
+    """Messages that no longer remember their end.
+
+    Attributes
+    ----------
+    message : Message
+    cells : int
+        Cells walked before counting starts.
+    forgotten : bool
+        Whether messages from different ends met.
+    """
+
+    message: Message
+    cells: int
+    forgotten: bool
+
+
+@dataclass(frozen=True, eq=False)
+class Rates:
+    """Growth per cell in batches, and controls of zero mean; the last two axes are (batches, replicas).
+
+    Attributes
+    ----------
+    lengths : ndarray of int, shape (batches,)
+        Cells per batch.
+    value, first, second : ndarray
+        Growth of ln Z and its derivatives.
+    mean_value, mean_first : ndarray or None
+        The same averaged over the draw of every cell; ``None`` without control variates.
+    controls, slopes : ndarray or None
+        Controls, (features, …), and their derivatives, (features, tilts, …).
+    """
+
+    lengths: np.ndarray
+    value: np.ndarray
+    first: np.ndarray
+    second: np.ndarray
+    mean_value: np.ndarray | None = None
+    mean_first: np.ndarray | None = None
+    controls: np.ndarray | None = None
+    slopes: np.ndarray | None = None
+
+
+def _block(maker: StepMaker, columns: int) -> int:
+    size = maker.states**2 * columns * (1 + len(maker.tilts) + len(maker.pairs))
+    return max(1, _BLOCK // max(size, 1))
+
+
+def random_steps(
+    maker: StepMaker, rng: np.random.Generator, cells: int, replicas: int, longest: int | None = None
+) -> Iterator[Steps]:
+    """Yield the matrices of one cell after the other, over all replicas."""
+    block = min(_block(maker, replicas), longest or cells)
+    for begin in range(0, cells, block):
+        count = min(block, cells - begin)
+        drawn = maker.problem.draw(rng, begin, count, replicas)
+        steps = maker.steps({copy: array.ravel() for copy, array in drawn.items()}, count * replicas)
+        for i in range(count):
+            yield steps.at(slice(i * replicas, (i + 1) * replicas))
+
+
+def burn_in(maker: StepMaker, rng: np.random.Generator, replicas: int, longest: int) -> Burnt:
+    """Walk until messages that start from every state have met, and then as far again with tangents."""
+    states = maker.states
+    bare = StepMaker(maker.problem)
+    log = np.where(np.eye(states, dtype=bool), 0.0, _FAINT)[:, :, None].repeat(replicas, axis=2)
+    empty = np.zeros((0, states, states * replicas))
+    messages = Message(log.reshape(states, -1), empty, empty)
+    cells, forgotten = 0, states == 1
+    for step in random_steps(bare, rng, longest if not forgotten else 0, replicas, 64):
+        wide = Steps(np.tile(step.log, states), step.first, step.second)
+        messages, _ = advance(messages, wide)
+        cells += 1
+        if cells % 8 == 0 and _spread(messages.log.reshape(states, states, replicas)) < _FORGOTTEN:
+            forgotten = True
+            break
+    message = start(states, len(maker.tilts), len(maker.pairs), replicas)
+    message = Message(messages.log[:, :replicas], message.first, message.second) if cells else message
+    for step in random_steps(maker, rng, cells, replicas):
+        message, _ = advance(message, step, maker.pairs)
+    return Burnt(message, 2 * cells, forgotten)
+
+
+def _spread(logs: np.ndarray) -> float:
+    """Return how far messages (states, starts, replicas) differ, by their logarithms."""
+    finite = np.isfinite(logs)
+    if (finite.any(axis=1) != finite.all(axis=1)).any():
+        return np.inf
+    held = np.where(finite, logs, 0.0)
+    return float(np.ptp(held, axis=1).max())
+
+
+def walk(maker: StepMaker, rng: np.random.Generator, begin: Message, cells: int, controls: bool) -> Rates:
+    """Walk over ``cells`` cells from a message and collect growth and controls."""
+    replicas = begin.log.shape[1]
+    batches = min(_BATCHES, cells)
+    lengths = np.array([len(part) for part in np.array_split(np.arange(cells), batches)])
+    steps = random_steps(maker, rng, cells, replicas)
+    nodes = _nodes(maker, rng, cells, replicas) if controls else None
+    power = _power(begin)
+    message = begin
+    rows = []
+    for length in lengths:
+        total: list[np.ndarray] | None = None
+        for _ in range(length):
+            ahead = [] if nodes is None else _parts(expected(message, *next(nodes), power))
+            message, growth = advance(message, next(steps), maker.pairs)
+            new = [growth.value, growth.first, growth.second, *ahead]
+            total = new if total is None else [a + b for a, b in zip(total, new, strict=True)]
+        assert total is not None
+        rows.append([array / length for array in total])
+    return Rates(lengths, *(np.stack(part, axis=-2) for part in zip(*rows, strict=True)))
+
+
+def _parts(ahead: Expected) -> list[np.ndarray]:
+    growth: Growth = ahead.growth
+    return [growth.value, growth.first, ahead.controls, ahead.slopes]
+
+
+def _power(message: Message) -> float:
+    """Return the power of probabilities at which polynomials of a message vary over its whole range."""
+    finite = np.isfinite(message.log)
+    held = np.where(finite, message.log, 0.0)
+    deviation = np.sqrt(2) * np.sqrt(held.var(axis=1, where=finite | ~finite.any(axis=1, keepdims=True)).max())
+    return 1.5 / max(1.5, float(deviation))
+
+
+def _nodes(
+    maker: StepMaker, rng: np.random.Generator, cells: int, replicas: int
+) -> Iterator[tuple[Steps, np.ndarray]]:
+    """Yield matrices over all draws of one cell, and their weights (nodes, replicas)."""
+    problem: Problem = maker.problem
+    bare = StepMaker(problem, maker.tilts)
+    columns = node_count(problem) * replicas
+    block = _block(bare, columns)
+    for begin in range(0, cells, block):
+        count = min(block, cells - begin)
+        drawn, weights = next_draws(problem, rng, (count, replicas))
+        flat = {copy: _by_cell(array) for copy, array in drawn.items()}
+        steps = bare.steps(flat, count * columns)
+        yield from map(partial(_one, steps, weights, columns), range(count))
+
+
+def _by_cell(array: np.ndarray) -> np.ndarray:
+    return np.ascontiguousarray(array.transpose(1, 0, 2)).ravel()
+
+
+def _one(steps: Steps, weights: np.ndarray, columns: int, i: int) -> tuple[Steps, np.ndarray]:
+    return steps.at(slice(i * columns, (i + 1) * columns)), weights[:, i]
