@@ -17,7 +17,7 @@ from ..operators.algebras import LogTable
 from ..operators.product import repeated
 from .scaled import Scaled, add, along, from_logs, none, rearranged, times
 
-__all__ = ["Block", "Cell", "Run", "chained", "close", "join_counts", "one_cell", "product", "shifted", "to_cell"]
+__all__ = ["Block", "Cell", "Run", "chained", "close", "counted", "power", "product", "shifted", "to_cell"]
 
 
 @dataclass(frozen=True)
@@ -85,8 +85,16 @@ def to_cell(whole: LogTable, inside: LogTable | None = None, outside: LogTable |
     return Cell(every, full(inside), full(outside))
 
 
-def one_cell(cell: Cell) -> Block:
-    """Return the block of a single cell that `join_counts` joins."""
+def counted(beta: np.ndarray, runs: Iterable[Run]) -> Block:
+    """Return the block of a whole chain with the numbers of cells in the value and of runs."""
+
+    def join(one: Block, two: Block) -> Block:
+        return _join_counts(beta, one, two)
+
+    return chained(beta, runs, lambda cell, count: repeated(join, _one_cell(cell), count), join)
+
+
+def _one_cell(cell: Cell) -> Block:
     assert cell.inside is not None and cell.outside is not None
     nothing = none(cell.whole.mantissa.shape)
     inside = dict.fromkeys(("every", "cells", "first"), cell.inside)
@@ -98,7 +106,13 @@ def product(first: Scaled, second: Scaled, beta: np.ndarray) -> Scaled:
     return along(times(first[..., None, :], second[..., None, :, :, :]), -3, beta)
 
 
-def join_counts(beta: np.ndarray, one: Block, two: Block) -> Block:
+def power(matrix: Scaled, count: int, beta: np.ndarray) -> Scaled:
+    """Multiply ``count`` ≥ 1 equal matrices."""
+    result: Scaled = repeated(lambda first, second: product(first, second, beta), matrix, count)
+    return result
+
+
+def _join_counts(beta: np.ndarray, one: Block, two: Block) -> Block:
     """Return the block of two neighbouring blocks."""
     parts = {
         name: add([product(one.parts[x], two.parts[y], beta) for x, y in pairs], beta)
@@ -108,19 +122,22 @@ def join_counts(beta: np.ndarray, one: Block, two: Block) -> Block:
 
 
 def chained(
-    beta: np.ndarray, runs: Iterable[Run], single: Callable[[Cell], Block], join: Callable[[Block, Block], Block]
+    beta: np.ndarray, runs: Iterable[Run], many: Callable[[Cell, int], Block], join: Callable[[Block, Block], Block]
 ) -> Block:
-    """Join all windows of a chain into one block; those beyond the ends are multiplied to it."""
+    """Join all windows of a chain into one block; those beyond the ends are multiplied to it.
+
+    ``many`` returns the block of some equal cells.
+    """
     before: Scaled | None = None
     block: Block | None = None
     for cell, count in runs:
         if cell.inside is not None:
-            part: Block = repeated(join, single(cell), count)
+            part = many(cell, count)
             if before is not None:
                 part, before = _led(before, part, beta), None
             block = part if block is None else join(block, part)
             continue
-        plain: Scaled = repeated(lambda x, y: product(x, y, beta), cell.whole, count)
+        plain = power(cell.whole, count, beta)
         if block is not None:
             block = _followed(block, plain, beta)
         else:

@@ -4,14 +4,13 @@ from __future__ import annotations
 
 from dataclasses import dataclass, field
 from fractions import Fraction
-from functools import partial
 from typing import Any
 
 import numpy as np
 
 from ..errors import NotApplicable, ParameterError
 from ..operators.algebras import LogTable
-from .blocks import Block, Run, chained, close, join_counts, one_cell, to_cell
+from .blocks import Block, Run, close, counted, to_cell
 from .counting import part_values
 from .distribution import Distribution
 from .lengths import weights_by_length
@@ -160,7 +159,7 @@ class FiniteDomains:
             beta = self._track.algebra().beta
             runs = _cells(self._track, self.observable, exact)
             with np.errstate(under="ignore"):
-                self._known[exact] = runs, chained(beta, runs, one_cell, partial(join_counts, beta))
+                self._known[exact] = runs, counted(beta, runs)
         return self._known[exact]
 
     def _closed(self, block: Block, names: list[str]) -> Scaled:

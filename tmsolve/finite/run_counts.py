@@ -16,7 +16,7 @@ from .scaled import Scaled, add, along, none, rearranged
 __all__ = ["weights_by_number"]
 
 #: Most products of matrix entries that are worth the wait.
-_WORK_LIMIT = 10**9
+_WORK_LIMIT = 2 * 10**8
 
 #: By whether the first and whether the last cell is in the value.
 _Messages = dict[tuple[bool, bool], Scaled]

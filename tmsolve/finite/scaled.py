@@ -114,9 +114,11 @@ def along(table: Scaled, axis: int, beta: np.ndarray) -> Scaled:
     >>> float(total.mantissa[0] * 2 ** total.exponent[0]), float(total.energy[0])
     (3.0, 7.0)
     """
-    best = np.expand_dims(_size(table, beta).argmax(axis=axis), axis)
-    parts = np.broadcast_arrays(table.mantissa, table.exponent, table.energy, table.rest)
-    largest = Scaled(*(np.take_along_axis(part, best, axis) for part in parts))
+    size = _size(table, beta)
+    best = size.argmax(axis=axis, keepdims=True)
+    index: list[Any] = list(np.indices(best.shape, sparse=True))
+    index[axis] = best
+    largest = table[tuple(index)]
     terms = table.mantissa * np.exp(np.where(table.mantissa > 0, _distance(table, largest, beta), 0.0))
     exponent, energy, rest = (np.squeeze(p, axis) for p in (largest.exponent, largest.energy, largest.rest))
     return _normal(terms.sum(axis=axis), exponent, energy, rest)
