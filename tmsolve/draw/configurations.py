@@ -12,7 +12,7 @@ from ..declare import Point
 from ..errors import ParameterError, did_you_mean, listing
 from .average import Average, over_replicas
 from .given import check_whole
-from .readout import per_cell, total_energy
+from .readout import Readout, energy_terms
 
 __all__ = ["Sample"]
 
@@ -111,32 +111,47 @@ class Sample:
         return each.T if per_cell else each.sum(axis=0)
 
     def _each(self, name: str) -> np.ndarray:
+        return self._readout(name)(self._columns)
+
+    def _readout(self, name: str) -> Readout:
         parts = self.point.chain.observable(name)
-        return per_cell(self.point, self.realisation, self._columns, parts, self.boundary == "ring")
+        return Readout(self.point, self.realisation, self.cells, parts, self.boundary == "ring")
+
+    def _complete(self, name: str) -> slice:
+        """Return the cells whose contribution counts: in a piece of a longer chain those that are all there."""
+        return self._readout(name).complete if self.boundary == "infinite" else slice(0, self.cells)
 
     @property
     def energies(self) -> np.ndarray:
         """Energy of every configuration, in energy units, shape (count,); terms beyond the ends are left out."""
-        return total_energy(self.point, self.realisation, self._columns, self.boundary == "ring")
+        closed = self.boundary == "ring"
+        return Readout(self.point, self.realisation, self.cells, energy_terms(self.point), closed)(self._columns).sum(0)
 
     def mean(self, name: str) -> Average:
-        """Return the mean of an observable per cell, with its standard error."""
-        return over_replicas(self.observable(name) / self.cells)
+        """Return the mean of an observable per cell, with its standard error.
+
+        In a window of the infinite chain, cells from which the observable reaches out of the
+        window do not count; at an open end what is missing counts 0.
+        """
+        return over_replicas(self._each(name)[self._complete(name)].mean(axis=0))
 
     def profile(self, name: str) -> Average:
         """Return the mean of an observable in every cell, shape (N,), with standard errors."""
         return over_replicas(self.observable(name, per_cell=True))
 
     def correlation(self, a: str, b: str, distance: int) -> Average:
-        """Return the mean of a_i b_{i+distance} over cells, not connected, with its standard error."""
+        """Return the mean of a_i b_{i+distance} over cells i, not connected, with its standard error."""
         distance = check_whole(distance, "the distance of a correlation", 0)
-        closed = self.boundary == "ring"
-        if distance >= self.cells:
-            raise ParameterError(f"the distance of a correlation must be less than {self.cells} cells, got {distance}")
-        left, right = self._each(a), self._each(b)
-        right = np.roll(right, -distance, axis=0)
-        pairs = left * right if closed else (left * right)[: self.cells - distance]
-        return over_replicas(pairs.mean(axis=0))
+        first, second = self._complete(a), self._complete(b)
+        start, stop = max(first.start, second.start - distance), min(first.stop, second.stop - distance)
+        if self.boundary == "ring" and distance < self.cells:
+            start, stop = 0, self.cells
+        if start >= stop:
+            raise ParameterError(
+                f"no two cells of these {self.cells} hold {a!r} and {b!r} at a distance of {distance}; draw more cells"
+            )
+        other = np.roll(self._each(b), -distance, axis=0)
+        return over_replicas((self._each(a) * other)[start:stop].mean(axis=0))
 
     def __str__(self) -> str:
         what = {"ring": "rings of {} cells", "open": "open chains of {} cells", "infinite": "windows of {} cells"}

@@ -3,6 +3,8 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
@@ -10,60 +12,68 @@ from ..declare import Point, Term
 from ..errors import NotApplicable
 from .row import site_tables
 
-__all__ = ["per_cell", "total_energy"]
+__all__ = ["Readout", "energy_terms"]
 
 
-def per_cell(
-    point: Point,
-    arrays: Mapping[str, np.ndarray],
-    states: Mapping[str, np.ndarray],
-    parts: tuple[Term, ...],
-    closed: bool,
-) -> np.ndarray:
-    """Return the sum of an observable's parts anchored in each cell.
+@dataclass(frozen=True, eq=False)
+class Readout:
+    """Looks an observable up in configurations.
 
-    Parameters
+    Attributes
     ----------
     point : Point
         Parameters.
     arrays : mapping
         Parameters that differ from cell to cell.
-    states : mapping
-        State numbers by kind, shape (cells, replicas).
+    cells : int
+        N.
     parts : tuple of Term
         What is summed; a part that reaches beyond an end counts 0 there.
     closed : bool
         Whether cell N is cell 0.
-
-    Returns
-    -------
-    ndarray, shape (cells, replicas)
     """
-    cells, replicas = next(iter(states.values())).shape
-    tables = site_tables(point, arrays, cells)
-    total = np.zeros((cells, replicas))
-    for part in parts:
-        table = tables.table(part)
-        if table is None:
-            continue
+
+    point: Point
+    arrays: Mapping[str, np.ndarray]
+    cells: int
+    parts: tuple[Term, ...]
+    closed: bool
+
+    @property
+    def complete(self) -> slice:
+        """The cells in which every part is there."""
+        inside = [self._inside(part) for part in self.parts]
+        return slice(max((a for a, _ in inside), default=0), max(0, min((b for _, b in inside), default=self.cells)))
+
+    def _inside(self, part: Term) -> tuple[int, int]:
         shifts = [shift for _, shift in part.sites]
-        first, last = (0, cells) if closed else (max(0, -min(shifts)), min(cells, cells - max(shifts)))
-        if first >= last:
-            continue
-        index = np.zeros((last - first, replicas), dtype=np.int32 if table.size < 2**31 else np.int64)
-        for (kind, shift), size in zip(part.sites, table.shape[:-1], strict=True):
-            moved = states[kind][first + shift : last + shift] if not closed else np.roll(states[kind], -shift, axis=0)
-            index = index * size + moved
-        flat = table.reshape(-1, table.shape[-1])
-        own = np.zeros(1, dtype=np.intp) if flat.shape[1] == 1 else np.arange(first, last)
-        total[first:last] += flat[index, own[:, None]]
-    return total
+        return (0, self.cells) if self.closed else (max(0, -min(shifts)), min(self.cells, self.cells - max(shifts)))
+
+    @cached_property
+    def _tables(self) -> list[tuple[Term, np.ndarray]]:
+        tables = site_tables(self.point, self.arrays, self.cells)
+        found = [(part, tables.table(part)) for part in self.parts]
+        return [(part, table) for part, table in found if table is not None]
+
+    def __call__(self, states: Mapping[str, np.ndarray]) -> np.ndarray:
+        """Return what each cell contributes; states are state numbers by kind, all of shape (cells, replicas)."""
+        replicas = next(iter(states.values())).shape[1]
+        total = np.zeros((self.cells, replicas))
+        for part, table in self._tables:
+            first, last = self._inside(part)
+            if first >= last:
+                continue
+            index = np.zeros((last - first, replicas), dtype=np.int32 if table.size < 2**31 else np.int64)
+            for (kind, shift), size in zip(part.sites, table.shape[:-1], strict=True):
+                index *= size
+                index += np.roll(states[kind], -shift, axis=0)[first:last] if shift else states[kind][first:last]
+            flat = table.reshape(-1, table.shape[-1])
+            total[first:last] += flat[index, 0] if flat.shape[1] == 1 else flat[index, np.arange(first, last)[:, None]]
+        return total
 
 
-def total_energy(
-    point: Point, arrays: Mapping[str, np.ndarray], states: Mapping[str, np.ndarray], closed: bool
-) -> np.ndarray:
-    """Return the energy of each replica, shape (replicas,).
+def energy_terms(point: Point) -> tuple[Term, ...]:
+    """Return the terms of the energy.
 
     Raises
     ------
@@ -72,4 +82,4 @@ def total_energy(
     """
     if point.chain.has_weights:
         raise NotApplicable("this chain is declared by weights; a configuration has no energy, only a weight")
-    return per_cell(point, arrays, states, point.chain.terms, closed).sum(axis=0)
+    return point.chain.terms
