@@ -7,6 +7,8 @@ import math
 import numpy as np
 import pytest
 
+from tmsolve import Chain, bond, models, ring, spins
+
 
 def column(text, head, number=1):
     """Read a printed list back: the numbers of one column below the line ``head``."""
@@ -115,6 +117,70 @@ def test_impurities(tm):
     assert document["impurities"] == {"3": {"J": 0.1, "h": pytest.approx(1 / 3)}, "8": {"h": 2}}
 
 
+# An invented guest with three states; "m" of the host sees them as they are.
+GUEST = '''"""Invented guest.
+
+E = -A s_i s_{i+1},  s = -1, 0, +1
+"""
+
+from tmsolve import Chain, bond, spins
+
+
+def chain():
+    return Chain(spins(1), [bond(lambda s, t, A: -A*s*t)], name="invented guest")
+
+
+DEFAULTS = {"A": "0.5"}
+'''
+
+
+def test_cells_of_another_model(tm, write):
+    path = write(GUEST, "guest.py")
+    words = ["finite", "ising", "--cells", 5, "-p", "J=0.7", "-p", "T=0.9", "-p", "h=0.2"]
+    words += ["--read", "log_Z,domains(m)"]
+    ended = tm(*words, "--impurity", f"1+3={path}:A=1/4", "--impurity", "4:J=0", "--digits", 12)
+    assert "  cell 1: model guest, A = 0.25\n  cell 3: model guest, A = 0.25\n  cell 4: J = 0\n" in ended.out
+    guest = Chain(spins(1), [bond(lambda s, t, A: -A * s * t)]).at(A="1/4", T="0.9")
+    point = models.load("ising").chain.at(J="0.7", h="0.2", T="0.9")
+    wanted = ring(point, 5, impurities={1: guest, 3: guest, 4: {"J": 0}})
+    row = next(line.split() for line in ended.out.splitlines() if line.startswith("log_Z"))
+    assert float(row[1]) == pytest.approx(float(wanted.log_Z), rel=1e-11)
+    found = wanted.domains("m")
+    assert column(ended.out, "domains(m)", 0) == [-1, 0, 1]
+    assert column(ended.out, "domains(m)", 2) == pytest.approx([float(found.number(v)) for v in (-1, 0, 1)], rel=1e-10)
+    document = tm(*words, "--impurity", f"3={path}", "--impurity", "0-1:h=1", "--json").json
+    assert document["impurities"] == {
+        "0": {"h": 1},
+        "1": {"h": 1},
+        "3": {"model": "guest", "parameters": {"A": 0.5}},
+    }
+
+
+def test_domains_as_a_table_and_in_files(tm, tmp_path):
+    path = tmp_path / "d.csv"
+    words = ["finite", "blume_capel", "--cells", 10**9, "-p", "D=1", "-p", "J=0", "-p", "h=0", "-p", "T=1"]
+    ended = tm(*words, "--read", "domains(q)", "--out", path)
+    assert ["q", "fraction", "of", "cells", "number", "of", "runs", "mean", "length"] in map(
+        str.split, ended.out.splitlines()
+    )
+    some = 2 * math.exp(-1) / (1 + 2 * math.exp(-1))
+    rows = list(csv.DictReader(path.open(encoding="utf-8")))
+    assert [row["q"] for row in rows] == ["0", "1"]
+    assert float(rows[1]["fraction of cells"]) == pytest.approx(some, rel=1e-13)
+    assert float(rows[1]["number of runs"]) == pytest.approx(1e9 * some * (1 - some), rel=1e-13)
+    assert float(rows[0]["mean length"]) == pytest.approx(1 / some, rel=1e-13)
+    document = tm(*words, "--read", "domains(q),log_Z", "--json").json
+    table = document["results"]["domains(q)"]
+    assert list(table) == ["values", "fractions", "numbers", "mean_lengths"] and table["values"] == [0, 1]
+    assert document["units"]["domains(q)"] == "1"
+
+
+def test_a_value_without_domains(tm):
+    words = ["finite", "ising", "--cells", 2, "--left", 1, "--right", 1, "--read", "domains(m)"]
+    assert tm(*words, "--json").json["results"]["domains(m)"]["mean_lengths"] == [None, 2]
+    assert tm(*words).out.splitlines()[-2].split() == ["-1", "0", "0", "-"]
+
+
 def test_figures_of_profiles_and_distributions(tm, tmp_path, monkeypatch):
     pytest.importorskip("matplotlib")
     import tmsolve.plotting.files as files
@@ -154,7 +220,7 @@ def test_what_fails_is_told_and_the_rest_is_printed(tm):
         (["mixed_spin", "--cells", "5", "--left", "1"], ["--left takes NAME=VALUE", "got '1'"]),
         (["mixed_spin", "--cells", "5", "--left", "c=1"], ["--left c: no site 'c'; a cell has"]),
         (["ising", "--cells", "5", "--impurity", "5:J=1"], ["one of the cells 0 to 4, got 5"]),
-        (["ising", "--cells", "5", "--impurity", "J=1"], ["CELL:NAME=VALUE", "17:J=0.2", "got 'J=1'"]),
+        (["ising", "--cells", "5", "--impurity", "J=1"], ["CELLS:NAME=VALUE", "17:J=0.2", "17=guest.py", "got 'J=1'"]),
         (["ising", "--cells", "5", "--impurity", "x:J=1"], ["cell of --impurity", "got 'x'"]),
         (["ising", "--cells", "5", "--impurity", "1:K=1"], ["no parameter 'K'"]),
         (["ising", "--cells", "5", "--impurity", "1:T=1"], ["cell 1 gives T", "one temperature"]),
@@ -167,12 +233,29 @@ def test_what_fails_is_told_and_the_rest_is_printed(tm):
         (["ising", "--cells", "5", "--read", "correlation(0,m,m,2)"], ["write correlation(a,b,i,j)"]),
         (["ising", "--cells", "1000000", "--read", "profile(m)"], ["at most 200000 cells", "mean(a,i)"]),
         (["ising", "--cells", "5", "--plot", "a.png"], ["--plot draws profiles and distributions"]),
-        (["ising", "--cells", "5", "--out", "a.csv"], ["one profile or one distribution, and 4 quantities"]),
+        (
+            ["ising", "--cells", "5", "--out", "a.csv"],
+            ["one profile, distribution or domains", "got log_Z, free_energy, mean(m)"],
+        ),
         (["ising", "--cells", "5", "--out", "a.txt"], ["--out"]),
+        (["ising", "--cells", "5", "--impurity", "1-9:J=1"], ["one of the cells 0 to 4, got 9"]),
+        (["ising", "--cells", "5", "--impurity", "3-1:J=1"], ["cell of --impurity", ">= 3, got '1'"]),
+        (["ising", "--cells", "5", "--impurity", "1="], ["CELLS=MODEL", "got '1='"]),
+        (["ising", "--cells", "5", "--impurity", "1=no.py"], ["--impurity 1=no.py: ", "no.py"]),
+        (["ising", "--cells", "5", "--impurity", "1=isin"], ["--impurity 1=isin: ", "Did you mean 'ising'?"]),
+        (["ising", "--cells", "5", "--impurity", "1=ising:D=1"], ["--impurity 1=ising D: no parameter 'D'"]),
+        (["ising", "--cells", "5", "--impurity", "1=ising:T=2"], ["one temperature holds", "-p T=…"]),
+        (
+            ["ising", "--cells", "5", "--impurity", "1=mixed_spin"],
+            ["impurity in cell 1 has sites", "same kinds of site"],
+        ),
+        (["ising", "--cells", "5", "--impurity", "1=guest.py"], ["no value for A", "give --impurity 1=guest.py:A=…"]),
+        (["spin1_nnn", "--cells", "5", "--read", "domains"], ["write domains(a)"]),
     ],
 )
 def test_bad_input_is_a_usage_error(tm, words, fragments, tmp_path, monkeypatch):
     monkeypatch.chdir(tmp_path)
+    (tmp_path / "guest.py").write_text(GUEST.replace('DEFAULTS = {"A": "0.5"}', ""), encoding="utf-8")
     ended = tm("finite", *words)
     assert ended.code == 2 and ended.out == ""
     for fragment in fragments:

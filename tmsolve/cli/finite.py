@@ -12,17 +12,17 @@ from typing import TYPE_CHECKING, Any
 from ..errors import DeclarationError, ParameterError, SolveError, TmsolveError, listing
 from .figures import tried
 from .files import check_output, figure_path
-from .finite_quantities import LISTED, Asked, read_quantity
+from .finite_impurities import FORM, HELP, Impurity, read_impurities
+from .finite_quantities import LISTED, TABLES, Asked, read_quantity
 from .finite_shown import csv_rows, draw, json_value, text
 from .grids import write_rows
 from .jsontext import json_text
 from .layout import heading
-from .model import Values, check_names, fill, given_values, load_model
+from .model import Values, fill, given_values, load_model
 from .options import add_common, add_digits, add_model, add_out, add_plot, digits_of
 from .outcome import DONE, SOME_FAILED, UsageError
 from .parser import Parser
-from .table import show_exact
-from .words import assignments, exact, split_names, whole
+from .words import assignments, split_names, whole
 
 if TYPE_CHECKING:
     from ..finite.results import FiniteChain
@@ -31,12 +31,13 @@ if TYPE_CHECKING:
 OPERANDS = "MODEL --cells N"
 DESCRIPTION = """\
 A ring of N cells, or with --open a chain with two ends: partition function, totals, moments, profiles,
-correlations, and exact distributions with accurate tails. N may be a billion."""
+correlations, domains, and exact distributions with accurate tails. N may be a billion."""
 EXAMPLES = """\
   tmsolve finite ising --cells 1001 -p J=-400 -p T=1
   tmsolve finite ising --cells 200 --read "distribution(m)" --out distribution.csv --plot distribution.png
   tmsolve finite ising --cells 101 --left 1 --right=-1 -p T=0.2 --read "profile(m)" --plot wall.png
   tmsolve finite blume_capel --cells 50 --open --impurity 25:D=0,J=2 --read "profile(q)" --json
+  tmsolve finite ising --cells 60 --impurity 20+40=blume_capel:D=0.5,J=1,h=0 --read "log_Z,domains(m)"
 """
 #: More cells than this are not listed.
 _LONGEST = 200_000
@@ -58,10 +59,10 @@ def configure(parser: Parser) -> None:
         )
     parser.add_argument(
         "--impurity",
-        metavar="CELL:NAME=VALUE,…",
+        metavar=FORM,
         action="append",
         default=[],
-        help="other parameters in one cell, 0 to N-1, and in the bonds that start there; repeatable",
+        help=HELP,
     )
     parser.add_argument(
         "--read",
@@ -70,13 +71,19 @@ def configure(parser: Parser) -> None:
         default=[],
         help=(
             "quantities, separated by commas: log_Z free_energy total(a) mean(a) mean(a,i) covariance(a) "
-            "covariance(a,b) correlation(a,b,i,j) cumulants(a) moments(a) profile(a) distribution(a); a, b are "
-            "observables, i, j cells from 0 to N-1; the correlation is the connected one. Default: log_Z, "
+            "covariance(a,b) correlation(a,b,i,j) cumulants(a) moments(a) profile(a) distribution(a) domains(a); a, b "
+            "are observables, i, j cells from 0 to N-1. mean(a) is per cell; total, covariance, cumulants, moments and "
+            "distribution are of the sum over the chain; the correlation is the connected one; domains are maximal "
+            "runs of cells with one value: fraction of cells, mean number of runs (those cut by an open end count), "
+            "and their mean length. Default: log_Z, "
             "free_energy, and of every observable mean(a) and covariance(a)"
         ),
     )
     add_digits(parser)
-    add_out(parser, "also write the result to this file, ending in .json, or in .csv for one profile or distribution")
+    add_out(
+        parser,
+        "also write the result to this file, ending in .json; or in .csv for one profile, distribution or domains",
+    )
     add_plot(parser, "draw the profiles and distributions that are read")
     add_common(parser)
 
@@ -93,17 +100,18 @@ def run(arguments: argparse.Namespace) -> int:
     cells = whole(arguments.cells, "--cells", 1)
     values = fill(given_values(arguments, model), model)
     asked = _asked(arguments, model, cells, out, figure)
-    chain = _chain(arguments, model, values, cells)
+    impurities = read_impurities(arguments.impurity, model, values, cells)
+    chain = _chain(arguments, model, values, cells, impurities)
     found, failures = _evaluate(chain, asked)
     if failures and not found:
         raise next(iter(failures.values()))
-    document = _document(arguments, model, values, chain, found, failures)
+    document = _document(arguments, model, values, chain, impurities, found, failures)
     if out is not None:
         _write(out, document, found)
     if arguments.json:
         print(json_text(document))
     else:
-        print("\n\n".join([f"{heading(model, values)}\n{_shape(document)}", text(found, digits)]))
+        print("\n\n".join([f"{heading(model, values)}\n{_shape(document, impurities)}", text(found, digits)]))
     sys.stdout.flush()
     remarks = [f"{name} failed: {error}" for name, error in failures.items()]
     listed = {key: value for key, value in found.items() if key.kind in LISTED}
@@ -125,26 +133,28 @@ def _asked(
     listed = [one for one in asked if one.kind in LISTED]
     if figure is not None and not listed:
         raise UsageError('--plot draws profiles and distributions; ask for one, such as --read "profile(m)"')
-    if out is not None and out.suffix.lower() == ".csv" and (len(listed) != 1 or len(asked) != 1):
+    if out is not None and out.suffix.lower() == ".csv" and (len(asked) != 1 or asked[0].kind not in TABLES):
         raise UsageError(
-            f"--out {out}: a .csv file holds one profile or one distribution, and {len(asked)} quantities are read; "
-            "read one, or write a .json file"
+            f"--out {out}: a .csv file holds one profile, distribution or domains of one observable, got "
+            f"{', '.join(one.name for one in asked)}; read one of these, or write a .json file"
         )
     if cells > _LONGEST and any(one.kind == "profile" for one in asked):
         raise UsageError(f"a profile lists at most {_LONGEST} cells, got --cells {cells}; read mean(a,i) of a cell i")
     return asked
 
 
-def _chain(arguments: argparse.Namespace, model: LoadedModel, values: Values, cells: int) -> FiniteChain:
+def _chain(
+    arguments: argparse.Namespace, model: LoadedModel, values: Values, cells: int, impurities: Mapping[int, Impurity]
+) -> FiniteChain:
     from ..finite.chains import open_chain, ring
 
     point = model.chain.at(**values.numbers)
     ends = {side: _end(getattr(arguments, side), f"--{side}", model) for side in ("left", "right")}
-    impurities = _impurities(arguments.impurity, model)
+    given = {cell: impurity.given for cell, impurity in impurities.items()} or None
     try:
         if arguments.open or any(end is not None for end in ends.values()):
-            return open_chain(point, cells, **ends, impurities=impurities)
-        return ring(point, cells, impurities=impurities)
+            return open_chain(point, cells, **ends, impurities=given)
+        return ring(point, cells, impurities=given)
     except (DeclarationError, ParameterError) as error:
         raise UsageError(str(error)) from error
 
@@ -175,21 +185,6 @@ def _state(written: str, kind: str, model: LoadedModel) -> Any:
         return written
 
 
-def _impurities(texts: list[str], model: LoadedModel) -> dict[int, dict[str, Fraction]] | None:
-    found: dict[int, dict[str, Fraction]] = {}
-    for written in texts:
-        where, colon, rest = written.partition(":")
-        if not colon or not rest:
-            raise UsageError(f"--impurity takes CELL:NAME=VALUE,… such as 17:J=0.2, got {written!r}")
-        cell = whole(where.strip(), "the cell of --impurity", 0)
-        if cell in found:
-            raise UsageError(f"--impurity {cell} is given twice; put all its parameters into one")
-        given = assignments(rest.split(","), f"--impurity {cell}:", "J=0.2")
-        check_names(given, model, "--impurity")
-        found[cell] = {name: exact(value, f"--impurity {cell}:{name}") for name, value in given.items()}
-    return found or None
-
-
 def _evaluate(chain: FiniteChain, asked: list[Asked]) -> tuple[dict[Asked, Any], dict[str, TmsolveError]]:
     """Return what could be computed, and why the rest could not."""
     found: dict[Asked, Any] = {}
@@ -209,6 +204,7 @@ def _document(
     model: LoadedModel,
     values: Values,
     chain: FiniteChain,
+    impurities: Mapping[int, Impurity],
     found: Mapping[Asked, Any],
     failures: Mapping[str, TmsolveError],
 ) -> dict[str, Any]:
@@ -224,10 +220,7 @@ def _document(
         "boundary": "ring" if chain.closed else "open",
         "left": arguments.left,
         "right": arguments.right,
-        "impurities": {
-            str(cell): {name: value for name, value in point.values.items() if value != values.all.get(name)}
-            for cell, point in chain.impurities.items()
-        },
+        "impurities": {str(cell): impurity.document for cell, impurity in impurities.items()},
         "results": {one.name: json_value(one, value) for one, value in found.items()},
         "units": {one.name: one.unit for one in found},
         "failed": {name: str(error) for name, error in failures.items()},
@@ -235,12 +228,11 @@ def _document(
     }
 
 
-def _shape(document: Mapping[str, Any]) -> str:
+def _shape(document: Mapping[str, Any], impurities: Mapping[int, Impurity]) -> str:
     """Return the lines on length, ends and impurities."""
     lines = [f"  {document['cells']} cells, " + ("closed to a ring" if document["boundary"] == "ring" else "open")]
     lines += [f"  {side} end: {', '.join(document[side])}" for side in ("left", "right") if document[side]]
-    for cell, changed in document["impurities"].items():
-        lines.append(f"  cell {cell}: {', '.join(f'{name} = {show_exact(value)}' for name, value in changed.items())}")
+    lines += [f"  cell {cell}: {impurity.text}" for cell, impurity in impurities.items()]
     return "\n".join(lines)
 
 

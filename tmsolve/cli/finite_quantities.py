@@ -7,7 +7,7 @@ from collections.abc import Callable
 from dataclasses import dataclass
 from typing import TYPE_CHECKING, Any
 
-from ..errors import ParameterError, did_you_mean, listing
+from ..errors import NotApplicable, ParameterError, did_you_mean, listing
 from .outcome import UsageError
 
 if TYPE_CHECKING:
@@ -15,7 +15,7 @@ if TYPE_CHECKING:
     from ..finite.distribution import Distribution
     from ..finite.results import FiniteChain
 
-__all__ = ["FORMS", "LISTED", "Asked", "read_quantity"]
+__all__ = ["FORMS", "LISTED", "TABLES", "Asked", "DomainTable", "read_quantity"]
 
 #: Name -> how it is written.
 FORMS = {
@@ -29,6 +29,7 @@ FORMS = {
     "moments": "moments(a)",
     "profile": "profile(a)",
     "distribution": "distribution(a)",
+    "domains": "domains(a)",
 }
 #: How many observables, and how many cells, may stand in the brackets.
 _SHAPES = {
@@ -42,9 +43,22 @@ _SHAPES = {
     "moments": {(1, 0)},
     "profile": {(1, 0)},
     "distribution": {(1, 0)},
+    "domains": {(1, 0)},
 }
-#: Quantities with one number per cell or per value.
+#: Quantities that can be drawn: one number per cell or per value.
 LISTED = ("profile", "distribution")
+#: Quantities that are one table.
+TABLES = (*LISTED, "domains")
+
+
+@dataclass(frozen=True)
+class DomainTable:
+    """Domains by value of an observable; the mean length of a value that never occurs is None."""
+
+    values: list[Any]
+    fractions: list[float]
+    numbers: list[float]
+    mean_lengths: list[float | None]
 
 
 @dataclass(frozen=True)
@@ -74,10 +88,12 @@ class Asked:
         """Its unit."""
         return "energy" if self.kind == "free_energy" else "1"
 
-    def evaluate(self, chain: FiniteChain) -> float | list[float] | Distribution:
-        """Compute it: a number, one number per order or cell, or a distribution."""
+    def evaluate(self, chain: FiniteChain) -> float | list[float] | Distribution | DomainTable:
+        """Compute it: a number, one number per order or cell, a distribution, or a table of domains."""
         if self.kind == "distribution":
             return chain.distribution(self.observables[0])
+        if self.kind == "domains":
+            return _domains(chain, self.observables[0])
         found = _COMPUTE[self.kind](chain, *self.observables, *self.cells)
         return [float(value) for value in found] if getattr(found, "shape", ()) else float(found)
 
@@ -93,6 +109,22 @@ _COMPUTE: dict[str, Callable[..., Any]] = {
     "moments": lambda chain, a: chain.moments(a),
     "profile": lambda chain, a: chain.profile(a),
 }
+
+
+def _domains(chain: FiniteChain, observable: str) -> DomainTable:
+    found = chain.domains(observable)
+    lengths: list[float | None] = []
+    for value in found.values:
+        try:
+            lengths.append(float(found.mean_length(value)))
+        except NotApplicable:
+            lengths.append(None)
+    return DomainTable(
+        [int(value) if value.denominator == 1 else float(value) for value in found.values],
+        [float(found.fraction(value)) for value in found.values],
+        [float(found.number(value)) for value in found.values],
+        lengths,
+    )
 
 
 def read_quantity(text: str, chain: Chain, cells: int) -> Asked:

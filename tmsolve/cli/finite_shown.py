@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 from collections.abc import Mapping, Sequence
+from dataclasses import asdict
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
-from .finite_quantities import Asked
+from .finite_quantities import Asked, DomainTable
 from .table import Number, number_text, table
 
 if TYPE_CHECKING:
@@ -19,6 +20,8 @@ Found = Mapping[Asked, Any]
 
 def json_value(asked: Asked, value: Any) -> Any:
     """Return a result for JSON."""
+    if isinstance(value, DomainTable):
+        return asdict(value)
     if asked.kind != "distribution":
         return value
     return {"values": value.values, "log_probabilities": value.log_probabilities, "probabilities": value.probabilities}
@@ -40,15 +43,23 @@ def text(found: Found, digits: int) -> str:
 
 
 def _entry(value: Any, digits: int) -> str:
+    if value is None:
+        return "-"
     return str(value) if isinstance(value, int) else number_text(value, digits)
 
 
 def _columns(asked: Asked, value: Any) -> tuple[list[str], list[Sequence[Any]]]:
     if asked.kind == "distribution":
         return ["value", "probability", "ln probability"], _distribution(value)
+    if isinstance(value, DomainTable):
+        heads = [asked.observables[0], "fraction of cells", "number of runs", "mean length"]
+        return heads, [value.values, value.fractions, value.numbers, value.mean_lengths]
     if asked.kind == "profile":
         return ["cell", f"mean({asked.observables[0]})"], [list(range(len(value))), value]
-    return ["order", asked.kind.rstrip("s")], [list(range(1, len(value) + 1)), value]
+    return ["order", f"{asked.kind.rstrip('s')} of the total of {asked.observables[0]}"], [
+        list(range(1, len(value) + 1)),
+        value,
+    ]
 
 
 def _distribution(value: Distribution) -> list[Sequence[Any]]:
@@ -58,7 +69,7 @@ def _distribution(value: Distribution) -> list[Sequence[Any]]:
 def csv_rows(asked: Asked, value: Any) -> list[list[str]]:
     """Return one profile or distribution as rows of CSV, numbers in full."""
     heads, columns = _columns(asked, value)
-    return [heads, *([repr(entry) for entry in row] for row in zip(*columns, strict=True))]
+    return [heads, *(["" if entry is None else repr(entry) for entry in row] for row in zip(*columns, strict=True))]
 
 
 def draw(found: Found, path: Path) -> None:
