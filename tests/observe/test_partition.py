@@ -1,4 +1,4 @@
-"""Classes of states that an observable resolves, and its decay length against mpmath on random symmetric chains."""
+"""Classes of states that an observable resolves."""
 
 from __future__ import annotations
 
@@ -116,47 +116,3 @@ def test_eigenvalues_that_vanish(chain, values, zeros):
     window = build_window(chain)
     point = chain.at(T=1, **values)
     assert vanishing(window, np.arange(window.shape[0]), point.flat(), 0) == zeros
-
-
-def slowest(energy, T, values):
-    """Return ln ξ of the slowest mode in the correlation of a quantity, in 120 digits, by projectors."""
-    with mpmath.workdps(1200):
-        n = len(energy)
-        matrix = mpmath.matrix([[mpmath.exp(-mpmath.mpf(int(e)) / mpmath.mpf(T)) for e in row] for row in energy])
-        roots, left, right = mpmath.eig(matrix, left=True, right=True)
-        order = sorted(range(n), key=lambda k: -abs(roots[k]))
-        top = order[0]
-        groups: list[list[int]] = []
-        for k in order[1:]:
-            match = next((g for g in groups if abs(roots[g[0]] - roots[k]) < mpmath.mpf(10) ** -700), None)
-            match.append(k) if match else groups.append([k])
-        diagonal = mpmath.diag([mpmath.mpf(int(v)) for v in values])
-        for group in groups:
-            total = mpmath.mpc(0)
-            for k in group:
-                norm = (left[k, :] * right[:, k])[0]
-                total += (left[top, :] * diagonal * right[:, k])[0] * (left[k, :] * diagonal * right[:, top])[0] / norm
-            if abs(total) > mpmath.mpf(10) ** -600 and abs(roots[group[0]]) > mpmath.mpf(10) ** -600 * abs(roots[top]):
-                return float(-mpmath.log(-mpmath.log(abs(roots[group[0]] / roots[top]))))
-        return -np.inf
-
-
-@pytest.mark.parametrize("seed", range(24))
-def test_random_symmetric_chains(seed):
-    """States in pairs or triples that a symmetry exchanges; the observable respects it, breaks it, or changes sign."""
-    rng = np.random.default_rng(seed)
-    n = int(rng.integers(3, 6))
-    order = np.arange(n)
-    order[:2] = [1, 0]
-    if n > 3 and rng.integers(2):
-        order[2:4] = [3, 2]
-    energy = rng.integers(-3, 4, (n, n))
-    energy = energy + energy[order][:, order]
-    values = rng.integers(-2, 3, n)
-    if rng.integers(2):
-        values = values + (1 if rng.integers(2) else -1) * values[order]
-    T = ["2", "0.5", "0.2", "0.1"][seed % 4]
-    chain = Chain(colours(n), [bond(lambda s, t: int(energy[s, t]))], observables={"a": lambda s: int(values[s])})
-    r = solve(chain.at(T=T))
-    wanted = slowest(energy, T, values)
-    assert float(r.log_correlation_length("a")) == pytest.approx(wanted, rel=1e-9, abs=1e-9)
