@@ -14,7 +14,7 @@ from ..declare import Chain, Term
 from ..errors import DeclarationError, NotApplicable, ParameterError, did_you_mean, listing
 from .laws import Law, Realisation, as_law
 
-__all__ = ["Problem", "generator", "positive", "read_problem"]
+__all__ = ["Problem", "generator", "positive", "read_laws", "read_problem"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -94,7 +94,7 @@ def read_problem(chain: Any, random: Any, cells: int | None = None, *, cold: boo
     """
     if not isinstance(chain, Chain):
         raise DeclarationError(f"the first argument is a chain with its temperature fixed, got {chain!r}")
-    laws = _laws(chain, random)
+    laws = read_laws(chain, random)
     values = dict(chain.at(**{name: 0 for name in laws}, **({"T": 0} if cold else _temperature(chain))).values)
     for name in laws:
         del values[name]
@@ -119,7 +119,8 @@ def _temperature(chain: Chain) -> dict[str, Any]:
     return {}
 
 
-def _laws(chain: Chain, random: Any) -> dict[str, Law]:
+def read_laws(chain: Chain, random: Any) -> dict[str, Law]:
+    """Check which parameters are random, and read their laws."""
     if not isinstance(random, Mapping) or not random:
         raise DeclarationError(f'random= takes the laws of the random parameters, as in {{"h": norm(0, 1)}}, got {random!r}')
     laws = {}

@@ -3,27 +3,24 @@
 from __future__ import annotations
 
 from collections.abc import Iterable, Mapping
-from itertools import combinations_with_replacement
 from typing import Any
 
 import numpy as np
 
 from ..declare import Chain
-from ..errors import NotApplicable, ParameterError, SolveError
+from ..errors import ParameterError
 from .laws import Realisation
 from .message import start
 from .problem import Problem, generator, positive, read_problem
 from .result import QuenchedChain
-from .steps import BETA, StepMaker, observable
 from .strata import node_count
+from .tangents import with_tangents
 from .walk import burn_in, walk
 
 __all__ = ["quenched"]
 
 #: Replicas when none are asked for.
 _REPLICAS = 64
-#: Observables up to which all pairs of them are carried along.
-_PAIRED = 3
 #: Cells after which messages that still differ are let be.
 _SHORTEST_LIMIT = 2000
 
@@ -91,7 +88,7 @@ def quenched(
     replicas = _replicas(problem, replicas)
     seed = int(generator(rng).integers(2**62)) if not _is_seed(rng) else int(generator_seed(rng))
     stream = np.random.default_rng([seed, 0])
-    maker = _maker(problem, derivatives)
+    maker = with_tangents(problem, derivatives)
     controls = bool(control_variates) and not problem.listed and node_count(problem) > 0
     notes: tuple[str, ...] = ()
     if problem.listed:
@@ -128,32 +125,3 @@ def _replicas(problem: Problem, replicas: Any) -> int:
     if not single and count < 2:
         raise ParameterError(f"an error bar needs at least 2 replicas, got {count}")
     return count
-
-
-def _maker(problem: Problem, derivatives: Iterable[tuple[str, str]]) -> StepMaker:
-    """Choose the tangents: temperature, observables, and every parameter that the energy is smooth in."""
-    observed = [observable(name) for name in problem.observables]
-    tilts = [BETA, *observed]
-    tilts += [name for name in problem.parameters if _smooth(problem, name)]
-    pairs = [(BETA, BETA)]
-    pairs += list(combinations_with_replacement(observed, 2)) if len(observed) <= _PAIRED else [(a, a) for a in observed]
-    for names in derivatives:
-        if not isinstance(names, (tuple, list)) or len(names) != 2:
-            raise ParameterError(f'derivatives= takes pairs of names such as ("J", "h"), got {names!r}')
-        pair = [BETA if name == "T" else name for name in names]
-        for name in pair:
-            if name not in tilts:
-                raise ParameterError(f"the energy has no smooth parameter {name!r} to differentiate by")
-        pairs.append((pair[0], pair[1]))
-    numbers = {tuple(sorted((tilts.index(a), tilts.index(b)))) for a, b in pairs}
-    return StepMaker(problem, tuple(tilts), tuple(sorted((i, j) for i, j in numbers)))
-
-
-def _smooth(problem: Problem, name: str) -> bool:
-    probe = StepMaker(problem, (name,))
-    drawn = {copy: np.full(1, law.quadrature(4)[0][0] if law.support else law.mean) for copy, law, _, _ in problem.draws}
-    try:
-        probe.steps(drawn, 1)
-    except (NotApplicable, SolveError):
-        return False
-    return True

@@ -1,0 +1,240 @@
+"""The integral equation of a message between two states, solved on functions instead of measures.
+
+Let u be the logarithm of the ratio of the two weights that a message holds, φ(u) the ratio one random cell later and
+r(u) the mean growth of ln Z. Functions of u, unlike the law of u, are smooth even for discrete disorder, so Poisson's
+equation
+
+    h(u) − E h(φ(u)) = r(u) − γ
+
+is solved on Chebyshev polynomials with exponential accuracy; γ is ln Z per cell. Its derivatives by parameters follow
+from the same operator.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Mapping
+from dataclasses import dataclass
+from itertools import product
+from typing import Any
+
+import numpy as np
+
+from ..declare import Chain
+from ..errors import NotApplicable, ParameterError, SolveError
+from .averages import Average
+from .exact import ExactAverages
+from .message import Growth, Message, advance
+from .problem import Problem, read_problem
+from .spectral import differentiated, nodes_on, values_at
+from .steps import StepMaker, Steps
+from .tangents import with_tangents
+
+__all__ = ["StationaryMessage", "stationary_message"]
+
+#: Numbers of polynomials and of nodes of a continuous law, refined together.
+_LEVELS = ((48, 60), (96, 120), (192, 240), (384, 480), (512, 640))
+#: Draws of one cell, over all copies, that are averaged over.
+_MOST_DRAWS = 4000
+#: Logarithm of a ratio that is nothing to a double.
+_FLAT = 38.0
+#: Share of the average correlation below which a mode of decay is rounding.
+_ABSENT = 1e-9
+#: Function values held at a time.
+_CHUNK = 2_000_000
+
+
+@dataclass(frozen=True, eq=False)
+class StationaryMessage(ExactAverages):
+    """Exact averages of a chain whose cut has two states, with its correlation lengths."""
+
+    typical_rate: float
+    average_rate: float
+
+    def correlation_length(self) -> Average:
+        """Typical correlation length in cells: from the average of the logarithm of connected correlations."""
+        return Average(_length(self.typical_rate), self.error)
+
+    def average_correlation_length(self) -> Average:
+        """Return the decay length in cells of the average of connected correlations."""
+        return Average(_length(self.average_rate), self.error)
+
+
+def _length(rate: float) -> float:
+    return 0.0 if rate == -np.inf else (np.inf if rate >= 0 else -1 / rate)
+
+
+def stationary_message(
+    chain: Chain,
+    random: Mapping[str, Any],
+    *,
+    tolerance: float = 1e-11,
+    derivatives: Iterable[tuple[str, str]] = (),
+) -> StationaryMessage:
+    """Average a disordered chain with a cut of two states exactly, without sampling.
+
+    Parameters
+    ----------
+    chain, random, derivatives
+        As for `quenched`; laws are discrete, or continuous with a density.
+    tolerance : float
+        How far the last refinement may move ln Z per cell.
+
+    Raises
+    ------
+    NotApplicable
+        The cut has not two states, a configuration is forbidden, or a law cannot be integrated.
+    SolveError
+        Refinement ends before the tolerance is met; the message says what was reached, ``partial`` holds it.
+
+    Notes
+    -----
+    B. Derrida and H. J. Hilhorst, J. Phys. A 16, 2641 (1983) for the equation; from memory.
+
+    Examples
+    --------
+    >>> from tmsolve import Chain, bond, ising, site
+    >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t), site(lambda s, h: -h*s)])
+    >>> average = stationary_message(chain.fix(T=1, J=1), {"h": "normal(0,1)"})
+    >>> round(average.free_energy.value, 10)
+    -1.4403421245
+    """
+    problem = read_problem(chain, random)
+    if not 0 < tolerance < 1:
+        raise ParameterError(f"tolerance= is a number between 0 and 1, got {tolerance!r}")
+    maker = with_tangents(problem, derivatives)
+    if maker.states != 2:
+        raise NotApplicable(
+            f"the cut of this chain has {maker.states} states, and the integral equation is solved for two; "
+            "use quenched(…)"
+        )
+    found, discrete = None, all(law.support is not None for law in problem.laws.values())
+    for count, draws in _LEVELS:
+        level = _Level(maker, *_draws(problem, draws), count)
+        growth = level.solve()
+        rates = level.rates(float(growth.value))
+        if found is not None:
+            error = abs(float(growth.value - found._growth.value))
+            found = StationaryMessage(error, maker, growth, found._growth, *rates)
+            if error < tolerance:
+                return found
+        else:
+            found = StationaryMessage(np.inf, maker, growth, growth, *rates)
+    kind = "polynomials" if discrete else "polynomials and nodes"
+    assert found is not None
+    raise SolveError(
+        f"the integral equation moved by {found.error:.1e} at its last refinement, to {_LEVELS[-1][0]} {kind}, not by "
+        f"less than {tolerance:g}; give a larger tolerance, or use quenched(…) at so low a temperature",
+        partial=found,
+    )
+
+
+def _draws(problem: Problem, count: int) -> tuple[dict[str, np.ndarray], np.ndarray]:
+    """Return values of every copy over the product of their laws, and weights."""
+    rules = [law.quadrature(count) for _, law, _, _ in problem.draws]
+    if np.prod([float(len(rule[0])) for rule in rules]) > _MOST_DRAWS:
+        raise NotApplicable(
+            f"the random parameters of one cell take more than {_MOST_DRAWS} joint values; use quenched(…)"
+        )
+    grid = np.array(list(product(*(rule[0] for rule in rules)))).T
+    weights = np.array([np.prod(point) for point in product(*(rule[1] for rule in rules))])
+    return {copy: row for (copy, *_), row in zip(problem.draws, grid, strict=True)}, weights
+
+
+class _Level:
+    """The equation at one refinement."""
+
+    def __init__(self, maker: StepMaker, draws: dict[str, np.ndarray], weights: np.ndarray, count: int) -> None:
+        self.maker, self.weights, self.count = maker, weights, count
+        steps = maker.steps(draws, len(weights))
+        if not np.isfinite(steps.log).all():
+            raise NotApplicable("the integral equation needs every configuration allowed; use quenched(…)")
+        ratios, memory = steps.log[:, 0] - steps.log[:, 1], steps.log[0] - steps.log[1]
+        # Where one state outweighs the other by more than this whatever comes next, every function is flat.
+        low = max(float(ratios.min()), -float(memory.max()) - _FLAT)
+        high = min(float(ratios.max()), -float(memory.min()) + _FLAT)
+        if high - low < 1e-9 * (1 + abs(high)):
+            low, high = low - 0.5, high + 0.5
+        self.ends = (low, high)
+        self.grid = nodes_on(count, *self.ends)
+        # ln |det|, the difference of the two products being taken out of the larger one.
+        first, second = steps.log[0, 0] + steps.log[1, 1], steps.log[0, 1] + steps.log[1, 0]
+        with np.errstate(divide="ignore"):
+            volume = np.maximum(first, second) + np.log(-np.expm1(-np.abs(first - second)))
+        self.volume = float(volume @ weights)
+        self._accumulate(steps)
+
+    def _accumulate(self, steps: Steps) -> None:
+        pairs, n = self.maker.pairs, self.count
+        tilts = len(self.maker.tilts)
+        self.plain, self.decay = np.zeros((n, n)), np.zeros((n, n))
+        self.once = np.zeros((tilts, n, n))
+        self.twice, self.bent = np.zeros((len(pairs), n, n)), np.zeros((len(pairs), n, n))
+        self.growth = Growth(np.zeros(n), np.zeros((tilts, n)), np.zeros((len(pairs), n)))
+        chunk = max(1, _CHUNK // n**2)
+        for begin in range(0, len(self.weights), chunk):
+            part = slice(begin, begin + chunk)
+            self._add(steps.at(part), self.weights[part])
+
+    def _add(self, steps: Steps, weights: np.ndarray) -> None:
+        n, q, pairs = self.count, len(weights), self.maker.pairs
+        u = np.repeat(self.grid, q)
+        log = np.stack([-np.logaddexp(0, -u), -np.logaddexp(0, u)])
+        still = Message(log, np.zeros((len(self.maker.tilts), 2, n * q)), np.zeros((len(pairs), 2, n * q)))
+        wide = Steps(*(a if a.shape[-1] == 1 else np.tile(a, n) for a in (steps.log, steps.first, steps.second)))
+        after, growth = advance(still, wide, pairs)
+
+        def spread(array: np.ndarray) -> np.ndarray:
+            return array.reshape(*array.shape[:-1], n, q)
+
+        joint = log[:, None] + wide.log
+        # Chance of the old state 0 given the new one.
+        old = 1 / (1 + np.exp(joint[1] - joint[0]))
+        slope = spread(old[0] - old[1])
+        once = spread(after.first[:, 0] - after.first[:, 1])
+        twice = spread(after.second[:, 0] - after.second[:, 1])
+        basis = values_at(spread(after.log[0] - after.log[1]), self.grid, *self.ends)
+        self.plain += np.einsum("q,iqj->ij", weights, basis)
+        self.decay += np.einsum("q,iq,iqj->ij", weights, slope, basis)
+        for k in range(len(once)):
+            self.once[k] += np.einsum("iq,iqj->ij", once[k] * weights, basis)
+        for k, (i, j) in enumerate(pairs):
+            self.bent[k] += np.einsum("iq,iqj->ij", once[i] * once[j] * weights, basis)
+            self.twice[k] += np.einsum("iq,iqj->ij", twice[k] * weights, basis)
+        values = (spread(growth.value) @ weights, spread(growth.first) @ weights, spread(growth.second) @ weights)
+        old_growth = self.growth
+        self.growth = Growth(old_growth.value + values[0], old_growth.first + values[1], old_growth.second + values[2])
+
+    def solve(self) -> Growth:
+        """Return ln Z per cell with its derivatives."""
+        n, growth = self.count, self.growth
+        border = np.zeros((n + 1, n + 1))
+        border[:n, :n] = np.eye(n) - self.plain
+        border[:n, n] = 1.0
+        border[n, n // 2] = 1.0
+        self.law = np.linalg.solve(border.T, np.eye(n + 1)[n])[:n]
+        h, gamma = self._poisson(border, growth.value)
+        first, responses = [], []
+        slope = differentiated(h, *self.ends)
+        for k in range(len(growth.first)):
+            response, rate = self._poisson(border, growth.first[k] + self.once[k] @ slope)
+            first.append(rate)
+            responses.append(differentiated(response, *self.ends))
+        curve = differentiated(slope, *self.ends)
+        second = []
+        for k, (i, j) in enumerate(self.maker.pairs):
+            total = growth.second[k] + self.bent[k] @ curve + self.twice[k] @ slope
+            total = total + self.once[i] @ responses[j] + self.once[j] @ responses[i]
+            second.append(self.law @ total)
+        return Growth(np.array(gamma), np.array(first), np.array(second))
+
+    def _poisson(self, border: np.ndarray, right: np.ndarray) -> tuple[np.ndarray, float]:
+        solved = np.linalg.solve(border, np.append(right, 0.0))
+        return solved[:-1], float(solved[-1])
+
+    def rates(self, gamma: float) -> tuple[float, float]:
+        """Return the logarithms of the typical and the average decay of correlations per cell."""
+        values, modes = np.linalg.eig(self.decay.astype(np.complex128))
+        share = (self.law @ modes) * np.linalg.solve(modes, np.ones(self.count))
+        seen = np.abs(values[np.abs(share) > _ABSENT])
+        largest = float(seen.max(initial=0.0))
+        return self.volume - 2 * gamma, float(np.log(largest)) if largest > 1e-14 else -np.inf
