@@ -12,6 +12,7 @@ COMMANDS = {
     "crossovers": "where behaviour changes: maxima, half-way points, disorder points",
     "ground": "ground states at T = 0, residual entropies, phase diagrams; exact",
     "finite": "rings and open chains of N cells: partition function, profiles, distributions",
+    "sample": "exact random configurations; single-site simulations beside exact results",
     "models": "the shipped models; with a name, what that model declares",
 }
 

@@ -135,6 +135,11 @@ def _parts(row: Row, name: str) -> tuple[list[_Part], Fraction]:
         exact = [Fraction(repr(float(value))) for value in table.ravel()]
         found.append((exact, row.geometry.number(place[0]), np.array([cell for _, cell in place[0]])))
     step = _common_step([value - exact[0] for exact, _, _ in found for value in exact])
+    if step.denominator > 10**9:
+        raise NotApplicable(
+            f"the values of {name!r} have no common step, so its total takes too many values to be listed; "
+            "use an observable with rational values"
+        )
     parts = []
     for exact, index, cells in found:
         least = min(exact)

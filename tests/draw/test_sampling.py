@@ -1,0 +1,270 @@
+"""Exact samples against exact results: frequencies of words, means, profiles, correlations, conditioning."""
+
+from __future__ import annotations
+
+import math
+from itertools import product
+from time import process_time
+
+import numpy as np
+import pytest
+from scipy.stats import chi2
+
+from tests.draw.chains import ISING, MIXED, SPIN_ONE, boltzmann, mixed_energy, mixed_words, spin_one_energy
+from tests.refusal import refused
+from tmsolve import Chain, bond, ising, open_chain, ring, site, solve, weight
+from tmsolve.draw.sampling import sample
+from tmsolve.errors import DeclarationError, NotApplicable, ParameterError, SolveError, TooLargeError
+
+POINT = {"J": 0.7, "D": 0.4, "h": 0.3, "T": 1.1}
+WORDS = list(product((-1, 0, 1), repeat=6))
+#: The same odds as 4.3 standard deviations of a normal variable.
+ODDS = 2e-5
+
+
+def chi_square(states: np.ndarray, base: int, chances: np.ndarray) -> float:
+    """Probability of a larger χ² of the frequencies of words than the drawn one, rare words taken together."""
+    number = np.zeros(len(states), dtype=int)
+    for column in states.reshape(len(states), -1).T:
+        number = number * base + column
+    seen = np.bincount(number, minlength=len(chances))
+    assert not seen[chances == 0].any()
+    expected = chances * len(states)
+    rare = expected < 8
+    if rare.any():
+        seen = np.append(seen[~rare], seen[rare].sum())
+        expected = np.append(expected[~rare], expected[rare].sum())
+    seen, expected = seen[expected > 0], expected[expected > 0]
+    return float(chi2.sf(((seen - expected) ** 2 / expected).sum(), len(seen) - 1))
+
+
+def near(average, exact, bars: float = 4.5) -> None:
+    """Check means within error bars, and that the bars are no excuse."""
+    exact = np.asarray(exact)
+    off = np.abs(average.value - exact)
+    assert (off <= bars * np.maximum(average.error, 1e-12)).all(), (average.value, exact, average.error)
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+@pytest.mark.parametrize("count", [40, 40_000])
+def test_words_of_six_sites_have_their_boltzmann_probabilities(boundary, count):
+    """χ² against all 729 Boltzmann factors, by both ways of drawing: few replicas at a time, and many."""
+    energy = lambda word: spin_one_energy(word, 0.7, 0.4, 0.3, boundary == "ring")  # noqa: E731
+    chances = boltzmann(WORDS, energy, 1.1)
+    rng = np.random.default_rng(5)
+    drawn = [sample(SPIN_ONE.at(**POINT), 6, count, boundary, rng=rng).states for _ in range(max(1, 3000 // count))]
+    assert chi_square(np.concatenate(drawn), 3, chances) > ODDS
+    # The test has teeth: the other kind of end is told apart.
+    other = boltzmann(WORDS, lambda word: spin_one_energy(word, 0.7, 0.4, 0.3, boundary != "ring"), 1.1)
+    assert chi_square(np.concatenate(drawn), 3, other) < ODDS
+
+
+@pytest.mark.parametrize("count", [30, 40_000])
+def test_words_of_the_infinite_chain(count):
+    """P(word) = l(s₁) Π W(s_i, s_{i+1})/λ r(s₆), with the symmetric matrix diagonalised here."""
+    s = np.array([-1.0, 0.0, 1.0])
+    local = 0.4 * s**2 - 0.3 * s
+    W = np.exp((0.7 * np.outer(s, s) - (local[:, None] + local) / 2) / 1.1)
+    values, vectors = np.linalg.eigh(W)
+    root, v = values[-1], np.abs(vectors[:, -1])
+    index = np.indices((3,) * 6).reshape(6, -1)
+    chances = v[index[0]] * v[index[5]] * np.prod([W[index[i], index[i + 1]] / root for i in range(5)], axis=0)
+    rng = np.random.default_rng(11)
+    drawn = [sample(SPIN_ONE.at(**POINT), 6, count, "infinite", rng=rng) for _ in range(max(1, 3000 // count))]
+    assert chi_square(np.concatenate([one.states for one in drawn]), 3, chances) > ODDS
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+@pytest.mark.parametrize("fields", [0.3, [0.9, -0.4, 0.2, -1.1]])
+def test_cells_of_two_sites_with_long_bonds_and_own_fields(boundary, fields):
+    """Interior sites are drawn too; enumeration of the energy written out by hand."""
+    words = [(a, b) for a, b in mixed_words(4)]
+    closed = boundary == "ring"
+    chances = boltzmann(words, lambda w: mixed_energy(*w, 0.6, 0.5, 0.8, fields, closed), 1.3)
+    point = MIXED.at(J=0.6, K=0.5, L=0.8, h=0.3, T=1.3)
+    given = {"realisation": {"h": fields}} if isinstance(fields, list) else {}
+    drawn = sample(point, 4, 60_000, boundary, rng=2, **given)
+    assert drawn.states.shape == (60_000, 4, 2) and drawn.kinds == ("a", "b")
+    a, b = drawn.by_kind["a"], drawn.by_kind["b"]
+    number = np.zeros(len(a), dtype=int)
+    for column, base in [(a[:, i], 2) for i in range(4)] + [(b[:, i], 3) for i in range(4)]:
+        number = number * base + column
+    assert chi_square(number[:, None], len(words), chances) > ODDS
+    energies = np.array([mixed_energy(*w, 0.6, 0.5, 0.8, fields, closed) for w in words])
+    assert drawn.energies == pytest.approx(energies[number], abs=1e-12)
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open", "infinite"])
+def test_every_estimator_has_the_exact_mean(boundary):
+    """Means, profiles and correlations against products of transfer matrices (within 4.5 error bars)."""
+    point, N = SPIN_ONE.at(**POINT), 12
+    drawn = sample(point, N, 20_000, boundary, rng=8)
+    if boundary == "infinite":
+        exact = solve(point)
+        for name in ("m", "q", "wall"):
+            near(drawn.mean(name), exact.mean(name))
+        near(drawn.profile("m"), np.full(N, exact.mean("m")))
+        for distance in (0, 1, 5):
+            near(drawn.correlation("m", "q", distance), exact.correlation("m", "q", distance, connected=False))
+        return
+    exact = (ring if boundary == "ring" else open_chain)(point, N)
+    for name in ("m", "q", "wall"):
+        near(drawn.mean(name), exact.mean(name))
+        near(drawn.profile(name), exact.profile(name))
+    profile = {name: exact.profile(name) for name in ("m", "q")}
+    for distance in (0, 3):
+        pairs = [(i, (i + distance) % N) for i in range(N) if boundary == "ring" or i + distance < N]
+        joint = [exact.correlation("m", "q", i, j) + profile["m"][i] * profile["q"][j] for i, j in pairs]
+        near(drawn.correlation("m", "q", distance), np.mean(joint))
+    if boundary == "ring":
+        pair = exact.correlation("m", "m", 0, 1) + profile["m"][0] ** 2
+        energy = N * (-0.7 * pair + 0.4 * profile["q"][0] - 0.3 * profile["m"][0])
+        assert abs(drawn.energies.mean() - energy) < 4.5 * drawn.energies.std() / math.sqrt(drawn.count)
+
+
+def test_the_distribution_of_totals_and_its_variance():
+    point = SPIN_ONE.at(**POINT)
+    totals = sample(point, 30, 40_000, "ring", rng=4).observable("m")
+    exact = ring(point, 30)
+    variance = float(exact.covariance("m", "m"))
+    assert abs(totals.var() - variance) < 5 * variance * math.sqrt(2 / len(totals))
+    law = exact.distribution("m")
+    seen = np.array([(totals == value).mean() for value in law.values])
+    assert (np.abs(seen - law.probabilities) < 5 * np.sqrt(law.probabilities / len(totals)) + 5 / len(totals)).all()
+
+
+def test_samples_between_fixed_ends_reproduce_the_exact_profile():
+    """A wall between ends of opposite sign, from products of matrices with fixed ends."""
+    point = ISING.at(J=1, h="0.05", T="0.7")
+    drawn = sample(point, 40, 20_000, "open", given={0: 1, 39: -1}, rng=6)
+    assert (drawn.values()[:, 0] == 1).all() and (drawn.values()[:, 39] == -1).all()
+    near(drawn.profile("m"), open_chain(point, 40, left=1, right=-1).profile("m"))
+
+
+@pytest.mark.parametrize("boundary", ["ring", "infinite"])
+def test_fixed_sites_inside(boundary):
+    """⟨s_i⟩ between fixed spins at distances a and b, by three powers of the matrix of two states."""
+    J, h, T, N = 0.9, 0.2, 1.0, 12
+    s = np.array([-1.0, 1.0])
+    W = np.exp((J * np.outer(s, s) + h * (s[:, None] + s) / 2) / T)
+    far = N - 5 if boundary == "ring" else 400
+    drawn = sample(ISING.at(J=J, h=h, T=T), N, 20_000, boundary, given={2: 1, 7: -1}, rng=9)
+    power = np.linalg.matrix_power
+    between = [power(W, k)[1] * power(W, 5 - k)[:, 0] for k in range(1, 5)]
+    exact = [(s * w).sum() / w.sum() for w in between]
+    values = drawn.profile("m")
+    assert np.abs(values.value[3:7] - exact).max() < 4.5 * values.error.max()
+    rest = power(W / W.max(), far - 1)
+    after = W[0] * (rest[:, 1] if boundary == "ring" else rest.sum(axis=1))
+    assert abs(values.value[8] - (s * after).sum() / after.sum()) < 4.5 * values.error[8]
+
+
+def test_long_disordered_chains_and_blocks_of_messages():
+    """With J = 0 each spin follows its own field, m_i = tanh(h_i/T), in a chain long enough for blocks."""
+    fields = np.random.default_rng(1).normal(0, 1, 3001)
+    point = ISING.at(J=0, h=0, T="0.8")
+    values = sample(point, 3001, 64, "open", rng=3, realisation={"h": fields}).values().mean(axis=0)
+    exact = np.tanh(fields / 0.8)
+    off = ((values - exact) ** 2).sum() / ((1 - exact**2) / 64).sum()
+    assert abs(off - 1) < 0.15
+    bonds = np.random.default_rng(2).normal(0, 1, 3001)
+    for boundary in ("open", "ring"):
+        states = sample(ISING.at(J=1, h=0, T="0.8"), 3001, 64, boundary, rng=3, realisation={"J": bonds}).values()
+        pairs = (states[:, :-1] * states[:, 1:]).mean(axis=0)
+        exact = np.tanh(bonds[:-1] / 0.8)  # exact when open; on a ring of 3001 the way round is nothing
+        assert abs(((pairs - exact) ** 2).sum() / ((1 - exact**2) / 64).sum() - 1) < 0.15
+
+
+def test_low_temperatures_and_hard_constraints():
+    cold = sample(ISING.at(J=1, h="0.01", T="1e-4"), 50, 100, "ring", rng=1)
+    assert (cold.states == 1).all()
+    free = sample(ISING.at(J=1, h=0, T="1e-4"), 50, 400, "ring", rng=1)
+    up = (free.states.mean(axis=1) == 1).sum()
+    assert set(free.states.mean(axis=1)) == {0.0, 1.0} and abs(up - 200) < 50
+    dimers = Chain(
+        ising(), [bond(lambda s, t: math.inf if s == t == 1 else 0), site(lambda s, z: -z * (s + 1) / 2)]
+    )
+    for boundary in ("ring", "open", "infinite"):
+        states = sample(dimers.at(z=1, T=1), 9, 500, boundary, rng=1).states
+        assert not (states[:, :-1] & states[:, 1:]).any() and states.any()
+
+
+def test_chains_declared_by_weights():
+    chain = Chain(ising(), [weight(bond(lambda s, t, w: w if s != t else 1))], observables={"m": lambda s: s})
+    drawn = sample(chain.at(w=0.25, T=1), 5, 40_000, "open", rng=3)
+    pairs = (drawn.values()[:, :-1] * drawn.values()[:, 1:]).mean()
+    assert pairs == pytest.approx(0.75 / 1.25, abs=0.01)
+    refused(NotApplicable, lambda: drawn.energies, "no energy, only a weight")
+
+
+def test_values_labels_and_text():
+    drawn = sample(SPIN_ONE.at(**POINT), 4, 3, "open", rng=1, given={1: -1}, realisation={"h": [1, 2, 3, 4]})
+    assert drawn.states.dtype == np.uint8 and drawn.states.shape == (3, 4)
+    assert (drawn.values() == drawn.states - 1.0).all()
+    assert set(drawn.labels().ravel()) <= set(SPIN_ONE.cell["s"].labels)
+    assert drawn.observable("wall", per_cell=True)[:, 3].tolist() == [0, 0, 0]
+    assert str(drawn) == "3 independent open chains of 4 cells of chain, 1 sites fixed, h given cell by cell"
+    assert sample(MIXED.at(J=1, K=1, L=1, h=0, T=1), 4, rng=1).values("b").shape == (1, 4)
+
+
+def test_seeds():
+    point = SPIN_ONE.at(**POINT)
+    one, two, other = (sample(point, 50, 100, rng=seed).states for seed in (7, 7, 8))
+    assert (one == two).all() and (one != other).any()
+    rng = np.random.default_rng(7)
+    first, second = sample(point, 50, 100, rng=rng).states, sample(point, 50, 100, rng=rng).states
+    assert (first == one).all() and (first != second).any()
+    for seed in (-1, 1.5, True, "seven"):
+        refused(ParameterError, lambda seed=seed: sample(point, 5, rng=seed), "rng= takes a seed", repr(seed))
+
+
+def test_refusals():
+    point = SPIN_ONE.at(**POINT)
+    mixed = MIXED.at(J=1, K=1, L=1, h=0, T=1)
+    hard = Chain(ising(), [bond(lambda s, t: math.inf if s == t == 1 else 0)]).at(T=1)
+    none = Chain(ising(), [bond(lambda s, t: math.inf)]).at(T=1)
+    for error, act, *fragments in (
+        (ParameterError, lambda: sample(SPIN_ONE, 5), "made by chain.at(…)", "bind its parameters first"),
+        (ParameterError, lambda: sample(SPIN_ONE.at(**{**POINT, "h": [0, 1]}), 5), "shape (2,)", "pick(index)"),
+        (NotApplicable, lambda: sample(point.replace(T=0), 5), "T > 0", "ground_state"),
+        (ParameterError, lambda: sample(point, 0), "number of cells", ">= 2", "got 0"),
+        (ParameterError, lambda: sample(mixed, 2), ">= 3 on a ring whose longest term spans 2"),
+        (ParameterError, lambda: sample(point, 2.5, boundary="open"), "whole number >= 1", "2.5"),
+        (ParameterError, lambda: sample(point, 5, -3), "count= must be a whole number >= 1, got -3"),
+        (ParameterError, lambda: sample(point, 5, boundary="rings"), "'rings'", "Did you mean 'ring'?"),
+        (ParameterError, lambda: sample(point, 5, given={5: 1}), "cells 0 to 4, got cell 5"),
+        (ParameterError, lambda: sample(point, 5, given=[1]), "{cell: state}", "[1]"),
+        (DeclarationError, lambda: sample(point, 5, given={0: 2}), "2"),
+        (ParameterError, lambda: sample(mixed, 5, given={0: 1}), "say which one is fixed in cell 0"),
+        (ParameterError, lambda: sample(mixed, 5, given={0: {"c": 1}}), "'c' in cell 0"),
+        (ParameterError, lambda: sample(hard, 5, given={0: 1, 1: 1}), "given= cannot occur together"),
+        (SolveError, lambda: sample(none, 5, boundary="open"), "every configuration of these 5 cells is forbidden"),
+        (ParameterError, lambda: sample(point, 5, realisation={"h": [1, 2]}), "5 cells", "shape (2,)"),
+        (ParameterError, lambda: sample(point, 2, realisation={"h": [1, math.nan]}), "must be finite", "in cell 1"),
+        (ParameterError, lambda: sample(point, 2, realisation={"T": [1, 1]}), "one temperature"),
+        (ParameterError, lambda: sample(point, 2, realisation={"g": [1, 1]}), "'g'"),
+        (ParameterError, lambda: sample(point, 2, realisation={"h": ["a", 1]}), "one number per cell"),
+        (ParameterError, lambda: sample(point, 2, realisation=[1, 1]), "{parameter: one value per cell}"),
+        (ParameterError, lambda: sample(point, 2, boundary="infinite", realisation={"h": [1, 1]}), "cells without end"),
+        (TooLargeError, lambda: sample(point, 10**6, 10**5), "2.1e+09 are drawn at once", "fewer at a time"),
+        (ParameterError, lambda: sample(mixed, 5, rng=1).values(), "one of the sites a, b, got none"),
+        (ParameterError, lambda: sample(point, 5, rng=1).correlation("m", "m", -1), ">= 0, got -1"),
+        (ParameterError, lambda: sample(point, 5, "x"), "count="),
+    ):
+        refused(error, act, *fragments)
+    refused(
+        ParameterError, lambda: sample(point, 5, boundary="open", rng=1).correlation("m", "m", 5), "draw more cells"
+    )
+
+
+def test_rate(capsys):
+    """Sites per second of a three-state chain; printed, with a bound that only a broken way of drawing misses."""
+    point, best = SPIN_ONE.at(**POINT), {}
+    for boundary in ("infinite", "ring", "open"):
+        sample(point, 20, 100, boundary, rng=1)
+        started = process_time()
+        sample(point, 500, 8192, boundary, rng=1)
+        best[boundary] = 500 * 8192 / (process_time() - started)
+    with capsys.disabled():
+        print("\nsites per second of processor time:", {k: f"{v:.1e}" for k, v in best.items()})
+    assert max(best.values()) > 2e6

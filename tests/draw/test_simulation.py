@@ -1,0 +1,198 @@
+"""Single-site simulations against exact results, their error bars, and what the diagnosis says."""
+
+from __future__ import annotations
+
+import math
+
+import numpy as np
+import pytest
+
+from tests.draw.chains import ISING, MIXED, SPIN_ONE, boltzmann, mixed_energy, mixed_words
+from tests.refusal import refused
+from tmsolve import Chain, bond, ising, open_chain, ring, solve, weight
+from tmsolve.draw.autocorrelation import autocorrelation_time
+from tmsolve.draw.sampling import make_row
+from tmsolve.draw.simulating import metropolis
+from tmsolve.draw.totals import exact_totals
+from tmsolve.errors import NotApplicable, ParameterError, SolveError, TooLargeError
+
+POINT = {"J": 0.7, "D": 0.4, "h": 0.3, "T": 1.1}
+
+
+@pytest.mark.parametrize("rule", ["metropolis", "heat bath"])
+@pytest.mark.parametrize("start", ["hot", "cold"])
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+def test_both_rules_reach_the_exact_means_from_both_starts(rule, start, boundary):
+    """17 cells: the ring is no multiple of the period of its sublattices."""
+    point = SPIN_ONE.at(**POINT)
+    run = metropolis(point, 17, 600, 128, rule=rule, start=start, boundary=boundary, rng=2)
+    exact = (ring if boundary == "ring" else open_chain)(point, 17)
+    for name in ("m", "q", "wall"):
+        average = run.mean(name)
+        assert abs(average.value - exact.mean(name)) < 4.5 * average.error and average.error < 0.01
+    absolute = run.mean("m", absolute=True)
+    assert abs(absolute.value - run.diagnose("m").exact_absolute) < 4.5 * absolute.error
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+@pytest.mark.parametrize("rule", ["metropolis", "heat bath"])
+def test_long_bonds_two_kinds_of_site_and_own_fields(rule, boundary):
+    """Against the enumeration of an energy written out by hand; on a ring of 4, bonds to both sides meet."""
+    fields, words = [0.9, -0.4, 0.2, -1.1], list(mixed_words(4))
+    energies = np.array([mixed_energy(*w, 0.6, 0.5, 0.8, fields, boundary == "ring") for w in words])
+    chances = boltzmann(range(len(words)), lambda i: energies[i], 1.3)
+    exact = {"m": sum(p * (sum(a) + sum(b)) for p, (a, b) in zip(chances, words, strict=True)) / 4}
+    exact["energy"] = chances @ energies / 4
+    point = MIXED.at(J=0.6, K=0.5, L=0.8, h=0, T=1.3)
+    run = metropolis(point, 4, 500, 256, rule=rule, boundary=boundary, rng=3, realisation={"h": fields})
+    for name, value in exact.items():
+        average = run.mean(name)
+        assert abs(average.value - value) < 4.5 * average.error and average.error < 0.03
+    found = run.diagnose("m")
+    assert found.exact == pytest.approx(exact["m"], rel=1e-12) and found.correlation_length is None
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+def test_distribution_of_totals(boundary):
+    """Against the distribution from polynomials of scaled numbers, and by enumeration with fields of their own."""
+    point = SPIN_ONE.at(**POINT)
+    for name in ("m", "q", "wall"):
+        found = exact_totals(make_row(point, 20, boundary, {}, {}, (name,)), name)
+        law = (ring if boundary == "ring" else open_chain)(point, 20).distribution(name)
+        known = dict(zip(law.values.tolist(), law.probabilities.tolist(), strict=True))
+        for value, chance in zip(found.values.tolist(), found.probabilities.tolist(), strict=True):
+            assert chance == pytest.approx(known.get(value, 0.0), rel=1e-11, abs=1e-300)
+        assert found.mean == pytest.approx(float(law.mean)) and found.variance == pytest.approx(float(law.variance))
+
+
+def test_autocorrelation_time_of_a_known_process():
+    """x' = ρ x + noise has τ = 1/2 + ρ/(1 − ρ) = (1 + ρ)/(2(1 − ρ)): 4.5 for ρ = 0.8."""
+    rng, rho = np.random.default_rng(5), 0.8
+    series = np.empty((6000, 16))
+    series[0] = rng.normal(size=16) / math.sqrt(1 - rho**2)
+    for step in range(1, 6000):
+        series[step] = rho * series[step - 1] + rng.normal(size=16)
+    assert autocorrelation_time(series) == pytest.approx(4.5, rel=0.05)
+    assert autocorrelation_time(np.ones((50, 3))) == math.inf
+
+
+@pytest.mark.parametrize("rule", ["metropolis", "heat bath"])
+def test_free_spins_forget_in_one_sweep(rule):
+    """With J = h = 0 both rules draw every spin anew: τ = 1/2, with no memory of the sweep before."""
+    run = metropolis(ISING.at(J=0, h=0, T=1), 16, 1500, 32, rule=rule, rng=1)
+    assert run.autocorrelation_time("m") == pytest.approx(0.5, rel=0.06)
+
+
+def test_error_bars_cover():
+    """Of 40 runs about two thirds end within one bar of the exact mean."""
+    point = ISING.at(J="0.6", h="0.2", T=1)
+    exact = float(ring(point, 12).mean("m"))
+    off = []
+    for seed in range(40):
+        average = metropolis(point, 12, 200, 8, rule="heat bath", rng=seed).mean("m")
+        off.append(abs(average.value - exact) / average.error)
+    inside = np.mean(np.array(off) < 1)
+    assert 0.5 < inside < 0.88 and max(off) < 4.5
+
+
+def test_the_artefact_at_zero_field_is_explained():
+    """A cold start at h = 0 stays magnetised; the exact mean is 0, that of |m| is not, N < ξ."""
+    point = ISING.at(J=1, h=0, T="0.35")
+    run = metropolis(point, 64, 300, 16, start="cold", rng=4)
+    found = run.diagnose("m")
+    assert run.mean("m").value > 0.6 and abs(found.exact) < 1e-12 and found.infinite == 0
+    assert found.correlation_length == pytest.approx(-1 / math.log(math.tanh(1 / 0.35)), rel=1e-9)
+    assert found.lengths == 64 / found.correlation_length < 1
+    assert found.exact_absolute > 0.9
+    text = str(found)
+    for words in ("both signs", "correlation lengths, so it behaves as one block", "its cold start", "off by"):
+        assert words in text, words
+    # Over many runs from random states the signs cancel.
+    hot = metropolis(point, 64, 300, 400, start="hot", rng=4).mean("m")
+    assert abs(hot.value) < 4.5 * hot.error
+
+
+def test_a_run_that_agrees_says_so_and_a_frozen_one_too():
+    good = metropolis(ISING.at(J=1, h=1, T=2), 100, 800, 32, rng=1).diagnose("m")
+    assert "agrees with the exact one" in good.reasons[-1] and len(good.reasons) == 1
+    assert good.simulated.value == pytest.approx(good.exact, abs=4.5 * good.simulated.error)
+    run = metropolis(ISING.at(J=1, h="0.1", T="0.01"), 20, 50, 4, start="cold", rng=1)
+    assert run.mean("m").value == 1 and run.mean("m").error == math.inf
+    assert "never changed" in run.diagnose("m").reasons[0] and "no error bar" in str(run.diagnose("m"))
+    assert "metropolis simulation of a ring of 20 cells of chain: 4 replicas, 50 sweeps from a cold start" in str(run)
+
+
+def test_cold_starts_are_ground_states():
+    """Antiferromagnet: alternating; strong D: zeros; a ring and an open chain."""
+    for boundary in ("ring", "open"):
+        run = metropolis(ISING.at(J=-1, h="0.1", T="0.01"), 20, 2, 3, start="cold", boundary=boundary, rng=1)
+        states = run.final["s"]
+        assert (states[:, 1:] != states[:, :-1]).all()
+        zeros = metropolis(SPIN_ONE.at(J=1, D=3, h=0, T="0.01"), 9, 2, 3, start="cold", boundary=boundary, rng=1)
+        assert (zeros.final["s"] == 1).all()
+    up = metropolis(ISING.at(J=1, h=0, T="0.01"), 9, 2, 3, start="cold", rng=1)
+    assert (up.final["s"] == 1).all()
+
+
+def test_hard_constraints_and_weights():
+    """Particles that exclude neighbours, declared by energy and by weights: ⟨n⟩ of a ring from its matrix."""
+    energy = Chain(
+        ising(), [bond(lambda s, t: math.inf if s == t == 1 else 0)], observables={"n": lambda s: (s + 1) / 2}
+    )
+    weights = Chain(
+        ising(), [weight(bond(lambda s, t: 0 if s == t == 1 else 1))], observables={"n": lambda s: (s + 1) / 2}
+    )
+    for chain in (energy, weights):
+        point = chain.at(T=1)
+        for rule in ("metropolis", "heat bath"):
+            average = metropolis(point, 10, 400, 64, rule=rule, start="hot", rng=5).mean("n")
+            assert abs(average.value - ring(point, 10).mean("n")) < 4.5 * average.error
+    assert "energy" not in metropolis(weights.at(T=1), 10, 5, 2, rng=1).series
+
+
+def test_the_exact_curves_show_the_three_facts():
+    """No magnetisation at h = 0 for T > 0; J widens the saturated range; random fields round the curve.
+
+    Common practice, no source. The field at which m reaches 0.9 falls with J, so the saturated range
+    grows. With random fields of that mean m is lower there, from the exact walk along one realisation.
+    """
+    for T in ("0.2", "1", "5"):
+        assert abs(float(solve(ISING.at(J=1, h=0, T=T)).mean("m"))) < 1e-15
+    fields = np.linspace(0.01, 3, 300)
+    reached = [fields[np.argmax(solve(ISING.at(J=J, h=fields, T=1)).mean("m") > 0.9)] for J in (0, 0.3, 0.6, 1)]
+    assert (np.diff(reached) < 0).all()
+    noise = np.random.default_rng(1).normal(0, 1, 400)
+    row = make_row(ISING.at(J=1, h=0, T=1), 400, "ring", {"h": reached[-1] + noise - noise.mean()}, {}, ("m",))
+    assert exact_totals(row, "m").mean / 400 < 0.8
+
+
+def test_refusals():
+    point = SPIN_ONE.at(**POINT)
+    none = Chain(ising(), [bond(lambda s, t: math.inf)]).at(T=1)
+    irrational = Chain(ising(), [bond(lambda s, t: -s * t)], observables={"a": lambda s: math.sqrt(s + 2)}).at(T=1)
+    wide = Chain(
+        ising(), [bond(lambda s, t: -s * t, shift=shift) for shift in range(1, 12)], observables={"m": lambda s: s}
+    )
+    run = metropolis(point, 8, 10, 2, rng=1)
+    for error, act, *fragments in (
+        (ParameterError, lambda: metropolis(SPIN_ONE, 5), "metropolis takes a point made by chain.at(…)"),
+        (NotApplicable, lambda: metropolis(point.replace(T=0), 5), "T > 0"),
+        (ParameterError, lambda: metropolis(point, 1), "number of cells", ">= 2", "got 1"),
+        (ParameterError, lambda: metropolis(point, 5, 1), "sweeps=", ">= 2", "got 1"),
+        (ParameterError, lambda: metropolis(point, 5, 10, 0), "replicas=", ">= 1, got 0"),
+        (ParameterError, lambda: metropolis(point, 5, 10, discard=9), "discard=9 leaves no two of 10 sweeps"),
+        (ParameterError, lambda: metropolis(point, 5, start="warm"), "start= takes", "'warm'"),
+        (ParameterError, lambda: metropolis(point, 5, rule="heatbath"), "Did you mean 'heat bath'?"),
+        (ParameterError, lambda: metropolis(point, 5, boundary="infinite"), "ring, open, got 'infinite'"),
+        (ParameterError, lambda: metropolis(point, 5, rng=-1), "rng= takes a seed"),
+        (ParameterError, lambda: metropolis(point, 5, realisation={"h": [1]}), "5 cells"),
+        (SolveError, lambda: metropolis(none, 5, start="cold"), "every configuration of these 5 cells is forbidden"),
+        (TooLargeError, lambda: metropolis(point, 5, 10**7, 100), "recorded totals", "fewer replicas or sweeps"),
+        (TooLargeError, lambda: metropolis(wide.at(T=1), 30, 5, start="hot"), "joint states in all"),
+        (ParameterError, lambda: run.mean("mm"), "not 'mm'", "energy"),
+        (ParameterError, lambda: run.diagnose("energy"), "energy"),
+        (NotApplicable, lambda: exact_totals(make_row(irrational, 60, "ring", {}, {}, ("a",)), "a"), "common step"),
+        (TooLargeError, lambda: exact_totals(make_row(point, 10**5, "open", {}, {}, ("m",)), "m"), "fewer cells"),
+    ):
+        refused(error, act, *fragments)
+    assert metropolis(irrational, 60, 10, 2, rng=1).diagnose("a").exact is None
