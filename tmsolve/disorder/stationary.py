@@ -107,26 +107,25 @@ def stationary_message(
             f"the cut of this chain has {maker.states} states, and the integral equation is solved for two; "
             "use quenched(…)"
         )
-    found, discrete = None, all(law.support is not None for law in problem.laws.values())
+    before = None
     for count, draws in _LEVELS:
         level = _Level(maker, *_draws(problem, draws), count)
         growth = level.solve()
-        rates = level.rates(float(growth.value))
-        if found is not None:
-            error = abs(float(growth.value - found._growth.value))
-            found = StationaryMessage(error, maker, growth, found._growth, *rates)
-            if error < tolerance:
-                return found
-        else:
-            found = StationaryMessage(np.inf, maker, growth, growth, *rates)
-    kind = "polynomials" if discrete else "polynomials and nodes"
-    assert found is not None
+        error = np.inf if before is None else abs(float(growth.value - before.value))
+        if error < tolerance:
+            break
+        before, earlier = growth, before
+    else:
+        before = earlier
+    assert before is not None
+    found = StationaryMessage(error, maker, growth, before, *level.rates(float(growth.value)))
+    if error < tolerance:
+        return found
     raise SolveError(
-        f"the integral equation moved by {found.error:.1e} at its last refinement, to {_LEVELS[-1][0]} {kind}, not by "
-        f"less than {tolerance:g}; give a larger tolerance, or use quenched(…) at so low a temperature",
+        f"the integral equation moved by {error:.1e} at its last refinement, to {count} polynomials and {draws} nodes "
+        f"of a continuous law, not by less than {tolerance:g}; give a larger tolerance, or use quenched(…)",
         partial=found,
     )
-
 
 def _draws(problem: Problem, count: int) -> tuple[dict[str, np.ndarray], np.ndarray]:
     """Return values of every copy over the product of their laws, and weights."""
@@ -166,14 +165,15 @@ class _Level:
     def _accumulate(self, steps: Steps) -> None:
         pairs, n = self.maker.pairs, self.count
         tilts = len(self.maker.tilts)
-        self.plain, self.decay = np.zeros((n, n)), np.zeros((n, n))
-        self.once = np.zeros((tilts, n, n))
-        self.twice, self.bent = np.zeros((len(pairs), n, n)), np.zeros((len(pairs), n, n))
+        self.averages = np.zeros((2 + tilts + 2 * len(pairs), n, n))
         self.growth = Growth(np.zeros(n), np.zeros((tilts, n)), np.zeros((len(pairs), n)))
         chunk = max(1, _CHUNK // n**2)
         for begin in range(0, len(self.weights), chunk):
             part = slice(begin, begin + chunk)
             self._add(steps.at(part), self.weights[part])
+        self.plain, self.decay = self.averages[:2]
+        self.once = self.averages[2 : 2 + tilts]
+        self.bent, self.twice = self.averages[2 + tilts :].reshape(2, len(pairs), n, n)
 
     def _add(self, steps: Steps, weights: np.ndarray) -> None:
         n, q, pairs = self.count, len(weights), self.maker.pairs
@@ -193,13 +193,10 @@ class _Level:
         once = spread(after.first[:, 0] - after.first[:, 1])
         twice = spread(after.second[:, 0] - after.second[:, 1])
         basis = values_at(spread(after.log[0] - after.log[1]), self.grid, *self.ends)
-        self.plain += np.einsum("q,iqj->ij", weights, basis)
-        self.decay += np.einsum("q,iq,iqj->ij", weights, slope, basis)
-        for k in range(len(once)):
-            self.once[k] += np.einsum("iq,iqj->ij", once[k] * weights, basis)
-        for k, (i, j) in enumerate(pairs):
-            self.bent[k] += np.einsum("iq,iqj->ij", once[i] * once[j] * weights, basis)
-            self.twice[k] += np.einsum("iq,iqj->ij", twice[k] * weights, basis)
+        bent = np.stack([once[i] * once[j] for i, j in pairs])
+        densities = np.concatenate([np.ones((1, n, q)), slope[None], once, bent, twice]) * weights
+        # One product of matrices per point: rows are what the average is weighted with.
+        self.averages += np.matmul(densities.transpose(1, 0, 2), basis).transpose(1, 0, 2)
         values = (spread(growth.value) @ weights, spread(growth.first) @ weights, spread(growth.second) @ weights)
         old_growth = self.growth
         self.growth = Growth(old_growth.value + values[0], old_growth.first + values[1], old_growth.second + values[2])
@@ -234,7 +231,9 @@ class _Level:
     def rates(self, gamma: float) -> tuple[float, float]:
         """Return the logarithms of the typical and the average decay of correlations per cell."""
         values, modes = np.linalg.eig(self.decay.astype(np.complex128))
-        share = (self.law @ modes) * np.linalg.solve(modes, np.ones(self.count))
-        seen = np.abs(values[np.abs(share) > _ABSENT])
+        # How a local mean responds to the message that reaches it; its exact form does not matter to the decay.
+        response = 1 / np.cosh(self.grid / 2) ** 2
+        share = np.abs((self.law @ modes) * np.linalg.solve(modes, response))
+        seen = np.abs(values[share > _ABSENT * share.max()])
         largest = float(seen.max(initial=0.0))
         return self.volume - 2 * gamma, float(np.log(largest)) if largest > 1e-14 else -np.inf
