@@ -106,3 +106,26 @@ def test_open_chains_and_impurities_far_apart_relatively():
         expected = both - trace(spin * inner * outer) * trace(inner * spin * outer) / whole**2
     changed = ring(ISING.at(J=1, h="0.2", T=1), 1000, impurities={10: {"J": "0.5"}})
     assert float(changed.correlation("m", "m", 5, 205)) == pytest.approx(float(expected), rel=1e-11, abs=0)
+
+
+def test_what_vanishes_by_symmetry_is_zero_and_what_is_tiny_is_not():
+    chain = open_chain(BLUME_CAPEL.at(J=1, D="0.5", h=0, T=1), 400)
+    assert chain.correlation("m", "q", 100, 300) == 0
+    assert chain.profile("m", [17, 200]).tolist() == [0, 0] and not chain.profile("m").any()
+    wall = open_chain(BLUME_CAPEL.at(J=1, D="0.5", h=0, T=1), 401, left=1, right=-1).profile("m")
+    assert wall[200] == 0 and (wall[:200] > 0).all() and wall[201:] == pytest.approx(-wall[199::-1], rel=1e-12)
+    far = open_chain(ISING.at(J=1, h=0, T=1), 3000).correlation("m", "m", 100, 2600)
+    with mp.workdps(40):
+        assert float(far) == pytest.approx(float(mp.tanh(1) ** 2500), rel=1e-12, abs=0)
+
+
+def test_beyond_long_numbers_the_accuracy_of_doubles_remains():
+    wide = Chain(
+        spins("1/2"),
+        [bond(lambda s, t, J: -J * s * t), bond(lambda s, t, K: -K * s * t, shift=6)],
+        observables={"m": lambda s: s},
+    )
+    chain = open_chain(wide.at(J="0.5", K="0.3", T=1), 40, left="1/2")
+    upper, lower = (chain.profile("m", [cell])[0] for cell in (3, 39))
+    other = open_chain(wide.at(J="0.5", K="0.3", T=1), 40, left="-1/2")
+    assert [float(v) for v in other.profile("m", [3, 39])] == pytest.approx([-upper, -lower], abs=1e-14)

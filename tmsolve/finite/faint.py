@@ -9,7 +9,7 @@ with the sums, and the numbers are made longer until 64 bits remain.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterable, Mapping
-from functools import partial
+from functools import partial, reduce
 from typing import Any
 
 import numpy as np
@@ -26,13 +26,14 @@ __all__ = ["Places", "faint_profile", "is_faint", "refined", "scale_of"]
 #: Where the parts of an observable sit: (position of the window, name of the quantity).
 Places = list[tuple[int, str]]
 
-#: Lengths tried; the last one tells the smallest double from 0.
-_LADDER = (192, 512, 1280)
+#: Lengths tried. The last one tells the smallest double from 0, so that what vanishes by symmetry takes two.
+_LADDER = (192, 1280)
 #: Bits that must remain of the result.
 _KEPT = 64
 #: Means and correlations below this part of the observables' size have lost digits to rounding.
 _FAINT = 1e-3
-#: Multiplications of long numbers that are worth the wait.
+#: Multiplications of long numbers that are worth the wait: some 2 s at each length. What is beyond keeps
+#: the accuracy of doubles, absolutely; `FiniteChain` says where.
 _WORK_LIMIT = 2 * 10**6
 
 
@@ -51,8 +52,8 @@ def faint_value(track: Track, point: int, x: Places, y: Places | None = None) ->
         line = _Line(track, point, multiprecision(bits), runs)
         value, scale = line.mean(x) if y is None else line.connected(x, y)
         if not scale or abs(value) > scale * line.numbers.power_of_two(_KEPT - bits):
-            break
-    return float(value)
+            return float(value)
+    return 0.0
 
 
 def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], wanted: np.ndarray) -> np.ndarray | None:
@@ -70,9 +71,10 @@ def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], want
         parts = [(position, f"{a}@{anchor}", anchor) for anchor in anchors for position in positions]
         values, scale = line.profile(parts)
         found = np.array([values.get(cell, line.numbers.scalar(0)) for cell in range(track.cells)], dtype=object)
-        if not scale or (abs(found[wanted]) > scale * line.numbers.power_of_two(_KEPT - bits)).all():
+        lost = abs(found) <= scale * line.numbers.power_of_two(_KEPT - bits)
+        if not scale or not lost[wanted].any():
             break
-    return found.astype(float)
+    return np.where(lost.astype(bool), 0.0, found.astype(float))
 
 
 def scale_of(track: Track, places: Places) -> np.ndarray:
@@ -111,9 +113,11 @@ class _Line:
             name: value[point] if isinstance(value, np.ndarray) else value for name, value in track.values.items()
         }
         self._assembled: dict[ChainWindow, Assembled] = track.long_windows(point, numbers.bits)
-        self._powers: dict[tuple[ChainWindow, int], np.ndarray] = {}
-        self._plain: dict[ChainWindow, np.ndarray] = {}
-        self._sizes: dict[tuple[ChainWindow, str], Any] = {}
+        # What other quantities at this point have computed already.
+        self._powers: dict[Any, np.ndarray] = track.long_results("powers", point, numbers.bits)
+        self._plain: dict[Any, np.ndarray] = track.long_results("weights", point, numbers.bits)
+        self._sums: dict[Any, Any] = track.long_results("sums", point, numbers.bits)
+        self._sizes: dict[Any, Any] = track.long_results("sizes", point, numbers.bits)
 
     def mean(self, x: Places) -> tuple[Any, Any]:
         """Return ⟨x⟩ and the size of what it may have lost digits to."""
@@ -147,10 +151,7 @@ class _Line:
                 continue
             around = before[position] @ (self._weights(position) * table) @ after[position + 1]
             values[cell] = values.get(cell, 0) + self._end(around) / whole
-            key = self.windows.at(position), name
-            if key not in self._sizes:
-                self._sizes[key] = max(abs(value) for value in table.flat)
-            largest = max(largest, self._sizes[key])
+            largest = max(largest, self._size(position, name))
         return values, largest
 
     def _messages(self) -> tuple[dict[int, np.ndarray], dict[int, np.ndarray]]:
@@ -171,8 +172,15 @@ class _Line:
         return np.trace(table) if self.closed else table.sum()
 
     def _largest(self, x: Places) -> Any:
-        tables = [self._table(position, (name,)) for position, name in x]
-        return max([self.numbers.scalar(0), *(abs(value) for t in tables if t is not None for value in t.flat)])
+        return max([self.numbers.scalar(0), *(self._size(position, name) for position, name in x)])
+
+    def _size(self, position: int, name: str) -> Any:
+        """Return the largest absolute value of a quantity in a window."""
+        key = self.windows.at(position), name
+        if key not in self._sizes:
+            table = self._table(position, (name,))
+            self._sizes[key] = self.numbers.scalar(0) if table is None else max(abs(value) for value in table.flat)
+        return self._sizes[key]
 
     def _at(self, position: int) -> Assembled:
         window = self.windows.at(position)
@@ -207,15 +215,21 @@ class _Line:
 
     def _sum(self, marks: Mapping[int, tuple[str, ...]]) -> Any:
         """Return the sum over all configurations of the weight times the marked quantities."""
-        result = None
-        for position, count in self.runs:
-            part = self._marked(position, marks[position]) if position in marks else self._power(position, count)
-            if result is None:
-                result = part if self.closed else part.sum(axis=0, keepdims=True)
-            else:
-                result = result @ part
-        assert result is not None
-        return self._end(result)
+        what = tuple(sorted((position, tuple(sorted(names))) for position, names in marks.items()))
+        if what not in self._sums:
+            self._sums[what] = self._summed(marks)
+        return self._sums[what]
+
+    def _summed(self, marks: Mapping[int, tuple[str, ...]]) -> Any:
+        parts = [
+            self._marked(position, marks[position]) if position in marks else self._power(position, count)
+            for position, count in self.runs
+        ]
+        if self.closed and len(parts) > 1:
+            # A trace of a product needs no more than the products of entries that meet.
+            return (reduce(np.matmul, parts[:-1]) * parts[-1].T).sum()
+        first = parts[0] if self.closed else parts[0].sum(axis=0, keepdims=True)
+        return self._end(reduce(np.matmul, parts[1:], first))
 
     def _power(self, position: int, count: int) -> np.ndarray:
         what = (self.windows.at(position), count)

@@ -46,6 +46,8 @@ class Track:
     #: Windows in long numbers, by point of the batch and bits.
     _long: dict[tuple[int, int], dict[ChainWindow, Assembled]] = field(default_factory=dict, repr=False)
 
+    _long_results: dict[tuple[str, int, int], dict[Any, Any]] = field(default_factory=dict, repr=False)
+
     def __post_init__(self) -> None:
         size = max(max(self.windows.at(position).shape) for position, _ in self.runs())
         if size > _LARGEST:
@@ -96,6 +98,10 @@ class Track:
     def long_windows(self, point: int, bits: int) -> dict[ChainWindow, Assembled]:
         """Return what is kept of the windows at one point in numbers of so many bits."""
         return self._long.setdefault((point, bits), {})
+
+    def long_results(self, kind: str, point: int, bits: int) -> dict[Any, Any]:
+        """Return what is kept of one kind of results at one point in numbers of so many bits."""
+        return self._long_results.setdefault((kind, point, bits), {})
 
     def algebra(self, key: Key = ()) -> LogSum:
         """Return the algebra that keeps the cumulants of ``key``."""

@@ -16,10 +16,10 @@ from ..assemble.matrix import handle
 from ..observe.correlations import anchors
 from ..observe.segment import Segment
 from ..observe.solution import Solution
+from ..operators.numbers import DOUBLE
 
 __all__ = ["far_correlation"]
 
-_DOUBLE_BITS = 53
 #: Below this part of its usual value the trace of Pᴺ has cancelled.
 _LEAST_TRACE = 1e-3
 
@@ -48,7 +48,7 @@ def far_correlation(solution: Solution, cells: int, a: str, b: str, distance: in
 
 
 def _unusual(segment: Segment, size: int) -> bool:
-    return bool(segment.other_classes) or segment.states.size != size or segment.bits != _DOUBLE_BITS or segment.limit
+    return bool(segment.other_classes) or segment.states.size != size or segment.bits != DOUBLE.bits or segment.limit
 
 
 class _Ring:
