@@ -24,6 +24,9 @@ PARAMETERS = {
     "ladder": ("J", "R", "h"),
     "lattice_gas": ("mu",),
     "helix_coil": ("s", "sigma"),
+    "random_field_ising": ("J", "H", "h"),
+    "random_bond_ising": ("J", "h"),
+    "diluted_blume_capel": ("J", "D", "h", "c"),
     "xy": ("J", "h"),
     "heisenberg": ("J", "h", "D"),
     "harmonic": ("k", "g", "p", "f"),
@@ -109,6 +112,7 @@ def test_the_option_q_is_the_number_of_states(name):
 VALUES = {
     "J": Fraction(3, 7), "J1": Fraction(5, 11), "J2": Fraction(-2, 13), "K": Fraction(7, 17),
     "K3": Fraction(-3, 19), "D": Fraction(4, 23), "R": Fraction(-6, 29),
+    "H": Fraction(-5, 41), "c": Fraction(3, 5),
     "h": Fraction(9, 31), "mu": Fraction(8, 37), "k": Fraction(5, 7), "g": Fraction(2, 11), "p": Fraction(3, 13),
     "f": Fraction(-7, 17), "C": Fraction(6, 19), "a": Fraction(-8, 23), "b": Fraction(9, 29),
 }  # fmt: skip
@@ -121,6 +125,14 @@ def neighbours(sites, shift=1):
 
 def ising(c, J, h):
     return -J * sum(s * t for s, t in neighbours(c["s"])) - h * sum(c["s"])
+
+
+def random_field_ising(c, J, H, h):
+    return ising(c, J, H + h)
+
+
+def random_bond_ising(c, J, h):
+    return ising(c, J, h)
 
 
 def potts(c, J, h):
@@ -218,7 +230,7 @@ def configurations(chain, count=400):
         yield {kind: list(states[RING * k : RING * (k + 1)]) for k, kind in enumerate(kinds)}
 
 
-@pytest.mark.parametrize("name", sorted(PARAMETERS.keys() - {"helix_coil"}))
+@pytest.mark.parametrize("name", sorted(PARAMETERS.keys() - {"helix_coil", "diluted_blume_capel"}))
 def test_the_energy_is_the_documented_one(name):
     model = models.load(name, **FEW.get(name, {}))
     values = {parameter: VALUES[parameter] for parameter in model.chain.parameters}
@@ -245,7 +257,23 @@ def test_the_weight_of_a_helical_run_of_length_k_is_sigma_s_to_the_k():
         assert product_of_factors == expected
 
 
+def test_a_diluted_chain_weighs_every_spin_that_is_not_zero():
+    chain = models.load("diluted_blume_capel").chain
+    values = {parameter: VALUES[parameter] for parameter in chain.parameters}
+    for configuration in configurations(chain):
+        spins_there = [s for s in configuration["s"] if s]
+        product_of_factors = Fraction(1)
+        for factor in total(chain, configuration, "weight", values):
+            product_of_factors *= factor
+        assert product_of_factors == values["c"] ** len(spins_there)
+        others = {name: value for name, value in values.items() if name != "c"}
+        assert total(chain, configuration, "energy", values) == blume_capel(configuration, **others)
+
+
 OBSERVABLES = {
+    "random_field_ising": {"m": lambda s: s},
+    "random_bond_ising": {"m": lambda s: s},
+    "diluted_blume_capel": {"m": lambda s: s, "q": lambda s: s * s},
     "ising": {"m": lambda s: s},
     "potts": {"m": lambda s: int(s == 0)},
     "clock": {"m": lambda s: cos_turns(s, 6)},
