@@ -7,6 +7,7 @@ import subprocess
 import sys
 from pathlib import Path
 
+import numpy as np
 import pytest
 
 import tmsolve
@@ -55,6 +56,22 @@ def test_crossover_study(tmp_path: Path) -> None:
     widths = [float(row[3]) for row in rows]
     assert widths == sorted(widths) and widths[0] < 0.01 * widths[-1]
     assert (tmp_path / "map.png").read_bytes().startswith(b"\x89PNG")
+
+
+def test_field_ramp(tmp_path: Path) -> None:
+    printed = run("field_ramp.py", tmp_path, "ramp.png")
+    rows = [line.replace("±", "").split() for line in printed.splitlines()[1:9]]
+    h, exact, simulated, _, random, error, shaken, _ = np.array(rows, dtype=float).T
+    # Ising's m = sinh(h/T)/√(sinh²(h/T) + exp(−4J/T)): none at h = 0; the simulation has one.
+    assert exact == pytest.approx(np.sinh(2 * h) / np.sqrt(np.sinh(2 * h) ** 2 + np.exp(-8)), abs=5e-5)
+    assert exact[0] == 0 and simulated[0] > 0.5
+    assert (random[1:] < exact[1:]).all() and abs(random[0]) < 0.1 and (error < 0.002).all()
+    assert np.abs(shaken - random).max() < 0.1
+    fields = [float(line.split("h = ")[1]) for line in printed.splitlines() if "reaches 0.9" in line]
+    assert fields == sorted(fields, reverse=True)
+    for text in ("N/xi = 2.34", "absolute 0.7766", "both signs", "cold start", "behaves as one block"):
+        assert text in printed, text
+    assert (tmp_path / "ramp.png").read_bytes().startswith(b"\x89PNG")
 
 
 def test_every_example_says_that_it_is_invented() -> None:

@@ -6,7 +6,6 @@ import argparse
 import sys
 from collections.abc import Iterator
 from fractions import Fraction
-from pathlib import Path
 from typing import TYPE_CHECKING, Any
 
 from ..errors import DeclarationError, ParameterError
@@ -17,6 +16,7 @@ from .model import Values, fill, given_values, load_model
 from .options import add_common, add_model, add_out
 from .outcome import DONE, UsageError
 from .parser import Parser
+from .sample_files import write
 from .sample_simulated import add_simulation, simulate
 from .words import whole
 
@@ -168,20 +168,3 @@ def _document(
         "means": {name: {"value": float(a.value), "error": float(a.error)} for name, a in averages.items()},
         "tmsolve": __version__,
     }
-
-
-def write(path: Path, states: dict[str, Any], labels: dict[str, Any]) -> None:
-    """Write configurations: labels as CSV, one row per configuration, or state numbers by kind as NumPy arrays."""
-    import numpy as np
-
-    if path.suffix.lower() == ".npz":
-        with path.open("wb") as stream:
-            np.savez_compressed(stream, **states)
-        return
-    from .grids import write_rows
-
-    cells = range(next(iter(states.values())).shape[1])
-    columns = [f"{kind}[{cell}]" for cell in cells for kind in states]
-    rows = np.stack(list(labels.values()), axis=-1).reshape(len(next(iter(labels.values()))), -1)
-    with path.open("w", encoding="utf-8", newline="") as stream:
-        write_rows([columns, *rows.tolist()], stream)

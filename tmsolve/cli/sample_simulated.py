@@ -13,6 +13,7 @@ from .layout import heading
 from .model import Values
 from .outcome import DONE, UsageError
 from .parser import Parser
+from .sample_files import write
 from .words import whole
 
 if TYPE_CHECKING:
@@ -93,8 +94,6 @@ def _refuse(arguments: argparse.Namespace) -> None:
 
 def _write(path: Path, run: Simulation) -> None:
     import numpy as np
-
-    from .sample import write
 
     labels = {kind: np.array(run.point.chain.cell[kind].labels)[states] for kind, states in run.final.items()}
     write(path, dict(run.final), labels)
