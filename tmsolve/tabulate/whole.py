@@ -147,7 +147,7 @@ def without_noise(table: np.ndarray) -> np.ndarray:
         size = np.abs(rising)
         usual = np.quantile(size[np.isfinite(size)], 0.25) if np.isfinite(size).any() else 0.0
         with np.errstate(invalid="ignore"):
-            apart = np.diff(rising) > _NOISE * np.maximum(size[1:], usual)
+            apart = np.diff(rising) > _NOISE * np.maximum(np.minimum(size[1:], size[:-1]), usual)
         first = np.concatenate([[0], np.cumsum(apart)])
         starts = np.flatnonzero(np.concatenate([[True], apart]))
         flat[order] = rising[starts][first]
