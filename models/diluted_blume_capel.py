@@ -1,9 +1,10 @@
 """Diluted Blume-Capel chain of spin 1.
 
-E = sum_i [ -J s_i s_{i+1} + D s_i^2 - h s_i ],  s = -1, 0, +1, and a factor c_i in the weight of every site with s != 0
+E = sum_i [ -J s_i s_{i+1} + D s_i^2 - h s_i ],  s = -1, 0, +1,  and a factor c_i per site with s != 0
 
-Magnetic chains of which some sites are empty: c = 1 on a site that carries a spin, c = 0 on an empty one, which then
-has the one state 0. A law such as choice(0:0.1,1:0.9) for c empties a tenth of the sites; values between are a fugacity.
+Magnetic chains of which some sites are empty: c = 1 on a site that carries a spin, c = 0 on an empty one, which
+then has the one state 0. A law such as choice(0:0.1,1:0.9) for c empties a tenth of the sites; values between are a
+fugacity.
 """
 
 from tmsolve import Chain, bond, site, spins, weight
@@ -23,7 +24,8 @@ DEFAULTS = {"J": 1, "D": "0.5", "h": 0, "c": 1, "T": 1}
 
 _SOURCE = (
     "for equal c: M. Blume, Phys. Rev. 141, 517 (1966) and H. W. Capel, Physica 32, 966 (1966); chain eigenvalues "
-    "M. Suzuki, B. Tsujiyama and S. Katsura, J. Math. Phys. 8, 124 (1967), with D - T ln c in the place of D; from memory"
+    "M. Suzuki, B. Tsujiyama and S. Katsura, J. Math. Phys. 8, 124 (1967), with D - T ln c in the place of D; "
+    "from memory"
 )
 
 FACTS = (

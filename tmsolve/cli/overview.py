@@ -13,6 +13,7 @@ COMMANDS = {
     "ground": "ground states at T = 0, residual entropies, phase diagrams; exact",
     "finite": "rings and open chains of N cells: partition function, profiles, distributions",
     "sample": "exact random configurations; single-site simulations beside exact results",
+    "disorder": "averages over random parameters: fields, bonds, dilution; with error bars",
     "models": "the shipped models; with a name, what that model declares",
 }
 

@@ -12,7 +12,7 @@ import numpy as np
 from ..declare import Chain, Term
 from ..errors import DeclarationError
 from .laws import Law, Realisation, Sampler
-from .problem import positive, read_laws
+from .problem import positive, read_laws, unmixed
 
 __all__ = ["annealed"]
 
@@ -49,15 +49,12 @@ def annealed(chain: Chain, random: Mapping[str, Any], *, nodes: int = 64) -> Cha
     laws = read_laws(chain, random)
     for name, law in laws.items():
         if isinstance(law, Realisation) or (isinstance(law, Sampler) and law.quantile is None):
-            raise DeclarationError(f"the law of {name!r} ({law}) cannot be integrated; give a mixture or a distribution")
+            raise DeclarationError(
+                f"the law of {name!r} ({law}) cannot be integrated; give a mixture or a distribution"
+            )
     count = positive(nodes, "nodes=", 2)
     terms = [_averaged(term, laws, count) if set(laws) & set(term.parameters) else term for term in chain.terms]
-    kept = {
-        name: parts
-        for name, parts in chain.observables.items()
-        if not any(p in laws for part in parts for p in part.parameters)
-    }
-    averaged = Chain(chain.cell, terms, observables=kept, name=f"annealed {chain.name}")
+    averaged = Chain(chain.cell, terms, observables=unmixed(chain, laws), name=f"annealed {chain.name}")
     return averaged.fix(**{name: value for name, value in chain.fixed.items() if name in (*averaged.parameters, "T")})
 
 
@@ -72,9 +69,9 @@ def _averaged(term: Term, laws: Mapping[str, Law], count: int) -> Term:
     others = [name for name in term.parameters if name not in laws]
     if term.role != "weight" and "T" not in others:
         others.append("T")
+    none = inspect.Parameter.empty
     keywords = [
-        inspect.Parameter(name, inspect.Parameter.KEYWORD_ONLY, default=term.defaults.get(name, inspect.Parameter.empty))
-        for name in others
+        inspect.Parameter(name, inspect.Parameter.KEYWORD_ONLY, default=term.defaults.get(name, none)) for name in others
     ]
     call.__signature__ = inspect.Signature([*states, *keywords])  # type: ignore[attr-defined]
     call.__name__ = f"average_of_{term.name}" if term.name.isidentifier() else "average"

@@ -8,6 +8,9 @@ import numpy as np
 
 __all__ = ["Average", "average"]
 
+#: Errors below this share of a value are those of doubles.
+_ROUNDING = 1e-15
+
 
 @dataclass(frozen=True)
 class Average:
@@ -33,8 +36,8 @@ class Average:
         return self.value
 
     def __str__(self) -> str:
-        if not 0 < self.error < np.inf:
-            return f"{self.value:.12g}"
+        if not _ROUNDING * abs(self.value) < self.error < np.inf:
+            return f"{self.value:.15g}"
         places = 1 - int(np.floor(np.log10(self.error)))
         shown = round(self.error * 10.0**places)
         if places <= 0:

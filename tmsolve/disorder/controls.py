@@ -35,7 +35,8 @@ def features(message: Message, power: float = 1.0) -> tuple[np.ndarray, np.ndarr
     slopes = chance * (message.first - (chance * message.first).sum(axis=1, keepdims=True))
     slope = 2 * power * slopes[:, :-1]
     degree = _DEGREE.get(len(contrast), 2)
-    values, derivatives = [], []
+    values: list[np.ndarray] = []
+    derivatives: list[np.ndarray] = []
     for order in range(1, degree + 1):
         for chosen in combinations_with_replacement(range(len(contrast)), order):
             if len(values) == _MOST_FEATURES:

@@ -19,7 +19,7 @@ from ..errors import ParameterError
 from .averages import Average, average
 from .cold_chain import exact_energy
 from .cold_steps import ColdSteps, Counted, cold_start
-from .problem import generator, positive, read_problem
+from .problem import positive, read_problem, seed_of
 
 __all__ = ["DisorderedGround", "disordered_ground_state"]
 
@@ -98,23 +98,15 @@ def disordered_ground_state(
     most = positive(most_messages, "most_messages=")
     if isinstance(chain, Chain) and chain.fixed.get("T"):
         raise ParameterError(f"the ground state is that of T = 0, got a chain with T = {float(chain.fixed['T']):g}")
-    warm = not (isinstance(chain, Chain) and "T" in chain.fixed)
-    problem = read_problem(chain, random, cells, cold=warm)
+    problem = read_problem(chain, random, cells, cold=True)
     count = _replicas(problem.listed, replicas)
     steps = ColdSteps(problem)
-    seed = int(rng) if rng is not None and not isinstance(rng, np.random.Generator) and _valid(rng) else int(
-        generator(rng).integers(2**62)
-    )
+    seed = seed_of(rng)
     exact = exact_energy(steps, most)
     energy, entropy = _sample(steps, np.random.default_rng([seed, 2]), cells, count)
     if exact is None:
         return DisorderedGround(energy, None, entropy, cells, count, seed)
     return DisorderedGround(exact.energy, exact.messages, entropy, cells, count, seed)
-
-
-def _valid(rng: Any) -> bool:
-    generator(rng)
-    return True
 
 
 def _replicas(listed: bool, replicas: Any) -> int:
@@ -127,7 +119,7 @@ def _replicas(listed: bool, replicas: Any) -> int:
 
 
 def _sample(steps: ColdSteps, rng: np.random.Generator, cells: int, replicas: int) -> tuple[Average, Average]:
-    """Walk over replicas; the first half of the burn-in is as long as the count, up to a few hundred cells."""
+    """Walk over replicas, counting after a few hundred cells, and return energy and entropy per cell."""
     lead = 0 if steps.problem.listed else min(cells, 500)
     message: Counted = cold_start(steps.states, replicas)
     energy, entropy = np.zeros(replicas), np.zeros(replicas)

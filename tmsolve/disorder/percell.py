@@ -68,7 +68,8 @@ class PerCell:
         for name in names:
             if name != "T" and name not in self._problem.parameters:
                 known = (*self._problem.parameters, "T")
-                raise ParameterError(f"no parameter {name!r}; there are {listing(known)}.{did_you_mean(str(name), known)}")
+                hint = did_you_mean(str(name), known)
+                raise ParameterError(f"no parameter {name!r}; there are {listing(known)}.{hint}")
         rest = tuple(name for name in names if name != "T")
         if names == ("T",):
             return self._estimate((-1.0, {BETA: 1 / temperature}, {}))

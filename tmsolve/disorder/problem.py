@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import inspect
-from collections.abc import Mapping
+from collections.abc import Iterable, Mapping
 from dataclasses import dataclass
 from numbers import Integral
 from typing import Any
@@ -14,7 +14,7 @@ from ..declare import Chain, Term
 from ..errors import DeclarationError, NotApplicable, ParameterError, did_you_mean, listing
 from .laws import Law, Realisation, as_law
 
-__all__ = ["Problem", "generator", "positive", "read_laws", "read_problem"]
+__all__ = ["Problem", "positive", "read_laws", "read_problem", "seed_of", "unmixed"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -95,7 +95,8 @@ def read_problem(chain: Any, random: Any, cells: int | None = None, *, cold: boo
     if not isinstance(chain, Chain):
         raise DeclarationError(f"the first argument is a chain with its temperature fixed, got {chain!r}")
     laws = read_laws(chain, random)
-    values = dict(chain.at(**{name: 0 for name in laws}, **({"T": 0} if cold else _temperature(chain))).values)
+    warmth = ({} if "T" in chain.fixed else {"T": 0}) if cold else _temperature(chain)
+    values = dict(chain.at(**dict.fromkeys(laws, 0), **warmth).values)
     for name in laws:
         del values[name]
     renamed, copies = _rename(chain, tuple(laws))
@@ -105,10 +106,7 @@ def read_problem(chain: Any, random: Any, cells: int | None = None, *, cold: boo
                 f"the list for {name!r} has {len(law.values)} values, but {cells} cells with {len(copies[name])} "
                 f"copies each need {cells * len(copies[name])}; give a longer list or fewer cells"
             )
-    observables = tuple(
-        name for name, parts in chain.observables.items() if not any(p in laws for part in parts for p in part.parameters)
-    )
-    return Problem(renamed, values, laws, copies, observables)
+    return Problem(renamed, values, laws, copies, tuple(renamed.observables))
 
 
 def _temperature(chain: Chain) -> dict[str, Any]:
@@ -122,7 +120,9 @@ def _temperature(chain: Chain) -> dict[str, Any]:
 def read_laws(chain: Chain, random: Any) -> dict[str, Law]:
     """Check which parameters are random, and read their laws."""
     if not isinstance(random, Mapping) or not random:
-        raise DeclarationError(f'random= takes the laws of the random parameters, as in {{"h": norm(0, 1)}}, got {random!r}')
+        raise DeclarationError(
+            f'random= takes the laws of the random parameters, as in {{"h": norm(0, 1)}}, got {random!r}'
+        )
     laws = {}
     for name, given in random.items():
         if name == "T":
@@ -133,9 +133,13 @@ def read_laws(chain: Chain, random: Any) -> dict[str, Law]:
                 f"{did_you_mean(str(name), chain.parameters)}"
             )
         if name in chain.fixed:
-            raise ParameterError(f"parameter {name!r} is fixed in this chain and cannot be random; start from the chain before fix(…)")
+            raise ParameterError(
+                f"parameter {name!r} is fixed in this chain and cannot be random; start from the chain before fix(…)"
+            )
         if not any(name in term.parameters for term in chain.terms):
-            raise ParameterError(f"parameter {name!r} occurs in observables only; a random one belongs to an energy or a weight")
+            raise ParameterError(
+                f"parameter {name!r} occurs in observables only; a random one belongs to an energy or a weight"
+            )
         laws[name] = as_law(given)
     return laws
 
@@ -151,11 +155,18 @@ def _rename(chain: Chain, names: tuple[str, ...]) -> tuple[Chain, dict[str, tupl
                 own[f"{name}_copy_{len(copies[name])}"] = name
                 copies[name].append(f"{name}_copy_{len(copies[name])}")
         terms.append(_with_names(term, own) if own else term)
-    kept = {
-        name: parts for name, parts in chain.observables.items() if not any(p in names for part in parts for p in part.parameters)
-    }
-    renamed = Chain(chain.cell, terms, observables=kept, name=chain.name)
+    renamed = Chain(chain.cell, terms, observables=unmixed(chain, names), name=chain.name)
     return renamed, {name: tuple(found) for name, found in copies.items()}
+
+
+def unmixed(chain: Chain, names: Iterable[str]) -> dict[str, tuple[Term, ...]]:
+    """Return the observables that take none of some parameters."""
+    random = set(names)
+    return {
+        name: parts
+        for name, parts in chain.observables.items()
+        if not any(random & set(part.parameters) for part in parts)
+    }
 
 
 def _with_names(term: Term, names: Mapping[str, str]) -> Term:
@@ -180,18 +191,23 @@ def positive(value: Any, name: str, least: int = 1) -> int:
     return int(value)
 
 
-def generator(rng: Any) -> np.random.Generator:
-    """Return a generator of random numbers from a seed, or the one given.
+def seed_of(rng: Any) -> int:
+    """Return the seed that is given, one drawn from a generator, or a new one.
 
     Raises
     ------
     ParameterError
         Neither a whole number ≥ 0 nor a numpy Generator.
+
+    Examples
+    --------
+    >>> seed_of(7)
+    7
     """
-    if isinstance(rng, np.random.Generator):
-        return rng
     if rng is None:
-        return np.random.default_rng()
+        rng = np.random.default_rng()
+    if isinstance(rng, np.random.Generator):
+        return int(rng.integers(2**62))
     if isinstance(rng, bool) or not isinstance(rng, (Integral, np.integer)) or rng < 0:
         raise ParameterError(f"rng= takes a seed, a whole number >= 0, or a numpy.random.Generator, got {rng!r}")
-    return np.random.default_rng(int(rng))
+    return int(rng)

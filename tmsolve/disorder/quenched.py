@@ -11,7 +11,7 @@ from ..declare import Chain
 from ..errors import ParameterError
 from .laws import Realisation
 from .message import start
-from .problem import Problem, generator, positive, read_problem
+from .problem import Problem, positive, read_problem, seed_of
 from .result import QuenchedChain
 from .strata import node_count
 from .tangents import with_tangents
@@ -86,7 +86,7 @@ def quenched(
     cells = positive(cells, "cells=")
     problem = read_problem(chain, random, cells)
     replicas = _replicas(problem, replicas)
-    seed = int(generator(rng).integers(2**62)) if not _is_seed(rng) else int(generator_seed(rng))
+    seed = seed_of(rng)
     stream = np.random.default_rng([seed, 0])
     maker = with_tangents(problem, derivatives)
     controls = bool(control_variates) and not problem.listed and node_count(problem) > 0
@@ -103,16 +103,6 @@ def quenched(
             )
     rates = walk(maker, stream, message, cells, controls)
     return QuenchedChain(cells, replicas, walked, seed, controls, notes, maker, rates)
-
-
-def _is_seed(rng: Any) -> bool:
-    return rng is not None and not isinstance(rng, np.random.Generator)
-
-
-def generator_seed(rng: Any) -> int:
-    """Return a seed after checking it as `generator` does."""
-    generator(rng)
-    return int(rng)
 
 
 def _replicas(problem: Problem, replicas: Any) -> int:

@@ -66,7 +66,8 @@ class QuenchedChain(PerCell):
     @property
     def _exponents(self) -> Exponents:
         if "exponents" not in self._known:
-            self._known["exponents"] = Exponents.measure(self._problem, self.cells, self.replicas, self.burn_in, self.seed)
+            measured = Exponents.measure(self._problem, self.cells, self.replicas, self.burn_in, self.seed)
+            self._known["exponents"] = measured
         found: Exponents = self._known["exponents"]
         return found
 
@@ -101,7 +102,8 @@ class QuenchedChain(PerCell):
         assert rates.mean_value is not None and rates.mean_first is not None
         found = [rates.controls, *(rates.slopes[:, i] for i in tilts)]
         if twice:  # second derivatives are not averaged over the draw, so differences from such averages help
-            found += [(rates.value - rates.mean_value)[None], *((rates.first - rates.mean_first)[i, None] for i in tilts)]
+            surprise = rates.first - rates.mean_first
+            found += [(rates.value - rates.mean_value)[None], *(surprise[i, None] for i in tilts)]
         return np.concatenate(found)
 
     def __str__(self) -> str:

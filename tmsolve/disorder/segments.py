@@ -42,7 +42,7 @@ def segment_average(
     chain : Chain
         With T and the other parameters fixed.
     cut : mapping of str to mixture
-        One parameter with two values, ``{whole: p, cut: 1 - p}``, given in any order; at one of the values the cell must
+        One parameter with two values, ``{whole: p, cut: 1 - p}``, in any order; at one of the values the cell must
         separate left from right, as a missing bond or a vacant site does.
     derivatives : iterable of pairs of names
         As in `quenched`.

@@ -142,7 +142,8 @@ class StepMaker:
         temperature = self.problem.temperature
 
         def part(extra: int) -> Any:
-            return _or_zero(made.sites.table(term, tuple(sorted((*names, *("T",) * extra)))) if extra or names else None)
+            wanted = tuple(sorted((*names, *("T",) * extra)))
+            return _or_zero(made.sites.table(term, wanted) if wanted else None)
 
         if term.role == "weight":
             if times == 0:

@@ -23,7 +23,8 @@ def with_tangents(problem: Problem, derivatives: Iterable[tuple[str, str]] = ())
     tilts = [BETA, *observed]
     tilts += [name for name in problem.parameters if _smooth(problem, name)]
     pairs = [(BETA, BETA)]
-    pairs += list(combinations_with_replacement(observed, 2)) if len(observed) <= _PAIRED else [(a, a) for a in observed]
+    few = len(observed) <= _PAIRED
+    pairs += list(combinations_with_replacement(observed, 2)) if few else [(a, a) for a in observed]
     for names in derivatives:
         if not isinstance(names, (tuple, list)) or len(names) != 2:
             raise ParameterError(f'derivatives= takes pairs of names such as ("J", "h"), got {names!r}')
@@ -37,10 +38,13 @@ def with_tangents(problem: Problem, derivatives: Iterable[tuple[str, str]] = ())
 
 
 def _smooth(problem: Problem, name: str) -> bool:
+    """Whether the energy has a derivative by a parameter at every value it takes, and forbids the same at all."""
     probe = StepMaker(problem, (name,))
-    drawn = {copy: np.full(1, law.quadrature(4)[0][0] if law.support else law.mean) for copy, law, _, _ in problem.draws}
+    some = {copy: law.quadrature(4)[0] if law.support else np.array([law.mean]) for copy, law, _, _ in problem.draws}
+    count = max(len(values) for values in some.values())
     try:
-        probe.steps(drawn, 1)
+        steps = probe.steps({copy: np.resize(values, count) for copy, values in some.items()}, count)
     except (NotApplicable, SolveError):
         return False
-    return True
+    forbidden = steps.log == -np.inf
+    return name not in problem.laws or bool((forbidden.all(axis=-1) == forbidden.any(axis=-1)).all())

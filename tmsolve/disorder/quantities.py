@@ -1,0 +1,68 @@
+"""Names of averages over disorder, as the command line reads them."""
+
+from __future__ import annotations
+
+import re
+from typing import Any
+
+from ..declare import Chain
+from ..errors import NotApplicable, ParameterError, did_you_mean, listing
+from .averages import Average
+
+__all__ = ["average_named", "average_names", "evaluate"]
+
+#: name -> (fewest, most) arguments in brackets.
+_NAMES = {
+    "free_energy": (0, 0),
+    "internal_energy": (0, 0),
+    "entropy": (0, 0),
+    "specific_heat": (0, 0),
+    "mean": (1, 1),
+    "susceptibility": (1, 2),
+    "derivative": (1, 2),
+    "correlation_length": (0, 0),
+    "average_correlation_length": (0, 0),
+    "lyapunov": (1, 1),
+}
+_SHAPE = re.compile(r"^\s*([A-Za-z_]\w*)\s*(?:\((.*)\))?\s*$")
+
+
+def average_names(chain: Chain, random: Any) -> list[str]:
+    """Return what is read when nothing is asked for: thermodynamics and the observables free of random parameters."""
+    kept = [n for n, parts in chain.observables.items() if not any(p in random for t in parts for p in t.parameters)]
+    names = ["free_energy", "internal_energy", "entropy", "specific_heat"]
+    return [*names, *(f"{kind}({name})" for name in kept for kind in ("mean", "susceptibility")), "correlation_length"]
+
+
+def average_named(text: str) -> tuple[str, tuple[Any, ...]]:
+    """Split a name such as ``"susceptibility(m,q)"`` into method and arguments.
+
+    Examples
+    --------
+    >>> average_named("lyapunov(2)"), average_named("mean( m )")
+    (('lyapunov', (2,)), ('mean', ('m',)))
+    """
+    match = _SHAPE.match(text)
+    if match is None or match.group(1) not in _NAMES:
+        name = match.group(1) if match else text
+        raise ParameterError(f"no average {name!r}; there are {listing(_NAMES)}.{did_you_mean(name, _NAMES)}")
+    name, inside = match.group(1), match.group(2) or ""
+    arguments: tuple[Any, ...] = tuple(part.strip() for part in inside.split(",")) if inside.strip() else ()
+    fewest, most = _NAMES[name]
+    if not fewest <= len(arguments) <= most:
+        wanted = f"{fewest}" if fewest == most else f"{fewest} to {most}"
+        raise ParameterError(f"{name} takes {wanted} names in brackets, got {text!r}")
+    if name == "lyapunov":
+        if not arguments[0].isdecimal():
+            raise ParameterError(f"lyapunov(k) takes a whole number k >= 1, got {text!r}")
+        arguments = (int(arguments[0]),)
+    return name, arguments
+
+
+def evaluate(averages: Any, name: str, arguments: tuple[Any, ...]) -> Average:
+    """Read one average of a result, or a number that has no error."""
+    if not hasattr(averages, name):
+        raise NotApplicable(f"{name} is not known of this kind of average")
+    found = getattr(averages, name)
+    value = found(*arguments) if callable(found) else found
+    return value if isinstance(value, Average) else Average(float(value), 0.0)
