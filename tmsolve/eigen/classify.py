@@ -34,7 +34,8 @@ class Cluster:
     multiplicity : int
     kind : str
         ``"simple"``, ``"semisimple"`` (several, each with a vector) or ``"Jordan"`` (fewer vectors
-        than eigenvalues).
+        than eigenvalues). Within 1e-4 of the circle of λ₁ (in ln |λ|) blocks pass for
+        semisimple.
     condition : float
         How many times rounding an eigenvalue moves; NaN where it was not looked at.
     discriminant : float

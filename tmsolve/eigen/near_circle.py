@@ -3,7 +3,8 @@
 They lie next to roots of unity, e^{2πim/h}. In the chain of h steps at a time they are all
 next to 1, and the deviation matrix (I − P^h)^#, built without subtractions, has the large
 eigenvalues 1/(1 − λ^h): accurate although 1 − λ^h is not. Their vectors are those of P, so
-each tells its own phase.
+each tells its own phase. That eigenvalues which coincide here have a vector each is assumed:
+a Jordan block within `NEAR` of the circle is not told from a multiplet.
 """
 
 from __future__ import annotations

@@ -199,8 +199,8 @@ class Solution:
         """Decay length ξ in cells: of the second eigenvalue, or of the slowest mode that ``a`` shows.
 
         0 where nothing decays slower than at once; inf where two eigenvalues coincide in
-        modulus, or where ξ exceeds the doubles, see `log_correlation_length`. A mode counts
-        from a relative amplitude of 1e-11 on, of 1e-24 where no symmetry hides one from ``a``.
+        modulus, or where ξ exceeds the doubles, see `log_correlation_length`. A mode of ``a``
+        counts however small it shows; where that cannot be decided a SolveError names the point.
         """
         return self._shaped(lengths(self._decay(a)), "correlation length")
 
