@@ -114,6 +114,9 @@ def test_what_vanishes_by_symmetry_is_zero_and_what_is_tiny_is_not():
     assert chain.profile("m", [17, 200]).tolist() == [0, 0] and not chain.profile("m").any()
     wall = open_chain(BLUME_CAPEL.at(J=1, D="0.5", h=0, T=1), 401, left=1, right=-1).profile("m")
     assert wall[200] == 0 and (wall[:200] > 0).all() and wall[201:] == pytest.approx(-wall[199::-1], rel=1e-12)
+    # Cells that are free of each other: only the impurity has a mean, and a small one.
+    alone = open_chain(ISING.at(J=0, h=0, T=1), 40, impurities={11: {"h": "1e-30"}}).profile("m")
+    assert alone[11] == pytest.approx(1e-30, rel=1e-14, abs=0) and np.count_nonzero(alone) == 1
     far = open_chain(ISING.at(J=1, h=0, T=1), 3000).correlation("m", "m", 100, 2600)
     with mp.workdps(40):
         assert float(far) == pytest.approx(float(mp.tanh(1) ** 2500), rel=1e-12, abs=0)

@@ -66,6 +66,8 @@ def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], want
     if 3 * len(positions) * rows * size**2 > _WORK_LIMIT:
         return None
     anchors, runs = tuple(anchors), [(position, 1) for position in positions]
+    if _vanishes(track, point, a, anchors):
+        return np.zeros(track.cells)
     for bits in _LADDER:
         line = _Line(track, point, multiprecision(bits), runs)
         parts = [(position, f"{a}@{anchor}", anchor) for anchor in anchors for position in positions]
@@ -85,6 +87,29 @@ def scale_of(track: Track, places: Places) -> np.ndarray:
         if table is not None:
             largest = np.maximum(largest, abs(table).max(axis=(0, 1)))
     return largest
+
+
+def _vanishes(track: Track, point: int, a: str, anchors: tuple[int, ...]) -> bool:
+    """Return whether a mean is 0 wherever a cell may differ from its neighbours, and in the middle.
+
+    What breaks a symmetry sits at an end, at an impurity or in all cells: a mean that is 0
+    there is 0 everywhere, and need not be followed along the chain.
+    """
+    windows = track.windows
+    inside = (*windows.window.left, *windows.window.right, *windows.window.interior)
+    reach = 1 + max(abs(cell) for _, cell in inside)
+    near = {cell + shift for cell in windows.impurities for shift in range(-reach, reach + 1)}
+    ends = {*range(reach), track.cells // 2, *range(track.cells - reach, track.cells)}
+    for cell in sorted({cell % track.cells for cell in near | ends}):
+        positions = [cell - anchor for anchor in anchors]
+        if track.closed:
+            positions = [position % track.cells for position in positions]
+        x = [(p, f"{a}@{k}") for p, k in zip(positions, anchors, strict=True) if p in windows.positions]
+        numbers = multiprecision(_LADDER[-1])
+        value, scale = _Line(track, point, numbers, list(track.runs([p for p, _ in x]))).mean(x)
+        if abs(value) > scale * numbers.power_of_two(_KEPT - numbers.bits):
+            return False
+    return True
 
 
 def is_faint(values: np.ndarray, scale: np.ndarray) -> np.ndarray:

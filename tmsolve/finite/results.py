@@ -183,13 +183,16 @@ class FiniteChain:
             )
         track = self._track((a,))
         values = np.zeros((self.point.size, self.cells))
+        # Parts that reach beyond an end are left out; a cell without any has the value 0, exactly.
+        there = np.zeros(self.cells, dtype=bool)
         for anchor in anchors(track.window, a):
             for position, mean in track.sweep(a, anchor).items():
                 # A part anchored at `anchor` in its window belongs to this cell of the chain.
                 cell = self._position(position + anchor)
                 if 0 <= cell < self.cells:
                     values[:, cell] += mean
-        faint = is_faint(values, scale_of(track, self._places(track, a, self.cells // 2))[:, None])
+                    there[cell] = True
+        faint = is_faint(values, scale_of(track, self._places(track, a, self.cells // 2))[:, None]) & there
         for point in np.flatnonzero(faint.any(axis=1)):
             far = faint_profile(track, int(point), a, anchors(track.window, a), faint[point])
             if far is not None:
