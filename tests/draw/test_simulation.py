@@ -9,11 +9,11 @@ import pytest
 
 from tests.draw.chains import ISING, MIXED, SPIN_ONE, boltzmann, mixed_energy, mixed_words
 from tests.refusal import refused
-from tmsolve import Chain, bond, ising, open_chain, ring, solve, weight
+from tmsolve import Chain, bond, ising, open_chain, ring, site, solve, weight
 from tmsolve.draw.autocorrelation import autocorrelation_time
 from tmsolve.draw.sampling import make_row
 from tmsolve.draw.simulating import metropolis
-from tmsolve.draw.totals import exact_totals
+from tmsolve.draw.totals import exact_mean, exact_totals
 from tmsolve.errors import NotApplicable, ParameterError, SolveError, TooLargeError
 
 POINT = {"J": 0.7, "D": 0.4, "h": 0.3, "T": 1.1}
@@ -63,6 +63,16 @@ def test_distribution_of_totals(boundary):
         for value, chance in zip(found.values.tolist(), found.probabilities.tolist(), strict=True):
             assert chance == pytest.approx(known.get(value, 0.0), rel=1e-11, abs=1e-300)
         assert found.mean == pytest.approx(float(law.mean)) and found.variance == pytest.approx(float(law.variance))
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+def test_exact_mean_where_the_observable_differs_from_cell_to_cell(boundary):
+    """The energy of its field as an observable: −h_i s_i, each spin on its own, h_i tanh(h_i/T)."""
+    chain = Chain(ising(), [site(lambda s, h: -h * s)], observables={"e": lambda s, h: -h * s})
+    fields = np.linspace(-2, 1, 11)
+    row = make_row(chain.at(h=0, T=2), 11, boundary, {"h": fields}, {}, ("e",))
+    assert exact_mean(row, "e") == pytest.approx(-(fields * np.tanh(fields / 2)).sum(), rel=1e-13)
+    refused(NotApplicable, lambda: exact_totals(row, "e"), "'e' differs from cell to cell")
 
 
 def test_autocorrelation_time_of_a_known_process():
@@ -195,4 +205,6 @@ def test_refusals():
         (TooLargeError, lambda: exact_totals(make_row(point, 10**5, "open", {}, {}, ("m",)), "m"), "fewer cells"),
     ):
         refused(error, act, *fragments)
-    assert metropolis(irrational, 60, 10, 2, rng=1).diagnose("a").exact is None
+    found = metropolis(irrational, 60, 10, 2, rng=1).diagnose("a")
+    assert found.totals is found.exact_absolute is None
+    assert found.exact == pytest.approx((1 + math.sqrt(3)) / 2, rel=1e-12)

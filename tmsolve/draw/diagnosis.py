@@ -11,7 +11,7 @@ from ..answer.solve import solve
 from ..errors import NotApplicable, TmsolveError, TooLargeError
 from .average import Average
 from .sampling import make_row
-from .totals import Totals, exact_totals
+from .totals import Totals, exact_mean, exact_totals
 
 if TYPE_CHECKING:
     from .simulation import Simulation
@@ -38,6 +38,8 @@ class Diagnosis:
         ξ of the infinite chain in cells; None with a realisation of its own.
     infinite : float or None
         Exact mean of the infinite chain; None with a realisation of its own.
+    exact : float or None
+        Exact mean of these N cells; None where their messages do not fit into memory.
     totals : Totals or None
         Exact distribution of the total over these N cells; None where it takes too long or
         the values have no common step.
@@ -55,6 +57,7 @@ class Diagnosis:
     cells: int
     correlation_length: float | None
     infinite: float | None
+    exact: float | None
     totals: Totals | None = field(repr=False)
     simulated: Average
     simulated_absolute: Average
@@ -70,11 +73,6 @@ class Diagnosis:
         return self.cells / self.correlation_length if self.correlation_length else float("inf")
 
     @property
-    def exact(self) -> float | None:
-        """Exact ⟨a⟩ per cell of these N cells."""
-        return None if self.totals is None else self.totals.mean / self.cells
-
-    @property
     def exact_absolute(self) -> float | None:
         """Exact ⟨|a|⟩ per cell of these N cells."""
         return None if self.totals is None else self.totals.absolute / self.cells
@@ -82,8 +80,9 @@ class Diagnosis:
     def __str__(self) -> str:
         name = self.observable
         lines = [f"{name} per cell", f"  simulated {self.simulated}, absolute {self.simulated_absolute}"]
-        if self.exact is not None and self.exact_absolute is not None:
-            lines.append(f"  exact at N = {self.cells}: {self.exact:.6g}, absolute {self.exact_absolute:.6g}")
+        if self.exact is not None:
+            size = "" if self.exact_absolute is None else f", absolute {self.exact_absolute:.6g}"
+            lines.append(f"  exact at N = {self.cells}: {self.exact:.6g}{size}")
         if self.infinite is not None:
             lines.append(f"  exact for the infinite chain: {self.infinite:.6g}")
         if self.lengths is not None:
@@ -118,13 +117,13 @@ def diagnose(run: Simulation, name: str) -> Diagnosis:
     """
     run.point.chain.observable(name)
     length, infinite = _bulk(run, name)
-    totals = _totals(run, name)
+    exact, totals = _finite(run, name)
     simulated, absolute = run.mean(name), run.mean(name, absolute=True)
     tau, kept = run.autocorrelation_time(name), run.sweeps - run.discard
     reasons = [*_slow(tau, kept, run.start), *_spread(run.cells, length, totals, infinite)]
-    if totals is not None:
-        reasons.append(_compared(simulated, totals.mean / run.cells))
-    return Diagnosis(name, run.cells, length, infinite, totals, simulated, absolute, tau, kept, tuple(reasons))
+    if exact is not None:
+        reasons.append(_compared(simulated, exact))
+    return Diagnosis(name, run.cells, length, infinite, exact, totals, simulated, absolute, tau, kept, tuple(reasons))
 
 
 def _bulk(run: Simulation, name: str) -> tuple[float | None, float | None]:
@@ -137,11 +136,18 @@ def _bulk(run: Simulation, name: str) -> tuple[float | None, float | None]:
         return None, None
 
 
-def _totals(run: Simulation, name: str) -> Totals | None:
+def _finite(run: Simulation, name: str) -> tuple[float | None, Totals | None]:
+    """Return the exact mean per cell and the distribution of the total, each where it can be computed."""
+    row = make_row(run.point, run.cells, run.boundary, run.realisation, {}, (name,))
     try:
-        return exact_totals(make_row(run.point, run.cells, run.boundary, run.realisation, {}, (name,)), name)
+        totals = exact_totals(row, name)
+        return totals.mean / run.cells, totals
     except (NotApplicable, TooLargeError):
-        return None
+        pass
+    try:
+        return exact_mean(row, name) / run.cells, None
+    except TooLargeError:
+        return None, None
 
 
 def _slow(tau: float, kept: int, start: str) -> list[str]:
