@@ -51,7 +51,7 @@ CASES = [
     (ISING, {"T": "0.9", "J": "0.7", "h": "0.3"}, "m", 9),
     (models.load("blume_capel").chain, {"T": "0.8", "J": 1, "D": "0.7", "h": "0.1"}, "m", 7),
     (models.load("blume_capel").chain, {"T": "0.8", "J": 1, "D": "0.7", "h": "0.1"}, "q", 6),
-    (NEXT, {"T": 1, "J": "0.5", "K": "-0.8", "h": "0.2"}, "m", 9),
+    (NEXT, {"T": 1, "J": "0.5", "K": "-0.8", "h": "0.2"}, "m", 8),
     (CORES, {"T": 1, "mu": "0.7"}, "any", 8),
     (PAIRS, {"T": 1, "J": "0.8"}, "m", 5),
 ]
@@ -90,7 +90,7 @@ def agree(found, columns, probabilities, closed):
 @pytest.mark.parametrize(("chain", "values", "name", "most"), CASES)
 def test_every_configuration(chain, values, name, most, closed):
     shortest = 1 + max(term.reach for term in chain.terms) if closed else 1
-    for cells in {shortest, shortest + 1, 4, most}:
+    for cells in {shortest, 4, most}:
         wanted = Enumeration(chain, values, cells, ring=closed)
         columns = [np.broadcast_to(wanted.at(name, cell), wanted.probabilities.shape) for cell in range(cells)]
         found = (ring if closed else open_chain)(chain.at(**values), cells).domains(name)
@@ -124,7 +124,7 @@ def test_weighted_ends_and_batches():
 
 
 @pytest.mark.parametrize("closed", [True, False])
-@pytest.mark.parametrize(("chain", "values", "name"), [case[:3] for case in CASES[:1] + CASES[2:]])
+@pytest.mark.parametrize(("chain", "values", "name"), [case[:3] for case in CASES[2:]])
 def test_long_chains_are_the_infinite_chain(chain, values, name, closed):
     found = (ring if closed else open_chain)(chain.at(**values), 10**9).domains(name)
     limit = domains(solve(chain.at(**values)), name)
