@@ -91,4 +91,4 @@ def test_what_cannot_be_used(tm, words, message):
 
 def test_zero_temperature_is_refused(tm):
     ended = tm("sample", "ising", "--cells", 5, "-p", "T=0")
-    assert ended.code == 1 and "needs T > 0" in ended.err
+    assert ended.code == 1 and "needs T > 0" in ended.err and "ask tmsolve ground" in ended.err

@@ -83,8 +83,8 @@ def test_cells_of_two_sites_with_long_bonds_and_own_fields(boundary, fields):
     chances = boltzmann(words, lambda w: mixed_energy(*w, 0.6, 0.5, 0.8, fields, closed), 1.3)
     point = MIXED.at(J=0.6, K=0.5, L=0.8, h=0.3, T=1.3)
     given = {"realisation": {"h": fields}} if isinstance(fields, list) else {}
-    drawn = sample(point, 4, 60_000, boundary, rng=2, **given)
-    assert drawn.states.shape == (60_000, 4, 2) and drawn.kinds == ("a", "b")
+    drawn = sample(point, 4, 30_000, boundary, rng=2, **given)
+    assert drawn.states.shape == (30_000, 4, 2) and drawn.kinds == ("a", "b")
     a, b = drawn.by_kind["a"], drawn.by_kind["b"]
     number = np.zeros(len(a), dtype=int)
     for column, base in [(a[:, i], 2) for i in range(4)] + [(b[:, i], 3) for i in range(4)]:
@@ -173,6 +173,19 @@ def test_long_disordered_chains_and_blocks_of_messages():
         pairs = (states[:, :-1] * states[:, 1:]).mean(axis=0)
         exact = np.tanh(bonds[:-1] / 0.8)  # exact when open; on a ring of 3001 the way round is nothing
         assert abs(((pairs - exact) ** 2).sum() / ((1 - exact**2) / 64).sum() - 1) < 0.15
+
+
+def test_many_fixed_sites():
+    """Every second spin of 40 000 held: the others are independent, ⟨s⟩ = tanh((J (s_l + s_r) + h)/T)."""
+    spins_ = np.random.default_rng(1).choice([-1, 1], 20_000)
+    drawn = sample(
+        ISING.at(J="0.4", h="0.2", T=1), 40_000, 60, rng=2, given={2 * i: int(s) for i, s in enumerate(spins_)}
+    )
+    values = drawn.values()
+    assert (values[:, ::2] == spins_).all()
+    exact = np.tanh(0.4 * (spins_ + np.roll(spins_, -1)) + 0.2)
+    off = ((values[:, 1::2].mean(axis=0) - exact) ** 2).sum() / ((1 - exact**2) / 60).sum()
+    assert abs(off - 1) < 0.06
 
 
 def test_low_temperatures_and_hard_constraints():

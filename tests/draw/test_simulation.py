@@ -25,11 +25,11 @@ POINT = {"J": 0.7, "D": 0.4, "h": 0.3, "T": 1.1}
 def test_both_rules_reach_the_exact_means_from_both_starts(rule, start, boundary):
     """17 cells: the ring is no multiple of the period of its sublattices."""
     point = SPIN_ONE.at(**POINT)
-    run = metropolis(point, 17, 600, 128, rule=rule, start=start, boundary=boundary, rng=2)
+    run = metropolis(point, 17, 300, 128, rule=rule, start=start, boundary=boundary, rng=2)
     exact = (ring if boundary == "ring" else open_chain)(point, 17)
     for name in ("m", "q", "wall"):
         average = run.mean(name)
-        assert abs(average.value - exact.mean(name)) < 4.5 * average.error and average.error < 0.01
+        assert abs(average.value - exact.mean(name)) < 4.5 * average.error and average.error < 0.015
     absolute = run.mean("m", absolute=True)
     assert abs(absolute.value - run.diagnose("m").exact_absolute) < 4.5 * absolute.error
 
@@ -44,10 +44,10 @@ def test_long_bonds_two_kinds_of_site_and_own_fields(rule, boundary):
     exact = {"m": sum(p * (sum(a) + sum(b)) for p, (a, b) in zip(chances, words, strict=True)) / 4}
     exact["energy"] = chances @ energies / 4
     point = MIXED.at(J=0.6, K=0.5, L=0.8, h=0, T=1.3)
-    run = metropolis(point, 4, 500, 256, rule=rule, boundary=boundary, rng=3, realisation={"h": fields})
+    run = metropolis(point, 4, 300, 256, rule=rule, boundary=boundary, rng=3, realisation={"h": fields})
     for name, value in exact.items():
         average = run.mean(name)
-        assert abs(average.value - value) < 4.5 * average.error and average.error < 0.03
+        assert abs(average.value - value) < 4.5 * average.error and average.error < 0.04
     found = run.diagnose("m")
     assert found.exact == pytest.approx(exact["m"], rel=1e-12) and found.correlation_length is None
 

@@ -18,6 +18,7 @@ _PHRASES: tuple[tuple[str, str | Callable[[re.Match[str]], str]], ...] = (
     (r"(?<!\w)\.characteristic_polynomial\b", "--quantity polynomial"),
     (r"Use Dense\(max_size=\d+\), or shorten", "Shorten"),
     (r"box=\{'(\w+)': \(low, high\)\}", r"--axes \1=LOW:HIGH"),
+    (r"ground_state\(…\)", "tmsolve ground"),
     (r"\b(given|rule|start)=(?= |$)", r"--\1"),
     (r"see the attribute of the form", "--quantity prints it"),
 )

@@ -125,20 +125,25 @@ class Row:
         self.hold(total, positions)
         return total
 
+    @cached_property
+    def _held(self) -> dict[str, np.ndarray]:
+        """State that the site of each kind is held in, cell by cell, −1 where it is free."""
+        held = {kind: np.full(self.cells, -1) for kind in self.window.cut.thresholds}
+        for (kind, cell), state in self.pins.items():
+            held[kind][cell] = state
+        return held
+
     def hold(self, total: np.ndarray, positions: np.ndarray) -> None:
         """Forbid all states but one of fixed sites, and of sites beyond an open end."""
         for kind, threshold in self.window.cut.thresholds.items():
-            digits = self.geometry.digits(kind)
             cells = positions + threshold
-            if self.closed:
-                cells = cells % self.cells
-            elif self._held_outside:
-                outside = np.flatnonzero((cells < 0) | (cells >= self.cells))
-                total[np.ix_(outside, np.arange(total.shape[1]), np.flatnonzero(digits != 0))] = -np.inf
-            for (pinned, cell), state in self.pins.items():
-                if pinned == kind:
-                    there = np.flatnonzero(cells == cell)
-                    total[np.ix_(there, np.arange(total.shape[1]), np.flatnonzero(digits != state))] = -np.inf
+            held = self._held[kind][cells % self.cells]
+            if not self.closed:
+                beyond = (cells < 0) | (cells >= self.cells)
+                held = np.where(beyond, 0 if self._held_outside else -1, held)
+            steps = np.flatnonzero(held >= 0)
+            wrong = self.geometry.digits(kind) != held[steps, None]
+            total[steps] = np.where(wrong[:, None, :], -np.inf, total[steps])
 
     @property
     def _held_outside(self) -> bool:
