@@ -111,13 +111,12 @@ def trace_nodes(term: Term, states: Sequence[StateSet]) -> tuple[np.ndarray, dic
         try:
             with np.errstate(all="ignore"):
                 constant, slopes = trace(term, states, tracers, shape)
+                if not (_usable(constant, slopes) and _agrees(term, states, constant, *slopes.values())):
+                    continue
         except Exception:  # whatever goes wrong is met again, and reported, on the numeric route
             continue
-        tables = [constant, *slopes.values()]
-        good = all((np.abs(table) <= _LARGEST).all() for table in slopes.values())
-        if good and ((np.abs(constant) <= _LARGEST) | (constant == math.inf)).all() and _agrees(term, states, *tables):
-            constant, *parts = (without_noise(table[..., None])[..., 0] for table in tables)
-            return constant, {name: part for name, part in zip(slopes, parts, strict=True) if part.any()}
+        constant, *parts = (without_noise(table[..., None])[..., 0] for table in (constant, *slopes.values()))
+        return constant, {name: part for name, part in zip(slopes, parts, strict=True) if part.any()}
     return None
 
 
@@ -152,6 +151,11 @@ def _form(entry: Any) -> _Tracer:
     if np.asarray(entry).dtype.kind not in "iuf":  # truth values are met again, and refused, on the numeric route
         raise NotAffine
     return _Tracer(np.asarray(entry, dtype=np.float64), {})
+
+
+def _usable(constant: np.ndarray, slopes: Mapping[str, np.ndarray]) -> bool:
+    allowed = (np.abs(constant) <= _LARGEST) | (constant == math.inf)
+    return bool(allowed.all()) and all((np.abs(slope) <= _LARGEST).all() for slope in slopes.values())
 
 
 def _agrees(term: Term, states: Sequence[StateSet], constant: np.ndarray, *slopes: np.ndarray) -> bool:
