@@ -52,8 +52,7 @@ def sample(
         A ring; an open chain, whose terms beyond the ends are left out; or N neighbouring
         cells of the infinite chain.
     rng : int, numpy.random.Generator or None
-        Seed, or generator. The same seed gives the same configurations; numbers of replicas
-        up to 48 are drawn in another order than more of them.
+        Seed, or generator. The same seed and count give the same configurations.
     given : mapping, optional
         Fixed sites, ``{cell: state}``, or ``{cell: {kind: state}}`` where a cell has several
         sites. Configurations are drawn from the distribution given these states.

@@ -13,8 +13,8 @@ __all__ = ["draw_symbols"]
 
 #: Walks that are drawn side by side: few enough for their numbers to stay in the fast memory of the processor.
 _SIDE_BY_SIDE = 8192
-#: Up to so many walks it is faster to draw what every place would do at all steps, and then follow each walk.
-_FEW = 48
+#: Up to so many walks times places it is faster to draw what every place would do, and then follow each walk.
+_FEW = 250
 #: Up to so many symbols all thresholds are compared; beyond, they are bisected.
 _FEW_SYMBOLS = 5
 
@@ -46,7 +46,7 @@ def draw_symbols(steps: Steps, count: int, rng: np.random.Generator) -> np.ndarr
     places = np.searchsorted(thresholds(steps.first), rng.random(count), side="right")
     for start, chances in steps.blocks():
         tables: Any = _tables(chances, steps.onward.shape)
-        if count <= _FEW:
+        if count * len(steps.onward) <= _FEW:
             _follow(tables, steps.onward, places, found[start : start + len(chances)], rng)
             continue
         for first in range(0, count, _SIDE_BY_SIDE):
