@@ -53,7 +53,8 @@ def reference(energy, T, values):
     digits = max(1200, int(3 * n * span))
     with mpmath.workdps(digits):
         matrix = mpmath.matrix([[mpmath.exp(-mpmath.mpf(int(e)) / mpmath.mpf(T)) for e in row] for row in energy])
-        roots, left, right = mpmath.eig(matrix, left=True, right=True)
+        roots, right = mpmath.eig(matrix, left=False, right=True)
+        left = mpmath.inverse(right)  # dual also where eigenvalues coincide
         top, *order = sorted(range(n), key=lambda k: -abs(roots[k]))
         nothing = mpmath.mpf(10) ** (-digits * 6 // 10)
         groups: list[list[int]] = []

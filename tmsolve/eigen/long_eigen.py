@@ -42,7 +42,9 @@ def eigensystem(matrix: np.ndarray, numbers: Numbers) -> tuple[list[Any], list[n
     if quick_eigensystems():
         roots, left, right = _by_flint(matrix, numbers.bits, context)
     else:
-        roots, left, right = context.eig(context.matrix(matrix.tolist()), left=True, right=True)
+        roots, right = context.eig(context.matrix(matrix.tolist()), left=False, right=True)
+        # Left vectors found by themselves would not be dual to the right ones where eigenvalues coincide.
+        left = context.inverse(right)
     rows = [np.array([left[k, i] for i in range(n)], dtype=object) for k in range(n)]
     columns = [np.array([right[i, k] for i in range(n)], dtype=object) for k in range(n)]
     return list(roots), rows, columns
