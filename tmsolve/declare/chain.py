@@ -8,7 +8,7 @@ from types import MappingProxyType
 from typing import Any
 
 from ..errors import DeclarationError, ParameterError, did_you_mean, listing, unknown_parameter
-from .grids import require_warm
+from .inexact import require_warm
 from .point import Point, bind, check_temperature
 from .resolve import resolve_observables, resolve_terms
 from .states import StateSet

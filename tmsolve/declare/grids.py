@@ -8,20 +8,18 @@ of the number of nodes.
 from __future__ import annotations
 
 import math
-from collections.abc import Mapping
-from fractions import Fraction
 from itertools import pairwise
 from numbers import Real
 from typing import TYPE_CHECKING, Any
 
-from ..errors import DeclarationError, MissingExtra, NotApplicable
+from ..errors import DeclarationError, MissingExtra
+from .inexact import NodeWeight
 from .states import StateSet, on_grid, whole_count
-from .values import Value
 
 if TYPE_CHECKING:
     import numpy as np
 
-__all__ = ["circle", "interval", "line", "require_discrete", "require_warm", "sphere"]
+__all__ = ["circle", "interval", "line", "sphere"]
 
 #: Beyond this a transfer matrix no longer fits a usual memory.
 _MOST = 8192
@@ -214,75 +212,13 @@ def _lebedev(degree: int) -> tuple[np.ndarray, np.ndarray]:
     for order in range(degree, 132):
         try:
             vectors, weights = lebedev_rule(order)
-        except NotImplementedError:  # no rule of this degree
+        except RuntimeError:  # no rule of this degree
             continue
         if (weights > 0).all():  # three of the rules have negative weights
             return vectors.T, weights
     raise DeclarationError(
         f'sphere({degree}, rule="lebedev") has no rule; degrees go up to 131, beyond it use rule="product"'
     )
-
-
-class NodeWeight(float):
-    """Weight of a quadrature node: a float that refuses to be taken for an exact fraction.
-
-    Exact questions turn the weights of states into fractions, and so none of them mistakes
-    the nodes for the states that the user meant.
-    """
-
-    __slots__ = ()
-
-    def as_integer_ratio(self) -> tuple[int, int]:
-        """Refuse, as every exact conversion comes here.
-
-        Raises
-        ------
-        NotApplicable
-            Always.
-        """
-        raise _inexact("This question", "the states")
-
-
-def require_discrete(cell: Mapping[str, StateSet], what: str) -> None:
-    """Refuse an exact question where states are nodes of a quadrature rule.
-
-    Raises
-    ------
-    NotApplicable
-        Some kind of site has states from `interval`, `line`, `circle` or `sphere`.
-    """
-    for kind, states in cell.items():
-        if states.grid is not None:
-            raise _inexact(what, f"{states.grid}, the states of kind {kind!r},")
-
-
-def _inexact(what: str, which: str) -> NotApplicable:
-    return NotApplicable(
-        f"{what} has an exact answer, and continuous states have none: {which} stand for a continuous variable by "
-        "the nodes of a quadrature rule. Use solve(chain.at(T=…, …)) for numbers, or declare discrete states such "
-        "as clock(q)"
-    )
-
-
-def require_warm(cell: Mapping[str, StateSet], temperature: Value) -> None:
-    """Refuse T = 0 where states are nodes of a quadrature rule.
-
-    Raises
-    ------
-    NotApplicable
-        A grid never holds the minimum of the energy itself, and its sums are no integrals there.
-    """
-    for kind, states in cell.items():
-        if states.grid is not None and _any_zero(temperature):
-            raise NotApplicable(
-                f"T = 0 with continuous states: the nodes of {states.grid} (kind {kind!r}) need not hold the "
-                "ground state, and no number of them resolves a Boltzmann factor there. Give T > 0 and double "
-                "the nodes until the results settle"
-            )
-
-
-def _any_zero(temperature: Value) -> bool:
-    return temperature == 0 if isinstance(temperature, (Fraction, float)) else bool((temperature == 0).any())
 
 
 def _numbers(grid: str, where: np.ndarray, weights: np.ndarray) -> StateSet:

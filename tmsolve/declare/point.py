@@ -10,7 +10,7 @@ from types import MappingProxyType
 from typing import TYPE_CHECKING, Any
 
 from ..errors import ParameterError, did_you_mean, listing, unknown_parameter
-from .grids import require_warm
+from .inexact import require_warm
 from .palettes import require_numbers
 from .values import Value, parse_value
 

@@ -13,7 +13,7 @@ from collections.abc import Mapping
 from fractions import Fraction
 from typing import TYPE_CHECKING, Any
 
-from ..declare.grids import require_discrete
+from ..declare.inexact import require_discrete
 from ..declare.tokens import Colour, ColourMisuse
 from ..errors import DeclarationError
 from .tracer import Inexact, NotSymbolic, Tracer, unwrap
