@@ -22,9 +22,7 @@ import sys
 
 import numpy as np
 
-from tmsolve import Chain, bond, ising, site, solve
-from tmsolve.draw.sampling import sample
-from tmsolve.draw.simulating import metropolis
+from tmsolve import Chain, bond, ising, metropolis, sample, site, solve
 from tmsolve.plotting import save_figure
 
 chain = Chain(

@@ -36,6 +36,8 @@ if TYPE_CHECKING:
     from .declare import spins as spins
     from .declare import term as term
     from .declare import weight as weight
+    from .draw.sampling import sample as sample
+    from .draw.simulating import metropolis as metropolis
     from .enclose.certify_point import certify as certify
     from .errors import DeclarationError as DeclarationError
     from .errors import MissingExtra as MissingExtra
@@ -80,6 +82,8 @@ _HOMES = {
         "Chain", "StateSet", "bond", "clock", "colours", "cos_turns", "delta", "ising", "occupation", "site",
         "spins", "term", "weight",
     ),
+    "draw.sampling": ("sample",),
+    "draw.simulating": ("metropolis",),
     "enclose.certify_point": ("certify",),
     "errors": (
         "DeclarationError", "MissingExtra", "NotApplicable", "ParameterError", "SolveError", "TmsolveError",

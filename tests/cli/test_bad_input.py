@@ -28,9 +28,14 @@ MODELS = [
     (["solve", "nowhere/chain.py"], 2, ["there is no file", "chain.py"]),
     (["solve", "potts", "--option", "r=5"], 2, ["model potts has no option 'r'; it has q"]),
     (
-        ["solve", "potts", "--option", "q=many"],
+        ["solve", "clock", "--option", "q=many"],
         2,
-        ["option 'q' of model potts takes a whole number", "'many'"],
+        ["option 'q' of model clock takes a whole number", "'many'"],
+    ),
+    (
+        ["solve", "potts", "--option", "q=many"],
+        1,
+        ["many being a symbol", "this needs a number", "--option q=3 on the command line"],
     ),
     (["solve", "potts", "--option", "q=0"], 2, ["colours(q) takes a whole number q >= 1, got 0"]),
     (["solve", "ising", "--option", "q=3"], 2, ["model ising takes no options, got q"]),

@@ -416,7 +416,7 @@ def test_verbs_of_numbers_say_how_to_give_one(act):
         lambda: act(potts().fix(J=1, h=0)),
         "sites of kind 's' have q colours, q being a symbol; that is for closed forms",
         "declare the chain with colours(3)",
-        "models.load(…, q=3), --option q=3 on the command line",
+        "models.load('potts', q=3) and --option q=3 on the command line",
     )
 
 

@@ -81,6 +81,6 @@ def require_numbers(cell: Mapping[str, StateSet]) -> None:
             raise NotApplicable(
                 f"sites of kind {kind!r} have {name} colours, {name} being a symbol; that is for "
                 "closed forms and series, and this needs a number: declare the chain with "
-                f"colours(3), or load a model that takes it with models.load(…, {name}=3), "
-                f"--option {name}=3 on the command line"
+                "colours(3), or give the option of a model a number, as in models.load('potts', q=3) and "
+                "--option q=3 on the command line"
             )
