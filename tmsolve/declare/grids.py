@@ -10,22 +10,22 @@ from __future__ import annotations
 import math
 from itertools import pairwise
 from numbers import Real
-from typing import TYPE_CHECKING, Any
+from typing import Any
 
 from ..errors import DeclarationError, MissingExtra
 from .inexact import NodeWeight
+from .nodes import hermite_rule, legendre_rule
 from .states import StateSet, on_grid, whole_count
-
-if TYPE_CHECKING:
-    import numpy as np
 
 __all__ = ["circle", "interval", "line", "sphere"]
 
 #: Beyond this a transfer matrix no longer fits a usual memory.
-_MOST = 8192
+_MOST = 4096
 #: Hermite functions of higher order underflow at the outer nodes.
 _MOST_ON_LINE = 700
 _RULES = ("gauss", "trapezoid")
+
+Vector = tuple[float, float, float]
 
 
 def interval(a: float, b: float, nodes: int, rule: str = "gauss") -> StateSet:
@@ -52,21 +52,21 @@ def interval(a: float, b: float, nodes: int, rule: str = "gauss") -> StateSet:
     >>> round(sum(w * s**6 for s, w in zip(states.values, states.weights)) * 7, 12)
     1.0
     """
-    import numpy as np
-
     low, high = (_finite("interval(a, b, nodes)", end) for end in (a, b))
     if not low < high:
         raise DeclarationError(f"interval(a, b, nodes) needs a < b, got a = {low:g} and b = {high:g}")
     count = _nodes("interval(a, b, nodes)", nodes, 2)
     if rule == "gauss":
-        where, weights = np.polynomial.legendre.leggauss(count)
+        where, weights = legendre_rule(count)
     elif rule == "trapezoid":
-        where, weights = np.linspace(-1, 1, count), np.full(count, 2 / (count - 1))
-        weights[[0, -1]] /= 2
+        step = 2 / (count - 1)
+        where = [(2 * k - count + 1) / (count - 1) for k in range(count)]
+        weights = [step / 2, *[step] * (count - 2), step / 2]
     else:
         raise DeclarationError(f"rule= of interval takes {' or '.join(map(repr, _RULES))}, got {rule!r}")
     half, middle = (high - low) / 2, (high + low) / 2
-    return _numbers(f"interval({low:g}, {high:g}, {count}, {rule!r})", middle + half * where, half * weights)
+    values, weights = [middle + half * x for x in where], [half * w for w in weights]
+    return _numbers(f"interval({low:g}, {high:g}, {count}, {rule!r})", values, weights)
 
 
 def line(nodes: int, scale: float = 1.0) -> StateSet:
@@ -99,31 +99,12 @@ def line(nodes: int, scale: float = 1.0) -> StateSet:
     >>> round(sum(w * math.exp(-s*s/4) for s, w in zip(states.values, states.weights))**2, 9)
     12.566370614
     """
-    import numpy as np
-
     count = _nodes("line(nodes)", nodes, 2, _MOST_ON_LINE)
     length = _finite("line(nodes, scale)", scale)
     if length <= 0:
         raise DeclarationError(f"line(nodes, scale) takes a positive scale, got {length:g}")
-    off = np.sqrt(np.arange(1, count) / 2)
-    where = np.linalg.eigvalsh(np.diag(off, 1) + np.diag(off, -1))
-    where = (where - where[::-1]) / 2
-    for _ in range(2):
-        last, values = _hermite(where, count)
-        where = where - last / (math.sqrt(2 * count) * values[-1])
-    weights = 1 / (_hermite(where, count)[1] ** 2).sum(axis=0)
-    return _numbers(f"line({count}, {length:g})", length * where, length * weights)
-
-
-def _hermite(where: np.ndarray, count: int) -> tuple[np.ndarray, np.ndarray]:
-    """Return the orthonormal Hermite function of order ``count``, and all those below it."""
-    import numpy as np
-
-    values = np.zeros((count + 1, where.size))
-    values[0] = math.pi**-0.25 * np.exp(-where * where / 2)
-    for k in range(count):
-        values[k + 1] = where * math.sqrt(2 / (k + 1)) * values[k] - math.sqrt(k / (k + 1)) * values[k - 1]
-    return values[count], values[:count]
+    where, weights = hermite_rule(count)
+    return _numbers(f"line({count}, {length:g})", [length * x for x in where], [length * w for w in weights])
 
 
 def circle(nodes: int) -> StateSet:
@@ -190,18 +171,18 @@ def sphere(degree: int, rule: str = "product") -> StateSet:
     return on_grid(f"sphere({least}, {rule!r})", values, [NodeWeight(w) for w in weights], labels)
 
 
-def _product_rule(degree: int) -> tuple[np.ndarray, np.ndarray]:
-    import numpy as np
-
-    heights, weights = np.polynomial.legendre.leggauss(degree // 2 + 1)
+def _product_rule(degree: int) -> tuple[list[Vector], list[float]]:
     steps = degree + 1
-    angles = 2 * math.pi * (np.arange(steps) + 0.5) / steps
-    across = np.sqrt(1 - heights**2)[:, None]
-    parts = (across * np.cos(angles), across * np.sin(angles), np.broadcast_to(heights[:, None], (heights.size, steps)))
-    return np.stack([part.ravel() for part in parts], axis=1), np.repeat(weights * 2 * math.pi / steps, steps)
+    angles = [2 * math.pi * (k + 0.5) / steps for k in range(steps)]
+    vectors, weights = [], []
+    for z, weight in zip(*legendre_rule(degree // 2 + 1), strict=True):
+        across = math.sqrt((1 - z) * (1 + z))
+        vectors += [(across * math.cos(angle), across * math.sin(angle), z) for angle in angles]
+        weights += [weight * 2 * math.pi / steps] * steps
+    return vectors, weights
 
 
-def _lebedev(degree: int) -> tuple[np.ndarray, np.ndarray]:
+def _lebedev(degree: int) -> tuple[list[Vector], list[float]]:
     try:
         from scipy.integrate import lebedev_rule
     except ImportError as cause:
@@ -215,13 +196,13 @@ def _lebedev(degree: int) -> tuple[np.ndarray, np.ndarray]:
         except RuntimeError:  # no rule of this degree
             continue
         if (weights > 0).all():  # three of the rules have negative weights
-            return vectors.T, weights
+            return [tuple(vector) for vector in vectors.T.tolist()], weights.tolist()
     raise DeclarationError(
         f'sphere({degree}, rule="lebedev") has no rule; degrees go up to 131, beyond it use rule="product"'
     )
 
 
-def _numbers(grid: str, where: np.ndarray, weights: np.ndarray) -> StateSet:
+def _numbers(grid: str, where: list[float], weights: list[float]) -> StateSet:
     values = [float(x) for x in where]
     for digits in (6, 10, 17):
         labels = [f"{x:.{digits}g}" for x in values]
