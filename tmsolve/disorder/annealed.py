@@ -70,9 +70,8 @@ def _averaged(term: Term, laws: Mapping[str, Law], count: int) -> Term:
     if term.role != "weight" and "T" not in others:
         others.append("T")
     none = inspect.Parameter.empty
-    keywords = [
-        inspect.Parameter(name, inspect.Parameter.KEYWORD_ONLY, default=term.defaults.get(name, none)) for name in others
-    ]
+    only = inspect.Parameter.KEYWORD_ONLY
+    keywords = [inspect.Parameter(name, only, default=term.defaults.get(name, none)) for name in others]
     call.__signature__ = inspect.Signature([*states, *keywords])  # type: ignore[attr-defined]
     call.__name__ = f"average_of_{term.name}" if term.name.isidentifier() else "average"
     return Term(call, term.places, term.role)

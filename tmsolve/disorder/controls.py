@@ -22,6 +22,8 @@ __all__ = ["Expected", "expected", "features", "fitted"]
 #: Degrees and number of polynomials of the message.
 _DEGREE = {1: 7, 2: 4, 3: 3}
 _MOST_FEATURES = 16
+#: Groups of replicas whose coefficients come from the others.
+_FOLDS = 8
 
 
 def features(message: Message, power: float = 1.0) -> tuple[np.ndarray, np.ndarray]:
@@ -99,6 +101,9 @@ def expected(message: Message, step: Steps, weights: np.ndarray, power: float = 
 def fitted(target: np.ndarray, controls: np.ndarray) -> np.ndarray:
     """Return the target without what the controls explain of it.
 
+    Coefficients that a replica is treated with are fitted to the other replicas: a fit to itself would follow its noise
+    and make error bars too small.
+
     Parameters
     ----------
     target : ndarray, shape (batches, replicas)
@@ -111,11 +116,16 @@ def fitted(target: np.ndarray, controls: np.ndarray) -> np.ndarray:
     >>> bool(np.allclose(fitted(3 + 2 * noise[0], noise), 3))
     True
     """
-    rows = controls.reshape(len(controls), -1).T
-    size = np.sqrt((rows**2).mean(axis=0))
-    rows = rows[:, size > 0] / size[size > 0]
-    if len(rows) < 4 * (rows.shape[1] + 1):
+    replicas = target.shape[1]
+    size = np.sqrt((controls**2).mean(axis=(1, 2)))
+    rows = (controls[size > 0] / size[size > 0, None, None]).transpose(2, 1, 0)
+    if not rows.shape[2] or target.size < 4 * (rows.shape[2] + 1):
         return target
-    centred = rows - rows.mean(axis=0)
-    coefficients = np.linalg.lstsq(centred, target.ravel() - target.mean(), rcond=1e-12)[0]
-    return target - (rows @ coefficients).reshape(target.shape)
+    result = target.copy()
+    for part in np.array_split(np.arange(replicas), min(_FOLDS, replicas)):
+        others = np.delete(np.arange(replicas), part)
+        given, wanted = rows[others].reshape(-1, rows.shape[2]), target.T[others].ravel()
+        centred = given - given.mean(axis=0)
+        coefficients = np.linalg.lstsq(centred, wanted - wanted.mean(), rcond=1e-12)[0]
+        result[:, part] -= (rows[part] @ coefficients).T
+    return result

@@ -39,6 +39,8 @@ _MOST_DRAWS = 4000
 _FLAT = 38.0
 #: Share of the average correlation below which a mode of decay is rounding.
 _ABSENT = 1e-9
+#: A factor of decay that is nothing.
+_ROUNDING = 1e-14
 #: Function values held at a time.
 _CHUNK = 2_000_000
 
@@ -47,16 +49,17 @@ _CHUNK = 2_000_000
 class StationaryMessage(ExactAverages):
     """Exact averages of a chain whose cut has two states, with its correlation lengths."""
 
-    typical_rate: float
-    average_rate: float
+    _level: _Level
 
     def correlation_length(self) -> Average:
         """Typical correlation length in cells: from the average of the logarithm of connected correlations."""
-        return Average(_length(self.typical_rate), self.error)
+        rate = self._level.volume - 2 * float(self._growth.value)
+        return Average(_length(rate), 2 * self.error / rate**2)
 
     def average_correlation_length(self) -> Average:
         """Return the decay length in cells of the average of connected correlations."""
-        return Average(_length(self.average_rate), self.error)
+        rate = self._level.average_decay()
+        return Average(_length(rate), self.error / rate**2)
 
 
 def _length(rate: float) -> float:
@@ -118,7 +121,7 @@ def stationary_message(
     else:
         before = earlier
     assert before is not None
-    found = StationaryMessage(error, maker, growth, before, *level.rates(float(growth.value)))
+    found = StationaryMessage(error, maker, growth, before, level)
     if error < tolerance:
         return found
     raise SolveError(
@@ -228,12 +231,11 @@ class _Level:
         solved = np.linalg.solve(border, np.append(right, 0.0))
         return solved[:-1], float(solved[-1])
 
-    def rates(self, gamma: float) -> tuple[float, float]:
-        """Return the logarithms of the typical and the average decay of correlations per cell."""
+    def average_decay(self) -> float:
+        """Return the logarithm of the factor per cell by which the average of connected correlations decays."""
         values, modes = np.linalg.eig(self.decay.astype(np.complex128))
         # How a local mean responds to the message that reaches it; its exact form does not matter to the decay.
         response = 1 / np.cosh(self.grid / 2) ** 2
         share = np.abs((self.law @ modes) * np.linalg.solve(modes, response))
-        seen = np.abs(values[share > _ABSENT * share.max()])
-        largest = float(seen.max(initial=0.0))
-        return self.volume - 2 * gamma, float(np.log(largest)) if largest > 1e-14 else -np.inf
+        largest = float(np.abs(values[share > _ABSENT * share.max()]).max(initial=0.0))
+        return float(np.log(largest)) if largest > _ROUNDING else -np.inf

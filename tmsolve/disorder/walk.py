@@ -79,7 +79,7 @@ def random_steps(
     maker: StepMaker, rng: np.random.Generator, cells: int, replicas: int, longest: int | None = None
 ) -> Iterator[Steps]:
     """Yield the matrices of one cell after the other, over all replicas."""
-    block = min(_block(maker, replicas), longest or cells)
+    block = max(1, min(_block(maker, replicas), longest or cells))
     for begin in range(0, cells, block):
         count = min(block, cells - begin)
         drawn = maker.problem.draw(rng, begin, count, replicas)

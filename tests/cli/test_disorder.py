@@ -1,0 +1,82 @@
+"""``tmsolve disorder``: output, the numbers of the library, what is refused."""
+
+import pytest
+
+from tmsolve import models
+from tmsolve.disorder.ground_energy import disordered_ground_state
+from tmsolve.disorder.quenched import quenched
+from tmsolve.disorder.stationary import stationary_message
+
+FIELD = ("disorder", "random_field_ising", "--random", "h=normal(0,1)")
+FEW = ("--cells", "20", "--replicas", "4", "--seed", "3")
+
+
+def test_the_command_prints_the_averages_of_the_library(tm):
+    ended = tm(*FIELD, *FEW, "-p", "T=0.8")
+    chain = models.load("random_field_ising").chain.fix(T="0.8", J=1, H=0)
+    expected = quenched(chain, {"h": "normal(0,1)"}, cells=20, replicas=4, rng=3)
+    assert ended.code == 0 and ended.err == ""
+    averages = (expected.free_energy, expected.mean("m"), expected.susceptibility("m"), expected.correlation_length())
+    assert all(str(average) in ended.out for average in averages)
+    for line in ("h ~ normal(0,1)", "4 replicas of 20 cells, seed 3", "T = 0.8", "J = 1  (default)"):
+        assert line in ended.out
+
+
+def test_json_holds_values_and_errors(tm):
+    read = "free_energy,derivative(J),derivative(J,H),lyapunov(2)"
+    document = tm(*FIELD, *FEW, "--json", "--read", read).json
+    assert list(document["results"]) == read.replace(",H", "-").replace(",", "|").replace("-", ",H").split("|")
+    assert document["results"]["free_energy"]["error"] > 0
+    assert document["random"] == {"h": "normal(0,1)"} and document["seed"] == 3 and document["method"] == "sample"
+    again = tm(*FIELD, *FEW, "--json", "--read", read).json
+    assert again == document
+
+
+def test_exact_and_annealed_averages(tm):
+    exact = tm(*FIELD, "--method", "exact", "--json", "--read", "free_energy,average_correlation_length").json
+    chain = models.load("random_field_ising").chain.fix(T=1, J=1, H=0)
+    expected = stationary_message(chain, {"h": "normal(0,1)"})
+    assert exact["results"]["free_energy"]["value"] == expected.free_energy.value
+    annealed = tm(*FIELD, "--method", "annealed", "--json").json
+    assert annealed["results"]["free_energy"]["value"] < expected.free_energy.value
+    assert annealed["results"]["free_energy"]["error"] == 0
+    part = tm(*FIELD, "--method", "annealed", "--read", "free_energy,lyapunov(1)")
+    assert part.code == 3 and "lyapunov" in part.err
+
+
+def test_zero_temperature(tm):
+    words = ("disorder", "random_field_ising", "--random", "h=choice(-0.8:1/2,0.8:1/2)", "-p", "T=0", *FEW)
+    document = tm(*words, "--json").json
+    assert document["energy_exact"] == "-37/30" and document["results"]["energy"]["error"] == 0
+    chain = models.load("random_field_ising").chain.fix(J=1, H=0)
+    expected = disordered_ground_state(chain, {"h": {"-0.8": "1/2", "0.8": "1/2"}}, cells=20, replicas=4, rng=3)
+    assert document["results"]["residual_entropy"]["value"] == expected.residual_entropy.value
+    assert "-37/30" in tm(*words).out
+    sampled = tm(*FIELD, "-p", "T=0", *FEW, "--json").json
+    assert sampled["energy_exact"] is None and sampled["results"]["energy"]["error"] > 0
+
+
+@pytest.mark.parametrize(
+    ("words", "fragments"),
+    [
+        (("disorder", "ising"), ["no random parameter", "--random"]),
+        ((*FIELD, "--random", "h=uniform(0,1)"), ["given twice"]),
+        (("disorder", "ising", "--random", "hh=normal(0,1)"), ["--random hh", "Did you mean 'h'?"]),
+        (("disorder", "ising", "--random", "h=gauss(0,1)"), ["--random h:", "normal(MEAN,DEVIATION)"]),
+        (("disorder", "ising", "--random", "h=choice(1:0.5,2:0.4)"), ["sum to 0.9"]),
+        ((*FIELD, "-p", "h=1"), ["h is random"]),
+        ((*FIELD, "--cells", "0"), ["--cells"]),
+        ((*FIELD, "--replicas", "1"), ["--replicas"]),
+        ((*FIELD, "--seed", "-2"), ["--seed"]),
+        ((*FIELD, "--method", "guess"), ["sample, exact, annealed", "'guess'"]),
+        ((*FIELD, "--read", "entropi"), ["Did you mean 'entropy'?"]),
+        ((*FIELD, "--read", "mean"), ["mean takes 1 names"]),
+        ((*FIELD, "--read", "lyapunov(x)"), ["whole number k"]),
+        ((*FIELD, "-p", "T=0", "--read", "entropy"), ["leave --read"]),
+    ],
+)
+def test_what_is_refused(tm, words, fragments):
+    ended = tm(*words)
+    assert ended.code == 2
+    for fragment in fragments:
+        assert fragment in ended.err
