@@ -8,6 +8,7 @@ from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
 from ..errors import DeclarationError, ParameterError, TmsolveError
+from .disorder_realised import add_realisation, solve_realised
 from .jsontext import json_text
 from .layout import heading
 from .model import Values, check_names, fill, given_values, load_model
@@ -21,16 +22,18 @@ if TYPE_CHECKING:
     from ..disorder.averages import Average
     from ..models import LoadedModel
 
-OPERANDS = "MODEL --random NAME=LAW"
+OPERANDS = "MODEL (--random NAME=LAW | --realisation FILE.csv)"
 DESCRIPTION = """\
 Average an infinite chain over quenched disorder: parameters that are random, independently from cell to
-cell. Numbers are per cell, with the error of the last two digits in brackets. At T = 0 the ground state."""
+cell. Numbers are per cell, with the error of the last two digits in brackets. At T = 0 the ground state.
+With --realisation one given chain, open or a ring: ln Z, means, and the means in every cell."""
 EXAMPLES = """\
   tmsolve disorder random_field_ising --random "h=normal(0,1)" -p T=1
   tmsolve disorder random_bond_ising --random "J=choice(-1:0.5,1:0.5)" --read free_energy,correlation_length
   tmsolve disorder random_field_ising --random "h=uniform(-1,1)" --method exact --json
   tmsolve disorder random_field_ising --random "h=choice(-0.8:1/2,0.8:1/2)" -p T=0
   tmsolve disorder diluted_blume_capel --random "c=choice(0:0.1,1:0.9)" --cells 2000 --replicas 32 --seed 7
+  tmsolve disorder random_field_ising --realisation fields.csv --boundary ring --out profile.csv
 """
 METHODS = ("sample", "exact", "annealed")
 
@@ -44,7 +47,7 @@ def configure(parser: Parser) -> None:
         action="append",
         default=[],
         help="a random parameter: normal(MEAN,DEVIATION), uniform(LOW,HIGH) or choice(VALUE:PROBABILITY,…), in "
-        "quotes; repeatable, needed at least once",
+        "quotes; repeatable, needed at least once unless --realisation is given",
     )
     parser.add_argument("--cells", metavar="N", default="1000", help="cells averaged over per replica. Default: 1000")
     parser.add_argument("--replicas", metavar="N", default="64", help="independent chains, at least 2. Default: 64")
@@ -65,6 +68,7 @@ def configure(parser: Parser) -> None:
         "susceptibility(a) susceptibility(a,b) derivative(p) derivative(p,q) lyapunov(k) correlation_length "
         "average_correlation_length; a, b are observables, p, q parameters or T. Default: all but the last four",
     )
+    add_realisation(parser)
     add_common(parser)
 
 
@@ -75,6 +79,11 @@ def run(arguments: argparse.Namespace) -> int:
     if arguments.method not in METHODS:
         raise UsageError(f"--method is one of {', '.join(METHODS)}, got {arguments.method!r}")
     model = load_model(arguments)
+    if arguments.realisation is not None:
+        return solve_realised(arguments, model)
+    for option in ("boundary", "out"):
+        if getattr(arguments, option) is not None:
+            raise UsageError(f"--{option} belongs to --realisation FILE.csv; leave it out")
     laws = _laws(arguments, model)
     values = fill(given_values(arguments, model), model, running=laws)
     for name in laws:

@@ -100,6 +100,15 @@ class Realised:
         return float(self.shared["T"])
 
     @property
+    def observables(self) -> tuple[str, ...]:
+        """Observables that can be read: those that take none of the parameters of single cells."""
+        return tuple(
+            name
+            for name, parts in self.chain.observables.items()
+            if not any(p in self.values for part in parts for p in part.parameters)
+        )
+
+    @property
     def log_Z(self) -> float:
         """Logarithm of the partition function of the whole chain."""
         return self._row(()).messages.log_sum
@@ -134,17 +143,8 @@ class Realised:
         kind = "a ring" if self.closed else "an open chain"
         lines = [f"one realisation of {listing(self.values)} in {kind} of {self.cells} cells of {self.chain.name!r}"]
         lines += [f"  {'log_Z':18} {self.log_Z:.12g}", f"  {'free_energy':18} {self.free_energy:.12g}"]
-        lines += [f"  {f'mean({a})':18} {self.mean(a):.12g}" for a in self._readable]
+        lines += [f"  {f'mean({a})':18} {self.mean(a):.12g}" for a in self.observables]
         return "\n".join(lines)
-
-    @property
-    def _readable(self) -> list[str]:
-        """Observables that take none of the parameters of single cells."""
-        return [
-            name
-            for name, parts in self.chain.observables.items()
-            if not any(p in self.values for part in parts for p in part.parameters)
-        ]
 
     def _check(self, a: str) -> None:
         for part in self.chain.observable(a):
@@ -152,7 +152,7 @@ class Realised:
                 if name in self.values:
                     raise ParameterError(
                         f"observable {a!r} takes {name!r}, which differs from cell to cell; there are "
-                        f"{listing(self._readable)} without such parameters.{did_you_mean(a, self._readable)}"
+                        f"{listing(self.observables)} without such parameters.{did_you_mean(a, self.observables)}"
                     )
 
     def _cell(self, cell: Any) -> int:
