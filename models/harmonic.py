@@ -9,8 +9,7 @@ The displacements are the nodes of the rule of Gauss and Hermite, whose `scale` 
 (2/(a + s))^(1/2), a = (k + p/2)/T, s = (p (4k + p))^(1/2)/(2T); p > 0, else nothing holds the chain.
 """
 
-from tmsolve import Chain, bond, site
-from tmsolve.declare import line
+from tmsolve import Chain, bond, line, site
 
 
 def chain(nodes: int = 48, scale: float = 1.0, alternating: bool = False) -> Chain:

@@ -7,8 +7,7 @@ The vectors are the nodes of a rule that integrates polynomials up to a degree e
 higher one is needed, about 12 (J/T)^(1/2).
 """
 
-from tmsolve import Chain, bond, site
-from tmsolve.declare import sphere
+from tmsolve import Chain, bond, site, sphere
 
 
 def chain(degree: int = 16, rule: str = "product") -> Chain:

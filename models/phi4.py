@@ -7,8 +7,7 @@ Momenta are not part of the energy. The displacements are equal steps from -reac
 site should exceed that of the wells by 40 T; at low temperature more nodes are needed.
 """
 
-from tmsolve import Chain, bond, site
-from tmsolve.declare import interval
+from tmsolve import Chain, bond, interval, site
 
 
 def chain(nodes: int = 64, reach: float = 3.5) -> Chain:

@@ -9,8 +9,7 @@ The angles are the nodes of a rule of equal steps; at low temperature more nodes
 
 from math import cos, sin
 
-from tmsolve import Chain, bond, site
-from tmsolve.declare import circle
+from tmsolve import Chain, bond, circle, site
 
 
 def chain(nodes: int = 48) -> Chain:

@@ -26,13 +26,17 @@ if TYPE_CHECKING:
     from .declare import Chain as Chain
     from .declare import StateSet as StateSet
     from .declare import bond as bond
+    from .declare import circle as circle
     from .declare import clock as clock
     from .declare import colours as colours
     from .declare import cos_turns as cos_turns
     from .declare import delta as delta
+    from .declare import interval as interval
     from .declare import ising as ising
+    from .declare import line as line
     from .declare import occupation as occupation
     from .declare import site as site
+    from .declare import sphere as sphere
     from .declare import spins as spins
     from .declare import term as term
     from .declare import weight as weight
@@ -56,6 +60,7 @@ if TYPE_CHECKING:
     from .survey.caloric import adiabatic_slope as adiabatic_slope
     from .survey.caloric import entropy_change as entropy_change
     from .survey.deviations import rate_function as rate_function
+    from .survey.doubling import settled as settled
     from .survey.ensemble import field_for_mean as field_for_mean
     from .survey.events import crossovers as crossovers
     from .survey.information import fisher_information as fisher_information
@@ -79,8 +84,8 @@ _HOMES = {
     "answer.solve": ("solve",),
     "assemble.describe_chain": ("describe",),
     "declare": (
-        "Chain", "StateSet", "bond", "clock", "colours", "cos_turns", "delta", "ising", "occupation", "site",
-        "spins", "term", "weight",
+        "Chain", "StateSet", "bond", "circle", "clock", "colours", "cos_turns", "delta", "interval", "ising", "line",
+        "occupation", "site", "sphere", "spins", "term", "weight",
     ),
     "draw.sampling": ("sample",),
     "draw.simulating": ("metropolis",),
@@ -97,6 +102,7 @@ _HOMES = {
     "survey.axes": ("axis",),
     "survey.caloric": ("adiabatic_slope", "entropy_change"),
     "survey.deviations": ("rate_function",),
+    "survey.doubling": ("settled",),
     "survey.ensemble": ("field_for_mean",),
     "survey.events": ("crossovers",),
     "survey.information": ("fisher_information",),

@@ -4,7 +4,15 @@ import pytest
 
 # words, exit code, what the message must hold (all of it)
 COMMANDS = [
-    ([], 2, ["no command given", "solve, derive, scan, crossovers, ground, finite, sample, disorder, models", "Try: tmsolve --help"]),
+    (
+        [],
+        2,
+        [
+            "no command given",
+            "solve, derive, scan, crossovers, ground, finite, sample, disorder, models",
+            "Try: tmsolve --help",
+        ],
+    ),
     (["solv", "ising"], 2, ["no command 'solv'", "Did you mean 'solve'?"]),
     (["frobnicate"], 2, ["no command 'frobnicate'; the commands are solve,"]),
     (["-p", "J=1", "solve", "ising"], 2, ["the command comes first, got '-p'"]),

@@ -10,6 +10,7 @@ import numpy as np
 
 from ..assemble.window import ChainWindow, build_window
 from ..declare import Chain, Point
+from ..declare.inexact import require_discrete
 from ..eigen.solvers import Auto, Dense, Solver
 from ..errors import ParameterError
 from ..observe.evaluate import Laws
@@ -74,6 +75,7 @@ def solve(point: Point, *, solver: Solver | None = None, digits: int | None = No
         return Solution(point, _laws(window, point, partial(stationary_laws, solver=dense), None, dense))
     if isinstance(digits, bool) or not isinstance(digits, Integral) or digits < 1:
         raise ParameterError(f"digits= takes a whole number >= 1, got {digits!r}")
+    require_discrete(point.chain.cell, "solve with digits=")
     wanted = int(digits)
     return Solution(point, _laws(window, point, partial(long_laws, solver=dense, digits=wanted), wanted, dense))
 

@@ -12,6 +12,7 @@ import numpy as np
 from .._optional import require
 from ..assemble.window import ChainWindow, build_window
 from ..declare import Chain, Point
+from ..declare.inexact import require_discrete
 from ..eigen.components import communicating_classes
 from ..errors import NotApplicable, ParameterError, SolveError, TooLargeError
 from .arithmetic import Arithmetic, choose_arithmetic
@@ -142,6 +143,7 @@ def _check(point: Any, digits: Any, bits: Any) -> None:
             "certify needs T > 0, got T = 0: at zero temperature the ground state is exact already, "
             "ask ground_state(chain)"
         )
+    require_discrete(point.chain.cell, "a certificate")
 
 
 def _climb(

@@ -9,6 +9,7 @@ from typing import Any
 
 from ..assemble.window import build_window
 from ..declare import Chain
+from ..declare.inexact import require_discrete
 from ..declare.values import parse_value
 from ..errors import DeclarationError, NotApplicable, ParameterError
 from .bisection import bisected
@@ -74,6 +75,7 @@ def phase_diagram(
     if not isinstance(chain, Chain):
         raise DeclarationError(f"phase_diagram takes a chain, got {chain!r}")
     refuse_thermal(chain)
+    require_discrete(chain.cell, "a phase diagram")
     names = read_axes(chain, axes)
     values = exact_values(chain, names)
     ranges = read_box(names, box)

@@ -10,6 +10,7 @@ from functools import cached_property
 from typing import Any, TypeVar
 
 from ...declare.chain import Chain
+from ...declare.inexact import require_discrete
 from ...declare.values import parse_value
 from ...errors import NotApplicable, ParameterError, TmsolveError, TooLargeError, did_you_mean, listing
 from ...tabulate.symbolic import parameter_symbols
@@ -227,6 +228,7 @@ def recursion(chain: Chain, b: int = 2, *, time_limit: float = 30) -> Recursion:
             limit=_LONGEST,
         )
     allowed = positive_seconds(time_limit)
+    require_discrete(chain.cell, "a recursion relation")
     table, closure = _in_time(allowed, "the recursion relations", lambda: _derive(chain, cells))
     if closure.missing:
         raise NotApplicable(
