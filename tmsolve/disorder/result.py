@@ -18,6 +18,10 @@ from .walk import Rates
 
 __all__ = ["QuenchedChain"]
 
+#: Independent chains per coefficient of a control variate.
+_REPLICAS_PER_CONTROL = 4
+
+
 @dataclass(frozen=True, eq=False)
 class QuenchedChain(PerCell):
     """A chain averaged over quenched disorder; everything is per cell, with k_B = 1.
@@ -100,7 +104,9 @@ class QuenchedChain(PerCell):
         rates = self._rates
         assert rates.controls is not None and rates.slopes is not None
         assert rates.mean_value is not None and rates.mean_first is not None
-        found = [rates.controls, *(rates.slopes[:, i] for i in tilts)]
+        # A fit with too many coefficients for the replicas would add as much noise as it takes away.
+        most = max(1, self.replicas // (_REPLICAS_PER_CONTROL * (1 + len(tilts))))
+        found = [rates.controls[:most], *(rates.slopes[:most, i] for i in tilts)]
         if twice:  # second derivatives are not averaged over the draw, so differences from such averages help
             surprise = rates.first - rates.mean_first
             found += [(rates.value - rates.mean_value)[None], *(surprise[i, None] for i in tilts)]

@@ -7,7 +7,7 @@ from fractions import Fraction
 from typing import Any
 
 from ..errors import DeclarationError, did_you_mean
-from .laws import Normal, Uniform
+from .kinds import Normal, Uniform
 
 __all__ = ["read_law"]
 
