@@ -10,6 +10,7 @@ from typing import Any
 
 import numpy as np
 
+from ..assemble.window import build_window
 from ..declare import Chain
 from ..errors import ParameterError, SolveError
 from ..observe.solution import Solution
@@ -25,6 +26,7 @@ from .tasks import Task, results
 __all__ = ["ScanInterrupted", "scan"]
 
 _SMALLEST_BLOCK, _LARGEST_BLOCK = 1024, 8192
+_LARGEST_TABLE = 2**22
 
 
 class ScanInterrupted(KeyboardInterrupt):
@@ -174,6 +176,8 @@ class _Collected:
 def _finished(plan: Plan, collected: _Collected, kept: Store | None, executor: Executor | None) -> Iterator[int]:
     """Compute what the store does not hold; yield the number of points done after every block."""
     block = min(max(plan.size // 16, _SMALLEST_BLOCK), _LARGEST_BLOCK)
+    # One table of a block holds this many numbers at most: matrices of hundreds of states come in small blocks.
+    block = min(block, max(1, _LARGEST_TABLE // build_window(plan.chain).nonzeros))
     starts = range(0, plan.size, block)
     base = [] if kept is None else [_reading_key(plan, i) for i in range(len(plan.readings))]
     tasks: list[Task] = []
