@@ -159,6 +159,17 @@ def test_longer_bonds_and_more_states():
         assert abs(read(one).value - read(two).value) < 4.5 * np.hypot(read(one).error, read(two).error)
 
 
+def test_pairs_of_many_observables_are_carried_when_asked_for():
+    observables = {"a": lambda s: s, "b": lambda s: s * s, "c": lambda s: 2 * s, "d": lambda s: 1 - s}
+    chain = Chain(spins(1), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)], observables=observables)
+    law = {"h": "uniform(0,1)"}
+    plain = quenched(chain.fix(T=1, J=1), law, cells=5, replicas=2, rng=1)
+    refused(NotApplicable, lambda: plain.susceptibility("a", "c"), "a and c", "derivatives=")
+    asked = quenched(chain.fix(T=1, J=1), law, cells=5, replicas=2, rng=1, derivatives=[("a", "c"), ("d", "a")])
+    assert asked.susceptibility("a", "c").value == pytest.approx(2 * asked.susceptibility("a").value, rel=1e-9)
+    assert asked.susceptibility("a", "d").value == pytest.approx(-asked.susceptibility("a").value, rel=1e-9)
+
+
 # --- exponents
 
 

@@ -28,13 +28,19 @@ def with_tangents(problem: Problem, derivatives: Iterable[tuple[str, str]] = ())
     for names in derivatives:
         if not isinstance(names, (tuple, list)) or len(names) != 2:
             raise ParameterError(f'derivatives= takes pairs of names such as ("J", "h"), got {names!r}')
-        pair = [BETA if name == "T" else name for name in names]
+        pair = [_tilt(problem, name) for name in names]
         for name in pair:
             if name not in tilts:
                 raise ParameterError(f"the energy has no smooth parameter {name!r} to differentiate by")
         pairs.append((pair[0], pair[1]))
     numbers = {tuple(sorted((tilts.index(a), tilts.index(b)))) for a, b in pairs}
     return StepMaker(problem, tuple(tilts), tuple(sorted((i, j) for i, j in numbers)))
+
+
+def _tilt(problem: Problem, name: str) -> str:
+    if name == "T":
+        return BETA
+    return observable(name) if name in problem.observables and name not in problem.parameters else name
 
 
 def _smooth(problem: Problem, name: str) -> bool:
