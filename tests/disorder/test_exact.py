@@ -161,3 +161,25 @@ def test_cold_input():
     refused(ParameterError, lambda: disordered_ground_state(fixed, law, most_messages=0), "most_messages=")
     refused(ParameterError, lambda: disordered_ground_state(FIELD.fix(J=1), law), "no value for H")
     refused(DeclarationError, lambda: disordered_ground_state(fixed, {"h": [1.0]}, cells=2), "1 values")
+
+
+# --- random state sets
+
+
+def test_a_mixed_crystal_of_two_kinds_of_sites_is_a_random_state_set():
+    # Invented: a fifth of the sites carries spin 1 instead of spin 1/2; a random weight says which states a site has.
+    def allowed(s, long):
+        return long * (s in (-1, 0, 1)) + (1 - long) * (s in (-0.5, 0.5))
+
+    half = Fraction(1, 2)
+    chain = Chain(
+        StateSet([-1, -half, 0, half, 1]),
+        [weight(allowed), site(lambda s, h: -h * s)],
+        observables={"m": lambda s: s},
+    )
+    found = quenched(chain.fix(T=1, h="0.7"), {"long": {1: "0.2", 0: "0.8"}}, cells=40, replicas=8, rng=1)
+    expected = 0.2 * np.log(1 + 2 * np.cosh(0.7)) + 0.8 * np.log(2 * np.cosh(0.35))
+    assert found.free_energy.value == pytest.approx(-expected, rel=1e-12)
+    assert found.mean("m").value == pytest.approx(
+        0.2 * 2 * np.sinh(0.7) / (1 + 2 * np.cosh(0.7)) + 0.8 * np.tanh(0.35) / 2, rel=1e-12
+    )

@@ -57,8 +57,8 @@ def quenched(
     control_variates : bool
         Take noise out of the free energy and first derivatives by averages over the next draw.
     derivatives : iterable of pairs of names
-        Second derivatives to carry along beyond those that c and the susceptibilities need: pairs of parameters, ``"T"``
-        and, where there are more than three, observables.
+        Second derivatives to carry along beyond those that c and the susceptibilities need: pairs of parameters,
+        ``"T"`` and, where there are more than three, observables.
 
     Returns
     -------
