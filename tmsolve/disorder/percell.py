@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from abc import ABC, abstractmethod
 from collections.abc import Mapping
 
 from ..errors import NotApplicable, ParameterError, did_you_mean, listing
@@ -15,7 +16,7 @@ __all__ = ["PerCell", "Sum"]
 Sum = tuple[float, Mapping[str, float], Mapping[tuple[str, str], float]]
 
 
-class PerCell:
+class PerCell(ABC):
     """Averages per cell, with k_B = 1.
 
     What grows per cell is ln Z; tilts of its weights by 1/T, parameters and observables give everything else.
@@ -27,8 +28,9 @@ class PerCell:
     def _problem(self) -> Problem:
         return self._maker.problem
 
+    @abstractmethod
     def _estimate(self, wanted: Sum) -> Average:
-        raise TypeError(f"{type(self).__name__} does not say how it averages")
+        """Average a sum of growth and its derivatives."""
 
     @property
     def free_energy(self) -> Average:
