@@ -177,6 +177,23 @@ def test_low_temperature_domain_wall():
     assert math.isclose(solved.correlation("m", "m", 20, 60, connected=False), 0.2, rel_tol=1e-11)
 
 
+def test_means_far_from_the_only_field_are_accurate_however_small():
+    # ⟨s_i⟩ = tanh h · tanhⁱ J: nothing but the field in cell 0 breaks the symmetry.
+    fields = np.zeros(400)
+    fields[0] = 0.7
+    solved = realisation(FIELD.fix(T=1, J=1), {"h": fields})
+    assert np.allclose(solved.profile("m") / (np.tanh(0.7) * np.tanh(1) ** np.arange(400)), 1, rtol=0, atol=1e-11)
+    fields[0] = 0
+    assert realisation(FIELD.fix(T=1, J=1), {"h": fields}).profile("m").tolist() == [0] * 400
+    # Three states and second neighbours, against long numbers.
+    fields = np.zeros(60)
+    fields[[3, 4]] = 0.5, -0.2
+    known = open_chain(SECOND.at(T=1, J=0.5, K=-0.3, h=0), 60, impurities={i: {"h": fields[i]} for i in (3, 4)})
+    far = realisation(SECOND.fix(T=1, J=0.5, K=-0.3), {"h": fields}).profile("m")
+    assert np.abs(far[-1]) < 1e-5
+    assert np.allclose(far / known.profile("m"), 1, rtol=0, atol=1e-11)
+
+
 def test_ring_that_does_not_forget_along_a_turn():
     rng = np.random.default_rng(2)
     bonds = rng.choice([-1.0, 1.0], 40)
@@ -265,6 +282,9 @@ def test_bad_input():
     refused(DeclarationError, lambda: realisation(chain, {}), "one value per cell")
     refused(ParameterError, lambda: realisation(FIELD.fix(J=1), {"h": [1]}), "the temperature is not fixed")
     refused(ParameterError, lambda: realisation(FIELD.fix(T=1), {"h": [1]}), "J")
+    refused(
+        SolveError, lambda: realisation(FIELD.fix(T="1/400", J=1), {"h": [1, 1e307]}), "in cell 1", "closer to the size"
+    )
     refused(NotApplicable, lambda: realisation(FIELD.fix(T=0, J=1), {"h": [1]}), "T > 0, got T = 0")
     refused(
         ParameterError,

@@ -12,6 +12,7 @@ import numpy as np
 from ..declare import Chain
 from ..errors import ParameterError, SolveError, TooLargeError, did_you_mean, listing
 from .arcs import Bypaths, Deviations
+from .odd_parts import faint_means
 from .row_input import read_row
 from .row_steps import Part, RowSteps
 from .scans import Messages, block_products, log_chain, perron, scan
@@ -70,6 +71,8 @@ class Realised:
 
     Messages are kept by their logarithms, blocks of the chain handled side by side. ln Z is
     accurate to 1e-15 of its size, means in single cells to 1e-13 of the size of the observable.
+    Means below 1e-4 of that size in open chains where most cells keep a symmetry under reversal
+    of all values are computed from their deviation from it, and are accurate relatively.
     Connected correlations are accurate relative to their own size, however small, except
     on rings that do not forget along one whole turn; there as means are.
 
@@ -195,7 +198,7 @@ class _Row:
     def messages(self) -> Messages:
         size = self.steps.states
         unit = np.where(np.eye(size, dtype=bool), 0.0, -np.inf)
-        ends = (unit, unit) if self.steps.closed else (unit[:1], np.zeros((size, 1)))
+        ends = (unit, unit) if self.steps.closed else (np.full((1, size), -np.log(size)), np.zeros((size, 1)))
         found = scan(self.logs, self.products, *ends)
         if not np.isfinite(found.log_sum) or found.log_sum < -1e290:
             raise SolveError(f"no configuration of these {self.steps.cells} cells is allowed")
@@ -238,7 +241,7 @@ class _Row:
                 means = (chance * table).sum(axis=(0, 1))[: len(positions)]
                 held = steps.held(part, positions)
                 np.add.at(total, (positions[held] + part.anchor) % steps.cells, means[held])
-        return total
+        return faint_means(steps, self.logs, a, total)
 
     def _chances(self, blocks: slice) -> np.ndarray:
         """Return the joint probabilities of both cuts of every step of some blocks, (states, states, steps)."""

@@ -11,6 +11,7 @@ import numpy as np
 
 from ..assemble.window import ChainWindow, Degeneracy, SiteWeights, build_window, place_in
 from ..declare import Chain, Term
+from ..errors import SolveError
 from ..operators.algebras import LogSum, LogTable
 from ..tabulate.tables import SiteTables
 from .scans import Layout
@@ -35,7 +36,7 @@ class RowSteps:
     """Steps of an open chain or a ring.
 
     A step at position w adds the sites (k, l_k + w), l_k the threshold of kind k. Sites
-    beyond an open end are held in their first state, and factors that touch them left out.
+    beyond an open end weigh 1 over the number of their states, and factors that touch them are left out.
 
     Attributes
     ----------
@@ -160,15 +161,14 @@ class RowSteps:
         return np.broadcast_to(spread, (*spread.shape[:-1], steps))
 
     def _outside(self, positions: np.ndarray) -> list[tuple[Sequence[Any], LogTable]]:
-        """Hold new sites beyond an end in their first state."""
+        """Give the states of new sites beyond an end a weight that sums to 1."""
         found: list[tuple[Sequence[Any], LogTable]] = []
         for site in self.window.new_sites:
             cells = positions + site[1]
             beyond = (cells < 0) | (cells >= self.cells)
             if beyond.any():
-                log = np.zeros((self.window.sizes[site], len(positions)))
-                log[1:, beyond] = -np.inf
-                found.append(((site,), _table(log)))
+                size = self.window.sizes[site]
+                found.append(((site,), _table(np.where(beyond, -np.log(size), np.zeros((size, 1))))))
         return found
 
     @cached_property
@@ -192,7 +192,15 @@ class RowSteps:
         found = (each if set(self.arrays) & set(source.parameters) else self._plain).table(source)
         if found is None:
             return np.zeros((*(self.window.sizes[site] for site in sites), 1)), anchor
-        return (found if source.role == "weight" else -found * self._plain.inverse_temperature()), anchor
+        with np.errstate(over="ignore"):
+            log = found if source.role == "weight" else -found * self._plain.inverse_temperature()
+        beyond = np.isnan(log) | (log == np.inf) | (np.isfinite(found) & np.isinf(log))
+        if beyond.any():
+            where = f" in cell {int(np.argwhere(beyond)[0][-1])}" if log.shape[-1] > 1 else ""
+            raise SolveError(
+                f"the weight of {source.label} exceeds all numbers{where}; take values closer to the size of T"
+            )
+        return log, anchor
 
 
 def _table(log: np.ndarray) -> LogTable:
