@@ -59,14 +59,14 @@ class Deviations:
         return float((alone + direct + back + both) / (1 + np.trace(here @ between @ there @ around)))
 
     def _same(self, x: Part, y: Part, i: int) -> float:
-        chance, before, (first, second), joint = self._step(i, {"x": x, "y": y})
+        chance, before, (first, second), joint = self._step(i, {"x": [x], "y": [y]})
         first = first - self._mean(first, chance, before, i)
         second = second - self._mean(second, chance, before, i)
         return self._mean(joint + first * second, chance, before, i)
 
     def _centred(self, part: Part, i: int) -> tuple[np.ndarray, np.ndarray]:
         """Return transition probabilities times a part less its mean, and the probabilities before them."""
-        chance, before, (table,), _ = self._step(i, {"x": part})
+        chance, before, (table,), _ = self._step(i, {"x": [part]})
         return chance * (table - self._mean(table, chance, before, i)), before
 
     def _mean(self, table: np.ndarray, chance: np.ndarray, before: np.ndarray, i: int) -> float:
@@ -79,7 +79,9 @@ class Deviations:
         rest = self._rests[i]
         return float((direct + np.trace(marked @ rest)) / (1 + np.trace(self._deviation(np.array([i]))[0] @ rest)))
 
-    def _step(self, i: int, marks: dict[str, Part]) -> tuple[np.ndarray, np.ndarray, list[np.ndarray], np.ndarray]:
+    def _step(
+        self, i: int, marks: dict[str, list[Part]]
+    ) -> tuple[np.ndarray, np.ndarray, list[np.ndarray], np.ndarray]:
         """Return transition probabilities of a step, marginals before it, and tables of marked parts."""
         index = np.array([i])
         chance, _ = self._chances(index)
@@ -156,7 +158,7 @@ class Bypaths:
     def covariance(self, x: Part, i: int, y: Part, j: int) -> float:
         """Return ⟨xy⟩ − ⟨x⟩⟨y⟩ of parts of observables in the steps at positions i ≤ j."""
         if i == j:
-            log, tilts = self.row.tables(np.array([i]), {"x": x, "y": y})
+            log, tilts = self.row.tables(np.array([i]), {"x": [x], "y": [y]})
             weight = log[..., 0] + self._arc(np.r_[i + 1 : self.row.cells, 0:i]).T
             first, second, joint = (self._table(tilts, key) for key in (("x",), ("y",), ("x", "y")))
         else:
@@ -166,8 +168,8 @@ class Bypaths:
                     f"at most {_LARGEST} are listed. Cut the ring open",
                     limit=_LARGEST,
                 )
-            log, tilts = self.row.tables(np.array([i]), {"x": x})
-            other, more = self.row.tables(np.array([j]), {"x": y})
+            log, tilts = self.row.tables(np.array([i]), {"x": [x]})
+            other, more = self.row.tables(np.array([j]), {"x": [y]})
             between = self._arc(np.arange(i + 1, j))
             around = self._arc(np.r_[j + 1 : self.row.cells, 0:i])
             weight = log[..., 0][:, :, None, None] + between[None, :, :, None] + other[..., 0]

@@ -85,7 +85,7 @@ def faint_means(row: RowSteps, logs: np.ndarray, a: str, known: np.ndarray) -> n
     if row.closed or turned is None or logs.size > _LARGEST:
         return known
     positions = np.array(row.positions)
-    tables = [(part, row.tables(positions, {"x": part})[1].get(("x",))) for part in row.parts(a) or ()]
+    tables = [(part, row.tables(positions, {"x": [part]})[1].get(("x",))) for part in row.parts(a) or ()]
     scale = max((float(np.abs(table).max()) for _, table in tables if table is not None), default=0.0)
     faint = np.abs(known) < _FAINT * scale
     reverse = logs[:, turned][:, :, turned]

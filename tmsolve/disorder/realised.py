@@ -15,6 +15,7 @@ from .arcs import Bypaths, Deviations
 from .odd_parts import faint_means
 from .row_input import read_row
 from .row_steps import Part, RowSteps
+from .row_totals import total_covariance
 from .scans import Messages, block_products, log_chain, perron, scan
 
 __all__ = ["Realised", "realisation"]
@@ -96,6 +97,7 @@ class Realised:
     closed: bool
     _rows: dict[tuple[str, ...], _Row] = field(default_factory=dict, repr=False)
     _profiles: dict[str, np.ndarray] = field(default_factory=dict, repr=False)
+    _covariances: dict[tuple[str, str], float] = field(default_factory=dict, repr=False)
 
     @property
     def temperature(self) -> float:
@@ -141,6 +143,19 @@ class Realised:
         row = self._row((a, b))
         found = sum(row.covariance(x, p, y, q) for x, p in row.places(a, i) for y, q in row.places(b, j))
         return float(found) if connected else float(found + self.profile(a)[i] * self.profile(b)[j])
+
+    def covariance(self, a: str, b: str | None = None) -> float:
+        """Covariance of the totals of two observables over the whole chain; the variance for one."""
+        names = (a, a if b is None else b)
+        for name in names:
+            self._check(name)
+        if names not in self._covariances:
+            self._covariances[names] = self._row(names).total_covariance(names)
+        return self._covariances[names]
+
+    def susceptibility(self, a: str, b: str | None = None) -> float:
+        """∂⟨a⟩/∂φ per cell for an energy −φ b added in every cell, Cov(A, B)/(N T); b = a when left out."""
+        return self.covariance(a, b) / (self.cells * self.temperature)
 
     def __str__(self) -> str:
         kind = "a ring" if self.closed else "an open chain"
@@ -233,7 +248,7 @@ class _Row:
         for blocks, positions in steps.chunks():
             chance = self._chances(blocks)
             for part in steps.parts(a) or ():
-                _, tilts = steps.tables(positions, {"x": part})
+                _, tilts = steps.tables(positions, {"x": [part]})
                 if ("x",) not in tilts:
                     continue
                 table = np.zeros((steps.states, steps.states, chance.shape[-1]))
@@ -242,6 +257,9 @@ class _Row:
                 held = steps.held(part, positions)
                 np.add.at(total, (positions[held] + part.anchor) % steps.cells, means[held])
         return faint_means(steps, self.logs, a, total)
+
+    def total_covariance(self, names: tuple[str, str]) -> float:
+        return total_covariance(self.steps, self.logs, self.messages, self._chances, names)
 
     def _chances(self, blocks: slice) -> np.ndarray:
         """Return the joint probabilities of both cuts of every step of some blocks, (states, states, steps)."""

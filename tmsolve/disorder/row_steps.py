@@ -127,12 +127,12 @@ class RowSteps:
         return np.moveaxis(table.reshape(*table.shape[:-1], -1, length), -1, 0)
 
     def tables(
-        self, positions: np.ndarray, marks: Mapping[str, Part] | None = None
+        self, positions: np.ndarray, marks: Mapping[str, Sequence[Part]] | None = None
     ) -> tuple[np.ndarray, dict[tuple[str, ...], np.ndarray]]:
         """Return logarithms of weights (states, states, steps), and conditional cumulants of marked parts.
 
-        Parts are marked by any names; the cumulants, by tuple of sorted names up to all of
-        them, are those over the sites that lie in no cut.
+        Sums of parts are marked by any names; the cumulants, by tuple of sorted names up to
+        all of them, are those over the sites that lie in no cut.
         """
         marks = marks or {}
         tables: list[LogTable] = []
@@ -144,7 +144,7 @@ class RowSteps:
                 log = np.where(inside, log, 0.0)
             tables.append(_table(log))
         extra: list[tuple[Sequence[Any], LogTable]] = [] if self.closed else self._outside(positions)
-        for name, part in marks.items():
+        for name, part in ((name, part) for name, parts in marks.items() for part in parts):
             found = self._plain.table(part.term)
             if found is not None:
                 values = np.where(self.held(part, positions), found, 0.0)
