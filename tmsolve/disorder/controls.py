@@ -14,6 +14,7 @@ from itertools import combinations_with_replacement
 
 import numpy as np
 
+from .averages import Average, average
 from .message import Growth, Message, advance
 from .steps import Steps
 
@@ -22,8 +23,6 @@ __all__ = ["Expected", "expected", "features", "fitted"]
 #: Degrees and number of polynomials of the message.
 _DEGREE = {1: 7, 2: 4, 3: 3}
 _MOST_FEATURES = 16
-#: Groups of replicas whose coefficients come from the others.
-_FOLDS = 8
 
 
 def features(message: Message, power: float = 1.0) -> tuple[np.ndarray, np.ndarray]:
@@ -98,34 +97,33 @@ def expected(message: Message, step: Steps, weights: np.ndarray, power: float = 
     )
 
 
-def fitted(target: np.ndarray, controls: np.ndarray) -> np.ndarray:
-    """Return the target without what the controls explain of it.
+def fitted(target: np.ndarray, controls: np.ndarray) -> Average:
+    """Return the mean of independent samples, with what controls of known mean 0 explain taken out.
 
-    Coefficients that a replica is treated with are fitted to the other replicas: a fit to itself would follow its noise
-    and make error bars too small.
+    The error is that of the intercept of a linear regression, which pays for every coefficient and for the distance of
+    the controls' means from 0 (S. S. Lavenberg and P. D. Welch, Manage. Sci. 27, 322 (1981); from memory).
 
     Parameters
     ----------
-    target : ndarray, shape (batches, replicas)
-    controls : ndarray, shape (controls, batches, replicas)
-        Zero on the average.
+    target : ndarray, shape (replicas,)
+    controls : ndarray, shape (controls, replicas)
 
     Examples
     --------
-    >>> noise = np.random.default_rng(0).standard_normal((1, 20, 10))
-    >>> bool(np.allclose(fitted(3 + 2 * noise[0], noise), 3))
-    True
+    >>> noise = np.random.default_rng(0).standard_normal((1, 10))
+    >>> round(fitted(3 + 2 * noise[0], noise).value, 12)
+    3.0
     """
-    replicas = target.shape[1]
-    size = np.sqrt((controls**2).mean(axis=(1, 2)))
-    rows = (controls[size > 0] / size[size > 0, None, None]).transpose(2, 1, 0)
-    if not rows.shape[2] or target.size < 4 * (rows.shape[2] + 1):
-        return target
-    result = target.copy()
-    for part in np.array_split(np.arange(replicas), min(_FOLDS, replicas)):
-        others = np.delete(np.arange(replicas), part)
-        given, wanted = rows[others].reshape(-1, rows.shape[2]), target.T[others].ravel()
-        centred = given - given.mean(axis=0)
-        coefficients = np.linalg.lstsq(centred, wanted - wanted.mean(), rcond=1e-12)[0]
-        result[:, part] -= (rows[part] @ coefficients).T
-    return result
+    replicas = len(target)
+    size = np.sqrt((controls**2).mean(axis=1))
+    rows = (controls[size > 0] / size[size > 0, None]).T
+    if not rows.shape[1] or replicas < rows.shape[1] + 3:
+        return average(target)
+    means = rows.mean(axis=0)
+    inverse = np.linalg.pinv(rows - means, rcond=1e-12)
+    coefficients = inverse @ (target - target.mean())
+    rest = target - target.mean() - (rows - means) @ coefficients
+    variance = float(rest @ rest) / (replicas - rows.shape[1] - 1)
+    distance = means @ inverse
+    error = np.sqrt(variance * (1 / replicas + float(distance @ distance)))
+    return Average(float(target.mean() - means @ coefficients), float(error))

@@ -78,13 +78,13 @@ class QuenchedChain(PerCell):
     def _estimate(self, wanted: Sum) -> Average:
         key = (wanted[0], *(tuple(sorted(part.items())) for part in wanted[1:]))
         if key not in self._known:
-            self._known[key] = average(self._per_replica(*wanted))
+            self._known[key] = self._average(*wanted)
         found: Average = self._known[key]
         return found
 
-    def _per_replica(
+    def _average(
         self, growth: float, first: Mapping[str, float], second: Mapping[tuple[str, str], float]
-    ) -> np.ndarray:
+    ) -> Average:
         rates, maker = self._rates, self._maker
         numbers = {self._tilt(tilt): c for tilt, c in first.items()}
         target = growth * (rates.value if rates.mean_value is None else rates.mean_value)
@@ -96,9 +96,14 @@ class QuenchedChain(PerCell):
             place = self._pair(pair)
             target = target + c * rates.second[place]
             involved += maker.pairs[place]
-        if rates.controls is not None:
-            target = fitted(target, self._controls(list(dict.fromkeys(involved)), bool(second)))
-        return np.asarray((target * rates.lengths[:, None]).sum(axis=0) / self.cells)
+        samples = self._whole(target)
+        if rates.controls is None:
+            return average(samples)
+        return fitted(samples, self._whole(self._controls(list(dict.fromkeys(involved)), bool(second))))
+
+    def _whole(self, batches: np.ndarray) -> np.ndarray:
+        """Return the rate over all cells from the rates of the batches."""
+        return np.asarray((batches * self._rates.lengths[:, None]).sum(axis=-2) / self.cells)
 
     def _controls(self, tilts: list[int], twice: bool) -> np.ndarray:
         rates = self._rates
