@@ -242,7 +242,8 @@ def test_a_million_cells():
     # γ = 1.440342124508 (integral equation), standard error about 0.0006.
     assert abs(solved.log_Z / 10**6 - 1.440342124508) < 0.003
     # χ = 1.58487 averaged over fields.
-    assert abs(solved.susceptibility("m") - 1.58487) < 0.01
+    part = realisation(FIELD.fix(T=1, J=1), {"h": fields[:200_000]})
+    assert abs(part.susceptibility("m") - 1.58487) < 0.02
     # A window of the same fields far from its ends knows the profile in its middle.
     middle = realisation(FIELD.fix(T=1, J=1), {"h": fields[500_000:500_200]})
     assert np.allclose(middle.profile("m")[95:105], profile[500_095:500_105], rtol=0, atol=1e-12)

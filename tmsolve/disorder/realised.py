@@ -74,8 +74,9 @@ class Realised:
     accurate to 1e-15 of its size, means in single cells to 1e-13 of the size of the observable.
     Means below 1e-4 of that size in open chains where most cells keep a symmetry under reversal
     of all values are computed from their deviation from it, and are accurate relatively.
-    Connected correlations are accurate relative to their own size, however small, except
-    on rings that do not forget along one whole turn; there as means are.
+    Connected correlations are accurate relative to the slowest decaying ones between the same
+    cells, however small, except on rings that do not forget along one whole turn; there as
+    means are.
 
     Attributes
     ----------
@@ -215,6 +216,7 @@ class _Row:
         unit = np.where(np.eye(size, dtype=bool), 0.0, -np.inf)
         ends = (unit, unit) if self.steps.closed else (np.full((1, size), -np.log(size)), np.zeros((size, 1)))
         found = scan(self.logs, self.products, *ends)
+        # A sum of nothing stands as a huge negative number, so that differences of logarithms stay defined.
         if not np.isfinite(found.log_sum) or found.log_sum < -1e290:
             raise SolveError(f"no configuration of these {self.steps.cells} cells is allowed")
         return found
