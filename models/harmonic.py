@@ -20,12 +20,12 @@ def chain(nodes: int = 48, scale: float = 1.0, alternating: bool = False) -> Cha
     if not alternating:
         springs = [bond(lambda x, y, k: k*(x - y)**2/2), bond(lambda x, y, g=0: g*(x - y)**4/4)]
         return Chain(states, [*springs, *held], observables, name="harmonic chain")
-    inside, across = {"kinds": ("a", "b"), "shift": 0}, {"kinds": ("b", "a"), "shift": 1}
+    inside, across = ("a", "b"), ("b", "a")
     springs = [
-        bond(lambda x, y, k: k*(x - y)**2/2, **inside),
-        bond(lambda x, y, k2=1: k2*(x - y)**2/2, **across),
-        bond(lambda x, y, g=0: g*(x - y)**4/4, **inside),
-        bond(lambda x, y, g=0: g*(x - y)**4/4, **across),
+        bond(lambda x, y, k: k*(x - y)**2/2, inside, shift=0),
+        bond(lambda x, y, k2=1: k2*(x - y)**2/2, across, shift=1),
+        bond(lambda x, y, g=0: g*(x - y)**4/4, inside, shift=0),
+        bond(lambda x, y, g=0: g*(x - y)**4/4, across, shift=1),
     ]
     return Chain({"a": states, "b": states}, [*springs, *held], observables, name="alternating harmonic chain")
 

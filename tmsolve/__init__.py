@@ -40,6 +40,12 @@ if TYPE_CHECKING:
     from .declare import spins as spins
     from .declare import term as term
     from .declare import weight as weight
+    from .disorder.annealed import annealed as annealed
+    from .disorder.ground_energy import disordered_ground_state as disordered_ground_state
+    from .disorder.quenched import quenched as quenched
+    from .disorder.realised import realisation as realisation
+    from .disorder.segments import segment_average as segment_average
+    from .disorder.stationary import stationary_message as stationary_message
     from .draw.sampling import sample as sample
     from .draw.simulating import metropolis as metropolis
     from .enclose.certify_point import certify as certify
@@ -87,6 +93,12 @@ _HOMES = {
         "Chain", "StateSet", "bond", "circle", "clock", "colours", "cos_turns", "delta", "interval", "ising", "line",
         "occupation", "site", "sphere", "spins", "term", "weight",
     ),
+    "disorder.annealed": ("annealed",),
+    "disorder.ground_energy": ("disordered_ground_state",),
+    "disorder.quenched": ("quenched",),
+    "disorder.realised": ("realisation",),
+    "disorder.segments": ("segment_average",),
+    "disorder.stationary": ("stationary_message",),
     "draw.sampling": ("sample",),
     "draw.simulating": ("metropolis",),
     "enclose.certify_point": ("certify",),
