@@ -48,6 +48,6 @@ def test_bars_with_control_variates_cover():
 @pytest.mark.parametrize("controls", [False, True])
 @pytest.mark.parametrize(("temperature", "law"), [(1, "normal(0,1)"), ("1/3", "normal(0,1)"), ("1/3", "normal(0,0.1)")])
 def test_bars_cover_over_two_hundred_seeds(temperature, law, controls):
-    found = scores(temperature, law, 200, cells=100, replicas=32, control_variates=controls)
+    found = scores(temperature, law, 200, cells=50, replicas=128, control_variates=controls)
     for name, z in found.items():
         assert abs((np.abs(z) < 1).mean() - 0.68) < 0.07, (name, (np.abs(z) < 1).mean())

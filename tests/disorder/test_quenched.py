@@ -89,7 +89,7 @@ def test_lists_are_read_cell_by_cell_and_copy_by_copy():
 
 
 def test_random_fields_against_quadrature_with_little_noise_left():
-    found = quenched(FIELD.fix(T=1, J=1, H=0), {"h": stats.norm(0, 1)}, cells=150, rng=11)
+    found = quenched(FIELD.fix(T=1, J=1, H=0), {"h": stats.norm(0, 1)}, cells=80, rng=11)
     agrees(found.free_energy, -RANDOM_FIELD["growth"])
     agrees(found.internal_energy, RANDOM_FIELD["u"])
     agrees(found.specific_heat, RANDOM_FIELD["c"])
@@ -103,9 +103,9 @@ def test_random_fields_against_quadrature_with_little_noise_left():
 
 
 def test_magnetisation_in_a_uniform_field():
-    found = quenched(FIELD.fix(T=1, J=1, H="0.3"), {"h": "normal(0,1)"}, cells=60, replicas=48, rng=2)
+    found = quenched(FIELD.fix(T=1, J=1, H="0.3"), {"h": "normal(0,1)"}, cells=40, replicas=96, rng=2)
     agrees(found.mean("m"), RANDOM_FIELD["m_at_0.3"])
-    shifted = quenched(FIELD.fix(T=1, J=1, H=0), {"h": "normal(0.3,1)"}, cells=60, replicas=48, rng=2)
+    shifted = quenched(FIELD.fix(T=1, J=1, H=0), {"h": "normal(0.3,1)"}, cells=40, replicas=96, rng=2)
     assert shifted.free_energy.value == pytest.approx(found.free_energy.value, abs=1e-5)
     agrees(Average(-shifted.derivative("h").value, shifted.derivative("h").error), RANDOM_FIELD["m_at_0.3"])
 
@@ -137,7 +137,7 @@ def test_signed_bonds():
 
 def test_several_random_parameters_each_with_a_law_of_its_own():
     laws = {"J": "uniform(0.5,1.5)", "h": {-1: 0.5, 1: 0.5}}
-    with_controls = quenched(FIELD.fix(T=1, H=0), laws, cells=60, rng=8)
+    with_controls = quenched(FIELD.fix(T=1, H=0), laws, cells=30, rng=8)
     without = quenched(FIELD.fix(T=1, H=0), laws, cells=400, replicas=128, rng=9, control_variates=False)
     for name in ("free_energy", "internal_energy"):
         one, other = getattr(with_controls, name), getattr(without, name)

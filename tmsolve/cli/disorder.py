@@ -49,8 +49,8 @@ def configure(parser: Parser) -> None:
         help="a random parameter: normal(MEAN,DEVIATION), uniform(LOW,HIGH) or choice(VALUE:PROBABILITY,…), in "
         "quotes; repeatable, needed at least once unless --realisation is given",
     )
-    parser.add_argument("--cells", metavar="N", default="1000", help="cells averaged over per replica. Default: 1000")
-    parser.add_argument("--replicas", metavar="N", default="64", help="independent chains, at least 2. Default: 64")
+    parser.add_argument("--cells", metavar="N", default="500", help="cells averaged over per replica. Default: 500")
+    parser.add_argument("--replicas", metavar="N", default="128", help="independent chains, at least 2. Default: 128")
     parser.add_argument("--seed", metavar="N", help="the same seed gives the same numbers. Default: another every time")
     parser.add_argument(
         "--method",

@@ -20,7 +20,7 @@ from .walk import burn_in, walk
 __all__ = ["quenched"]
 
 #: Replicas when none are asked for.
-_REPLICAS = 64
+_REPLICAS = 128
 #: Cells after which messages that still differ are let be.
 _SHORTEST_LIMIT = 2000
 
@@ -29,7 +29,7 @@ def quenched(
     chain: Chain,
     random: Mapping[str, Any],
     *,
-    cells: int = 1000,
+    cells: int = 500,
     replicas: int | None = None,
     rng: int | np.random.Generator | None = None,
     control_variates: bool = True,
@@ -51,7 +51,7 @@ def quenched(
     cells : int
         Cells averaged over per replica, after a burn-in that is found by itself.
     replicas : int, optional
-        Independent chains, at least 2; 64 when left out, 1 when everything random is listed.
+        Independent chains, at least 2, better 100; 128 when left out, 1 when everything random is listed.
     rng : int or numpy Generator, optional
         Seed. The same seed gives the same numbers.
     control_variates : bool

@@ -19,7 +19,7 @@ from .walk import Rates
 __all__ = ["QuenchedChain"]
 
 #: Independent chains per coefficient of a control variate.
-_REPLICAS_PER_CONTROL = 4
+_REPLICAS_PER_CONTROL = 8
 
 
 @dataclass(frozen=True, eq=False)
