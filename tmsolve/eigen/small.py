@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from typing import Any
+
 import numpy as np
 
 from ..operators.numbers import Numbers, to_double
@@ -37,8 +39,10 @@ def small_eigenvalues(
     rest = chance[np.ix_(kept, kept)] - chance[likeliest, kept][None]
     context = type(numbers.scalar(1)).context
     size = max(abs(entry) for entry in rest.ravel())
-    if len(kept) <= zeros or size == 0:
+    if len(kept) <= zeros:
         return np.full(len(kept), -np.inf), np.zeros(len(kept))
+    if size == 0:
+        return None
     scaled = rest / size
     # mpmath gives a number and its vectors for one state, whatever is asked for.
     found = [scaled[0, 0]]
@@ -46,8 +50,8 @@ def small_eigenvalues(
         found = context.eig(context.matrix(scaled.tolist()), left=False, right=False)
     values = sorted(found, key=lambda v: -abs(v))
     there = values[: len(kept) - zeros]
-    # Rounding of a zero in a block of k vectors is the k-th root of that of a number.
-    noise = context.ldexp(context.mpf(1), -(numbers.bits - 40) // (zeros + 1))
+    # Of a zero in a block of k vectors rounding makes its k-th root.
+    noise = _rounding(chance[:, kept], size, numbers) ** (context.mpf(1) / (zeros + 1))
     if abs(there[-1]) <= noise:
         return None
     logs = [context.log(abs(value) * size) for value in there] + [context.mpf("-inf")] * zeros
@@ -80,7 +84,7 @@ def long_modes(
     values, rows, columns = context.eig(context.matrix((rest / size).tolist()), left=True, right=True)
     order = sorted(range(m), key=lambda k: -abs(values[k]))
     # Rounding of a double zero without a vector of its own is the root of that of a number.
-    noise = context.ldexp(context.mpf(1), -(numbers.bits - 40) // 2)
+    noise = context.sqrt(_rounding(chance[:, kept], size, numbers))
     log_modulus, phase = np.full(m, -np.inf), np.zeros(m)
     for place, k in enumerate(order):
         if abs(values[k]) > noise:
@@ -93,3 +97,10 @@ def long_modes(
             left[place, kept] = [complex(x / norm) for x in row]
             left[place, likeliest] = -complex(sum(row) / norm)
     return log_modulus, tidy(phase), right, left
+
+
+def _rounding(entries: np.ndarray, size: Any, numbers: Numbers) -> Any:
+    """Return the rounding of differences of entries, relative to the largest difference."""
+    context = type(numbers.scalar(1)).context
+    largest = max(abs(entry) for entry in entries.ravel())
+    return context.ldexp(1 + largest / size, -(numbers.bits - 40))

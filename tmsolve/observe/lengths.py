@@ -21,6 +21,8 @@ __all__ = ["decays", "gaps", "lengths", "log_gaps"]
 _TOLERABLE = 1e-9
 #: At the temperature of the limit T → 0 what is smaller than this is zero.
 _NOTHING = -460.0
+#: Points of a large batch that are asked whether they have a second eigenvalue.
+_ASKED = 64
 
 
 def decays(laws: Laws, point: Point, a: str | None) -> Decay:
@@ -38,11 +40,14 @@ def decays(laws: Laws, point: Point, a: str | None) -> Decay:
     undecided = np.flatnonzero(found.undecided)
     if undecided.size:
         others = f", nor at {undecided.size - 1} more points" if undecided.size > 1 else ""
+        whole = a is None
+        what = "the size of the second eigenvalue" if whole else f"which mode decays slowest in the correlation of {a}"
         raise SolveError(
-            f"which mode decays slowest in the correlation of {a} is not decided at "
-            f"{point.pick(int(undecided[0]))}{others}: in doubles its amplitude is lost in rounding, and longer "
-            f"numbers are out of reach (at most {LARGEST} joint states of the cut, and about half a minute for all "
-            "points together). Raise T, ask for fewer points at a time, or for correlation_length() of the whole chain",
+            f"{what} is not decided at {point.pick(int(undecided[0]))}{others}: in doubles "
+            f"{'it' if whole else 'its amplitude'} is lost in rounding, and longer numbers are out of reach (at most "
+            f"{LARGEST} joint states of the cut, and {f'{MOST_POINTS} points' if whole else 'about half a minute'} "
+            "for all points together). Raise T, ask for fewer points at a time"
+            f"{'' if whole else ', or for correlation_length() of the whole chain'}",
             lengths(found).reshape(point.shape),
         )
     return found
@@ -70,13 +75,39 @@ def _slowest(laws: Laws, point: Point, _: str | None) -> tuple[Decay, np.ndarray
     for segment in laws.segments():
         part = slowest(segment)
         found.put(segment.indices, replace(part, log_gap=_limit(segment, part.log_gap)))
-        if segment.limit or len(segment.states) > LARGEST or laws.size > MOST_POINTS:
+        if segment.limit or len(segment.states) > LARGEST:
             continue
-        nothing, most = np.isposinf(part.log_gap), len(segment.states) - 1
-        zeros = {int(i): vanishing(laws.window, segment.states, point.flat(), i) for i in segment.indices[nothing]}
-        doubtful += [i for i, count in zeros.items() if count != most]
-        doubtful += segment.indices[part.poor() & ~nothing].tolist()
+        lost = _lost(laws, point, segment, np.isposinf(part.log_gap))
+        if lost.size:
+            found.put(segment.indices[lost], _recovered(laws, point, segment, lost))
+        if laws.size <= MOST_POINTS:
+            doubtful += segment.indices[part.poor() & ~np.isposinf(part.log_gap)].tolist()
     return found, np.array(doubtful, dtype=np.intp)
+
+
+def _lost(laws: Laws, point: Point, segment: Segment, nothing: np.ndarray) -> np.ndarray:
+    """Return the positions in a segment where doubles see no second eigenvalue although there is one.
+
+    In large batches some points speak for all: where one of them is lost, all count as lost.
+    """
+    places = np.flatnonzero(nothing)
+    asked = places if places.size <= MOST_POINTS else places[:: -(-places.size // _ASKED)]
+    most, values = len(segment.states) - 1, point.flat()
+    lost = [i for i in asked if vanishing(laws.window, segment.states, values, int(segment.indices[i])) != most]
+    return places if lost and asked.size < places.size else np.array(lost, dtype=np.intp)
+
+
+def _recovered(laws: Laws, point: Point, segment: Segment, lost: np.ndarray) -> Decay:
+    """Return slowest modes from longer numbers; unknown where these are out of reach."""
+    result = Decay.unknown(lost.size)
+    if laws.size > MOST_POINTS:
+        return result
+    whole = whole_spectrum(laws, point, segment, 1)
+    modulus, phase, gap = (column[lost, 0] for column in whole)
+    there = np.flatnonzero(~np.isposinf(gap))
+    one, exact = np.ones(there.size), np.full(there.size, -np.inf)
+    result.put(there, Decay(modulus[there], gap[there], np.abs(phase[there]), one, exact))
+    return result
 
 
 @np.errstate(under="ignore")
