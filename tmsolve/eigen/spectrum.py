@@ -31,6 +31,7 @@ __all__ = [
 
 #: Eigenvalues whose gaps agree to this relative accuracy are counted as one cluster.
 _TOGETHER = 1e-9
+_NOTHING = 1e-150
 
 
 class Ratios(NamedTuple):
@@ -136,9 +137,10 @@ def eigenvalues(rest: np.ndarray) -> np.ndarray:
         half = (rest[0, 0] + rest[1, 1]) / 2
         split = ((rest[0, 0] - rest[1, 1]) / 2) ** 2 + rest[0, 1] * rest[1, 0]
         larger = half + np.where(half < 0, -1, 1) * np.sqrt(split.astype(np.complex128))
-        safe = np.where(larger == 0, 1, larger)
+        # Next to a matrix of size 1 such an eigenvalue is rounding, and dividing by it may overflow.
+        nothing = np.abs(larger) < _NOTHING
         product = rest[0, 0] * rest[1, 1] - rest[0, 1] * rest[1, 0]
-        return np.stack([larger, np.where(larger == 0, 0, product / safe)], axis=-1)
+        return np.stack([larger, np.where(nothing, 0, product / np.where(nothing, 1, larger))], axis=-1)
     # Cast at once: NumPy returns real or complex arrays depending on version and values.
     values = np.linalg.eigvals(np.ascontiguousarray(np.moveaxis(rest, -1, 0))).astype(np.complex128)
     order = np.argsort(-np.abs(values), axis=-1, kind="stable")

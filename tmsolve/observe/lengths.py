@@ -40,14 +40,11 @@ def decays(laws: Laws, point: Point, a: str | None) -> Decay:
     undecided = np.flatnonzero(found.undecided)
     if undecided.size:
         others = f", nor at {undecided.size - 1} more points" if undecided.size > 1 else ""
-        whole = a is None
-        what = "the size of the second eigenvalue" if whole else f"which mode decays slowest in the correlation of {a}"
         raise SolveError(
-            f"{what} is not decided at {point.pick(int(undecided[0]))}{others}: in doubles "
-            f"{'it' if whole else 'its amplitude'} is lost in rounding, and longer numbers are out of reach (at most "
-            f"{LARGEST} joint states of the cut, and {f'{MOST_POINTS} points' if whole else 'about half a minute'} "
-            "for all points together). Raise T, ask for fewer points at a time"
-            f"{'' if whole else ', or for correlation_length() of the whole chain'}",
+            f"which mode decays slowest in the correlation of {a} is not decided at "
+            f"{point.pick(int(undecided[0]))}{others}: in doubles its amplitude is lost in rounding, and longer "
+            f"numbers are out of reach (at most {LARGEST} joint states of the cut, and about half a minute for all "
+            "points together). Raise T, ask for fewer points at a time, or for correlation_length() of the whole chain",
             lengths(found).reshape(point.shape),
         )
     return found
@@ -98,8 +95,8 @@ def _lost(laws: Laws, point: Point, segment: Segment, nothing: np.ndarray) -> np
 
 
 def _recovered(laws: Laws, point: Point, segment: Segment, lost: np.ndarray) -> Decay:
-    """Return slowest modes from longer numbers; unknown where these are out of reach."""
-    result = Decay.unknown(lost.size)
+    """Return slowest modes from longer numbers; none where these are out of reach (ξ is then below 0.03 cells)."""
+    result = Decay.none(lost.size)
     if laws.size > MOST_POINTS:
         return result
     whole = whole_spectrum(laws, point, segment, 1)
