@@ -198,11 +198,9 @@ class Solution:
     def correlation_length(self, a: str | None = None) -> np.ndarray:
         """Decay length ξ in cells: of the second eigenvalue, or of the slowest mode that ``a`` shows.
 
-        0 where nothing decays slower than at once; inf where two eigenvalues coincide in
-        modulus, or where ξ exceeds the doubles, see `log_correlation_length`. A mode of ``a``
-        counts however small it shows; where that cannot be decided a SolveError names the point.
-        Without an observable a ξ below about 0.03 cells is 0 where doubles lose it: longer numbers
-        recover it in batches of up to 400 points unless T is extremely low.
+        0 where nothing decays slower than at once; inf where two eigenvalues coincide in modulus,
+        or ξ exceeds the doubles, see `log_correlation_length`. A mode of ``a`` counts however small;
+        what cannot be decided is a SolveError. Without ``a``, ξ < 0.03 may be 0 beyond 400 points or at extreme T.
         """
         return self._shaped(lengths(self._decay(a)), "correlation length")
 
