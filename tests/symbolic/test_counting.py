@@ -35,6 +35,7 @@ from tmsolve import (
 )
 from tmsolve.errors import NotApplicable
 from tmsolve.symbolic.counting.counts import counts
+from tmsolve.symbolic.counting.grading import strides_of
 
 ISING = Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)], observables={"m": lambda s: s})
 BLUME_CAPEL = Chain(
@@ -222,6 +223,30 @@ def test_all_ways_give_the_same_integers(monkeypatch):
         found.append([dict(counts(chain, N, by=("energy", "m"), boundary=b)) for b in ("ring", "open")])
     assert found[0] == found[1] == found[2]
     assert sum(found[0][0].values()) == 3**N
+
+
+@pytest.mark.parametrize("N", [9, 10, 12])
+@pytest.mark.parametrize(
+    "chain, names, strides",
+    [
+        (ISING.fix(J=1, h=0), ("energy",), [(2,), (2,)]),
+        (ISING.fix(J=-1, h=0), ("energy",), [(1,), (2,)]),
+        (ISING.fix(J=-1), ("dE/dJ", "m"), [(1, 1), (2, 1)]),
+        (Chain(clock(4), [bond(lambda s, t: 1 - (s - t) % 4 % 2)]), ("energy",), [(1,), (2,)]),
+        (BLUME_CAPEL.fix(J=1, D=0), ("energy",), [(1,), (1,)]),
+    ],
+)
+def test_rings_whose_walls_come_in_pairs(monkeypatch, chain, names, strides, N):
+    """Passing vectors knows nothing of parity; the polynomial of two cells is used where it has coarser powers."""
+    from tmsolve.symbolic.counting import powers
+
+    used = []
+    monkeypatch.setattr(powers, "strides_of", lambda *given: used.append(strides_of(*given)) or used[-1])
+    monkeypatch.setattr(powers, "_worth_a_polynomial", lambda *_: True)
+    found = dict(counts(chain, N, by=names))
+    monkeypatch.setattr(powers, "_worth_a_polynomial", lambda *_: False)
+    assert found == dict(counts(chain, N, by=names))
+    assert used == [strides[N % 2 == 0]]
 
 
 def test_without_python_flint_the_integers_are_the_same(monkeypatch):

@@ -52,16 +52,17 @@ class Counts(Mapping[Any, int]):
     @classmethod
     def of(cls, plan: Plan, walk: Walk, found: Mapping[tuple[int, ...], int], cells: int, boundary: str) -> Counts:
         """Translate powers of letters to values of columns."""
-        shares = [[_share(c, plan, walk, k) for c, k in column.parts] for column in plan.columns]
-        places = [[k for _, k in column.parts] for column in plan.columns]
-        table: dict[tuple[Any, ...], int] = {}
-        for powers, count in found.items():
-            values = tuple(
-                _sum([share[powers[k]] for share, k in zip(s, p, strict=True)])
-                for s, p in zip(shares, places, strict=True)
-            )
-            table[values] = table.get(values, 0) + count
-        ordered = dict(sorted(table.items(), key=_order))
+        columns = [[(_share(c, plan, walk, k), k) for c, k in column.parts] for column in plan.columns]
+        if all(len(parts) == 1 for parts in columns):
+            single = [parts[0] for parts in columns]
+            table = {tuple([share[powers[k]] for share, k in single]): count for powers, count in found.items()}
+        else:
+            table = {}
+            for powers, count in found.items():
+                values = tuple([_plain(sum(share[powers[k]] for share, k in parts)) for parts in columns])
+                table[values] = table.get(values, 0) + count
+        whole = all(type(v) is int for parts in columns for share, _ in parts for v in share)
+        ordered = dict(sorted(table.items(), key=None if whole else _order))
         return cls(tuple(column.name for column in plan.columns), cells, boundary, ordered)
 
     def __getitem__(self, values: Any) -> int:
@@ -129,11 +130,8 @@ class Counts(Mapping[Any, int]):
 def _share(coefficient: Any, plan: Plan, walk: Walk, k: int) -> list[Any]:
     """Return what each power of a letter contributes to a value."""
     low, step = _plain(coefficient * walk.lows[k]), _plain(coefficient * plan.letters[k].step)
-    return [low + step * power for power in range(walk.tops[k] + 1)]
-
-
-def _sum(parts: list[Any]) -> Any:
-    return _plain(sum(parts[1:], parts[0]) if parts else 0)
+    values = [low + step * power for power in range(walk.tops[k] + 1)]
+    return values if type(low) is int and type(step) is int else [_plain(value) for value in values]
 
 
 def _plain(value: Any) -> Any:

@@ -16,7 +16,7 @@ from ..pieces import check_boundary, check_cells, check_chain
 from .counted import Counts
 from .packing import Layout
 from .passing import sparse_total
-from .powers import packed_total, value_at_one
+from .powers import coefficients, value_at_one
 from .sparse import powers_of
 from .sums import Plan, make_plan
 from .walk import Walk, make_walk
@@ -140,7 +140,7 @@ def levels_of(walk: Walk) -> dict[tuple[int, ...], int]:
     if thin:
         found = {powers_of(key, len(walk.tops)): c for key, c in sparse_total(walk, _ENTRIES)}
     else:
-        found = dict(layout.unpack(packed_total(walk, layout)))
+        found = coefficients(walk, layout)
     if sum(found.values()) != total:
         raise SolveError(f"the counts add up to {sum(found.values())} instead of {total}; please report this chain")
     return found

@@ -14,7 +14,7 @@ from __future__ import annotations
 import math
 from collections.abc import Iterator
 from dataclasses import dataclass
-from itertools import pairwise
+from itertools import product
 from typing import Any
 
 from .sparse import Sparse, key_of, powers_of
@@ -79,15 +79,13 @@ class Layout:
         """Yield powers and coefficients that are not 0 of a polynomial without negative ones."""
         width = self.bits // 8
         content = int(number).to_bytes(self.slots * width, "little")
-        strides = [1]
-        for top in self.tops:
-            strides.append(strides[-1] * (top + 1))
         empty = bytes(width)
-        for slot in range(self.slots):
-            piece = content[slot * width : (slot + 1) * width]
+        # The power of the first symbol runs fastest.
+        keys = product(*(range(top + 1) for top in reversed(self.tops)))
+        for begin, powers in zip(range(0, len(content), width), keys, strict=True):
+            piece = content[begin : begin + width]
             if piece != empty:
-                powers = tuple(slot % after // stride for stride, after in pairwise(strides))
-                yield powers, int.from_bytes(piece, "little")
+                yield powers[::-1], int.from_bytes(piece, "little")
 
     def unpack_signed(self, number: Any) -> Sparse:
         """Return a polynomial whose coefficients may be negative."""

@@ -16,11 +16,12 @@ import numpy as np
 
 from ...operators.product import repeated
 from ..polynomials import berkowitz, power_sums
+from .grading import coarsened, strides_of, two_cells
 from .packing import Layout
 from .sparse import Sparse, powers_of
 from .walk import Walk
 
-__all__ = ["characteristic_terms", "packed_total", "value_at_one"]
+__all__ = ["characteristic_terms", "coefficients", "value_at_one"]
 
 #: Nanoseconds, about, of one operation on short numbers and per bit of long ones.
 _CALL, _SHIFT = 150.0, 0.07
@@ -39,8 +40,8 @@ def value_at_one(walk: Walk) -> int:
     return int(total.trace()) if walk.ring else int(total.sum())
 
 
-def packed_total(walk: Walk, layout: Layout) -> int:
-    """Return the trace (of a ring) or the sum of all entries (of an open chain) of the product, packed."""
+def coefficients(walk: Walk, layout: Layout) -> dict[tuple[int, ...], int]:
+    """Return the trace (of a ring) or the sum of all entries (of an open chain) of the product, by powers."""
     place = max(range(len(walk.steps)), key=lambda k: walk.steps[k][1])
     matrix, count = walk.steps[place]
     rows = [_packed_rows(m, layout) for m, _ in walk.steps]
@@ -48,7 +49,7 @@ def packed_total(walk: Walk, layout: Layout) -> int:
         return _ring(matrix, rows[place], count, layout)
     row = _passed([1] * len(walk.steps[0][0]), rows[:place])
     column = _column(rows[place + 1 :], walk.steps[-1][0].shape[1])
-    return _open(row, matrix, rows[place], column, count, layout)
+    return dict(layout.unpack(_open(row, matrix, rows[place], column, count, layout)))
 
 
 # --- vectors passed along the chain
@@ -98,18 +99,12 @@ def _dot(line: list[_Terms], column: Sequence[Any]) -> Any:
 # --- the two kinds of chain
 
 
-def _ring(matrix: np.ndarray, rows: list[list[_Terms]], count: int, layout: Layout) -> int:
+def _ring(
+    matrix: np.ndarray, rows: list[list[_Terms]], count: int, layout: Layout
+) -> dict[tuple[int, ...], int]:
     size = len(matrix)
     if _worth_a_polynomial(matrix, count, size, layout):
-        chi = characteristic_terms(matrix, len(layout.tops))
-        while len(chi) > 1 and not chi[-1]:
-            chi.pop()
-        degree = len(chi) - 1
-        if not degree:
-            return 0
-        sums = power_sums(tuple(chi), max(degree, 1), Sparse({}))
-        start = [degree, *(layout.pack(s) for s in sums)]
-        return _term(chi, start[:degree], count, layout)
+        return _ring_by_polynomial(characteristic_terms(matrix, len(layout.tops)), count, layout)
     total = 0
     for i in range(size):
         row: list[Any] = [0] * size
@@ -117,7 +112,26 @@ def _ring(matrix: np.ndarray, rows: list[list[_Terms]], count: int, layout: Layo
         for _ in range(count):
             row = _step(row, rows)
         total = total + row[i]
-    return total
+    return dict(layout.unpack(total))
+
+
+def _ring_by_polynomial(chi: list[Sparse], count: int, layout: Layout) -> dict[tuple[int, ...], int]:
+    letters = len(layout.tops)
+    while len(chi) > 1 and not chi[-1]:
+        chi.pop()
+    degree = len(chi) - 1
+    if not degree:
+        return {}
+    doubled = two_cells(chi, letters) if count % 2 == 0 else None
+    if doubled is not None:
+        chi, count = doubled, count // 2
+    strides = strides_of(chi, letters)
+    coarse = Layout(tuple(top // stride for top, stride in zip(layout.tops, strides, strict=True)), layout.bits)
+    chi = [coarsened(c, strides) for c in chi]
+    sums = power_sums(tuple(chi), degree, Sparse({}))
+    start = [degree, *(coarse.pack(s) for s in sums)]
+    total = coarse.unpack(_term(chi, start[:degree], count, coarse))
+    return {tuple(p * s for p, s in zip(powers, strides, strict=True)): c for powers, c in total}
 
 
 def _open(

@@ -38,31 +38,41 @@ class Letter:
     tables: Tables
 
     @cached_property
-    def step(self) -> Fraction:
-        """Greatest number of which all differences within a table are whole multiples; 1 when there are none."""
-        step = Fraction(0)
-        for low, table in zip(self._lows, self.tables.values(), strict=True):
-            for value in _numbers(table):
-                step = _divisor(step, value - low)
-        return step or Fraction(1)
-
-    @property
-    def _lows(self) -> list[Fraction]:
-        return [min(_numbers(table), default=Fraction(0)) for table in self.tables.values()]
+    def _whole(self) -> tuple[int, Mapping[Sites, list[int | None]]]:
+        """A common denominator, and the values as multiples of its inverse."""
+        common = math.lcm(*(v.denominator for table in self.tables.values() for v in table.flat if v is not None))
+        return common, {
+            sites: [None if v is None else v.numerator * (common // v.denominator) for v in table.flat]
+            for sites, table in self.tables.items()
+        }
 
     @cached_property
+    def _bottoms(self) -> Mapping[Sites, int]:
+        return {sites: min((v for v in values if v is not None), default=0) for sites, values in self._whole[1].items()}
+
+    @cached_property
+    def _stride(self) -> int:
+        found = self._whole[1].items()
+        return math.gcd(*(v - self._bottoms[sites] for sites, values in found for v in values if v is not None))
+
+    @property
+    def step(self) -> Fraction:
+        """Greatest number of which all differences within a table are whole multiples; 1 when there are none."""
+        return Fraction(self._stride, self._whole[0]) if self._stride else Fraction(1)
+
+    @property
     def lows(self) -> Mapping[Sites, Fraction]:
         """Least value of each table."""
-        return dict(zip(self.tables, self._lows, strict=True))
+        return {sites: Fraction(low, self._whole[0]) for sites, low in self._bottoms.items()}
 
     @cached_property
     def levels(self) -> Mapping[Sites, np.ndarray]:
         """Steps above the least value of each table; 0 where forbidden."""
         found = {}
-        for sites, table in self.tables.items():
-            low = self.lows[sites]
-            counts = [0 if v is None else int((v - low) / self.step) for v in table.flat]
-            found[sites] = np.array(counts, dtype=object).reshape(table.shape)
+        for sites, values in self._whole[1].items():
+            low, stride = self._bottoms[sites], self._stride or 1
+            counts = [0 if v is None else (v - low) // stride for v in values]
+            found[sites] = np.array(counts, dtype=object).reshape(self.tables[sites].shape)
         return found
 
     @cached_property
@@ -222,6 +232,9 @@ def _plus(total: Tables, more: Tables, factor: Fraction) -> Tables:
     result = dict(total)
     for sites, table in more.items():
         here = result.get(sites)
+        if here is None and factor == 1:
+            result[sites] = table
+            continue
         added = np.empty(table.shape, dtype=object)
         for index in np.ndindex(table.shape):
             a, b = Fraction(0) if here is None else here[index], table[index]
@@ -250,11 +263,3 @@ def _find(letters: list[Letter], new: Letter) -> tuple[int, Fraction]:
     letters.append(new)
     return len(letters) - 1, Fraction(1)
 
-
-def _numbers(table: np.ndarray) -> list[Fraction]:
-    return [value for value in table.flat if value is not None]
-
-
-def _divisor(first: Fraction, second: Fraction) -> Fraction:
-    denominator = math.lcm(first.denominator, second.denominator)
-    return Fraction(math.gcd(int(first * denominator), int(second * denominator)), denominator)
