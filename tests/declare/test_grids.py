@@ -1,10 +1,12 @@
 """Nodes of quadrature rules as states: what they integrate exactly, and what is refused."""
 
+import itertools
 import math
 import subprocess
 import sys
 from fractions import Fraction
 
+import numpy as np
 import pytest
 
 from tests.refusal import refused
@@ -84,6 +86,20 @@ def test_a_sphere_integrates_polynomials_up_to_its_degree(degree, rule):
                 assert value == pytest.approx(exact_on_sphere(i, j, k), rel=1e-12, abs=1e-13)
 
 
+@pytest.mark.parametrize("degree", [1, 4, 9, 13])
+def test_vectors_of_four_components_integrate_polynomials(degree):
+    # ∫ x^a y^b z^c w^d dΩ = 2 ∏ Γ((a+1)/2) / Γ((a+b+c+d)/2 + 2), or 0 for an odd power: textbook.
+    states = sphere(degree, components=4)
+    assert all(sum(x * x for x in s) == pytest.approx(1, rel=1e-14) for s in states.values)
+    assert min(states.weights) > 0 and states.grid == f"sphere({degree}, components=4)"
+    vectors, weights = np.array(states.values), np.array(states.weights)
+    for powers in itertools.product(range(degree + 1), repeat=4):
+        if sum(powers) <= degree:
+            exact = 2 * math.prod(math.gamma((k + 1) / 2) for k in powers) / math.gamma(sum(powers) / 2 + 2)
+            value = float(np.prod(vectors ** np.array(powers), axis=1) @ weights)
+            assert value == pytest.approx(0 if any(k % 2 for k in powers) else exact, rel=1e-12, abs=1e-13)
+
+
 def test_grids_are_states_like_others():
     states = circle(6)
     assert len(states) == 6 and states.weighted and states.grid == "circle(6)" == repr(states)
@@ -114,6 +130,9 @@ def test_grids_are_states_like_others():
         (lambda: circle(True), ("from 3 to", "True")),
         (lambda: sphere(0), ("q >= 1", "got 0")),
         (lambda: sphere(4, "gauss"), ("'product' or 'lebedev'", "'gauss'")),
+        (lambda: sphere(4, components=2), ("3 or 4", "got 2", "circle(nodes)")),
+        (lambda: sphere(4, "lebedev", 4), ("4 components", "'product'", "'lebedev'")),
+        (lambda: sphere(31, components=4), ("from 1 to 30", "got 31")),
     ],
 )
 def test_grids_without_meaning_are_refused(make, fragments):

@@ -12,9 +12,10 @@ from itertools import pairwise
 from numbers import Real
 from typing import Any
 
-from ..errors import DeclarationError, MissingExtra
+from ..errors import DeclarationError
 from .inexact import NodeWeight
 from .nodes import hermite_rule, legendre_rule
+from .spheres import hopf_rule, lebedev, product_rule
 from .states import StateSet, on_grid, whole_count
 
 __all__ = ["circle", "interval", "line", "sphere"]
@@ -24,8 +25,6 @@ _MOST = 4096
 #: Hermite functions of higher order underflow at the outer nodes.
 _MOST_ON_LINE = 700
 _RULES = ("gauss", "trapezoid")
-
-Vector = tuple[float, float, float]
 
 
 def interval(a: float, b: float, nodes: int, rule: str = "gauss") -> StateSet:
@@ -133,21 +132,24 @@ def circle(nodes: int) -> StateSet:
     return on_grid(f"circle({count})", angles, [NodeWeight(2 * math.pi / count)] * count, labels)
 
 
-def sphere(degree: int, rule: str = "product") -> StateSet:
-    """Unit vectors (x, y, z) of a classical spin, with the measure ∫ dΩ.
+def sphere(degree: int, rule: str = "product", components: int = 3) -> StateSet:
+    """Unit vectors of a classical spin, with the measure ∫ dΩ.
 
     Parameters
     ----------
     degree : int
-        Polynomials in x, y, z up to this degree are integrated exactly.
+        Polynomials in the components up to this degree are integrated exactly.
     rule : {"product", "lebedev"}
         Gauss nodes in z times equal steps about the axis, about (degree + 1)²/2 states; or
         Lebedev's rule of at least this degree, a third fewer, up to 131 (needs SciPy 1.15).
+    components : {3, 4}
+        Vectors (x, y, z), whose weights sum to 4π; or (x, y, z, w), whose weights sum to 2π², by
+        about (degree + 1)³/8 states.
 
     Raises
     ------
     DeclarationError
-        A degree below 1 or without rule; an unknown rule.
+        A degree below 1 or without rule; an unknown rule; another number of components.
     MissingExtra
         Lebedev's rules with a SciPy that has none.
 
@@ -156,50 +158,28 @@ def sphere(degree: int, rule: str = "product") -> StateSet:
     >>> states = sphere(7)
     >>> len(states), round(sum(w * s[0]**2 * s[2]**4 for s, w in zip(states.values, states.weights)), 10)
     (32, 0.3590391604)
+    >>> sphere(1, components=4).labels[0]
+    '(0.7071,0.0000,0.7071,0.0000)'
     """
     least = _nodes("sphere(degree)", degree, 1, 150)
-    if rule == "product":
-        vectors, weights = _product_rule(least)
-    elif rule == "lebedev":
-        vectors, weights = _lebedev(least)
-    else:
+    if isinstance(components, bool) or components not in (3, 4):
+        raise DeclarationError(
+            f"components= of sphere takes 3 or 4, got {components!r}; ising() has one component, circle(nodes) two"
+        )
+    if rule not in ("product", "lebedev"):
         raise DeclarationError(f"rule= of sphere takes 'product' or 'lebedev', got {rule!r}")
-    values = [(float(x), float(y), float(z)) for x, y, z in vectors]
-    labels = [f"({x:.4f},{y:.4f},{z:.4f})" for x, y, z in values]
+    if components == 4 and rule != "product":
+        raise DeclarationError(f"vectors of 4 components have rule='product' only, got {rule!r}")
+    if components == 4:
+        vectors, weights = hopf_rule(_nodes("sphere(degree, components=4)", degree, 1, 30))
+    else:
+        vectors, weights = product_rule(least) if rule == "product" else lebedev(least)
+    values = [tuple(map(float, vector)) for vector in vectors]
+    labels = [f"({','.join(f'{x:.4f}' for x in value)})" for value in values]
     if len(set(labels)) < len(labels):
         labels = [str(value) for value in values]
-    return on_grid(f"sphere({least}, {rule!r})", values, [NodeWeight(w) for w in weights], labels)
-
-
-def _product_rule(degree: int) -> tuple[list[Vector], list[float]]:
-    steps = degree + 1
-    angles = [2 * math.pi * (k + 0.5) / steps for k in range(steps)]
-    vectors, weights = [], []
-    for z, weight in zip(*legendre_rule(degree // 2 + 1), strict=True):
-        across = math.sqrt((1 - z) * (1 + z))
-        vectors += [(across * math.cos(angle), across * math.sin(angle), z) for angle in angles]
-        weights += [weight * 2 * math.pi / steps] * steps
-    return vectors, weights
-
-
-def _lebedev(degree: int) -> tuple[list[Vector], list[float]]:
-    try:
-        from scipy.integrate import lebedev_rule
-    except ImportError as cause:
-        raise MissingExtra(
-            'sphere(degree, rule="lebedev") needs SciPy 1.15 or newer: python -m pip install "scipy>=1.15"; '
-            'rule="product" needs none'
-        ) from cause
-    for order in range(degree, 132):
-        try:
-            vectors, weights = lebedev_rule(order)
-        except RuntimeError:  # no rule of this degree
-            continue
-        if (weights > 0).all():  # three of the rules have negative weights
-            return [tuple(vector) for vector in vectors.T.tolist()], weights.tolist()
-    raise DeclarationError(
-        f'sphere({degree}, rule="lebedev") has no rule; degrees go up to 131, beyond it use rule="product"'
-    )
+    name = f"sphere({least}, {rule!r})" if components == 3 else f"sphere({least}, components=4)"
+    return on_grid(name, values, [NodeWeight(w) for w in weights], labels)
 
 
 def _numbers(grid: str, where: list[float], weights: list[float]) -> StateSet:
