@@ -104,6 +104,7 @@ def test_equal_defaults_written_differently_agree():
         ),
         (lambda: Chain(ising(), [site(lambda s, h="strong": h)]), ("default of 'h'", "the text 'strong'")),
         (lambda: Chain(ising(), [site(lambda s, h=None: h)]), ("default of 'h'", "got None")),
+        (lambda: Chain(ising(), [site(np.sum)]), ("default of 'axis' in sum", "got None", "lambda s: sum(s)")),
         (lambda: Chain(ising(), [site(lambda s, h=(1, 2): h)]), ("default of 'h'", "single number", "(1, 2)")),
         (lambda: Chain(ising(), [site(lambda s, T=1: T)]), ("T in <lambda>", "takes no default", "at(T=…)")),
         (lambda: Chain(ising(), [], observables=["m"]), ("takes a mapping", "got ['m']")),

@@ -4,6 +4,7 @@ import functools
 import math
 from fractions import Fraction
 
+import numpy as np
 import pytest
 
 from tests.refusal import refused
@@ -35,6 +36,9 @@ class Callable:
         (bond(functools.partial(coupling, J=1)), ("J", "K"), {"J": 1, "K": 2}),
         (site(lambda s, T, g: T * g), ("T", "g"), {}),
         (site(lambda s=0, h=1: h), ("h",), {"h": 1}),
+        (site(np.cos), (), {}),
+        (bond(np.hypot), (), {}),
+        (site(np.vectorize(lambda s, h=1: -h * s)), ("h",), {"h": 1}),
     ],
 )
 def test_parameters_come_from_the_signature(made, parameters, defaults):
@@ -110,6 +114,9 @@ def test_delta(states, value):
         (lambda: term(coupling, "a"), ("a place is (kind, shift)", "'a'")),
         (lambda: term(coupling, ("a", 0.5)), ("a place is (kind, shift)", "('a', 0.5)")),
         (lambda: weight(bond(coupling), 0, 1), ("is placed already", "either a term or places")),
+        (lambda: bond(np.cos), ("cos takes 1 argument but is placed on 2 sites", "lambda s, t, a: cos(…)")),
+        (lambda: site(np.multiply), ("multiply takes 2 arguments but is placed on 1 site",)),
+        (lambda: site(np.frexp), ("frexp returns 2 values", "one number")),
         (lambda: delta(1), ("compares at least two states, got 1",)),
     ],
 )

@@ -138,3 +138,22 @@ def test_weights_and_observables_refused(term, values, fragments):
 
 def test_an_error_of_the_library_passes_through():
     refused(DeclarationError, lambda: table(site(lambda s: spins(s - 1))), "spins(S) takes", "got -2")
+
+
+def test_ufuncs_are_functions_of_states():
+    two = table(bond(np.hypot))[..., 0]
+    assert two == pytest.approx(np.full((2, 2), math.sqrt(2)), rel=1e-15)
+    assert table(site(np.vectorize(lambda s, h: -h * s)), h=0.5).ravel().tolist() == [0.5, -0.5]
+
+
+@pytest.mark.parametrize(
+    ("function", "error", "fragments"),
+    [
+        (lambda s, t, J: -J * np.multiply(s, t), DeclarationError, ("shape (2,)", "s[0], s[1]", "np.dot(s, t)")),
+        (lambda s, t, J: -J * s * t, SolveError, ("TypeError", "mend the function", "are tuples: take s[0]")),
+        (lambda s, t, J: s + t, DeclarationError, ("a real number; states of several", "np.dot(s, t)")),
+    ],
+)
+def test_states_of_several_components_are_explained(function, error, fragments):
+    states = [StateSet([(1, 0), (0, 1)])] * 2
+    refused(error, lambda: number_table(bond(function), states, {"J": 0.5}, 1), *fragments)

@@ -89,6 +89,11 @@ def test_what_is_not_affine_is_not_taken_for_it(function):
     assert affine_table(site(function), [line(5)]) is None
 
 
+def test_a_ufunc_is_an_observable():
+    chain = Chain(circle(32), [site(lambda a, h: -h * np.cos(a))], observables={"c": np.cos})
+    assert float(solve(chain.at(T=1, h=1)).mean("c")) == pytest.approx(0.44638996589653450705, rel=1e-13)  # I₁(1)/I₀(1)
+
+
 def test_derivatives_by_parameters_of_any_function():
     chain = Chain(line(48), [site(lambda s, w: w * w * s * s / 2)])
     # Z = (2πT)^(1/2)/w: f = -T ln Z, df/dw = T/w, d²f/dw² = -T/w².

@@ -234,7 +234,11 @@ def _defaults(terms: Iterable[Term]) -> dict[str, Value]:
             try:
                 value = parse_value(name, raw)
             except ParameterError as cause:
-                raise DeclarationError(f"default of {name!r} in {item.name}: {cause}") from cause
+                states = ", ".join("stuv"[: len(item.places)])
+                raise DeclarationError(
+                    f"default of {name!r} in {item.name}: {cause}. Every argument after the states is a parameter; "
+                    f"hide options in a function of your own, such as lambda {states}: {item.name}({states})"
+                ) from cause
             if hasattr(value, "shape"):
                 raise DeclarationError(f"default of {name!r} in {item.name} must be a single number, got {raw!r}")
             if name in defaults and defaults[name] != value:

@@ -59,14 +59,25 @@ def read_signature(function: Callable[..., Any], sites: int) -> Signature:
     --------
     >>> read_signature(lambda s, t, J, h=0: 0, 2)
     Signature(parameters=('J', 'h'), defaults={'h': 0})
+
+    A ufunc, ``np.cos`` say, takes states only:
+
+    >>> import numpy as np
+    >>> read_signature(np.cos, 1)
+    Signature(parameters=(), defaults={})
     """
     name = function_name(function)
     if not callable(function):
         raise DeclarationError(
             f"expected a function of local states, got {function!r}; write for example lambda s, h: -h*s"
         )
+    if _is_ufunc(function):
+        _check_ufunc(name, function, sites)
+        return Signature((), {})
     try:
-        arguments = list(inspect.signature(function).parameters.values())
+        # np.vectorize hides the arguments of the function that it wraps.
+        wrapped = getattr(function, "pyfunc", function)
+        arguments = list(inspect.signature(wrapped).parameters.values())
     except (TypeError, ValueError) as cause:
         raise DeclarationError(
             f"the arguments of {name} cannot be read; wrap it in a function of your own with named parameters"
@@ -86,6 +97,22 @@ def read_signature(function: Callable[..., Any], sites: int) -> Signature:
         raise DeclarationError(f"parameter {unnamed[0]!r} of {name} is positional-only; parameters are passed by name")
     defaults = {a.name: a.default for a in named if a.default is not inspect.Parameter.empty}
     return Signature(tuple(a.name for a in named), defaults)
+
+
+def _is_ufunc(function: Any) -> bool:
+    """Whether a callable is a ufunc of NumPy or SciPy: its options are no parameters."""
+    return isinstance(getattr(function, "nin", None), int) and isinstance(getattr(function, "nout", None), int)
+
+
+def _check_ufunc(name: str, function: Any, sites: int) -> None:
+    if function.nout != 1:
+        raise DeclarationError(f"{name} returns {function.nout} values, but a term is one number")
+    if function.nin != sites:
+        states = ", ".join("stuv"[:sites]) if sites <= 4 else "…"
+        raise DeclarationError(
+            f"{name} takes {_plural(function.nin, 'argument')} but is placed on {_plural(sites, 'site')}; write a "
+            f"function of the local states, then of parameters by name, such as lambda {states}, a: {name}(…)"
+        )
 
 
 def _reject_open_keywords(name: str, arguments: list[inspect.Parameter]) -> None:

@@ -118,8 +118,16 @@ def _failed(term: Term, states: Sequence[StateSet], values: Mapping[str, Any], c
             term.function(*arguments, **{name: values[name] for name in term.parameters})
         except Exception as again:
             call = describe_call(term, arguments, values)
-            return SolveError(f"{call} raised {type(again).__name__}: {again}; mend the function of this term")
+            mend = f"mend the function of this term{_components(arguments)}"
+            return SolveError(f"{call} raised {type(again).__name__}: {again}; {mend}")
     return SolveError(f"{term.name} raised {type(cause).__name__}: {cause}; mend the function of this term")
+
+
+def _components(states: Sequence[Any]) -> str:
+    """Return what to know about states that are tuples, for messages."""
+    if not any(isinstance(state, tuple) for state in states):
+        return ""
+    return "; states of several components are tuples: take s[0], s[1], …, or np.dot(s, t) for a scalar product"
 
 
 def _collect(
@@ -129,11 +137,12 @@ def _collect(
     table = np.empty((*raw.shape, 1 if length == 1 else batch))
     for index in np.ndindex(raw.shape):
         arguments = [numeric_state(s.values[i]) for s, i in zip(states, index, strict=True)]
-        table[index] = _number(raw[index], partial(describe_call, term, arguments, values), term, batch)
+        call = partial(describe_call, term, arguments, values)
+        table[index] = _number(raw[index], call, term, batch, _components(arguments))
     return table
 
 
-def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
+def _number(entry: Any, call: Callable[[], str], term: Term, batch: int, hint: str) -> Any:
     noun = {"energy": "an energy", "weight": "a weight"}.get(term.role, "an observable")
     if isinstance(entry, (bool, np.bool_)) or getattr(entry, "dtype", None) == np.bool_:
         raise DeclarationError(
@@ -144,7 +153,7 @@ def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
         raise DeclarationError(f"{call()} returned None, but {noun} is a real number; does the function lack a return?")
     unreal = isinstance(entry, (str, bytes, complex)) or getattr(entry, "dtype", np.dtype(float)).kind == "c"
     if unreal or not hasattr(entry, "__float__"):
-        raise DeclarationError(f"{call()} returned {entry!r}, but {noun} is a real number")
+        raise DeclarationError(f"{call()} returned {entry!r}, but {noun} is a real number{hint}")
     number = np.asarray(entry)
     if number.dtype.kind not in "iuf":
         try:
@@ -156,7 +165,7 @@ def _number(entry: Any, call: Callable[[], str], term: Term, batch: int) -> Any:
     if number.size != 1 and number.shape != (batch,):
         raise DeclarationError(
             f"{call()} returned an array of shape {number.shape}, but {noun} is one number per point; "
-            "compute on the parameters elementwise"
+            f"compute on the parameters elementwise{hint}"
         )
     number = number.reshape(-1).astype(np.float64)
     _check_finite(number, call, term)
