@@ -31,7 +31,8 @@ def test_several_sites_per_cell(tm, pair):
     words = ["sample", pair, "--cells", 5, "-p", "h=0.1", "--count", 3, "--seed", 1]
     ended = tm(*words, "--given", "2:t=0")
     rows = [line.split() for line in ended.out.splitlines() if line.startswith(("s:", "t:"))]
-    assert len(rows) == 6 and all(row[3] == "0" for row in rows if row[0] == "t:")
+    assert len(rows) == 6 and all(row[1][2] == "0" for row in rows if row[0] == "t:")
+    assert all(len(row) == 2 and len(row[1]) == 5 for row in rows)
     ended = tm(*words, "--given", "2=0")
     assert ended.code == 2 and "say which one, as in 2:s=0" in ended.err
 
@@ -79,7 +80,7 @@ def test_a_simulation_beside_exact_results(tm, tmp_path):
         (["--cells", 5, "--start", "cold"], "add --metropolis SWEEPS"),
         (["--cells", 5, "--metropolis", 9, "--infinite"], "leave --infinite out"),
         (["--cells", 5, "--metropolis", 9, "--given", "0=1"], "leave --given out"),
-        (["--cells", 5, "--metropolis", 9, "--count", 3], "take --replicas R"),
+        (["--cells", 5, "--metropolis", 9, "--count", 3], "a simulation has --replicas R instead; leave --count out"),
         (["--cells", 5, "--metropolis", 9, "--start", "warm"], "--start takes hot, cold, got 'warm'"),
         (["--cells", 5, "--out", "a.txt"], "--out"),
     ],

@@ -7,16 +7,18 @@ import sys
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
-from ..errors import DeclarationError, ParameterError, TmsolveError
-from .disorder_realised import add_realisation, solve_realised
+from ..errors import ParameterError, TmsolveError, did_you_mean
+from .disorder_realised import add_realised, solve_realised
 from .jsontext import json_text
 from .layout import heading
-from .model import Values, check_names, fill, given_values, load_model
+from .model import Values, fill, given_values, load_model
 from .options import add_common, add_model
 from .outcome import DONE, SOME_FAILED, UsageError
 from .parser import Parser
+from .random_laws import add_random, read_random
 from .table import Number, table
-from .words import assignments, split_names, whole
+from .together import refuse_beside, refuse_without
+from .words import split_names, whole
 
 if TYPE_CHECKING:
     from ..disorder.averages import Average
@@ -36,26 +38,22 @@ EXAMPLES = """\
   tmsolve disorder random_field_ising --realisation fields.csv --boundary ring --out profile.csv
 """
 METHODS = ("sample", "exact", "annealed")
+#: What is taken when nothing is said.
+_CELLS, _REPLICAS = 500, 128
+_NOTHING_DRAWN = "nothing is drawn at random, the average is an integral"
+_GROUND_STATE = "energy and residual entropy of the ground state are printed together"
 
 
 def configure(parser: Parser) -> None:
     """Declare the options."""
     add_model(parser, "value of a parameter that is not random, or of T, read exactly: 0.4, 2/5, 1e-3; repeatable")
-    parser.add_argument(
-        "--random",
-        metavar="NAME=LAW",
-        action="append",
-        default=[],
-        help="a random parameter: normal(MEAN,DEVIATION), uniform(LOW,HIGH) or choice(VALUE:PROBABILITY,…), in "
-        "quotes; repeatable, needed at least once unless --realisation is given",
-    )
-    parser.add_argument("--cells", metavar="N", default="500", help="cells averaged over per replica. Default: 500")
-    parser.add_argument("--replicas", metavar="N", default="128", help="independent chains, at least 2. Default: 128")
+    add_random(parser, ", needed at least once unless --realisation is given")
+    parser.add_argument("--cells", metavar="N", help=f"cells averaged over per replica. Default: {_CELLS}")
+    parser.add_argument("--replicas", metavar="N", help=f"independent chains, at least 2. Default: {_REPLICAS}")
     parser.add_argument("--seed", metavar="N", help="the same seed gives the same numbers. Default: another every time")
     parser.add_argument(
         "--method",
         metavar="NAME",
-        default="sample",
         help="sample: random products; exact: the integral equation, for a cut of two states; annealed: the disorder "
         "in equilibrium with the chain, which is another average. Default: sample",
     )
@@ -68,7 +66,7 @@ def configure(parser: Parser) -> None:
         "susceptibility(a) susceptibility(a,b) derivative(p) derivative(p,q) lyapunov(k) correlation_length "
         "average_correlation_length; a, b are observables, p, q parameters or T. Default: all but the last four",
     )
-    add_realisation(parser)
+    add_realised(parser)
     add_common(parser)
 
 
@@ -76,21 +74,22 @@ def run(arguments: argparse.Namespace) -> int:
     """Average and print."""
     from ..disorder.quantities import average_named, average_names
 
-    if arguments.method not in METHODS:
-        raise UsageError(f"--method is one of {', '.join(METHODS)}, got {arguments.method!r}")
+    if arguments.method not in (None, *METHODS):
+        hint = did_you_mean(arguments.method, METHODS)
+        raise UsageError(f"--method is one of {', '.join(METHODS)}, got {arguments.method!r}.{hint}")
     model = load_model(arguments)
     if arguments.realisation is not None:
         return solve_realised(arguments, model)
-    for option in ("boundary", "out"):
-        if getattr(arguments, option) is not None:
-            raise UsageError(f"--{option} belongs to --realisation FILE.csv; leave it out")
-    laws = _laws(arguments, model)
+    refuse_without(arguments, "--realisation FILE.csv", ("boundary", "out"))
+    laws = read_random(arguments, model)
+    if not laws:
+        raise UsageError('no random parameter; give at least one, such as --random "h=normal(0,1)"')
     values = fill(given_values(arguments, model), model, running=laws)
-    for name in laws:
-        if name in assignments(arguments.parameter, "-p", "J=1"):
-            raise UsageError(f"-p {name}: {name} is random; leave -p {name} or --random {name} out")
     if not values.all["T"]:
         return _cold(arguments, model, values, laws)
+    method = arguments.method or "sample"
+    if method != "sample":
+        refuse_beside(arguments, f"--method {method}", dict.fromkeys(("cells", "replicas", "seed"), _NOTHING_DRAWN))
     names = split_names(arguments.read, "--read") or average_names(model.chain, laws)
     try:
         wanted = {name: average_named(name) for name in names}
@@ -114,22 +113,6 @@ def run(arguments: argparse.Namespace) -> int:
     for name, why in failures.items():
         print(f"tmsolve disorder: {name} failed: {why}", file=sys.stderr)
     return SOME_FAILED if failures else DONE
-
-
-def _laws(arguments: argparse.Namespace, model: LoadedModel) -> dict[str, Any]:
-    from ..disorder.laws import as_law
-
-    given = assignments(arguments.random, "--random", "h=normal(0,1)")
-    if not given:
-        raise UsageError('no random parameter; give at least one, such as --random "h=normal(0,1)"')
-    check_names(given, model, "--random")
-    laws = {}
-    for name, written in given.items():
-        try:
-            laws[name] = as_law(written)
-        except (DeclarationError, ParameterError) as error:
-            raise UsageError(f"--random {name}: {error}") from error
-    return laws
 
 
 def _averages(
@@ -160,7 +143,8 @@ def _averages(
 
 def _counts(arguments: argparse.Namespace) -> dict[str, Any]:
     seed = None if arguments.seed is None else whole(arguments.seed, "--seed", 0)
-    cells, replicas = whole(arguments.cells, "--cells", 1), whole(arguments.replicas, "--replicas", 2)
+    cells = _CELLS if arguments.cells is None else whole(arguments.cells, "--cells", 1)
+    replicas = _REPLICAS if arguments.replicas is None else whole(arguments.replicas, "--replicas", 2)
     return {"cells": cells, "replicas": replicas, "rng": seed}
 
 
@@ -180,8 +164,7 @@ def _read(
 
 
 def _cold(arguments: argparse.Namespace, model: LoadedModel, values: Values, laws: Mapping[str, Any]) -> int:
-    if arguments.read or arguments.method != "sample":
-        raise UsageError("at T = 0 the ground state is read as a whole; leave --read and --method out")
+    refuse_beside(arguments, "-p T=0", dict.fromkeys(("read", "method"), _GROUND_STATE))
     from ..disorder.ground_energy import disordered_ground_state
 
     found = disordered_ground_state(model.chain.fix(**values.numbers), laws, **_counts(arguments))
@@ -212,7 +195,7 @@ def _document(
         "options": dict(model.options),
         **values.document(),
         "random": {name: str(law) for name, law in laws.items()},
-        "method": arguments.method,
+        "method": arguments.method or METHODS[0],
         **facts,
         "tmsolve": __version__,
     }

@@ -3,38 +3,42 @@
 from __future__ import annotations
 
 import argparse
-import csv
 import sys
 from collections.abc import Iterator, Mapping
-from pathlib import Path
-from typing import TYPE_CHECKING, Any, TextIO
+from typing import TYPE_CHECKING, Any
 
-from ..errors import ParameterError, TmsolveError
+from ..errors import ParameterError
 from .files import check_output
-from .grids import write_rows
 from .jsontext import json_text
 from .layout import heading
-from .model import Values, check_names, fill, given_values
+from .model import Values, fill, given_values
 from .options import add_out
 from .outcome import DONE, UsageError
 from .parser import Parser
+from .realised_files import add_realisation, read_columns, write_columns
 from .table import Number, table
-from .words import assignments
+from .together import refuse_beside
 
 if TYPE_CHECKING:
     from ..disorder.realised import Realised
     from ..models import LoadedModel
 
-__all__ = ["add_realisation", "solve_realised"]
+__all__ = ["add_realised", "solve_realised"]
+
+#: Options of averages, and why one given chain does not need them.
+_IDLE = {
+    "random": "nothing is random in one given chain, all its values stand in the file",
+    "cells": "the chain has as many cells as the file has lines of values",
+    "replicas": "one given chain has no replicas",
+    "seed": "nothing is drawn",
+    "method": "the given chain is always summed exactly",
+    "read": "all quantities are printed; tmsolve finite --realisation reads correlations and more",
+}
 
 
-def add_realisation(parser: Parser) -> None:
+def add_realised(parser: Parser) -> None:
     """Add the options of one realisation."""
-    parser.add_argument(
-        "--realisation",
-        metavar="FILE.csv",
-        help="instead of --random: one given chain. Columns are named after parameters, one row per cell",
-    )
+    add_realisation(parser, "instead of --random, one given chain")
     parser.add_argument(
         "--boundary", metavar="NAME", help="open or ring, the ends of the chain of --realisation. Default: open"
     )
@@ -45,62 +49,20 @@ def solve_realised(arguments: argparse.Namespace, model: LoadedModel) -> int:
     """Solve the chain of a file and print it."""
     from ..disorder.realised import realisation
 
-    for option in ("random", "read", "seed"):
-        if getattr(arguments, option):
-            raise UsageError(f"--realisation is one given chain; leave --{option} out, or --realisation")
+    refuse_beside(arguments, "--realisation", _IDLE)
     path = check_output(arguments.out, "--out", (".csv",))
-    columns = _columns(Path(arguments.realisation).expanduser())
-    check_names(columns, model, "--realisation")
+    columns = read_columns(arguments, model)
     values = fill(given_values(arguments, model), model, running=columns)
-    for name in columns:
-        if name in assignments(arguments.parameter, "-p", "J=1"):
-            raise UsageError(f"-p {name}: {name} is a column of {arguments.realisation}; leave one of them out")
     try:
         solved = realisation(model.chain.fix(**values.numbers), columns, arguments.boundary or "open")
     except ParameterError as error:
         raise UsageError(f"--realisation: {error}") from error
-    _show(arguments, model, values, solved)
     if path is not None:
-        _write(path, solved)
+        write_columns(path, {f"mean({name})": solved.profile(name).tolist() for name in solved.observables}, "--out")
+    _show(arguments, model, values, solved)
+    if path is not None and not arguments.quiet:
+        print(f"tmsolve disorder: wrote {path}", file=sys.stderr)
     return DONE
-
-
-def _columns(path: Path) -> dict[str, list[float]]:
-    """Read one list of numbers per column."""
-    try:
-        with path.open(encoding="utf-8-sig", newline="") as stream:
-            return _read(stream, path)
-    except (OSError, UnicodeDecodeError, csv.Error) as error:
-        why = error.strerror if isinstance(error, OSError) else error
-        raise UsageError(f"--realisation: {path} cannot be read as CSV: {why}") from error
-
-
-def _read(stream: TextIO, path: Path) -> dict[str, list[float]]:
-    lines = csv.reader(stream)
-    names = [name.strip() for name in next(lines, [])]
-    if not all(names) or len(set(names)) < len(names) or not names:
-        raise UsageError(
-            f"--realisation: the first row of {path} names every column after one parameter, each once; got {names}"
-        )
-    columns: list[list[float]] = [[] for _ in names]
-    for fields in lines:
-        if not fields:
-            continue
-        if len(fields) != len(names):
-            raise UsageError(
-                f"--realisation: row {lines.line_num} of {path} has {len(fields)} values for {len(names)} columns"
-            )
-        for name, column, text in zip(names, columns, fields, strict=True):
-            try:
-                column.append(float(text))
-            except ValueError:
-                raise UsageError(
-                    f"--realisation: row {lines.line_num} of {path} has {text!r} in column {name}; "
-                    "give a number such as 0.5"
-                ) from None
-    if not columns[0]:
-        raise UsageError(f"--realisation: {path} has no rows below its column names; give one per cell")
-    return dict(zip(names, columns, strict=True))
 
 
 def _results(solved: Realised) -> Iterator[tuple[str, float]]:
@@ -135,14 +97,3 @@ def _show(arguments: argparse.Namespace, model: LoadedModel, values: Values, sol
         shown = table(rows, ["whole chain; mean per cell", "value"])
         print("\n\n".join([f"{heading(model, values)}\n{given}", shown]))
     sys.stdout.flush()
-
-
-def _write(path: Path, solved: Realised) -> None:
-    names = list(solved.observables)
-    rows = zip(*(solved.profile(name).tolist() for name in names), strict=True) if names else iter(())
-    try:
-        with path.open("w", encoding="utf-8", newline="") as stream:
-            write_rows([["cell", *(f"mean({name})" for name in names)]], stream)
-            write_rows(([str(cell), *map(repr, row)] for cell, row in enumerate(rows)), stream)
-    except OSError as error:
-        raise TmsolveError(f"--out: {path} could not be written: {error.strerror}") from error

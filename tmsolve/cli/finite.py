@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import argparse
 import sys
-from collections.abc import Mapping
+from collections.abc import Collection, Mapping
 from fractions import Fraction
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -14,6 +14,7 @@ from .figures import tried
 from .files import check_output, figure_path
 from .finite_impurities import FORM, HELP, Impurity, read_impurities
 from .finite_quantities import LISTED, TABLES, Asked, read_quantity
+from .finite_realised import GivenChain, check_readings, given_chain
 from .finite_shown import csv_rows, draw, json_value, text
 from .grids import write_rows
 from .jsontext import json_text
@@ -22,13 +23,14 @@ from .model import Values, fill, given_values, load_model
 from .options import add_common, add_digits, add_model, add_out, add_plot, digits_of
 from .outcome import DONE, SOME_FAILED, UsageError
 from .parser import Parser
-from .words import assignments, split_names, whole
+from .realised_files import add_realisation, read_columns, whole_cells
+from .words import assignments, split_names
 
 if TYPE_CHECKING:
     from ..finite.results import FiniteChain
     from ..models import LoadedModel
 
-OPERANDS = "MODEL --cells N"
+OPERANDS = "MODEL (--cells N | --realisation FILE.csv)"
 DESCRIPTION = """\
 A ring of N cells, or with --open a chain with two ends: partition function, totals, moments, profiles,
 correlations, domains, and exact distributions with accurate tails. N may be a billion."""
@@ -38,15 +40,17 @@ EXAMPLES = """\
   tmsolve finite ising --cells 101 --left 1 --right=-1 -p T=0.2 --read "profile(m)" --plot wall.png
   tmsolve finite blume_capel --cells 50 --open --impurity 25:D=0,J=2 --read "profile(q)" --json
   tmsolve finite ising --cells 60 --impurity 20+40=blume_capel:D=0.5,J=1,h=0 --read "log_Z,domains(m)"
+  tmsolve finite random_field_ising --realisation fields.csv --open --read "profile(m)" --plot profile.png
 """
 #: More cells than this are not listed.
 _LONGEST = 200_000
+_NO_CELLS = "finite needs the number of cells, such as --cells 100; for the infinite chain use tmsolve solve"
 
 
 def configure(parser: Parser) -> None:
     """Declare the options."""
     add_model(parser, "value of a parameter, or of the temperature T, read exactly: 0.4, 2/5, 1e-3; repeatable")
-    parser.add_argument("--cells", metavar="N", help="number of cells; needed")
+    parser.add_argument("--cells", metavar="N", help="number of cells; needed, unless --realisation is given")
     parser.add_argument("--open", action="store_true", help="a chain with two free ends instead of a ring")
     for side, cell in (("left", "first"), ("right", "last")):
         parser.add_argument(
@@ -79,6 +83,7 @@ def configure(parser: Parser) -> None:
             "free_energy, and of every observable mean(a) and covariance(a)"
         ),
     )
+    add_realisation(parser, "one given disordered chain")
     add_digits(parser)
     add_out(
         parser,
@@ -93,15 +98,18 @@ def run(arguments: argparse.Namespace) -> int:
     digits = digits_of(arguments)
     out, figure = check_output(arguments.out, "--out", (".json", ".csv")), figure_path(arguments.plot)
     model = load_model(arguments)
-    if arguments.cells is None:
-        raise UsageError(
-            "finite needs the number of cells, such as --cells 100; for the infinite chain use tmsolve solve"
-        )
-    cells = whole(arguments.cells, "--cells", 1)
-    values = fill(given_values(arguments, model), model)
-    asked = _asked(arguments, model, cells, out, figure)
-    impurities = read_impurities(arguments.impurity, model, values, cells)
-    chain = _chain(arguments, model, values, cells, impurities)
+    columns = {} if arguments.realisation is None else read_columns(arguments, model)
+    cells = whole_cells(arguments, columns, _NO_CELLS)
+    values = fill(given_values(arguments, model), model, running=columns)
+    asked = _asked(arguments, model, columns, cells)
+    _check_files(asked, out, figure)
+    impurities = {} if columns else read_impurities(arguments.impurity, model, values, cells)
+    chain: FiniteChain | GivenChain
+    if columns:
+        check_readings(asked)
+        chain = given_chain(arguments, model, values, columns)
+    else:
+        chain = _chain(arguments, model, values, cells, impurities)
     found, failures = _evaluate(chain, asked)
     if failures and not found:
         raise next(iter(failures.values()))
@@ -113,23 +121,28 @@ def run(arguments: argparse.Namespace) -> int:
     else:
         print("\n\n".join([f"{heading(model, values)}\n{_shape(document, impurities)}", text(found, digits)]))
     sys.stdout.flush()
-    remarks = [f"{name} failed: {error}" for name, error in failures.items()]
     listed = {key: value for key, value in found.items() if key.kind in LISTED}
     undrawn = tried(lambda: draw(listed, figure)) if figure is not None and listed else ""
-    if figure is not None and not undrawn and listed and not arguments.quiet:
-        print(f"tmsolve finite: wrote {figure}", file=sys.stderr)
+    written = [out, None if undrawn or not listed else figure]
+    remarks = [] if arguments.quiet else [f"wrote {path}" for path in written if path is not None]
+    remarks += [f"{name} failed: {error}" for name, error in failures.items()]
     for line in filter(None, [*remarks, undrawn]):
         print(f"tmsolve finite: {line}", file=sys.stderr)
     return SOME_FAILED if failures or undrawn else DONE
 
 
-def _asked(
-    arguments: argparse.Namespace, model: LoadedModel, cells: int, out: Path | None, figure: Path | None
-) -> list[Asked]:
-    names = split_names(arguments.read, "--read") or [
-        "log_Z", "free_energy", *(f"{q}({a})" for a in model.chain.observables for q in ("mean", "covariance"))
-    ]  # fmt: skip
-    asked = list(dict.fromkeys(read_quantity(name, model.chain, cells) for name in names))
+def _asked(arguments: argparse.Namespace, model: LoadedModel, columns: Collection[str], cells: int) -> list[Asked]:
+    chain = model.chain
+    common = [a for a in chain.observables if not any(p in columns for t in chain.observable(a) for p in t.parameters)]
+    usual = ["log_Z", "free_energy", *(f"{q}({a})" for a in common for q in ("mean", "covariance"))]
+    names = split_names(arguments.read, "--read") or usual
+    asked = list(dict.fromkeys(read_quantity(name, chain, cells) for name in names))
+    if cells > _LONGEST and any(one.kind == "profile" for one in asked):
+        raise UsageError(f"a profile lists at most {_LONGEST} cells, got {cells}; read mean(a,i) of a cell i")
+    return asked
+
+
+def _check_files(asked: list[Asked], out: Path | None, figure: Path | None) -> None:
     listed = [one for one in asked if one.kind in LISTED]
     if figure is not None and not listed:
         raise UsageError('--plot draws profiles and distributions; ask for one, such as --read "profile(m)"')
@@ -138,9 +151,6 @@ def _asked(
             f"--out {out}: a .csv file holds one profile, distribution or domains of one observable, got "
             f"{', '.join(one.name for one in asked)}; read one of these, or write a .json file"
         )
-    if cells > _LONGEST and any(one.kind == "profile" for one in asked):
-        raise UsageError(f"a profile lists at most {_LONGEST} cells, got --cells {cells}; read mean(a,i) of a cell i")
-    return asked
 
 
 def _chain(
@@ -185,7 +195,7 @@ def _state(written: str, kind: str, model: LoadedModel) -> Any:
         return written
 
 
-def _evaluate(chain: FiniteChain, asked: list[Asked]) -> tuple[dict[Asked, Any], dict[str, TmsolveError]]:
+def _evaluate(chain: FiniteChain | GivenChain, asked: list[Asked]) -> tuple[dict[Asked, Any], dict[str, TmsolveError]]:
     """Return what could be computed, and why the rest could not."""
     found: dict[Asked, Any] = {}
     failures: dict[str, TmsolveError] = {}
@@ -203,7 +213,7 @@ def _document(
     arguments: argparse.Namespace,
     model: LoadedModel,
     values: Values,
-    chain: FiniteChain,
+    chain: FiniteChain | GivenChain,
     impurities: Mapping[int, Impurity],
     found: Mapping[Asked, Any],
     failures: Mapping[str, TmsolveError],
@@ -220,6 +230,7 @@ def _document(
         "boundary": "ring" if chain.closed else "open",
         "left": arguments.left,
         "right": arguments.right,
+        "realisation": list(chain.solved.values) if isinstance(chain, GivenChain) else [],
         "impurities": {str(cell): impurity.document for cell, impurity in impurities.items()},
         "results": {one.name: json_value(one, value) for one, value in found.items()},
         "units": {one.name: one.unit for one in found},
@@ -231,6 +242,7 @@ def _document(
 def _shape(document: Mapping[str, Any], impurities: Mapping[int, Impurity]) -> str:
     """Return the lines on length, ends and impurities."""
     lines = [f"  {document['cells']} cells, " + ("closed to a ring" if document["boundary"] == "ring" else "open")]
+    lines += [f"  {listing(document['realisation'])} given cell by cell"] if document["realisation"] else []
     lines += [f"  {side} end: {', '.join(document[side])}" for side in ("left", "right") if document[side]]
     lines += [f"  cell {cell}: {impurity.text}" for cell, impurity in impurities.items()]
     return "\n".join(lines)

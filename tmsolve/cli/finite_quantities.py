@@ -14,6 +14,7 @@ if TYPE_CHECKING:
     from ..declare import Chain
     from ..finite.distribution import Distribution
     from ..finite.results import FiniteChain
+    from .finite_realised import GivenChain
 
 __all__ = ["FORMS", "LISTED", "TABLES", "Asked", "DomainTable", "read_quantity"]
 
@@ -88,12 +89,10 @@ class Asked:
         """Its unit."""
         return "energy" if self.kind == "free_energy" else "1"
 
-    def evaluate(self, chain: FiniteChain) -> float | list[float] | Distribution | DomainTable:
+    def evaluate(self, chain: FiniteChain | GivenChain) -> float | list[float] | Distribution | DomainTable:
         """Compute it: a number, one number per order or cell, a distribution, or a table of domains."""
-        if self.kind == "distribution":
-            return chain.distribution(self.observables[0])
-        if self.kind == "domains":
-            return _domains(chain, self.observables[0])
+        if self.kind in _OF_EQUAL_CELLS:
+            return _OF_EQUAL_CELLS[self.kind](chain, self.observables[0])
         found = _COMPUTE[self.kind](chain, *self.observables, *self.cells)
         return [float(value) for value in found] if getattr(found, "shape", ()) else float(found)
 
@@ -125,6 +124,12 @@ def _domains(chain: FiniteChain, observable: str) -> DomainTable:
         [float(found.number(value)) for value in found.values],
         lengths,
     )
+
+
+_OF_EQUAL_CELLS: dict[str, Callable[..., Any]] = {
+    "distribution": lambda chain, a: chain.distribution(a),
+    "domains": _domains,
+}
 
 
 def read_quantity(text: str, chain: Chain, cells: int) -> Asked:

@@ -3,7 +3,8 @@
 from __future__ import annotations
 
 import argparse
-from typing import NoReturn
+from collections.abc import Sequence
+from typing import Any, NoReturn
 
 from .._version import __version__
 from ..errors import did_you_mean
@@ -17,6 +18,24 @@ class _Layout(argparse.RawDescriptionHelpFormatter):
 
     def __init__(self, prog: str) -> None:
         super().__init__(prog, max_help_position=28)
+
+
+class _Once(argparse.Action):
+    """Store a value; a second one would silently replace the first, and is refused."""
+
+    def __call__(
+        self,
+        parser: argparse.ArgumentParser,
+        namespace: argparse.Namespace,
+        values: str | Sequence[Any] | None,
+        option_string: str | None = None,
+    ) -> None:
+        """Store the value."""
+        seen: dict[str, Any] = namespace.__dict__.setdefault("stored", {})
+        if option_string is not None and self.dest in seen:
+            raise UsageError(f"{option_string} is given twice, {seen[self.dest]} and {values}; keep one of them")
+        seen[self.dest] = values
+        setattr(namespace, self.dest, values)
 
 
 class Parser(argparse.ArgumentParser):
@@ -42,6 +61,7 @@ class Parser(argparse.ArgumentParser):
             allow_abbrev=False,
             add_help=False,
         )
+        self.register("action", None, _Once)
         self.add_argument("-h", "--help", action="help", help="this text")
         self.add_argument(
             "--version", action="version", version=f"tmsolve {__version__}", help="the version of tmsolve"

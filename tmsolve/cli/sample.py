@@ -9,45 +9,49 @@ from fractions import Fraction
 from typing import TYPE_CHECKING, Any
 
 from ..errors import DeclarationError, ParameterError
-from .files import check_output
 from .jsontext import json_text
 from .layout import heading
-from .model import Values, fill, given_values, load_model
+from .model import load_model
 from .options import add_common, add_model, add_out
 from .outcome import DONE, UsageError
 from .parser import Parser
-from .sample_files import write
+from .sample_files import tell_written, write
+from .sample_request import Request, add_cell_values, read_request
 from .sample_simulated import add_simulation, simulate
+from .together import refuse_without
 from .words import whole
 
 if TYPE_CHECKING:
-    from ..declare import Point
     from ..draw.configurations import Sample
     from ..models import LoadedModel
 
-OPERANDS = "MODEL --cells N"
+OPERANDS = "MODEL (--cells N | --realisation FILE.csv)"
 DESCRIPTION = """\
 Independent configurations drawn exactly from the Boltzmann distribution: of a ring of N cells, of an open
-chain, or of N neighbouring cells of the infinite chain; also with some sites held fixed. No equilibration
-is needed. With --metropolis, a simulation by single sites instead, laid beside the exact results."""
+chain, or of N neighbouring cells of the infinite chain; also with some sites held fixed, or with parameters
+that differ from cell to cell. No equilibration is needed. With --metropolis, a simulation by single sites
+instead, laid beside the exact results."""
 EXAMPLES = """\
   tmsolve sample ising --cells 60 --count 5 -p J=1 -p T=0.6 --seed 1
   tmsolve sample potts --option q=3 --cells 1000 --count 10000 --infinite --out words.npz
   tmsolve sample ising --cells 40 --open --given 0=1 --given 39=-1 --count 3 --json
   tmsolve sample ising --cells 64 --metropolis 2000 --start cold -p T=0.4 --seed 1
+  tmsolve sample random_field_ising --realisation fields.csv --open --count 1000 --out states.csv
+  tmsolve sample ising --cells 200 --random "h=normal(1,0.5)" --seed 7 --write-realisation fields.csv
 """
-#: Configurations that are printed, and characters of each.
+#: Configurations that are printed, and letters of each.
 _SHOWN, _WIDE = 20, 100
+#: States that are printed as one letter.
+_SIGNS = {"-1": "-", "0": "0", "1": "+"}
 
 
 def configure(parser: Parser) -> None:
     """Declare the options."""
     add_model(parser, "value of a parameter, or of the temperature T, read exactly: 0.4, 2/5, 1e-3; repeatable")
-    parser.add_argument("--cells", metavar="N", help="number of cells; needed")
+    parser.add_argument("--cells", metavar="N", help="number of cells; needed, unless --realisation is given")
     parser.add_argument("--count", metavar="K", help="number of configurations. Default: 1")
-    ends = parser.add_mutually_exclusive_group()
-    ends.add_argument("--open", action="store_true", help="a chain with two free ends instead of a ring")
-    ends.add_argument("--infinite", action="store_true", help="N neighbouring cells of the infinite chain")
+    parser.add_argument("--open", action="store_true", help="a chain with two free ends instead of a ring")
+    parser.add_argument("--infinite", action="store_true", help="N neighbouring cells of the infinite chain")
     parser.add_argument(
         "--given",
         metavar="CELL=STATE",
@@ -56,6 +60,7 @@ def configure(parser: Parser) -> None:
         help="hold a site fixed, by value or label; CELL:KIND=STATE in a cell of several sites; repeatable",
     )
     parser.add_argument("--seed", metavar="S", help="whole number >= 0 that makes the result repeatable")
+    add_cell_values(parser)
     add_simulation(parser)
     add_out(parser, "write all configurations to this file, .csv (one row per configuration) or .npz (NumPy arrays)")
     add_common(parser)
@@ -63,43 +68,42 @@ def configure(parser: Parser) -> None:
 
 def run(arguments: argparse.Namespace) -> int:
     """Draw, write and print."""
-    out = check_output(arguments.out, "--out", (".csv", ".npz"))
     model = load_model(arguments)
-    if arguments.cells is None:
-        raise UsageError("sample needs the number of cells, such as --cells 100")
-    cells = whole(arguments.cells, "--cells", 1)
-    seed = None if arguments.seed is None else whole(arguments.seed, "--seed", 0)
-    values = fill(given_values(arguments, model), model)
-    point = model.chain.at(**values.numbers)
+    request = read_request(arguments, model)
     if arguments.metropolis is not None:
-        return simulate(arguments, model, values, point, cells, seed, out)
-    for option in ("start", "rule", "replicas"):
-        if getattr(arguments, option) is not None:
-            raise UsageError(f"--{option} belongs to a simulation; add --metropolis SWEEPS, or leave it out")
-    drawn = _drawn(arguments, model, point, cells, seed)
+        return simulate(request)
+    refuse_without(arguments, "--metropolis SWEEPS", ("start", "rule", "replicas"))
+    drawn, out = _drawn(request), request.out
     if out is not None:
         write(out, dict(drawn.by_kind), {kind: drawn.labels(kind) for kind in drawn.kinds})
     averages = {name: drawn.mean(name) for name in model.chain.observables}
     if arguments.json:
-        print(json_text(_document(model, values, drawn, averages, seed, listed=out is None)))
+        print(json_text(_document(request, drawn, averages)))
     else:
-        lines = [heading(model, values), f"  {drawn}", "", *_words(drawn), ""]
+        lines = [heading(model, request.values), *request.lines, f"  {drawn}", "", *_words(drawn), ""]
         lines += [f"{name} per cell: {average}" for name, average in averages.items() if drawn.count > 1]
         print("\n".join(lines).rstrip())
     sys.stdout.flush()
-    if out is not None and not arguments.quiet:
-        print(f"tmsolve sample: wrote {out}", file=sys.stderr)
+    tell_written(arguments)
     return DONE
 
 
-def _drawn(arguments: argparse.Namespace, model: LoadedModel, point: Point, cells: int, seed: int | None) -> Sample:
+def _drawn(request: Request) -> Sample:
     from ..draw.sampling import sample
 
+    arguments = request.arguments
     count = 1 if arguments.count is None else whole(arguments.count, "--count", 1)
-    boundary = "open" if arguments.open else "infinite" if arguments.infinite else "ring"
-    given = _given(arguments.given, model)
+    given = _given(arguments.given, request.model)
     try:
-        return sample(point, cells, count, boundary, rng=seed, given=given)
+        return sample(
+            request.point,
+            request.cells,
+            count,
+            request.boundary,
+            rng=request.seed,
+            given=given,
+            realisation=request.listed or None,
+        )
     except (DeclarationError, ParameterError) as error:
         raise UsageError(str(error)) from error
 
@@ -134,36 +138,30 @@ def _state(written: str, kind: str, model: LoadedModel) -> Any:
 
 
 def _words(drawn: Sample) -> Iterator[str]:
-    """Yield the first configurations, a line per kind of site, labels joined without space where they are short."""
+    """Yield the first configurations, a line per kind of site, cell under cell; single letters without space."""
     for number in range(min(drawn.count, _SHOWN)):
         for kind in drawn.kinds:
             labels = drawn.point.chain.cell[kind].labels
-            signs = dict(zip(labels, "-+", strict=False)) if set(labels) == {"-1", "1"} else {}
-            row = [signs.get(label, label) for label in drawn.labels(kind)[number, :_WIDE].tolist()]
-            joint = "" if all(len(label) == 1 for label in row) else " "
-            more = " …" if drawn.cells > _WIDE else ""
-            yield (f"{kind}: " if len(drawn.kinds) > 1 else "") + joint.join(row) + more
+            signs = _SIGNS if set(labels) <= set(_SIGNS) else {}
+            width = max(len(signs.get(label, label)) for label in labels)
+            fit = _WIDE if width == 1 else max(1, _WIDE // (width + 1))
+            row = [signs.get(label, label).rjust(width) for label in drawn.labels(kind)[number, :fit].tolist()]
+            more = " …" if drawn.cells > fit else ""
+            yield (f"{kind}: " if len(drawn.kinds) > 1 else "") + ("" if width == 1 else " ").join(row) + more
     if drawn.count > _SHOWN:
         yield f"… {drawn.count - _SHOWN} more; write all of them with --out"
 
 
-def _document(
-    model: LoadedModel, values: Values, drawn: Sample, averages: dict[str, Any], seed: int | None, listed: bool
-) -> dict[str, Any]:
+def _document(request: Request, drawn: Sample, averages: dict[str, Any]) -> dict[str, Any]:
     from .._version import __version__
 
+    cell = request.model.chain.cell
+    listed = request.out is None
     return {
-        "command": "sample",
-        "model": model.name,
-        "title": model.chain.name,
-        "options": dict(model.options),
-        **values.document(),
-        "cells": drawn.cells,
+        **request.document(),
         "count": drawn.count,
-        "boundary": drawn.boundary,
-        "given": {f"{cell}:{kind}": model.chain.cell[kind].labels[s] for (kind, cell), s in drawn.given.items()},
-        "seed": seed,
-        "labels": {kind: list(states.labels) for kind, states in model.chain.cell.items()},
+        "given": {f"{number}:{kind}": cell[kind].labels[state] for (kind, number), state in drawn.given.items()},
+        "labels": {kind: list(states.labels) for kind, states in cell.items()},
         "states": {kind: drawn.by_kind[kind].tolist() for kind in drawn.kinds} if listed else None,
         "means": {name: {"value": float(a.value), "error": float(a.error)} for name, a in averages.items()},
         "tmsolve": __version__,

@@ -2,12 +2,14 @@
 
 from __future__ import annotations
 
+import argparse
+import sys
 from pathlib import Path
 from typing import Any
 
 from .grids import write_rows
 
-__all__ = ["write"]
+__all__ = ["tell_written", "write"]
 
 
 def write(path: Path, states: dict[str, Any], labels: dict[str, Any]) -> None:
@@ -23,3 +25,10 @@ def write(path: Path, states: dict[str, Any], labels: dict[str, Any]) -> None:
     rows = np.stack(list(labels.values()), axis=-1).reshape(len(next(iter(labels.values()))), -1)
     with path.open("w", encoding="utf-8", newline="") as stream:
         write_rows([columns, *rows.tolist()], stream)
+
+
+def tell_written(arguments: argparse.Namespace) -> None:
+    """Say which files were written."""
+    for path in (arguments.write_realisation, arguments.out):
+        if path is not None and not arguments.quiet:
+            print(f"tmsolve sample: wrote {path}", file=sys.stderr)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import argparse
 import sys
 from pathlib import Path
 from typing import TYPE_CHECKING, Any
@@ -10,19 +9,25 @@ from typing import TYPE_CHECKING, Any
 from ..errors import DeclarationError, ParameterError
 from .jsontext import json_text
 from .layout import heading
-from .model import Values
 from .outcome import DONE, UsageError
 from .parser import Parser
-from .sample_files import write
+from .sample_files import tell_written, write
+from .sample_request import Request
+from .together import refuse_beside
 from .words import whole
 
 if TYPE_CHECKING:
-    from ..declare import Point
     from ..draw.diagnosis import Diagnosis
     from ..draw.simulation import Simulation
-    from ..models import LoadedModel
 
 __all__ = ["add_simulation", "simulate"]
+
+#: Options of exact samples, and why a simulation has no use for them.
+_IDLE = {
+    "infinite": "a simulation is of a ring or an open chain",
+    "given": "a simulation holds no site fixed, exact samples do",
+    "count": "a simulation has --replicas R instead",
+}
 
 
 def add_simulation(parser: Parser) -> None:
@@ -42,54 +47,39 @@ def add_simulation(parser: Parser) -> None:
     )
 
 
-def simulate(
-    arguments: argparse.Namespace,
-    model: LoadedModel,
-    values: Values,
-    point: Point,
-    cells: int,
-    seed: int | None,
-    out: Path | None,
-) -> int:
+def simulate(request: Request) -> int:
     """Run, print, and write the last configurations."""
     from ..draw.simulating import metropolis
 
-    _refuse(arguments)
+    arguments = request.arguments
+    refuse_beside(arguments, "--metropolis", _IDLE)
     sweeps = whole(arguments.metropolis, "--metropolis", 2)
     replicas = 16 if arguments.replicas is None else whole(arguments.replicas, "--replicas", 1)
     try:
         run = metropolis(
-            point,
-            cells,
+            request.point,
+            request.cells,
             sweeps,
             replicas,
             start=arguments.start or "hot",
             rule=arguments.rule or "metropolis",
-            boundary="open" if arguments.open else "ring",
-            rng=seed,
+            boundary=request.boundary,
+            rng=request.seed,
+            realisation=request.listed or None,
         )
     except (DeclarationError, ParameterError) as error:
         raise UsageError(str(error)) from error
-    found = {name: run.diagnose(name) for name in model.chain.observables}
-    if out is not None:
-        _write(out, run)
+    found = {name: run.diagnose(name) for name in request.model.chain.observables}
+    if request.out is not None:
+        _write(request.out, run)
     if arguments.json:
-        print(json_text(_document(model, values, run, found, seed)))
+        print(json_text(_document(request, run, found)))
     else:
-        print("\n\n".join([f"{heading(model, values)}\n\n{run}", *map(str, found.values())]))
+        head = "\n".join([heading(request.model, request.values), *request.lines])
+        print("\n\n".join([f"{head}\n\n{run}", *map(str, found.values())]))
     sys.stdout.flush()
-    if out is not None and not arguments.quiet:
-        print(f"tmsolve sample: wrote {out}", file=sys.stderr)
+    tell_written(arguments)
     return DONE
-
-
-def _refuse(arguments: argparse.Namespace) -> None:
-    if arguments.infinite:
-        raise UsageError("--metropolis simulates a ring or an open chain; leave --infinite out")
-    if arguments.given:
-        raise UsageError("--metropolis does not hold sites fixed; leave --given out, or draw exact samples")
-    if arguments.count is not None:
-        raise UsageError("--count belongs to exact samples; with --metropolis take --replicas R")
 
 
 def _write(path: Path, run: Simulation) -> None:
@@ -99,20 +89,11 @@ def _write(path: Path, run: Simulation) -> None:
     write(path, dict(run.final), labels)
 
 
-def _document(
-    model: LoadedModel, values: Values, run: Simulation, found: dict[str, Diagnosis], seed: int | None
-) -> dict[str, Any]:
+def _document(request: Request, run: Simulation, found: dict[str, Diagnosis]) -> dict[str, Any]:
     from .._version import __version__
 
     return {
-        "command": "sample",
-        "model": model.name,
-        "title": model.chain.name,
-        "options": dict(model.options),
-        **values.document(),
-        "cells": run.cells,
-        "boundary": run.boundary,
-        "seed": seed,
+        **request.document(),
         "sweeps": run.sweeps,
         "discarded": run.discard,
         "replicas": run.replicas,
