@@ -62,6 +62,27 @@ class ChainWindow(Window):
         """The sites that this window adds to the left: one of each kind."""
         return tuple((kind, threshold) for kind, threshold in self.cut.thresholds.items())
 
+    @property
+    def own_cells(self) -> frozenset[int]:
+        """Cells of all its sites, counted from where it stands."""
+        return frozenset(cell for _, cell in (*self.left, *self.right, *self.interior))
+
+    def positions(self, cells: int, closed: bool) -> range:
+        """Return where copies of the window stand in a ring or an open chain of N cells.
+
+        The copy at position w adds the sites (k, l_k + w), l_k the threshold of kind k. In an
+        open chain some of the first and last copies add sites that lie beyond its ends.
+        """
+        if closed:
+            return range(cells)
+        thresholds = self.cut.thresholds.values()
+        return range(-max(thresholds), cells - min(thresholds))
+
+    def whole(self, cells: int) -> range:
+        """Return those positions in an open chain of N cells at which no site lies beyond an end."""
+        first = min(-min(self.own_cells), self.positions(cells, closed=False).stop)
+        return range(first, max(first, cells - max(self.own_cells)))
+
 
 def build_window(chain: Chain, observables: Iterable[str] = ()) -> ChainWindow:
     """Return the window of a chain over its smallest cut.

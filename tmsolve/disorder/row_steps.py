@@ -72,10 +72,7 @@ class RowSteps:
     @property
     def positions(self) -> range:
         """Positions of all steps."""
-        if self.closed:
-            return range(self.cells)
-        thresholds = self.window.cut.thresholds.values()
-        return range(-max(thresholds), self.cells - min(thresholds))
+        return self.window.positions(self.cells, self.closed)
 
     @property
     def layout(self) -> Layout:

@@ -98,29 +98,25 @@ class Windows:
 
     @property
     def positions(self) -> range:
-        """Positions of all windows: the window at w adds the sites (k, l_k + w)."""
-        if self.closed:
-            return range(self.cells)
-        thresholds = self.window.cut.thresholds.values()
-        return range(-max(thresholds), self.cells - min(thresholds))
+        """Positions of all windows."""
+        return self.window.positions(self.cells, self.closed)
 
     @cached_property
     def special(self) -> frozenset[int]:
         """Positions at which the window is not that of the infinite chain: at the ends and at impurities."""
-        inside = {cell for _, cell in (*self.window.left, *self.window.right, *self.window.interior)}
-        near = {impurity - cell for impurity in self.impurities for cell in inside}
+        near = {impurity - cell for impurity in self.impurities for cell in self.window.own_cells}
         if self.closed:
             return frozenset(position % self.cells for position in near)
-        bulk = self._between_ends(inside)
+        bulk = self._between_ends()
         outside = (*range(self.positions.start, bulk.start), *range(bulk.stop, self.positions.stop))
         return frozenset((*outside, *(p for p in near if p in bulk)))
 
-    def _between_ends(self, inside: set[int]) -> range:
-        thresholds = self.window.cut.thresholds.values()
-        first = max(-min(inside), 1 - min(thresholds) if self.left else -min(inside))
-        last = self.cells - 1 - max(inside) - (1 if self.right else 0)
-        first = min(first, self.positions.stop)
-        return range(first, max(first, last + 1))
+    def _between_ends(self) -> range:
+        """Return the positions that neither the ends nor their weights touch."""
+        whole = self.window.whole(self.cells)
+        weighted = 1 - min(self.window.cut.thresholds.values()) if self.left else whole.start
+        first = min(max(whole.start, weighted), self.positions.stop)
+        return range(first, max(first, self.cells - max(self.window.own_cells) - bool(self.right)))
 
     def at(self, position: int) -> ChainWindow:
         """Return the window at a position, without the sites and terms beyond the ends."""

@@ -57,14 +57,11 @@ def runs(window: ChainWindow, cells: int, ring: bool) -> list[tuple[ChainWindow,
     """
     if ring:
         return [(window, cells)]
-    thresholds = window.cut.thresholds.values()
-    inside = {cell for _, cell in (*window.left, *window.right, *window.interior)}
-    start, stop = -max(thresholds), cells - min(thresholds)
-    first = min(-min(inside), stop)
-    last = max(first, cells - max(inside))
-    ends = [(_trimmed(window, position, cells), 1) for position in (*range(start, first), *range(last, stop))]
-    before = first - start
-    bulk = [(window, last - first)] if last > first else []
+    every, whole = window.positions(cells, ring), window.whole(cells)
+    outside = (*range(every.start, whole.start), *range(whole.stop, every.stop))
+    ends = [(_trimmed(window, position, cells), 1) for position in outside]
+    before = whole.start - every.start
+    bulk = [(window, len(whole))] if whole else []
     return [*ends[:before], *bulk, *ends[before:]]
 
 
