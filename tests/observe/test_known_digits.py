@@ -97,3 +97,12 @@ def test_the_limit_of_zero_temperature_has_no_noise():
         text = number_text(value, 10, float(known_error(solution, quantity)))
         assert text == {"mean(m)": "0", "free_energy": "-0.1", "mean(q)": "1"}.get(quantity, "inf")
     assert np.isfinite(known_error(solution, "mean(m)"))
+
+
+@pytest.mark.parametrize("K", [1, 3, 20])
+def test_entropies_of_continuous_states_may_be_negative_their_errors_not(K):
+    """ln λ₁ = ln 2π I₀(K) and u = −J I₁/I₀ of the XY chain; G. S. Joyce, Phys. Rev. 155, 478 (1967), from memory."""
+    solution = solve(models.load("xy").chain.at(T=f"1/{K}", J=1, h=0))
+    error = float(solution.error_bound("entropy"))
+    exact = mpmath.log(2 * mpmath.pi * mpmath.besseli(0, K)) - K * mpmath.besseli(1, K) / mpmath.besseli(0, K)
+    assert abs(float(exact) - solution.entropy) <= error < 1e-10

@@ -7,10 +7,12 @@ value: a mean that vanishes by symmetry has no correct digit.
 
 from __future__ import annotations
 
+import math
 import sys
 
 import numpy as np
 
+from ..declare.chain import Chain
 from .evaluate import Laws
 from .segment import Segment
 from .series import DISORDER, LEAST_ENERGY, ROOT, Series
@@ -27,7 +29,7 @@ def rounding_bounds(laws: Laws, series: Series) -> np.ndarray:
     """Return a-priori bounds on the error of a sum of cumulants, shape (size,)."""
     terms = series.gauged()
     names = {name for _, blocks in terms for name in _observables(blocks)}
-    result = np.zeros(laws.size)
+    result, measure = np.zeros(laws.size), _measure(laws.window.chain)
     for segment in laws.segments(sorted(names)):
         vector = segment.double(segment.law.bound) + segment.input_error()
         unit = _ROUNDING * (0.5**53 if laws.digits is None else 0.5 ** min(segment.bits, 1000))
@@ -35,7 +37,7 @@ def rounding_bounds(laws: Laws, series: Series) -> np.ndarray:
             if segment.limit and power:  # nothing, or infinite
                 continue
             factor = abs(float(c)) * segment.double(segment.beta) ** power
-            result[segment.indices] += factor * _error(segment, blocks, unit, vector)
+            result[segment.indices] += factor * _error(segment, blocks, unit, vector, measure)
     # What underflows is rounded to nothing.
     lost = sys.float_info.min if laws.digits is None else 0.0
     return np.where(np.isnan(result), np.inf, result + lost)
@@ -46,7 +48,9 @@ def _observables(blocks: tuple[str, ...]) -> list[str]:
     return [name for kind, name, *_ in parts if kind == "observable"]
 
 
-def _error(segment: Segment, blocks: tuple[str, ...], unit: float, vector: np.ndarray) -> np.ndarray:
+def _error(
+    segment: Segment, blocks: tuple[str, ...], unit: float, vector: np.ndarray, measure: float
+) -> np.ndarray:
     """Bound the error of a cumulant, given units of rounding and the relative error of the vector."""
     law, double = segment.law, segment.double
     share = unit + 8 * vector
@@ -57,7 +61,7 @@ def _error(segment: Segment, blocks: tuple[str, ...], unit: float, vector: np.nd
         # A root depends on its vector to second order only.
         return np.abs(double(segment.log_root)) * (unit + vector)
     if blocks == (DISORDER,):
-        return double(segment.entropy()) * share
+        return (np.abs(double(segment.entropy())) + measure) * share
     if len(blocks) == 1:
         return _size(segment, blocks[0]) * share
     value = np.abs(double(law.cumulant(blocks)))
@@ -67,6 +71,12 @@ def _error(segment: Segment, blocks: tuple[str, ...], unit: float, vector: np.nd
     first, second = (np.sqrt(np.abs(double(law.cumulant((name, name))))) for name in blocks)
     off, other = (_deviation_error(segment, name, unit) for name in blocks)
     return np.asarray(np.maximum(value, first * second) * share + first * other + second * off + off * other)
+
+
+def _measure(chain: Chain) -> float:
+    """Return the size of the logarithms of the measure of continuous states, which entropies contain and may cancel."""
+    grids = [states for states in chain.cell.values() if states.grid]
+    return sum(max(abs(math.log(weight)) for weight in states.weights if weight) for states in grids)
 
 
 def _size(segment: Segment, name: str) -> np.ndarray:
