@@ -3,6 +3,7 @@
 import pytest
 
 from tmsolve import models
+from tmsolve.cli.phrases import for_command_line
 from tmsolve.disorder.ground_energy import disordered_ground_state
 from tmsolve.disorder.quenched import quenched
 from tmsolve.disorder.stationary import stationary_message
@@ -18,6 +19,7 @@ def test_the_command_prints_the_averages_of_the_library(tm):
     assert ended.code == 0 and ended.err == ""
     averages = (expected.free_energy, expected.mean("m"), expected.susceptibility("m"), expected.correlation_length())
     assert all(str(average) in ended.out for average in averages)
+    assert "free_energy" in ended.out and "1/energy" in ended.out
     for line in ("h ~ normal(0,1)", "4 replicas of 20 cells, seed 3", "T = 0.8", "J = 1  (default)"):
         assert line in ended.out
 
@@ -28,6 +30,12 @@ def test_json_holds_values_and_errors(tm):
     document = tm(*FIELD, *FEW, "--json", "--read", read).json
     assert list(document["results"]) == names
     assert document["results"]["free_energy"]["error"] > 0
+    assert document["units"] == {
+        "free_energy": "energy",
+        "derivative(J)": "",
+        "derivative(J,H)": "",
+        "lyapunov(2)": "1",
+    }
     assert document["random"] == {"h": "normal(0,1)"} and document["seed"] == 3 and document["method"] == "sample"
     again = tm(*FIELD, *FEW, "--json", "--read", read).json
     assert again == document
@@ -73,7 +81,12 @@ def test_zero_temperature(tm):
         ((*FIELD, "--read", "entropi"), ["Did you mean 'entropy'?"]),
         ((*FIELD, "--read", "mean"), ["mean takes 1 names"]),
         ((*FIELD, "--read", "lyapunov(x)"), ["whole number k"]),
-        ((*FIELD, "-p", "T=0", "--read", "entropy"), ["leave --read"]),
+        ((*FIELD, "--method", "exakt"), ["Did you mean 'exact'?"]),
+        ((*FIELD, "-p", "T=0", "--read", "entropy"), ["leave --read out"]),
+        ((*FIELD, "--seed", "1.5"), ["--seed must be a whole number >= 0, got '1.5'"]),
+        ((*FIELD, "--seed", "one"), ["--seed must be a whole number >= 0, got 'one'"]),
+        ((*FIELD, "--cells", ""), ["--cells must be a whole number >= 1, got ''"]),
+        (("disorder", "ising", "--random", "T=normal(1,0.1)"), ["one temperature holds for the whole chain"]),
     ],
 )
 def test_what_is_refused(tm, words, fragments):
@@ -81,3 +94,18 @@ def test_what_is_refused(tm, words, fragments):
     assert ended.code == 2
     for fragment in fragments:
         assert fragment in ended.err
+
+
+def test_a_mean_below_rounding_is_zero(tm):
+    words = ("disorder", "diluted_blume_capel", "--random", "c=choice(0:0.1,1:0.9)", *FEW, "--read", "mean(m),mean(q)")
+    document = tm(*words, "--json").json
+    assert 0 < abs(document["results"]["mean(m)"]["value"]) < 1e-15
+    (row,) = [line.split() for line in tm(*words).out.splitlines() if line.startswith("mean(m)")]
+    assert row == ["mean(m)", "0", "1"]
+
+
+def test_advice_is_in_the_words_of_the_command_line(tm):
+    moved = "the equation moved by 1e-05, not by less than 1e-11; give a larger tolerance, or use quenched(…)"
+    assert for_command_line(moved) == "the equation moved by 1e-05, not by less than 1e-11; take --method sample"
+    ended = tm("disorder", "blume_capel", "--random", "h=normal(0,1)", "--method", "exact")
+    assert ended.code == 1 and "has 3 states" in ended.err and "take --method sample" in ended.err

@@ -32,6 +32,8 @@ _IDLE = {
     "replicas": "one given chain has no replicas",
     "seed": "nothing is drawn",
     "method": "the given chain is always summed exactly",
+    "axis": "a ramp is an average over many chains",
+    "plot": "it draws averages along --axis; tmsolve finite --realisation draws profiles",
     "read": "all quantities are printed; tmsolve finite --realisation reads correlations and more",
 }
 
@@ -42,7 +44,11 @@ def add_realised(parser: Parser) -> None:
     parser.add_argument(
         "--boundary", metavar="NAME", help="open or ring, the ends of the chain of --realisation. Default: open"
     )
-    add_out(parser, "write the means in every cell of --realisation to this file, .csv")
+    add_out(
+        parser,
+        "with --realisation, write the means in every cell to this file, .csv; with --axis, the averages with their "
+        "errors: .csv (with a .meta.json beside it), .npz or .nc (NetCDF)",
+    )
 
 
 def solve_realised(arguments: argparse.Namespace, model: LoadedModel) -> int:

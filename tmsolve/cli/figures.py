@@ -16,7 +16,7 @@ if TYPE_CHECKING:
     from ..survey.event import Event
     from ..survey.grid import Grid
 
-__all__ = ["check_drawable", "draw_events", "draw_grid", "tried"]
+__all__ = ["check_drawable", "draw_averages", "draw_events", "draw_grid", "tried"]
 
 #: More lines than this in one panel become a map.
 FEW = 7
@@ -77,6 +77,28 @@ def _diverges(reading: str, values: Any) -> bool:
 
     grows = reading.startswith(("correlation_length", "susceptibility", "temperature_susceptibility"))
     return bool(grows and values.size and values.min() > 0 and values.max() > _DECADES * np.median(values))
+
+
+def draw_averages(grid: Grid, path: Path) -> None:
+    """Draw every reading along the one axis of a grid, with the error bars that stand beside it."""
+    import numpy as np
+
+    from ..plotting.lines import plot_lines
+    from ..plotting.style import COLOURS
+
+    names = [name for name in grid.readings if f"error({name})" in grid.readings]
+
+    def panel(name: str, ax: Any) -> None:
+        plot_lines(grid, name, ax=ax)
+        x, y, errors = grid[grid.dims[0]], grid[name], grid[f"error({name})"]
+        ax.errorbar(x, y, errors, fmt="o", ms=3, color=COLOURS[0], capsize=2, lw=1)
+        ax.autoscale()
+        ax.margins(x=0.03)
+        low = np.nanmin(y - errors, initial=np.inf)
+        if 0 <= low < 0.1 * np.nanmax(y + errors, initial=0):
+            ax.set_ylim(bottom=0)
+
+    _draw(path, names, panel)
 
 
 def draw_events(

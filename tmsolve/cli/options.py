@@ -5,6 +5,7 @@ from __future__ import annotations
 import argparse
 
 from .parser import Parser
+from .together import refuse_beside
 from .words import whole
 
 __all__ = [
@@ -98,5 +99,13 @@ def add_common(parser: Parser) -> None:
 
 
 def digits_of(arguments: argparse.Namespace, default: int = DIGITS, highest: int = 17) -> int:
-    """Return how many significant digits are printed."""
+    """Return how many significant digits are printed.
+
+    Raises
+    ------
+    UsageError
+        No such number, or digits of tables beside --json, which has none.
+    """
+    if arguments.json and highest <= 17:
+        refuse_beside(arguments, "--json", {"digits": "JSON holds numbers in full"})
     return default if arguments.digits is None else whole(arguments.digits, "--digits", 1, highest)

@@ -18,7 +18,9 @@ _PHRASES: tuple[tuple[str, str | Callable[[re.Match[str]], str]], ...] = (
     (r"(?<!\w)\.characteristic_polynomial\b", "--quantity polynomial"),
     (r"Use Dense\(max_size=\d+\), or shorten", "Shorten"),
     (r"box=\{'(\w+)': \(low, high\)\}", r"--axes \1=LOW:HIGH"),
-    (r"ground_state\(…\)", "tmsolve ground"),
+    (r"ground_state\((?:…|chain)\)", "tmsolve ground"),
+    (r"give a larger tolerance, or use quenched\(…\)", "take --method sample"),
+    (r"use quenched\(…\)", "take --method sample"),
     (r"\b(given|rule|start)=(?= |$)", r"--\1"),
     (r"see the attribute of the form", "--quantity prints it"),
 )

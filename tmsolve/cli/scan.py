@@ -17,6 +17,7 @@ from .model import check_names, fill, given_values, load_model, readings_of
 from .options import add_axis, add_common, add_digits, add_model, add_out, add_plot, add_read, digits_of
 from .outcome import DONE, INTERRUPTED, SOME_FAILED, UsageError
 from .parser import Parser
+from .together import refuse_beside
 from .words import split_names
 
 if TYPE_CHECKING:
@@ -56,6 +57,8 @@ def configure(parser: Parser) -> None:
 def run(arguments: argparse.Namespace) -> int:
     """Scan, write and draw."""
     digits = None if arguments.digits is None else digits_of(arguments)
+    if arguments.out is not None:
+        refuse_beside(arguments, "--out", {"digits": "files hold numbers in full"})
     out = check_output(arguments.out, "--out", (".csv", ".npz", ".nc"))
     figure = figure_path(arguments.plot)
     model = load_model(arguments)
