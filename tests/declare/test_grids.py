@@ -2,6 +2,7 @@
 
 import itertools
 import math
+import pickle
 import subprocess
 import sys
 from fractions import Fraction
@@ -174,3 +175,39 @@ def test_solving_on_nodes_loads_numpy_only():
     )
     done = subprocess.run([sys.executable, "-c", program], capture_output=True, text=True, check=True)
     assert done.stdout.strip() == "set()"
+
+
+@pytest.mark.parametrize(
+    ("states", "coarser"),
+    [
+        (interval(0, 1, 9), interval(0, 1, 4)),
+        (interval(0, 1, 9, "trapezoid"), interval(0, 1, 4, "trapezoid")),
+        (line(20, 0.5), line(10, 0.5)),
+        (circle(64), circle(32)),
+        (sphere(9), sphere(4)),
+        (sphere(6, components=4), sphere(3, components=4)),
+        (interval(0, 1, 3), None), (line(3), None), (circle(5), None), (sphere(1), None),
+    ],
+)  # fmt: skip
+def test_a_rule_knows_the_one_of_half_as_many_nodes(states, coarser):
+    again = pickle.loads(pickle.dumps(states))
+    assert again == states
+    for one in (states, again):
+        assert (one.grid.coarser and one.grid.coarser()) == coarser
+
+
+def test_values_between_the_nodes():
+    assert interval(-1, 1, 4).grid.state(Fraction(1, 3)) == 1 / 3
+    assert circle(4).grid.state("7.5") == 7.5 and line(4).grid.state(-1e9) == -1e9
+    assert sphere(4).grid.state([0, "0.6", 0.8]) == (0.0, 0.6, 0.8)
+    for states, value in (
+        (interval(-1, 1, 4), 1.001), (line(4), math.inf), (circle(4), True), (line(4), "left"),
+        (sphere(4), (0, 0, 2)), (sphere(4), (0, 1)), (sphere(4), 1.0), (sphere(4, components=4), (0, 0, 1)),
+    ):  # fmt: skip
+        refused(DeclarationError, lambda: states.grid.state(value), repr(value), f"not a value of {states.grid}")  # noqa: B023
+
+
+def test_the_nodes_next_to_a_value_are_named():
+    refused(DeclarationError, lambda: interval(0, 1, 64).index(0.3), "0.3 is not", "next to it 0.2988", "0.3213")
+    refused(DeclarationError, lambda: sphere(9).index((0, 0, 1)), "the 50 nodes of sphere(9")
+    refused(DeclarationError, lambda: circle(3).index("left"), "0, 1/3 turn, 2/3 turn")

@@ -8,6 +8,7 @@ of the number of nodes.
 from __future__ import annotations
 
 import math
+from functools import partial
 from itertools import pairwise
 from numbers import Real
 from typing import Any
@@ -15,6 +16,7 @@ from typing import Any
 from ..errors import DeclarationError
 from .inexact import NodeWeight
 from .nodes import hermite_rule, legendre_rule
+from .rule import Rule, vectors_of, within
 from .spheres import hopf_rule, lebedev, product_rule
 from .states import StateSet, on_grid, whole_count
 
@@ -25,6 +27,7 @@ _MOST = 4096
 #: Hermite functions of higher order underflow at the outer nodes.
 _MOST_ON_LINE = 700
 _RULES = ("gauss", "trapezoid")
+_ANYWHERE = within(-math.inf, math.inf)
 
 
 def interval(a: float, b: float, nodes: int, rule: str = "gauss") -> StateSet:
@@ -65,7 +68,9 @@ def interval(a: float, b: float, nodes: int, rule: str = "gauss") -> StateSet:
         raise DeclarationError(f"rule= of interval takes {' or '.join(map(repr, _RULES))}, got {rule!r}")
     half, middle = (high - low) / 2, (high + low) / 2
     values, weights = [middle + half * x for x in where], [half * w for w in weights]
-    return _numbers(f"interval({low:g}, {high:g}, {count}, {rule!r})", values, weights)
+    coarser = partial(interval, low, high, count // 2, rule) if count >= 4 else None
+    name = Rule(f"interval({low:g}, {high:g}, {count}, {rule!r})", within(low, high), coarser)
+    return _numbers(name, values, weights)
 
 
 def line(nodes: int, scale: float = 1.0) -> StateSet:
@@ -103,7 +108,8 @@ def line(nodes: int, scale: float = 1.0) -> StateSet:
     if length <= 0:
         raise DeclarationError(f"line(nodes, scale) takes a positive scale, got {length:g}")
     where, weights = hermite_rule(count)
-    return _numbers(f"line({count}, {length:g})", [length * x for x in where], [length * w for w in weights])
+    name = Rule(f"line({count}, {length:g})", _ANYWHERE, partial(line, count // 2, length) if count >= 4 else None)
+    return _numbers(name, [length * x for x in where], [length * w for w in weights])
 
 
 def circle(nodes: int) -> StateSet:
@@ -129,7 +135,8 @@ def circle(nodes: int) -> StateSet:
         common = math.gcd(k, count)
         labels.append(f"{k // common}/{count // common} turn" if k else "0")
     angles = [2 * math.pi * k / count for k in range(count)]
-    return on_grid(f"circle({count})", angles, [NodeWeight(2 * math.pi / count)] * count, labels)
+    name = Rule(f"circle({count})", _ANYWHERE, partial(circle, count // 2) if count >= 6 else None)
+    return on_grid(name, angles, [NodeWeight(2 * math.pi / count)] * count, labels)
 
 
 def sphere(degree: int, rule: str = "product", components: int = 3) -> StateSet:
@@ -179,10 +186,11 @@ def sphere(degree: int, rule: str = "product", components: int = 3) -> StateSet:
     if len(set(labels)) < len(labels):
         labels = [str(value) for value in values]
     name = f"sphere({least}, {rule!r})" if components == 3 else f"sphere({least}, components=4)"
-    return on_grid(name, values, [NodeWeight(w) for w in weights], labels)
+    coarser = partial(sphere, least // 2, rule, components) if least >= 2 else None
+    return on_grid(Rule(name, vectors_of(components), coarser), values, [NodeWeight(w) for w in weights], labels)
 
 
-def _numbers(grid: str, where: list[float], weights: list[float]) -> StateSet:
+def _numbers(grid: Rule, where: list[float], weights: list[float]) -> StateSet:
     values = [float(x) for x in where]
     for digits in (6, 10, 17):
         labels = [f"{x:.{digits}g}" for x in values]

@@ -10,6 +10,7 @@ from numbers import Integral, Rational, Real
 from typing import Any
 
 from ..errors import DeclarationError
+from .rule import Rule
 from .tokens import Colour
 
 __all__ = ["StateSet", "clock", "ising", "occupation", "on_grid", "spins", "whole_count"]
@@ -40,7 +41,7 @@ class StateSet:
     number : str or None
         Name of the number of colours where that is a symbol, see `colours`; the values are then
         the special colours and one that stands for all others.
-    grid : str or None
+    grid : Rule (a str) or None
         The quadrature rule whose nodes the states are, such as ``"circle(64)"``; ``None`` for
         states that are a list of their own. Values and weights of a grid are floats.
 
@@ -63,7 +64,7 @@ class StateSet:
     labels: tuple[str, ...]
     weights: tuple[Fraction | float, ...]
     values: tuple[State, ...]
-    grid: str | None
+    grid: Rule | None
 
     def __init__(
         self,
@@ -121,7 +122,8 @@ class StateSet:
         except (ValueError, DeclarationError):
             if isinstance(state, str) and state in self.labels:
                 return self.labels.index(state)
-        raise DeclarationError(f"{state!r} is not a state of this site; its states are {', '.join(self.labels)}")
+        those = ", ".join(self.labels) if self.grid is None else self.grid.beside(state, self.values, self.labels)
+        raise DeclarationError(f"{state!r} is not a state of this site; its states are {those}")
 
     def __repr__(self) -> str:
         if self.grid is not None:
@@ -138,7 +140,7 @@ class StateSet:
         return f"StateSet({', '.join(parts)})"
 
 
-def on_grid(grid: str, values: Sequence[State], weights: Sequence[float], labels: Sequence[str]) -> StateSet:
+def on_grid(grid: Rule, values: Sequence[State], weights: Sequence[float], labels: Sequence[str]) -> StateSet:
     """Return the nodes of a quadrature rule as states, weighted by the rule; all floats."""
     states = object.__new__(StateSet)
     parts = {"values": values, "weights": weights, "labels": labels}
