@@ -8,6 +8,7 @@ import numpy as np
 
 from ..declare import Point
 from ..errors import NotApplicable, ParameterError
+from .fixed_ends import fixed_at
 from .impurities import read_impurities
 from .results import FiniteChain
 from .steps import check_cells, end_weights
@@ -68,7 +69,9 @@ def open_chain(point: Point, N: int, left: Any = None, right: Any = None, *, imp
     left, right : optional
         What happens in the first and last cell: a fixed state, ``{state: weight}``, or a
         list of one weight per state; in a cell of several sites ``{kind: any of these}``.
-        Free when left out.
+        Free when left out. A continuous variable may be fixed to any of its values, a node or not:
+        Z is then a density, the integral over all other variables, and ``{value: weight}`` is a
+        sum of such densities; a list holds the values of a function at the nodes, and is integrated.
     impurities : mapping, optional
         Cells that differ, as for `ring`.
 
@@ -79,13 +82,25 @@ def open_chain(point: Point, N: int, left: Any = None, right: Any = None, *, imp
     >>> wall = open_chain(chain.at(T="1/400", J=1), 101, left=1, right=-1)
     >>> [round(float(m), 10) for m in wall.profile("m")[[0, 25, 50]]]
     [1.0, 0.5, 0.0]
+
+    Two springs from 0 to 1 have Z = ∫ exp(−x²/2 − (1 − x)²/2) dx = π^(1/2) exp(−1/4):
+
+    >>> from tmsolve import line
+    >>> springs = Chain(line(40), [bond(lambda x, y, k: k*(x - y)**2/2)])
+    >>> round(float(open_chain(springs.at(T=1, k=1), 3, left=0, right=1).log_Z), 12)
+    0.322364942925
     """
     _check_point(point, "open_chain")
     cells = check_cells(N, 1, "an open chain", 0)
-    planted = read_impurities(point, impurities, cells)
-    first = end_weights(planted.get(0, point).chain, left, "left")
-    last = end_weights(planted.get(cells - 1, point).chain, right, "right")
-    return FiniteChain(point, cells, False, first, last, planted)
+    planted = dict(read_impurities(point, impurities, cells))
+    ends = []
+    for cell, end, side in ((0, left, "left"), (cells - 1, right, "right")):
+        there = planted.get(cell, point)
+        fixed, rest = fixed_at(there, end, side)
+        if fixed is not there:
+            planted[cell] = fixed
+        ends.append(end_weights(fixed.chain, rest, side))
+    return FiniteChain(point, cells, False, ends[0], ends[1], planted)
 
 
 def _check_point(point: Any, verb: str) -> None:

@@ -17,7 +17,7 @@ from ..errors import DeclarationError, ParameterError, listing
 from ..operators.window import Factor
 from .impurities import Impurities, Planted
 
-__all__ = ["Ends", "Windows", "check_cells", "end_weights"]
+__all__ = ["Ends", "Windows", "by_kind", "check_cells", "end_weight", "end_weights"]
 
 #: Weights of the states of one site, by kind of site.
 Ends = Mapping[str, tuple[Any, ...]]
@@ -36,14 +36,19 @@ def end_weights(chain: Chain, end: Any, side: str) -> Ends:
     """
     if end is None:
         return {}
+    return {kind: _weights(chain, kind, given, side) for kind, given in by_kind(chain, end, side).items()}
+
+
+def by_kind(chain: Chain, end: Any, side: str) -> Mapping[str, Any]:
+    """Return what the user says about an end by kind of site."""
     if isinstance(end, Mapping) and end and all(isinstance(k, str) and k in chain.cell for k in end):
-        return {kind: _weights(chain, kind, given, side) for kind, given in end.items()}
+        return end
     if len(chain.cell) > 1:
         raise DeclarationError(
             f"the {side} end of a cell of several sites ({listing(chain.cell)}) is given by kind, "
             f"as in {side}={{{next(iter(chain.cell))!r}: state}}; got {end!r}"
         )
-    return {kind: _weights(chain, kind, end, side) for kind in chain.cell}
+    return dict.fromkeys(chain.cell, end)
 
 
 def _weights(chain: Chain, kind: str, given: Any, side: str) -> tuple[Any, ...]:
@@ -51,11 +56,11 @@ def _weights(chain: Chain, kind: str, given: Any, side: str) -> tuple[Any, ...]:
     if isinstance(given, Mapping):
         table = [Fraction(0)] * len(states)
         for state, weight in given.items():
-            table[states.index(state)] = _weight(weight, side)
+            table[states.index(state)] = end_weight(weight, side)
     elif isinstance(given, (list, np.ndarray)):
         if len(given) != len(states):
             raise DeclarationError(f"the {side} end has {len(given)} weights, but {kind!r} has {len(states)} states")
-        table = [_weight(weight, side) for weight in given]
+        table = [end_weight(weight, side) for weight in given]
     else:
         table = [Fraction(0)] * len(states)
         table[states.index(given)] = Fraction(1)
@@ -64,7 +69,8 @@ def _weights(chain: Chain, kind: str, given: Any, side: str) -> tuple[Any, ...]:
     return tuple(table)
 
 
-def _weight(weight: Any, side: str) -> Fraction:
+def end_weight(weight: Any, side: str) -> Fraction:
+    """Return the weight of a state at an end exactly, or refuse it."""
     if isinstance(weight, bool) or not isinstance(weight, (Real, np.number)) or not 0 <= float(weight) < float("inf"):
         raise DeclarationError(f"weights of the {side} end are finite numbers >= 0, got {weight!r}")
     return Fraction(repr(float(weight))) if not isinstance(weight, (int, Fraction)) else Fraction(weight)
