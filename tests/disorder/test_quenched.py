@@ -129,7 +129,7 @@ def test_normal_bonds_and_their_variance():
 
 
 def test_far_tails_of_normal_bonds_are_not_cut_off():
-    """<ln 2cosh J> over N(1, 0.7): integrated by mpmath with 30 digits. Nothing is left to average, so bars are tiny."""
+    """<ln 2cosh J> over N(1, 0.7): integrated by mpmath with 30 digits. Nothing is left to average: bars are tiny."""
     found = quenched(BOND.fix(T=1, h=0), {"J": "normal(1,0.7)"}, cells=200, replicas=16, rng=5)
     assert found.free_energy.value == pytest.approx(-1.23883140268898946117, rel=1e-14)
     assert found.free_energy.error < 1e-13
@@ -217,6 +217,31 @@ def test_a_result_prints_what_it_knows():
         assert word in text
     assert str(Average(-1.23456, 0.0123)) == "-1.235(12)" and str(Average(123.4, 15.0)) == "123(15)"
     assert str(Average(0.5, 0.0)) == "0.5"
+
+
+def test_exponents_of_three_states_are_eigenvalues_where_nothing_is_random():
+    chain = models.load("blume_capel").chain.fix(T=1, J=1, D="0.4")
+    found = quenched(chain, {"h": {"0.3": 1}}, cells=60, replicas=2, rng=3)
+    spins_of = np.array([-1, 0, 1])
+    local = np.exp(0.3 * spins_of - 0.4 * spins_of**2)
+    values = np.sort(np.abs(np.linalg.eigvals(np.exp(np.outer(spins_of, spins_of)) * local)))[::-1]
+    for k, value in enumerate(values, 1):
+        assert found.lyapunov(k).value == pytest.approx(np.log(value), rel=1e-3 if k > 1 else 1e-9)
+
+
+def test_exponents_far_below_the_first_keep_their_digits():
+    found = quenched(FIELD.fix(T="0.1", J=1, H=0), {"h": "normal(3,0.3)"}, cells=50, replicas=16, rng=1)
+    # All spins are up: ln Z per cell is (h + J)/T, and ln |det| is 2J/T.
+    agrees(found.correlation_length(), 0.1 / (2 * (3 + 1) - 2))
+
+
+def test_an_exponent_that_a_product_of_smaller_rank_lacks_is_refused():
+    chain = Chain(spins(1), [bond(lambda s, t, J: -J * s * s * t * t), site(lambda s, h: -h * s)])
+    found = quenched(chain.fix(T=1, J=1), LAW, cells=30, replicas=4, rng=1)
+    assert found.lyapunov(2).value < found.lyapunov(1).value
+    refused(NotApplicable, lambda: found.lyapunov(3), "no exponent 3", "smaller rank")
+    free = quenched(Chain(ising(), [site(lambda s, h: -h * s)]).fix(T=1), LAW, cells=5, replicas=2, rng=1)
+    assert free.correlation_length().value == 0
 
 
 # --- what is refused

@@ -14,15 +14,16 @@ from itertools import combinations_with_replacement
 
 import numpy as np
 
-from .averages import Average, average
 from .message import Growth, Message, advance
 from .steps import Steps
 
-__all__ = ["Expected", "expected", "features", "fitted"]
+__all__ = ["Expected", "coefficients", "expected", "features"]
 
 #: Degrees and number of polynomials of the message.
 _DEGREE = {1: 7, 2: 4, 3: 3}
 _MOST_FEATURES = 16
+#: Combinations of controls that vary by less than this share of the largest are rounding.
+_SINGULAR = 1e-12
 
 
 def features(message: Message, power: float = 1.0) -> tuple[np.ndarray, np.ndarray]:
@@ -97,33 +98,20 @@ def expected(message: Message, step: Steps, weights: np.ndarray, power: float = 
     )
 
 
-def fitted(target: np.ndarray, controls: np.ndarray) -> Average:
-    """Return the mean of independent samples, with what controls of known mean 0 explain taken out.
+def coefficients(target: np.ndarray, controls: np.ndarray) -> np.ndarray:
+    """Return the coefficients of controls, shape (controls,), that explain most of a target, shape (samples,).
 
-    The error is that of the intercept of a linear regression, which pays for every coefficient and for the distance of
-    the controls' means from 0 (S. S. Lavenberg and P. D. Welch, Manage. Sci. 27, 322 (1981); from memory).
-
-    Parameters
-    ----------
-    target : ndarray, shape (replicas,)
-    controls : ndarray, shape (controls, replicas)
+    Used on samples other than those they come from, they leave every average unbiased and samples independent
+    (S. S. Lavenberg and P. D. Welch, Manage. Sci. 27, 322 (1981), for what goes wrong otherwise; from memory).
 
     Examples
     --------
     >>> noise = np.random.default_rng(0).standard_normal((1, 10))
-    >>> round(fitted(3 + 2 * noise[0], noise).value, 12)
-    3.0
+    >>> coefficients(3 + 2 * noise[0], noise).round(12)
+    array([2.])
     """
-    replicas = len(target)
     size = np.sqrt((controls**2).mean(axis=1))
-    rows = (controls[size > 0] / size[size > 0, None]).T
-    if not rows.shape[1] or replicas < rows.shape[1] + 3:
-        return average(target)
-    means = rows.mean(axis=0)
-    inverse = np.linalg.pinv(rows - means, rcond=1e-12)
-    coefficients = inverse @ (target - target.mean())
-    rest = target - target.mean() - (rows - means) @ coefficients
-    variance = float(rest @ rest) / (replicas - rows.shape[1] - 1)
-    distance = means @ inverse
-    error = np.sqrt(variance * (1 / replicas + float(distance @ distance)))
-    return Average(float(target.mean() - means @ coefficients), float(error))
+    scale = np.where(size > 0, size, 1.0)
+    rows = (controls / scale[:, None]).T
+    inverse = np.linalg.pinv(rows - rows.mean(axis=0), rcond=_SINGULAR)
+    return np.asarray(inverse @ (target - target.mean()) / scale)

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import Any
 
@@ -10,16 +9,13 @@ import numpy as np
 
 from ..errors import ParameterError
 from .averages import Average, average
-from .controls import fitted
+from .controls import coefficients
 from .exponents import Exponents
 from .percell import PerCell, Sum
 from .steps import BETA, StepMaker
 from .walk import Rates
 
 __all__ = ["QuenchedChain"]
-
-#: Independent chains per coefficient of a control variate.
-_REPLICAS_PER_CONTROL = 8
 
 
 @dataclass(frozen=True, eq=False)
@@ -48,6 +44,7 @@ class QuenchedChain(PerCell):
     notes: tuple[str, ...]
     _maker: StepMaker = field(repr=False)
     _rates: Rates = field(repr=False)
+    _pilot: Rates | None = field(default=None, repr=False)
     _known: dict[Any, Any] = field(default_factory=dict, repr=False)
 
     def lyapunov(self, k: int) -> Average:
@@ -60,58 +57,52 @@ class QuenchedChain(PerCell):
 
     def samples(self, quantity: str = "free_energy") -> np.ndarray:
         """Return ``free_energy`` or ``internal_energy`` of every replica by itself, without control variates."""
-        weights = self._rates.lengths[:, None] / self.cells
         if quantity == "free_energy":
-            return np.asarray((self._rates.value * weights).sum(axis=0) * -self._problem.temperature)
+            return self._rates.value * -self._problem.temperature
         if quantity == "internal_energy":
-            return np.asarray(-(self._rates.first[self._maker.tilts.index(BETA)] * weights).sum(axis=0))
+            return -self._rates.first[self._maker.tilts.index(BETA)]
         raise ParameterError(f"samples are kept of free_energy and internal_energy, got {quantity!r}")
 
     @property
     def _exponents(self) -> Exponents:
         if "exponents" not in self._known:
             measured = Exponents.measure(self._problem, self.cells, self.replicas, self.burn_in, self.seed)
-            self._known["exponents"] = measured
+            self._known["exponents"] = measured.steadied(self._controlled((1.0, {}, {})))
         found: Exponents = self._known["exponents"]
         return found
 
     def _estimate(self, wanted: Sum) -> Average:
         key = (wanted[0], *(tuple(sorted(part.items())) for part in wanted[1:]))
         if key not in self._known:
-            self._known[key] = self._average(*wanted)
+            self._known[key] = average(self._controlled(wanted))
         found: Average = self._known[key]
         return found
 
-    def _average(
-        self, growth: float, first: Mapping[str, float], second: Mapping[tuple[str, str], float]
-    ) -> Average:
-        rates, maker = self._rates, self._maker
-        numbers = {self._tilt(tilt): c for tilt, c in first.items()}
+    def _controlled(self, wanted: Sum) -> np.ndarray:
+        """Return a sum of every replica, less what control variates explain with coefficients from other chains."""
+        samples, controls = self._samples(self._rates, wanted)
+        if self._pilot is None:
+            return samples
+        return np.asarray(samples - coefficients(*self._samples(self._pilot, wanted)) @ controls)
+
+    def _samples(self, rates: Rates, wanted: Sum) -> tuple[np.ndarray, np.ndarray]:
+        """Return a wanted sum, shape (samples,), and what has mean 0 beside it, (controls, samples)."""
+        growth, first, second = wanted
         target = growth * (rates.value if rates.mean_value is None else rates.mean_value)
         firsts = rates.first if rates.mean_first is None else rates.mean_first
-        for i, c in numbers.items():
+        tilts = [self._tilt(tilt) for tilt in first]
+        for i, c in zip(tilts, first.values(), strict=True):
             target = target + c * firsts[i]
-        involved = list(numbers)
         for pair, c in second.items():
             place = self._pair(pair)
             target = target + c * rates.second[place]
-            involved += maker.pairs[place]
-        samples = self._whole(target)
-        if rates.controls is None:
-            return average(samples)
-        return fitted(samples, self._whole(self._controls(list(dict.fromkeys(involved)), bool(second))))
+            tilts += self._maker.pairs[place]
+        return target, self._controls(rates, list(dict.fromkeys(tilts)), bool(second))
 
-    def _whole(self, batches: np.ndarray) -> np.ndarray:
-        """Return the rate over all cells from the rates of the batches."""
-        return np.asarray((batches * self._rates.lengths[:, None]).sum(axis=-2) / self.cells)
-
-    def _controls(self, tilts: list[int], twice: bool) -> np.ndarray:
-        rates = self._rates
-        assert rates.controls is not None and rates.slopes is not None
-        assert rates.mean_value is not None and rates.mean_first is not None
-        # A fit with too many coefficients for the replicas would add as much noise as it takes away.
-        most = max(1, self.replicas // (_REPLICAS_PER_CONTROL * (1 + len(tilts))))
-        found = [rates.controls[:most], *(rates.slopes[:most, i] for i in tilts)]
+    def _controls(self, rates: Rates, tilts: list[int], twice: bool) -> np.ndarray:
+        if rates.controls is None or rates.slopes is None or rates.mean_value is None or rates.mean_first is None:
+            return np.zeros((0, self.replicas))
+        found = [rates.controls, *(rates.slopes[:, i] for i in tilts)]
         if twice:  # second derivatives are not averaged over the draw, so differences from such averages help
             surprise = rates.first - rates.mean_first
             found += [(rates.value - rates.mean_value)[None], *(surprise[i, None] for i in tilts)]

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
+from dataclasses import dataclass, fields
 from functools import partial
 
 import numpy as np
@@ -14,7 +14,7 @@ from .problem import Problem
 from .steps import StepMaker, Steps
 from .strata import next_draws, node_count
 
-__all__ = ["Burnt", "Rates", "burn_in", "random_steps", "walk"]
+__all__ = ["Burnt", "Rates", "burn_in", "pilot", "random_steps", "walk"]
 
 #: Matrix entries, tangents included, that are made at a time.
 _BLOCK = 1_500_000
@@ -22,8 +22,8 @@ _BLOCK = 1_500_000
 _FORGOTTEN = 1e-9
 #: Weight of the states that a start does not favour, by its logarithm.
 _FAINT = -100.0
-#: Batches per replica from which control variates are fitted.
-_BATCHES = 20
+#: Replicas of the run that control variates are fitted to, the cells of its batches, fewest and most batches.
+_PILOTS, _BATCH, _FEWEST, _MOST = 64, 4, 5, 15
 
 
 @dataclass(frozen=True, eq=False)
@@ -46,12 +46,10 @@ class Burnt:
 
 @dataclass(frozen=True, eq=False)
 class Rates:
-    """Growth per cell in batches, and controls of zero mean; the last two axes are (batches, replicas).
+    """Growth per cell, and controls of zero mean; the last axis is that of independent or nearly independent samples.
 
     Attributes
     ----------
-    lengths : ndarray of int, shape (batches,)
-        Cells per batch.
     value, first, second : ndarray
         Growth of ln Z and its derivatives.
     mean_value, mean_first : ndarray or None
@@ -60,7 +58,6 @@ class Rates:
         Controls, (features, …), and their derivatives, (features, tilts, …).
     """
 
-    lengths: np.ndarray
     value: np.ndarray
     first: np.ndarray
     second: np.ndarray
@@ -119,26 +116,36 @@ def _spread(logs: np.ndarray) -> float:
     return float(np.ptp(held, axis=1).max())
 
 
-def walk(maker: StepMaker, rng: np.random.Generator, begin: Message, cells: int, controls: bool) -> Rates:
-    """Walk over ``cells`` cells from a message and collect growth and controls."""
-    replicas = begin.log.shape[1]
-    batches = min(_BATCHES, cells)
-    lengths = np.array([len(part) for part in np.array_split(np.arange(cells), batches)])
-    steps = random_steps(maker, rng, cells, replicas)
-    nodes = _nodes(maker, rng, cells, replicas) if controls else None
-    power = _power(begin)
-    message = begin
-    rows = []
-    for length in lengths:
-        total: list[np.ndarray] | None = None
-        for _ in range(length):
-            ahead = [] if nodes is None else _parts(expected(message, *next(nodes), power))
-            message, growth = advance(message, next(steps), maker.pairs)
-            new = [growth.value, growth.first, growth.second, *ahead]
-            total = new if total is None else [a + b for a, b in zip(total, new, strict=True)]
-        assert total is not None
-        rows.append([array / length for array in total])
-    return Rates(lengths, *(np.stack(part, axis=-2) for part in zip(*rows, strict=True)))
+def walk(maker: StepMaker, rng: np.random.Generator, begin: Message, cells: int, power: float | None) -> Rates:
+    """Walk over ``cells`` cells from a message and average growth and, where a power is given, controls over them."""
+    return _walk(maker, rng, begin, cells, power)[1]
+
+
+def pilot(maker: StepMaker, rng: np.random.Generator, burnt: Burnt, cells: int) -> tuple[float, Rates]:
+    """Walk along chains of their own to fit control variates to, and return their power and short averages."""
+    message = start(maker.states, len(maker.tilts), len(maker.pairs), _PILOTS)
+    for step in random_steps(maker, rng, burnt.cells, _PILOTS):
+        message, _ = advance(message, step, maker.pairs)
+    power = _power(message)
+    parts = []
+    for _ in range(min(max(cells // _BATCH, _FEWEST), _MOST)):
+        message, rates = _walk(maker, rng, message, _BATCH, power)
+        parts.append(rates)
+    return power, Rates(*(np.concatenate([getattr(part, f.name) for part in parts], axis=-1) for f in fields(Rates)))
+
+
+def _walk(
+    maker: StepMaker, rng: np.random.Generator, message: Message, cells: int, power: float | None
+) -> tuple[Message, Rates]:
+    replicas = message.log.shape[1]
+    nodes = None if power is None else _nodes(maker, rng, cells, replicas)
+    total: list[np.ndarray] = []
+    for step in random_steps(maker, rng, cells, replicas):
+        ahead = [] if nodes is None or power is None else _parts(expected(message, *next(nodes), power))
+        message, growth = advance(message, step, maker.pairs)
+        new = [growth.value, growth.first, growth.second, *ahead]
+        total = [a + b for a, b in zip(total, new, strict=True)] if total else new
+    return message, Rates(*(array / cells for array in total))
 
 
 def _parts(ahead: Expected) -> list[np.ndarray]:
