@@ -61,11 +61,11 @@ def test_crossover_study(tmp_path: Path) -> None:
 def test_field_ramp(tmp_path: Path) -> None:
     printed = run("field_ramp.py", tmp_path, "ramp.png")
     rows = [line.replace("±", "").split() for line in printed.splitlines()[1:9]]
-    h, exact, simulated, _, random, error, shaken, _ = np.array(rows, dtype=float).T
+    h, exact, simulated, _, random, shaken, _ = np.array(rows, dtype=float).T
     # Ising's m = sinh(h/T)/√(sinh²(h/T) + exp(−4J/T)): none at h = 0; the simulation has one.
     assert exact == pytest.approx(np.sinh(2 * h) / np.sqrt(np.sinh(2 * h) ** 2 + np.exp(-8)), abs=5e-5)
     assert exact[0] == 0 and simulated[0] > 0.5
-    assert (random[1:] < exact[1:]).all() and abs(random[0]) < 0.1 and (error < 0.002).all()
+    assert (random[1:] < exact[1:]).all() and random[0] == 0
     assert np.abs(shaken - random).max() < 0.1
     fields = [float(line.split("h = ")[1]) for line in printed.splitlines() if "reaches 0.9" in line]
     assert fields == sorted(fields, reverse=True)
