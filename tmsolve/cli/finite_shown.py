@@ -17,6 +17,9 @@ __all__ = ["csv_rows", "draw", "json_value", "text"]
 
 Found = Mapping[Asked, Any]
 
+#: So many points are marked one by one.
+_FEW = 60
+
 
 def json_value(asked: Asked, value: Any) -> Any:
     """Return a result for JSON."""
@@ -80,6 +83,7 @@ def draw(found: Found, path: Path) -> None:
 
     figures = require("matplotlib.figure", extra="plot")
     backend = require("matplotlib.backends.backend_agg", extra="plot")
+    ticker = require("matplotlib.ticker", extra="plot")
     with rc():
         figure = figures.Figure(figsize=(3.375, 2.6 * len(found)), layout="constrained")
         backend.FigureCanvasAgg(figure)
@@ -91,14 +95,16 @@ def draw(found: Found, path: Path) -> None:
                 columns = [
                     list(column) for column in zip(*(r for r in zip(*columns, strict=True) if r[1]), strict=True)
                 ]
-            few = len(columns[0]) <= 60
-            ax.plot(columns[0], columns[1], ".-" if few else "-", color=COLOURS[0])
+            ax.plot(columns[0], columns[1], ".-" if len(columns[0]) <= _FEW else "-", color=COLOURS[0])
             observable = asked.observables[0]
             ax.set_xlabel("cell" if asked.kind == "profile" else f"total of {observable}")
             ax.set_ylabel(f"mean of {observable}" if asked.kind == "profile" else "probability")
             if asked.kind == "distribution":
                 _range_of(ax, columns)
             finish(ax)
+            if asked.kind == "profile":
+                ax.xaxis.set_major_locator(ticker.MaxNLocator(integer=True, min_n_ticks=1))
+                ax.xaxis.set_minor_locator(ticker.NullLocator())
     save_figure(figure, path)
 
 
@@ -108,4 +114,6 @@ def _range_of(ax: Any, columns: list[Sequence[Any]]) -> None:
     seen = [value for value, chance in zip(values, chances, strict=True) if chance > 1e-6 * max(chances)]
     ax.set_ylim(0, 1.08 * max(chances))
     if len(seen) > 1:
-        ax.set_xlim(min(seen), max(seen))
+        # Room for the points at both ends.
+        room = 0.03 * (max(seen) - min(seen)) if len(seen) <= _FEW else 0
+        ax.set_xlim(min(seen) - room, max(seen) + room)
