@@ -310,7 +310,7 @@ def test_a_parameter_without_a_derivative_is_only_missed_when_asked_for():
     dilute = models.load("diluted_blume_capel").chain.fix(T=1, J=1, D=0, h=0)
     found = quenched(dilute, {"c": {0: "0.3", 1: "0.7"}}, cells=20, replicas=4, rng=1)
     assert found.free_energy.value < 0
-    refused(NotApplicable, lambda: found.derivative("c"), "'c'", "no derivative")
+    refused(NotApplicable, lambda: found.derivative("c"), "'c'", "no derivative", "probability_derivative('c'")
 
 
 def test_messages_that_do_not_forget_their_end_are_remarked_on():

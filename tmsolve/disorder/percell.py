@@ -64,7 +64,8 @@ class PerCell(ABC):
     def derivative(self, *names: str) -> Average:
         """Average derivative of the free energy by one or two parameters, ``"T"`` among them.
 
-        A random parameter is differentiated by shifting all its values alike.
+        A random parameter is differentiated by shifting all its values alike. For the width of a law write the
+        parameter as mean + width·z with z random; by probabilities see ``QuenchedChain.probability_derivative``.
         """
         temperature = self._problem.temperature
         for name in names:
@@ -98,6 +99,11 @@ class PerCell(ABC):
         try:
             return self._maker.tilts.index(name)
         except ValueError:
+            if name in self._problem.laws:
+                raise NotApplicable(
+                    f"{name!r} is random, and the free energy has no derivative by a shift of all its values alike. It has "
+                    f"one by their probabilities: quenched(…).probability_derivative({name!r}, value, instead_of=other)"
+                ) from None
             raise NotApplicable(
                 f"the energy has no derivative by {name!r} that could be carried along; write it with + - * / ** and "
                 "NumPy functions of that parameter"

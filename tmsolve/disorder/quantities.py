@@ -20,6 +20,7 @@ _NAMES = {
     "mean": (1, 1),
     "susceptibility": (1, 2),
     "derivative": (1, 2),
+    "probability_derivative": (2, 3),
     "correlation_length": (0, 0),
     "average_correlation_length": (0, 0),
     "lyapunov": (1, 1),

@@ -9,6 +9,7 @@ import numpy as np
 
 from ..errors import ParameterError
 from .averages import Average, average
+from .chances import probability_derivative
 from .controls import coefficients
 from .exponents import Exponents
 from .percell import PerCell, Sum
@@ -54,6 +55,41 @@ class QuenchedChain(PerCell):
     def correlation_length(self) -> Average:
         """Typical correlation length in cells: 1/(γ₁ − γ₂), from the average of the logarithm of correlations."""
         return self._exponents.correlation_length()
+
+    def probability_derivative(self, name: str, value: Any, instead_of: Any = None) -> Average:
+        """Average derivative of the free energy by the probability of one value of a random parameter.
+
+        Parameters
+        ----------
+        name : str
+            A random parameter.
+        value : number
+            The value that gains probability; one that the law does not have yet is allowed.
+        instead_of : number, optional
+            The value of a discrete law that loses it; without one, all values lose in proportion.
+
+        Returns
+        -------
+        Average
+            ∂f/∂p, p the probability moved; exact for any p, with the error bar of a sample of its own.
+
+        Raises
+        ------
+        ParameterError
+            Another name, or a value that has no probability to lose.
+        NotApplicable
+            The law is a list, or continuous while a single value is to lose.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, quenched
+        >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)])
+        >>> diluted = quenched(chain.fix(T=1), {"J": {0: "0.2", 1: "0.8"}}, cells=10, replicas=2, rng=1)
+        >>> round(diluted.probability_derivative("J", 1, instead_of=0).value, 12)       # −ln cosh 1
+        -0.433780830483
+        """
+        sizes = (self.cells, self.replicas, self.burn_in)
+        return probability_derivative(self._problem, sizes, self.seed, name, value, instead_of)
 
     def samples(self, quantity: str = "free_energy") -> np.ndarray:
         """Return ``free_energy`` or ``internal_energy`` of every replica by itself, without control variates."""
