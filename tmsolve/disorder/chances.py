@@ -55,8 +55,8 @@ def probability_derivative(
     left, right = (_messages(maker, rng, sizes, back) for back in (False, True))
     for begin in range(0, cells, _TOGETHER):
         count = min(_TOGETHER, cells - begin)
-        ends = [np.concatenate(list(islice(logs, count)), axis=-1) for logs in (left, right)]
-        total += _replaced(maker, rng, *ends, name, gains, loses).reshape(count, replicas).sum(axis=0)
+        before, behind = (np.concatenate(list(islice(logs, count)), axis=-1) for logs in (left, right))
+        total += _replaced(maker, rng, before, behind, name, gains, loses).reshape(count, replicas).sum(axis=0)
     if not np.isfinite(total).all():
         raise SolveError(
             f"a cell with {name} = {gains:g} forbids every state that its neighbours allow: the free energy has no "
