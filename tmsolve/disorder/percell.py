@@ -101,8 +101,8 @@ class PerCell(ABC):
         except ValueError:
             if name in self._problem.laws:
                 raise NotApplicable(
-                    f"{name!r} is random, and the free energy has no derivative by a shift of all its values. It has one "
-                    f"by their probabilities: quenched(…).probability_derivative({name!r}, value, instead_of=other)"
+                    f"{name!r} is random, and the free energy has no derivative by a shift of all its values. It has "
+                    f"one by their probabilities: quenched(…).probability_derivative({name!r}, value, instead_of=other)"
                 ) from None
             raise NotApplicable(
                 f"the energy has no derivative by {name!r} that could be carried along; write it with + - * / ** and "
