@@ -37,6 +37,7 @@ def test_a_chain_from_a_file(tm, listed, tmp_path, boundary):
     assert np.array_equal([float(row["mean(m)"]) for row in rows], expected.profile("m"))
     document = tm(*words, "--json").json
     assert document["results"]["log_Z"] == expected.log_Z and document["results"]["mean(m)"] == expected.mean("m")
+    assert document["units"] == {"log_Z": "1", "free_energy": "energy", "mean(m)": "1"}
     assert document["boundary"] == boundary and document["cells"] == 5 and document["realisation"] == ["h", "J"]
 
 

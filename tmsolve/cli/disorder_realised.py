@@ -4,7 +4,7 @@ from __future__ import annotations
 
 import argparse
 import sys
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator
 from typing import TYPE_CHECKING, Any
 
 from ..errors import ParameterError
@@ -71,17 +71,18 @@ def solve_realised(arguments: argparse.Namespace, model: LoadedModel) -> int:
     return DONE
 
 
-def _results(solved: Realised) -> Iterator[tuple[str, float]]:
-    yield "log_Z", solved.log_Z
-    yield "free_energy", solved.free_energy
+def _results(solved: Realised) -> Iterator[tuple[str, float, str]]:
+    """Yield name, value and unit."""
+    yield "log_Z", solved.log_Z, "1"
+    yield "free_energy", solved.free_energy, "energy"
     for name in solved.observables:
-        yield f"mean({name})", solved.mean(name)
+        yield f"mean({name})", solved.mean(name), "1"
 
 
 def _show(arguments: argparse.Namespace, model: LoadedModel, values: Values, solved: Realised) -> None:
     from .._version import __version__
 
-    found: Mapping[str, float] = dict(_results(solved))
+    found = list(_results(solved))
     boundary = "ring" if solved.closed else "open"
     if arguments.json:
         document: dict[str, Any] = {
@@ -93,13 +94,14 @@ def _show(arguments: argparse.Namespace, model: LoadedModel, values: Values, sol
             "realisation": list(solved.values),
             "cells": solved.cells,
             "boundary": boundary,
-            "results": dict(found),
+            "results": {name: value for name, value, _ in found},
+            "units": {name: unit for name, _, unit in found},
             "tmsolve": __version__,
         }
         print(json_text(document))
     else:
         given = f"  {', '.join(solved.values)} from {arguments.realisation}, {boundary}, {solved.cells} cells"
-        rows = [[name, Number(f"{value:.12g}")] for name, value in found.items()]
-        shown = table(rows, ["whole chain; mean per cell", "value"])
+        rows = [[name, Number(f"{value:.12g}"), unit] for name, value, unit in found]
+        shown = table(rows, ["whole chain; mean per cell", "value", "unit"])
         print("\n\n".join([f"{heading(model, values)}\n{given}", shown]))
     sys.stdout.flush()

@@ -21,7 +21,7 @@ _PHRASES: tuple[tuple[str, str | Callable[[re.Match[str]], str]], ...] = (
     (r"ground_state\((?:…|chain)\)", "tmsolve ground"),
     (r"give a larger tolerance, or use quenched\(…\)", "take --method sample"),
     (r"use quenched\(…\)", "take --method sample"),
-    (r"\b(given|rule|start)=(?= |$)", r"--\1"),
+    (r"\b(given|rule|start)=(?= (?!of )|$)", r"--\1"),
     (r"see the attribute of the form", "--quantity prints it"),
 )
 
