@@ -4,6 +4,9 @@ from __future__ import annotations
 
 import re
 from collections.abc import Callable
+from fractions import Fraction
+
+from .table import show_exact
 
 __all__ = ["for_command_line"]
 
@@ -23,6 +26,7 @@ _PHRASES: tuple[tuple[str, str | Callable[[re.Match[str]], str]], ...] = (
     (r"use quenched\(…\)", "take --method sample"),
     (r"\b(given|rule|start)=(?= (?!of )|$)", r"--\1"),
     (r"see the attribute of the form", "--quantity prints it"),
+    (r"Fraction\((-?\d+), (\d+)\)", lambda found: show_exact(Fraction(int(found[1]), int(found[2])))),
 )
 
 

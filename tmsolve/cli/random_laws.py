@@ -49,7 +49,20 @@ def read_random(arguments: argparse.Namespace, model: LoadedModel) -> dict[str, 
             raise UsageError("--random T: one temperature holds for the whole chain; give -p T=…")
         try:
             laws[name] = as_law(written)
+        except OverflowError as error:
+            raise UsageError(f"--random {name}: {written!r} holds a number beyond the range of doubles") from error
         except (DeclarationError, ParameterError) as error:
-            raise UsageError(f"--random {name}: {error}") from error
+            raise UsageError(f"--random {name}: {error}{_hint(name, written)}") from error
     refuse_parameters(arguments, laws, "random")
     return laws
+
+
+def _hint(name: str, written: str) -> str:
+    """Say what was probably meant by a text that is no law."""
+    if written.lower().endswith(".csv"):
+        return f" For values from a file: --realisation {written}, with a column {name}"
+    if "=" in written.partition(")")[2]:
+        return " Every random parameter has its own --random"
+    if "(" not in written:
+        return f" For one number in all cells: -p {name}=0.5"
+    return ""
