@@ -8,19 +8,21 @@ eigenvalues (semisimple) from fewer (a Jordan block).
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers
 from .merging import MANY, ROUNDING, VANISHES, conditions, joined
-from .near_circle import NEAR, tidy
-from .spectrum import Ratios, clusters, deflated, eigenvalues
+from .near_circle import NEAR, NearModes, near_modes, tidy
+from .spectrum import Ratios, clusters, deflated, eigenvalues, together
 
 __all__ = ["Cluster", "classified", "grouped"]
 
 #: Larger matrices are grouped by distance alone.
 _LARGEST = 256
+#: Unit vectors whose smallest singular value is below this are one vector.
+_PARALLEL = 1e-5
 
 
 @dataclass(frozen=True)
@@ -34,8 +36,7 @@ class Cluster:
     multiplicity : int
     kind : str
         ``"simple"``, ``"semisimple"`` (several, each with a vector) or ``"Jordan"`` (fewer vectors
-        than eigenvalues). Within 1e-4 of the circle of λ₁ (in ln |λ|) blocks pass for
-        semisimple.
+        than eigenvalues).
     condition : float
         How many times rounding an eigenvalue moves; NaN where it was not looked at.
     discriminant : float
@@ -89,11 +90,33 @@ def classified(chance: np.ndarray, law: np.ndarray, found: Ratios, numbers: Numb
     rest = deflated(chance[..., None], law[:, None], numbers)
     matrix, values = rest.matrix[..., 0], eigenvalues(rest.matrix)[0]
     near = int((found.log_modulus > -NEAR).sum())
-    levels = grouped(Ratios(*(part[:near] for part in found)))
+    levels = _near_levels(chance, Ratios(*(part[:near] for part in found)), numbers) if near else []
     condition = conditions(matrix, values)
     for members in joined(values, condition, near):
         levels.append(_level(matrix, values, condition, members, found, float(rest.log_size[0])))
     return sorted(levels, key=lambda level: level.log_gap)
+
+
+def _near_levels(chance: np.ndarray, found: Ratios, numbers: Numbers) -> list[Cluster]:
+    """Return the levels next to the circle of λ₁; vectors of a Jordan block come out parallel."""
+    levels = grouped(found)
+    if all(level.multiplicity == 1 for level in levels):
+        return levels
+    for modes in near_modes(chance[..., None], found.log_modulus[None], found.phase[None], numbers):
+        if modes.right is None:
+            continue
+        for k, level in enumerate(levels):
+            members = _members(level, modes)
+            if level.multiplicity > 1 and len(members) == level.multiplicity:
+                vectors = modes.right[0][:, members]
+                sizes = np.linalg.svd(vectors / np.linalg.norm(vectors, axis=0), compute_uv=False)
+                levels[k] = replace(level, kind="Jordan" if sizes[-1] < _PARALLEL else "semisimple")
+    return levels
+
+
+def _members(level: Cluster, modes: NearModes) -> np.ndarray:
+    gaps, phases = np.append(modes.log_gap[0], level.log_gap), np.append(modes.phase[0], level.phase)
+    return np.flatnonzero(together(gaps[None], phases[None])[0, -1, :-1])
 
 
 def _level(

@@ -7,8 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers
-from .merging import inverted, merge
-from .near_circle import near_modes
+from .merging import ROUNDING, inverted, merge
+from .near_circle import NEAR, near_modes
 from .small import long_modes
 from .spectrum import deflated, polar, together
 
@@ -33,6 +33,8 @@ class Modes:
         Vectors with left·right = 1, of P up to a constant in each right one.
     log_noise : ndarray, shape (batch,)
         Logarithm of the rounding of the matrix they were found from.
+    log_unit : ndarray, shape (batch,)
+        The same, with the rounding of eigenvalues and vectors in doubles.
     """
 
     log_modulus: np.ndarray
@@ -41,6 +43,7 @@ class Modes:
     right: np.ndarray
     left: np.ndarray
     log_noise: np.ndarray
+    log_unit: np.ndarray
 
 
 def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Modes:
@@ -72,7 +75,8 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
             log_modulus[i], phase[i], right[i], left[i] = long
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
-    found = Modes(log_modulus, phase, log_gap, right, left, log_noise)
+    log_unit = np.maximum(log_noise, log_size + np.log(4 * n * ROUNDING))
+    found = Modes(log_modulus, phase, log_gap, right, left, log_noise, log_unit)
     for near in near_modes(chance, log_modulus, phase, numbers):
         near.replace_in(log_modulus, phase, log_gap)
         if near.right is not None and near.left is not None:
@@ -103,12 +107,22 @@ class Shown:
     amplitude : ndarray, shape (batch, m)
         Summed over all modes that coincide with a mode.
     size : ndarray, shape (batch, m)
-        |source|·|target| times the condition of the vectors: the amplitude is known to
-        rounding relative to this.
+        |source|·|target| times the condition of the vectors: whether an amplitude is there at
+        all is known to rounding relative to this.
+    doubt : ndarray, shape (batch, m)
+        What rounding may have done to the amplitude: it turns vectors into those of eigenvalues
+        nearby.
+    members : ndarray of int, shape (batch, m)
+        How many modes coincide with a mode, itself included.
+    condition : ndarray, shape (batch, m)
+        How many times rounding of the matrix an eigenvalue may be off; summed over those that coincide.
     """
 
     amplitude: np.ndarray
     size: np.ndarray
+    doubt: np.ndarray
+    members: np.ndarray
+    condition: np.ndarray
 
 
 def shown(found: Modes, source: np.ndarray, target: np.ndarray) -> Shown:
@@ -124,7 +138,27 @@ def shown(found: Modes, source: np.ndarray, target: np.ndarray) -> Shown:
     after = np.einsum("bmn,nb->bm", found.left, target)
     alike = together(found.log_gap, found.phase)
     amplitude = np.einsum("bkj,bj->bk", alike, before * after)
-    scale = np.abs(source).sum(axis=0) * np.abs(target).max(axis=0)
-    condition = np.abs(found.right).max(axis=1) * np.abs(found.left).sum(axis=2)
+    scale = (np.abs(source).sum(axis=0) * np.abs(target).max(axis=0))[:, None]
+    wide, long = np.abs(found.right).max(axis=1), np.abs(found.left).sum(axis=2)
+    condition = wide * long
     worst = np.einsum("bkj,bj->bk", alike, condition)
-    return Shown(amplitude, scale[:, None] * np.maximum(1.0, worst / USUAL_CONDITION))
+    # First order of perturbation theory: R_k takes on R_j times (L_j E R_k)/(λ_k − λ_j).
+    mixing = _mixing(found, alike)
+    first, second = np.abs(before) * long, np.abs(after) * wide
+    mixed = second * np.einsum("bkj,bj->bk", mixing, first) + first * np.einsum("bkj,bj->bk", mixing, second)
+    doubt = np.einsum("bkj,bj->bk", alike, mixed) + ROUNDING * worst * scale
+    return Shown(amplitude, scale * np.maximum(1.0, worst / USUAL_CONDITION), doubt, alike.sum(axis=2), worst)
+
+
+def _mixing(found: Modes, alike: np.ndarray) -> np.ndarray:
+    """Return rounding over the distance of eigenvalues, 0 for those that coincide: shape (batch, m, m)."""
+    turn = np.exp(1j * found.phase)
+    value = np.exp(found.log_modulus) * turn
+    # Next to the circle vectors are those of (1 − P^h)^#, whose eigenvalues are the inverse gaps.
+    least = np.min(found.log_gap, axis=1)[:, None]
+    near = (found.log_modulus > -NEAR) & np.isfinite(least)
+    with np.errstate(all="ignore"):
+        inverse = np.where(near, np.exp(least - found.log_gap), 0.0) * turn
+        plain = np.exp(found.log_unit)[:, None, None] / np.abs(value[:, :, None] - value[:, None, :])
+        close = len(turn[0]) * ROUNDING / np.abs(inverse[:, :, None] - inverse[:, None, :])
+    return np.where(alike, 0.0, np.where(near[:, :, None] & near[:, None, :], close, plain))

@@ -3,8 +3,8 @@
 They lie next to roots of unity, e^{2πim/h}. In the chain of h steps at a time they are all
 next to 1, and the deviation matrix (I − P^h)^#, built without subtractions, has the large
 eigenvalues 1/(1 − λ^h): accurate although 1 − λ^h is not. Their vectors are those of P, so
-each tells its own phase. That eigenvalues which coincide here have a vector each is assumed:
-a Jordan block within `NEAR` of the circle is not told from a multiplet.
+each tells its own phase. Pieces of a Jordan block enter by their mean; that they are such is
+told by their vectors, which are parallel.
 """
 
 from __future__ import annotations
@@ -17,7 +17,7 @@ import numpy as np
 from ..operators.numbers import DOUBLE, Numbers, to_double
 from .components import communicating_classes
 from .graded import graded_modes
-from .merging import inverted
+from .merging import inverted, merge
 from .reduction import heavy_first, reduce_states
 
 __all__ = ["NEAR", "NearModes", "near_modes", "tidy"]
@@ -177,6 +177,7 @@ def _from_deviation(
         doubles = np.moveaxis(to_double(chance), -1, 0)
         marked = np.where(good[:, None, None], scaled @ (doubles + _MARK * np.eye(len(chance))), 0.0)
         values, vectors = (part.astype(np.complex128) for part in np.linalg.eig(marked))
+        merge(marked, values)
         inverse = inverted(vectors)
         order = np.argsort(-np.abs(values), axis=-1, kind="stable")[:, :count]
         values = np.take_along_axis(values, order, axis=-1)

@@ -2,14 +2,35 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from numbers import Integral
 from typing import Any
 
 import numpy as np
 
-from ..errors import ParameterError
+from ..declare import Chain
+from ..errors import NotApplicable, ParameterError, listing, unknown_parameter
+from .quantities import DIFFERENTIABLE, Quantity, parse_quantity
 
-__all__ = ["check_count", "read_distances", "read_wave_numbers"]
+__all__ = ["check_count", "read_derivative", "read_distances", "read_wave_numbers"]
+
+_HIGHEST_ORDER = 6
+
+
+def read_derivative(names: Sequence[str], of: str, chain: Chain) -> Quantity:
+    """Return the quantity of which a derivative is wanted; refuse unknown names and too high orders."""
+    known = (*chain.parameters, "T")
+    for name in names:
+        if name not in known:
+            raise unknown_parameter(name, chain.parameters)
+    if len(names) > _HIGHEST_ORDER:
+        raise NotApplicable(f"derivatives go to order {_HIGHEST_ORDER}, got {len(names)}")
+    quantity = parse_quantity(of, chain)
+    if quantity.name not in DIFFERENTIABLE:
+        raise NotApplicable(
+            f"{quantity} is not a derivative of the free energy; choose of= from {listing(DIFFERENTIABLE)}"
+        )
+    return quantity
 
 
 def read_distances(distances: Any) -> list[int]:

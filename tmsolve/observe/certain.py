@@ -9,61 +9,33 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
-from typing import Any, NamedTuple
+from functools import lru_cache
+from typing import Any
 
 import numpy as np
 
 from ..assemble.matrix import Assembled, handle
 from ..assemble.window import ChainWindow
 from ..eigen.long_eigen import eigensystem, quick_eigensystems
-from ..eigen.near_circle import tidy
 from ..operators.numbers import multiprecision
+from .agreed import CertainMode, Solved, decided
 from .correlations import anchors
+from .multiplicity import multiplicity
 
-__all__ = ["CertainMode", "certain_modes", "expected_work"]
+__all__ = ["certain_modes", "expected_work"]
 
 _FIRST_BITS = 192
 _LONGEST_BITS = 2**15
 #: Powers of the smallest weight that an amplitude can contain, halved: there are two lengths.
 _POWERS = 3
-#: Numbers that agree to so many bits at both lengths are numbers.
-_AGREE = 40
-
-
-class CertainMode(NamedTuple):
-    """One eigenvalue, relative to λ₁, with what it contributes to a correlation function.
-
-    Attributes
-    ----------
-    log_modulus, log_gap, phase : float
-        ln |λ/λ₁|, ln(−ln |λ/λ₁|) and argument.
-    amplitude : float
-        A in A cos(kr + φ) e^{−r/ξ}, summed over all that share this eigenvalue.
-    shown : bool
-        Whether it contributes at all.
-    """
-
-    log_modulus: float
-    log_gap: float
-    phase: float
-    amplitude: float
-    shown: bool
-
-
-@dataclass(frozen=True)
-class _Solved:
-    """Eigenvalues relative to λ₁, largest modulus first, with amplitudes, at one length of numbers."""
-
-    context: Any
-    bits: int
-    ratio: list[Any]
-    gap: list[Any]
-    amplitude: list[Any]
 
 
 def expected_work(
-    window: ChainWindow, states: np.ndarray, values: Mapping[str, Any], observable: str, classes: np.ndarray | None
+    window: ChainWindow,
+    states: np.ndarray,
+    values: Mapping[str, Any],
+    observable: str | None,
+    classes: np.ndarray | None,
 ) -> float:
     """Return roughly how many seconds `certain_modes` takes; infinity where its numbers would be too long."""
     problem = _Problem(window, states, values, observable, classes)
@@ -72,17 +44,19 @@ def expected_work(
 
 
 def _work(size: int, bits: int) -> float:
-    return (5e-5 if quick_eigensystems() else 5e-4) * size**3 * (1 + (bits / 2000) ** 1.5)
+    # Tables in long numbers take their time for the smallest matrix as well.
+    return 5e-3 + (5e-5 if quick_eigensystems() else 5e-4) * size**3 * (1 + (bits / 2000) ** 1.5)
 
 
 def certain_modes(
     window: ChainWindow,
     states: np.ndarray,
     values: Mapping[str, Any],
-    observable: str,
+    observable: str | None,
     classes: np.ndarray | None = None,
     patience: float = math.inf,
     everything: bool = False,
+    strict: bool = False,
 ) -> list[CertainMode] | None:
     """Return the modes of one point, slowest first, down to the first that the observable shows.
 
@@ -94,14 +68,16 @@ def certain_modes(
         The states of the chain, out of all joint states of the cut.
     values : mapping
         Parameters and ``T`` of one point.
-    observable : str
-        Its name.
+    observable : str or None
+        Its name; None stands for all that could be observed.
     classes : ndarray of int, optional
         An equitable partition of the states that resolves the observable.
     patience : float
         Seconds that may be spent, roughly.
     everything : bool
         Whether the faster modes are wanted as well.
+    strict : bool
+        Whether numbers are to be so long that no two modes are taken for one.
 
     Returns
     -------
@@ -109,8 +85,9 @@ def certain_modes(
         Eigenvalues that are exactly 0 are left out. ``None`` where numbers of bearable length do not decide.
     """
     problem = _Problem(window, states, values, observable, classes)
+    exact = lru_cache(maxsize=1)(lambda: multiplicity(window, states, values, classes))
     bits = problem.first_bits()
-    before: _Solved | None = None
+    before: Solved | None = None
     while bits <= _LONGEST_BITS and _work(problem.size, bits) <= patience:
         try:
             short = problem.solved(bits) if before is None else before
@@ -118,7 +95,7 @@ def certain_modes(
         except (ArithmeticError, RuntimeError):  # no convergence in these numbers
             short, long = None, None
         if short is not None and long is not None:
-            found = _decided(short, long, everything)
+            found = decided(short, long, exact, everything, strict)
             if found is not None:
                 return found
         before, bits = long, 2 * bits
@@ -133,7 +110,7 @@ class _Problem:
         window: ChainWindow,
         states: np.ndarray,
         values: Mapping[str, Any],
-        observable: str,
+        observable: str | None,
         classes: np.ndarray | None,
     ) -> None:
         self.window, self.states, self.values, self.observable = window, states, values, observable
@@ -158,14 +135,14 @@ class _Problem:
         span = float(finite.max() - finite.min()) / math.log(2)
         return int(_FIRST_BITS + min(self.size, _POWERS * 2) * span / 2)
 
-    def solved(self, bits: int) -> _Solved:
+    def solved(self, bits: int) -> Solved:
         """Solve the matrix in numbers of so many bits."""
         part, logs = self._logs(bits)
         numbers = part.numbers
         context = type(numbers.scalar(1)).context
         weights = numbers.exp(logs - max(logs.ravel()))
         tables = {}
-        for cell in anchors(self.window, self.observable):
+        for cell in () if self.observable is None else anchors(self.window, self.observable):
             table = part.edge_table((handle("observable", (), f"{self.observable}@{cell}"),))
             if table is not None:
                 picked = table[np.ix_(self.states, self.states)][..., 0]
@@ -175,107 +152,50 @@ class _Problem:
         # On the circle of λ₁ there may be others; it is the one that is real and positive.
         top = max(range(self.size), key=lambda k: context.re(roots[k]))
         order = sorted((k for k in range(self.size) if k != top), key=lambda k: -abs(roots[k]))
-        size = rows[top] @ columns[top] * context.re(roots[top]) ** 2
-        ratio = [roots[k] / context.re(roots[top]) for k in order]
-        amplitude = []
-        for k, x in zip(order, ratio, strict=True):
-            norm = rows[k] @ columns[k]
-            if abs(x) == 0 or norm == 0:
-                amplitude.append(context.mpc(0))
-                continue
-            before = sum(rows[top] @ t @ columns[k] * x**cell for cell, t in tables.items())
-            after = sum(rows[k] @ t @ columns[top] / x ** (cell + 1) for cell, t in tables.items())
-            amplitude.append(before * after / (norm * size))
-        return _Solved(context, bits, ratio, [-context.log(abs(x)) if x else context.inf for x in ratio], amplitude)
-
-
-def _decided(short: _Solved, long: _Solved, everything: bool) -> list[CertainMode] | None:
-    """Return the modes that two lengths of numbers agree on, or None where they do not decide."""
-    count = _nonzero(short, long)
-    if count is None:
-        return None
-    groups, earlier = _grouped(long, count), _grouped(short, count)
-    found: list[CertainMode] = []
-    for group in groups:
-        match = [other for other in earlier if _close(short, long, other, group)]
-        if len(match) != 1 or len(match[0]) != len(group):
-            return None
-        shown = _shown(short, long, match[0], group)
-        gap = _real(short.gap[match[0][0]], long.gap[group[0]], short, long)
-        if shown is None or gap is None:
-            return None
-        found.append(_mode(long, group, shown, gap))
-        if shown and not everything:
-            break
-    return found
-
-
-def _real(short: Any, long: Any, low: _Solved, high: _Solved) -> bool | None:
-    """Whether a number stays (True) or shrinks with the length of the numbers (False); None where neither is clear."""
-    context = high.context
-    if abs(long - short) <= context.ldexp(abs(long), -_AGREE) and long != 0:
-        return True
-    if abs(long) == 0 or abs(long) < context.ldexp(abs(short), -low.bits // 2):
-        return False
-    # An eigenvalue of a block rounds to a root; so does what hangs on it.
-    return None
-
-
-def _nonzero(short: _Solved, long: _Solved) -> int | None:
-    """Return how many eigenvalues are not 0."""
-    context, m = long.context, len(long.ratio)
-    for k, (x, y) in enumerate(zip(short.ratio, long.ratio, strict=True)):
-        if abs(abs(x) - abs(y)) <= context.ldexp(abs(y), -_AGREE) and y != 0:
-            continue
-        # Rounding of a zero in a block of m − k vectors is that root of the rounding of a number.
-        for a, b in zip(short.ratio[k:], long.ratio[k:], strict=True):
-            if abs(b) != 0 and abs(b) > context.ldexp(abs(a), -short.bits // (2 * (m - k))):
-                return None
-        return k
-    return m
-
-
-def _grouped(solved: _Solved, count: int) -> list[list[int]]:
-    """Group eigenvalues that are one up to rounding, also that of a block of up to three vectors."""
-    groups: list[list[int]] = []
-    for k in range(count):
-        x = solved.ratio[k]
-        limit = solved.context.ldexp(abs(x), -solved.bits // 4)
-        match = next((g for g in groups if abs(solved.ratio[g[0]] - x) <= limit), None)
-        if match is None:
-            groups.append([k])
+        largest = context.re(roots[top])
+        ratio = [roots[k] / largest for k in order]
+        if self.observable is None:
+            one = [context.mpf(1)] * len(order)
+            ends: tuple[list[Any], Any, Any, int] = (one, None, None, 0)
         else:
-            match.append(k)
-    return groups
+            size = rows[top] @ columns[top] * largest
+            left = {cell: rows[top] @ table / size for cell, table in tables.items()}
+            right = {cell: table @ columns[top] / largest for cell, table in tables.items()}
+            pairs = [(rows[k], columns[k]) for k in order]
+            ends = _seen(context, matrix / largest, left, right, ratio, pairs)
+        gaps = [-context.log(abs(x)) if x else context.inf for x in ratio]
+        return Solved(context, bits, ratio, gaps, ends[0], matrix / largest, *ends[1:])
 
 
-def _close(short: _Solved, long: _Solved, other: list[int], group: list[int]) -> bool:
-    x, y = short.ratio[other[0]], long.ratio[group[0]]
-    return bool(abs(x - y) <= long.context.ldexp(abs(y), -short.bits // 5))
+def _seen(
+    context: Any,
+    matrix: np.ndarray,
+    left: Mapping[int, np.ndarray],
+    right: Mapping[int, np.ndarray],
+    ratio: list[Any],
+    pairs: list[tuple[np.ndarray, np.ndarray]],
+) -> tuple[list[Any], np.ndarray, np.ndarray, int]:
+    """Return amplitudes, and vectors and shift of ``first · matrix^(r − shift) · last``.
 
-
-def _shown(short: _Solved, long: _Solved, other: list[int], group: list[int]) -> bool | None:
-    """Whether an eigenvalue contributes, by itself or through its block."""
-    found = False
-    for power in range(len(group)):
-        real = _real(_moment(short, other, power), _moment(long, group, power), short, long)
-        if real is None:
-            return None
-        found = found or real
-    return found
-
-
-def _moment(solved: _Solved, group: list[int], power: int) -> Any:
-    """Return Σ A_k (λ_k/λ − 1)^power over a group: the powers are what a block adds."""
-    mean = sum(solved.ratio[k] for k in group) / len(group)
-    return sum(solved.amplitude[k] * (solved.ratio[k] / mean - 1) ** power for k in group)
-
-
-def _mode(solved: _Solved, group: list[int], shown: bool, inside: bool) -> CertainMode:
-    context, k = solved.context, group[0]
-    phase = float(tidy(np.array([float(context.arg(solved.ratio[k]))]))[0])
-    alone = phase == 0 or abs(phase) == math.pi
-    amplitude = float(abs(_moment(solved, group, 0))) * (1 if alone else 2) if shown else 0.0
-    if not inside:
-        return CertainMode(-0.0, -math.inf, phase, amplitude, shown)
-    return CertainMode(-float(solved.gap[k]), float(context.log(solved.gap[k])), phase, amplitude, shown)
+    Parts of an observable are anchored at different cells.
+    """
+    amplitude = []
+    for (row, column), x in zip(pairs, ratio, strict=True):
+        norm = row @ column
+        if abs(x) == 0 or norm == 0:
+            amplitude.append(context.mpc(0))
+            continue
+        before = sum(part @ column * x**cell for cell, part in left.items())
+        after = sum(row @ part / x ** (cell + 1) for cell, part in right.items())
+        amplitude.append(before * after / norm)
+    low, high = min(left, default=0), max(right, default=0)
+    first = last = matrix[0] * 0
+    for cell, part in left.items():
+        for _ in range(cell - low):
+            part = part @ matrix
+        first = first + part
+    for cell, part in right.items():
+        for _ in range(high - cell):
+            part = matrix @ part
+        last = last + part
+    return amplitude, first, last, high + 1 - low

@@ -3,126 +3,30 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass
-from typing import NamedTuple
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow
-from ..eigen.modes import Modes, modes, shown
-from ..eigen.spectrum import clusters, deflated
+from ..eigen.modes import Modes, Shown, modes, shown
+from ..eigen.near_circle import NEAR
+from ..eigen.spectrum import clusters
 from ..operators.numbers import to_double
 from .correlations import anchors
 from .segment import Segment
+from .slow import SMALL, Decay, Found
 
-__all__ = ["Decay", "Found", "decay", "slowest"]
+__all__ = ["decay"]
 
 #: Amplitudes below this, relative to the product of the two quantities' sizes, are not told from rounding.
 _AMPLITUDE = 1e-11
-#: Smaller eigenvalues (ln |λ/λ₁|) may lose digits to rounding.
-_SMALL = -8.0
+#: Nor are those below this many times what vectors of eigenvalues nearby may add to them.
+_SURELY = 4.0
+#: Vectors of this condition number that share an eigenvalue may be those of a Jordan block.
+_PARALLEL = 1e4
 #: Entries of the largest array that is made for many points at once.
 _AT_ONCE = 2**22
-
-
-@dataclass(frozen=True)
-class Decay:
-    """The slowest mode per point.
-
-    Attributes
-    ----------
-    log_modulus, log_gap : ndarray
-        ln |λ/λ₁| = −1/ξ and ln(−ln |λ/λ₁|) = −ln ξ; −inf and inf where there is no mode.
-    wave_number : ndarray
-        |arg λ|; 0 where there is no mode.
-    amplitude : ndarray
-        A in A cos(kr + φ) e^{−r/ξ}; 0 where there is no mode.
-    log_noise : ndarray
-        Logarithm of the absolute rounding of λ/λ₁.
-    """
-
-    log_modulus: np.ndarray
-    log_gap: np.ndarray
-    wave_number: np.ndarray
-    amplitude: np.ndarray
-    log_noise: np.ndarray
-
-    @classmethod
-    def none(cls, size: int) -> Decay:
-        """Return what holds where nothing decays."""
-        nothing, zero = np.full(size, -np.inf), np.zeros(size)
-        return cls(nothing, -nothing, zero, zero.copy(), nothing.copy())
-
-    @classmethod
-    def unknown(cls, size: int) -> Decay:
-        """Return what stands where the mode is not known."""
-        nothing = np.full(size, np.nan)
-        return cls(nothing, nothing.copy(), nothing.copy(), nothing.copy(), np.full(size, np.inf))
-
-    @property
-    def undecided(self) -> np.ndarray:
-        """Where the mode is not known."""
-        return np.isnan(self.log_gap) & np.isposinf(self.log_noise)
-
-    def poor(self, accuracy: float = 1e-11) -> np.ndarray:
-        """Whether rounding may have changed a length by more than ``accuracy``, relative to it."""
-        with np.errstate(invalid="ignore"):
-            return np.asarray(self.log_noise - self.log_modulus - self.log_gap > np.log(accuracy))
-
-    def at(self, points: np.ndarray) -> Decay:
-        """Return what holds at some points."""
-        return Decay(*(values[points] for values in vars(self).values()))
-
-    def put(self, points: np.ndarray, part: Decay) -> None:
-        """Store what was found at some points."""
-        for mine, other in zip(vars(self).values(), vars(part).values(), strict=True):
-            mine[points] = other
-
-
-class Found(NamedTuple):
-    """What doubles say on the slowest mode that an observable shows, per point.
-
-    Attributes
-    ----------
-    chosen : Decay
-        The slowest mode whose amplitude is above rounding.
-    leading : Decay
-        The slowest mode of all; of unknown amplitude.
-    seen : ndarray of int
-        How many eigenvalues are surely shown, multiple ones counted once.
-    unsure : ndarray of bool
-        Whether there is a slower mode than the chosen one, or none was chosen.
-    """
-
-    chosen: Decay
-    leading: Decay
-    seen: np.ndarray
-    unsure: np.ndarray
-
-    @classmethod
-    def none(cls, size: int) -> Found:
-        """Return what holds where nothing decays."""
-        return cls(Decay.none(size), Decay.none(size), np.zeros(size, dtype=np.intp), np.zeros(size, dtype=bool))
-
-    def put(self, points: np.ndarray, part: Found) -> None:
-        """Store what was found at some points."""
-        self.chosen.put(points, part.chosen)
-        self.leading.put(points, part.leading)
-        self.seen[points], self.unsure[points] = part.seen, part.unsure
-
-
-def slowest(segment: Segment) -> Decay:
-    """Return the second-largest eigenvalue of the dominant class, with amplitude 1."""
-    log_modulus, phase, log_gap = segment.spectrum()
-    if log_gap.shape[1] == 0:
-        return Decay.none(segment.indices.size)
-    log_noise = np.full(segment.indices.size, -np.inf)
-    small = np.flatnonzero(log_modulus[:, 0] < _SMALL)
-    if small.size:
-        law = segment.law
-        log_noise[small] = deflated(law.pair.chance[..., small], law.stationary[:, small], law.numbers).log_noise
-    return Decay(log_modulus[:, 0], log_gap[:, 0], np.abs(phase[:, 0]), np.ones(len(log_noise)), log_noise)
 
 
 @dataclass(frozen=True)
@@ -186,9 +90,9 @@ def _slowest_shown(found: Modes, pairs: Sequence[_Pair]) -> Found:
     result = Found.none(batch)
     if not pairs:
         return result
-    amplitude, size = _amplitudes(found, pairs)
+    view = _seen(found, pairs)
     there = np.isfinite(found.log_modulus)
-    carried = (np.abs(amplitude) > _AMPLITUDE * size) & there
+    carried = (np.abs(view.amplitude) > np.maximum(_AMPLITUDE * view.size, _SURELY * view.doubt)) & there
     any_carried = carried.any(axis=1)
     k = np.where(any_carried, carried.argmax(axis=1), 0)
     unsure = ~any_carried | (k > 0)
@@ -197,37 +101,57 @@ def _slowest_shown(found: Modes, pairs: Sequence[_Pair]) -> Found:
     seen[apart] = [_distinct(found.log_gap[i], found.phase[i], carried[i]) for i in apart]
     chosen = Decay.none(batch)
     some = np.flatnonzero(any_carried)
-    chosen.put(some, _picked(found, amplitude, some, k[some]))
+    chosen.put(some, _picked(found, view, some, k[some]))
     leading = Decay.none(batch)
     some = np.flatnonzero(there[:, 0])
-    leading.put(some, _picked(found, amplitude * np.nan, some, k[some] * 0))
+    unseen = replace(view, amplitude=view.amplitude * np.nan, doubt=np.full(there.shape, np.inf))
+    leading.put(some, _picked(found, unseen, some, k[some] * 0))
     lost = np.isnan(found.log_gap).any(axis=1)
     for values in (*vars(chosen).values(), *vars(leading).values()):
         values[lost] = np.nan
     return Found(chosen, leading, seen, unsure & ~lost)
 
 
-def _amplitudes(found: Modes, pairs: Sequence[_Pair]) -> tuple[np.ndarray, np.ndarray]:
+def _seen(found: Modes, pairs: Sequence[_Pair]) -> Shown:
     """Return the amplitudes of all modes, summed over the parts of an observable, and what they are relative to."""
     views = [shown(found, pair.source, pair.target) for pair in pairs]
     with np.errstate(all="ignore"):  # eigenvalues below all doubles, raised to negative powers
         ratio = np.exp(found.log_modulus + 1j * found.phase)
         weights = [ratio ** (pair.shift - 1) * pair.size[:, None] for pair in pairs]
         amplitude = sum((v.amplitude * w for v, w in zip(views, weights, strict=True)), start=ratio * 0)
-        size = sum((v.size * np.abs(w) for v, w in zip(views, weights, strict=True)), start=np.abs(ratio) * 0)
-    return amplitude, size
+        zero = np.abs(ratio) * 0
+        size = sum((v.size * np.abs(w) for v, w in zip(views, weights, strict=True)), start=zero)
+        doubt = sum((v.doubt * np.abs(w) for v, w in zip(views, weights, strict=True)), start=zero)
+    return Shown(amplitude, size, doubt, views[0].members, views[0].condition)
 
 
 def _distinct(log_gap: np.ndarray, phase: np.ndarray, carried: np.ndarray) -> int:
     return sum(any(carried[k] for k in group) for group in clusters(log_gap, phase))
 
 
-def _picked(found: Modes, amplitude: np.ndarray, points: np.ndarray, k: np.ndarray) -> Decay:
+def _picked(found: Modes, view: Shown, points: np.ndarray, k: np.ndarray) -> Decay:
     phase, modulus = found.phase[points, k], found.log_modulus[points, k]
     alone = (phase == 0) | (np.abs(phase) == np.pi)
-    noise = np.where(modulus < _SMALL, found.log_noise[points], -np.inf)
-    height = np.abs(amplitude[points, k]) * np.where(alone, 1, 2)
-    return Decay(modulus, found.log_gap[points, k], np.abs(phase), height, noise)
+    noise = np.where(modulus < SMALL, found.log_noise[points], -np.inf)
+    size = np.abs(view.amplitude[points, k])
+    there = np.isfinite(found.log_modulus[points])
+    levels = np.round((there / view.members[points]).sum(axis=1))
+    shared = view.members[points, k] > 1
+    condition = view.condition[points, k]
+    with np.errstate(all="ignore"):
+        doubt = np.where(shared & (condition > _PARALLEL), np.inf, view.doubt[points, k] / size)
+        rough = np.where(modulus > -NEAR, -np.inf, found.log_unit[points] + np.log(condition))
+    return Decay(
+        modulus,
+        found.log_gap[points, k],
+        np.abs(phase),
+        size * np.where(alone, 1, 2),
+        noise,
+        np.zeros(len(points)),
+        np.where(np.isnan(doubt), np.inf, doubt),
+        np.where(shared, levels, 0.0),
+        rough,
+    )
 
 
 def _pairs(window: ChainWindow, segment: Segment, observable: str) -> list[_Pair]:

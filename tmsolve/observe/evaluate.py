@@ -13,9 +13,9 @@ import numpy as np
 from ..assemble.window import ChainWindow, place_in
 from ..errors import TooLargeError
 from ..operators.numbers import to_digits, to_double
-from .decay import Decay
 from .segment import Segment
 from .series import DISORDER, LEAST_ENERGY, ROOT, Monomial, Series
+from .slow import Decay
 
 #: Below this a cumulant at the temperature of the limit is zero, above its inverse infinite.
 _NOTHING = 1e-200

@@ -8,12 +8,14 @@ import numpy as np
 
 from ..declare import Point
 from ..errors import SolveError
-from .decay import Decay, decay, slowest
+from .decay import decay
 from .evaluate import Laws
 from .lost import LARGEST, MOST_POINTS, whole_spectrum
 from .partition import state_classes, vanishing
+from .second import slowest
 from .segment import Segment
 from .settle import Settler
+from .slow import Decay
 
 __all__ = ["decays", "gaps", "lengths", "log_gaps"]
 
@@ -40,8 +42,9 @@ def decays(laws: Laws, point: Point, a: str | None) -> Decay:
     undecided = np.flatnonzero(found.undecided)
     if undecided.size:
         others = f", nor at {undecided.size - 1} more points" if undecided.size > 1 else ""
+        what = "of the whole chain" if a is None else f"in the correlation of {a}"
         raise SolveError(
-            f"which mode decays slowest in the correlation of {a} is not decided at "
+            f"which mode decays slowest {what} is not decided at "
             f"{point.pick(int(undecided[0]))}{others}: in doubles its amplitude is lost in rounding, and longer "
             f"numbers are out of reach (at most {LARGEST} joint states of the cut, and about half a minute for all "
             "points together). Raise T, ask for fewer points at a time, or for correlation_length() of the whole chain",
@@ -67,18 +70,21 @@ def _sharpened(laws: Laws, point: Point, a: str | None) -> Decay:
 @np.errstate(under="ignore")
 def _slowest(laws: Laws, point: Point, _: str | None) -> tuple[Decay, np.ndarray]:
     """Return the slowest modes, and the points where doubles know them poorly."""
-    found = Decay.none(laws.size)
+    found, settler = Decay.none(laws.size), Settler(laws.window, point, None)
+    # On the nodes of a quadrature rule an eigenvalue below rounding means nothing.
+    grids = any(states.grid is not None for states in laws.window.chain.cell.values())
     doubtful: list[int] = []
     for segment in laws.segments():
         part = slowest(segment)
-        found.put(segment.indices, replace(part, log_gap=_limit(segment, part.log_gap)))
-        if segment.limit or len(segment.states) > LARGEST:
-            continue
-        lost = _lost(laws, point, segment, np.isposinf(part.log_gap))
-        if lost.size:
-            found.put(segment.indices[lost], _recovered(laws, point, segment, lost))
-        if laws.size <= MOST_POINTS:
-            doubtful += segment.indices[part.poor() & ~np.isposinf(part.log_gap)].tolist()
+        part = replace(part, log_gap=_limit(segment, part.log_gap))
+        if not (segment.limit or grids or segment.other_classes or len(segment.states) > LARGEST):
+            lost = _lost(laws, point, segment, np.isposinf(part.log_gap))
+            if lost.size <= MOST_POINTS:  # else ξ < 0.03 stays 0
+                settler.refine(segment, part, lost, keep=False)
+            settler.refine(segment, part, np.flatnonzero(part.rough()), keep=True)
+            if laws.size <= MOST_POINTS:
+                doubtful += segment.indices[part.poor() & ~np.isposinf(part.log_gap) & ~part.undecided].tolist()
+        found.put(segment.indices, part)
     return found, np.array(doubtful, dtype=np.intp)
 
 
@@ -92,19 +98,6 @@ def _lost(laws: Laws, point: Point, segment: Segment, nothing: np.ndarray) -> np
     most, values = len(segment.states) - 1, point.flat()
     lost = [i for i in asked if vanishing(laws.window, segment.states, values, int(segment.indices[i])) != most]
     return places if lost and asked.size < places.size else np.array(lost, dtype=np.intp)
-
-
-def _recovered(laws: Laws, point: Point, segment: Segment, lost: np.ndarray) -> Decay:
-    """Return slowest modes from longer numbers; none where these are out of reach (ξ is then below 0.03 cells)."""
-    result = Decay.none(lost.size)
-    if laws.size > MOST_POINTS:
-        return result
-    whole = whole_spectrum(laws, point, segment, 1)
-    modulus, phase, gap = (column[lost, 0] for column in whole)
-    there = np.flatnonzero(~np.isposinf(gap))
-    one, exact = np.ones(there.size), np.full(there.size, -np.inf)
-    result.put(there, Decay(modulus[there], gap[there], np.abs(phase[there]), one, exact))
-    return result
 
 
 @np.errstate(under="ignore")

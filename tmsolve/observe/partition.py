@@ -25,9 +25,9 @@ from ..tabulate.calling import number_table
 from ..tabulate.exact import exact_table
 from .residues import modulo, rank
 
-__all__ = ["state_classes", "vanishing"]
+__all__ = ["PRIMES", "Unknown", "labels", "state_classes", "vanishing"]
 
-_PRIMES = (2147483647, 2147483629)
+PRIMES = (2147483647, 2147483629)
 #: Points that have to be looked at one by one.
 _SINGLY = 64
 _LARGEST = 2048
@@ -37,7 +37,7 @@ _ENERGY = "energy"
 _Powers = dict[str, np.ndarray]
 
 
-class _Unknown(Exception):
+class Unknown(Exception):
     """A term has no exact value that holds for all points together."""
 
 
@@ -75,7 +75,7 @@ def state_classes(
             known = {**fixed, **dict.fromkeys(zero, Fraction(0))}
             groups.append((positions, _classes(window, states, known, observable)))
         return groups
-    except _Unknown:
+    except Unknown:
         if indices.size > _SINGLY:
             return [(everywhere, None)]
     return [(np.array([i]), _single(window, states, fixed, running, int(i), observable)) for i in everywhere]
@@ -87,7 +87,7 @@ def _single(
     here = {name: Fraction(repr(float(column[i]))) for name, column in running.items()}
     try:
         return _classes(window, states, {**fixed, **here}, a)
-    except _Unknown:
+    except Unknown:
         return None
 
 
@@ -107,11 +107,11 @@ def _same_zeros(running: Mapping[str, np.ndarray], size: int) -> list[tuple[np.n
 
 def _classes(window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observable: str) -> np.ndarray:
     terms = window.chain.observable(observable)
-    labels = _labels(window, states, known, terms)
-    return equitable(interned((labels[..., 0] << 31) + labels[..., 1]))
+    found = labels(window, states, known, terms)
+    return equitable(interned((found[..., 0] << 31) + found[..., 1]))
 
 
-def _labels(
+def labels(
     window: ChainWindow, states: np.ndarray, known: Mapping[str, Any], observables: Sequence[Term]
 ) -> np.ndarray:
     """Return the matrix modulo the primes, shape (states, states, primes)."""
@@ -126,7 +126,7 @@ def _labels(
     tables = [_hashed(powers, unit, weight) for powers, weight in factors]
     extra = [(sites, _hashed(powers, unit, None)) for sites, powers in parts]
     label = window.reduce(_Modular(), tables, extra)
-    full = (*(window.sizes[site] for site in window.sites), len(_PRIMES))
+    full = (*(window.sizes[site] for site in window.sites), len(PRIMES))
     return window.matrix(np.broadcast_to(label, full), 0)[np.ix_(states, states)]
 
 
@@ -148,14 +148,14 @@ def vanishing(window: ChainWindow, states: np.ndarray, values: Mapping[str, Any]
         for name, value in values.items()
     }
     try:
-        matrix = _labels(window, states, known, ())[..., 0].astype(object)
-    except _Unknown:
+        matrix = labels(window, states, known, ())[..., 0].astype(object)
+    except Unknown:
         return None
     # The rank of a high power counts the eigenvalues that are not 0.
     power, steps = matrix, 1
     while steps < len(matrix):
-        power, steps = power @ power % _PRIMES[0], 2 * steps
-    return len(matrix) - rank(power, _PRIMES[0])
+        power, steps = power @ power % PRIMES[0], 2 * steps
+    return len(matrix) - rank(power, PRIMES[0])
 
 
 def _factor(
@@ -197,7 +197,7 @@ def _powers(window: ChainWindow, term: Term, known: Mapping[str, Any], base: str
 def _values(window: ChainWindow, term: Term, known: Mapping[str, Any]) -> np.ndarray:
     """Return a term's values as fractions; a rounded one stands for itself."""
     if not all(isinstance(known.get(name), Fraction) for name in term.parameters):
-        raise _Unknown
+        raise Unknown
     states = [window.chain.cell[kind] for kind, _ in term.sites]
     exact = exact_table(term, states, known, ())
     if exact is not None:
@@ -221,8 +221,8 @@ def _hashed(powers: _Powers, unit: Mapping[str, int], weight: np.ndarray | None)
     """Return ∏ base^exponent · weight modulo the primes, shape (*states, primes)."""
     shape = weight.shape if weight is not None else next(iter(powers.values())).shape
     bases = {base: number for number, base in enumerate(sorted(unit))}
-    result = np.ones((*shape, len(_PRIMES)), dtype=np.int64)
-    for column, prime in enumerate(_PRIMES):
+    result = np.ones((*shape, len(PRIMES)), dtype=np.int64)
+    for column, prime in enumerate(PRIMES):
         drawn = np.random.default_rng(prime).integers(2**20, prime - 1, size=len(bases) + 1).tolist()
         flat = [1] * math.prod(shape)
         for base, table in powers.items():
@@ -241,9 +241,9 @@ class _Modular(ArrayAlgebra):
         """Multiply elementwise."""
         result = tables[0]
         for table in tables[1:]:
-            result = result * table % _PRIMES
+            result = result * table % PRIMES
         return result
 
     def sum(self, table: np.ndarray, axis: int) -> np.ndarray:
         """Add along one axis."""
-        return np.asarray(table.sum(axis=axis) % _PRIMES)
+        return np.asarray(table.sum(axis=axis) % PRIMES)

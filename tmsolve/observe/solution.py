@@ -9,20 +9,19 @@ from typing import Any
 import numpy as np
 
 from ..declare import Point
-from ..errors import NotApplicable, SolveError, listing, unknown_parameter
-from .arguments import check_count, read_distances, read_wave_numbers
+from ..errors import NotApplicable, SolveError, listing
+from .amplitudes import amplitudes
+from .arguments import check_count, read_derivative, read_distances, read_wave_numbers
 from .bounds import diagnose, error_bounds
 from .correlations import connected_correlation
-from .decay import Decay
 from .evaluate import Laws
 from .lengths import decays, gaps, lengths, log_gaps
 from .levels import Level, levels
 from .quantities import DIFFERENTIABLE, Quantity, parse_quantity, series_of
+from .slow import Decay
 from .structure import structure_factors
 
 __all__ = ["Solution"]
-
-_HIGHEST_ORDER = 6
 
 
 @dataclass(frozen=True, eq=False)
@@ -138,18 +137,7 @@ class Solution:
         >>> round(float(r.derivative("J")), 12)                   # −tanh 1
         -0.761594155956
         """
-        chain = self.point.chain
-        known = (*chain.parameters, "T")
-        for name in names:
-            if name not in known:
-                raise unknown_parameter(name, chain.parameters)
-        if len(names) > _HIGHEST_ORDER:
-            raise NotApplicable(f"derivatives go to order {_HIGHEST_ORDER}, got {len(names)}")
-        quantity = parse_quantity(of, chain)
-        if quantity.name not in DIFFERENTIABLE:
-            raise NotApplicable(
-                f"{quantity} is not a derivative of the free energy; choose of= from {listing(DIFFERENTIABLE)}"
-            )
+        quantity = read_derivative(names, of, self.point.chain)
         return self._value(quantity, names)
 
     def correlation(self, a: str, b: str, distances: Any, connected: bool = True) -> np.ndarray:
@@ -224,8 +212,20 @@ class Solution:
         return self._shaped(self._decay(a).wave_number, "wave number")
 
     def correlation_amplitude(self, a: str) -> np.ndarray:
-        """Amplitude A of the same mode: ⟨a₀a_r⟩ − ⟨a⟩² → A cos(kr + φ) e^{−r/ξ} at large r; 0 where there is none."""
-        return self._shaped(self._decay(a).amplitude, "correlation amplitude")
+        """Amplitude A of the same mode: ⟨a₀a_r⟩ − ⟨a⟩² → A r^p cos(kr + φ) e^{−r/ξ} at large r; 0 where there is none.
+
+        p is the `correlation_power`. Of eigenvalues that nearly coincide the slowest alone counts, equal ones
+        count together; what neither doubles nor longer numbers tell apart is a SolveError.
+        """
+        return self._shaped(self._amplitude(a).amplitude, "correlation amplitude")
+
+    def correlation_power(self, a: str) -> np.ndarray:
+        """Power p of the distance in that law: 0, or more where ``a`` shows an eigenvalue with a Jordan block."""
+        return self._shaped(self._amplitude(a).power.astype(int), "power of the distance")
+
+    def _amplitude(self, a: str) -> Decay:
+        self.point.chain.observable(a)
+        return amplitudes(self.laws, self.point, a)
 
     def _decay(self, a: str | None) -> Decay:
         if a is not None:
