@@ -7,6 +7,7 @@ from fractions import Fraction
 from typing import Any
 
 from .._optional import require
+from ..operators.midpoints import flint_precision
 from .raw import Raw, raw_fraction
 
 __all__ = ["Balls", "ball_ends"]
@@ -31,12 +32,12 @@ class Balls:
 
     def working(self) -> AbstractContextManager[Any]:
         """Return the context that sets the length of midpoints."""
-        return self.flint.ctx.workprec(self.bits)
+        return flint_precision(self.bits, self.flint.ctx)
 
     def exponential(self, exponent: Fraction) -> Any:
         """Enclose exp of a fraction."""
         # The error of the exponent is absolute in the exponential: its whole part takes bits of its own.
-        with self.flint.ctx.workprec(self.bits + int(abs(exponent)).bit_length() + _GUARD):
+        with flint_precision(self.bits + int(abs(exponent)).bit_length() + _GUARD, self.flint.ctx):
             return self.rational(exponent).exp()
 
     def rational(self, value: Fraction) -> Any:
@@ -54,7 +55,7 @@ class Balls:
 
     def log_ends(self, low: Raw, high: Raw) -> tuple[Fraction, Fraction]:
         """Bound the logarithms of all numbers between two positive ones."""
-        with self.flint.ctx.workprec(self.bits + _GUARD):
+        with flint_precision(self.bits + _GUARD, self.flint.ctx):
             return (
                 raw_fraction(ball_ends(self.exact(low).log())[0]),
                 raw_fraction(ball_ends(self.exact(high).log())[1]),

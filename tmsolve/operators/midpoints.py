@@ -5,8 +5,8 @@ midpoints (arf), not on balls: how far rounding reaches is bounded by the Perron
 for every number system alike. Functions are taken as balls and rounded to the midpoint; the
 ball is the check that the function was good to the last bits.
 
-The length of flint's numbers is one setting for all threads. `Numbers.working` therefore
-holds a lock, and no such number may leave it: results are handed on as mpmath numbers.
+The length of flint's numbers is one setting for all threads. `flint_precision` therefore holds
+a lock, and no such number may leave it: results are handed on as mpmath numbers.
 """
 
 from __future__ import annotations
@@ -22,7 +22,7 @@ import numpy as np
 
 from .numbers import Numbers, multiprecision
 
-__all__ = ["flint_module", "long_numbers", "midpoints"]
+__all__ = ["flint_module", "flint_precision", "long_numbers", "midpoints"]
 
 _LOCK = threading.RLock()
 #: Bits that a function may be short of the length asked for.
@@ -76,12 +76,24 @@ def midpoints(bits: int, flint: Any) -> Numbers:
         power_of_two=np.frompyfunc(power, 1, 1),
         scalar=scalar,
         arithmetic="python-flint",
-        working=partial(_working, bits, flint.ctx),
+        working=partial(flint_precision, bits, flint.ctx),
     )
 
 
 @contextmanager
-def _working(bits: int, context: Any) -> Iterator[None]:
+def flint_precision(bits: int, context: Any) -> Iterator[None]:
+    """Hold flint's length of numbers, ``flint.ctx.prec``, for one thread; all that sets it goes through here.
+
+    Examples
+    --------
+    >>> from types import SimpleNamespace
+    >>> context = SimpleNamespace(prec=53)
+    >>> with flint_precision(128, context):
+    ...     context.prec
+    128
+    >>> context.prec
+    53
+    """
     with _LOCK:
         before = context.prec
         context.prec = bits
