@@ -50,19 +50,21 @@ def test_exact_and_annealed_averages(tm):
     assert annealed["results"]["free_energy"]["value"] < expected.free_energy.value
     assert annealed["results"]["free_energy"]["error"] == 0
     part = tm(*FIELD, "--method", "annealed", "--read", "free_energy,lyapunov(1)")
-    assert part.code == 3 and "lyapunov" in part.err
+    assert part.code == 3 and "lyapunov" in part.err and "; take --method sample" in part.err
+    other = tm(*FIELD, *FEW, "--read", "average_correlation_length")
+    assert other.code == 1 and "average_correlation_length" in other.err and "; take --method exact" in other.err
 
 
 def test_zero_temperature(tm):
     words = ("disorder", "random_field_ising", "--random", "h=choice(-0.8:1/2,0.8:1/2)", "-p", "T=0", *FEW)
     document = tm(*words, "--json").json
-    assert document["energy_exact"] == "-37/30" and document["results"]["energy"]["error"] == 0
+    assert document["results"]["energy"] == {"value": -37 / 30, "error": 0.0, "exact": "-37/30"}
     chain = models.load("random_field_ising").chain.fix(J=1, H=0)
     expected = disordered_ground_state(chain, {"h": {"-0.8": "1/2", "0.8": "1/2"}}, cells=20, replicas=4, rng=3)
     assert document["results"]["residual_entropy"]["value"] == expected.residual_entropy.value
     assert "-37/30" in tm(*words).out
     sampled = tm(*FIELD, "-p", "T=0", *FEW, "--json").json
-    assert sampled["energy_exact"] is None and sampled["results"]["energy"]["error"] > 0
+    assert sampled["results"]["energy"]["exact"] is None and sampled["results"]["energy"]["error"] > 0
 
 
 @pytest.mark.parametrize(
@@ -94,7 +96,12 @@ def test_zero_temperature(tm):
         ((*FIELD, "--read", "mean"), ["mean takes 1 names"]),
         ((*FIELD, "--read", "lyapunov(x)"), ["whole number k"]),
         ((*FIELD, "--method", "exakt"), ["Did you mean 'exact'?"]),
-        ((*FIELD, "-p", "T=0", "--read", "entropy"), ["leave --read out"]),
+        ((*FIELD, "-p", "T=0", "--read", "entropy"), ["no average at T = 0 'entropy'", "residual_entropy"]),
+        ((*FIELD, "-p", "T=0", "--method", "exact"), ["leave --method out"]),
+        ((*FIELD, "-p", "T=0", "--read", "domains"), ["domains takes 1 names"]),
+        ((*FIELD, "-p", "T=0", "--longest", "0"), ["--longest must be a whole number >= 1"]),
+        ((*FIELD, "-p", "T=0", "--longest", "3", "--read", "energy"), ["--longest belongs to domains(a)"]),
+        ((*FIELD, "--longest", "3"), ["--longest belongs to -p T=0"]),
         ((*FIELD, "--seed", "1.5"), ["--seed must be a whole number >= 0, got '1.5'"]),
         ((*FIELD, "--seed", "one"), ["--seed must be a whole number >= 0, got 'one'"]),
         ((*FIELD, "--cells", ""), ["--cells must be a whole number >= 1, got ''"]),

@@ -11,9 +11,12 @@ from tests.disorder.ground_reference import enumerated
 from tests.refusal import refused
 from tmsolve import Chain, StateSet, bond, ising, models, site, spins, weight
 from tmsolve.disorder.averages import Average
+from tmsolve.disorder.cold_sample import ground_chains
+from tmsolve.disorder.cold_steps import ColdSteps
 from tmsolve.disorder.ground_energy import disordered_ground_state
+from tmsolve.disorder.problem import read_problem
 from tmsolve.disorder.quenched import quenched
-from tmsolve.errors import DeclarationError, NotApplicable, ParameterError, SolveError
+from tmsolve.errors import DeclarationError, NotApplicable, ParameterError, SolveError, TooLargeError
 
 FIELD = models.load("random_field_ising").chain
 BOND = models.load("random_bond_ising").chain
@@ -297,6 +300,26 @@ def test_seeds():
     assert once.domains("m").walls == again.domains("m").walls
 
 
+def test_the_same_seed_is_the_same_chains_in_every_field():
+    # In one chain no field turns a spin back; other chains would differ by more than the steps of the field.
+    options = {"cells": 200, "replicas": 8, "rng": 6}
+    fields = [Fraction(k, 100) for k in range(10, 18)]
+    curve = [disordered_ground_state(FIELD.fix(J=1, H=h), {"h": "normal(0,1)"}, **options).mean("m") for h in fields]
+    assert (np.diff([one.value for one in curve]) >= -1e-12).all()
+    assert curve[0].value < curve[-1].value < curve[0].value + 4 * curve[0].error
+
+
+def test_a_list_beside_a_law_is_averaged_over_what_is_random():
+    fields = np.tile([0.5, -2.5, 1.5, -0.5], 5)
+    found = disordered_ground_state(FIELD.fix(H=0), {"h": fields, "J": {"0.2": "1/2", 2: "1/2"}}, cells=20, rng=2)
+    assert found.replicas == 64 and found.energy.error > 0
+    assert found.mean("m").error > 0 and found.domains("m").walls.error > 0
+    # Weak bonds everywhere leave every spin to its field.
+    free = disordered_ground_state(FIELD.fix(H=0), {"h": fields, "J": {"0.2": "1"}}, cells=20, replicas=2, rng=2)
+    walls = free.domains("m").walls
+    assert walls.value == pytest.approx(np.mean(np.diff(np.sign(fields)) != 0) * 19 / 20, rel=1e-12)
+
+
 def test_what_is_refused():
     found = disordered_ground_state(FIELD.fix(J=1, H=0), {"h": "normal(0,1)"}, cells=40, replicas=4, rng=1)
     refused(ParameterError, lambda: found.mean("mm"), "'mm'", "Did you mean 'm'?")
@@ -315,4 +338,8 @@ def test_what_is_refused():
     wild = Chain(FIELD.cell, FIELD.terms, observables={"w": lambda s: float("inf") * s})
     found = disordered_ground_state(wild.fix(J=1, H=0), {"h": "normal(0,1)"}, cells=40, replicas=4, rng=1)
     refused(SolveError, lambda: found.mean("w"), "an observable is finite")
+    hard = Chain(ising(), [site(lambda s, c: np.inf if c else -s)], observables={"m": lambda s: s})
+    refused(SolveError, lambda: disordered_ground_state(hard, {"c": {0: "1/2", 1: "1/2"}}), "no configuration at all")
+    steps = ColdSteps(read_problem(FIELD.fix(J=1, H=0), {"h": "normal(0,1)"}, cold=True))
+    refused(TooLargeError, lambda: next(ground_chains(steps, {}, 10**8, 2, 1)), "100000000 cells", "take fewer cells")
     refused(DeclarationError, lambda: disordered_ground_state(FIELD.fix(J=1, H=0), {"h": [1, 2]}, cells=3), "2 values")

@@ -7,7 +7,8 @@ import sys
 from collections.abc import Mapping
 from typing import TYPE_CHECKING, Any
 
-from .disorder_averages import add_averaging, check_method, counts, read_averaging
+from .disorder_averages import add_averaging, check_method, read_averaging
+from .disorder_ground import add_ground, solve_ground
 from .disorder_ramp import add_ramp, ramp
 from .disorder_realised import add_realised, solve_realised
 from .disorder_shown import head, origin, shown
@@ -18,7 +19,7 @@ from .outcome import DONE, SOME_FAILED, UsageError
 from .parser import Parser
 from .random_laws import add_random, read_random
 from .table import Number, table
-from .together import refuse_beside, refuse_without
+from .together import refuse_without
 
 if TYPE_CHECKING:
     from ..models import LoadedModel
@@ -26,7 +27,8 @@ if TYPE_CHECKING:
 OPERANDS = "MODEL (--random NAME=LAW | --realisation FILE.csv)"
 DESCRIPTION = """\
 Average an infinite chain over quenched disorder: parameters that are random, independently from cell to
-cell. Numbers are per cell, with the error of the last two digits in brackets. At T = 0 the ground state.
+cell. Numbers are per cell, with the error of the last two digits in brackets. At T = 0 ground states: energy,
+residual entropy, means, and the domains of every observable of one site, as fractions where they are exact.
 With --axis the averages along a ramp, as a table, a file and a figure with error bars. With --realisation
 one given chain, open or a ring: ln Z, means, and the means in every cell."""
 EXAMPLES = """\
@@ -34,14 +36,11 @@ EXAMPLES = """\
   tmsolve disorder random_bond_ising --random "J=choice(-1:0.5,1:0.5)" --read free_energy,correlation_length
   tmsolve disorder random_field_ising --random "h=uniform(-1,1)" --method exact --json
   tmsolve disorder random_field_ising --random "h=choice(-0.8:1/2,0.8:1/2)" -p T=0
+  tmsolve disorder random_field_ising --random "h=normal(0,1)" -p T=0 --read "mean(m),domains(m)" --longest 10
   tmsolve disorder diluted_blume_capel --random "c=choice(0:0.1,1:0.9)" --cells 2000 --replicas 32 --seed 7
   tmsolve disorder random_field_ising --random "h=normal(0,1)" --axis H=0:2:9 --read "mean(m)" --plot m.png
   tmsolve disorder random_field_ising --realisation fields.csv --boundary ring --out profile.csv
 """
-_IDLE_AT_ZERO = {
-    "read": "energy and residual entropy of the ground state are printed together",
-    "method": "ground states have a method of their own",
-}
 
 
 def configure(parser: Parser) -> None:
@@ -49,6 +48,7 @@ def configure(parser: Parser) -> None:
     add_model(parser, "value of a parameter that is not random, or of T, read exactly: 0.4, 2/5, 1e-3; repeatable")
     add_random(parser, ", needed at least once unless --realisation is given")
     add_averaging(parser)
+    add_ground(parser)
     add_ramp(parser)
     add_realised(parser)
     add_common(parser)
@@ -69,7 +69,8 @@ def run(arguments: argparse.Namespace) -> int:
     refuse_without(arguments, "--axis NAME=START:STOP:COUNT", ("out", "plot"))
     values = fill(given_values(arguments, model), model, running=laws)
     if not values.all["T"]:
-        return _cold(arguments, model, values, laws)
+        return solve_ground(arguments, model, values, laws)
+    refuse_without(arguments, "-p T=0", ("longest",))
     averaging = read_averaging(arguments, model, laws)
     averages = averaging.at(values.numbers)
     if not averages.found:
@@ -88,26 +89,6 @@ def run(arguments: argparse.Namespace) -> int:
     for name, why in averages.failures.items():
         print(f"tmsolve disorder: {name} failed: {why}", file=sys.stderr)
     return SOME_FAILED if averages.failures else DONE
-
-
-def _cold(arguments: argparse.Namespace, model: LoadedModel, values: Values, laws: Mapping[str, Any]) -> int:
-    refuse_beside(arguments, "-p T=0", _IDLE_AT_ZERO)
-    from ..disorder.ground_energy import disordered_ground_state
-
-    found = disordered_ground_state(model.chain.fix(**values.numbers), laws, **counts(arguments))
-    facts = {"cells": found.cells, "replicas": found.replicas, "seed": found.seed}
-    document = _document(arguments, model, values, laws, facts)
-    exact = found.messages is not None
-    document["results"] = {
-        "energy": {"value": float(found.energy), "error": 0.0 if exact else getattr(found.energy, "error", 0.0)},
-        "residual_entropy": {"value": found.residual_entropy.value, "error": found.residual_entropy.error},
-    }
-    document["energy_exact"] = str(found.energy) if exact else None
-    if arguments.json:
-        print(json_text(document))
-    else:
-        print("\n\n".join([head(model, values, laws, facts), str(found)]))
-    return DONE
 
 
 def _document(

@@ -7,7 +7,7 @@ from collections.abc import Mapping
 from dataclasses import dataclass, field
 from typing import TYPE_CHECKING, Any
 
-from ..errors import ParameterError, TmsolveError, did_you_mean
+from ..errors import NotApplicable, ParameterError, TmsolveError, did_you_mean
 from .outcome import UsageError
 from .parser import Parser
 from .together import refuse_beside
@@ -25,6 +25,8 @@ METHODS = ("sample", "exact", "annealed")
 #: What is taken when nothing is said.
 _CELLS, _REPLICAS = 500, 128
 _NOTHING_DRAWN = "nothing is drawn at random, the average is an integral"
+#: Averages that one method alone knows.
+_ONLY_BY = {"average_correlation_length": "exact", "lyapunov": "sample"}
 #: Averages that infinite chains without disorder do not have: LaTeX and unit.
 _LOOKS = {
     "lyapunov": (r"\gamma", "1"),
@@ -53,7 +55,10 @@ def add_averaging(parser: Parser) -> None:
         "susceptibility(a) susceptibility(a,b) correlation_length average_correlation_length derivative(p) "
         "derivative(p,q) lyapunov(k); a, b are observables, p, q parameters or T. Default: free_energy "
         "internal_energy entropy specific_heat correlation_length, and of every observable mean(a) and "
-        "susceptibility(a)",
+        "susceptibility(a). At T = 0: energy residual_entropy mean(a) overlap(a) walls(a) mean_length(a) domains(a); "
+        "overlap is the squared mean in a cell, averaged; walls are the places per cell where a changes, mean_length "
+        "is that of the cells between them, domains a table by value. Default: energy residual_entropy, and of every "
+        "observable mean(a) and domains(a)",
     )
 
 
@@ -93,8 +98,13 @@ class Averaging:
             try:
                 found[name] = evaluate(averages, method, arguments)
             except TmsolveError as error:
-                failures[name] = error
+                failures[name] = self._advised(method, error)
         return Averages(found, failures, facts)
+
+    def _advised(self, name: str, error: TmsolveError) -> TmsolveError:
+        """Name the method that knows an average, where it is another one."""
+        other = _ONLY_BY.get(name, self.method)
+        return error if other == self.method else NotApplicable(f"{error}; take --method {other}")
 
     def _averages(self, chain: Chain, seed: int | None) -> tuple[Any, dict[str, Any]]:
         """Return what the readings are read from, and what to tell about it."""

@@ -11,6 +11,7 @@ from typing import TYPE_CHECKING, Any
 
 from ..errors import ParameterError, TmsolveError
 from .disorder_averages import Averages, Averaging, read_averaging
+from .disorder_ground import read_ground
 from .disorder_shown import head, origin, shown
 from .figures import draw_averages, tried
 from .files import check_output, figure_path
@@ -21,6 +22,7 @@ from .options import add_plot
 from .outcome import DONE, INTERRUPTED, SOME_FAILED, UsageError
 from .parser import Parser
 from .table import Number, show_exact, table
+from .together import refuse_beside, refuse_without
 
 if TYPE_CHECKING:
     from ..models import LoadedModel
@@ -48,9 +50,7 @@ def ramp(arguments: argparse.Namespace, model: LoadedModel, laws: Mapping[str, A
     if axis.name in given:
         raise UsageError(f"{axis.name} is an axis and is given with -p as well; leave one of them out")
     values = fill(given, model, running=(*laws, axis.name))
-    if min(axis if axis.name == "T" else [values.all["T"]]) <= 0:
-        raise UsageError("a ramp is averaged at T > 0; for the ground state give -p T=0 without --axis")
-    averaging = read_averaging(arguments, model, laws)
+    averaging = _averaging(arguments, model, laws, axis, values)
     points, complete = _points(averaging, values, axis)
     if complete and not any(point.found for point in points):
         raise next(iter(points[0].failures.values()))
@@ -66,6 +66,19 @@ def ramp(arguments: argparse.Namespace, model: LoadedModel, laws: Mapping[str, A
     _tell(arguments, axis, points, out, None if trouble or not complete else figure, trouble)
     failed = trouble or any(point.failures for point in points)
     return INTERRUPTED if not complete else SOME_FAILED if failed else DONE
+
+
+def _averaging(
+    arguments: argparse.Namespace, model: LoadedModel, laws: Mapping[str, Any], axis: Axis, values: Values
+) -> Averaging:
+    least = min(axis if axis.name == "T" else [values.all["T"]])
+    if axis.name == "T" and least <= 0:
+        raise UsageError("a ramp of T runs over T > 0; for ground states give -p T=0, and another axis or none")
+    if not least:
+        refuse_beside(arguments, "--axis", {"longest": "lengths of domains are tables"})
+        return read_ground(arguments, model, laws, tables=False)
+    refuse_without(arguments, "-p T=0", ("longest",))
+    return read_averaging(arguments, model, laws)
 
 
 def _axis(arguments: argparse.Namespace, model: LoadedModel, laws: Mapping[str, Any]) -> Axis:

@@ -38,6 +38,16 @@ class GroundDomains:
         A function of one site per cell.
     values : tuple of Fraction
         Its values, ascending.
+
+    Examples
+    --------
+    In fields above 2J every spin of an Ising chain follows its own:
+
+    >>> from tmsolve import Chain, bond, disordered_ground_state, ising, site
+    >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t), site(lambda s, h: -h*s)], {"m": lambda s: s})
+    >>> found = disordered_ground_state(chain.fix(J=1), {"h": {-3: "1/3", 3: "2/3"}}, rng=1).domains("m")
+    >>> [str(number) for number in (found.walls, found.mean_length(1), *found.probabilities(-1, 3))]
+    ['4/9', '3', '2/3', '2/9', '2/27']
     """
 
     observable: str
@@ -65,8 +75,10 @@ class GroundDomains:
     def walls(self) -> Number:
         """Domain walls per cell: places between neighbouring cells of different values."""
         runs = self.density()
+        if isinstance(runs, Fraction) or not self._ended:
+            return runs
         # A list of cells has one run more than walls.
-        return Average(float(runs) - 1 / self._averages.cells, 0.0) if self._ended else runs
+        return Average(runs.value - 1 / self._averages.cells, runs.error, runs.degrees)
 
     def mean_length(self, value: Any = None) -> Number:
         """Mean length of the runs of the value, of all runs when it is left out: cells over runs.
@@ -109,7 +121,7 @@ class GroundDomains:
             )
         begun = self._sampled(GroundChains.begun, names)
         counted = self._sampled(lambda chains, name: chains.lengths(name, int(longest)), names)
-        unseen = 0.0 if self._ended else 1 / (float(begun.sum()) * self._averages.cells)
+        unseen = 0.0 if self._averages.replicas == 1 else 1 / (float(begun.sum()) * self._averages.cells)
         found = [average_ratio(row, begun) for row in counted]
         return tuple(one if one.value else Average(0.0, unseen, one.degrees) for one in found)
 

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator, Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -187,22 +187,27 @@ def ground_chains(
             "are kept; take fewer cells",
             limit=_LARGEST,
         )
-    rng = np.random.default_rng([seed, 3])
+    # Cells have a stream of their own: they are the same however long the walks before and behind them are.
+    streams = [np.random.default_rng([seed, 3, part]) for part in range(3)]
     together = max(1, _TOGETHER // each)
     for begin in range(0, replicas, together):
-        yield _sampled(steps, quantities, cells, min(together, replicas - begin), rng)
+        yield _sampled(steps, quantities, cells, min(together, replicas - begin), streams)
 
 
 def _sampled(
-    steps: ColdSteps, quantities: Mapping[str, Quantity], cells: int, replicas: int, rng: np.random.Generator
+    steps: ColdSteps,
+    quantities: Mapping[str, Quantity],
+    cells: int,
+    replicas: int,
+    streams: Sequence[np.random.Generator],
 ) -> GroundChains:
     ended = steps.problem.listed
     longest = longest_walk(cells)
     left, message = (
         cold_start(steps.states, replicas) if ended else settle(steps, rng, replicas, longest, backwards).message
-        for backwards in (False, True)
+        for backwards, rng in zip((False, True), streams[1:], strict=True)
     )
-    draws = steps.problem.draw(rng, 0, cells, replicas)
+    draws = steps.problem.draw(streams[0], 0, cells, replicas)
     chances = np.empty((steps.states, steps.states, cells, replicas))
     means: dict[str, list[np.ndarray]] = {name: [] for name in quantities}
     for stop in range(cells, 0, -_LOOK):

@@ -226,9 +226,10 @@ def disordered_ground_state(
     exact = exact_energy(steps, most)
     counted = None if exact is None else message_chain(exact_moves(steps, COUNTS), most)
     averages = GroundAverages(problem, cells, count, seed, 0 if exact is None else most, counted is not None)
-    energy, entropy, notes = _sample(steps, np.random.default_rng([seed, 2]), cells, count)
-    if counted is not None:
-        entropy = Average(counted.entropy, 0.0)
+    message, notes = _begun(steps, seed, cells, count)
+    if exact is not None and counted is not None:
+        return DisorderedGround(*exact, Average(counted.entropy, 0.0), cells, count, seed, notes, averages)
+    energy, entropy = _walked(steps, message, seed, cells, count)
     found: tuple[Number, int | None] = (energy, None) if exact is None else exact
     return DisorderedGround(*found, entropy, cells, count, seed, notes, averages)
 
@@ -256,21 +257,24 @@ def _replicas(problem: Problem, replicas: Any) -> int:
     return count
 
 
-def _sample(
-    steps: ColdSteps, rng: np.random.Generator, cells: int, replicas: int
-) -> tuple[Average, Average, tuple[str, ...]]:
-    """Walk over replicas, counting after the end is forgotten; return energy and entropy per cell, and notes."""
-    message: Counted = cold_start(steps.states, replicas)
-    notes: tuple[str, ...] = ()
-    if not steps.problem.listed:
-        longest = longest_walk(cells)
-        settled = settle(steps, rng, replicas, longest)
-        message = settled.message
-        if not settled.forgotten:
-            notes = (
-                f"messages from different ends still differ after {longest} cells: averages may depend on the ends, "
-                "which are free; take more cells to see whether they do",
-            )
+def _begun(steps: ColdSteps, seed: int, cells: int, replicas: int) -> tuple[Counted, tuple[str, ...]]:
+    """Return the messages before the first cells that count, and what to tell about them."""
+    if steps.problem.listed:
+        return cold_start(steps.states, replicas), ()
+    longest = longest_walk(cells)
+    settled = settle(steps, np.random.default_rng([seed, 2, 1]), replicas, longest)
+    if settled.forgotten:
+        return settled.message, ()
+    return settled.message, (
+        f"messages from different ends still differ after {longest} cells: averages may depend on the ends, which are "
+        "free; take more cells to see whether they do",
+    )
+
+
+def _walked(steps: ColdSteps, message: Counted, seed: int, cells: int, replicas: int) -> tuple[Average, Average]:
+    """Walk over the cells that count; return energy and entropy per cell."""
+    # These cells have a stream of their own: they are the same however long the walk before them is.
+    rng = np.random.default_rng([seed, 2])
     energy, entropy = np.zeros(replicas), np.zeros(replicas)
     for begin in range(0, cells, 64):
         count = min(64, cells - begin)
@@ -281,4 +285,4 @@ def _sample(
             entropy += more
     if steps.problem.listed:
         entropy += least_logs(message.energy, message.ways, 0)[1]
-    return average(energy / cells), average(entropy / cells), notes
+    return average(energy / cells), average(entropy / cells)
