@@ -12,7 +12,7 @@ from .near_circle import NEAR, near_modes
 from .small import long_modes
 from .spectrum import deflated, polar, together
 
-__all__ = ["Modes", "Shown", "modes", "shown"]
+__all__ = ["Modes", "Shown", "modes", "plain_modes", "shown"]
 
 #: Eigenvalues so much smaller (in ln) than the matrix are looked for in long numbers, where there are any.
 _SMALL = -11.0
@@ -57,11 +57,45 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
     numbers : Numbers
         Number system of both.
     """
+    found, log_size = _plain(chance, law, numbers, merged=True)
+    log_modulus, phase, log_gap, right, left = found.log_modulus, found.phase, found.log_gap, found.right, found.left
+    if numbers.exact_exponent and len(chance) <= _LARGEST:
+        for i in np.flatnonzero((log_modulus - log_size[:, None] < _SMALL).any(axis=1)):
+            likeliest = int(np.argmax(law[:, i]))
+            kept = np.delete(np.arange(len(chance)), likeliest)
+            log_modulus[i], phase[i], right[i], left[i] = long_modes(chance[..., i], kept, likeliest, numbers)
+        with np.errstate(divide="ignore"):
+            log_gap[:] = np.log(np.maximum(-log_modulus, 0.0))
+    for near in near_modes(chance, log_modulus, phase, numbers):
+        near.replace_in(log_modulus, phase, log_gap)
+        if near.right is not None and near.left is not None:
+            right[near.points, :, : near.right.shape[2]] = near.right
+            left[near.points, : near.left.shape[1]] = near.left
+    return found
+
+
+def plain_modes(chance: np.ndarray, law: np.ndarray) -> Modes:
+    """Return the same from doubles as LAPACK has them, at no further cost.
+
+    Modes that merge stay the two that rounding makes of them, and gaps are known absolutely:
+    that is enough to follow a pair, not to give its length.
+
+    Parameters
+    ----------
+    chance : ndarray, shape (n, n, batch)
+    law : ndarray, shape (n, batch)
+    """
+    return _plain(chance, law, DOUBLE, merged=False)[0]
+
+
+def _plain(chance: np.ndarray, law: np.ndarray, numbers: Numbers, merged: bool) -> tuple[Modes, np.ndarray]:
+    """Return modes by eigenvectors of the matrix without its Perron mode, and the logarithm of that matrix's size."""
     rest, log_size, log_noise, kept = deflated(chance, law, numbers)
     n, batch = len(chance), chance.shape[-1]
     matrix = np.ascontiguousarray(np.moveaxis(rest, -1, 0))
     values, vectors, inverse = _eigen(matrix)
-    merge(matrix, values)
+    if merged:
+        merge(matrix, values)
     right = np.zeros((batch, n, n - 1), dtype=np.complex128)
     left = np.zeros((batch, n - 1, n), dtype=np.complex128)
     # Constants are free in right vectors, and left vectors sum to 0: both are felt through differences only.
@@ -69,20 +103,10 @@ def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Mod
     np.put_along_axis(left, kept.T[:, None, :], inverse, axis=2)
     left[np.arange(batch), :, np.argmax(law, axis=0)] = -inverse.sum(axis=2)
     log_modulus, phase = polar(values, log_size)
-    if numbers.exact_exponent and n <= _LARGEST:
-        for i in np.flatnonzero((log_modulus - log_size[:, None] < _SMALL).any(axis=1)):
-            long = long_modes(chance[..., i], kept[:, i], int(np.argmax(law[:, i])), numbers)
-            log_modulus[i], phase[i], right[i], left[i] = long
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
     log_unit = np.maximum(log_noise, log_size + np.log(4 * n * ROUNDING))
-    found = Modes(log_modulus, phase, log_gap, right, left, log_noise, log_unit)
-    for near in near_modes(chance, log_modulus, phase, numbers):
-        near.replace_in(log_modulus, phase, log_gap)
-        if near.right is not None and near.left is not None:
-            right[near.points, :, : near.right.shape[2]] = near.right
-            left[near.points, : near.left.shape[1]] = near.left
-    return found
+    return Modes(log_modulus, phase, log_gap, right, left, log_noise, log_unit), log_size
 
 
 def _eigen(matrix: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:

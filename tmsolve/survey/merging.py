@@ -17,6 +17,7 @@ import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow
+from ..eigen.modes import Modes, plain_modes, shown
 from ..observe.correlations import anchors
 from ..observe.segment import Segment
 from ..observe.solution import Solution
@@ -29,7 +30,6 @@ _AMPLITUDE = 1e-11
 _IMAGINARY = 1e-7
 #: Modes this small may be the rounding of an eigenvalue 0 with a long Jordan chain.
 _GONE = 1e-4
-_TOGETHER = 1e-9
 
 
 @dataclass(frozen=True, eq=False)
@@ -84,17 +84,28 @@ def leading(solution: Solution, channels: Sequence[str | None]) -> list[Leading]
 
 
 def _fill(window: ChainWindow, segment: Segment, channels: dict[int, str | None], found: list[Leading]) -> None:
-    chances = segment.law.double_chance()
-    ends = {n: None if name is None else _ends(window, segment, name) for n, name in channels.items()}
-    for i, index in enumerate(segment.indices):
-        values, right = np.linalg.eig(chances[i])
-        values = values.astype(np.complex128)
-        perron = int(np.argmin(np.abs(values - 1)))
-        order = np.array([k for k in np.argsort(-np.abs(values), kind="stable") if k != perron], dtype=np.intp)
-        for n, parts in ends.items():
-            k = _slowest(values, right, order, None if parts is None else [p[:, :, i] for p in parts])
-            if k is not None:
-                found[n].value[index], found[n].split[index] = _split(values[order], values[k])
+    if len(segment.states) < 2:
+        return
+    law = segment.law
+    seen = plain_modes(to_double(law.pair.chance), np.asarray(to_double(law.stationary)))
+    values = np.where(np.isfinite(seen.log_modulus), np.exp(seen.log_modulus + 1j * seen.phase), 0.0)
+    for n, name in channels.items():
+        shows = np.abs(values) > _GONE
+        if name is not None:
+            shows &= _carried(seen, *_ends(window, segment, name))
+        there = np.flatnonzero(shows.any(axis=1))
+        mode = values[there, shows[there].argmax(axis=1)]
+        found[n].value[segment.indices[there]], found[n].split[segment.indices[there]] = _split(values[there], mode)
+
+
+def _carried(seen: Modes, sources: np.ndarray, targets: np.ndarray) -> np.ndarray:
+    """Return whether some pair of an observable's parts shows a mode, shape (points, modes)."""
+    result = np.zeros(seen.phase.shape, dtype=bool)
+    for source in sources:
+        for target in targets:
+            scale = np.abs(source).sum(axis=0) * np.abs(target).max(axis=0)
+            result |= np.abs(shown(seen, source, target).amplitude) > _AMPLITUDE * scale[:, None]
+    return result
 
 
 def _ends(window: ChainWindow, segment: Segment, observable: str) -> tuple[np.ndarray, np.ndarray]:
@@ -113,34 +124,14 @@ def _ends(window: ChainWindow, segment: Segment, observable: str) -> tuple[np.nd
     return first, second
 
 
-def _slowest(values: np.ndarray, right: np.ndarray, order: np.ndarray, parts: list[np.ndarray] | None) -> int | None:
-    """Return the number of the slowest mode with an amplitude, or None."""
-    if parts is None:
-        return int(order[0]) if order.size and abs(values[order[0]]) > _GONE else None
-    sources, targets = parts
-    scale = np.abs(sources).sum(axis=1)[:, None] * np.abs(targets).max(axis=1)[None, :]
-    try:
-        expected = np.linalg.solve(right, targets.T)
-    except np.linalg.LinAlgError:
-        expected = np.linalg.pinv(right) @ targets.T
-    left_behind = sources @ right
-    for k in order:
-        if abs(values[k]) <= _GONE:
-            return None
-        same = np.flatnonzero(np.abs(values - values[k]) <= _TOGETHER * abs(values[k]))
-        amplitude = left_behind[:, same] @ expected[same]
-        if (np.abs(amplitude) > _AMPLITUDE * scale).any():
-            return int(k)
-    return None
-
-
-def _split(values: np.ndarray, mode: complex) -> tuple[complex, float]:
-    if abs(mode.imag) > _IMAGINARY:
-        return complex(mode.real, abs(mode.imag)), -float(mode.imag**2)
-    real = values[np.abs(values.imag) <= _IMAGINARY].real
-    apart = np.abs(real - mode.real)
-    apart = apart[apart > _IMAGINARY]
-    return complex(mode.real, 0.0), float((apart.min() / 2) ** 2) if apart.size else np.inf
+def _split(values: np.ndarray, mode: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Return modes in the upper half plane, and (λ_a − λ_b)²/4 with the real partner nearest to each."""
+    apart = np.abs(values.real - mode.real[:, None])
+    partner = (np.abs(values.imag) <= _IMAGINARY) & (apart > _IMAGINARY)
+    nearest = np.where(partner, apart, np.inf).min(axis=1)
+    turned = np.abs(mode.imag) > _IMAGINARY
+    upper = mode.real + 1j * np.where(turned, np.abs(mode.imag), 0.0)
+    return upper, np.where(turned, -(mode.imag**2), (nearest / 2) ** 2)
 
 
 def discriminant(values: np.ndarray, centre: complex, size: int) -> tuple[np.ndarray, np.ndarray]:
