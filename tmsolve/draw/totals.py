@@ -4,8 +4,6 @@ from __future__ import annotations
 
 from dataclasses import dataclass
 from fractions import Fraction
-from functools import reduce
-from math import gcd, lcm
 from typing import Any
 
 import numpy as np
@@ -13,6 +11,7 @@ import numpy as np
 from ..assemble.window import place_in
 from ..declare import Term
 from ..errors import NotApplicable, ParameterError, TooLargeError
+from ..tabulate.levels import common_step, exact_values
 from .row import Row, site_tables
 from .steps import Steps
 
@@ -67,6 +66,8 @@ def exact_totals(row: Row, name: str) -> Totals:
     Raises
     ------
     NotApplicable
+        The observable differs from cell to cell.
+    ParameterError
         Values of the observable without a common step.
     TooLargeError
         Too many values of the total.
@@ -170,14 +171,9 @@ def _parts(row: Row, name: str) -> tuple[list[_Part], Fraction]:
             continue
         if table.shape[-1] > 1:
             raise NotApplicable(f"{name!r} differs from cell to cell; the distribution of its total is not computed")
-        exact = [Fraction(repr(float(value))) for value in table.ravel()]
-        found.append((exact, row.geometry.number(sites), np.array([cell for _, cell in sites])))
-    step = _common_step([value - exact[0] for exact, _, _ in found for value in exact])
-    if step.denominator > 10**9:
-        raise NotApplicable(
-            f"the values of {name!r} have no common step, so its total takes too many values to be listed; "
-            "use an observable with rational values"
-        )
+        cells = np.array([cell for _, cell in sites])
+        found.append((exact_values(tables, part, name).ravel(), row.geometry.number(sites), cells))
+    step = common_step((exact for exact, _, _ in found), name)
     parts = []
     for exact, index, cells in found:
         least = min(exact)
@@ -192,16 +188,3 @@ def _parts(row: Row, name: str) -> tuple[list[_Part], Fraction]:
             limit=int(_WORK),
         )
     return [_Part(part.least, part.gains.astype(np.int64), part.cells) for part in parts], step
-
-
-def _common_step(values: list[Fraction]) -> Fraction:
-    """Return the largest step that all values are whole multiples of; 1 when all of them are 0.
-
-    Examples
-    --------
-    >>> _common_step([Fraction(1, 2), Fraction(-3, 4)])
-    Fraction(1, 4)
-    """
-    below = reduce(lcm, (v.denominator for v in values), 1)
-    above = reduce(gcd, (abs(int(v * below)) for v in values), 0)
-    return Fraction(above or below, below)

@@ -20,7 +20,7 @@ from ..assemble.window import place_in
 from ..errors import TooLargeError
 from ..operators.algebras import LogSum, LogTable
 from ..operators.elimination import eliminate
-from .levels import exact_values
+from ..tabulate.levels import exact_values
 from .scaled import Scaled, add, from_logs, times
 
 __all__ = ["Step", "count_step", "first_message", "merged", "part_values", "pass_on"]

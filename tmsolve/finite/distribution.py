@@ -9,8 +9,8 @@ from typing import Any
 import numpy as np
 
 from ..errors import ParameterError, TooLargeError
+from ..tabulate.levels import common_step
 from .counting import count_step, first_message, merged, part_values, pass_on
-from .levels import common_step
 from .scaled import Scaled, add, log_ratio
 from .track import Track
 

@@ -16,7 +16,7 @@ from ..errors import NotApplicable, ParameterError
 from ..observe.segment import Segment
 from ..observe.solution import Solution
 from ..operators.numbers import to_double
-from .levels import exact_values
+from ..tabulate.levels import exact_values
 from .masks import check_single, read_value, restricted
 
 __all__ = ["Domains", "domains"]

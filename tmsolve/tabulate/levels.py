@@ -1,4 +1,4 @@
-"""Exact values of an observable per local configuration, and the step that they have in common."""
+"""Exact values of a term per local configuration, and the step that they have in common."""
 
 from __future__ import annotations
 
@@ -10,11 +10,11 @@ import numpy as np
 
 from ..declare import Term
 from ..errors import ParameterError
-from ..tabulate.affine import affine_table
-from ..tabulate.calling import number_table
-from ..tabulate.tables import SiteTables
+from .affine import affine_table
+from .calling import number_table
+from .tables import SiteTables
 
-__all__ = ["common_step", "exact_values"]
+__all__ = ["common_divisor", "common_step", "exact_values"]
 
 #: More steps than this between two values of one local table are no common step but rounding.
 _MOST_LEVELS = 10**5
@@ -24,7 +24,7 @@ _ROUNDING = Fraction(1, 2**51)
 
 
 def exact_values(tables: SiteTables, term: Term, name: str) -> np.ndarray:
-    """Return the values of an observable's part, one Fraction per local configuration.
+    """Return the values of a term, one Fraction per local configuration; an energy may be infinite.
 
     Raises
     ------
@@ -42,7 +42,8 @@ def exact_values(tables: SiteTables, term: Term, name: str) -> np.ndarray:
         total = number_table(term, states, values, 1)[..., 0]
     result = np.empty(total.shape, dtype=object)
     for index in np.ndindex(total.shape):
-        result[index] = _fraction(total[index], name)
+        forbidden = term.role == "energy" and total[index] == math.inf
+        result[index] = math.inf if forbidden else _fraction(total[index], name)
     return result
 
 
@@ -88,7 +89,7 @@ def common_step(tables: Iterable[np.ndarray], name: str) -> Fraction:
     for table in tables:
         least = min(table.flat)
         for value in table.flat:
-            step = _divisor(step, value - least)
+            step = common_divisor(step, value - least)
             widest = max(widest, value - least)
             shown[f"{float(value):g}"] = None
     if step and widest / step > _MOST_LEVELS:
@@ -100,6 +101,13 @@ def common_step(tables: Iterable[np.ndarray], name: str) -> Fraction:
     return step or Fraction(1)
 
 
-def _divisor(first: Fraction, second: Fraction) -> Fraction:
+def common_divisor(first: Fraction, second: Fraction) -> Fraction:
+    """Return the largest number that two are whole multiples of; 0 for two zeros.
+
+    Examples
+    --------
+    >>> common_divisor(Fraction(1, 2), Fraction(-3, 4))
+    Fraction(1, 4)
+    """
     denominator = math.lcm(first.denominator, second.denominator)
     return Fraction(math.gcd(int(first * denominator), int(second * denominator)), denominator)
