@@ -2,26 +2,24 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, field
+from collections.abc import Mapping
+from dataclasses import dataclass, field, replace
 from typing import TYPE_CHECKING
 
 import numpy as np
 
 from ..answer.solve import solve
-from ..errors import NotApplicable, TmsolveError, TooLargeError
+from ..errors import NotApplicable, ParameterError, TmsolveError, TooLargeError
 from .average import Average
+from .reasons import plain, reasons
 from .sampling import make_row
 from .totals import Totals, exact_mean, exact_totals
+from .typical import typical_length
 
 if TYPE_CHECKING:
     from .simulation import Simulation
 
 __all__ = ["Diagnosis", "diagnose"]
-
-#: A run shorter than this many autocorrelation times has not forgotten its start.
-_LONG = 50
-#: Deviation, in error bars, that counts as one.
-_BARS = 4.0
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,10 +32,16 @@ class Diagnosis:
         Its name; all means are per cell.
     cells : int
         N.
+    uniform : mapping
+        Mean over the cells of parameters that differ between them; empty without a realisation.
     correlation_length : float or None
-        ξ of the infinite chain in cells; None with a realisation of its own.
+        ξ of the observable in the infinite chain, in cells; of one realisation the length over
+        which a typical correlation falls by e.
+    slowest_length : float or None
+        ξ of the slowest mode of the infinite chain, whether the observable shows it or not;
+        None with a realisation.
     infinite : float or None
-        Exact mean of the infinite chain; None with a realisation of its own.
+        Exact mean of the infinite chain, with the parameters ``uniform``.
     exact : float or None
         Exact mean of these N cells; None where their messages do not fit into memory.
     totals : Totals or None
@@ -46,7 +50,10 @@ class Diagnosis:
     simulated, simulated_absolute : Average
         What the run gives for ⟨a⟩ and ⟨|a|⟩.
     relaxation : float
-        Integrated autocorrelation time of the total in sweeps.
+        Integrated autocorrelation time of the total in sweeps, as the run shows it.
+    renewal : float or None
+        Exact variance of the total over half the mean square of its change in a sweep: about
+        how many sweeps renew it. A run caught near its start shows a time that is far shorter.
     run : int
         Sweeps that were averaged.
     reasons : tuple of str
@@ -55,22 +62,23 @@ class Diagnosis:
 
     observable: str
     cells: int
+    uniform: Mapping[str, float]
     correlation_length: float | None
+    slowest_length: float | None
     infinite: float | None
     exact: float | None
     totals: Totals | None = field(repr=False)
     simulated: Average
     simulated_absolute: Average
     relaxation: float
+    renewal: float | None
     run: int
-    reasons: tuple[str, ...]
+    reasons: tuple[str, ...] = ()
 
     @property
     def lengths(self) -> float | None:
         """N/ξ: how many correlation lengths the chain holds."""
-        if self.correlation_length is None:
-            return None
-        return self.cells / self.correlation_length if self.correlation_length else float("inf")
+        return None if self.correlation_length is None else _ratio(self.cells, self.correlation_length)
 
     @property
     def exact_absolute(self) -> float | None:
@@ -78,17 +86,31 @@ class Diagnosis:
         return None if self.totals is None else self.totals.absolute / self.cells
 
     def __str__(self) -> str:
-        name = self.observable
-        lines = [f"{name} per cell", f"  simulated {self.simulated}, absolute {self.simulated_absolute}"]
+        lines = [f"{self.observable} per cell"]
+        lines.append(f"  simulated {self.simulated}, absolute {self.simulated_absolute}")
         if self.exact is not None:
             size = "" if self.exact_absolute is None else f", absolute {self.exact_absolute:.6g}"
-            lines.append(f"  exact at N = {self.cells}: {self.exact:.6g}{size}")
+            lines.append(f"  exact at N = {self.cells}: {plain(self.exact, self.exact_absolute):.6g}{size}")
         if self.infinite is not None:
-            lines.append(f"  exact for the infinite chain: {self.infinite:.6g}")
-        if self.lengths is not None:
-            lines.append(f"  correlation length {self.correlation_length:.4g} cells, N/xi = {self.lengths:.3g}")
-        lines.append(f"  autocorrelation time {self.relaxation:.3g} sweeps, run {self.run} sweeps")
-        return "\n".join([*lines, *(f"  - {reason}" for reason in self.reasons)])
+            where = ", ".join(f"{name} = {value:.6g}" for name, value in self.uniform.items())
+            what = f"a uniform infinite chain with the mean {where}" if where else "the infinite chain"
+            lines.append(f"  exact for {what}: {self.infinite:.6g}")
+        return "\n".join([*lines, *self._lengths(), self._times(), *(f"  - {reason}" for reason in self.reasons)])
+
+    def _lengths(self) -> list[str]:
+        if self.correlation_length is None:
+            return []
+        which = "typical correlation length" if self.uniform else "correlation length"
+        text = f"  {which} {self.correlation_length:.4g} cells, N/xi = {self.lengths:.3g}"
+        slow = self.slowest_length
+        if slow is not None and slow > 1.01 * self.correlation_length:
+            text += f"; of the slowest mode {slow:.4g} cells, N/xi = {_ratio(self.cells, slow):.3g}"
+        return [text]
+
+    def _times(self) -> str:
+        known = self.renewal is not None and np.isfinite(self.renewal)
+        renewal = f", renewed in about {self.renewal:.3g} by its exact variance" if known else ""
+        return f"  autocorrelation time {self.relaxation:.3g} sweeps{renewal}; run {self.run} sweeps"
 
 
 def diagnose(run: Simulation, name: str) -> Diagnosis:
@@ -116,24 +138,49 @@ def diagnose(run: Simulation, name: str) -> Diagnosis:
     (True, 0.9996, 392.9)
     """
     run.point.chain.observable(name)
-    length, infinite = _bulk(run, name)
+    uniform = {parameter: float(values.mean()) for parameter, values in run.realisation.items()}
+    length, slowest, infinite = _bulk(run, name, uniform)
     exact, totals = _finite(run, name)
-    simulated, absolute = run.mean(name), run.mean(name, absolute=True)
-    tau, kept = run.autocorrelation_time(name), run.sweeps - run.discard
-    reasons = [*_slow(tau, kept, run.start), *_spread(run.cells, length, totals, infinite)]
-    if exact is not None:
-        reasons.append(_compared(simulated, exact))
-    return Diagnosis(name, run.cells, length, infinite, exact, totals, simulated, absolute, tau, kept, tuple(reasons))
+    found = Diagnosis(
+        observable=name,
+        cells=run.cells,
+        uniform=uniform,
+        correlation_length=length,
+        slowest_length=slowest,
+        infinite=infinite,
+        exact=exact,
+        totals=totals,
+        simulated=run.mean(name),
+        simulated_absolute=run.mean(name, absolute=True),
+        relaxation=run.autocorrelation_time(name),
+        renewal=None if totals is None else _renewal(run.series[name][run.discard :], totals.variance),
+        run=run.sweeps - run.discard,
+    )
+    return replace(found, reasons=reasons(found, run))
 
 
-def _bulk(run: Simulation, name: str) -> tuple[float | None, float | None]:
-    if run.realisation:
-        return None, None
+def _ratio(cells: int, length: float) -> float:
+    return cells / length if length else float("inf")
+
+
+def _bulk(run: Simulation, name: str, uniform: Mapping[str, float]) -> tuple[float | None, float | None, float | None]:
+    """Return ξ of the observable, of the slowest mode, and the mean of the infinite chain."""
+    length = _typical(run) if uniform else None
     try:
-        solution = solve(run.point)
-        return float(solution.correlation_length(name)), float(solution.mean(name))
+        solution = solve(run.point.replace(**uniform) if uniform else run.point)
+        mean = float(solution.mean(name))
+        if uniform:
+            return length, None, mean
+        return float(solution.correlation_length(name)), float(solution.correlation_length()), mean
     except TmsolveError:  # classes of states that tie have no single law; the N cells do
-        return None, None
+        return length, None, None
+
+
+def _typical(run: Simulation) -> float | None:
+    try:
+        return typical_length(make_row(run.point, run.cells, "open", run.realisation, {}))
+    except TmsolveError:  # too many states, or an open chain that is not allowed although the ring is
+        return None
 
 
 def _finite(run: Simulation, name: str) -> tuple[float | None, Totals | None]:
@@ -142,7 +189,7 @@ def _finite(run: Simulation, name: str) -> tuple[float | None, Totals | None]:
     try:
         totals = exact_totals(row, name)
         return totals.mean / run.cells, totals
-    except (NotApplicable, TooLargeError):
+    except (NotApplicable, ParameterError, TooLargeError):
         pass
     try:
         return exact_mean(row, name) / run.cells, None
@@ -150,41 +197,7 @@ def _finite(run: Simulation, name: str) -> tuple[float | None, Totals | None]:
         return None, None
 
 
-def _slow(tau: float, kept: int, start: str) -> list[str]:
-    if not np.isfinite(tau):
-        return [f"the total never changed in {kept} sweeps: the run shows its {start} start and nothing else"]
-    if kept < _LONG * tau:
-        return [
-            f"the run is only {kept / max(tau, 0.5):.3g} autocorrelation times long, and so short a run bounds that "
-            f"time from below only: it remembers its {start} start, and its error bars are too small"
-        ]
-    return []
-
-
-def _spread(cells: int, length: float | None, totals: Totals | None, infinite: float | None) -> list[str]:
-    found = []
-    if totals is not None and totals.absolute > 1.05 * abs(totals.mean) + 1e-12 * cells:
-        found.append(
-            f"the exact distribution of the total has both signs: its mean is {totals.mean / cells:.4g} per cell and "
-            f"that of its absolute value {totals.absolute / cells:.4g}; at any moment a run shows values of that size"
-        )
-    if length is not None and cells < 10 * length:
-        found.append(
-            f"the chain holds only {cells / length:.3g} correlation lengths, so it behaves as one block; "
-            "the infinite chain is an average over many"
-        )
-    if totals is not None and infinite is not None and abs(totals.mean / cells - infinite) > 1e-3 * max(
-        abs(infinite), totals.variance**0.5 / cells
-    ):
-        found.append(f"finite length alone moves the mean from {infinite:.6g} to {totals.mean / cells:.6g}")
-    return found
-
-
-def _compared(simulated: Average, exact: float) -> str:
-    if not np.isfinite(simulated.error):
-        return f"no error bar can be given; the simulated mean is off by {simulated.value - exact:.3g}"
-    difference = simulated.value - exact
-    bars = abs(difference) / simulated.error if simulated.error else float("inf") if difference else 0.0
-    if bars > _BARS:
-        return f"the simulated mean is off by {difference:.3g}, {bars:.3g} of its error bars"
-    return f"the simulated mean agrees with the exact one within {max(bars, 0.05):.1f} of its error bars"
+def _renewal(series: np.ndarray, variance: float) -> float:
+    """Return the variance over half the mean square change between records."""
+    change = float((np.diff(series, axis=0) ** 2).mean()) / 2
+    return variance / change if change else float("inf") if variance else 0.0

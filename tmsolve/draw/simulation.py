@@ -120,7 +120,8 @@ class Simulation:
         ends = "a ring" if self.boundary == "ring" else "an open chain"
         lines = [
             f"{self.rule} simulation of {ends} of {self.cells} cells of {self.point.chain.name}: {self.replicas} "
-            f"replicas, {self.sweeps} sweeps from a {self.start} start, the first {self.discard} left out"
+            f"replica{'s' if self.replicas > 1 else ''}, {self.sweeps} sweeps from a {self.start} start, the first "
+            f"{self.discard} left out"
         ]
         for name in self.series:
             tau = self.autocorrelation_time(name)
