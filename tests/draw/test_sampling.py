@@ -12,8 +12,10 @@ from scipy.stats import chi2
 
 from tests.draw.chains import ISING, MIXED, SPIN_ONE, boltzmann, mixed_energy, mixed_words, spin_one_energy
 from tests.refusal import refused
-from tmsolve import Chain, bond, ising, open_chain, ring, site, solve, weight
-from tmsolve.draw.sampling import sample
+from tmsolve import Chain, StateSet, bond, circle, ising, open_chain, ring, site, solve, weight
+from tmsolve.draw.readout import Readout
+from tmsolve.draw.sampling import make_row, sample
+from tmsolve.draw.steps import Steps
 from tmsolve.errors import DeclarationError, NotApplicable, ParameterError, SolveError, TooLargeError
 
 POINT = {"J": 0.7, "D": 0.4, "h": 0.3, "T": 1.1}
@@ -194,12 +196,96 @@ def test_low_temperatures_and_hard_constraints():
     free = sample(ISING.at(J=1, h=0, T="1e-4"), 50, 400, "ring", rng=1)
     up = (free.states.mean(axis=1) == 1).sum()
     assert set(free.states.mean(axis=1)) == {0.0, 1.0} and abs(up - 200) < 50
-    dimers = Chain(
-        ising(), [bond(lambda s, t: math.inf if s == t == 1 else 0), site(lambda s, z: -z * (s + 1) / 2)]
-    )
+    dimers = Chain(ising(), [bond(lambda s, t: math.inf if s == t == 1 else 0), site(lambda s, z: -z * (s + 1) / 2)])
     for boundary in ("ring", "open", "infinite"):
         states = sample(dimers.at(z=1, T=1), 9, 500, boundary, rng=1).states
         assert not (states[:, :-1] & states[:, 1:]).any() and states.any()
+
+
+@pytest.mark.parametrize("name", ["spin_one", "mixed", "ising"])
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+def test_steps_far_from_the_ends_are_tabulated_once(name, boundary):
+    """Probabilities of every step of a long uniform chain: as with parameters listed cell by cell, step by step."""
+    point = {
+        "spin_one": SPIN_ONE.at(**POINT),
+        "mixed": MIXED.at(J=0.6, K=0.5, L=0.8, h=0, T=1.3),
+        "ising": ISING.at(J=1, h=0, T="0.9"),
+    }[name]
+    bonds = {"J": np.full(700, float(point.number("J")))}
+    uniform, listed = (Steps(make_row(point, 700, boundary, arrays, {})) for arrays in ({}, bonds))
+    chances = [np.concatenate([block for _, block in steps.blocks()]) for steps in (uniform, listed)]
+    assert chances[0].shape == chances[1].shape
+    assert np.abs(chances[0] - chances[1]).max() < 1e-12
+    assert any(block.strides[0] == 0 and len(block) > 300 for _, block in uniform.blocks())
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open", "infinite"])
+def test_one_long_chain(boundary):
+    """Drawn in pieces: ⟨s s'⟩ = tanh(J/T) of all 300 000 bonds, the seams between pieces included."""
+    spins_ = sample(ISING.at(J=1, h=0, T="0.9"), 300_000, 1, boundary, rng=12).values()[0]
+    pairs = spins_[:-1] * spins_[1:]
+    exact = math.tanh(1 / 0.9)
+    assert abs(pairs.mean() - exact) < 4.5 * math.sqrt((1 - exact**2) / len(pairs))
+    assert abs((pairs[:-1] * pairs[1:]).mean() - exact**2) < 4.5 * math.sqrt((1 - exact**4) / len(pairs))
+
+
+def ground_state_chances(energies: np.ndarray, weights: np.ndarray | float = 1.0) -> np.ndarray:
+    """Probabilities at T = 0: by weight among the configurations of least energy."""
+    lowest = np.where(np.abs(energies - energies.min()) < 1e-9, weights, 0.0)
+    return lowest / lowest.sum()
+
+
+@pytest.mark.parametrize("boundary", ["ring", "open"])
+@pytest.mark.parametrize("T", [0, "1e-15"])
+def test_ground_states_are_equally_likely_at_zero_temperature(boundary, T):
+    """Antiferromagnetic bonds with J2 = J1/2: 46 ground states of a ring of 8, 26 of an open chain, by enumeration."""
+    chain = Chain(ising(), [bond(lambda s, t, J: J * s * t), bond(lambda s, t, K: K * s * t, shift=2)])
+    words = np.array(list(product((-1, 1), repeat=8)))
+    reach = [(1, 1.0), (2, 0.5)]
+    if boundary == "ring":
+        energies = sum(K * (words * np.roll(words, -shift, axis=1)).sum(axis=1) for shift, K in reach)
+    else:
+        energies = sum(K * (words[:, shift:] * words[:, :-shift]).sum(axis=1) for shift, K in reach)
+    chances = ground_state_chances(energies)
+    assert np.count_nonzero(chances) == (46 if boundary == "ring" else 26)
+    drawn = sample(chain.at(J=1, K="0.5", T=T), 8, 20_000, boundary, rng=3)
+    assert chi_square(drawn.states, 2, chances) > ODDS
+
+
+def test_zero_temperature_counts_degeneracies_and_knows_realisations():
+    """Neighbours differ; states count 1, 3, 1/2. Fields of their own: those of the least energy, by enumeration."""
+    weighted = Chain(StateSet([0, 1, 2], weights=[1, 3, "1/2"]), [bond(lambda s, t, J: J if s == t else 0)])
+    words = np.array(list(product(range(3), repeat=5)))
+    energies = (words[:, 1:] == words[:, :-1]).sum(axis=1)
+    chances = ground_state_chances(energies, np.array([1, 3, 0.5])[words].prod(axis=1))
+    assert chi_square(sample(weighted.at(J=2, T=0), 5, 20_000, "open", rng=1).states, 3, chances) > ODDS
+    fields = np.array([0, 2, -2, 0, 2, -2])
+    words = np.array(list(product((-1, 1), repeat=6)))
+    chances = ground_state_chances(-(words[:, 1:] * words[:, :-1]).sum(axis=1) - words @ fields)
+    drawn = sample(ISING.at(J=1, h=0, T=0), 6, 20_000, "open", rng=1, realisation={"h": fields})
+    assert 1 < np.count_nonzero(chances) and chi_square(drawn.states, 2, chances) > ODDS
+
+
+def test_the_infinite_chain_at_zero_temperature_and_beside_rare_fixed_states():
+    """Both states of the antiferromagnet; a spin of probability exp(−4000) flips itself alone where it is held."""
+    states = sample(ISING.at(J=-1, h=0, T=0), 6, 4000, "infinite", rng=1).states
+    assert (states[:, 1:] != states[:, :-1]).all() and abs(states[:, 0].mean() - 0.5) < 0.04
+    for T in ("1e-3", "1e-9"):
+        held = sample(ISING.at(J=1, h="0.1", T=T), 5, 20, "infinite", rng=1, given={2: -1})
+        assert (held.states == [1, 1, 0, 1, 1]).all()
+    walls = sample(ISING.at(J=1, h=0, T="1e-3"), 5, 400, "infinite", rng=1, given={0: -1, 4: 1}).states
+    assert set(walls.sum(axis=1)) == {1, 2, 3, 4} and (np.diff(walls.astype(int), axis=1) >= 0).all()
+
+
+def test_totals_by_blocks_are_sums_over_cells():
+    """More cells times configurations than are looked up at a time."""
+    drawn = sample(MIXED.at(J=1, K=1, L=1, h="0.2", T=2), 900, 400, "ring", rng=1)
+    for name in ("m", "pair"):
+        assert drawn.observable(name) == pytest.approx(drawn.observable(name, per_cell=True).sum(axis=1), abs=1e-9)
+    read = Readout(drawn.point, {}, 900, MIXED.observable("pair"), True)
+    a, b = drawn.values("a"), drawn.values("b")
+    columns = {kind: states.T for kind, states in drawn.by_kind.items()}
+    assert (read.total(columns, slice(895, 900)) == (a * np.roll(b, -1, axis=1))[:, 895:].sum(axis=1)).all()
 
 
 def test_chains_declared_by_weights():
@@ -236,10 +322,12 @@ def test_refusals():
     mixed = MIXED.at(J=1, K=1, L=1, h=0, T=1)
     hard = Chain(ising(), [bond(lambda s, t: math.inf if s == t == 1 else 0)]).at(T=1)
     none = Chain(ising(), [bond(lambda s, t: math.inf)]).at(T=1)
+    weights = Chain(ising(), [weight(bond(lambda s, t, w: w if s != t else 1))])
+    turning = Chain(circle(8), [bond(lambda a, b: -math.cos(a - b))])
+    uneven = np.random.default_rng(1).normal(size=90)
     for error, act, *fragments in (
         (ParameterError, lambda: sample(SPIN_ONE, 5), "made by chain.at(…)", "bind its parameters first"),
         (ParameterError, lambda: sample(SPIN_ONE.at(**{**POINT, "h": [0, 1]}), 5), "shape (2,)", "pick(index)"),
-        (NotApplicable, lambda: sample(point.replace(T=0), 5), "T > 0", "ground_state"),
         (ParameterError, lambda: sample(point, 0), "number of cells", ">= 2", "got 0"),
         (ParameterError, lambda: sample(mixed, 2), ">= 3 on a ring whose longest term spans 2"),
         (ParameterError, lambda: sample(point, 2.5, boundary="open"), "whole number >= 1", "2.5"),
@@ -262,6 +350,12 @@ def test_refusals():
         (TooLargeError, lambda: sample(point, 10**6, 10**5), "2.1e+09 are drawn at once", "fewer at a time"),
         (ParameterError, lambda: sample(mixed, 5, rng=1).values(), "one of the sites a, b, got none"),
         (ParameterError, lambda: sample(point, 5, rng=1).correlation("m", "m", -1), ">= 0, got -1"),
+        (ParameterError, lambda: sample(point, 1, 2, "infinite").mean("wall"), "'wall' reaches out", "draw more cells"),
+        (NotApplicable, lambda: sample(weights.at(w=1, T=0), 5), "a chain with weights", "take T > 0"),
+        (NotApplicable, lambda: sample(turning.at(T=0), 5), "T = 0 with continuous states"),
+        (NotApplicable, lambda: sample(SPIN_ONE.at(J="1e-20", D=1, h=0, T=0), 5), "no common step", "take a small T"),
+        (NotApplicable, lambda: sample(point.replace(T=0), 90, realisation={"h": uneven}), "no common step"),
+        (SolveError, lambda: sample(ISING.at(J="1e20", h=1, T=1), 5), "energies reach 1e+20 T", "Raise T"),
         (ParameterError, lambda: sample(point, 5, "x"), "count="),
     ):
         refused(error, act, *fragments)
@@ -274,10 +368,11 @@ def test_rate(capsys):
     """Sites per second of a three-state chain; printed, with a bound that only a broken way of drawing misses."""
     point, best = SPIN_ONE.at(**POINT), {}
     for boundary in ("infinite", "ring", "open"):
-        sample(point, 20, 100, boundary, rng=1)
-        started = process_time()
-        sample(point, 500, 8192, boundary, rng=1)
-        best[boundary] = 500 * 8192 / (process_time() - started)
+        for cells, count in ((500, 8192), (2**21, 1)):
+            sample(point, 20, count, boundary, rng=1)
+            started = process_time()
+            sample(point, cells, count, boundary, rng=1)
+            best[f"{count} x {boundary}"] = cells * count / (process_time() - started)
     with capsys.disabled():
         print("\nsites per second of processor time:", {k: f"{v:.1e}" for k, v in best.items()})
     assert max(best.values()) > 2e6

@@ -9,11 +9,12 @@ import pytest
 
 from tests.draw.chains import ISING, MIXED, SPIN_ONE, boltzmann, mixed_energy, mixed_words
 from tests.refusal import refused
-from tmsolve import Chain, bond, ising, open_chain, ring, site, solve, weight
+from tmsolve import Chain, bond, ising, open_chain, ring, site, solve, spins, weight
 from tmsolve.draw.autocorrelation import autocorrelation_time
 from tmsolve.draw.sampling import make_row
 from tmsolve.draw.simulating import metropolis
 from tmsolve.draw.totals import exact_mean, exact_totals
+from tmsolve.draw.typical import typical_length
 from tmsolve.errors import NotApplicable, ParameterError, SolveError, TooLargeError
 
 POINT = {"J": 0.7, "D": 0.4, "h": 0.3, "T": 1.1}
@@ -49,7 +50,7 @@ def test_long_bonds_two_kinds_of_site_and_own_fields(rule, boundary):
         average = run.mean(name)
         assert abs(average.value - value) < 4.5 * average.error and average.error < 0.04
     found = run.diagnose("m")
-    assert found.exact == pytest.approx(exact["m"], rel=1e-12) and found.correlation_length is None
+    assert found.exact == pytest.approx(exact["m"], rel=1e-12) and found.slowest_length is None
 
 
 @pytest.mark.parametrize("boundary", ["ring", "open"])
@@ -86,6 +87,18 @@ def test_autocorrelation_time_of_a_known_process():
     assert autocorrelation_time(np.ones((50, 3))) == math.inf
 
 
+@pytest.mark.parametrize("K", [0.2, 0.5])
+def test_heat_bath_on_a_ring_forgets_as_glauber_found(K):
+    """τ = 1/(2(1 − tanh 2K)): each spin's mean is γ/2 times its neighbours' sum, γ = tanh 2K.
+
+    R. J. Glauber, J. Math. Phys. 4, 294 (1963), from memory; here for two sublattices in turn: a sweep
+    takes M_B to γ² M_B and M_A to γ M_B, so ρ(t) = (1 + γ)/(2γ) γ^2t at h = 0 and even N.
+    """
+    run = metropolis(ISING.at(J=K, h=0, T=1), 16, 2500, 64, rule="heat bath", rng=1)
+    exact = 1 / (2 * (1 - math.tanh(2 * K)))
+    assert run.autocorrelation_time("m") == pytest.approx(exact, rel=0.04)
+
+
 @pytest.mark.parametrize("rule", ["metropolis", "heat bath"])
 def test_free_spins_forget_in_one_sweep(rule):
     """With J = h = 0 both rules draw every spin anew: τ = 1/2, with no memory of the sweep before."""
@@ -115,7 +128,13 @@ def test_the_artefact_at_zero_field_is_explained():
     assert found.lengths == 64 / found.correlation_length < 1
     assert found.exact_absolute > 0.9
     text = str(found)
-    for words in ("both signs", "correlation lengths, so it behaves as one block", "its cold start", "off by"):
+    for words in (
+        "both signs",
+        "no order",
+        "correlation lengths, so it behaves as one block",
+        "its cold start",
+        "off by",
+    ):
         assert words in text, words
     # Over many runs from random states the signs cancel.
     hot = metropolis(point, 64, 300, 400, start="hot", rng=4).mean("m")
@@ -130,6 +149,69 @@ def test_a_run_that_agrees_says_so_and_a_frozen_one_too():
     assert run.mean("m").value == 1 and run.mean("m").error == math.inf
     assert "never changed" in run.diagnose("m").reasons[0] and "no error bar" in str(run.diagnose("m"))
     assert "metropolis simulation of a ring of 20 cells of chain: 4 replicas, 50 sweeps from a cold start" in str(run)
+
+
+def test_a_run_caught_near_its_start_is_told_from_a_long_one():
+    """Its own autocorrelation time is short; the exact variance and the totals never seen say how long it really is."""
+    run = metropolis(ISING.at(J=1, h=0, T="0.42"), 24, 1500, 2, start="cold", rng=2)
+    found = run.diagnose("m")
+    seen = run.series["m"][run.discard :]
+    assert found.run > 50 * found.relaxation and found.renewal > 5 * found.run
+    variance = float(ring(run.point, 24).covariance("m", "m"))
+    assert found.renewal == pytest.approx(variance / ((np.diff(seen, axis=0) ** 2).mean() / 2))
+    assert "relaxation times long: it remembers its cold start" in found.reasons[0]
+    assert "the run has seen totals from" in found.reasons[1] and "with probability 0.494 only" in found.reasons[1]
+    frozen = metropolis(ISING.at(J=1, h=0, T="0.2"), 30, 50, 2, start="cold", rng=1).diagnose("m")
+    assert "cold start and nothing else; exactly the total has this value with probability 0.5 only" in str(frozen)
+
+
+def test_an_observable_that_does_not_show_the_slowest_mode():
+    """Walls at h = 0 are independent, ξ = 0; that the ring is shorter than the other length moves their number."""
+    chain = SPIN_ONE.at(J=1, D=0, h=0, T="0.3")
+    found = metropolis(chain, 40, 50, 4, start="cold", rng=1).diagnose("wall")
+    assert found.slowest_length > 10 * found.correlation_length
+    assert "of the slowest mode" in str(found) and "finite length alone moves" in str(found)
+    assert f"holds only {40 / found.slowest_length:.3g} correlation lengths" in str(found)
+
+
+def growth(fields: np.ndarray) -> float:
+    """γ₁ per cell of the product of exp(s s' + h s') for spins ±1."""
+    bond_weights, vector, total = np.exp([[1.0, -1.0], [-1.0, 1.0]]), np.ones(2), 0.0
+    for h in fields:
+        vector = bond_weights @ (np.exp([-h, h]) * vector)
+        total += math.log(vector.sum())
+        vector = vector / vector.sum()
+    return total / len(fields)
+
+
+def test_random_fields_are_laid_beside_the_uniform_chain():
+    """The typical length is 1/(γ₁ − γ₂) of the product of matrices, γ₁ + γ₂ = ln det; without disorder it is ξ."""
+    point, fields = ISING.at(J=1, h=0, T=1), np.random.default_rng(1).normal(0.2, 1, 6000)
+    found = metropolis(point, 300, 60, 8, start="cold", rng=1, realisation={"h": fields[:300]}).diagnose("m")
+    mean = fields[:300].mean()
+    assert found.uniform == {"h": pytest.approx(mean)}
+    field = math.sinh(mean)
+    assert found.infinite == pytest.approx(field / math.sqrt(field**2 + math.exp(-4)), rel=1e-12)
+    assert f"a uniform infinite chain with the mean h = {mean:.6g}: {found.infinite:.6g}" in str(found)
+    assert "typical correlation length" in str(found) and found.slowest_length is None
+    wide = typical_length(make_row(point, 6000, "open", {"h": fields}, {}))
+    assert wide == pytest.approx(1 / (2 * growth(fields) - math.log(2 * math.sinh(2))), rel=1e-3)
+    for settings in ({"h": 0, "T": "0.5"}, {"h": "0.3", "T": 1}):
+        point = ISING.at(J=1, **settings)
+        exact = float(solve(point).correlation_length())
+        assert typical_length(make_row(point, 4000, "open", {}, {})) == pytest.approx(exact, rel=1e-3)
+    assert typical_length(make_row(ISING.at(J=0, h=1, T=1), 50, "open", {}, {})) == 0
+    assert typical_length(make_row(point, 1, "open", {}, {})) is None
+
+
+def test_at_zero_temperature_no_step_raises_the_energy():
+    """A quench from random states ends in local minima; a start from a ground state stays where no energy is lost."""
+    for rule in ("metropolis", "heat bath"):
+        run = metropolis(SPIN_ONE.at(J=1, D="0.5", h="0.1", T=0), 40, 60, 8, rule=rule, rng=1)
+        assert (np.diff(run.series["energy"], axis=0) <= 1e-9).all()
+        assert run.series["energy"][-1].min() >= 40 * (-1 + 0.5 - 0.1) - 1e-9
+    cold = metropolis(ISING.at(J=-1, h=0, T=0), 10, 20, 2, start="cold", rng=1).diagnose("m")
+    assert cold.exact == cold.infinite == 0 and "there is little else to see" in cold.reasons[0]
 
 
 def test_cold_starts_are_ground_states():
@@ -179,14 +261,16 @@ def test_the_exact_curves_show_the_three_facts():
 def test_refusals():
     point = SPIN_ONE.at(**POINT)
     none = Chain(ising(), [bond(lambda s, t: math.inf)]).at(T=1)
-    irrational = Chain(ising(), [bond(lambda s, t: -s * t)], observables={"a": lambda s: math.sqrt(s + 2)}).at(T=1)
+    roots = {"a": lambda s: math.sqrt(s + 2)}
+    irrational = Chain(spins(1), [bond(lambda s, t: -s * t)], observables=roots).at(T=1)
     wide = Chain(
         ising(), [bond(lambda s, t: -s * t, shift=shift) for shift in range(1, 12)], observables={"m": lambda s: s}
     )
     run = metropolis(point, 8, 10, 2, rng=1)
+    uneven = np.sqrt(np.arange(9.0))
     for error, act, *fragments in (
         (ParameterError, lambda: metropolis(SPIN_ONE, 5), "metropolis takes a point made by chain.at(…)"),
-        (NotApplicable, lambda: metropolis(point.replace(T=0), 5), "T > 0"),
+        (NotApplicable, lambda: metropolis(point.replace(T=0), 9, realisation={"h": uneven}), "no common step"),
         (ParameterError, lambda: metropolis(point, 1), "number of cells", ">= 2", "got 1"),
         (ParameterError, lambda: metropolis(point, 5, 1), "sweeps=", ">= 2", "got 1"),
         (ParameterError, lambda: metropolis(point, 5, 10, 0), "replicas=", ">= 1, got 0"),
@@ -201,10 +285,10 @@ def test_refusals():
         (TooLargeError, lambda: metropolis(wide.at(T=1), 30, 5, start="hot"), "joint states in all"),
         (ParameterError, lambda: run.mean("mm"), "not 'mm'", "energy"),
         (ParameterError, lambda: run.diagnose("energy"), "energy"),
-        (NotApplicable, lambda: exact_totals(make_row(irrational, 60, "ring", {}, {}, ("a",)), "a"), "common step"),
+        (ParameterError, lambda: exact_totals(make_row(irrational, 60, "ring", {}, {}, ("a",)), "a"), "common r"),
         (TooLargeError, lambda: exact_totals(make_row(point, 10**5, "open", {}, {}, ("m",)), "m"), "fewer cells"),
     ):
         refused(error, act, *fragments)
     found = metropolis(irrational, 60, 10, 2, rng=1).diagnose("a")
     assert found.totals is found.exact_absolute is None
-    assert found.exact == pytest.approx((1 + math.sqrt(3)) / 2, rel=1e-12)
+    assert found.exact == pytest.approx(ring(irrational, 60).mean("a"), rel=1e-12)

@@ -107,8 +107,7 @@ class Sample:
             Return what each cell contributes instead, shape (count, N). A part of an observable
             that reaches beyond the last cell counts 0 there, unless the chain is a ring.
         """
-        each = self._each(name)
-        return each.T if per_cell else each.sum(axis=0)
+        return self._each(name).T if per_cell else self._readout(name).total(self._columns)
 
     def _each(self, name: str) -> np.ndarray:
         return self._readout(name)(self._columns)
@@ -125,7 +124,7 @@ class Sample:
     def energies(self) -> np.ndarray:
         """Energy of every configuration, in energy units, shape (count,); terms beyond the ends are left out."""
         closed = self.boundary == "ring"
-        return Readout(self.point, self.realisation, self.cells, energy_terms(self.point), closed)(self._columns).sum(0)
+        return Readout(self.point, self.realisation, self.cells, energy_terms(self.point), closed).total(self._columns)
 
     def mean(self, name: str) -> Average:
         """Return the mean of an observable per cell, with its standard error.
@@ -133,7 +132,12 @@ class Sample:
         In a window of the infinite chain, cells from which the observable reaches out of the
         window do not count; at an open end what is missing counts 0.
         """
-        return over_replicas(self._each(name)[self._complete(name)].mean(axis=0))
+        cells = self._complete(name)
+        if cells.start >= cells.stop:
+            raise ParameterError(
+                f"{name!r} reaches out of a window of {self.cells} cells from every one of them; draw more cells"
+            )
+        return over_replicas(self._readout(name).total(self._columns, cells) / (cells.stop - cells.start))
 
     def profile(self, name: str) -> Average:
         """Return the mean of an observable in every cell, shape (N,), with standard errors."""

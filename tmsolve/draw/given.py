@@ -9,7 +9,7 @@ from typing import Any
 import numpy as np
 
 from ..declare import Chain, Point
-from ..errors import NotApplicable, ParameterError, did_you_mean, listing, unknown_parameter
+from ..errors import ParameterError, did_you_mean, listing, unknown_parameter
 
 __all__ = ["BOUNDARIES", "check_boundary", "check_point", "check_whole", "fixed_sites", "generator", "realised"]
 
@@ -20,7 +20,7 @@ Pins = Mapping[tuple[str, int], int]
 
 
 def check_point(point: Any, verb: str) -> Point:
-    """Refuse what is no single point at T > 0."""
+    """Refuse what is no single point."""
     if not isinstance(point, Point):
         hint = "; bind its parameters first: chain.at(T=…, …)" if isinstance(point, Chain) else ""
         raise ParameterError(f"{verb} takes a point made by chain.at(…), got {point!r}{hint}")
@@ -28,11 +28,6 @@ def check_point(point: Any, verb: str) -> Point:
         raise ParameterError(
             f"{verb} takes one point, got a batch of shape {point.shape}; take one of them with point.pick(index). "
             "A parameter that differs from cell to cell goes into realisation={name: array}"
-        )
-    if float(point.number("T")) == 0:
-        raise NotApplicable(
-            f"{verb} draws thermal configurations and needs T > 0, got T = 0; take a small temperature, "
-            "or ask ground_state(…) for the configurations of least energy"
         )
     return point
 

@@ -31,7 +31,8 @@ def likeliest_symbols(row: Row) -> np.ndarray:
         No configuration is allowed at all.
     """
     after, geometry = messages(row, _largest), row.geometry
-    possible = after[0].diagonal() if row.closed else after[0, :1, 0]
+    begin = after.at(0)
+    possible = begin.diagonal() if row.closed else begin[:1, 0]
     if possible.max() == -np.inf:
         raise SolveError(
             f"every configuration of these {row.cells} cells is forbidden at {row.point}; "
@@ -46,7 +47,7 @@ def likeliest_symbols(row: Row) -> np.ndarray:
     for start in range(0, len(found), 256):
         logs = row.log_weights(np.arange(start, min(start + 256, len(found))) + row.positions.start)
         for step, log in enumerate(logs, start):
-            ahead = log[place] + after[step + 1][geometry.onward[place], column]
+            ahead = log[place] + after.at(step + 1)[geometry.onward[place], column]
             found[step] = np.flatnonzero(ahead >= ahead.max() - _TIE)[-1]
             place = int(geometry.onward[place, found[step, 0]])
     return found

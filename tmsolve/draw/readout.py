@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -13,6 +13,9 @@ from ..errors import NotApplicable
 from .row import site_tables
 
 __all__ = ["Readout", "energy_terms"]
+
+#: Cells times replicas that are looked up at a time.
+_BLOCK = 2**18
 
 
 @dataclass(frozen=True, eq=False)
@@ -57,19 +60,42 @@ class Readout:
 
     def __call__(self, states: Mapping[str, np.ndarray]) -> np.ndarray:
         """Return what each cell contributes; states are state numbers by kind, all of shape (cells, replicas)."""
-        replicas = next(iter(states.values())).shape[1]
-        total = np.zeros((self.cells, replicas))
+        total = np.empty((self.cells, next(iter(states.values())).shape[1]))
+        for rows in self._blocks(slice(0, self.cells), total.shape[1]):
+            total[rows] = self._contributions(states, rows)
+        return total
+
+    def total(self, states: Mapping[str, np.ndarray], cells: slice | None = None) -> np.ndarray:
+        """Return the sum over all cells, or over some, shape (replicas,); little memory is used."""
+        found = np.zeros(next(iter(states.values())).shape[1])
+        for rows in self._blocks(cells or slice(0, self.cells), len(found)):
+            found += self._contributions(states, rows).sum(axis=0)
+        return found
+
+    def _blocks(self, cells: slice, replicas: int) -> Iterator[slice]:
+        each = max(1, _BLOCK // replicas)
+        return (slice(a, min(a + each, cells.stop)) for a in range(cells.start, cells.stop, each))
+
+    def _contributions(self, states: Mapping[str, np.ndarray], rows: slice) -> np.ndarray:
+        total = np.zeros((rows.stop - rows.start, next(iter(states.values())).shape[1]))
         for part, table in self._tables:
-            first, last = self._inside(part)
+            inside = self._inside(part)
+            first, last = max(inside[0], rows.start), min(inside[1], rows.stop)
             if first >= last:
                 continue
-            index = np.zeros((last - first, replicas), dtype=np.int32 if table.size < 2**31 else np.int64)
+            index = np.zeros((last - first, total.shape[1]), dtype=np.int32 if table.size < 2**31 else np.int64)
             for (kind, shift), size in zip(part.sites, table.shape[:-1], strict=True):
                 index *= size
-                index += np.roll(states[kind], -shift, axis=0)[first:last] if shift else states[kind][first:last]
+                index += states[kind][_cells(first + shift, last + shift, self.cells)]
             flat = table.reshape(-1, table.shape[-1])
-            total[first:last] += flat[index, 0] if flat.shape[1] == 1 else flat[index, np.arange(first, last)[:, None]]
+            own = flat[index, 0] if flat.shape[1] == 1 else flat[index, np.arange(first, last)[:, None]]
+            total[first - rows.start : last - rows.start] += own
         return total
+
+
+def _cells(first: int, last: int, cells: int) -> slice | np.ndarray:
+    """Return which rows the cells from first to last are, modulo N."""
+    return slice(first, last) if 0 <= first and last <= cells else np.arange(first, last) % cells
 
 
 def energy_terms(point: Point) -> tuple[Term, ...]:

@@ -91,9 +91,12 @@ class Row:
         return log
 
     @property
-    def constant(self) -> bool:
-        """Whether every step is drawn with the same probabilities."""
-        return False
+    def equal(self) -> range:
+        """Steps, counted from 0, that are known to have the same weights: those far from ends, if no cell differs."""
+        if self.arrays or self.pins:
+            return range(0)
+        whole = self.positions if self.closed else self.window.whole(self.cells)
+        return range(whole.start - self.positions.start, whole.stop - self.positions.start)
 
     @cached_property
     def _factors(self) -> list[tuple[np.ndarray, np.ndarray, np.ndarray]]:
@@ -125,7 +128,7 @@ class Row:
     @cached_property
     def _held(self) -> dict[str, np.ndarray]:
         """State that the site of each kind is held in, cell by cell, −1 where it is free."""
-        held = {kind: np.full(self.cells, -1) for kind in self.window.cut.thresholds}
+        held = {kind: np.full(self.cells if self.pins else 1, -1, np.int32) for kind in self.window.cut.thresholds}
         for (kind, cell), state in self.pins.items():
             held[kind][cell] = state
         return held
@@ -134,7 +137,7 @@ class Row:
         """Forbid all states but one of fixed sites, and of sites beyond an open end."""
         for kind, threshold in self.window.cut.thresholds.items():
             cells = positions + threshold
-            held = self._held[kind][cells % self.cells]
+            held = self._held[kind][cells % len(self._held[kind])]
             if not self.closed:
                 beyond = (cells < 0) | (cells >= self.cells)
                 held = np.where(beyond, 0 if self._held_outside else -1, held)

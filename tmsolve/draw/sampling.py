@@ -10,6 +10,7 @@ import numpy as np
 from ..assemble.window import build_window
 from ..declare import Point
 from ..errors import ParameterError, TooLargeError
+from .cold import drawable
 from .configurations import Sample
 from .given import Pins, check_boundary, check_point, check_whole, fixed_sites, generator, realised
 from .row import Row
@@ -43,7 +44,8 @@ def sample(
     Parameters
     ----------
     point : Point
-        Single point at T > 0, made by ``chain.at(…)``.
+        Single point, made by ``chain.at(…)``. At T = 0 configurations of least energy are
+        drawn, by their degeneracies; of the infinite chain those of the limit T → 0.
     N : int
         Number of cells; on a ring more than the longest term reaches.
     count : int
@@ -71,9 +73,9 @@ def sample(
         Lengths, counts, seeds, cells or names that make no sense; fixed states that cannot
         occur together; a realisation of the infinite chain.
     NotApplicable
-        T = 0.
+        T = 0 where the energies have no common step, or the chain has weights.
     SolveError
-        No configuration is allowed at all.
+        No configuration is allowed at all; energies that doubles do not know to T.
     TooLargeError
         Messages or configurations do not fit into memory.
 
@@ -125,9 +127,12 @@ def make_row(
     observables: Sequence[str] = (),
 ) -> Row:
     """Return N cells as a row of steps whose windows hold some observables."""
+    window = build_window(point.chain, observables)
     if boundary == "infinite":
-        return piece_of_infinite(point, cells, pins, observables)
-    return Row(point, build_window(point.chain, observables), cells, boundary == "ring", arrays, pins)
+        # The law of its cuts is known at any T > 0; what lies between them is weighed in doubles.
+        exact = point.number("T") > 0 and not window.interior
+        return piece_of_infinite(point if exact else drawable(point, {}), cells, pins, observables)
+    return Row(drawable(point, arrays), window, cells, boundary == "ring", arrays, pins)
 
 
 def sites_of(row: Row, symbols: np.ndarray) -> dict[str, np.ndarray]:

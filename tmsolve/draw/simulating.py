@@ -9,6 +9,7 @@ import numpy as np
 
 from ..declare import Point
 from ..errors import ParameterError, TooLargeError, did_you_mean, listing
+from .cold import drawable
 from .given import check_boundary, check_point, check_whole, generator, realised
 from .likeliest import likeliest_symbols
 from .readout import Readout, energy_terms
@@ -46,7 +47,7 @@ def metropolis(
     Parameters
     ----------
     point : Point
-        Single point at T > 0.
+        Single point; at T = 0 no step raises the energy.
     N : int
         Number of cells.
     sweeps : int
@@ -75,9 +76,9 @@ def metropolis(
     Raises
     ------
     ParameterError, NotApplicable, TooLargeError
-        Arguments that make no sense, T = 0, more than fits into memory.
+        Arguments that make no sense, T = 0 where energies have no common step, more than fits into memory.
     SolveError
-        No configuration is allowed at all.
+        No configuration is allowed at all; energies that doubles do not know to T.
 
     Examples
     --------
@@ -102,13 +103,13 @@ def metropolis(
     readouts = _readouts(point, arrays, cells, closed)
     _check_size(sweeps * replicas * len(readouts), cells * len(point.chain.cell) * replicas)
     states = _started(point, cells, boundary, arrays, replicas, start, random)
-    updates = [RULES[rule](group) for group in sublattices(point, arrays, cells, closed)]
+    updates = [RULES[rule](group) for group in sublattices(drawable(point, arrays), arrays, cells, closed)]
     series = {name: np.empty((sweeps, replicas)) for name in readouts}
     for sweep in range(sweeps):
         for update in updates:
             update(states, random)
         for name, read in readouts.items():
-            series[name][sweep] = read(states).sum(axis=0)
+            series[name][sweep] = read.total(states)
     final = {kind: own.T for kind, own in states.items()}
     return Simulation(point, cells, boundary, rule, start, left_out, series, final, arrays)
 

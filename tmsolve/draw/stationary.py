@@ -25,9 +25,9 @@ class Piece(Row):
     Attributes
     ----------
     first : ndarray
-        Stationary probabilities of the cut.
+        Logarithms of the stationary probabilities of the cut.
     chance : ndarray, shape (states, states)
-        Probabilities of the next cut, given this one.
+        Logarithms of the probabilities of the next cut, given this one.
     """
 
     first: Any = None
@@ -36,13 +36,13 @@ class Piece(Row):
     @property
     def start(self) -> np.ndarray:
         """Logarithms of the probabilities of the first cut."""
-        with np.errstate(divide="ignore"):
-            return np.log(self.first)
+        found: np.ndarray = self.first
+        return found
 
     @property
-    def constant(self) -> bool:
-        """Whether every step is drawn with the same probabilities: where no site is fixed."""
-        return not self.pins
+    def equal(self) -> range:
+        """Steps with the same weights: all of them, where no site is fixed."""
+        return range(0) if self.pins else range(len(self.positions))
 
     @cached_property
     def _step(self) -> np.ndarray:
@@ -58,7 +58,8 @@ class Piece(Row):
             weight = np.where(np.isfinite(inside), weight, 0.0)
             total = np.zeros_like(largest)
             np.add.at(total, (states, onward), weight)
-            return np.where(weight > 0, np.log(self.chance[states, onward] * (weight / total[states, onward])), -np.inf)
+            share = np.log(weight / total[states, onward])
+        return np.where(weight > 0, self.chance[states, onward] + share, -np.inf)
 
     def log_weights(self, positions: np.ndarray) -> np.ndarray:
         """Return the logarithms of the probabilities of some steps, fixed sites held, shape (positions, …)."""
@@ -81,8 +82,10 @@ def piece_of_infinite(point: Point, cells: int, pins: Pins, observables: Iterabl
         No configuration is allowed, or several classes of states tie.
     """
     window, (segment,) = solve(point).laws.resolved(tuple(observables))
-    size = window.shape[0]
-    first, chance = np.zeros(size), np.zeros((size, size))
-    first[segment.states] = to_double(segment.law.stationary[:, 0])
-    chance[np.ix_(segment.states, segment.states)] = to_double(segment.law.pair.chance[..., 0])
-    return Piece(point, window, cells, False, {}, pins, first / first.sum(), chance)
+    size, log = window.shape[0], segment.law.numbers.log
+    # As logarithms also those that doubles cannot hold: a fixed site may make any of them certain.
+    first, chance = np.full(size, -np.inf), np.full((size, size), -np.inf)
+    with np.errstate(divide="ignore"):
+        first[segment.states] = to_double(log(segment.law.stationary[:, 0]))
+        chance[np.ix_(segment.states, segment.states)] = to_double(log(segment.law.pair.chance[..., 0]))
+    return Piece(point, window, cells, False, {}, pins, first, chance)

@@ -9,13 +9,13 @@ from functools import cached_property
 import numpy as np
 
 from ..errors import ParameterError, SolveError
-from .messages import messages
+from .messages import Messages, messages
 from .row import Row
 
 __all__ = ["Steps"]
 
-#: Numbers in the tables of one block of steps.
-_BLOCK = 2**20
+#: Numbers in the tables of one block of steps, and most steps of a block.
+_BLOCK, _LONGEST = 2**20, 2**16
 
 
 @dataclass(frozen=True, eq=False)
@@ -34,7 +34,7 @@ class Steps:
     row: Row
 
     @cached_property
-    def _after(self) -> np.ndarray:
+    def _after(self) -> Messages:
         return messages(self.row)
 
     @cached_property
@@ -57,7 +57,7 @@ class Steps:
         """
         size, columns = self.row.geometry.states, self.row.columns
         log = np.full((size, columns), -np.inf)
-        ahead = np.zeros((size, columns)) if self.row.constant else self._after[0]
+        ahead = self._after.at(0)
         if self.row.closed:
             np.fill_diagonal(log, ahead.diagonal())
         else:
@@ -81,23 +81,24 @@ class Steps:
 
         A table of one step that is to be used for all of them has stride 0.
         """
-        geometry, columns = self.row.geometry, self.row.columns
-        count = len(self.row.positions)
-        if self.row.constant:
-            one = self._chances(0, 1)
-            yield 0, np.broadcast_to(one, (count, *one.shape[1:]))
-            return
-        length = max(1, min(4096, _BLOCK // (geometry.states * columns * geometry.symbols)))
-        for start in range(0, count, length):
+        geometry, columns, count = self.row.geometry, self.row.columns, len(self.row.positions)
+        length = max(1, min(_LONGEST, _BLOCK // (geometry.states * columns * geometry.symbols)))
+        # A step is like the next one if its weights are, and the messages behind it.
+        one = range(self._after.same.start, self._after.same.stop - 1)
+        for start in range(0, one.start, length):
+            yield start, self._chances(start, min(start + length, one.start))
+        if one:
+            table = self._chances(one.start, one.start + 1)
+            yield one.start, np.broadcast_to(table, (len(one), *table.shape[1:]))
+        for start in range(one.stop if one else 0, count, length):
             yield start, self._chances(start, min(start + length, count))
 
     @np.errstate(under="ignore", invalid="ignore")
     def _chances(self, start: int, stop: int) -> np.ndarray:
         geometry, columns = self.row.geometry, self.row.columns
-        logs = self.row.log_weights(np.arange(start, stop) + self.row.positions.start)[:, :, None, :]
-        if not self.row.constant:
-            ahead = self._after[start + 1 : stop + 1][:, geometry.onward, :]
-            logs = logs + np.moveaxis(ahead, -1, -2)
+        steps = np.arange(start, stop)
+        logs = self.row.log_weights(steps + self.row.positions.start)[:, :, None, :]
+        logs = logs + np.moveaxis(self._after.at(steps + 1)[:, geometry.onward, :], -1, -2)
         weights = np.exp(logs - np.maximum(logs.max(axis=-1, keepdims=True), -1e300))
         total = weights.sum(axis=-1, keepdims=True)
         # A place that cannot be reached has no way on; any row will do for it.

@@ -73,9 +73,7 @@ def sublattices(point: Point, arrays: Mapping[str, np.ndarray], cells: int, clos
     logs = {term: local_logs(tables, term) for term in point.chain.terms}
     found = []
     for kind in point.chain.cell:
-        touches = [
-            (term, i) for term in point.chain.terms for i, (other, _) in enumerate(term.sites) if other == kind
-        ]
+        touches = [(term, i) for term in point.chain.terms for i, (other, _) in enumerate(term.sites) if other == kind]
         groups: dict[tuple[int, tuple[Touch, ...]], list[int]] = {}
         for cell in range(cells):
             there = tuple(t for t in touches if closed or _inside(t, cell, cells))

@@ -2,8 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterator
-from typing import Any
+from collections.abc import Iterable, Iterator
+from math import isqrt
 
 import numpy as np
 
@@ -13,8 +13,10 @@ __all__ = ["draw_symbols"]
 
 #: Walks that are drawn side by side: few enough for their numbers to stay in the fast memory of the processor.
 _SIDE_BY_SIDE = 8192
-#: Up to so many walks times places it is faster to draw what every place would do, and then follow each walk.
-_FEW = 250
+#: Up to so many walks times states they are cut into pieces, drawn side by side from all states.
+_FEW = 1000
+#: Sites that are drawn at a time in pieces.
+_AT_ONCE = 2**20
 #: Up to so many symbols all thresholds are compared; beyond, they are bisected.
 _FEW_SYMBOLS = 5
 
@@ -45,23 +47,25 @@ def draw_symbols(steps: Steps, count: int, rng: np.random.Generator) -> np.ndarr
     found = np.empty((len(steps.row.positions), count), dtype=dtype)
     places = np.searchsorted(thresholds(steps.first), rng.random(count), side="right")
     for start, chances in steps.blocks():
-        tables: Any = _tables(chances, steps.onward.shape)
-        if count * len(steps.onward) <= _FEW:
-            _follow(tables, steps.onward, places, found[start : start + len(chances)], rng)
+        tables = _tables(chances, symbols)
+        if count * steps.row.geometry.states <= _FEW:
+            length = max(1, _AT_ONCE // count)
+            for first in range(0, len(chances), length):
+                target = found[start + first : start + min(first + length, len(chances))]
+                _in_pieces(tables[first : first + length], steps, places, target, rng)
             continue
         for first in range(0, count, _SIDE_BY_SIDE):
             part = slice(first, first + _SIDE_BY_SIDE)
-            target = found[start : start + len(chances), part]
-            _advance(tables, steps.onward, places[part], target, rng)
+            _advance(tables, steps.onward, places[part], found[start : start + len(chances), part], rng)
     return found
 
 
-def _tables(chances: np.ndarray, shape: tuple[int, ...]) -> np.ndarray:
+def _tables(chances: np.ndarray, symbols: int) -> np.ndarray:
     """Return thresholds as (steps, symbols − 1, places), padded to a power of two where they are bisected."""
     one = chances[:1] if chances.strides[0] == 0 else chances
     limits = np.moveaxis(thresholds(one), -1, -2)
-    if shape[1] > _FEW_SYMBOLS:
-        width = (1 << (shape[1] - 1).bit_length()) - 1
+    if symbols > _FEW_SYMBOLS:
+        width = (1 << (symbols - 1).bit_length()) - 1
         pad = np.full((limits.shape[0], width - limits.shape[1], limits.shape[2]), 2.0)
         limits = np.concatenate([limits, pad], axis=1)
     limits = np.ascontiguousarray(limits)
@@ -88,15 +92,8 @@ def _advance(
     tables: np.ndarray, onward: np.ndarray, places: np.ndarray, out: np.ndarray, rng: np.random.Generator
 ) -> None:
     """Draw the steps of many walks, all walks at once; ``places`` is moved along."""
-    symbols = onward.shape[1]
-    flat = onward.ravel()
-    direct = symbols == len(onward) and bool((onward == np.arange(symbols)).all())
-    for limits, target, u in zip(tables, out, _uniform(rng, len(out), len(places)), strict=True):
-        _pick(limits, places, u, symbols, target)
-        if direct:  # the symbol is the next place
-            places[...] = target
-        else:
-            np.take(flat, places * symbols + target, out=places)
+    uniform = _uniform(rng, len(out), len(places))
+    _move(tables, onward, places, out, uniform)
 
 
 def _uniform(rng: np.random.Generator, steps: int, walks: int) -> Iterator[np.ndarray]:
@@ -106,22 +103,52 @@ def _uniform(rng: np.random.Generator, steps: int, walks: int) -> Iterator[np.nd
         yield from rng.random((min(length, steps - start), walks))
 
 
-def _follow(
-    tables: np.ndarray, onward: np.ndarray, places: np.ndarray, out: np.ndarray, rng: np.random.Generator
+def _move(
+    tables: Iterable[np.ndarray],
+    onward: np.ndarray,
+    places: np.ndarray,
+    out: np.ndarray,
+    uniform: Iterable[np.ndarray],
+    lanes: np.ndarray | None = None,
 ) -> None:
-    """Draw what each place would do at every step, then follow the walks through it one after the other."""
-    size, symbols = onward.shape
-    length = max(1, 2**18 // (size * symbols))
-    for walk in range(len(places)):
-        place = int(places[walk])
-        for start in range(0, len(out), length):
-            limits = tables[start : start + length]
-            u = rng.random((len(limits), 1))
-            moves = (u[:, None] >= limits).sum(axis=1)
-            ways = onward[np.arange(size), moves]
-            symbol = []
-            for move, way in zip(moves.tolist(), ways.tolist(), strict=True):
-                symbol.append(move[place])
-                place = way[place]
-            out[start : start + len(symbol), walk] = symbol
-        places[walk] = place
+    """Move walks by given uniform numbers; ``lanes`` are added to a place to find its thresholds."""
+    symbols = onward.shape[1]
+    flat = onward.ravel()
+    direct = symbols == len(onward) and bool((onward == np.arange(symbols)).all())
+    for limits, target, u in zip(tables, out, uniform, strict=True):
+        _pick(limits, places if lanes is None else places + lanes, u, symbols, target)
+        if direct:  # the symbol is the next place
+            places[...] = target
+        else:
+            np.take(flat, places * symbols + target, out=places)
+
+
+def _in_pieces(tables: np.ndarray, steps: Steps, places: np.ndarray, out: np.ndarray, rng: np.random.Generator) -> None:
+    """Draw few long walks in pieces side by side: what each state at its beginning would do, then the one that is met.
+
+    All beginnings of a piece use the same uniform numbers, which costs nothing: one of them counts.
+    """
+    row, onward, walks = steps.row, steps.onward, len(places)
+    states, length = row.geometry.states, isqrt(len(out))
+    pieces = len(out) // length
+    begin = np.arange(states) * row.columns + (places % row.columns)[:, None]
+    now = np.repeat(begin[:, None], pieces, axis=1).ravel()
+    lanes = None
+    if tables.strides[0]:  # every piece has tables of its own, laid side by side
+        split = tables[: pieces * length].reshape(pieces, length, -1, len(onward))
+        tables_of_steps = np.ascontiguousarray(np.moveaxis(split, 0, 2)).reshape(length, -1, pieces * len(onward))
+        lanes = np.tile(np.repeat(np.arange(pieces) * len(onward), states), walks)
+    else:
+        tables_of_steps = tables[:length]
+    drawn = np.empty((length, len(now)), dtype=out.dtype)
+    uniform = (u.repeat(states) for u in _uniform(rng, length, walks * pieces))
+    _move(tables_of_steps, onward, now, drawn, uniform, lanes)
+    ends, met, rank = now.reshape(walks, pieces, states), np.empty((walks, pieces), dtype=np.intp), np.arange(walks)
+    for piece in range(pieces):
+        met[:, piece] = places // row.columns
+        places[...] = ends[rank, piece, met[:, piece]]
+    shape = (length, walks, pieces, states)
+    chosen = np.take_along_axis(drawn.reshape(shape), met[None, :, :, None], axis=-1)[..., 0]
+    out[: pieces * length] = chosen.transpose(2, 0, 1).reshape(-1, walks)
+    if pieces * length < len(out):
+        _advance(tables[pieces * length :], onward, places, out[pieces * length :], rng)
