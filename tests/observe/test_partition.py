@@ -8,8 +8,9 @@ import mpmath
 import numpy as np
 import pytest
 
-from tmsolve import Chain, StateSet, bond, colours, delta, ising, site, solve, spins, weight
+from tmsolve import Chain, StateSet, bond, circle, colours, delta, interval, ising, site, solve, spins, weight
 from tmsolve.assemble.window import build_window
+from tmsolve.observe.exponents import Table, residues, units
 from tmsolve.observe.partition import state_classes, vanishing
 
 
@@ -116,3 +117,37 @@ def test_eigenvalues_that_vanish(chain, values, zeros):
     window = build_window(chain)
     point = chain.at(T=1, **values)
     assert vanishing(window, np.arange(window.shape[0]), point.flat(), 0) == zeros
+
+
+def test_residues_are_those_of_exact_arithmetic():
+    rng = np.random.default_rng(7)
+    prime = 2147483629
+    numbers = [Fraction(int(a), int(b)) for a, b in rng.integers(1, 10**6, (12, 2))] * 2
+    table = np.array(numbers, dtype=object).reshape(4, 6)
+    parts = {"x": [(Table.of(table), Fraction(3, 7)), (Table.of(table[::-1]), Fraction(-2, 5))]}
+    unit = units([parts])
+    found = residues(parts, None, None, unit, prime)
+    exact = (table * Fraction(3, 7) - table[::-1] * Fraction(2, 5)) * unit["x"]
+    base = int(np.random.default_rng(prime).integers(prime >> 11, prime - 1, size=2)[0])
+    assert found.tolist() == [[pow(base, int(e) % (prime - 1), prime) for e in row] for row in exact]
+
+
+@pytest.mark.parametrize(("h", "reflected"), [("0.3", 25), (0, 25)])
+def test_a_circle_folds_for_what_is_even_in_the_angle(h, reflected):
+    chain = Chain(
+        circle(48),
+        [bond(lambda a, b, J: -J * np.cos(a - b)), site(lambda a, h: -h * np.cos(a))],
+        observables={"even": np.cos, "both": lambda a: np.cos(a) + np.sin(a) / 2},
+    )
+    (((_, even),), ((_, both),)) = (classes(chain, name, T=1, J=1, h=h) for name in ("even", "both"))
+    assert len(set(even)) == reflected and even[1:] == even[:0:-1]
+    assert len(set(both)) == 48
+
+
+def test_forbidden_pairs_count():
+    chain = Chain(interval(0, 1, 9), [bond(lambda s, t: np.where(abs(s - t) > 0.5, np.inf, 0 * s))], {"s": lambda s: s})
+    ((_, found),) = classes(chain, "s", T=1)
+    assert len(set(found)) == 9
+    free = Chain(interval(0, 1, 9), [bond(lambda s, t: 0 * s)], {"one": lambda s: 0 * s + 1})
+    ((_, found),) = classes(free, "one", T=1)
+    assert len(set(found)) == 5  # nodes of equal weight, two by two

@@ -9,8 +9,8 @@ coarsest equitable partition of the matrix so labelled carries the correlations 
 
 from __future__ import annotations
 
-import math
-from collections.abc import Iterable, Mapping, Sequence
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, replace
 from fractions import Fraction
 from typing import Any
 
@@ -23,7 +23,8 @@ from ..symmetry.refine import equitable, interned
 from ..tabulate.affine import affine_table
 from ..tabulate.calling import number_table
 from ..tabulate.exact import exact_table
-from .residues import modulo, rank
+from .exponents import Exponents, Table, residues, units
+from .residues import rank
 
 __all__ = ["PRIMES", "Unknown", "labels", "state_classes", "vanishing"]
 
@@ -32,9 +33,6 @@ PRIMES = (2147483647, 2147483629)
 _SINGLY = 64
 _LARGEST = 2048
 _ENERGY = "energy"
-
-#: Exponents of named bases over the states of some sites, and where a configuration is allowed.
-_Powers = dict[str, np.ndarray]
 
 
 class Unknown(Exception):
@@ -120,11 +118,10 @@ def labels(
     for term in observables:
         place = place_in(window, term)
         if place is not None:
-            powers, _ = _powers(window, term, known, f"observable {place[1]}")
-            parts.append((place[0], powers))
-    unit = _units([powers for powers, _ in factors] + [powers for _, powers in parts])
-    tables = [_hashed(powers, unit, weight) for powers, weight in factors]
-    extra = [(sites, _hashed(powers, unit, None)) for sites, powers in parts]
+            parts.append((place[0], _powers(window, term, known, f"observable {place[1]}")))
+    unit = units([factor.exponents for factor in (*factors, *(part for _, part in parts))])
+    tables = [factor.hashed(unit) for factor in factors]
+    extra = [(sites, replace(part, allowed=None).hashed(unit)) for sites, part in parts]
     label = window.reduce(_Modular(), tables, extra)
     full = (*(window.sizes[site] for site in window.sites), len(PRIMES))
     return window.matrix(np.broadcast_to(label, full), 0)[np.ix_(states, states)]
@@ -158,80 +155,52 @@ def vanishing(window: ChainWindow, states: np.ndarray, values: Mapping[str, Any]
     return len(matrix) - rank(power, PRIMES[0])
 
 
-def _factor(
-    window: ChainWindow, source: Term | Degeneracy | SiteWeights, known: Mapping[str, Any]
-) -> tuple[_Powers, np.ndarray | None]:
-    """Return exponents and weights (Fractions, 0 where forbidden) of one factor of a window."""
+@dataclass(frozen=True)
+class _Factor:
+    """One factor of a window as ∏ base^exponent · weight, where it is allowed."""
+
+    exponents: Exponents
+    allowed: np.ndarray | None = None
+    weight: Table | None = None
+
+    def hashed(self, unit: Mapping[str, int]) -> np.ndarray:
+        """Return it modulo the primes, shape (*states, primes)."""
+        return np.stack([residues(self.exponents, self.allowed, self.weight, unit, p) for p in PRIMES], axis=-1)
+
+
+def _factor(window: ChainWindow, source: Term | Degeneracy | SiteWeights, known: Mapping[str, Any]) -> _Factor:
     if isinstance(source, Term):
         if source.role == "weight":
-            return {}, _values(window, source, known)
+            return _Factor({}, None, _values(window, source, known))
         return _powers(window, source, known, _ENERGY)
     weights = source.states.weights if isinstance(source, Degeneracy) else source.weights
-    return {}, _fractions([Fraction(repr(w)) if isinstance(w, float) else w for w in weights], (len(weights),))
+    exact = [Fraction(repr(w)) if isinstance(w, float) else Fraction(w) for w in weights]
+    return _Factor({}, None, Table(list(exact), np.arange(len(exact))))
 
 
-def _fractions(values: Iterable[Any], shape: tuple[int, ...]) -> np.ndarray:
-    table = np.empty(shape, dtype=object)
-    table.reshape(-1)[:] = [Fraction(value) for value in values]
-    return table
-
-
-def _powers(window: ChainWindow, term: Term, known: Mapping[str, Any], base: str) -> tuple[_Powers, np.ndarray | None]:
+def _powers(window: ChainWindow, term: Term, known: Mapping[str, Any], base: str) -> _Factor:
     """Return a term's values as exponents: of ``base`` what is known, of a base each what runs."""
     affine = affine_table(term, [window.chain.cell[kind] for kind, _ in term.sites])
-    if affine is None:
-        total, slopes = _values(window, term, known), {}
-    else:
-        total = affine.constant
-        slopes = {f"{base} {name}": slope for name, slope in affine.slopes.items() if name not in known}
-        for name, slope in affine.slopes.items():
-            if name in known:
-                total = total + slope * known[name]
-    finite = [value != math.inf for value in total.ravel()]
-    powers = _fractions(
-        (value if there else 0 for value, there in zip(total.ravel(), finite, strict=True)), total.shape
-    )
-    return {base: powers, **slopes}, None if all(finite) else _fractions(map(int, finite), total.shape)
+    constant = _values(window, term, known) if affine is None else Table.of(affine.constant)
+    exponents = {base: [(constant, Fraction(1))]}
+    for name, slope in {} if affine is None else affine.slopes.items():
+        if name in known:
+            exponents[base].append((Table.of(slope), Fraction(known[name])))
+        else:
+            exponents[f"{base} {name}"] = [(Table.of(slope), Fraction(1))]
+    finite = constant.finite
+    return _Factor(exponents, None if finite.all() else finite)
 
 
-def _values(window: ChainWindow, term: Term, known: Mapping[str, Any]) -> np.ndarray:
+def _values(window: ChainWindow, term: Term, known: Mapping[str, Any]) -> Table:
     """Return a term's values as fractions; a rounded one stands for itself."""
     if not all(isinstance(known.get(name), Fraction) for name in term.parameters):
         raise Unknown
     states = [window.chain.cell[kind] for kind, _ in term.sites]
     exact = exact_table(term, states, known, ())
     if exact is not None:
-        return exact
-    floats = number_table(term, states, {name: float(known[name]) for name in term.parameters}, 1)[..., 0]
-    rounded = np.empty(floats.shape, dtype=object)
-    rounded.reshape(-1)[:] = [Fraction(repr(x)) if math.isfinite(x) else x for x in floats.ravel().tolist()]
-    return rounded
-
-
-def _units(powers: Sequence[_Powers]) -> dict[str, int]:
-    """Return per base a denominator that makes all its exponents whole."""
-    unit: dict[str, int] = {}
-    for tables in powers:
-        for base, table in tables.items():
-            unit[base] = math.lcm(unit.get(base, 1), *(Fraction(entry).denominator for entry in table.ravel()))
-    return unit
-
-
-def _hashed(powers: _Powers, unit: Mapping[str, int], weight: np.ndarray | None) -> np.ndarray:
-    """Return ∏ base^exponent · weight modulo the primes, shape (*states, primes)."""
-    shape = weight.shape if weight is not None else next(iter(powers.values())).shape
-    bases = {base: number for number, base in enumerate(sorted(unit))}
-    result = np.ones((*shape, len(PRIMES)), dtype=np.int64)
-    for column, prime in enumerate(PRIMES):
-        drawn = np.random.default_rng(prime).integers(2**20, prime - 1, size=len(bases) + 1).tolist()
-        flat = [1] * math.prod(shape)
-        for base, table in powers.items():
-            whole = [int(Fraction(entry) * unit[base]) % (prime - 1) for entry in table.ravel()]
-            flat = [x * pow(drawn[bases[base]], e, prime) % prime for x, e in zip(flat, whole, strict=True)]
-        if weight is not None:
-            flat = [x * modulo(w, prime) % prime for x, w in zip(flat, weight.ravel(), strict=True)]
-        result[..., column] = np.array(flat, dtype=np.int64).reshape(shape)
-    return result
+        return Table.of(exact)
+    return Table.rounded(number_table(term, states, {name: float(known[name]) for name in term.parameters}, 1)[..., 0])
 
 
 class _Modular(ArrayAlgebra):
