@@ -124,7 +124,7 @@ def describe(chain: Chain | Point) -> Description:
         interior=tuple(_site(site) for site in window.interior),
         matrix=(_size(chain, window.left), _size(chain, window.right)) if symbolic else window.shape,
         nonzeros=_size(chain, window.sites) if symbolic else allowed_entries(chain),
-        range=max((term.reach for term in chain.terms), default=0),
+        range=chain.reach,
         symmetries=tuple(_exchanges(chain) if symbolic else trivial_symmetries(chain)),
     )
 

@@ -102,6 +102,11 @@ class Chain:
         return tuple(name for name in self.parameters if name not in self.fixed)
 
     @property
+    def reach(self) -> int:
+        """Cells that the longest term spans beyond its first; a ring has at least one more."""
+        return max((term.reach for term in self.terms), default=0)
+
+    @property
     def uses_temperature(self) -> bool:
         """Whether an energy or weight takes ``T``."""
         return any(term.takes_temperature for term in self.terms)

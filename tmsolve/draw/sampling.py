@@ -111,7 +111,7 @@ def sample(
 
 def check_length(point: Point, N: Any, boundary: str) -> int:
     """Refuse lengths that are no whole number, and rings shorter than their longest term."""
-    reach = max((term.reach for term in point.chain.terms), default=0)
+    reach = point.chain.reach
     if boundary != "ring" or not reach:
         return check_whole(N, "the number of cells", 1)
     why = f" on a ring whose longest term spans {reach} cells further"

@@ -65,7 +65,7 @@ def sublattices(point: Point, arrays: Mapping[str, np.ndarray], cells: int, clos
         A site sees too many joint states.
     """
     tables = site_tables(point, arrays, cells)
-    period = 1 + max((term.reach for term in point.chain.terms), default=0)
+    period = 1 + point.chain.reach
     colours = np.arange(cells) % period
     if closed and cells % period:
         rest = cells % period

@@ -50,10 +50,10 @@ def ring(point: Point, N: int, *, impurities: Any = None) -> FiniteChain:
     0.0
     """
     _check_point(point, "ring")
-    reach = max((term.reach for term in point.chain.terms), default=0)
+    reach = point.chain.reach
     cells = check_cells(N, reach + 1, "a ring", reach)
     planted = read_impurities(point, impurities, cells)
-    reach = max([reach, *(term.reach for other in planted.values() for term in other.chain.terms)])
+    reach = max([reach, *(other.chain.reach for other in planted.values())])
     return FiniteChain(point, check_cells(N, reach + 1, "a ring", reach), True, impurities=planted)
 
 

@@ -19,7 +19,7 @@ _SIZE_LIMIT = 256
 
 def ring_ground_states(graph: CutGraph, cells: int) -> tuple[Fraction, int | Fraction]:
     """Return the least energy of a ring and the weighted number of configurations that have it."""
-    longest = max((term.reach for term in graph.chain.terms), default=0)
+    longest = graph.chain.reach
     if isinstance(cells, bool) or not isinstance(cells, Integral) or cells < longest + 1:
         raise ParameterError(
             f"a ring of this chain has a whole number of cells, at least {longest + 1} "

@@ -31,7 +31,7 @@ def whole_distance(r: Any) -> Any:
 
 def whole_cells(N: Any, chain: Chain, ring: bool = True) -> int:
     """Return a number of cells: of a ring longer than every bond, or of an open chain."""
-    reach = max((term.reach for term in chain.terms), default=0) if ring else 0
+    reach = chain.reach if ring else 0
     try:
         cells = operator.index(N)
     except TypeError:

@@ -33,7 +33,7 @@ def check_cells(chain: Chain, N: Any, ring: bool) -> int:
         cells = operator.index(N)
     except TypeError:
         cells = 0
-    reach = max((term.reach for term in chain.terms), default=0) if ring else 0
+    reach = chain.reach if ring else 0
     if isinstance(N, bool) or cells < reach + 1:
         what = "a ring" if ring else "an open chain"
         why = f", because the longest term spans {reach} cells further" if reach else ""

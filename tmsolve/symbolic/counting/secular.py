@@ -45,7 +45,7 @@ class Secular:
 def secular(chain: Chain, variable: str) -> Secular:
     """Return the polynomial of a chain in which everything but the variable is fixed."""
     plan = make_plan(chain, ("energy",))
-    reach = max((term.reach for term in chain.terms), default=0)
+    reach = chain.reach
     matrix = make_walk(plan, reach + 1, ring=True).steps[0][0]
     chi = characteristic_terms(matrix, len(plan.letters))
     while len(chi) > 1 and not chi[-1]:
