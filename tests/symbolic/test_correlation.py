@@ -165,3 +165,47 @@ def test_bad_input():
     apart = closed_form(Chain(ising(), [bond(lambda s, t, J: -J * s * t if s == t else math.inf)], {"m": lambda s: s}))
     with pytest.raises(NotApplicable, match="classes that do not reach each other"):
         apart.correlation("m")
+
+
+def test_one_distance_needs_no_closed_form():
+    chain = Chain(
+        ising(),
+        [bond(lambda s, t, J: -J * s * t), bond(lambda s, t, K: -K * s * t, shift=2), site(lambda s, h: -h * s)],
+        {"m": lambda s: s},
+    )
+    form = closed_form(chain)
+    assert not form.is_closed
+    with pytest.raises(NotApplicable, match="Give a distance: r=3"):
+        form.correlation("m")
+    point = chain.at(T="0.8", J="0.7", K="-0.3", h="0.2")
+    numbers = solve(point, digits=30)
+    values = {"J": "0.7", "K": "-0.3", "h": "0.2", "beta": "1.25", "lambda": sp.exp(-numbers.free_energy / 0.8)}
+    for distance in (0, 1, 3):
+        found = form.correlation("m", r=distance)
+        wanted = float(numbers.correlation("m", "m", [distance])[0])
+        assert number(found, values).real == pytest.approx(wanted, rel=1e-12)
+
+
+def test_the_distance_is_no_parameter():
+    form = closed_form(Chain(ising(), [bond(lambda s, t, r: -r * s * t)], {"m": lambda s: s}))
+    with pytest.raises(NotApplicable, match="a parameter called 'r' cannot be told from the distance"):
+        form.correlation("m")
+    assert str(form.correlation("m", r=2)) == "tanh(beta*r)**2"
+
+
+def test_responses_hold_the_same_root_as_the_eigenvalue():
+    chain = Chain(
+        ising(),
+        [bond(lambda s, t, J: -J * s * t), bond(lambda s, t, K: -K * s * t, shift=2)],
+        {"m": lambda s: s},
+    )
+    form = closed_form(chain)
+    roots = {power for power in form.eigenvalues[0][0].atoms(sp.Pow) if power.exp == sp.Rational(1, 2)}
+    found = {1 / p if p.exp < 0 else p for p in form.susceptibility("m").atoms(sp.Pow) if p.exp.q == 2}
+    assert found == roots
+
+
+def test_powers_of_the_eigenvalue_cancel():
+    terms = [bond(lambda s, t, J: -J * s * t), bond(lambda s, t: -s * t, shift=2), site(lambda s, h: -h * s)]
+    form = closed_form(Chain(ising(), terms, {"m": lambda s: s}))
+    assert sp.denom(form.mean("m")).subs(sp.Symbol("lambda"), 0) != 0

@@ -8,7 +8,7 @@ import numpy as np
 import pytest
 
 from tests.symbolic.refusing import refuses
-from tmsolve import Chain, bond, closed_form, colours, delta, ising, models, site, solve, spins
+from tmsolve import Chain, StateSet, bond, closed_form, colours, delta, ising, models, site, solve, spins, weight
 from tmsolve.errors import NotApplicable, ParameterError, SolveError
 from tmsolve.symbolic.export import numpy_check
 from tmsolve.symbolic.export.numpy_function import numpy_function, numpy_source
@@ -176,3 +176,33 @@ def test_response_that_grows_with_the_length(capel):
     T = np.array([1.0, 0.2, 0.05])
     expected = np.asarray(solve(CAPEL.at(T=T, J=1, D="0.2")).susceptibility("m"))
     assert function(T, 1.0, 0.2) == pytest.approx(expected, rel=1e-9) and expected[-1] > 1e16
+
+
+def test_sums_that_cancel_on_lines_of_equal_couplings():
+    form = closed_form(
+        Chain(spins("3/2"), [bond(lambda s, t, J: -J * s * t), site(lambda s, D: D * s * s)], {"q": lambda s: s * s})
+    )
+    function = numpy_function(form, "mean(q)")
+    numbers = solve(form.chain.at(T=[0.01, 0.003, 0.001], J="0.3", D="0.3"))
+    np.testing.assert_allclose(function([0.01, 0.003, 0.001], 0.3, 0.3), numbers.mean("q"), rtol=1e-10)
+
+
+def test_a_weight_of_one():
+    terms = [bond(lambda s, t, J: -J * s * t), weight(lambda s, g: g if s > 0 else 1, 0)]
+    form = closed_form(Chain(ising(), terms, {"m": lambda s: s}))
+    function = numpy_function(form, "susceptibility(m)")
+    wanted = solve(form.chain.at(T="0.003", J=1, g=1)).susceptibility("m")
+    assert function(0.003, 1.0, 1.0) == pytest.approx(float(wanted), rel=1e-9)
+
+
+def test_degenerate_cubic_eigenvalues_are_refused():
+    chain = Chain(
+        StateSet(["o", "A", "B"]),
+        [
+            bond(lambda a, b: math.inf if {a, b} == {"A", "B"} else 0),
+            site(lambda a, x, y: -x * (a == "A") - y * (a == "B")),
+        ],
+        {"A": lambda a: int(a == "A")},
+    )
+    with pytest.raises(SolveError, match=r"x=1, y=1, but the formula 0\.4999"):
+        numpy_function(closed_form(chain), "mean(A)")

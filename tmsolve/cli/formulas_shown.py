@@ -74,14 +74,10 @@ def as_data(formula: Formula, value: Any, work: Derivation) -> Any:
 def as_latex(formula: Formula, value: Any, work: Derivation) -> str:
     """Return one equation per line, without dollar signs."""
     from ..symbolic.plain import latex_text
+    from ..symbolic.report import ring_latex
 
     if formula.symbol == "Z_N" and not work.opened:
-        powers = (
-            ("" if times == 1 else f"{_latex_count(times)} ") + rf"\left({latex_text(item)}\right)^{{N}}"
-            for item, times in work.form.eigenvalues
-            if item != 0
-        )
-        return f"{formula.latex} = {' + '.join(powers)}"
+        return f"{formula.latex} = {ring_latex(work.form)}"
     if formula.kind == "eigenvalues":
         return "\n".join(
             rf"\lambda_{{{k}}} = {latex_text(item)}" + _latex_times(times)

@@ -36,14 +36,17 @@ class Alphabet:
         Least exponents.
     counts : tuple of sympy symbols
         Those of the parameters that are whole numbers, such as a number of colours.
+    mixed : tuple of Terms
+        Weights that are positive for some values of the parameters only.
     """
 
     classes: tuple[Any, ...]
     units: tuple[Fraction, ...]
     counts: tuple[Any, ...] = ()
+    mixed: tuple[Terms, ...] = ()
 
     @classmethod
-    def of(cls, terms: Iterable[Terms], counts: tuple[Any, ...] = ()) -> Alphabet:
+    def of(cls, terms: Iterable[Terms], counts: tuple[Any, ...] = (), mixed: tuple[Terms, ...] = ()) -> Alphabet:
         """Collect the classes of all monomials, with the greatest common measure of their exponents."""
         measures: dict[Any, Fraction] = {}
         for each in terms:
@@ -51,7 +54,7 @@ class Alphabet:
                 for key, exponent in monomial:
                     measures[key] = common_measure((measures.get(key, Fraction(0)), exponent))
         ordered = sorted(measures, key=lambda key: key.sort_key())
-        return cls(tuple(ordered), tuple(measures[key] for key in ordered), counts)
+        return cls(tuple(ordered), tuple(measures[key] for key in ordered), counts, mixed)
 
     @cached_property
     def ring(self) -> Any:

@@ -11,11 +11,16 @@ from ..errors import NotApplicable, ParameterError
 __all__ = ["positive_seconds", "whole_cells", "whole_distance"]
 
 
-def whole_distance(r: Any) -> Any:
+def whole_distance(r: Any, chain: Chain) -> Any:
     """Return a distance in cells, 0 or more, or the symbol r for ``None``."""
     import sympy as sp
 
     if r is None:
+        if "r" in chain.free:
+            raise NotApplicable(
+                "a parameter called 'r' cannot be told from the distance of a correlation function; rename it in the "
+                "energy functions, fix it: chain.fix(r=…), or give a distance, as in r=3"
+            )
         return sp.Symbol("r", integer=True, nonnegative=True)
     try:
         distance = operator.index(r)

@@ -13,13 +13,13 @@ from ..tabulate.symbolic import beta
 from . import report
 from .arguments import whole_cells, whole_distance
 from .blocks import Block
-from .correlations import Correlation, correlation
+from .correlations import Correlation, correlation, single_correlation
 from .deadline import Clock, TimeUp, limited
 from .lengths import correlation_length
 from .open_formula import long_open_sum, open_formula
 from .perron import Perron, ordered_eigenvalues, perron_of
 from .promises import finished, not_finished
-from .recurrence import minimal_polynomial, ring_sum, trace_of_power
+from .recurrence import ring_sum, trace_of_power
 from .spectrum import Spectrum
 
 __all__ = ["ClosedForm"]
@@ -90,9 +90,7 @@ class ClosedForm:
     def recurrence(self) -> tuple[Any, ...]:
         """Coefficients c₁, c₂, … of Z_N = c₁ Z_{N−1} + c₂ Z_{N−2} + … for N > their number."""
         self._require_polynomial("the recurrence")
-        return self._within(
-            "the recurrence", lambda: report.recurrence(self.spectrum, minimal_polynomial(self.spectrum))
-        )
+        return self._within("the recurrence", lambda: report.recurrence(self.spectrum))
 
     def partition_function(self, N: int | None = None) -> Any:
         """Partition function of a ring of N cells.
@@ -133,11 +131,8 @@ class ClosedForm:
     def open_partition_function(self, N: int | None = None) -> Any:
         """Partition function of an open chain of N cells; terms that reach beyond an end are left out.
 
-        Parameters
-        ----------
-        N : int, optional
-            Number of cells; then the exact sum of exponentials is returned, with or without a
-            closed form. A symbol when left out.
+        For a number of cells the exact sum of exponentials, with or without a closed form; N is a
+        symbol when left out.
 
         Examples
         --------
@@ -210,26 +205,25 @@ class ClosedForm:
 
     def susceptibility(self, first: str, second: str | None = None) -> Any:
         """Susceptibility ∂⟨a⟩/∂φ for an added energy −φ b; b is a when left out."""
-        other = first if second is None else second
-        self.chain.observable(first)
-        self.chain.observable(other)
+        other = self._second(first, second)
         return self._within(f"the susceptibility of {first!r}", lambda: self._perron.susceptibility(first, other))
 
     @cached_property
     def correlation_length(self) -> Any:
         """Correlation length in cells, −1/ln(|λ₂|/λ₁).
 
-        Where the second largest modulus belongs to different eigenvalues at different parameters,
-        it is written as the maximum of their moduli.
+        Where different eigenvalues have the second largest modulus at different parameters, it is the
+        maximum of their moduli. States that those of the infinite chain do not reach are left out.
         """
         if not self.is_closed:
             raise NotApplicable(f"the correlation length needs all eigenvalues: {self.why}")
         self._perron.require_one_root()
-        values = self.eigenvalues
-        return self._within("the correlation length", lambda: correlation_length(self.spectrum, values))
+        return self._within("the correlation length", lambda: correlation_length(self.spectrum, self._perron))
 
     def correlation(self, first: str, second: str | None = None, r: int | None = None, connected: bool = True) -> Any:
         """Correlation ⟨a₀ b_r⟩ of two observables, b at r ≥ 0 cells after a; b is a when left out.
+
+        Where two eigenvalues coincide, terms diverge against each other and their sum stands for its limit.
 
         Parameters
         ----------
@@ -243,7 +237,7 @@ class ClosedForm:
         Raises
         ------
         NotApplicable
-            Not every eigenvalue is written by radicals, or the chain falls into several classes.
+            Several classes of states; a symbol r where not every eigenvalue is written by radicals.
 
         Examples
         --------
@@ -252,21 +246,22 @@ class ClosedForm:
         >>> form.correlation("m")
         tanh(J*beta)**r
         """
-        other = first if second is None else second
-        for name in (first, other):
-            self.chain.observable(name)
-        function = self._correlations.get((first, other))
-        if function is None:
-            function = self._correlations[first, other] = self._correlation(first, other)
-        return function.at(whole_distance(r), connected)
-
-    def _correlation(self, first: str, second: str) -> Correlation:
-        if not self.is_closed:
-            raise NotApplicable(f"the correlation function needs all eigenvalues: {self.why}")
+        other = self._second(first, second)
+        distance = whole_distance(r, self.chain)
+        if r is None and not self.is_closed:
+            raise NotApplicable(f"the correlation function needs all eigenvalues: {self.why}. Give a distance: r=3")
         try:
-            return correlation(self.chain, self.spectrum, first, second, Clock(self.time_limit))
+            return self._correlation(first, other, distance, connected)
         except TimeUp:
-            raise not_finished(f"the correlation of {first!r} and {second!r}", self.time_limit) from None
+            raise not_finished(f"the correlation of {first!r} and {other!r}", self.time_limit) from None
+
+    def _correlation(self, first: str, second: str, r: Any, connected: bool) -> Any:
+        clock, pair = Clock(self.time_limit), (first, second)
+        if not self.is_closed:
+            return single_correlation(self._perron, *pair, r, connected, clock)
+        if pair not in self._correlations:
+            self._correlations[pair] = correlation(self._perron, *pair, clock)
+        return self._correlations[pair].at(r, connected)
 
     # --- what keeps the promises
 
@@ -277,6 +272,12 @@ class ClosedForm:
         if "T" in self.chain.fixed:
             raise NotApplicable(f"{what} differentiates by T, which is fixed in this chain; leave T free")
         return self._within(what, compute)
+
+    def _second(self, first: str, second: str | None) -> str:
+        other = first if second is None else second
+        for name in (first, other):
+            self.chain.observable(name)
+        return other
 
     def _check_free(self, name: str) -> None:
         known = [*self.chain.free, *([] if "T" in self.chain.fixed else ["T"])]

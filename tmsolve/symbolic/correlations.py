@@ -10,19 +10,19 @@ from collections.abc import Sequence
 from dataclasses import dataclass
 from typing import Any
 
-from ..declare.chain import Chain
 from ..errors import NotApplicable, SolveError
 from ..tabulate.colours import numbers_of_colours
 from .colours.matrix import inserted_colour_matrices
 from .correlation_modes import Modes
 from .correlation_values import PerronTrace
 from .deadline import Clock, limited
+from .field_text import FieldWriter
 from .matrix import Insertions, SymbolicMatrix, inserted_matrices
 from .perron import Perron, perron_of
-from .spectrum import Spectrum, solve_spectrum
+from .spectrum import solve_spectrum
 from .verify import evaluate, generic_points
 
-__all__ = ["Correlation", "correlation"]
+__all__ = ["Correlation", "correlation", "single_correlation"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -60,15 +60,13 @@ class Correlation:
         return sp.Piecewise(*special, (total, True))
 
 
-def correlation(chain: Chain, spectrum: Spectrum, first: str, second: str, clock: Clock) -> Correlation:
+def correlation(perron: Perron, first: str, second: str, clock: Clock) -> Correlation:
     """Derive ⟨a₀ b_r⟩ for two observables.
 
     Parameters
     ----------
-    chain : Chain
-        The chain.
-    spectrum : Spectrum
-        That of its matrix, solved by radicals.
+    perron : Perron
+        The largest eigenvalue of the chain, and the spectrum, solved by radicals.
     first, second : str
         Observables at cells 0 and r ≥ 0.
     clock : Clock
@@ -79,19 +77,42 @@ def correlation(chain: Chain, spectrum: Spectrum, first: str, second: str, clock
     NotApplicable
         Eigenvalues without a form by radicals, several Perron roots, or Jordan blocks.
     """
-    coloured = bool(numbers_of_colours(chain))
-    put = limited(clock.left, inserted_colour_matrices if coloured else inserted_matrices, chain, first, second)
-    if coloured or not _same_symbols(put.matrix, spectrum.matrix):
-        # Observables that are wide, or hold parameters of their own, change the matrix or its symbols.
-        spectrum = solve_spectrum(put.matrix, clock)
-    if not spectrum.is_solved:
+    perron, put = _inserted(perron, first, second, clock)
+    if not perron.spectrum.is_solved:
         raise NotApplicable(
             "the correlation function as a formula needs every eigenvalue by radicals; use "
             "solve(chain.at(…)).correlation(…) for numbers, or fix more parameters"
         )
-    perron = perron_of(chain, spectrum)
-    perron.require_simple_root()
     return limited(clock.left, _derive, perron, put, (first, second))
+
+
+def single_correlation(perron: Perron, first: str, second: str, r: int, connected: bool, clock: Clock) -> Any:
+    """Return ⟨a₀ b_r⟩ at one distance as a number of the field of the largest eigenvalue, which may be a symbol."""
+    perron, put = _inserted(perron, first, second, clock)
+    if not perron.spectrum.factors:
+        raise NotApplicable("a correlation as a formula needs the characteristic polynomial, which is not known")
+    return limited(clock.left, _single, perron, put, (first, second), r, connected)
+
+
+def _single(perron: Perron, put: Insertions, names: tuple[str, str], r: int, connected: bool) -> Any:
+    trace = PerronTrace(put, perron.spectrum.factors, perron.factor)
+    leading = perron.factor
+    block = leading.block.matrix if leading.degree == leading.block.size == 2 else None
+    writer = FieldWriter(trace.field, trace.matrix, perron.spectrum.writer, perron.value, block)
+    value = writer.write(trace.value(r))
+    return value - perron.mean(names[0]) * perron.mean(names[1]) if connected else value
+
+
+def _inserted(perron: Perron, first: str, second: str, clock: Clock) -> tuple[Perron, Insertions]:
+    """Put the observables into the matrix, and solve it anew where they change it."""
+    chain = perron.chain
+    coloured = bool(numbers_of_colours(chain))
+    put = limited(clock.left, inserted_colour_matrices if coloured else inserted_matrices, chain, first, second)
+    if coloured or not _same_symbols(put.matrix, perron.spectrum.matrix):
+        # Observables that are wide, or hold parameters of their own, change the matrix or its symbols.
+        perron = perron_of(chain, solve_spectrum(put.matrix, clock))
+    perron.require_simple_root()
+    return perron, put
 
 
 def _same_symbols(a: SymbolicMatrix, b: SymbolicMatrix) -> bool:

@@ -126,9 +126,18 @@ class FieldWriter:
 
     def _in_powers(self, element: Element, degree: int) -> Draft:
         """Write polynomials in λ, for degrees where it cannot be removed from the denominator."""
+        element = self._without_common_root(element)
         weight = self._weight(element.down) + degree
         below = [power(self._polynomial(key, self.field.weights[key]), n) for key, n in element.down.items()]
         return quotient(Fraction(1), [self._polynomial(element.up, weight)], below)
+
+    def _without_common_root(self, element: Element) -> Element:
+        """Divide numerator and denominator by powers of λ that both have."""
+        up, down = element.up, dict(element.down)
+        while down.get(self.field.mu) and not up[0]:
+            up = (*up[1:], self.field.ring.zero)
+            down[self.field.mu] -= 1
+        return Element(up, {key: n for key, n in down.items() if n})
 
     def _polynomial(self, poly: Poly, weight: int) -> Draft:
         eigenvalue = atom(self.eigenvalue)

@@ -2,22 +2,23 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
 from typing import Any
 
 from .alphabet import Laurent
 from .field_text import write_quotient
+from .perron import Perron
 from .roots import is_reversible, quadratic
-from .spectrum import Factor, Spectrum
+from .spectrum import Factor, Spectrum, leading_class
 
 __all__ = ["correlation_length"]
 
 
-def correlation_length(spectrum: Spectrum, eigenvalues: Sequence[tuple[Any, int]]) -> Any:
-    """Return −1/ln(|λ₂|/λ₁) in cells; 0 when every other eigenvalue vanishes."""
+def correlation_length(spectrum: Spectrum, perron: Perron) -> Any:
+    """Return −1/ln(|λ₂|/λ₁) in cells; 0 when every other eigenvalue of the leading class vanishes."""
     import sympy as sp
 
-    first = eigenvalues[0][0]
+    first = perron.value
+    spectrum = leading_class(spectrum, perron.factor)
     rivals = [f for f in spectrum.factors if not f.is_zero and f.roots != (first,)]
     rivals = [f for f in rivals if not any(_dominates(spectrum, other, f) for other in rivals)]
     if not rivals:

@@ -17,9 +17,10 @@ from ..declare.terms import Term
 from ..operators.elimination import ArrayAlgebra
 from ..tabulate.symbolic import beta, parameter_symbols, symbolic_table
 from .alphabet import Alphabet, Laurent, Scale
-from .boltzmann import Terms, boltzmann_terms, polynomial_terms
+from .boltzmann import Terms, polynomial_terms
 from .jet import Jet
 from .permutations import Permutation, numbered, verified
+from .weights import mixed_signs, term_weights
 
 __all__ = ["Insertions", "SymbolicMatrix", "inserted_matrices", "piece_matrices", "symbolic_matrix", "tilted_matrix"]
 
@@ -73,8 +74,7 @@ def symbolic_matrix(chain: Chain) -> SymbolicMatrix:
     """Assemble the transfer matrix of a chain over its smallest cut."""
     window = build_window(chain)
     tables = _factor_tables(chain, window)
-    alphabet = Alphabet.of(terms for table in tables for terms in table.ravel())
-    return _reduce(window, alphabet, tables, [], lambda element: element)
+    return _reduce(window, _alphabet(tables, ()), tables, [], lambda element: element)
 
 
 def tilted_matrix(chain: Chain, first: str, second: str | None = None) -> SymbolicMatrix:
@@ -161,7 +161,7 @@ def _weighed(chain: Chain, window: ChainWindow, names: Sequence[str]) -> tuple[l
 
 def _alphabet(factors: Sequence[np.ndarray], sources: Sequence[_Source]) -> Alphabet:
     tables = [*factors, *(table for *_, table in sources)]
-    return Alphabet.of(terms for table in tables for terms in table.ravel())
+    return Alphabet.of((terms for table in tables for terms in table.ravel()), mixed=mixed_signs(factors))
 
 
 def piece_matrices(chain: Chain, pieces: Sequence[ChainWindow], alphabet: Alphabet) -> list[SymbolicMatrix]:
@@ -182,8 +182,7 @@ def _factor_tables(chain: Chain, window: ChainWindow) -> list[np.ndarray]:
             tables.append(_each(np.array(weights, dtype=object), _constant))
             continue
         if source not in known:
-            weigh = polynomial_terms if source.role == "weight" else lambda energy: boltzmann_terms(energy, inverse)
-            known[source] = _each(symbolic_table(chain, source, symbols), weigh)
+            known[source] = term_weights(chain, source, symbolic_table(chain, source, symbols), inverse)
         tables.append(known[source])
     return tables
 

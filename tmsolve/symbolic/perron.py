@@ -62,6 +62,7 @@ class Perron:
         self.factor = factor
         self.value = value
         self.tied = tied
+        self._means: dict[str, Any] = {}
 
     @property
     def beta(self) -> Any:
@@ -130,14 +131,16 @@ class Perron:
 
     def mean(self, name: str) -> Any:
         """Return the mean of an observable per cell."""
-        self.require_one_root()
-        writer, element = mean_element(self.chain, name, self.value)
-        return writer.write(element)
+        if name not in self._means:
+            self.require_one_root()
+            writer, element = mean_element(self.chain, name, self.value, self.spectrum)
+            self._means[name] = writer.write(element)
+        return self._means[name]
 
     def susceptibility(self, first: str, second: str) -> Any:
         """Return ∂⟨first⟩/∂φ for an added energy −φ·second."""
         self.require_one_root()
-        writer, element = response_element(self.chain, first, second, self.value)
+        writer, element = response_element(self.chain, first, second, self.value, self.spectrum)
         return self.beta * writer.write(element)
 
 

@@ -47,6 +47,8 @@ class Writer:
         self._over_beta = [key / shared if shared in sp.Mul.make_args(key) else None for key in alphabet.classes]
         self._known: dict[frozenset[tuple[Vector, Fraction]], Draft] = {}
         self._arguments: dict[Vector, Draft] = {}
+        #: Roots of quadratics that were written already; finding the best form takes long.
+        self.quadratics: dict[Any, Any] = {}
         self._factors: dict[frozenset[tuple[Vector, Fraction]], tuple[Fraction, list[tuple[Laurent, int]]]] = {}
 
     def _pairs_of_classes(self) -> Iterable[tuple[Any, bool]]:

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
 from typing import TYPE_CHECKING, Any
 
 from ..errors import NotApplicable
@@ -10,18 +11,31 @@ from .colours.matrix import ColourMatrix
 from .multiplicity import factor_text
 from .perron import eigenvalue_symbol
 from .plain import latex_text, plain_text
-from .polynomials import Coefficients
+from .recurrence import minimal_polynomial
 from .spectrum import Spectrum
 
 if TYPE_CHECKING:
     from .forms import ClosedForm
 
-__all__ = ["cells_symbol", "latex", "long_sum", "matrix", "polynomial", "reason", "recurrence", "text"]
+__all__ = [
+    "cells_symbol",
+    "latex",
+    "long_sum",
+    "matrix",
+    "polynomial",
+    "reason",
+    "recurrence",
+    "ring_latex",
+    "ring_text",
+    "text",
+]
 
 #: Sums with more terms are written out in exponentials without looking for a shorter form.
 _READABLE_TERMS = 12
 #: Longer formulas are named, not printed, in the text form.
 _PRINTED_LETTERS = 1500
+#: In a longer Z_N eigenvalues are named.
+_NAMED_LETTERS = 500
 
 
 def matrix(spectrum: Spectrum) -> Any:
@@ -72,8 +86,9 @@ def polynomial(spectrum: Spectrum) -> Any:
     return product
 
 
-def recurrence(spectrum: Spectrum, minimal: Coefficients) -> tuple[Any, ...]:
+def recurrence(spectrum: Spectrum) -> tuple[Any, ...]:
     """Return c₁, c₂, … of Z_N = Σ c_k Z_{N−k}."""
+    minimal = minimal_polynomial(spectrum)
     return tuple(_coefficient(spectrum, spectrum.matrix.laurent(-c, k)) for k, c in enumerate(minimal) if k > 0)
 
 
@@ -99,10 +114,7 @@ def text(form: ClosedForm) -> str:
     beta = "beta = 1/T" if fixed is None else f"T = {fixed}"
     lines = [f"{form.chain.name}: transfer matrix {size} x {size}; {beta}{_validity(form.spectrum)}"]
     if form.is_closed:
-        lines.append(f"  Z_N = {ring_text(form)}")
-        lines.append("  eigenvalues (multiplicity)")
-        lines += [f"    {plain_text(value)}  ({_times(m)})" for value, m in form.eigenvalues]
-        lines.append(f"  f = {plain_text(form.free_energy)}")
+        lines += _closed_lines(form)
     else:
         lines.append(f"  no closed form: {form.why}")
         if form.spectrum.factors:
@@ -112,6 +124,20 @@ def text(form: ClosedForm) -> str:
         lines.append("  blocks")
         lines += [f"    {b.size} x {b.size}, {_times(b.multiplicity)} times: {b.label}" for b in form.blocks]
     return "\n".join(lines)
+
+
+def _closed_lines(form: ClosedForm) -> list[str]:
+    """Return Z_N, the eigenvalues and f; long eigenvalues are written once and named elsewhere."""
+    ring, energy = ring_text(form), plain_text(form.free_energy)
+    listed = [f"{plain_text(value)}  ({_times(m)})" for value, m in form.eigenvalues]
+    if len(ring) > _NAMED_LETTERS:
+        names = [f"lambda_{k}" for k in range(1, len(listed) + 1)]
+        named = zip(names, form.eigenvalues, strict=True)
+        ring = _sum_of_powers([(name, m) for name, (value, m) in named if value != 0])
+        listed = [f"{name} = {line}" for name, line in zip(names, listed, strict=True)]
+        first = form.eigenvalues[0][0]
+        energy = energy.replace(plain_text(first), names[0]) if first.args else energy
+    return [f"  Z_N = {ring}", "  eigenvalues (multiplicity)", *(f"    {line}" for line in listed), f"  f = {energy}"]
 
 
 def _times(multiplicity: Any) -> str:
@@ -139,12 +165,23 @@ def _shown(expr: Any) -> str:
 
 def ring_text(form: ClosedForm) -> str:
     """Write Z_N with the largest eigenvalue first."""
+    return _sum_of_powers([(_base(value), m) for value, m in form.eigenvalues if value != 0])
+
+
+def _base(value: Any) -> str:
+    """Return an eigenvalue as what can be raised to a power; nothing for 1."""
+    if value == 1:
+        return ""
+    text = plain_text(value)
+    return text if (value.is_Atom and not value.is_negative) or value.is_Function else f"({text})"
+
+
+def _sum_of_powers(terms: Sequence[tuple[str, Any]]) -> str:
     parts = []
-    for value, m in form.eigenvalues:
-        if value != 0:
-            base = plain_text(value)
-            base = base if value.is_Atom or value.is_Function else f"({base})"
-            parts.append(f"{base}**N" if m == 1 else f"{factor_text(m, _times(m))}*{base}**N")
+    for base, m in terms:
+        factors = [] if m == 1 else [factor_text(m, _times(m))]
+        factors += [f"{base}**N"] if base else []
+        parts.append("*".join(factors) or "1")
     return " + ".join(parts)
 
 
@@ -154,9 +191,15 @@ def latex(form: ClosedForm) -> str:
         if not form.spectrum.factors:
             return f"$\\text{{{form.why}}}$"
         return f"$\\displaystyle \\det(\\lambda - M) = {latex_text(form.characteristic_polynomial)}$"
+    return f"$\\displaystyle Z_{{N}} = {ring_latex(form)}$"
+
+
+def ring_latex(form: ClosedForm) -> str:
+    """Write Z_N as LaTeX without dollar signs, the largest eigenvalue first."""
     parts = []
     for value, m in form.eigenvalues:
         if value != 0:
-            times = "" if m == 1 else factor_text(m, str(m) if isinstance(m, int) else latex_text(m)) + " "
-            parts.append(times + f"\\left({latex_text(value)}\\right)^{{N}}")
-    return f"$\\displaystyle Z_{{N}} = {' + '.join(parts)}$"
+            factors = [] if m == 1 else [factor_text(m, str(m) if isinstance(m, int) else latex_text(m))]
+            factors += [] if value == 1 else [f"\\left({latex_text(value)}\\right)^{{N}}"]
+            parts.append(" ".join(factors) or "1")
+    return " + ".join(parts)

@@ -108,6 +108,14 @@ def _roots_of_squares(factor: Coefficients, matrix: SymbolicMatrix, writer: Writ
 
 def quadratic(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, block: np.ndarray | None) -> Quadratic:
     """Return the most readable way to write the two roots of a quadratic factor."""
+    key = factor, matrix.scale, None if block is None else tuple(block.ravel().tolist())
+    if key not in writer.quadratics:
+        writer.quadratics[key] = _quadratic(factor, matrix, writer, block)
+    found: Quadratic = writer.quadratics[key]
+    return found
+
+
+def _quadratic(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, block: np.ndarray | None) -> Quadratic:
     _, c1, c2 = factor
     domain = c1.ring.domain
     middle = matrix.laurent(-c1 / domain(2))

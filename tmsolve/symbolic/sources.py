@@ -28,7 +28,7 @@ from .matrix import SymbolicMatrix, tilted_matrix
 from .permutations import numbered
 from .polynomials import berkowitz, factors
 from .readable import Writer
-from .spectrum import Factor, Spectrum, leading_factor
+from .spectrum import Factor, Spectrum, larger_factor
 
 __all__ = ["mean_element", "response_element"]
 
@@ -49,7 +49,7 @@ class _Tilted:
     below: tuple[Poly, ...]
 
 
-def mean_element(chain: Chain, name: str, eigenvalue: Any) -> tuple[FieldWriter, Element]:
+def mean_element(chain: Chain, name: str, eigenvalue: Any, spectrum: Spectrum) -> tuple[FieldWriter, Element]:
     """Return ∂ ln λ/∂φ for the source φ of an observable: its mean per cell.
 
     Parameters
@@ -60,15 +60,19 @@ def mean_element(chain: Chain, name: str, eigenvalue: Any) -> tuple[FieldWriter,
         One of its observables.
     eigenvalue : sympy expression
         The Perron root, for results that cannot be freed of it.
+    spectrum : Spectrum
+        Of the matrix without sources; a root that it knows is written the same way.
     """
-    tilted = _tilted(chain, (name,), eigenvalue)
+    tilted = _tilted(chain, (name,), eigenvalue, spectrum)
     field = tilted.field
     return tilted.writer, field.negative(field.over(tilted.value[1], *tilted.below, field.mu))
 
 
-def response_element(chain: Chain, first: str, second: str, eigenvalue: Any) -> tuple[FieldWriter, Element]:
+def response_element(
+    chain: Chain, first: str, second: str, eigenvalue: Any, spectrum: Spectrum
+) -> tuple[FieldWriter, Element]:
     """Return ∂² ln λ/∂φ∂ψ for the sources of two observables: the sum of their connected correlations."""
-    tilted = _tilted(chain, (first, second), eigenvalue)
+    tilted = _tilted(chain, (first, second), eigenvalue, spectrum)
     field = tilted.field
     by_a, by_b = (field.negative(field.over(tilted.value[i], *tilted.below)) for i in (1, 2))
     both = field.product(by_a, by_b)
@@ -84,13 +88,14 @@ def response_element(chain: Chain, first: str, second: str, eigenvalue: Any) -> 
     return tilted.writer, field.total([relative, field.negative(square)])
 
 
-def _tilted(chain: Chain, names: Sequence[str], eigenvalue: Any) -> _Tilted:
+def _tilted(chain: Chain, names: Sequence[str], eigenvalue: Any, spectrum: Spectrum) -> _Tilted:
     matrix = tilted_colour_matrix(chain, *names) if numbers_of_colours(chain) else tilted_matrix(chain, *names)
     ring = matrix.alphabet.ring
-    writer = Writer(matrix.alphabet)
+    writer = spectrum.writer if _same_symbols(matrix, spectrum.matrix) else Writer(matrix.alphabet)
     factor, jets, others = _leading(matrix, writer, _lumped(matrix, keep_sources=len(names) > 1))
     field = RootField(factor.polynomial, ring)
-    block = factor.block.matrix if factor.degree == factor.block.size == 2 else None
+    known = _known(factor, matrix, spectrum)
+    block = known.block.matrix if known.degree == known.block.size == 2 else None
     parts = [[jet.parts()[i] for jet in reversed(jets)] for i in range(4)]
     # P = F G gives P_μ = F_μ G at a simple root of F.
     below = [field.slope]
@@ -105,6 +110,17 @@ def _tilted(chain: Chain, names: Sequence[str], eigenvalue: Any) -> _Tilted:
         field.embed(derivative(derivative(parts[0]))),
         tuple(below),
     )
+
+
+def _same_symbols(a: SymbolicMatrix, b: SymbolicMatrix) -> bool:
+    return (a.alphabet.classes, a.alphabet.units) == (b.alphabet.classes, b.alphabet.units)
+
+
+def _known(factor: Factor, matrix: SymbolicMatrix, spectrum: Spectrum) -> Factor:
+    """Return the same factor of the matrix without sources, whose block the root was written with."""
+    if not _same_symbols(matrix, spectrum.matrix) or matrix.scale != spectrum.matrix.scale:
+        return factor
+    return next((f for f in spectrum.factors if f.polynomial == factor.polynomial), factor)
 
 
 def _leading(matrix: SymbolicMatrix, writer: Writer, lumped: np.ndarray) -> tuple[Factor, Any, list]:
@@ -128,7 +144,7 @@ def _value(jet: Jet) -> bool:
 
 
 def _larger(matrix: SymbolicMatrix, writer: Writer, new: Factor, old: Factor) -> bool:
-    return leading_factor(Spectrum(matrix, writer, factors=(old, new)))[0] == 1
+    return larger_factor(Spectrum(matrix, writer, factors=(old, new)), 0, 1) == 1
 
 
 def _lumped(matrix: SymbolicMatrix, keep_sources: bool) -> np.ndarray:

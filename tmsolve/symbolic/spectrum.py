@@ -6,16 +6,17 @@ is kept and the reason is noted.
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from dataclasses import dataclass, field, replace
 from typing import Any
 
 import numpy as np
 
 from ..errors import NotApplicable
-from .blocks import Block, merged, split
+from .blocks import Block, components, merged, split
 from .colours.matrix import ColourMatrix
 from .deadline import Clock, TimeUp, limited
+from .dominance import undominated
 from .matrix import SymbolicMatrix
 from .multiplicity import both
 from .polynomials import Coefficients, characteristic, factors
@@ -23,7 +24,7 @@ from .readable import Writer
 from .roots import is_reversible, radicals
 from .verify import generic_points, number_value, symbol_values
 
-__all__ = ["Factor", "Spectrum", "leading_factor", "solve_spectrum"]
+__all__ = ["Factor", "Spectrum", "larger_factor", "leading_class", "leading_factor", "solve_spectrum"]
 
 #: Parts of the remaining time that stages may use; without a characteristic polynomial nothing follows.
 _BLOCKS, _POLYNOMIALS, _FACTORS, _ROOTS = 0.4, 0.9, 0.5, 0.6
@@ -44,6 +45,8 @@ class Factor:
         the number of colours is a symbol.
     leading : int
         How often it divides those of the blocks that can carry the Perron root.
+    homes : tuple of Block
+        These blocks.
     irreducible : bool
         Whether it is known not to factor further.
     roots : tuple of sympy expressions
@@ -56,6 +59,7 @@ class Factor:
     leading: int
     irreducible: bool = True
     roots: tuple[Any, ...] = ()
+    homes: tuple[Block, ...] = ()
 
     @property
     def degree(self) -> int:
@@ -134,7 +138,10 @@ def _with_blocks(spectrum: Spectrum) -> Spectrum:
 def _with_polynomials(spectrum: Spectrum) -> Spectrum:
     ring = spectrum.matrix.alphabet.ring
     found = merged([(block, characteristic(block.matrix, ring)) for block in spectrum.blocks])
-    whole = [Factor(p, b, b.multiplicity, b.multiplicity if b.positive else 0, irreducible=False) for b, p in found]
+    whole = [
+        Factor(p, b, b.multiplicity, b.multiplicity if b.positive else 0, irreducible=False, homes=(b,) * b.positive)
+        for b, p in found
+    ]
     return replace(spectrum, blocks=tuple(block for block, _ in found), factors=tuple(whole))
 
 
@@ -148,6 +155,7 @@ def _with_factors(spectrum: Spectrum) -> Spectrum:
                 first,
                 multiplicity=both(first.multiplicity, power * whole.multiplicity),
                 leading=first.leading + power * whole.leading,
+                homes=(*first.homes, *whole.homes),
             )
     return replace(spectrum, factors=tuple(found.values()))
 
@@ -186,10 +194,11 @@ def _no_radicals(factor: Factor, real: bool) -> str:
 
 
 def leading_factor(spectrum: Spectrum) -> list[int]:
-    """Return which factors have the largest root at one or other of a few generic points.
+    """Return which factors may have the largest root, one that has it at some generic point first.
 
     One index when the matrix is irreducible: its Perron root is simple, so that it cannot
-    pass from one factor to another as parameters change.
+    pass from one factor to another as parameters change. Of classes that do not reach each
+    other those stay whose root was not proved to be smaller than another one.
     """
     candidates = [i for i, f in enumerate(spectrum.factors) if f.leading and not f.is_zero]
     if not candidates:
@@ -199,13 +208,53 @@ def leading_factor(spectrum: Spectrum) -> list[int]:
         )
     if len(candidates) < 2:
         return candidates
-    winners: dict[int, None] = {}
+    radii = _radii(spectrum, candidates)
+    homes = list(dict.fromkeys(block for i in candidates for block in spectrum.factors[i].homes))
+    first = _largest(radii, candidates)
+    if len(homes) < 2:
+        return [first]
+    left = undominated([block.matrix for block in homes], spectrum.matrix.alphabet)
+    own = [[i for i in candidates if homes[k] in spectrum.factors[i].homes] for k in left]
+    leading = dict.fromkeys(_largest(radii, each) for each in own)
+    return sorted(leading, key=lambda i: i != first)
+
+
+def leading_class(spectrum: Spectrum, leading: Factor) -> Spectrum:
+    """Return the spectrum of the states that the infinite chain is in: those that lead, with their own eigenvalues.
+
+    States that do not reach each other have eigenvalues of their own, which rings see and the
+    infinite chain does not.
+    """
+    matrix = spectrum.matrix
+    if isinstance(matrix, ColourMatrix) or len(leading.homes) != 1:
+        return spectrum
+    classes = components(Block(matrix.entries, "", positive=True))
+    for own in classes if len(classes) > 1 else ():
+        part = replace(spectrum, blocks=tuple(split(own.matrix)), factors=(), notes=())
+        part = _with_factors(_with_polynomials(part))
+        if any(f.polynomial == leading.polynomial and f.leading for f in part.factors):
+            part = _with_roots(part)
+            own_factors = (leading if f.polynomial == leading.polynomial else f for f in part.factors)
+            return replace(part, factors=tuple(own_factors))
+    return spectrum
+
+
+def larger_factor(spectrum: Spectrum, first: int, second: int) -> int:
+    """Return which of two factors has the largest root at a generic point."""
+    return _largest(_radii(spectrum, [first, second], 1), [first, second])
+
+
+def _radii(spectrum: Spectrum, candidates: Sequence[int], count: int = 3) -> list[dict[int, Any]]:
+    """Return the largest moduli of roots at generic points."""
     alphabet = spectrum.matrix.alphabet
-    for point in generic_points(alphabet, 5):
-        values = symbol_values(alphabet, point)
-        radii = {i: _radius(spectrum.factors[i].polynomial, values) for i in candidates}
-        winners[max(radii, key=lambda i: radii[i])] = None
-    return list(winners)
+    points = [symbol_values(alphabet, point) for point in generic_points(alphabet, count)]
+    return [{i: _radius(spectrum.factors[i].polynomial, values) for i in candidates} for values in points]
+
+
+def _largest(radii: Sequence[dict[int, Any]], candidates: Sequence[int]) -> int:
+    """Return the factor that has the largest root most often."""
+    wins = [max(candidates, key=lambda i: at[i]) for at in radii]
+    return max(candidates, key=wins.count)
 
 
 def _radius(polynomial: Coefficients, values: list[Any]) -> Any:

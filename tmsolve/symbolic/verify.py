@@ -2,20 +2,26 @@
 
 from __future__ import annotations
 
+import math
 import random
 from collections.abc import Iterator, Mapping, Sequence
+from functools import lru_cache
 from typing import Any
 
 import numpy as np
 
+from ..errors import NotApplicable, listing
 from .alphabet import Alphabet
+from .boltzmann import Terms
 from .matrix import SymbolicMatrix
 
-__all__ = ["evaluate", "generic_points", "mismatch", "number_value", "numeric_matrix", "symbol_values"]
+__all__ = ["evaluate", "generic_points", "has_weights", "mismatch", "number_value", "numeric_matrix", "symbol_values"]
 
 _DIGITS = 50
 #: Numbers of colours at generic points.
 _COUNTS = 20, 60
+#: Random points tried for each one that is found.
+_ATTEMPTS = 400
 #: Agreement asked for, relative to the sum of moduli; what a formula may lose to cancellation is below it.
 _TOLERANCE = 1e-25
 
@@ -25,21 +31,53 @@ def generic_points(alphabet: Alphabet, count: int, seed: int = 7) -> Iterator[di
 
     Parameters that occur as weights come out positive, the others with either sign; numbers of
     colours come out whole and larger than any number of sites in a cut.
+
+    Raises
+    ------
+    NotApplicable
+        No values were found at which every weight is positive.
     """
     import sympy as sp
 
     draw = random.Random(seed)
     symbols = sorted(set().union(*(key.free_symbols for key in alphabet.classes)), key=str)
-    weights = [key.args[0] for key in alphabet.classes if isinstance(key, sp.log)]
-    positive = {s for w in weights for s in w.free_symbols} | {s for s in symbols if s.is_positive}
+    positive = {s for w in _bases(alphabet) for s in w.free_symbols} | {s for s in symbols if s.is_positive}
     for _ in range(count):
-        for _ in range(200):
+        for attempt in range(_ATTEMPTS):
+            # Weights such as 1 − w are positive for small parameters.
+            most = 10 if alphabet.mixed and attempt % 2 else 17
             signs = {s: 1 if s in positive else draw.choice((1, -1)) for s in symbols}
-            point = {s: sp.Rational(signs[s] * draw.randint(2, 17), 11) for s in symbols}
+            point = {s: sp.Rational(signs[s] * draw.randint(2 if most > 10 else 1, most), 11) for s in symbols}
             point |= {s: sp.Integer(draw.randint(*_COUNTS)) for s in alphabet.counts}
-            if all(w.subs(point).is_positive for w in weights):
+            if has_weights(alphabet, point):
                 yield point
                 break
+        else:
+            raise NotApplicable(
+                f"no values of {listing(map(str, symbols))} were found at which all weights are positive, so that "
+                "formulas cannot be compared with the matrix; check the signs of the weights, or fix parameters with "
+                "chain.fix(…)"
+            )
+
+
+def has_weights(alphabet: Alphabet, point: Mapping[Any, Any]) -> bool:
+    """Whether every weight of an alphabet is defined and positive at rational values of its symbols."""
+    if not all(base.subs(point).is_positive for base in _bases(alphabet)):
+        return False
+    return all(_weight(terms, point) > 0 for terms in alphabet.mixed)
+
+
+def _bases(alphabet: Alphabet) -> list[Any]:
+    import sympy as sp
+
+    return [key.args[0] for key in alphabet.classes if isinstance(key, sp.log)]
+
+
+def _weight(terms: Terms, point: Mapping[Any, Any]) -> float:
+    total = 0.0
+    for monomial, c in terms.items():
+        total += float(c) * math.exp(sum(float(key.subs(point)) * float(exponent) for key, exponent in monomial))
+    return total
 
 
 def evaluate(expr: Any, point: Mapping[Any, Any], digits: int = _DIGITS) -> Any:
@@ -47,11 +85,18 @@ def evaluate(expr: Any, point: Mapping[Any, Any], digits: int = _DIGITS) -> Any:
     import mpmath as mp
     import sympy as sp
 
-    symbols = list(point)
+    function = _function(tuple(point), expr)
     with mp.workdps(digits + 10):
-        function = sp.lambdify(symbols, expr, modules="mpmath")
         values = [sp.Rational(v) for v in point.values()]
         return mp.mpmathify(function(*(mp.mpf(int(v.p)) / int(v.q) for v in values)))
+
+
+@lru_cache(maxsize=32)
+def _function(symbols: tuple[Any, ...], expr: Any) -> Any:
+    """Return an expression as a function of mpmath numbers; writing it costs more than calling it."""
+    import sympy as sp
+
+    return sp.lambdify(symbols, expr, modules="mpmath")
 
 
 def symbol_values(alphabet: Alphabet, point: Mapping[Any, Any], digits: int = _DIGITS) -> list[Any]:

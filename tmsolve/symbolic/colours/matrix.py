@@ -19,6 +19,7 @@ from ..blocks import Block, components
 from ..boltzmann import Terms, polynomial_terms
 from ..jet import Jet
 from ..matrix import Insertions, SymbolicMatrix
+from ..weights import mixed_signs
 from .patterns import Pattern, PatternAlgebra, PatternTable
 from .sectors import Overlay, lumped, overlays, reversible, sector
 from .tables import ColourTables, colour_tables
@@ -145,7 +146,8 @@ def _assembled(chain: Chain, tables: ColourTables, wrap: Callable[[Any], Any]) -
     """Assemble a matrix with symbols of its own."""
     number = colour_symbol(chain)
     terms = (entry for local in (*tables.factors, *tables.sources) for entry in local.terms.ravel())
-    alphabet = Alphabet.of([*terms, polynomial_terms(number)], counts=(number,))
+    mixed = mixed_signs(local.terms for local in tables.factors)
+    alphabet = Alphabet.of([*terms, polynomial_terms(number)], (number,), mixed)
     scale, entries, whole = _reduced(tables, alphabet, number, wrap)
     left = tables.window.left
     patterns = {p: len(tables.palette.colours(p, left)) for p in tables.palette.patterns(left)}

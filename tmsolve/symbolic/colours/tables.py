@@ -14,7 +14,8 @@ from ...declare.chain import Chain
 from ...declare.terms import Term
 from ...tabulate.colours import colour_table, token_chain
 from ...tabulate.symbolic import beta, parameter_symbols
-from ..boltzmann import Terms, boltzmann_terms, polynomial_terms
+from ..boltzmann import Terms, polynomial_terms
+from ..weights import term_weights
 from .patterns import Palette, Pattern, PatternTable
 
 __all__ = ["ColourTables", "Local", "colour_tables"]
@@ -114,8 +115,7 @@ def _factors(tokens: Chain, window: ChainWindow) -> list[Local]:
             table = _each(np.array(weights, dtype=object), lambda w: {frozenset(): Fraction(w)} if w else {})
         else:
             if source not in known:
-                weigh = polynomial_terms if source.role == "weight" else lambda energy: boltzmann_terms(energy, inverse)
-                known[source] = _each(colour_table(tokens, source, symbols), weigh)
+                known[source] = term_weights(tokens, source, colour_table(tokens, source, symbols), inverse)
             table = known[source]
         found.append(Local(factor.sites, table))
     return found

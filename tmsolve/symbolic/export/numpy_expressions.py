@@ -9,10 +9,13 @@ from __future__ import annotations
 from typing import Any
 
 from ...errors import NotApplicable
+from ...tabulate.symbolic import beta
 from .numpy_surds import Exponentials, as_exponentials, as_surd
 
 __all__ = ["expression_lines", "python_text"]
 
+#: Longer sums of fractions are not brought over one denominator.
+_JOINED = 300
 #: Functions whose values are of the size of their arguments.
 _TAME = {"log", "acos", "cos", "sin", "atan", "tanh", "sign"}
 _NAMES = {"acos": "numpy.arccos", "cos": "numpy.cos", "sin": "numpy.sin", "atan": "numpy.arctan", "tanh": "numpy.tanh"}
@@ -120,18 +123,29 @@ class _Writer:
             return self._total(terms)
         surd = as_surd(expr)
         if surd is None:
-            return None
+            return self._fraction(expr)
         plain, radical, square, below = surd
         parts = [as_exponentials(part) for part in (plain, radical, plain**2 - radical**2 * square, square)]
         if any(part is None for part in parts) or not parts[0] or not parts[1]:
-            return None
+            return self._fraction(expr)
         first, second, product, inside = (self._named(self._total(part or {})) for part in parts)
         root = self._named(f"_power({inside}, 1, 2)")
         text = f"_surd({first}, _times({second}, {root}), {product})"
         return f"_times({text}, _power({root}, {-below}))" if below else text
 
+    def _fraction(self, expr: Any) -> str | None:
+        """Write fractions over one denominator, so that terms that cancel meet in one sum; None if there are none."""
+        import sympy as sp
+
+        if expr.count_ops() > _JOINED:
+            return None
+        up, below = sp.fraction(sp.together(expr))
+        if not below.has(sp.Function) or not up.is_Add:
+            return None
+        return f"_times({self.signed(up)}, _power({self.signed(below)}, -1))"
+
     def _total(self, terms: Exponentials) -> str:
-        written = [f"({self.plain(c)}, {self.plain(x)})" for x, c in terms.items()]
+        written = [f"({self.plain(c)}, {self.plain(_beta_outside(x))})" for x, c in terms.items()]
         return f"_total({', '.join(written)})" if written else "_number(0.0)"
 
     def _named(self, text: str) -> str:
@@ -140,6 +154,14 @@ class _Writer:
             self._known[text] = f"_{len(self._known)}"
             self.lines.append(f"{self._known[text]} = {text}")
         return self._known[text]
+
+
+def _beta_outside(exponent: Any) -> Any:
+    """Write β once, so that differences of energies are formed before they grow."""
+    import sympy as sp
+
+    energy = sp.expand(exponent / beta())
+    return exponent if energy.has(beta()) or not energy.is_Add else sp.Mul(beta(), energy, evaluate=False)
 
 
 def _tame(expr: Any) -> bool:

@@ -9,6 +9,7 @@ from typing import TYPE_CHECKING, Any
 from ...errors import NotApplicable, ParameterError, SolveError, did_you_mean, listing
 from ...tabulate.symbolic import parameter_symbols
 from ..deadline import TimeUp, limited
+from ..spectrum import leading_class
 from .numpy_check import Reference, formula, leading
 from .numpy_expressions import expression_lines, python_text
 from .numpy_helpers import LEVELS, ROOT, SIGNED
@@ -168,7 +169,7 @@ def _body(form: ClosedForm, name: str, observables: tuple[str, ...]) -> tuple[li
             root = ROOT if any("_larger_root(" in line for line in lines) else ""
             return [*lines, f"return {_FROM_LEVELS[name]}"], LEVELS + root
     if name == "correlation_length":
-        lines = length_lines(form.spectrum, leading(form), python_text)
+        lines = length_lines(leading_class(form.spectrum, leading(form)), leading(form), python_text)
         if lines is not None:
             return [*lines, "return result"], SIGNED + LENGTHS
     return [*expression_lines(formula(form, name, observables)), "return result"], SIGNED

@@ -55,7 +55,7 @@ def _larger_root(a, d, bc, beta):
     root = numpy.sqrt(safe)
     dsquare, ddsquare = 2.0 * gap * dx + 4.0 * dy, 2.0 * gap * ddx + 2.0 * dx**2 + 4.0 * ddy
     droot = dsquare / (2.0 * root)
-    ddroot = ddsquare / (2.0 * root) - dsquare**2 / (4.0 * root * safe)
+    ddroot = ddsquare / (2.0 * root) - dsquare / root * (dsquare / safe) / 4.0
     below, dbelow, ddbelow = root - gap, droot - dx, ddroot - ddx
     e = 2.0 * y / below
     e1 = y1 - dbelow / below
@@ -90,16 +90,22 @@ def _larger_root(a, d, bc, beta):
 
 SIGNED = '''
 def _total(*terms):
-    """Sum of c*exp(x) over the terms (c, x), as (sign, logarithm); equal exponentials cancel exactly."""
+    """Sum of c*exp(x) over the terms (c, x), as (sign, logarithm); exponentials equal but for rounding cancel."""
     shape = numpy.broadcast_shapes(*(numpy.shape(part) for term in terms for part in term))
     c, x = (numpy.stack([numpy.broadcast_to(term[k], shape) for term in terms]) * 1.0 for k in range(2))
+    x = numpy.where(c == 0.0, numpy.min(x, axis=0), x)
     order = numpy.argsort(-x, axis=0, kind="stable")
     x, c = numpy.take_along_axis(x, order, 0), numpy.take_along_axis(c, order, 0)
-    total = numpy.zeros(shape)
-    for weight in c * numpy.exp(x - x[:1]):
-        total = total + weight
+    nothing = 3e-15 * numpy.max(numpy.abs(x), axis=0)
+    for k in range(1, len(terms)):
+        x[k] = numpy.where(x[k - 1] - x[k] <= nothing, x[k - 1], x[k])
+    total, base = c[0], x[0]
+    for weight, log in zip(c[1:], x[1:]):
+        gone = total == 0.0
+        base = numpy.where(gone, log, base)
+        total = numpy.where(gone, weight, total + weight * numpy.exp(log - base))
     with numpy.errstate(divide="ignore"):
-        return numpy.sign(total), x[0] + numpy.log(numpy.abs(total))
+        return numpy.sign(total), base + numpy.log(numpy.abs(total))
 
 
 def _surd(plain, radical, product):
