@@ -271,6 +271,16 @@ def test_no_domains_where_one_value_is_always_taken():
     assert found.domains("m").walls.error == pytest.approx(1 / 200)
 
 
+def test_what_all_replicas_agree_on_is_not_without_error():
+    # Neighbours differ but where a rare strong field comes, which none of these replicas has met.
+    law = {"h": {"0.1": "0.999", "6": "0.001"}}
+    found = disordered_ground_state(FIELD.fix(J=-1, H=0), law, cells=20, replicas=4, rng=1, most_messages=1)
+    domains = found.domains("m")
+    runs = 4 * 20 * domains.density().value
+    assert domains.probabilities(None, 2)[0] == Average(pytest.approx(1), pytest.approx(1 / runs), 3)
+    assert domains.mean_length() == Average(pytest.approx(1), pytest.approx(1 / runs), 3)
+
+
 # --- errors and input
 
 

@@ -93,12 +93,14 @@ class GroundDomains:
         if isinstance(runs, Fraction) and isinstance(cells, Fraction):
             return cells / runs
         names = self._names(value)
-        return average_ratio(self._sampled(GroundChains.mean, names), self._sampled(GroundChains.begun, names))
+        begun = self._sampled(GroundChains.begun, names)
+        return self._over(self._sampled(GroundChains.mean, names), begun)
 
     def probabilities(self, value: Any, longest: int) -> tuple[Number, ...]:
         """P of the lengths 1 … ``longest`` of a run of the value, of any run for ``None``.
 
-        A length that is not in the sample has the error 1 / (number of runs in it).
+        Where all replicas agree, as on a length that is not in the sample, the error is what one run of
+        another length would have made of it: 1 / (number of runs).
 
         Raises
         ------
@@ -121,9 +123,7 @@ class GroundDomains:
             )
         begun = self._sampled(GroundChains.begun, names)
         counted = self._sampled(lambda chains, name: chains.lengths(name, int(longest)), names)
-        unseen = 0.0 if self._averages.replicas == 1 else 1 / (float(begun.sum()) * self._averages.cells)
-        found = [average_ratio(row, begun) for row in counted]
-        return tuple(one if one.value else Average(0.0, unseen, one.degrees) for one in found)
+        return tuple(self._over(row, begun) for row in counted)
 
     @property
     def _ended(self) -> bool:
@@ -165,6 +165,13 @@ class GroundDomains:
         """Measure every replica, the last axis, and add over some values."""
         found = [np.sum([measure(chains, name) for name in names], axis=0) for chains in self._chains]
         return np.concatenate(found, axis=-1)
+
+    def _over(self, some: np.ndarray, begun: np.ndarray) -> Average:
+        """Return an average per run; one run of another length, or by one cell longer, is not to be excluded."""
+        found = average_ratio(some, begun)
+        if self._averages.replicas == 1 or found.error > 1e-12:
+            return found
+        return Average(found.value, 1 / (float(begun.sum()) * self._averages.cells), found.degrees)
 
     def _seen(self, measure: Callable[[GroundChains], np.ndarray]) -> Average:
         return self._averages.seen([measure(chains) for chains in self._chains], 1.0)
