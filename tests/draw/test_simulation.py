@@ -242,6 +242,24 @@ def test_hard_constraints_and_weights():
     assert "energy" not in metropolis(weights.at(T=1), 10, 5, 2, rng=1).series
 
 
+@pytest.mark.parametrize("rule", ["metropolis", "heat bath"])
+def test_hot_starts_are_allowed_configurations(rule):
+    """Three states in cyclic order, which no single site can leave or restore: three rings of 12 exist."""
+    turn = Chain(spins(1), [bond(lambda s, t: 0 if (t - s) % 3 == 1 else math.inf), site(lambda s, h: -h * s)])
+    run = metropolis(turn.at(h="0.7", T=1), 12, 5, 300, rule=rule, rng=1)
+    states = run.final["s"].astype(int)
+    assert ((np.roll(states, -1, axis=1) - states) % 3 == 1).all() and set(states[:, 0]) == {0, 1, 2}
+    assert (run.series["energy"] == 0).all() and run.autocorrelation_time("energy") == math.inf
+    refused(SolveError, lambda: metropolis(turn.at(h=1, T=1), 11, 5, rng=1), "every configuration of these 11 cells")
+    same = [bond(lambda s, t: 0 if s == t else math.inf), site(lambda s, h: -h * s)]
+    kept = Chain(spins(1), same, observables={"m": lambda s: s}).at(h="0.1", T=1)
+    found = metropolis(kept, 6, 20, 20, rule=rule, rng=1).diagnose("m")
+    assert "no replica's total changed in 16 sweeps: each shows its hot start" in found.reasons[0]
+    turns = Chain(ising(), [bond(lambda s, t: math.inf if s == t else 0)], observables={"m": lambda s: s})
+    assert "correlation length is infinite" in str(metropolis(turns.at(T=1), 6, 20, 2, rule=rule, rng=1).diagnose("m"))
+    assert autocorrelation_time(np.array([[1.0], [math.inf], [2.0]])) == math.inf
+
+
 def test_the_exact_curves_show_the_three_facts():
     """No magnetisation at h = 0 for T > 0; J widens the saturated range; random fields round the curve.
 

@@ -27,7 +27,7 @@ def autocorrelation_time(series: np.ndarray) -> float:
     Returns
     -------
     float
-        1/2 for independent records; infinite for a series that never changes.
+        1/2 for independent records; infinite for a series that never changes, or is not finite.
 
     Examples
     --------
@@ -36,9 +36,9 @@ def autocorrelation_time(series: np.ndarray) -> float:
     True
     """
     steps = len(series)
-    centred = series - series.mean()
-    if not (series != series[0, 0]).any():
+    if not np.isfinite(series).all() or not (series != series[0, 0]).any():
         return float("inf")
+    centred = series - series.mean()
     size = 1 << (2 * steps - 1).bit_length()
     power = np.zeros(size // 2 + 1)
     for column in centred.T:  # one replica at a time: their transforms together may not fit into memory

@@ -48,6 +48,8 @@ def _slow(found: Diagnosis, run: Simulation, kept: np.ndarray) -> list[str]:
             return [f"{never}; exactly it has this value with probability {chance:.6g}, so there is little else to see"]
         but = "" if chance is None else f"; exactly the total has this value with probability {chance:.3g} only"
         return [f"{never}: the run shows its {run.start} start and nothing else{but}"]
+    if (kept == kept[0]).all():
+        return [f"no replica's total changed in {found.run} sweeps: each shows its {run.start} start and nothing else"]
     texts, time = [], max(found.relaxation, found.renewal or 0.0, 0.5)
     if found.run < _SHORT * time:
         texts.append(
@@ -88,7 +90,9 @@ def _spread(found: Diagnosis) -> list[str]:
     length = found.correlation_length
     if moved and found.slowest_length is not None:
         length = found.slowest_length
-    if length is not None and cells < 10 * length:
+    if length == np.inf:
+        texts.append("the correlation length is infinite: no chain is an average over independent pieces, however long")
+    elif length is not None and cells < 10 * length:
         texts.append(
             f"the chain holds only {cells / length:.3g} correlation lengths, so it behaves as one block; "
             "a long chain is an average over many"

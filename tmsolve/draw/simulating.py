@@ -13,16 +13,21 @@ from .cold import drawable
 from .given import check_boundary, check_point, check_whole, generator, realised
 from .likeliest import likeliest_symbols
 from .readout import Readout, energy_terms
+from .row import local_logs, site_tables
 from .sampling import check_length, make_row, sites_of
 from .simulation import Simulation
+from .steps import Steps
 from .sublattices import sublattices
 from .updates import RULES
+from .walks import draw_symbols
 
 __all__ = ["metropolis"]
 
 _STARTS = ("hot", "cold")
 #: Largest number of recorded totals, and of sites of all replicas.
 _RECORDS, _SITES = 2**27, 2**28
+#: A temperature at which all energies but infinite ones are nothing.
+_HOT = 10**49
 
 
 def metropolis(
@@ -55,7 +60,8 @@ def metropolis(
     replicas : int
         Independent runs side by side.
     start : {"hot", "cold"}
-        From independent random states, or all replicas from the most probable configuration.
+        From independent random states (drawn exactly at infinite temperature, where some
+        configurations are forbidden), or all replicas from the most probable configuration.
     rule : {"metropolis", "heat bath"}
         How a site changes.
     boundary : {"ring", "open"}
@@ -148,8 +154,18 @@ def _started(
     """Return state numbers by kind, shape (cells, replicas)."""
     sizes = {kind: len(states) for kind, states in point.chain.cell.items()}
     dtype = np.uint8 if max(sizes.values()) <= 256 else np.uint16
-    if start == "hot":
+    if start == "hot" and not _forbids(point, arrays, cells):
         return {kind: rng.integers(0, size, (cells, replicas), dtype=dtype) for kind, size in sizes.items()}
+    if start == "hot":  # what is forbidden may be out of reach of single sites to undo
+        row = make_row(point.replace(T=_HOT), cells, boundary, arrays, {})
+        found = sites_of(row, draw_symbols(Steps(row), replicas, rng))
+        return {kind: np.ascontiguousarray(own.T.astype(dtype)) for kind, own in found.items()}
     row = make_row(point, cells, boundary, arrays, {})
     found = sites_of(row, likeliest_symbols(row))
     return {kind: np.repeat(own.T.astype(dtype), replicas, axis=1) for kind, own in found.items()}
+
+
+def _forbids(point: Point, arrays: Mapping[str, np.ndarray], cells: int) -> bool:
+    """Return whether a term forbids anything."""
+    tables = site_tables(point.replace(T=_HOT), arrays, cells)
+    return any(bool(np.isneginf(local_logs(tables, term)).any()) for term in point.chain.terms)
