@@ -11,7 +11,7 @@ from tests.disorder.ground_reference import enumerated
 from tests.refusal import refused
 from tmsolve import Chain, StateSet, bond, ising, models, site, spins, weight
 from tmsolve.disorder.averages import Average
-from tmsolve.disorder.cold_sample import ground_chains
+from tmsolve.disorder.cold_sample import GroundSample
 from tmsolve.disorder.cold_steps import ColdSteps
 from tmsolve.disorder.ground_energy import disordered_ground_state
 from tmsolve.disorder.problem import read_problem
@@ -330,6 +330,22 @@ def test_a_list_beside_a_law_is_averaged_over_what_is_random():
     assert walls.value == pytest.approx(np.mean(np.diff(np.sign(fields)) != 0) * 19 / 20, rel=1e-12)
 
 
+def test_samples_too_large_to_be_kept_are_the_same(monkeypatch):
+    def read():
+        found = disordered_ground_state(FIELD.fix(J=1, H=0), {"h": "normal(0,1)"}, cells=60, replicas=6, rng=4)
+        domains = found.domains("m")
+        return domains.fraction(1), domains.walls, *domains.probabilities(None, 9)
+
+    kept = read()
+    monkeypatch.setattr("tmsolve.disorder.cold_averages._KEPT", 0)
+    assert read() == kept
+    # A few replicas at a time are drawn in another order.
+    monkeypatch.setattr("tmsolve.disorder.cold_sample._TOGETHER", 500)
+    few = read()
+    assert few != kept and few[1].degrees == 5
+    assert abs(few[1].value - kept[1].value) < 4.5 * np.hypot(few[1].error, kept[1].error)
+
+
 def test_what_is_refused():
     found = disordered_ground_state(FIELD.fix(J=1, H=0), {"h": "normal(0,1)"}, cells=40, replicas=4, rng=1)
     refused(ParameterError, lambda: found.mean("mm"), "'mm'", "Did you mean 'm'?")
@@ -351,5 +367,8 @@ def test_what_is_refused():
     hard = Chain(ising(), [site(lambda s, c: np.inf if c else -s)], observables={"m": lambda s: s})
     refused(SolveError, lambda: disordered_ground_state(hard, {"c": {0: "1/2", 1: "1/2"}}), "no configuration at all")
     steps = ColdSteps(read_problem(FIELD.fix(J=1, H=0), {"h": "normal(0,1)"}, cold=True))
-    refused(TooLargeError, lambda: next(ground_chains(steps, {}, 10**8, 2, 1)), "100000000 cells", "take fewer cells")
+    refused(TooLargeError, lambda: next(iter(GroundSample(steps, {}, 10**8, 2, 1))), "100000000 cells", "take fewer")
+    single = disordered_ground_state(FIELD.fix(J=1, H=0), {"h": "normal(0,1)"}, cells=1, replicas=4, rng=1)
+    assert abs(single.mean("m").value) <= 1
+    refused(ParameterError, lambda: single.domains("m").walls, "at least 3 cells", "got cells=1")
     refused(DeclarationError, lambda: disordered_ground_state(FIELD.fix(J=1, H=0), {"h": [1, 2]}, cells=3), "2 values")

@@ -39,8 +39,6 @@ _LOOKS = {
     "walls": (r"\rho_\mathrm{{w}}({})", "1"),
     "mean_length": (r"\bar{{\ell}}({})", "cells"),
 }
-#: A fraction with more letters is printed as a decimal number.
-_LONGEST_FRACTION = 24
 
 
 def add_ground(parser: Parser) -> None:
@@ -186,12 +184,11 @@ def _how(ground: DisorderedGround) -> str:
 
 
 def _text(name: str, number: Fraction | Average | None) -> Number:
+    from ..disorder.cold_averages import written
+
     if number is None:
         return Number("-")
-    if isinstance(number, Fraction):
-        exact = str(number)
-        return Number(exact if len(exact) <= _LONGEST_FRACTION else f"{float(number):.15g}")
-    return Number(shown(name, number))
+    return Number(written(number) if isinstance(number, Fraction) else shown(name, number))
 
 
 def _json(number: Fraction | Average | None) -> dict[str, Any] | None:

@@ -16,14 +16,16 @@ from .cold_chain import extreme_mean
 from .cold_exact import exact_moves
 from .cold_joint import JointLaw, joint_law
 from .cold_quantities import Classes, Quantity, mean_quantity
-from .cold_sample import GroundChains, ground_chains
+from .cold_sample import GroundChains, GroundSample
 from .cold_steps import ColdSteps
 from .problem import Problem
 
-__all__ = ["GroundAverages", "Number", "average_ratio"]
+__all__ = ["GroundAverages", "Number", "average_ratio", "written"]
 
 #: Numbers of sampled ground states that are kept for the next question.
 _KEPT = 2**23
+#: A fraction with more letters is written as a decimal number.
+_LONGEST_FRACTION = 24
 #: Of an average, as a share of what the values span.
 _ROUNDING = 1e-12
 
@@ -116,7 +118,7 @@ class GroundAverages:
 
     def chains(self, steps: ColdSteps, quantities: Mapping[str, Quantity]) -> Iterable[GroundChains]:
         """Return sampled ground states; the same for the same cut."""
-        found = ground_chains(steps, quantities, self.cells, self.replicas, self.seed)
+        found = GroundSample(steps, quantities, self.cells, self.replicas, self.seed)
         return list(found) if steps.states**2 * self.cells * self.replicas <= _KEPT else found
 
     def seen(self, samples: Iterable[np.ndarray], spread: float) -> Average:
@@ -131,6 +133,18 @@ class GroundAverages:
             return Average(value, 0.0)
         unseen = spread / (self.cells * self.replicas)
         return Average(value, found.error if found.error > rounding else unseen, found.degrees)
+
+
+def written(number: Number) -> str:
+    """Return a number as text; a fraction of many digits as a decimal number.
+
+    Examples
+    --------
+    >>> written(Fraction(-5, 3)), written(Fraction(10**20, 3 * 10**20 + 1)), written(Average(0.5, 0.01))
+    ('-5/3', '0.333333333333333', '0.500(10)')
+    """
+    exact = str(number)
+    return exact if isinstance(number, Average) or len(exact) <= _LONGEST_FRACTION else f"{float(number):.15g}"
 
 
 def average_ratio(above: np.ndarray, below: np.ndarray) -> Average:

@@ -12,13 +12,16 @@ import numpy as np
 
 from ..errors import NotApplicable, ParameterError
 from .averages import Average
-from .cold_averages import GroundAverages, Number, average_ratio
+from .cold_averages import GroundAverages, Number, average_ratio, written
 from .cold_joint import JointLaw
 from .cold_quantities import Classes, Quantity, paired
 from .cold_sample import GroundChains
 from .cold_steps import ColdSteps
 
 __all__ = ["GroundDomains"]
+
+#: Cells in which a domain can be seen from end to end.
+_FEWEST = 3
 
 
 @dataclass(frozen=True, eq=False)
@@ -159,6 +162,10 @@ class GroundDomains:
 
     @cached_property
     def _chains(self) -> Iterable[GroundChains]:
+        if self._averages.cells < _FEWEST and not self._ended:
+            raise ParameterError(
+                f"domains are looked for in samples of at least {_FEWEST} cells, got cells={self._averages.cells}"
+            )
         return self._averages.chains(self._steps, self._shares)
 
     def _sampled(self, measure: Callable[[GroundChains, str], np.ndarray], names: list[str]) -> np.ndarray:
@@ -200,8 +207,8 @@ class GroundDomains:
         return str(self.values.index(exact))
 
     def __str__(self) -> str:
-        lines = [f"domains of {self.observable} at T = 0", f"  {'walls':18} {self.walls}"]
+        lines = [f"domains of {self.observable} at T = 0", f"  {'walls':18} {written(self.walls)}"]
         for value in self.values:
-            lines.append(f"  {f'fraction({float(value):g})':18} {self.fraction(value)}")
-            lines.append(f"  {f'density({float(value):g})':18} {self.density(value)}")
+            lines.append(f"  {f'fraction({float(value):g})':18} {written(self.fraction(value))}")
+            lines.append(f"  {f'density({float(value):g})':18} {written(self.density(value))}")
         return "\n".join(lines)

@@ -13,7 +13,7 @@ from .cold_algebra import least_logs
 from .cold_quantities import Quantity
 from .cold_steps import ColdSteps, Counted, cold_start, crossed, refuse_dead
 
-__all__ = ["GroundChains", "Settled", "ground_chains", "longest_walk", "settle"]
+__all__ = ["GroundChains", "GroundSample", "Settled", "longest_walk", "settle"]
 
 #: Entries of the matrices of replicas that are handled together, and of one replica at most.
 _TOGETHER, _LARGEST = 2**22, 2**27
@@ -66,6 +66,7 @@ def settle(
     free = Counted(message.energy[:, :replicas], message.ways[:, :replicas])
     for table, ways in _cells(steps, rng, walked, walked if met else 0, replicas, backwards):
         free, *_ = free.advance(table, ways)
+    refuse_dead(free.energy.min(axis=0))
     return Settled(free, met)
 
 
@@ -157,9 +158,7 @@ class GroundChains:
             row = np.einsum("ikr,ijkr->jkr", row[:, :begins], stay[:, :, first + length - 1 :])
             inner = (row[:, : begins - 1] * ends[:, first + length :]).sum(axis=(0, 1))
             # Without ends only the places from which a run of this length is seen whole are counted.
-            found[length - 1] = (
-                (inner + row[:, -1].sum(axis=0)) / self.cells if self.ended else inner / max(begins - 1, 1)
-            )
+            found[length - 1] = (inner + row[:, -1].sum(axis=0)) / self.cells if self.ended else inner / (begins - 1)
         return found
 
     def _runs(self, name: str) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -170,28 +169,45 @@ class GroundChains:
         return (np.concatenate([self.first[:, None], row], axis=1) if self.ended else row), stay, leave
 
 
-def ground_chains(
-    steps: ColdSteps, quantities: Mapping[str, Quantity], cells: int, replicas: int, seed: int
-) -> Iterator[GroundChains]:
-    """Sample the ground states of replicas, a few replicas at a time.
+@dataclass(frozen=True, eq=False)
+class GroundSample:
+    """Ground states of replicas, a few replicas at a time: the same ones whenever it is gone through.
 
-    Raises
-    ------
-    TooLargeError
-        One replica is too long for its states to be kept.
+    Attributes
+    ----------
+    steps : ColdSteps
+    quantities : mapping of str to Quantity
+        Whose means are wanted.
+    cells, replicas, seed : int
     """
-    each = steps.states**2 * cells
-    if each > _LARGEST:
-        raise TooLargeError(
-            f"{cells} cells with {steps.states} joint states of a cut need {each:.2g} numbers, at most {_LARGEST:.2g} "
-            "are kept; take fewer cells",
-            limit=_LARGEST,
-        )
-    # Cells have a stream of their own: they are the same however long the walks before and behind them are.
-    streams = [np.random.default_rng([seed, 3, part]) for part in range(3)]
-    together = max(1, _TOGETHER // each)
-    for begin in range(0, replicas, together):
-        yield _sampled(steps, quantities, cells, min(together, replicas - begin), streams)
+
+    steps: ColdSteps
+    quantities: Mapping[str, Quantity]
+    cells: int
+    replicas: int
+    seed: int
+
+    def __iter__(self) -> Iterator[GroundChains]:
+        """Sample.
+
+        Raises
+        ------
+        TooLargeError
+            One replica is too long for its states to be kept.
+        """
+        each = self.steps.states**2 * self.cells
+        if each > _LARGEST:
+            raise TooLargeError(
+                f"{self.cells} cells with {self.steps.states} joint states of a cut need {each:.2g} numbers, at most "
+                f"{_LARGEST:.2g} are kept; take fewer cells",
+                limit=_LARGEST,
+            )
+        # Cells have a stream of their own: they are the same however long the walks before and behind them are.
+        streams = [np.random.default_rng([self.seed, 3, part]) for part in range(3)]
+        together = max(1, _TOGETHER // each)
+        for begin in range(0, self.replicas, together):
+            count = min(together, self.replicas - begin)
+            yield _sampled(self.steps, self.quantities, self.cells, count, streams)
 
 
 def _sampled(

@@ -19,7 +19,7 @@ from ..declare import Chain
 from ..errors import NotApplicable, ParameterError
 from .averages import Average, average
 from .cold_algebra import COUNTS, least_logs
-from .cold_averages import GroundAverages, Number
+from .cold_averages import GroundAverages, Number, written
 from .cold_chain import exact_energy, message_chain
 from .cold_domains import GroundDomains
 from .cold_exact import exact_moves
@@ -163,13 +163,13 @@ class DisorderedGround:
 
     def __str__(self) -> str:
         how = "sampled" if self.messages is None else f"exact, over {self.messages} messages"
-        lines = ["disordered chain at T = 0", f"  energy            {self.energy}  ({how})"]
+        lines = ["disordered chain at T = 0", f"  energy            {written(self.energy)}  ({how})"]
         lines.append(f"  residual_entropy  {self.residual_entropy}")
-        lines += [f"  {f'mean({name})':17} {self.mean(name)}" for name in self.observables]
+        lines += [f"  {f'mean({name})':17} {written(self.mean(name))}" for name in self.observables]
         for name in self.observables:
             parts = self._averages.problem.chain.observable(name)
             if len(parts) == len(parts[0].sites) == 1:
-                lines.append(f"  {f'walls of {name}':17} {self.domains(name).walls}")
+                lines.append(f"  {f'walls of {name}':17} {written(self.domains(name).walls)}")
         return "\n".join([*lines, *self.notes])
 
 
