@@ -20,8 +20,10 @@ Sum = Callable[[np.ndarray, int], np.ndarray]
 _LARGEST = 2**28
 #: From this length on blocks are handled side by side; with more states their products cost too much.
 _SHORT, _WIDE = 512, 24
-#: Equal steps after which messages that still change are taken to need every step, and relative rounding of messages.
-_PATIENCE, _ROUNDING = 2000, 4e-16
+#: Of so few equal steps each is walked; after so many, messages that still change are taken to need every step.
+_FEW, _PATIENCE = 64, 2000
+#: Relative rounding of messages.
+_ROUNDING = 4e-15
 
 
 @np.errstate(divide="ignore", under="ignore")
@@ -91,7 +93,7 @@ def messages(row: Row, add: Sum = add_logs) -> Messages:
     last = np.zeros((size, row.columns))
     if row.closed:
         last = np.where(np.eye(size, dtype=bool), 0.0, -np.inf)
-    if len(row.equal) > _SHORT:
+    if len(row.equal) > _FEW:
         settled = _settled(row, last, add)
         if settled is not None:
             return settled
