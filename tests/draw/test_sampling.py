@@ -302,7 +302,7 @@ def test_values_labels_and_text():
     assert (drawn.values() == drawn.states - 1.0).all()
     assert set(drawn.labels().ravel()) <= set(SPIN_ONE.cell["s"].labels)
     assert drawn.observable("wall", per_cell=True)[:, 3].tolist() == [0, 0, 0]
-    assert str(drawn) == "3 independent open chains of 4 cells of chain, 1 sites fixed, h given cell by cell"
+    assert str(drawn) == "3 independent open chains of 4 cells of chain, 1 site fixed, h given cell by cell"
     assert sample(MIXED.at(J=1, K=1, L=1, h=0, T=1), 4, rng=1).values("b").shape == (1, 4)
 
 

@@ -69,7 +69,7 @@ def test_field_ramp(tmp_path: Path) -> None:
     assert np.abs(shaken - random).max() < 0.1
     fields = [float(line.split("h = ")[1]) for line in printed.splitlines() if "reaches 0.9" in line]
     assert fields == sorted(fields, reverse=True)
-    for text in ("N/xi = 2.34", "absolute 0.7766", "both signs", "cold start", "behaves as one block"):
+    for text in ("N/xi = 2.34", "absolute 0.7766", "both signs", "cold start", "behaves as a few blocks"):
         assert text in printed, text
     assert (tmp_path / "ramp.png").read_bytes().startswith(b"\x89PNG")
 

@@ -159,7 +159,7 @@ class Sample:
 
     def __str__(self) -> str:
         what = {"ring": "rings of {} cells", "open": "open chains of {} cells", "infinite": "windows of {} cells"}
-        held = f", {len(self.given)} sites fixed" if self.given else ""
+        held = f", {len(self.given)} site{'s' if len(self.given) > 1 else ''} fixed" if self.given else ""
         own = f", {listing(self.realisation)} given cell by cell" if self.realisation else ""
         shape = what[self.boundary].format(self.cells)
         return f"{self.count} independent {shape} of {self.point.chain.name}{held}{own}"

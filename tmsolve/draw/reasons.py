@@ -93,8 +93,9 @@ def _spread(found: Diagnosis) -> list[str]:
     if length == np.inf:
         texts.append("the correlation length is infinite: no chain is an average over independent pieces, however long")
     elif length is not None and cells < 10 * length:
+        blocks = "one block" if cells < 2 * length else "a few blocks"
         texts.append(
-            f"the chain holds only {cells / length:.3g} correlation lengths, so it behaves as one block; "
+            f"the chain holds only {cells / length:.3g} correlation lengths, so it behaves as {blocks}; "
             "a long chain is an average over many"
         )
     if moved and totals is not None:
