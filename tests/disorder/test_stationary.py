@@ -104,7 +104,7 @@ def test_refinement_that_ends_too_early_says_what_was_reached(monkeypatch):
     monkeypatch.setattr(stationary, "_LEVELS", ((8, 8), (12, 12)))
     law = {"h": "normal(0,1)"}
     found = refused(
-        SolveError, lambda: stationary_message(FIELD.fix(T=1, J=1, H=0), law), "moved by", "12 polynomials", "quenched"
+        SolveError, lambda: stationary_message(FIELD.fix(T=1, J=1, H=0), law), "known to", "12 polynomials", "quenched"
     ).partial
     assert found.free_energy.value == pytest.approx(-RANDOM_FIELD["growth"], abs=0.1)
     assert abs(found.free_energy.value + RANDOM_FIELD["growth"]) < 3 * found.free_energy.error

@@ -10,6 +10,7 @@ from typing import Any, Protocol
 import numpy as np
 
 from ..errors import DeclarationError
+from .densities import Counting, Density, chance_rule
 
 __all__ = ["Law", "Mixture", "Normal", "Realisation", "Sampler", "Uniform"]
 
@@ -129,12 +130,15 @@ class Sampler:
     given_mean : float or None
         The mean, where the giver states it; else it is estimated when asked for.
     quantile : callable or None
-        Inverse of the cumulative distribution, for averages by quadrature.
+        Inverse of the cumulative distribution, for averages over the next draw.
+    rule : Density or Counting, optional
+        What averages by quadrature; without it they follow from the quantiles.
     """
 
     function: Callable[[np.random.Generator, Any], Any]
     given_mean: float | None = None
     quantile: Callable[[np.ndarray], Any] | None = None
+    rule: Density | Counting | None = None
     support: None = field(default=None, init=False, repr=False)
 
     @property
@@ -158,14 +162,21 @@ class Sampler:
         return values.astype(np.float64)
 
     def quadrature(self, count: int) -> tuple[np.ndarray, np.ndarray]:
-        """Return nodes at quantiles of Gauss and Legendre's rule."""
+        """Return nodes and weights: of a density where it is known, else of the quantiles."""
+        if self.rule is not None:
+            return self.rule.rule(count)
         if self.quantile is None:
             raise DeclarationError(
                 "a law given as a function can be drawn from but not integrated; give a distribution "
                 "with quantiles, or a mixture {value: probability}"
             )
-        nodes, weights = np.polynomial.legendre.leggauss(count)
-        return np.asarray(self.quantile((1 + nodes) / 2), dtype=np.float64), weights / 2
+        quantile = self.quantile
+        return chance_rule(quantile, lambda above: quantile(1 - above), count)
+
+    @property
+    def leak(self) -> float:
+        """How far the density given is from one in total."""
+        return 0.0 if self.rule is None else self.rule.leak
 
     def __str__(self) -> str:
         return "sampler"

@@ -11,6 +11,7 @@ import numpy as np
 
 from ..declare.values import parse_value
 from ..errors import DeclarationError, ParameterError
+from .densities import Counting, Density
 from .kinds import Law, Mixture, Normal, Realisation, Sampler, Uniform
 from .texts import read_law
 
@@ -120,7 +121,17 @@ def _distribution(given: Any) -> Law:
     discrete = _discrete(given)
     if discrete is not None:
         return discrete
-    return Sampler(lambda rng, size: given.rvs(size=size, random_state=rng), mean, getattr(given, "ppf", None))
+    quantile = getattr(given, "ppf", None)
+    return Sampler(lambda rng, size: given.rvs(size=size, random_state=rng), mean, quantile, _rule(given))
+
+
+def _rule(given: Any) -> Density | Counting | None:
+    if not all(hasattr(given, name) for name in ("ppf", "isf", "cdf", "sf", "support")):
+        return None
+    low, high = (float(end) for end in given.support())
+    if hasattr(getattr(given, "dist", None), "pmf"):
+        return Counting(given.pmf, given.cdf, given.sf, (low, high))
+    return Density(given.pdf, given.cdf, given.ppf, given.isf, (low, high)) if hasattr(given, "pdf") else None
 
 
 def _named(given: Any) -> str:

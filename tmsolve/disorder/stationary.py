@@ -12,9 +12,9 @@ from the same operator.
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Mapping
+from collections.abc import Iterable, Mapping, Sequence
 from dataclasses import dataclass
-from itertools import product
+from itertools import pairwise, product
 from typing import Any
 
 import numpy as np
@@ -32,7 +32,7 @@ from .tangents import with_tangents
 __all__ = ["StationaryMessage", "stationary_message"]
 
 #: Numbers of polynomials and of nodes of a continuous law, refined together.
-_LEVELS = ((48, 60), (96, 120), (192, 240), (384, 480), (512, 640))
+_LEVELS = ((48, 60), (96, 120), (192, 240), (384, 480), (512, 960))
 #: Draws of one cell, over all copies, that are averaged over.
 _MOST_DRAWS = 4000
 #: Logarithm of a ratio that is nothing to a double.
@@ -41,6 +41,8 @@ _FLAT = 38.0
 _ABSENT = 1e-9
 #: A factor of decay that is nothing.
 _ROUNDING = 1e-14
+#: Share of a move that the next is taken to have at most.
+_SLOWEST = 0.95
 #: Function values held at a time.
 _CHUNK = 2_000_000
 
@@ -80,7 +82,8 @@ def stationary_message(
     chain, random, derivatives
         As for `quenched`; laws are discrete, or continuous with a density.
     tolerance : float
-        How far the last refinement may move ln Z per cell.
+        How far ln Z per cell may be off: by what the last refinement moved it, by what slowly shrinking moves would
+        add up to, and by what a density fails to integrate to one.
 
     Raises
     ------
@@ -110,25 +113,42 @@ def stationary_message(
             f"the cut of this chain has {maker.states} states, and the integral equation is solved for two; "
             "use quenched(…)"
         )
-    before = None
+    levels: list[Growth] = []
     for count, draws in _LEVELS:
         level = _Level(maker, *_draws(problem, draws), count)
-        growth = level.solve()
-        error = np.inf if before is None else abs(float(growth.value - before.value))
+        levels.append(level.solve())
+        before = _worst(levels, max((getattr(law, "leak", 0.0) for law in problem.laws.values()), default=0.0))
+        error = abs(float(levels[-1].value - before.value))
         if error < tolerance:
             break
-        before, earlier = growth, before
-    else:
-        before = earlier
-    assert before is not None
-    found = StationaryMessage(error, maker, growth, before, level)
+    found = StationaryMessage(error, maker, levels[-1], before, level)
     if error < tolerance:
         return found
     raise SolveError(
-        f"the integral equation moved by {error:.1e} at its last refinement, to {count} polynomials and {draws} nodes "
-        f"of a continuous law, not by less than {tolerance:g}; give a larger tolerance, or use quenched(…)",
+        f"the integral equation is known to {error:.1e} after its last refinement, to {count} polynomials and {draws} "
+        f"nodes of a continuous law, not to {tolerance:g}; give a larger tolerance, or use quenched(…)",
         partial=found,
     )
+
+
+def _worst(levels: Sequence[Growth], leak: float) -> Growth:
+    """Return what is as far from the last level as the truth may be.
+
+    That is the last move, or what further moves add up to where they shrink slowly, and what the weights of the law
+    fail to sum up to.
+    """
+    if len(levels) == 1:
+        return Growth(np.array(np.inf), *(np.full_like(a, np.inf) for a in (levels[0].first, levels[0].second)))
+    moves = [float(abs(a.value - b.value)) for a, b in pairwise(levels)]
+    ratio = min(moves[-1] / moves[-2], _SLOWEST) if len(moves) > 1 and moves[-2] > 0 else 0.0
+    factor = max(1.0, ratio / (1 - ratio))
+
+    def far(last: np.ndarray, earlier: np.ndarray) -> np.ndarray:
+        return np.asarray(last + factor * (earlier - last) + np.copysign(leak * np.abs(last), earlier - last))
+
+    last, earlier = levels[-1], levels[-2]
+    return Growth(*(far(getattr(last, f), getattr(earlier, f)) for f in ("value", "first", "second")))
+
 
 def _draws(problem: Problem, count: int) -> tuple[dict[str, np.ndarray], np.ndarray]:
     """Return values of every copy over the product of their laws, and weights."""
@@ -191,7 +211,7 @@ class _Level:
 
         joint = log[:, None] + wide.log
         # Chance of the old state 0 given the new one.
-        old = 1 / (1 + np.exp(joint[1] - joint[0]))
+        old = np.exp(-np.logaddexp(0, joint[1] - joint[0]))
         slope = spread(old[0] - old[1])
         once = spread(after.first[:, 0] - after.first[:, 1])
         twice = spread(after.second[:, 0] - after.second[:, 1])
