@@ -20,12 +20,16 @@ COLD_ENERGIES = {
     "2.5": "-5/2", "1.5": "-5/3", "0.8": "-37/30", "0.55": "-28/25", "0.4": "-16/15", "0.3": "-291/280",
 }  # fmt: skip
 
-#: +-J chain at h = 0, K = 0.8, chance 0.7 of a ferromagnetic bond: -f/T, and T chi = (1 + (2p-1)t)/(1 - (2p-1)t).
-#: K. H. Fischer and J. A. Hertz, Spin Glasses (1991), from memory.
-SIGNED_BONDS = {"growth": 0.98390074088833882971, "chi": 1.7233660887257806272}
+#: +-J chain at h = 0, K = 0.8, chance 0.7 of a ferromagnetic bond: -f/T, and T chi = (1 + (2p-1)t)/(1 - (2p-1)t), and
+#: sum over r of the squared correlation (1 + t^2)/(1 - t^2). K. H. Fischer and J. A. Hertz, Spin Glasses (1991), from
+#: memory.
+SIGNED_BONDS = {"growth": 0.98390074088833882971, "chi": 1.7233660887257806272, "glass": 2.5774644711948851061}
 
-#: Chain of normal bonds of unit variance at h = 0, T = 1: -f = E ln 2cosh J, energy -E J tanh J; T = 0: -sqrt(2/pi).
-NORMAL_BONDS = {"growth": 1.067714388051383, "u": -0.6057055096021588, "cold": -0.7978845608028654}
+#: Chain of normal bonds of unit variance at h = 0, T = 1: -f = E ln 2cosh J, energy -E J tanh J; T = 0: -sqrt(2/pi)
+#: sum over r of the squared correlation (1 + q)/(1 - q), q = E tanh^2 J.
+NORMAL_BONDS = {
+    "growth": 1.067714388051383, "u": -0.6057055096021588, "cold": -0.7978845608028654, "glass": 2.301934633735865,
+}  # fmt: skip
 
 #: Bonds present with chance p = 0.8, K = 1.2: T chi = (1 + pt)/(1 - pt), -f/T = ln 2 + p ln cosh K; sites present with
 #: chance p: T chi per site = p(1 + pt)/(1 - pt). M. F. Thorpe, J. Physique 36, 1177 (1975), from memory.

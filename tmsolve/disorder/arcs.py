@@ -117,6 +117,15 @@ class Deviations:
         # A state from which nothing goes on occurs with probability 0; it deviates from nothing.
         return np.where(dead, after[:, None, :], rows), after
 
+    def marginals(self, positions: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
+        """Return probabilities before successive steps, transition probabilities, and their deviations D; step first.
+
+        Shapes (steps, states), (steps, states, states) and (steps, states, states).
+        """
+        rows, after = self._chances(positions)
+        _, begin, _, _ = self._step(int(positions[0]), {})
+        return np.concatenate([begin[None], after[:-1]]), rows, rows - after[:, None, :]
+
     def _deviation(self, positions: np.ndarray) -> np.ndarray:
         rows, after = self._chances(positions)
         return rows - after[:, None, :]

@@ -2,26 +2,19 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, field
-from functools import cached_property
 from typing import Any
 
 import numpy as np
 
 from ..declare import Chain
-from ..errors import ParameterError, SolveError, TooLargeError, did_you_mean, listing
-from .arcs import Bypaths, Deviations
-from .odd_parts import faint_means
+from ..errors import NotApplicable, ParameterError, did_you_mean, listing
 from .row_input import read_row
-from .row_steps import Part, RowSteps
-from .row_totals import total_covariance
-from .scans import Messages, block_products, log_chain, perron, scan
+from .row_messages import RowMessages
+from .row_steps import RowSteps
 
 __all__ = ["Realised", "realisation"]
-
-#: Numbers that are kept in memory.
-_LARGEST = 2**27
 
 
 def realisation(chain: Chain, values: Mapping[str, Any], boundary: str = "open") -> Realised:
@@ -96,7 +89,7 @@ class Realised:
     values: Mapping[str, np.ndarray]
     cells: int
     closed: bool
-    _rows: dict[tuple[str, ...], _Row] = field(default_factory=dict, repr=False)
+    _rows: dict[tuple[str, ...], RowMessages] = field(default_factory=dict, repr=False)
     _profiles: dict[str, np.ndarray] = field(default_factory=dict, repr=False)
     _covariances: dict[tuple[str, str], float] = field(default_factory=dict, repr=False)
 
@@ -145,6 +138,49 @@ class Realised:
         found = sum(row.covariance(x, p, y, q) for x, p in row.places(a, i) for y, q in row.places(b, j))
         return float(found) if connected else float(found + self.profile(a)[i] * self.profile(b)[j])
 
+    def correlations(self, a: str, b: str, distances: int | Sequence[int]) -> np.ndarray:
+        """Return connected correlations of ``a`` in every cell i and ``b`` in cell i + r of an open chain.
+
+        Parameters
+        ----------
+        a, b : str
+            Observables.
+        distances : int or sequence of int
+            One r, or several, not negative.
+
+        Returns
+        -------
+        ndarray, shape (N,) or (len(distances), N)
+            Masked where i + r is beyond the end.
+
+        Raises
+        ------
+        ParameterError
+            Unusable distances.
+        NotApplicable
+            A ring, which has the correlations of single pairs only.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, realisation
+        >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)], observables={"m": lambda s: s}).fix(T=1)
+        >>> found = realisation(chain, {"J": [1, -1, 0.5, 0.5]})
+        >>> bool(np.allclose(found.correlations("m", "m", 1).compressed(), np.tanh([1, -1, 0.5]), rtol=1e-13))
+        True
+        """
+        self._check(a)
+        self._check(b)
+        if self.closed:
+            raise NotApplicable("correlations(…) are those of an open chain; ask a ring for correlation(a, b, i, j)")
+        wanted = [distances] if isinstance(distances, (int, np.integer)) else list(distances)
+        for r in wanted:
+            if isinstance(r, bool) or not isinstance(r, (int, np.integer)) or not 0 <= r < self.cells:
+                raise ParameterError(f"distances are whole numbers from 0 to {self.cells - 1}, got {r!r}")
+        all_of_them = self._row((a, b)).pairs(a, b, max(wanted, default=0))
+        index = np.arange(self.cells)
+        found = np.ma.masked_array(all_of_them[wanted], [index + r >= self.cells for r in wanted])
+        return found[0] if isinstance(distances, (int, np.integer)) else found
+
     def covariance(self, a: str, b: str | None = None) -> float:
         """Covariance of the totals of two observables over the whole chain; the variance for one."""
         names = (a, a if b is None else b)
@@ -179,99 +215,11 @@ class Realised:
             raise ParameterError(f"cells are numbered 0 to {self.cells - 1}, got {cell!r}")
         return int(cell)
 
-    def _row(self, observables: tuple[str, ...]) -> _Row:
+    def _row(self, observables: tuple[str, ...]) -> RowMessages:
         bare = RowSteps(self.chain, self.shared, self.values, self.cells, self.closed)
         missing = any(bare.parts(name) is None for name in observables)
         wide = tuple(sorted(set(observables))) if missing else ()
         if wide not in self._rows:
-            self._rows[wide] = _Row(RowSteps(self.chain, self.shared, self.values, self.cells, self.closed, wide))
+            steps = RowSteps(self.chain, self.shared, self.values, self.cells, self.closed, wide)
+            self._rows[wide] = RowMessages(steps)
         return self._rows[wide]
-
-
-@dataclass(frozen=True, eq=False)
-class _Row:
-    """Messages of a row, made when they are asked for."""
-
-    steps: RowSteps
-
-    @cached_property
-    def logs(self) -> np.ndarray:
-        steps, columns = self.steps, self.steps.states if self.steps.closed else 1
-        numbers = len(steps.positions) * steps.states * (steps.states + 2 * columns)
-        if numbers > _LARGEST:
-            raise TooLargeError(
-                f"{steps.cells} cells with {steps.states} joint states of the cut need {numbers:.2g} numbers; at most "
-                f"{_LARGEST:.2g} are kept. Ask for fewer cells{', or an open chain' if steps.closed else ''}",
-                limit=_LARGEST,
-            )
-        return steps.stored()
-
-    @cached_property
-    def products(self) -> np.ndarray:
-        return block_products(self.logs)
-
-    @cached_property
-    def messages(self) -> Messages:
-        size = self.steps.states
-        unit = np.where(np.eye(size, dtype=bool), 0.0, -np.inf)
-        ends = (unit, unit) if self.steps.closed else (np.full((1, size), -np.log(size)), np.zeros((size, 1)))
-        found = scan(self.logs, self.products, *ends)
-        # A sum of nothing stands as a huge negative number, so that differences of logarithms stay defined.
-        if not np.isfinite(found.log_sum) or found.log_sum < -1e290:
-            raise SolveError(f"no configuration of these {self.steps.cells} cells is allowed")
-        return found
-
-    @cached_property
-    def correlations(self) -> Deviations | Bypaths:
-        if not self.steps.closed:
-            return Deviations(self.steps, self.logs, self.messages)
-        ends = perron(log_chain(self.products))
-        if ends is None:
-            return Bypaths(self.steps, self.logs)
-        return Deviations(self.steps, self.logs, scan(self.logs, self.products, ends[0][None], ends[1][:, None]))
-
-    def places(self, a: str, cell: int) -> list[tuple[Part, int]]:
-        """Return the parts of an observable in a cell and the positions whose windows hold them."""
-        found = []
-        for part in self.steps.parts(a) or ():
-            position = cell - part.anchor
-            if self.steps.closed:
-                position %= self.steps.cells
-            if position in self.steps.positions and self.steps.held(part, np.array([position]))[0]:
-                found.append((part, position))
-        return found
-
-    def covariance(self, x: Part, i: int, y: Part, j: int) -> float:
-        return self.correlations.covariance(x, i, y, j) if i <= j else self.correlations.covariance(y, j, x, i)
-
-    def profile(self, a: str) -> np.ndarray:
-        steps = self.steps
-        total = np.zeros(steps.cells)
-        for blocks, positions in steps.chunks():
-            chance = self._chances(blocks)
-            for part in steps.parts(a) or ():
-                _, tilts = steps.tables(positions, {"x": [part]})
-                if ("x",) not in tilts:
-                    continue
-                table = np.zeros((steps.states, steps.states, chance.shape[-1]))
-                table[..., : len(positions)] = tilts[("x",)]
-                means = (chance * table).sum(axis=(0, 1))[: len(positions)]
-                held = steps.held(part, positions)
-                np.add.at(total, (positions[held] + part.anchor) % steps.cells, means[held])
-        return faint_means(steps, self.logs, a, total)
-
-    def total_covariance(self, names: tuple[str, str]) -> float:
-        return total_covariance(self.steps, self.logs, self.messages, self._chances, names)
-
-    def _chances(self, blocks: slice) -> np.ndarray:
-        """Return the joint probabilities of both cuts of every step of some blocks, (states, states, steps)."""
-        messages, length = self.messages, self.steps.layout.length
-        size, count = self.steps.states, blocks.stop - blocks.start
-        found = np.empty((size, size, count, length))
-        for i in range(length):
-            before, behind = messages.before[i][..., blocks], messages.behind[i][..., blocks]
-            around = before[:, :, None] + np.moveaxis(behind, 1, 0)[:, None]
-            joint = around + self.logs[i][None, ..., blocks]
-            chance = np.exp(joint - joint.max(axis=(0, 1, 2))).sum(axis=0)
-            found[..., i] = chance / chance.sum(axis=(0, 1))
-        return found.reshape(size, size, -1)

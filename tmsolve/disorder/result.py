@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 
 from ..errors import ParameterError
+from .averaged_pairs import AveragedPairs, refuse_lists
 from .averages import Average, average
 from .chances import probability_derivative
 from .controls import coefficients
@@ -56,6 +57,33 @@ class QuenchedChain(PerCell):
         """Typical correlation length in cells: 1/(γ₁ − γ₂), from the average of the logarithm of correlations."""
         return self._exponents.correlation_length()
 
+    def correlation(self, a: str, b: str, distance: int, power: int = 1) -> Average:
+        """Average of (⟨a_i b_(i+r)⟩ − ⟨a_i⟩⟨b_(i+r)⟩)^power at r cells, from realisations of their own.
+
+        The average (power 1) is dominated by few realisations; how a typical one decays is told by
+        `correlation_length`.
+
+        Raises
+        ------
+        ParameterError
+            Observables that take a random parameter; unusable distances and powers.
+        NotApplicable
+            Random parameters that are lists.
+
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, quenched
+        >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)], observables={"m": lambda s: s})
+        >>> signs = quenched(chain.fix(T=1), {"J": {-1: "1/2", 1: "1/2"}}, cells=20, replicas=2, rng=1)
+        >>> round(signs.correlation("m", "m", 3, power=2).value, 12) == round(float(np.tanh(1)**6), 12)
+        True
+        """
+        return self._pairs(a, b).at(distance, power)
+
+    def glass_susceptibility(self, a: str) -> Average:
+        """Spin-glass susceptibility Σ_r [(⟨a₀a_r⟩ − ⟨a₀⟩⟨a_r⟩)²] over all r, averaged over disorder; no factor of T."""
+        return self._pairs(a, a).total(2)
+
     def probability_derivative(self, name: str, value: Any, instead_of: Any = None) -> Average:
         """Average derivative of the free energy by the probability of one value of a random parameter.
 
@@ -98,6 +126,16 @@ class QuenchedChain(PerCell):
         if quantity == "internal_energy":
             return -self._rates.first[self._maker.tilts.index(BETA)]
         raise ParameterError(f"samples are kept of free_energy and internal_energy, got {quantity!r}")
+
+    def _pairs(self, a: str, b: str) -> AveragedPairs:
+        refuse_lists(self._problem)
+        for name in (a, b):
+            self._observable(name)
+        if (a, b) not in self._known:
+            sizes = (self.cells, self.replicas, self.burn_in)
+            self._known[a, b] = AveragedPairs(self._problem, (a, b), sizes, self.seed)
+        found: AveragedPairs = self._known[a, b]
+        return found
 
     @property
     def _exponents(self) -> Exponents:

@@ -22,8 +22,8 @@ _MOST = 64
 _FEWEST = 8
 #: Nodes of a single continuous law.
 _SINGLE = 34
-#: Deviations beyond which a normal law counts for nothing in a conditional mean, with few and with many nodes. What is
-#: cut off biases the mean by 1e-11 and 1e-16 of the free energy, the first of which is far below the noise of few nodes.
+#: Deviations beyond which a normal law counts for nothing in a conditional mean, with few and with many nodes. What
+#: is cut off biases the mean by 1e-11 and 1e-16 of the free energy; the first is far below the noise of few nodes.
 _TAIL_OF_FEW, _TAIL = 7.0, 8.5
 
 #: Values of every copy, and weights; shape (nodes, …).
