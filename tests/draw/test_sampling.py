@@ -267,7 +267,13 @@ def test_zero_temperature_counts_degeneracies_and_knows_realisations():
 
 
 def test_the_infinite_chain_at_zero_temperature_and_beside_rare_fixed_states():
-    """Both states of the antiferromagnet; a spin of probability exp(−4000) flips itself alone where it is held."""
+    """J2 = J1/2: ⟨s s'⟩ = −1/√5 (no two equal bonds in a row: golden ratio). The antiferromagnet's two states.
+
+    A spin of probability exp(−4000) turns alone where it is held.
+    """
+    terms = [bond(lambda s, t, J: J * s * t), bond(lambda s, t, K: K * s * t, shift=2)]
+    chain = Chain(ising(), terms, observables={"w": bond(lambda s, t: s * t)})
+    near(sample(chain.at(J=1, K="1/2", T=0), 100, 3000, "infinite", rng=2).mean("w"), -1 / math.sqrt(5))
     states = sample(ISING.at(J=-1, h=0, T=0), 6, 4000, "infinite", rng=1).states
     assert (states[:, 1:] != states[:, :-1]).all() and abs(states[:, 0].mean() - 0.5) < 0.04
     for T in ("1e-3", "1e-9"):
@@ -345,6 +351,7 @@ def test_refusals():
         (ParameterError, lambda: sample(point, 2, realisation={"T": [1, 1]}), "one temperature"),
         (ParameterError, lambda: sample(point, 2, realisation={"g": [1, 1]}), "'g'"),
         (ParameterError, lambda: sample(point, 2, realisation={"h": ["a", 1]}), "one number per cell"),
+        (ParameterError, lambda: sample(point, 2, realisation={"h": ["1", "2"]}), "one number per cell"),
         (ParameterError, lambda: sample(point, 2, realisation=[1, 1]), "{parameter: one value per cell}"),
         (ParameterError, lambda: sample(point, 2, boundary="infinite", realisation={"h": [1, 1]}), "cells without end"),
         (TooLargeError, lambda: sample(point, 10**6, 10**5), "2.1e+09 are drawn at once", "fewer at a time"),

@@ -130,7 +130,10 @@ def realised(point: Point, realisation: Any, cells: int) -> Mapping[str, np.ndar
         if name not in point.chain.parameters:
             raise unknown_parameter(name, point.chain.parameters)
         try:
-            values = np.array(given, dtype=np.float64)
+            values = np.array(given)
+            if values.dtype.kind in "USc":
+                raise TypeError("texts, or complex numbers")
+            values = values.astype(np.float64)
         except (TypeError, ValueError) as cause:
             raise ParameterError(f"realisation={{{name!r}: …}} takes one number per cell, got {given!r}") from cause
         if values.shape != (cells,):
