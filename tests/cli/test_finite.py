@@ -265,3 +265,20 @@ def test_bad_input_is_a_usage_error(tm, words, fragments, tmp_path, monkeypatch)
 def test_zero_temperature_is_refused(tm):
     ended = tm("finite", "ising", "--cells", 5, "-p", "T=0")
     assert ended.code == 1 and "ring needs T > 0, got T = 0" in ended.err
+
+
+def test_what_vanishes_by_symmetry_is_printed_as_zero(tm):
+    """Odd cumulants of an Ising chain at h = 0 are 0: what is printed is not their rounding."""
+    run = tm(
+        "finite", "ising", "--cells", "50", "-p", "h=0", "-p", "J=1", "-p", "T=1", "--read", "cumulants(m),moments(m)"
+    )
+    rows = [line.split() for line in run.out.splitlines() if line.strip()[:2] in ("1 ", "2 ", "3 ", "4 ")]
+    assert [value for order, value in rows if order in "13"] == ["0"] * 4
+    # Σ_r tanh(1)^r on the ring, times N.
+    t = math.tanh(1)
+    variance = 50 * (1 + 2 * sum((t**r + t ** (50 - r)) / (1 + t**50) for r in range(1, 25)) + 2 * t**25 / (1 + t**50))
+    assert [float(value) for order, value in rows if order == "2"] == pytest.approx([variance] * 2, rel=1e-9)
+    opened = tm(
+        "finite", "blume_capel", "--cells", "37", "--open", "-p", "h=0", "-p", "D=0.5", "-p", "T=0.7", "-p", "J=1"
+    )
+    assert {line.split()[1] for line in opened.out.splitlines() if line.startswith("mean(m)")} == {"0"}

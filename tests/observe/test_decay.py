@@ -44,6 +44,18 @@ def chain_of(energy, values):
     )
 
 
+def dual(right):
+    """Return left vectors, dual to the right ones also where eigenvalues coincide.
+
+    Of a nilpotent block the vectors are parallel, by chance to the last digit: the last bits are stirred then.
+    """
+    try:
+        return mpmath.inverse(right)
+    except ZeroDivisionError:
+        n, bit = right.rows, mpmath.mpf(10) ** (10 - mpmath.mp.dps)
+        return mpmath.inverse(right + mpmath.matrix(n, n).apply(lambda _: bit * (1 + mpmath.rand())))
+
+
 def reference(energy, T, values):
     """Return ln ξ and amplitude of the slowest mode a quantity shows, by projectors, in at least 1200 digits.
 
@@ -54,7 +66,7 @@ def reference(energy, T, values):
     with mpmath.workdps(digits):
         matrix = mpmath.matrix([[mpmath.exp(-mpmath.mpf(int(e)) / mpmath.mpf(T)) for e in row] for row in energy])
         roots, right = mpmath.eig(matrix, left=False, right=True)
-        left = mpmath.inverse(right)  # dual also where eigenvalues coincide
+        left = dual(right)
         top, *order = sorted(range(n), key=lambda k: -abs(roots[k]))
         nothing = mpmath.mpf(10) ** (-digits * 6 // 10)
         groups: list[list[int]] = []

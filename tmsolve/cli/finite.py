@@ -119,7 +119,8 @@ def run(arguments: argparse.Namespace) -> int:
     if arguments.json:
         print(json_text(document))
     else:
-        print("\n\n".join([f"{heading(model, values)}\n{_shape(document, impurities)}", text(found, digits)]))
+        shown = text(found, digits, {one: one.error(chain) for one in found})
+        print(f"{heading(model, values)}\n{_shape(document, impurities)}\n\n{shown}")
     sys.stdout.flush()
     listed = {key: value for key, value in found.items() if key.kind in LISTED}
     undrawn = tried(lambda: draw(listed, figure)) if figure is not None and listed else ""

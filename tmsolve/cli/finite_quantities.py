@@ -96,6 +96,16 @@ class Asked:
         found = _COMPUTE[self.kind](chain, *self.observables, *self.cells)
         return [float(value) for value in found] if getattr(found, "shape", ()) else float(found)
 
+    def error(self, chain: FiniteChain | GivenChain) -> list[float]:
+        """Return bounds on the errors of all numbers it consists of; none where there is no bound."""
+        bound = getattr(chain, "error_bound", None)
+        if bound is None or self.kind in _OF_EQUAL_CELLS:
+            return []
+        if self.kind == "mean" and self.cells:
+            return [float(bound("profile", *self.observables, self.cells)[0])]
+        found = bound(self.kind, *self.observables, *self.cells)
+        return [float(value) for value in found.ravel()]
+
 
 _COMPUTE: dict[str, Callable[..., Any]] = {
     "log_Z": lambda chain: chain.log_Z,

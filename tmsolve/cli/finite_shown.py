@@ -30,25 +30,31 @@ def json_value(asked: Asked, value: Any) -> Any:
     return {"values": value.values, "log_probabilities": value.log_probabilities, "probabilities": value.probabilities}
 
 
-def text(found: Found, digits: int) -> str:
-    """Return single numbers as one table, and a table for every list."""
+def text(found: Found, digits: int, errors: Mapping[Asked, Sequence[float]]) -> str:
+    """Return single numbers as one table, and a table for every list; what does not exceed its error is 0."""
     singles = {asked: value for asked, value in found.items() if isinstance(value, float)}
     parts = []
     if singles:
-        rows = [[a.name, Number(number_text(value, digits)), a.unit] for a, value in singles.items()]
+        off = {asked: next(iter(errors.get(asked, ())), 0.0) for asked in singles}
+        rows = [[a.name, Number(number_text(value, digits, off[a])), a.unit] for a, value in singles.items()]
         parts.append(table(rows, ["quantity", "value", "unit"]))
     for asked, value in found.items():
         if asked not in singles:
             heads, columns = _columns(asked, value)
-            rows = [[Number(_entry(entry, digits)) for entry in row] for row in zip(*columns, strict=True)]
+            bounds = errors.get(asked) or [0.0] * len(columns[0])
+            rows = [
+                # The first column counts cells, orders or values; bounds belong to the second.
+                [Number(_entry(entry, digits, bound if k == 1 else 0.0)) for k, entry in enumerate(row)]
+                for bound, row in zip(bounds, zip(*columns, strict=True), strict=True)
+            ]
             parts.append(f"{asked.name}\n{table(rows, heads, indent='  ')}")
     return "\n\n".join(parts)
 
 
-def _entry(value: Any, digits: int) -> str:
+def _entry(value: Any, digits: int, error: float) -> str:
     if value is None:
         return "-"
-    return str(value) if isinstance(value, int) else number_text(value, digits)
+    return str(value) if isinstance(value, int) else number_text(value, digits, error)
 
 
 def _columns(asked: Asked, value: Any) -> tuple[list[str], list[Sequence[Any]]]:

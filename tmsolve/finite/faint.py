@@ -8,7 +8,7 @@ with the sums, and the numbers are made longer until 64 bits remain.
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Iterable, Mapping
 from functools import partial, reduce
 from typing import Any
 
@@ -17,11 +17,11 @@ import numpy as np
 from ..assemble.matrix import Assembled, handle
 from ..assemble.window import ChainWindow
 from ..operators.numbers import Numbers, multiprecision
-from ..operators.product import repeated
+from .long_products import matrix_power, matrix_product, speed
 from .steps import Windows
 from .track import Track
 
-__all__ = ["Places", "faint_profile", "is_faint", "refined", "scale_of"]
+__all__ = ["WORK_LIMIT", "Line", "Places", "faint_profile", "is_faint", "refined", "scale_of"]
 
 #: Where the parts of an observable sit: (position of the window, name of the quantity).
 Places = list[tuple[int, str]]
@@ -34,26 +34,31 @@ _KEPT = 64
 _FAINT = 1e-3
 #: Multiplications of long numbers that are worth the wait: some 2 s at each length. What is beyond keeps
 #: the accuracy of doubles, absolutely; `FiniteChain` says where.
-_WORK_LIMIT = 2 * 10**6
+WORK_LIMIT = 2 * 10**6
 
 
 def faint_value(track: Track, point: int, x: Places, y: Places | None = None) -> float | None:
     """Return the mean of x, or the connected correlation of x and y, at one point of a batch.
 
-    ``None`` where the chain is too wide, or too rich in impurities, for long numbers.
+    ``None`` where the chain is too wide, or too rich in impurities, for long numbers; 0 where it
+    is less than 1e-38 of the observables' size and longer ones would take too long.
     """
     marked = {position for position, _ in (*x, *(y or ()))}
     runs = list(track.runs(marked))
     size = max(max(track.windows.at(position).shape) for position, _ in runs)
-    squarings = sum(2 * count.bit_length() for _, count in runs)
-    if size**3 * squarings * (4 if y else 2) > _WORK_LIMIT:
-        return None
+    squarings = sum(2 * (count.bit_length() - 1) for _, count in runs)
+    # Powers are formed once; on open chains the rest is a row times matrices.
+    joins = (4 if y else 2) * len(runs) * (size if track.closed else 1)
+    work, found = size**2 * (size * squarings + joins), None
     for bits in _LADDER:
-        line = _Line(track, point, multiprecision(bits), runs)
+        if work > WORK_LIMIT * speed(size, bits):
+            return found
+        line = Line(track, point, multiprecision(bits), runs)
         value, scale = line.mean(x) if y is None else line.connected(x, y)
         if not scale or abs(value) > scale * line.numbers.power_of_two(_KEPT - bits):
             return float(value)
-    return 0.0
+        found = 0.0  # to 1e-38 of the observables' size, at the first length already
+    return found
 
 
 def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], wanted: np.ndarray) -> np.ndarray | None:
@@ -63,13 +68,13 @@ def faint_profile(track: Track, point: int, a: str, anchors: Iterable[int], want
     """
     positions = track.windows.positions
     rows, size = track.starts, max(max(track.windows.at(position).shape) for position, _ in track.runs())
-    if 3 * len(positions) * rows * size**2 > _WORK_LIMIT:
+    if 3 * len(positions) * rows * size**2 > WORK_LIMIT:
         return None
     anchors, runs = tuple(anchors), [(position, 1) for position in positions]
     if _vanishes(track, point, a, anchors):
         return np.zeros(track.cells)
     for bits in _LADDER:
-        line = _Line(track, point, multiprecision(bits), runs)
+        line = Line(track, point, multiprecision(bits), runs)
         parts = [(position, f"{a}@{anchor}", anchor) for anchor in anchors for position in positions]
         values, scale = line.profile(parts)
         found = np.array([values.get(cell, line.numbers.scalar(0)) for cell in range(track.cells)], dtype=object)
@@ -106,7 +111,7 @@ def _vanishes(track: Track, point: int, a: str, anchors: tuple[int, ...]) -> boo
             positions = [position % track.cells for position in positions]
         x = [(p, f"{a}@{k}") for p, k in zip(positions, anchors, strict=True) if p in windows.positions]
         numbers = multiprecision(_LADDER[-1])
-        value, scale = _Line(track, point, numbers, list(track.runs([p for p, _ in x]))).mean(x)
+        value, scale = Line(track, point, numbers, list(track.runs([p for p, _ in x]))).mean(x)
         if abs(value) > scale * numbers.power_of_two(_KEPT - numbers.bits):
             return False
     return True
@@ -117,16 +122,19 @@ def is_faint(values: np.ndarray, scale: np.ndarray) -> np.ndarray:
     return np.asarray(abs(values) < _FAINT * scale)
 
 
-def refined(track: Track, near: np.ndarray, faint: np.ndarray, x: Places, y: Places | None = None) -> np.ndarray:
-    """Replace what is lost in rounding by what long numbers give."""
-    result = np.array(near, dtype=float)
+def refined(
+    track: Track, near: np.ndarray, faint: np.ndarray, x: Places, y: Places | None = None
+) -> tuple[np.ndarray, np.ndarray]:
+    """Replace what is lost in rounding by what long numbers give; return the result, and where they gave it."""
+    result, known = np.array(near, dtype=float), np.zeros(track.batch, dtype=bool)
     for point in np.flatnonzero(faint):
         far = faint_value(track, int(point), x, y)
-        result[point] = result[point] if far is None else far
-    return result
+        if far is not None:
+            result[point], known[point] = far, True
+    return result, known
 
 
-class _Line:
+class Line:
     """The windows of one finite chain at one point, in long numbers."""
 
     def __init__(self, track: Track, point: int, numbers: Numbers, runs: list[tuple[int, int]]) -> None:
@@ -252,13 +260,12 @@ class _Line:
         ]
         if self.closed and len(parts) > 1:
             # A trace of a product needs no more than the products of entries that meet.
-            return (reduce(np.matmul, parts[:-1]) * parts[-1].T).sum()
+            return (reduce(partial(matrix_product, self.numbers), parts[:-1]) * parts[-1].T).sum()
         first = parts[0] if self.closed else parts[0].sum(axis=0, keepdims=True)
         return self._end(reduce(np.matmul, parts[1:], first))
 
     def _power(self, position: int, count: int) -> np.ndarray:
         what = (self.windows.at(position), count)
         if what not in self._powers:
-            join: Callable[[Any, Any], Any] = partial(np.matmul)
-            self._powers[what] = repeated(join, self._weights(position), count)
+            self._powers[what] = matrix_power(self.numbers, self._weights(position), count)
         return self._powers[what]

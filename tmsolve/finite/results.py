@@ -2,28 +2,25 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Callable, Mapping, Sequence
 from dataclasses import dataclass, field
 from functools import cached_property
 from typing import Any
 
 import numpy as np
 
-from ..answer.solve import solve
-from ..assemble.matrix import handle
 from ..assemble.window import build_window
 from ..declare import Point
-from ..errors import ParameterError, SolveError, TooLargeError
-from ..observe.correlations import anchors
+from ..errors import ParameterError, SolveError, TooLargeError, did_you_mean, listing
 from ..observe.evaluate import fits
 from .distribution import Distribution, distribute
-from .faint import Places, faint_profile, is_faint, refined, scale_of
 from .finite_domains import FiniteDomains, find_domains
 from .impurities import Impurities, renamed_values, spacious
 from .moments import check_order, moments_of
+from .single_cells import cell_correlation, cell_mean, whole_profile
 from .steps import Ends, Windows
-from .track import Mark, Track
-from .uniform import far_correlation
+from .totals import known_covariance, known_cumulants, moment_errors
+from .track import Track
 
 __all__ = ["FiniteChain"]
 
@@ -42,9 +39,9 @@ class FiniteChain:
     single cells to 1e-14 of the size of the observable. Those below 1e-3 of that size are
     computed anew, from centred chains of states or in long numbers, and are accurate
     relatively however small they are; what vanishes is 0. Where long numbers would take more
-    than some 5 s the first accuracy remains: in correlations of chains with ends or
-    impurities beyond 16 joint states at N = 10⁶ and 14 at 10⁹, in means of single cells
-    beyond 20 at 10⁹, in whole profiles beyond 1.6 · 10⁵ cells of two states.
+    than some 5 s the first accuracy remains: beyond about 20 joint states in chains with ends
+    or impurities (80 with python-flint), in whole profiles beyond 1.6 · 10⁵ cells of two
+    states. `error_bound` says which digits are known.
 
     Attributes
     ----------
@@ -92,9 +89,7 @@ class FiniteChain:
         """Covariance of the totals of two observables over the whole chain; the variance for one."""
         self._must_exist()
         other = a if b is None else b
-        mark = {"x": handle("observable", (), a), "y": handle("observable", (), other)}
-        table = self._track((a, other)).everywhere(mark, ("x", "y"))
-        return self._shaped(table.tilts[("x", "y")] if ("x", "y") in table.tilts else np.zeros(1))
+        return self._shaped(known_covariance(self._track((a, other)), a, other).value)
 
     def cumulants(self, a: str, order: int = 4) -> np.ndarray:
         """Cumulants of the total of an observable, first to ``order`` ≤ 4; shape (*batch, order).
@@ -111,9 +106,7 @@ class FiniteChain:
         """
         order = check_order(order)
         self._must_exist()
-        tilts = self._track((a,)).everywhere({"x": handle("observable", (), a)}, ("x",) * order).tilts
-        zero = np.zeros(self.point.size)
-        return self._shaped(np.stack([zero + tilts.get(("x",) * k, zero) for k in range(1, order + 1)], axis=-1))
+        return self._shaped(known_cumulants(self._track((a,)), a, order).value)
 
     def moments(self, a: str, order: int = 4, central: bool = False) -> np.ndarray:
         """Moments ⟨Aᵏ⟩ of the total A of an observable, k = 1 … ``order`` ≤ 4; shape (*batch, order).
@@ -181,23 +174,7 @@ class FiniteChain:
                 "Name the cells: profile(a, cells=[…])",
                 limit=_LONGEST_PROFILE,
             )
-        track = self._track((a,))
-        values = np.zeros((self.point.size, self.cells))
-        # Parts that reach beyond an end are left out; a cell without any has the value 0, exactly.
-        there = np.zeros(self.cells, dtype=bool)
-        for anchor in anchors(track.window, a):
-            for position, mean in track.sweep(a, anchor).items():
-                # A part anchored at `anchor` in its window belongs to this cell of the chain.
-                cell = self._position(position + anchor)
-                if 0 <= cell < self.cells:
-                    values[:, cell] += mean
-                    there[cell] = True
-        faint = is_faint(values, scale_of(track, self._places(track, a, self.cells // 2))[:, None]) & there
-        for point in np.flatnonzero(faint.any(axis=1)):
-            far = faint_profile(track, int(point), a, anchors(track.window, a), faint[point])
-            if far is not None:
-                values[point] = np.where(faint[point], far, values[point])
-        return self._shaped(values)
+        return self._shaped(whole_profile(self._track((a,)), a).value)
 
     def correlation(self, a: str, b: str, i: int, j: int, connected: bool = True) -> np.ndarray:
         """Two-point function of ``a`` in cell i and ``b`` in cell j, cells numbered 0 … N−1.
@@ -212,41 +189,70 @@ class FiniteChain:
         """
         i, j = self._cell(i), self._cell(j)
         self._must_exist()
-        track = self._track((a, b))
-        x, y = self._places(track, a, i), self._places(track, b, j)
-        near = np.zeros(self.point.size)
-        for first in x:
-            for second in y:
-                near = near + self._pair(track, first, second)
-        shaped = self._shaped(self._far(track, near, a, b, i, j))
+        shaped = self._shaped(cell_correlation(self._track((a, b)), self.point, a, b, i, j).value)
         if connected:
             return shaped
         return shaped + self._in_cell(a, i) * self._in_cell(b, j)
 
-    def _places(self, track: Track, a: str, cell: int) -> Places:
-        """Return the windows that hold the parts of an observable in a cell; those beyond an end are left out."""
-        found = [(self._position(cell - anchor), f"{a}@{anchor}") for anchor in anchors(track.window, a)]
-        return [(position, name) for position, name in found if position in track.windows.positions]
+    def error_bound(self, quantity: str, *of: Any) -> np.ndarray:
+        """Bound the numerical error of a quantity, of its shape: which digits of it are known.
 
-    def _far(self, track: Track, near: np.ndarray, a: str, b: str, i: int, j: int) -> np.ndarray:
-        """Replace correlations that are lost in the rounding of the observables."""
-        x, y = self._places(track, a, i), self._places(track, b, j)
-        faint = is_faint(near, scale_of(track, x) * scale_of(track, y))
-        if self._uniform and faint.any():
-            try:
-                far = far_correlation(solve(self.point), self.cells, a, b, (j - i) % self.cells)
-            except SolveError:
-                far = None
-            if far is not None:
-                return np.where(faint, far, near)
-        return refined(track, near, faint, x, y)
+        Parameters
+        ----------
+        quantity : str
+            ``"log_Z"``, ``"free_energy"``, or a method: ``"total"``, ``"mean"``, ``"covariance"``,
+            ``"cumulants"``, ``"moments"``, ``"profile"`` or ``"correlation"``.
+        *of
+            What the method is asked for: observables, cells, an order.
 
-    def _pair(self, track: Track, x: tuple[int, str], y: tuple[int, str]) -> np.ndarray:
-        marks: dict[int, Mark] = {}
-        for name, (position, quantity) in (("x", x), ("y", y)):
-            marks[position] = {**marks.get(position, {}), name: handle("observable", (), quantity)}
-        table = track.marked(marks, ("x", "y"))
-        return np.broadcast_to(table.tilts[("x", "y")] if ("x", "y") in table.tilts else 0.0, (self.point.size,))
+        Examples
+        --------
+        >>> from tmsolve import Chain, bond, ising, ring
+        >>> chain = Chain(ising(), [bond(lambda s, t, J: -J*s*t)], observables={"m": lambda s: s})
+        >>> cold = ring(chain.at(T=1, J=1), 50)
+        >>> third, bound = cold.cumulants("m", 3)[2], cold.error_bound("cumulants", "m", 3)[2]
+        >>> bool(abs(third) <= bound < 1e-8)                                    # it vanishes by symmetry
+        True
+        """
+        self._must_exist()
+        bounds: Mapping[str, Callable[..., np.ndarray]] = {
+            "log_Z": self._bound_of_log_Z,
+            "free_energy": lambda: self._bound_of_log_Z() * np.broadcast_to(self.point.T, self.point.shape).ravel(),
+            "total": lambda a: self._bounds_of_cumulants(a, 1)[:, 0],
+            "mean": lambda a: self._bounds_of_cumulants(a, 1)[:, 0] / self.cells,
+            "covariance": self._bound_of_covariance,
+            "cumulants": self._bounds_of_cumulants,
+            "moments": self._bounds_of_moments,
+            "profile": self._bounds_of_profile,
+            "correlation": lambda a, b, i, j: cell_correlation(self._track((a, b)), self.point, a, b, i, j).error,
+        }
+        if quantity not in bounds:
+            hint = did_you_mean(quantity, bounds)
+            raise ParameterError(f"bounds are given for {listing(bounds)}, got {quantity!r}.{hint}")
+        return self._shaped(bounds[quantity](*of))
+
+    def _bound_of_log_Z(self) -> np.ndarray:
+        table = self._track(()).everywhere({}, ())
+        return 1e-14 * (np.abs(self._track(()).algebra().beta * table.energy) + np.abs(table.log))
+
+    def _bounds_of_cumulants(self, a: str, order: int = 4) -> np.ndarray:
+        return known_cumulants(self._track((a,)), a, check_order(order)).error
+
+    def _bound_of_covariance(self, a: str, b: str | None = None) -> np.ndarray:
+        other = a if b is None else b
+        return known_covariance(self._track((a, other)), a, other).error
+
+    def _bounds_of_moments(self, a: str, order: int = 4, central: bool = False) -> np.ndarray:
+        return moment_errors(known_cumulants(self._track((a,)), a, check_order(order)), central)
+
+    def _bounds_of_profile(self, a: str, cells: Sequence[int] | None = None) -> np.ndarray:
+        if self._uniform:
+            mean = self._bounds_of_cumulants(a, 1) / self.cells
+            return np.broadcast_to(mean, (self.point.size, self.cells if cells is None else len(cells)))
+        track = self._track((a,))
+        if cells is None:
+            return whole_profile(track, a).error
+        return np.stack([cell_mean(track, a, self._cell(cell)).error for cell in cells], axis=-1)
 
     @property
     def _uniform(self) -> bool:
@@ -256,13 +262,7 @@ class FiniteChain:
     def _in_cell(self, a: str, cell: int) -> np.ndarray:
         if self._uniform:
             return self.mean(a)
-        track = self._track((a,))
-        value = np.zeros(self.point.size)
-        places = self._places(track, a, cell)
-        for position, quantity in places:
-            table = track.marked({position: {"x": handle("observable", (), quantity)}}, ("x",))
-            value = value + (table.tilts[("x",)] if ("x",) in table.tilts else 0.0)
-        return self._shaped(refined(track, value, is_faint(value, scale_of(track, places)), places))
+        return self._shaped(cell_mean(self._track((a,)), a, cell).value)
 
     def _cell(self, cell: Any) -> int:
         if isinstance(cell, bool) or not isinstance(cell, (int, np.integer)) or not 0 <= cell < self.cells:
@@ -272,9 +272,6 @@ class FiniteChain:
     def _must_exist(self) -> None:
         """Refuse means over a chain that has no allowed configuration."""
         _ = self.log_Z
-
-    def _position(self, position: int) -> int:
-        return position % self.cells if self.closed else position
 
     def _track(self, observables: Sequence[str]) -> Track:
         chain, room = spacious(self.point.chain, self.impurities)

@@ -47,6 +47,9 @@ class Track:
     _long: dict[tuple[int, int], dict[ChainWindow, Assembled]] = field(default_factory=dict, repr=False)
 
     _long_results: dict[tuple[str, int, int], dict[Any, Any]] = field(default_factory=dict, repr=False)
+    #: Whole profiles by observable, and cumulants of totals by observable and order.
+    profiles: dict[str, Any] = field(default_factory=dict, repr=False)
+    totals: dict[tuple[str, int], Any] = field(default_factory=dict, repr=False)
 
     def __post_init__(self) -> None:
         size = max(max(self.windows.at(position).shape) for position, _ in self.runs())
