@@ -6,7 +6,9 @@ import signal
 import threading
 import time
 
+import numpy as np
 import pytest
+import sympy as sp
 
 from tmsolve.symbolic.deadline import Clock, TimeUp, limited
 
@@ -144,3 +146,17 @@ def test_a_clock_counts_down():
     assert clock.share(0.5) <= 0.1
     time.sleep(0.25)
     assert clock.left == 0.0
+
+
+def test_products_of_arrays_of_polynomials_stop_in_time():
+    """NumPy goes on for a moment after the interruption, and the interpreter reports that as a fault of its own."""
+    _, *symbols = sp.ring("a b c", sp.QQ)
+    matrix = np.array([[(sum(symbols) + i + j) ** 5 for i in range(4)] for j in range(4)], dtype=object)
+
+    def endless():
+        while True:
+            matrix.dot(matrix)
+
+    for _ in range(3):
+        with pytest.raises(TimeUp):
+            limited(0.3, endless)

@@ -7,7 +7,7 @@ import pytest
 import sympy as sp
 
 from tests.symbolic.refusing import refuses
-from tmsolve import Chain, StateSet, bond, colours, delta, ising, models, site, spins, weight
+from tmsolve import Chain, StateSet, bond, clock, colours, cos_turns, delta, ising, models, site, spins, weight
 from tmsolve.errors import DeclarationError, NotApplicable, ParameterError, TooLargeError
 from tmsolve.symbolic.decimation.decimate import decimate
 from tmsolve.symbolic.decimation.fixed_points import fixed_points
@@ -237,3 +237,25 @@ def test_fixed_points_refused():
         fixed_points(recursion(Chain(colours(3), both)))
     with refuses(TooLargeError, "8 states", "up to 7"):
         fixed_points(recursion(Chain(colours(8), [bond(lambda s, t, J: -J * delta(s, t))])))
+
+
+@pytest.mark.parametrize(
+    ("chain", "words"),
+    [
+        (
+            Chain(clock(5), [bond(lambda a, b, J: -J * cos_turns(a - b, 5))]),
+            r"changes J, sqrt\(5\)\*J independently, and the chain has too few parameters for that",
+        ),
+        (
+            Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, h: -h * s)]).fix(h=1),
+            "changes the fixed energy 1, J independently",
+        ),
+        (
+            Chain(ising(), [bond(lambda s, t, J: -J * s * t), site(lambda s, J: -(J**2) * s)]),
+            r"changes J, J\*\*2 independently.*parameter of its own",
+        ),
+    ],
+)
+def test_couplings_that_share_a_parameter_do_not_close(chain, words):
+    with pytest.raises(NotApplicable, match=words):
+        recursion(chain)

@@ -297,9 +297,25 @@ def test_a_curve_is_kept_when_the_time_is_over_before_its_edges(monkeypatch):
         raise TimeUp
 
     monkeypatch.setattr("tmsolve.symbolic.counting.limiting._edges", late)
+    monkeypatch.setattr("tmsolve.symbolic.counting.limiting.end_points", late)
     curve = limiting_curve(ISING.fix(J=1, T=1), points=8)
     assert len(curve.points) == 16 and not curve.has_edges and repr(curve).endswith("16 points, edges not known>")
     refused(NotApplicable, lambda: curve.discriminant, "not found within the time limit")
+
+
+@pytest.mark.parametrize("chain", [ISING.fix(J=1, T=2), ISING.fix(J=-1, T=1), BLUME_CAPEL.fix(J=1, T="0.7", D="1.4")])
+def test_edges_from_the_trace_are_roots_of_the_discriminant(chain, monkeypatch):
+    exact = limiting_curve(chain, points=8)
+
+    def late(*_):
+        raise TimeUp
+
+    monkeypatch.setattr("tmsolve.symbolic.counting.limiting._edges", late)
+    traced = limiting_curve(chain, points=8)
+    assert traced.has_edges and len(traced.edges) == len(exact.edges) > 0
+    for z, other, error in zip(traced.edges, exact.edges, traced.errors, strict=True):
+        assert abs(z - other) <= error < 1e-30 * abs(z)
+    refused(NotApplicable, lambda: traced.discriminant, "not found within the time limit")
 
 
 def test_too_many_eigenvalues(monkeypatch):

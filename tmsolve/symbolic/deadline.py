@@ -68,8 +68,19 @@ def limited(seconds: float, compute: Callable[..., Result], *arguments: Any) -> 
         # Inside, because a very short limit can be over before start() has returned.
         interruption.start()
         return compute(*arguments)
+    except SystemError as error:
+        # Loops of numpy over objects go on for a moment with the exception set, which the interpreter then reports.
+        if _began_with_time_up(error):
+            raise TimeUp from None
+        raise
     finally:
         interruption.stop()
+
+
+def _began_with_time_up(error: BaseException | None) -> bool:
+    while error is not None and not isinstance(error, TimeUp):
+        error = error.__cause__ or error.__context__
+    return error is not None
 
 
 def _has_alarm() -> bool:

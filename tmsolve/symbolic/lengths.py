@@ -45,14 +45,12 @@ def _dominates(spectrum: Spectrum, large: Factor, small: Factor) -> bool:
 
 def _moduli(spectrum: Spectrum, factor: Factor, first: Any) -> list[Any]:
     """Return expressions for the largest modulus among the roots of a factor, the Perron root left out."""
-    import sympy as sp
-
     rest = [root for root in factor.roots if root != first]
     if len(rest) == 1:
         sign = _sign(_trace(spectrum, factor)) if factor.degree == 1 else 0
-        return [rest[0] * sign if sign else sp.Abs(rest[0], evaluate=False)]
+        return [rest[0] * sign if sign else _modulus(rest[0])]
     if factor.degree != 2:
-        return [sp.Abs(root, evaluate=False) for root in rest]
+        return [_modulus(root) for root in rest]
     return _pair(spectrum, factor)
 
 
@@ -71,12 +69,30 @@ def _pair(spectrum: Spectrum, factor: Factor) -> list[Any]:
     middle = trace_sign * form.middle.build() or sp.Abs(form.middle.build(), evaluate=False)
     inside, outside = form.inside.build(), form.outside.build()
     outside = outside if outside.is_positive else sp.Abs(outside, evaluate=False)
-    constant = sp.sqrt(sp.Abs(spectrum.writer.write(matrix.laurent(factor.polynomial[2], 2)), evaluate=False))
+    constant = _root_of_modulus(spectrum.writer.write(matrix.laurent(factor.polynomial[2], 2)))
     if inside.is_negative:
         return [constant]
     if inside.is_positive or is_reversible(matrix):
         return [front * (middle + outside * sp.sqrt(inside))]
     return [front * (middle + outside * sp.sqrt(sp.Max(inside, 0, evaluate=False))), constant]
+
+
+def _modulus(value: Any) -> Any:
+    """Return |value| with numbers in front of the bars."""
+    import sympy as sp
+
+    number, rest = value.as_coeff_Mul(rational=True)
+    return abs(number) * sp.Abs(rest, evaluate=False)
+
+
+def _root_of_modulus(value: Any) -> Any:
+    """Return √|value|, without a root where the value is a square."""
+    import sympy as sp
+
+    powers = [factor.as_base_exp() for factor in sp.Mul.make_args(value)]
+    if all(power.is_Integer and power % 2 == 0 for _, power in powers):
+        return sp.Mul(*(sp.Abs(base, evaluate=False) ** (power // 2) for base, power in powers))
+    return sp.sqrt(sp.Abs(value, evaluate=False))
 
 
 def _trace(spectrum: Spectrum, factor: Factor) -> Laurent:

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
+from itertools import islice
 from typing import TYPE_CHECKING, Any
 
 from ..errors import NotApplicable
@@ -33,7 +34,7 @@ __all__ = [
 #: Sums with more terms are written out in exponentials without looking for a shorter form.
 _READABLE_TERMS = 12
 #: Longer formulas are named, not printed, in the text form.
-_PRINTED_LETTERS = 1500
+_PRINTED_LETTERS, _PRINTED_PARTS = 1500, 1500
 #: In a longer Z_N eigenvalues are named.
 _NAMED_LETTERS = 500
 
@@ -157,10 +158,14 @@ def _recurrence_lines(form: ClosedForm) -> list[str]:
 
 
 def _shown(expr: Any) -> str:
-    written = plain_text(expr)
-    if len(written) <= _PRINTED_LETTERS:
-        return written
-    return f"({len(expr.args)} terms, {len(written)} letters; see the attribute of the form)"
+    import sympy as sp
+
+    # Printing a long formula takes longer than deriving it.
+    if sum(1 for _ in islice(sp.preorder_traversal(expr), _PRINTED_PARTS)) < _PRINTED_PARTS:
+        written = plain_text(expr)
+        if len(written) <= _PRINTED_LETTERS:
+            return written
+    return f"({len(expr.args)} terms, too long to be shown; see the attribute of the form)"
 
 
 def ring_text(form: ClosedForm) -> str:

@@ -185,11 +185,12 @@ def _no_radicals(factor: Factor, real: bool) -> str:
     where = f"the block of size {factor.block.size} ({factor.block.label})"
     if not factor.irreducible:
         return f"the characteristic polynomial of {where} has powers too high to be factored; fix fewer parameters"
-    reason = (
-        "a form by radicals that reads well exists for degrees 1, 2 and, if all eigenvalues are real, 3"
-        if factor.degree != 3 or real
-        else "degree 3 is written only where all eigenvalues are real, and this matrix is not reversible"
-    )
+    if factor.degree == 3 and real:
+        reason = "its three real roots would take a trigonometric form too long to read; fix a parameter"
+    elif factor.degree == 3:
+        reason = "degree 3 is written only where all eigenvalues are real, and this matrix is not reversible"
+    else:
+        reason = "a form by radicals that reads well exists for degrees 1, 2 and, if all eigenvalues are real, 3"
     return f"the characteristic polynomial of {where} has an irreducible factor of degree {factor.degree}; {reason}"
 
 

@@ -24,6 +24,7 @@ from ..arguments import positive_seconds
 from ..deadline import Clock, TimeUp, limited
 from ..pieces import check_chain
 from .certified import by_argument, certified_roots
+from .endpoints import end_points
 from .fugacity import Fugacity, check_variable, numeric_coefficients
 from .pairs import PairProduct
 from .secular import Secular, secular
@@ -34,6 +35,8 @@ __all__ = ["LimitingCurve", "limiting_curve"]
 _LARGEST = 9
 #: Polynomials with more coefficients are solved only at about so many angles.
 _MANY, _SEEDS = 40, 18
+#: Part of the time left that the discriminant may take; most need no more than a second.
+_EXACT = 0.5
 
 
 @dataclass(frozen=True, eq=False, repr=False)
@@ -47,13 +50,14 @@ class LimitingCurve:
     angles : ndarray
         θ, with λ₁/λ₂ = e^{iθ}, of each point, 0 < θ ≤ π.
     edges : tuple of mpmath.mpc
-        End points: the roots of the discriminant where the two largest eigenvalues merge.
-    has_edges : bool
-        False when the time was over before the edges were looked for.
+        End points: the roots of the discriminant where the two largest eigenvalues merge. Where the
+        discriminant takes too long, those that the curve was traced to.
     errors : tuple of mpmath.mpf
         Proved bounds of their errors.
     arcs : tuple of ndarray
         The points in pieces, each in order along the curve.
+    has_edges : bool
+        False when the time was over before the edges were found; the curve alone takes less time.
     """
 
     points: np.ndarray
@@ -62,17 +66,13 @@ class LimitingCurve:
     errors: tuple[Any, ...]
     arcs: tuple[np.ndarray, ...]
     fugacity: Fugacity
-    _discriminant: MixedTerms | None = field(repr=False)
+    has_edges: bool = False
+    _discriminant: MixedTerms | None = field(default=None, repr=False)
 
     @property
     def variable(self) -> str:
         """What z is."""
         return self.fugacity.text
-
-    @property
-    def has_edges(self) -> bool:
-        """Whether the edges are known; the curve alone takes less time."""
-        return self._discriminant is not None
 
     @property
     def discriminant(self) -> Any:
@@ -145,13 +145,17 @@ def limiting_curve(
             "decimals, or give a longer time_limit"
         ) from None
     angles = np.concatenate([np.full(len(z), angle) for z, angle in zip(found, _angles(points), strict=True)])
-    curve = LimitingCurve(np.concatenate(found), angles, (), (), _linked(found), polynomial.fugacity, None)
+    curve = LimitingCurve(np.concatenate(found), angles, (), (), _linked(found), polynomial.fugacity)
     try:
-        discriminant, edges = limited(clock.left, _edges, polynomial, product, digits)
+        discriminant, edges = limited(clock.share(_EXACT), _edges, polynomial, product, digits)
     except TimeUp:
-        return curve
+        discriminant = None
+        try:
+            edges = limited(clock.left, _traced_edges, polynomial, product, found[0], digits, points)
+        except TimeUp:
+            return curve
     ends, errors = (tuple(edge[k] for edge in edges) for k in range(2))
-    return replace(curve, edges=ends, errors=errors, _discriminant=discriminant)
+    return replace(curve, edges=ends, errors=errors, has_edges=True, _discriminant=discriminant)
 
 
 def _angles(points: int) -> list[float]:
@@ -213,6 +217,12 @@ def _edges(polynomial: Secular, product: PairProduct | None, digits: int) -> tup
             roots, radii = certified_roots(numeric_coefficients(part, polynomial.fugacity.rates), digits)
             edges += [(z, r) for z, r in zip(roots, radii, strict=True) if product.merges_at_the_top(z)]
     return terms, sorted(edges, key=lambda edge: by_argument(edge[0]))
+
+
+def _traced_edges(
+    polynomial: Secular, product: PairProduct | None, start: np.ndarray, digits: int, points: int
+) -> list[tuple[Any, Any]]:
+    return end_points(polynomial, product, start, _angles(points)[0], digits) if product is not None else []
 
 
 def _linked(found: list[np.ndarray]) -> tuple[np.ndarray, ...]:

@@ -34,7 +34,7 @@ class PairProduct:
 
         self._degree = polynomial.degree
         with mp.workdps(_DIGITS):
-            exact = _coefficients(polynomial)
+            exact = self.coefficients(polynomial)
             self._exact = exact
             self._in_z = _interpolated(exact, self._degree)
             width = max(map(len, exact))
@@ -42,6 +42,22 @@ class PairProduct:
             largest = max(abs(c) for column in table for c in column)
             #: Coefficients of λ^k z^j in doubles, shape (degree + 1, width).
             self.table = np.array([[float(c / largest) for c in column] for column in table])
+
+    @staticmethod
+    def coefficients(polynomial: Secular) -> list[list[Any]]:
+        """Return the coefficients of λ^k, ascending, each as ascending coefficients of z in the working precision."""
+        import mpmath as mp
+
+        columns = []
+        for k in range(polynomial.degree + 1):
+            terms = {powers[1:]: c for powers, c in polynomial.terms.items() if powers[0] == k}
+            columns.append(numeric_coefficients(terms, polynomial.fugacity.rates)()[0] if terms else [])
+        return [column or [mp.mpf(0)] for column in columns]
+
+    def middle(self, z: complex) -> complex:
+        """Return the mean of the two largest eigenvalues at a point of the curve."""
+        values = self._eigenvalues(np.array([z]))[0]
+        return complex(values[np.argsort(-np.abs(values))[:2]].mean())
 
     @property
     def size(self) -> int:
@@ -126,17 +142,6 @@ class PairProduct:
                     break
             ok = np.isfinite(z) & np.isfinite(root) & (change <= 1e-10 * np.abs(z)) & (z != 0)
         return z, ok
-
-
-def _coefficients(polynomial: Secular) -> list[list[Any]]:
-    """Return the coefficients of λ^k, k ascending, each as ascending coefficients of z."""
-    columns = []
-    for k in range(polynomial.degree + 1):
-        terms = {powers[1:]: c for powers, c in polynomial.terms.items() if powers[0] == k}
-        columns.append(numeric_coefficients(terms, polynomial.fugacity.rates)()[0] if terms else [])
-    import mpmath as mp
-
-    return [column or [mp.mpf(0)] for column in columns]
 
 
 def _interpolated(columns: list[list[Any]], degree: int) -> list[list[Any]]:

@@ -235,7 +235,30 @@ def recursion(chain: Chain, b: int = 2, *, time_limit: float = 30) -> Recursion:
             f"summing out cells of {chain.name} creates couplings that it has no term for: {listing(closure.missing)}; "
             "declare them with parameters of their own, or use decimate(chain.at(…)) for numbers"
         )
+    shared = _sharing(chain, table, closure)
+    if shared:
+        raise NotApplicable(
+            f"summing out cells of {chain.name} changes {listing(shared)} independently, and the chain "
+            "has too few parameters for that; give each a parameter of its own in the energy functions, or use "
+            "decimate(chain.at(…)) for numbers"
+        )
     return Recursion(chain, cells, allowed, table, closure)
+
+
+def _sharing(chain: Chain, table: WeightTable, closure: Closure) -> list[str]:
+    """Name the coordinates that change where they are not independent functions of the free parameters."""
+    import sympy as sp
+
+    inverse = 1 / parameter_symbols(chain)["T"]
+    kept = [k for k, image in closure.images.items() if image == Image(powers={k: Fraction(1)})]
+    classes = [table.alphabet.classes[k] for k in closure.coordinates if k not in kept]
+    inside = [key.args[0] if isinstance(key, sp.log) else key / inverse for key in classes]
+    symbols = sorted(set().union(*(x.free_symbols for x in inside)) - inverse.free_symbols, key=str)
+    slopes = sp.Matrix([[sp.diff(x, symbol) for symbol in symbols] for x in inside])
+    point = {symbol: sp.Rational(2 * k + 3, k + 2) for k, symbol in enumerate(symbols)}
+    if slopes.subs(point).rank() == len(inside):
+        return []
+    return [f"the fixed energy {plain_text(x)}" if x.is_number else plain_text(x) for x in inside]
 
 
 def _derive(chain: Chain, b: int) -> tuple[WeightTable, Closure]:
