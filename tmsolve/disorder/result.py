@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 
 from ..errors import ParameterError
+from .averaged_decay import averaged_decay
 from .averaged_pairs import AveragedPairs, refuse_lists
 from .averages import Average, average
 from .chances import probability_derivative
@@ -83,6 +84,24 @@ class QuenchedChain(PerCell):
     def glass_susceptibility(self, a: str) -> Average:
         """Spin-glass susceptibility Σ_r [(⟨a₀a_r⟩ − ⟨a₀⟩⟨a_r⟩)²] over all r, averaged over disorder; no factor of T."""
         return self._pairs(a, a).total(2)
+
+    def average_correlation_length(self) -> Average:
+        """Decay length in cells of the average of connected correlations, for any number of states.
+
+        Rare places where correlations are strong make it longer than the typical one. Its error holds, beside the bar
+        of the sample, what the last degree of polynomials of the message changed.
+
+        Raises
+        ------
+        NotApplicable
+            The sample is too small to see a decay, no state is allowed at every cut, or parameters that are lists.
+        """
+        refuse_lists(self._problem)
+        if "decay" not in self._known:
+            sizes = (self.cells, self.replicas, self.burn_in)
+            self._known["decay"] = averaged_decay(self._problem, *sizes, self.seed)
+        found: Average = self._known["decay"]
+        return found
 
     def probability_derivative(self, name: str, value: Any, instead_of: Any = None) -> Average:
         """Average derivative of the free energy by the probability of one value of a random parameter.

@@ -14,7 +14,7 @@ from .problem import Problem
 from .steps import StepMaker, Steps
 from .strata import next_draws, node_count
 
-__all__ = ["Burnt", "Rates", "burn_in", "pilot", "random_steps", "walk"]
+__all__ = ["Burnt", "Rates", "burn_in", "node_steps", "pilot", "random_steps", "walk"]
 
 #: Matrix entries, tangents included, that are made at a time.
 _BLOCK = 1_500_000
@@ -138,7 +138,7 @@ def _walk(
     maker: StepMaker, rng: np.random.Generator, message: Message, cells: int, power: float | None
 ) -> tuple[Message, Rates]:
     replicas = message.log.shape[1]
-    nodes = None if power is None else _nodes(maker, rng, cells, replicas)
+    nodes = None if power is None else node_steps(maker, rng, cells, replicas)
     total: list[np.ndarray] = []
     for step in random_steps(maker, rng, cells, replicas):
         ahead = [] if nodes is None or power is None else _parts(expected(message, *next(nodes), power))
@@ -161,7 +161,7 @@ def _power(message: Message) -> float:
     return 1.5 / max(1.5, float(deviation))
 
 
-def _nodes(
+def node_steps(
     maker: StepMaker, rng: np.random.Generator, cells: int, replicas: int
 ) -> Iterator[tuple[Steps, np.ndarray]]:
     """Yield matrices over all draws of one cell, and their weights (nodes, replicas)."""
