@@ -1,5 +1,7 @@
 """Whether error bars are right: how often the exact average lies within one of them."""
 
+from dataclasses import fields, replace
+
 import numpy as np
 import pytest
 
@@ -34,59 +36,66 @@ READ = {
 }
 
 
-def scores(case, seeds, **how):
-    """Return deviations in error bars, by quantity, over many seeds."""
+def exact_values(case):
     chain, law = CASES[case]
-    asked = [("J", "T")]
-    exact = stationary_message(chain, law, tolerance=1e-9, derivatives=asked)
+    exact = stationary_message(chain, law, tolerance=1e-9, derivatives=[("J", "T")])
     growth = exact.free_energy.value / -float(chain.fixed["T"])
     known = {name: read(exact).value for name, read in READ.items() if "lyapunov" not in name}
-    known |= {"lyapunov(1)": growth, "lyapunov(2)": growth - 1 / known["correlation_length"]}
-    found = {name: [] for name in READ}
+    return known | {"lyapunov(1)": growth, "lyapunov(2)": growth - 1 / known["correlation_length"]}
+
+
+def parts(whole, size):
+    """Take the replicas of a sample in groups: each is what a sample of that many replicas would be."""
+    exponents = whole._exponents
+    for begin in range(0, whole.replicas, size):
+        some = slice(begin, begin + size)
+        arrays = (getattr(whole._rates, f.name) for f in fields(whole._rates))
+        rates = type(whole._rates)(*(a if a is None else a[..., some] for a in arrays))
+        known = {"exponents": type(exponents)(exponents.first[some], exponents.below[:, some])}
+        yield replace(whole, replicas=size, _rates=rates, _known=known)
+
+
+def scores(case, seeds, sizes, **how):
+    """Return deviations in error bars, by size of groups of replicas and quantity, over many seeds."""
+    chain, law = CASES[case]
+    known = exact_values(case)
+    found = {size: {name: [] for name in READ} for size in sizes}
     for seed in range(seeds):
-        sampled = quenched(chain, law, rng=1000 + seed, derivatives=asked, **how)
-        for name, read in READ.items():
-            found[name].append((read(sampled).value - known[name]) / read(sampled).error)
-    return {name: np.array(values) for name, values in found.items()}
-
-
-def covered(found):
-    return {name: round(100 * float((np.abs(z) < 1).mean()), 1) for name, z in found.items()}
+        sampled = quenched(chain, law, rng=1000 + seed, derivatives=[("J", "T")], **how)
+        for size in sizes:
+            for part in parts(sampled, size):
+                for name, read in READ.items():
+                    average = read(part)
+                    found[size][name].append((average.value - known[name]) / average.error)
+    return {size: {name: np.array(values) for name, values in one.items()} for size, one in found.items()}
 
 
 def test_bars_of_plain_averages_cover():
-    found = scores("fields", 80, cells=30, replicas=24, control_variates=False)
+    found = scores("fields", 40, (12,), cells=30, replicas=24, control_variates=False)[12]
     for name, z in found.items():
         # 68 in 100, within three deviations of 80 trials.
         assert abs((np.abs(z) < 1).mean() - 0.68) < 0.16, name
         assert abs(z.mean()) < 4 / np.sqrt(80), name
 
 
-@pytest.mark.parametrize(("case", "replicas"), [("two_values", 8), ("fields", 4)])
-def test_bars_with_control_variates_cover_with_few_replicas(case, replicas):
-    found = scores(case, 40, cells=10, replicas=replicas)
-    inside = np.mean([np.abs(z) < 1 for z in found.values()])
-    assert abs(inside - 0.68) < 0.15
+@pytest.mark.parametrize("case", ["two_values", "fields"])
+def test_bars_with_control_variates_cover_with_few_replicas(case):
+    for size, found in scores(case, 12, (4, 8), cells=10, replicas=32).items():
+        inside = np.mean([np.abs(z) < 1 for z in found.values()])
+        assert abs(inside - 0.68) < 0.15, size
 
 
 @pytest.mark.slow
-@pytest.mark.parametrize("controls", [False, True])
+@pytest.mark.parametrize("controls", [True, False])
 @pytest.mark.parametrize("case", CASES)
 def test_bars_cover_over_two_hundred_seeds(case, controls):
-    found = scores(case, 200, cells=50, replicas=128, control_variates=controls)
-    print(case, f"controls={controls}", covered(found))
-    for name, z in found.items():
-        assert abs((np.abs(z) < 1).mean() - 0.68) < 0.07, (name, (np.abs(z) < 1).mean())
-
-
-@pytest.mark.slow
-@pytest.mark.parametrize("replicas", [8, 16, 32])
-@pytest.mark.parametrize("case", ["fields", "weak", "two_values"])
-def test_bars_of_few_replicas_cover_over_two_hundred_seeds(case, replicas):
-    found = scores(case, 200, cells=20, replicas=replicas)
-    print(case, f"replicas={replicas}", covered(found))
-    for name, z in found.items():
-        assert abs((np.abs(z) < 1).mean() - 0.68) < 0.07, (name, (np.abs(z) < 1).mean())
+    found = scores(case, 200, (128, 64, 32, 16, 8), cells=50, replicas=128, control_variates=controls)
+    for size, one in found.items():
+        inside = {name: float((np.abs(z) < 1).mean()) for name, z in one.items()}
+        print(case, f"controls={controls} replicas={size}", {name: round(100 * x, 1) for name, x in inside.items()})
+        for name, share in inside.items():
+            # 200 trials themselves scatter by 3.3 in 100, three times that is let pass; 400 and more by 2.3.
+            assert abs(share - 0.68) < (0.10 if size == 128 else 0.07), (size, name, share)
 
 
 # --- what an error means
