@@ -228,3 +228,8 @@ def test_mathml_is_well_formed(tm):
     assert [element.tag for element in elements] == ["{http://www.w3.org/1998/Math/MathML}math"] * 2
     refused = tm("derive", "ising", "--quantity", "blocks", "--mathml")
     assert refused.code == 2 and "writes single formulas" in refused.err
+
+
+def test_no_empty_list_of_eigenvalues(tm):
+    done = tm("derive", "ising_nnn", "--quantity", "eigenvalues")
+    assert done.code == 1 and "not every eigenvalue is known" in done.err and "--quantity polynomial" in done.err

@@ -5,6 +5,7 @@ from __future__ import annotations
 import pytest
 import sympy as sp
 
+from tmsolve import Chain, bond, clock, closed_form, delta, ising
 from tmsolve.symbolic.alphabet import Alphabet
 from tmsolve.symbolic.boltzmann import polynomial_terms
 from tmsolve.symbolic.plain import latex_text, plain_text
@@ -75,3 +76,14 @@ def test_plain_text_puts_beta_first_and_keeps_brackets():
 def test_latex_text():
     J1 = sp.Symbol("J1", real=True)
     assert latex_text(sp.exp(beta * J1) + 2) == r"e^{\beta J_{1}} + 2"
+
+
+def test_sums_of_one_sign_keep_it_outside():
+    chain = Chain(clock(3), [bond(lambda a, b, J, A: -J * delta(a, b) - A * delta((b - a) % 3, 1))])
+    text = str(closed_form(chain).characteristic_polynomial)
+    assert "- (exp(J*beta) + 1)*exp(A*beta)" in text and "(-exp(" not in text
+
+
+def test_entropy_is_the_logarithm_and_the_energy():
+    form = closed_form(Chain(ising(), [bond(lambda s, t, J: -J * s * t)]))
+    assert str(form.entropy) == "-J*beta*tanh(J*beta) + log(2*cosh(J*beta))"

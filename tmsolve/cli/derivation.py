@@ -74,6 +74,12 @@ class Derivation:
             return self.form.partition_function(self.cells)
         return self.form.open_partition_function(self.cells)
 
+    def eigenvalues(self) -> Any:
+        """Return all eigenvalues, or say why there is no list of them."""
+        if not self.form.is_closed:
+            raise NotApplicable(f"not every eigenvalue is known: {self.form.why}; ask for --quantity polynomial")
+        return self.form.eigenvalues
+
     def series(self, name: str) -> Any:
         """Expand a quantity."""
         from ..symbolic.expansion.series import series

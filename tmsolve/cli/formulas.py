@@ -185,7 +185,7 @@ def _computation(kind: str, long: str, arguments: Sequence[str], work: Derivatio
         return lambda: work.series(_KINDS[name].long if name in _KINDS else name)
     if kind == "counts":
         return lambda: work.counts(tuple(arguments))
-    if kind in ("corr", "limits", "zeros", "generating"):
+    if kind in ("corr", "eigenvalues", "limits", "zeros", "generating"):
         return lambda: getattr(work, long)(*arguments)
     if arguments:
         return lambda: getattr(work.form, long)(*arguments)

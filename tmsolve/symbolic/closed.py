@@ -9,7 +9,6 @@ from typing import Any, TypeVar
 
 from ..declare.chain import Chain
 from ..errors import NotApplicable, ParameterError, TooLargeError, did_you_mean, listing
-from ..tabulate.symbolic import beta
 from . import report
 from .arguments import whole_cells, whole_distance
 from .blocks import Block
@@ -173,7 +172,7 @@ class ClosedForm:
     @cached_property
     def entropy(self) -> Any:
         """Entropy per cell, s = β(u − f)."""
-        return self._thermal("the entropy", lambda: beta() * (self._perron.internal_energy - self.free_energy))
+        return self._thermal("the entropy", lambda: self._perron.entropy)
 
     @cached_property
     def specific_heat(self) -> Any:

@@ -16,8 +16,8 @@ Result = TypeVar("Result")
 
 #: Seconds between two interruptions of a computation that did not stop at the first.
 _REPEAT = 0.25
-#: Functions in which an exception is printed and lost: destructors and what the garbage collector calls.
-_QUIET = ("__del__", "_remove", "gc_callback")
+#: Functions in which an exception is printed and lost: destructors, calls of the garbage collector, dead references.
+_QUIET = ("__del__", "_remove", "remove", "gc_callback")
 
 
 class TimeUp(BaseException):

@@ -121,6 +121,13 @@ class Perron:
         return self.differentiated(["beta"], -1)
 
     @cached_property
+    def entropy(self) -> Any:
+        """Return ln λ + β u."""
+        import sympy as sp
+
+        return sp.log(self.value) + beta() * self.internal_energy
+
+    @cached_property
     def specific_heat(self) -> Any:
         """Return β² ∂² ln λ/∂β²."""
         return self.differentiated(["beta", "T"], -1)

@@ -9,8 +9,16 @@ from typing import Any
 import numpy as np
 
 __all__ = [
-    "Coefficients", "berkowitz", "characteristic", "derivative_of", "divided", "factorable", "factors", "power_sums",
-    "product_of", "quotient",
+    "Coefficients",
+    "berkowitz",
+    "characteristic",
+    "derivative_of",
+    "divided",
+    "factorable",
+    "factors",
+    "power_sums",
+    "product_of",
+    "quotient",
 ]
 
 #: Coefficients of a monic polynomial in λ, highest power first: (1, c₁, …, cₙ).

@@ -176,7 +176,9 @@ class Writer:
                     parts.append(product([function, self.draft(times(coefficient, Fraction(2)))]))
             else:
                 here = tuple(exponent if i == k else Fraction(0) for i in range(len(self.alphabet.classes)))
-                parts.append(product([self.monomial(here), self.draft(coefficient)]))
+                # -(a + b) exp(x) and not (-a - b) exp(x).
+                sign = Fraction(-1 if exponent and max(coefficient.values()) < 0 else 1)
+                parts.append(product([self.monomial(here, sign), self.draft(times(coefficient, sign))]))
         return total(parts)
 
     def _factored(self, terms: Laurent) -> Draft | None:

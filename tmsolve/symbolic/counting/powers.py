@@ -99,9 +99,7 @@ def _dot(line: list[_Terms], column: Sequence[Any]) -> Any:
 # --- the two kinds of chain
 
 
-def _ring(
-    matrix: np.ndarray, rows: list[list[_Terms]], count: int, layout: Layout
-) -> dict[tuple[int, ...], int]:
+def _ring(matrix: np.ndarray, rows: list[list[_Terms]], count: int, layout: Layout) -> dict[tuple[int, ...], int]:
     size = len(matrix)
     if _worth_a_polynomial(matrix, count, size, layout):
         return _ring_by_polynomial(characteristic_terms(matrix, len(layout.tops)), count, layout)

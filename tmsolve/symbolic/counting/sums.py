@@ -262,4 +262,3 @@ def _find(letters: list[Letter], new: Letter) -> tuple[int, Fraction]:
             return k, ratio
     letters.append(new)
     return len(letters) - 1, Fraction(1)
-
