@@ -425,6 +425,8 @@ def test_laurent_series_know_how_far_they_reach():
 def test_free_parameters_are_named():
     with pytest.raises(NotApplicable, match=r"depends on the values of J, h; .* chain.fix\(J=…, h=…\)"):
         series(ising_chain(), 2, about="low")
+    with pytest.raises(NotApplicable, match=r"chain.fix\(J=1\) stands for every J > 0.*with beta\*\|J\| for beta"):
+        series(Chain(ising(), [bond(lambda s, t, J: -J * s * t)]), 2, about="low")
     with pytest.raises(NotApplicable, match=r"depends on the values of s, sigma"):
         series(ANIMALS["helix_coil"].chain, 2, about="low")
 

@@ -16,8 +16,9 @@ from .alphabet import Alphabet
 
 __all__ = ["undominated"]
 
-#: Powers of the matrices that are compared, and the largest ones whose states are matched one by one.
-_POWERS, _MATCHED = 4, 8
+#: Powers of the matrices that are compared, the largest ones of which more than the first is, and the largest ones
+#: whose states are matched one by one.
+_POWERS, _MULTIPLIED, _MATCHED = 4, 8, 6
 
 
 def undominated(classes: Sequence[np.ndarray], alphabet: Alphabet) -> list[int]:
@@ -79,9 +80,11 @@ class _Comparison:
         if len(small) <= len(large) <= _MATCHED and self._matched(small, large, ()):
             return True
         low, high = small, large
-        for _ in range(_POWERS):
+        for power in range(1, _POWERS + 1):
             if self._bounded(low, high):
                 return True
+            if power == _POWERS or max(len(small), len(large)) > _MULTIPLIED:
+                break
             low, high = low.dot(small), high.dot(large)
         return False
 

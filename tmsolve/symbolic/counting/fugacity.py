@@ -77,6 +77,13 @@ def check_variable(chain: Chain, variable: Any) -> None:
             f"zeros in the complex plane of {variable!r} need numbers for {listing(others)}: "
             f"chain.fix({', '.join(f'{name}=…' for name in others)})"
         )
+    weighed = [term.name for term in chain.terms if term.role == "weight" and variable in term.parameters]
+    if weighed:
+        raise NotApplicable(
+            f"{variable!r} is a Boltzmann factor in the weight {weighed[0]}, and zeros are sought in parameters of "
+            f"energies; declare {variable} = exp(beta*mu) by an energy, -mu*n for {variable}**n, and ask for "
+            'variable="mu": what is found is then z, which is this factor or a power of it'
+        )
 
 
 def polynomial_of(chain: Chain, variable: str, table: Counts) -> tuple[Fugacity, MixedTerms]:

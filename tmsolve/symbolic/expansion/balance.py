@@ -92,7 +92,7 @@ def _quantum(matrix: ExponentialMatrix) -> tuple[Any, dict[int, Fraction]]:
     if names:
         raise NotApplicable(
             f"at low temperature the ground state depends on the values of {listing(names)}; fix them at exact numbers "
-            f"with chain.fix({'=…, '.join(names)}=…)"
+            f"with chain.fix({'=…, '.join(names)}=…){_one_scale(names, list(rates.values()))}"
         )
     if not rates:
         return sp.Integer(1), {}
@@ -109,6 +109,17 @@ def _quantum(matrix: ExponentialMatrix) -> tuple[Any, dict[int, Fraction]]:
             )
         place[k] = Fraction(int(ratio.p), int(ratio.q))
     return quantum, place
+
+
+def _one_scale(names: Sequence[str], rates: Sequence[Any]) -> str:
+    """Say what is enough where all energies are multiples of one parameter."""
+    (name, *others) = names
+    if others or any(str(rate.as_coeff_Mul(rational=True)[1]) != name for rate in rates):
+        return ""
+    return (
+        f": all energies are multiples of {name}, so that chain.fix({name}=1) stands for every {name} > 0, and "
+        f"chain.fix({name}=-1) for every {name} < 0, with beta*|{name}| for beta"
+    )
 
 
 def _weighs(matrix: ExponentialMatrix, name: str) -> bool:
