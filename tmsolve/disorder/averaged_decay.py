@@ -30,14 +30,14 @@ from .walk import node_steps, random_steps
 __all__ = ["averaged_decay"]
 
 #: Most polynomials, and their highest degree.
-_MOST, _DEGREE = 40, 12
+_MOST, _DEGREE = 40, 18
 #: Groups of replicas that the bar comes from.
 _GROUPS = 16
 #: Combinations of polynomials that vary by less than this share of the largest are rounding.
 _SINGULAR = 1e-10
 #: Eigenvalues that differ by less than this share belong together; what correlations see of them must stand clear of
 #: its standard error by this factor, and be more than this share of the most that is seen.
-_ALIKE, _CLEAR, _ABSENT = 0.01, 5.0, 1e-9
+_ALIKE, _CLEAR, _ABSENT = 0.01, 3.0, 1e-9
 #: A factor of decay that is nothing.
 _NOTHING = 1e-12
 
@@ -75,13 +75,14 @@ class _Sums:
 def averaged_decay(problem: Problem, cells: int, replicas: int, burn_in: int, seed: int) -> Average:
     """Return the correlation length of the average of connected correlations, in cells.
 
-    The error is the bar of a jackknife over groups of replicas and what the last degree of the polynomials changed.
+    The error is the bar of a jackknife over groups of replicas and what the last two degrees of polynomials changed.
     """
     maker = StepMaker(problem)
     if maker.states == 1:
         return Average(0.0, 0.0)
     sums, degrees = _summed(maker, cells, replicas, burn_in, np.random.default_rng([seed, 4]))
-    most, fewer = (int((degrees <= top).sum()) for top in (degrees.max(), degrees.max() - 1))
+    # Where an eigenfunction is even or odd every other degree changes nothing.
+    most, *fewer = (int((degrees <= max(degrees.max() - less, 0)).sum()) for less in (0, 1, 2))
     groups = len(sums.weight)
     value = _seen(sums, most)
     whole = abs(value)
@@ -92,7 +93,8 @@ def averaged_decay(problem: Problem, cells: int, replicas: int, burn_in: int, se
     rates = groups * -np.log(whole) + (groups - 1) * np.log(np.maximum(parts, _NOTHING))
     bar = average(rates)
     rate = -np.log(whole)
-    doubt = abs(np.log(whole / max(_nearest(_projected(sums, None, fewer)[0], value), _NOTHING)))
+    coarse = np.array([_nearest(_projected(sums, None, few)[0], value) for few in fewer])
+    doubt = float(np.abs(np.log(whole / np.maximum(coarse, _NOTHING))).max())
     return Average(float(1 / rate), float((bar.error + doubt) / rate**2), bar.degrees)
 
 
@@ -199,27 +201,39 @@ def _projected(sums: _Sums, left_out: int | None, polynomials: int) -> tuple[np.
 
 
 def _seen(sums: _Sums, polynomials: int) -> complex:
-    """Return the largest eigenvalue that correlations see; 0 where they see none."""
+    """Return the largest eigenvalue that correlations see; 0 where they see none.
+
+    Raises
+    ------
+    NotApplicable
+        What they see of a larger one may be noise.
+    """
     matrix, basis = _projected(sums, None, polynomials)
     values, modes = np.linalg.eig(matrix)
     rest, groups = sums.local.shape[1], len(sums.weight)
-    # The law of the message and the response of a local mean to it, for every group of replicas.
+    # The law of the message in every group of replicas, and the response of a local mean, which is a function of it.
     laws = np.einsum("jm,jg,ab->gamb", basis, sums.products[:polynomials, 0] / sums.weight, np.eye(rest))
-    ends = np.einsum("jm,jbsg->gmbs", basis, sums.local[:polynomials] / sums.weight)
-    laws, ends = laws.reshape(groups, rest, -1) @ modes, np.linalg.solve(modes, ends.reshape(groups, len(modes), -1))
+    ends = np.einsum("jm,jbs->mbs", basis, sums.local[:polynomials].sum(axis=-1) / sums.weight.sum())
+    laws, ends = laws.reshape(groups, rest, -1) @ modes, np.linalg.solve(modes, ends.reshape(len(modes), -1))
     order = np.argsort(-np.abs(values), kind="stable")
-    largest = 0.0
     found = []
     while len(order):
         near = np.abs(values[order] - values[order[0]]) <= _ALIKE * np.abs(values[order[0]])
         some, order = order[near], order[~near]
-        shares = laws[:, :, some] @ ends.mean(axis=0)[some], laws.mean(axis=0)[:, some] @ ends[:, some]
-        size = float(np.linalg.norm(shares[0].mean(axis=0)))
-        noise = max(float(np.linalg.norm(share.std(axis=0, ddof=1))) for share in shares) / np.sqrt(groups)
-        found.append((values[some[0]], size, noise))
-        largest = max(largest, size * abs(values[some[0]]))
-    seen = [value for value, size, noise in found if size > _CLEAR * noise and size * abs(value) > _ABSENT * largest]
-    return complex(seen[0]) if seen else 0j
+        shares = laws[:, :, some] @ ends[some]
+        size = float(np.linalg.norm(shares.mean(axis=0)))
+        noise = float(np.linalg.norm(shares.std(axis=0, ddof=1))) / np.sqrt(groups)
+        found.append((complex(values[some[0]]), size, noise))
+    largest = max(size * abs(value) for value, size, _ in found)
+    for value, size, noise in found:
+        if abs(value) > _NOTHING and size * abs(value) > _ABSENT * largest:
+            if size < _CLEAR * noise:
+                raise NotApplicable(
+                    f"whether correlations that decay by {abs(value):.3g} per cell survive the average over disorder "
+                    "cannot be told from this sample; take more cells and replicas"
+                )
+            return value
+    return 0j
 
 
 def _nearest(matrix: np.ndarray, value: complex) -> float:
