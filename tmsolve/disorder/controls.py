@@ -17,21 +17,49 @@ import numpy as np
 from .message import Growth, Message, advance
 from .steps import Steps
 
-__all__ = ["Expected", "coefficients", "expected", "features"]
+__all__ = ["Expected", "Fit", "Lens", "expected", "features", "fit"]
 
 #: Degrees and number of polynomials of the message.
 _DEGREE = {1: 7, 2: 4, 3: 3}
 _MOST_FEATURES = 16
-#: Combinations of controls that vary by less than this share of the largest are rounding.
-_SINGULAR = 1e-12
+#: Shares of the largest variation below which combinations of controls may be left out: all of them at the first.
+_CUTS = np.array([1.0, *(10.0**-k for k in range(1, 13))])
 
 
-def features(message: Message, power: float = 1.0) -> tuple[np.ndarray, np.ndarray]:
+@dataclass(frozen=True, eq=False)
+class Lens:
+    """How messages are looked at, so that polynomials of them vary over the range in which they lie.
+
+    Probabilities are multiplied by exp(−shift) and raised to a power. Those of a nearly saturated chain would all
+    be 0 or 1, and a rare one between them would change a polynomial a million times as much as usual.
+
+    Attributes
+    ----------
+    shift : ndarray, shape (states, 1)
+    power : float
+    """
+
+    shift: np.ndarray
+    power: float
+
+    @classmethod
+    def of(cls, message: Message) -> Lens:
+        """Return the lens for messages like those of many replicas."""
+        finite = np.isfinite(message.log)
+        held = np.where(finite, message.log, 0.0)
+        shift = held.mean(axis=1, keepdims=True, where=finite | ~finite.any(axis=1, keepdims=True))
+        deviation = np.where(finite, held - shift, 0.0)
+        deviation -= deviation.mean(axis=0)
+        return cls(shift, 1.5 / max(1.5, float(2 * np.sqrt((deviation**2).mean(axis=1).max()))))
+
+
+def features(message: Message, lens: Lens) -> tuple[np.ndarray, np.ndarray]:
     """Return polynomials of the message, shape (features, replicas), and their derivatives by every tilt.
 
-    The message is taken by its probabilities, in the form of contrasts between −1 and 1.
+    The message is taken by its probabilities through a lens, in the form of contrasts between −1 and 1.
     """
-    chance = np.exp(power * (message.log - message.log.max(axis=0)))
+    log, power = message.log - lens.shift, lens.power
+    chance = np.exp(power * (log - log.max(axis=0)))
     chance /= chance.sum(axis=0)
     contrast = 2 * chance[:-1] - 1 if len(chance) > 2 else chance[:1] - chance[1:]
     slopes = chance * (message.first - (chance * message.first).sum(axis=1, keepdims=True))
@@ -73,7 +101,7 @@ class Expected:
     slopes: np.ndarray
 
 
-def expected(message: Message, step: Steps, weights: np.ndarray, power: float = 1.0) -> Expected:
+def expected(message: Message, step: Steps, weights: np.ndarray, lens: Lens) -> Expected:
     """Average over the next draw of the disorder.
 
     Parameters
@@ -89,8 +117,8 @@ def expected(message: Message, step: Steps, weights: np.ndarray, power: float = 
     def mean(array: np.ndarray) -> np.ndarray:
         return (array.reshape(*array.shape[:-1], count, replicas) * weights).sum(axis=-2)
 
-    here, slopes_here = features(message, power)
-    there, slopes_there = features(after, power)
+    here, slopes_here = features(message, lens)
+    there, slopes_there = features(after, lens)
     return Expected(
         Growth(mean(growth.value), mean(growth.first), growth.second[:, :replicas]),
         here - mean(there),
@@ -98,20 +126,52 @@ def expected(message: Message, step: Steps, weights: np.ndarray, power: float = 
     )
 
 
-def coefficients(target: np.ndarray, controls: np.ndarray) -> np.ndarray:
-    """Return the coefficients of controls, shape (controls,), that explain most of a target, shape (samples,).
+@dataclass(frozen=True, eq=False)
+class Fit:
+    """How a target is explained by controls.
+
+    Attributes
+    ----------
+    coefficients : ndarray, shape (controls,)
+    left : float
+        Variance that they leave in samples to which they were not fitted.
+    """
+
+    coefficients: np.ndarray
+    left: float
+
+
+def fit(target: np.ndarray, controls: np.ndarray) -> Fit:
+    """Find coefficients of controls, (controls, samples), that explain most of a target, (samples,).
 
     Used on samples other than those they come from, they leave every average unbiased and samples independent
     (S. S. Lavenberg and P. D. Welch, Manage. Sci. 27, 322 (1981), for what goes wrong otherwise; from memory).
+    How many combinations of the controls are used is what explains most of the samples of even number with
+    coefficients from the odd ones, and the other way round: combinations that hardly vary take coefficients
+    that hold for the samples they were fitted to alone.
 
     Examples
     --------
     >>> noise = np.random.default_rng(0).standard_normal((1, 10))
-    >>> coefficients(3 + 2 * noise[0], noise).round(12)
+    >>> fit(3 + 2 * noise[0], noise).coefficients.round(12)
     array([2.])
     """
     size = np.sqrt((controls**2).mean(axis=1))
     scale = np.where(size > 0, size, 1.0)
     rows = (controls / scale[:, None]).T
-    inverse = np.linalg.pinv(rows - rows.mean(axis=0), rcond=_SINGULAR)
-    return np.asarray(inverse @ (target - target.mean()) / scale)
+    halves = slice(0, None, 2), slice(1, None, 2)
+    left = np.zeros(len(_CUTS))
+    for half, other in (halves, halves[::-1]):
+        left += (target[other] - _by_cut(target[half], rows[half]) @ rows[other].T).var(axis=1)
+    best = int(np.argmin(left))
+    return Fit(_by_cut(target, rows)[best] / scale, float(left[best]))
+
+
+def _by_cut(target: np.ndarray, rows: np.ndarray) -> np.ndarray:
+    """Return least-squares coefficients, one row for every share below which combinations are left out."""
+    if not rows.size:
+        return np.zeros((len(_CUTS), rows.shape[1]))
+    left, variation, right = np.linalg.svd(rows - rows.mean(axis=0), full_matrices=False)
+    along = left.T @ (target - target.mean()) / np.where(variation > 0, variation, 1.0)
+    kept = variation > variation[0] * _CUTS[:, None]
+    return np.asarray((kept * along) @ right)

@@ -102,8 +102,8 @@ def quenched(
             f"messages from different ends still differ after {burnt.cells // 2} cells: averages may depend on the "
             "end; take more cells",
         )
-    power, fit = pilot(maker, np.random.default_rng([seed, 2]), burnt, cells) if controls else (None, None)
-    rates = walk(maker, stream, burnt.message, cells, power)
+    lens, fit = pilot(maker, np.random.default_rng([seed, 2]), burnt, cells) if controls else (None, None)
+    rates = walk(maker, stream, burnt.message, cells, lens)
     return QuenchedChain(cells, replicas, burnt.cells, seed, controls, notes, maker, rates, fit)
 
 

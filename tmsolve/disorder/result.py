@@ -12,7 +12,7 @@ from .averaged_decay import averaged_decay
 from .averaged_pairs import AveragedPairs, refuse_lists
 from .averages import Average, average
 from .chances import probability_derivative
-from .controls import coefficients
+from .controls import fit
 from .exponents import Exponents
 from .percell import PerCell, Sum
 from .steps import BETA, StepMaker
@@ -172,17 +172,27 @@ class QuenchedChain(PerCell):
         return found
 
     def _controlled(self, wanted: Sum) -> np.ndarray:
-        """Return a sum of every replica, less what control variates explain with coefficients from other chains."""
-        samples, controls = self._samples(self._rates, wanted)
-        if self._pilot is None:
-            return samples
-        return np.asarray(samples - coefficients(*self._samples(self._pilot, wanted)) @ controls)
+        """Return a sum of every replica, less what control variates explain with coefficients from other chains.
 
-    def _samples(self, rates: Rates, wanted: Sum) -> tuple[np.ndarray, np.ndarray]:
-        """Return a wanted sum, shape (samples,), and what has mean 0 beside it, (controls, samples)."""
+        In a nearly saturated chain the sum itself may vary less than its average over the next draw.
+        """
+        if self._pilot is None:
+            return self._samples(self._rates, wanted, False)[0]
+        fits = {ahead: fit(*self._samples(self._pilot, wanted, ahead)) for ahead in (True, False)}
+        ahead = min(fits, key=lambda ahead: fits[ahead].left)
+        samples, controls = self._samples(self._rates, wanted, ahead)
+        return np.asarray(samples - fits[ahead].coefficients @ controls)
+
+    def _samples(self, rates: Rates, wanted: Sum, ahead: bool) -> tuple[np.ndarray, np.ndarray]:
+        """Return a wanted sum, shape (samples,), and what has mean 0 beside it, (controls, samples).
+
+        ``ahead`` averages growth and first derivatives over the next draw.
+        """
         growth, first, second = wanted
-        target = growth * (rates.value if rates.mean_value is None else rates.mean_value)
-        firsts = rates.first if rates.mean_first is None else rates.mean_first
+        averaged = ahead and rates.mean_value is not None and rates.mean_first is not None
+        value, firsts = (rates.mean_value, rates.mean_first) if averaged else (rates.value, rates.first)
+        assert value is not None and firsts is not None
+        target = growth * value
         tilts = [self._tilt(tilt) for tilt in first]
         for i, c in zip(tilts, first.values(), strict=True):
             target = target + c * firsts[i]

@@ -8,7 +8,7 @@ from functools import partial
 
 import numpy as np
 
-from .controls import Expected, expected
+from .controls import Expected, Lens, expected
 from .message import Growth, Message, advance, start
 from .problem import Problem
 from .steps import StepMaker, Steps
@@ -116,32 +116,32 @@ def _spread(logs: np.ndarray) -> float:
     return float(np.ptp(held, axis=1).max())
 
 
-def walk(maker: StepMaker, rng: np.random.Generator, begin: Message, cells: int, power: float | None) -> Rates:
-    """Walk over ``cells`` cells from a message and average growth and, where a power is given, controls over them."""
-    return _walk(maker, rng, begin, cells, power)[1]
+def walk(maker: StepMaker, rng: np.random.Generator, begin: Message, cells: int, lens: Lens | None) -> Rates:
+    """Walk over ``cells`` cells from a message and average growth and, where a lens is given, controls over them."""
+    return _walk(maker, rng, begin, cells, lens)[1]
 
 
-def pilot(maker: StepMaker, rng: np.random.Generator, burnt: Burnt, cells: int) -> tuple[float, Rates]:
-    """Walk along chains of their own to fit control variates to, and return their power and short averages."""
+def pilot(maker: StepMaker, rng: np.random.Generator, burnt: Burnt, cells: int) -> tuple[Lens, Rates]:
+    """Walk along chains of their own to fit control variates to, and return their lens and short averages."""
     message = start(maker.states, len(maker.tilts), len(maker.pairs), _PILOTS)
     for step in random_steps(maker, rng, burnt.cells, _PILOTS):
         message, _ = advance(message, step, maker.pairs)
-    power = _power(message)
+    lens = Lens.of(message)
     parts = []
     for _ in range(min(max(cells // _BATCH, _FEWEST), _MOST)):
-        message, rates = _walk(maker, rng, message, _BATCH, power)
+        message, rates = _walk(maker, rng, message, _BATCH, lens)
         parts.append(rates)
-    return power, Rates(*(np.concatenate([getattr(part, f.name) for part in parts], axis=-1) for f in fields(Rates)))
+    return lens, Rates(*(np.concatenate([getattr(part, f.name) for part in parts], axis=-1) for f in fields(Rates)))
 
 
 def _walk(
-    maker: StepMaker, rng: np.random.Generator, message: Message, cells: int, power: float | None
+    maker: StepMaker, rng: np.random.Generator, message: Message, cells: int, lens: Lens | None
 ) -> tuple[Message, Rates]:
     replicas = message.log.shape[1]
-    nodes = None if power is None else node_steps(maker, rng, cells, replicas)
+    nodes = None if lens is None else node_steps(maker, rng, cells, replicas)
     total: list[np.ndarray] = []
     for step in random_steps(maker, rng, cells, replicas):
-        ahead = [] if nodes is None or power is None else _parts(expected(message, *next(nodes), power))
+        ahead = [] if nodes is None or lens is None else _parts(expected(message, *next(nodes), lens))
         message, growth = advance(message, step, maker.pairs)
         new = [growth.value, growth.first, growth.second, *ahead]
         total = [a + b for a, b in zip(total, new, strict=True)] if total else new
