@@ -191,3 +191,64 @@ def test_eigenvalues_are_counted_exactly(chain, values, expected):
     window = build_window(chain, ())
     point = chain.at(T=1, **values)
     assert multiplicity(window, np.arange(window.shape[0]), point.values) == expected
+
+
+#: Trivial second neighbours: the matrix between pairs of sites has a nilpotent block beside two eigenvalues.
+DRESSED = Chain(
+    StateSet([-2, 1]),
+    [bond(lambda s, t, E: E * (s != t)), bond(lambda s, t, F: F, shift=2)],
+    observables={"b": bond(lambda s, t: s * t), "c": bond(lambda s, t: s * t, shift=2)},
+)
+
+
+def pair_function(E, T, r):
+    """Return ⟨s₀s₂ s_r s_{r+2}⟩ − ⟨s₀s₂⟩² with energy E between unlike neighbours, r ≥ 2, by 2 × 2 matrices."""
+    w = mpmath.exp(-mpmath.mpf(E) / T)
+    chance = mpmath.matrix([[1, w], [w, 1]]) / (1 + w)
+    spin = mpmath.diag([-2, 1])
+    half = mpmath.matrix([[mpmath.mpf(1) / 2, mpmath.mpf(1) / 2]])
+    ones = mpmath.matrix([1, 1])
+    pair = spin * chance**2 * spin
+    return (half * pair * chance ** (r - 2) * pair * ones)[0] - (half * pair * ones)[0] ** 2
+
+
+@pytest.mark.parametrize("E", ["-2", "1", "3"])
+def test_a_nilpotent_block_does_not_spoil_the_vectors_of_other_modes(E):
+    r = solve(DRESSED.at(T=2, E=E, F=1))
+    with mpmath.workdps(100):
+        t = mpmath.tanh(mpmath.mpf(E) / 4)
+        wanted = float(pair_function(E, 2, 40) / abs(t) ** 40)
+    assert float(r.correlation_length("c")) == pytest.approx(float(-1 / mpmath.log(abs(t))), rel=1e-12)
+    assert float(r.correlation_amplitude("c")) == pytest.approx(abs(wanted), rel=1e-11)
+
+
+def test_hidden_slower_modes_do_not_grow_in_far_correlations():
+    """Blume–Capel, D = 0.9, T = 0.1: ξ of s² is 0.4, that of s 1e4; far out only the even mode may be left."""
+    chain = models.load("blume_capel").chain
+    found = solve(chain.at(T="0.1", J=1, D="0.9", h=0)).correlation("q", "q", [3, 30, 60, 100])
+    with mpmath.workdps(200):
+        b, D = mpmath.mpf(10), mpmath.mpf("0.9")
+        weight = lambda s, t: mpmath.exp(b * (s * t - D * (s * s + t * t) / 2))  # noqa: E731
+        matrix = mpmath.matrix([[weight(s, t) for t in (-1, 0, 1)] for s in (-1, 0, 1)])
+        modes = [(x, a) for x, a in exact_modes(matrix, (1, 0, 1)) if abs(a) > 1e-100]
+        wanted = [float(mpmath.re(sum(a * x**r for x, a in modes))) for r in (3, 30, 60, 100)]
+    assert found == pytest.approx(wanted, rel=1e-11, abs=0)
+
+
+def test_short_lengths_in_large_batches():
+    """Mixed spins in a strong field: λ₂/λ₁ is below doubles at ten of 2000 points; 2 × 2 matrices by mpmath."""
+    T = np.concatenate([np.linspace(0.5, 3, 1990), np.linspace(0.01, 0.011, 10)])
+    chain = models.load("mixed_spin").chain
+    found = solve(chain.at(T=T, J="0.00065", D="-0.68", h="-1.34")).correlation_length()
+    for i in (0, 700, 1990, 1995, 1999):
+        with mpmath.workdps(700):
+            b, J = 1 / mpmath.mpf(repr(float(T[i]))), mpmath.mpf("0.00065")
+            D, h, half = mpmath.mpf("-0.68"), mpmath.mpf("-1.34"), mpmath.mpf(1) / 2
+
+            def entry(s, t, b=b, J=J, D=D, h=h):
+                return sum(mpmath.exp(b * (J * m * (s + t) - D * m * m + h * (m + (s + t) / 2))) for m in (-1, 0, 1))
+
+            matrix = mpmath.matrix([[entry(s, t) for t in (-half, half)] for s in (-half, half)])
+            first, second = sorted(mpmath.eigsy(matrix, eigvals_only=True), key=lambda x: -abs(x))
+            wanted = float(-1 / mpmath.log(abs(second / first)))
+        assert found[i] == pytest.approx(wanted, rel=1e-9)

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Callable
+from collections.abc import Callable, Sequence
 from functools import cached_property
 from typing import Protocol
 
@@ -10,6 +10,7 @@ import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers, to_double
 from ..operators.partitions import Key, exp_remainder, sub_keys
+from .deviations import Deviations, lumped
 from .perron import PerronPair
 
 __all__ = ["DoobLaw", "EdgeTables", "Law"]
@@ -195,7 +196,8 @@ class DoobLaw:
     def centred_source(self, left: np.ndarray) -> np.ndarray:
         """Return Σ_i π_i P_ij (X_ij − ⟨X⟩): the deviation that a quantity leaves behind, shape (n, batch)."""
         x = self.rebased(left)
-        return self._centred((self._flow * x).sum(axis=0) - self.stationary * self.average(x))
+        deviation = (self._flow * x).sum(axis=0) - self.stationary * self.average(x)
+        return Deviations(self.pair.chance, self.stationary).centred(deviation)
 
     def conditional(self, right: np.ndarray) -> np.ndarray:
         """Return Σ_j P_ij Y_ij − ⟨Y⟩: what a quantity is expected to be, given the state before it."""
@@ -207,51 +209,38 @@ class DoobLaw:
         """Return the connected correlation of two step tables, ``steps`` ≥ 1 apart, shape (batch,)."""
         return self.connected_series(left, right, [steps])[0]
 
-    def connected_series(self, left: np.ndarray, right: np.ndarray, steps: list[int]) -> list[np.ndarray]:
+    def connected_series(
+        self,
+        left: np.ndarray,
+        right: np.ndarray,
+        steps: list[int],
+        groups: Sequence[tuple[np.ndarray, np.ndarray | None]] = (),
+    ) -> list[np.ndarray]:
         """Return connected correlations at several distances ≥ 1 with one pass along the chain.
 
-        A deviation sums to zero over the states. That is kept up exactly by giving the
-        likeliest state minus what the others have, which rounds off least: rounding along
-        the stationary direction would not decay. Long stretches between wanted distances
-        are crossed by repeated squaring.
+        Parameters
+        ----------
+        left, right : ndarray
+            Step tables.
+        steps : list of int
+            Distances.
+        groups : sequence of (points, classes of states or None)
+            Equitable partitions that resolve the second table. Modes that it does not show are
+            then left out, instead of being excited by rounding: slower ones would grow.
         """
-        target = self.conditional(right)
-        row = self.centred_source(left)
-        found: dict[int, np.ndarray] = {}
-        here = 1
-        for step in sorted(set(steps)):
-            row = self._advance(row, step - here)
-            here = step
-            found[step] = (row * target).sum(axis=0)
+        row, target = self.centred_source(left), self.conditional(right)
+        found = {step: row[0] * 0 for step in steps}
+        for points, classes in groups or [(np.arange(row.shape[-1]), None)]:
+            chance, law = self.pair.chance[..., points], self.stationary[:, points]
+            here, there = row[:, points], target[:, points]
+            if classes is not None and classes.max() + 1 < len(row):
+                chance, (law, here), (there,) = lumped(chance, [law, here], [there], classes)
+            along, position = Deviations(chance, law), 1
+            for step in sorted(found):
+                here = along.advanced(here, step - position)
+                position = step
+                found[step][points] = (here * there).sum(axis=0)
         return [found[step] for step in steps]
-
-    def _advance(self, row: np.ndarray, count: int) -> np.ndarray:
-        """Propagate a deviation by ``count`` steps."""
-        square = self.pair.chance
-        if count <= 4 * len(square):
-            for _ in range(count):
-                row = self._centred((row[:, None] * square).sum(axis=0))
-            return row
-        square = self._centred_rows(square - self.stationary[None])
-        while count:
-            if count & 1:
-                row = self._centred((row[:, None] * square).sum(axis=0))
-            count >>= 1
-            if count:
-                square = self._centred_rows((square[:, :, None] * square[None]).sum(axis=1))
-        return row
-
-    def _centred(self, row: np.ndarray) -> np.ndarray:
-        points = np.arange(row.shape[-1])
-        row[self._usual, points] = 0
-        row[self._usual, points] = -row.sum(axis=0)
-        return row
-
-    def _centred_rows(self, square: np.ndarray) -> np.ndarray:
-        points = np.arange(square.shape[-1])
-        square[:, self._usual, points] = 0
-        square[:, self._usual, points] = -square.sum(axis=1)
-        return square
 
     def double_chance(self) -> np.ndarray:
         """Return the transition probabilities as doubles, batch first: shape (batch, n, n)."""

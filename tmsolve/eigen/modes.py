@@ -7,7 +7,8 @@ from dataclasses import dataclass
 import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers
-from .merging import ROUNDING, inverted, merge
+from .duals import dual_vectors
+from .merging import ROUNDING, merge
 from .near_circle import NEAR, near_modes
 from .small import long_modes
 from .spectrum import deflated, polar, together
@@ -119,7 +120,7 @@ def _eigen(matrix: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
     order = np.argsort(-np.abs(raw), axis=-1, kind="stable")
     values = np.take_along_axis(raw, order, axis=-1)
     vectors = np.take_along_axis(vectors, order[:, None, :], axis=-1)
-    return values, vectors, inverted(vectors)
+    return values, vectors, dual_vectors(matrix, values, vectors)
 
 
 @dataclass(frozen=True)

@@ -16,8 +16,9 @@ import numpy as np
 
 from ..operators.numbers import DOUBLE, Numbers, to_double
 from .components import communicating_classes
+from .duals import dual_vectors
 from .graded import graded_modes
-from .merging import inverted, merge
+from .merging import merge
 from .reduction import heavy_first, reduce_states
 
 __all__ = ["NEAR", "NearModes", "near_modes", "tidy"]
@@ -177,8 +178,8 @@ def _from_deviation(
         doubles = np.moveaxis(to_double(chance), -1, 0)
         marked = np.where(good[:, None, None], scaled @ (doubles + _MARK * np.eye(len(chance))), 0.0)
         values, vectors = (part.astype(np.complex128) for part in np.linalg.eig(marked))
+        inverse = dual_vectors(marked, values, vectors)
         merge(marked, values)
-        inverse = inverted(vectors)
         order = np.argsort(-np.abs(values), axis=-1, kind="stable")[:, :count]
         values = np.take_along_axis(values, order, axis=-1)
         right = np.take_along_axis(vectors, order[:, None, :], axis=-1)

@@ -9,10 +9,17 @@ import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow, place_in
+from ..declare import Point
 from ..eigen.spectrum import Ratios
+from .partition import state_classes
 from .segment import Segment
 
 __all__ = ["anchors", "connected_correlation", "sorted_spectrum"]
+
+#: Points that share an equitable partition of the states.
+Groups = Sequence[tuple[np.ndarray, "np.ndarray | None"]]
+#: Up to this distance slower modes that do not show have not grown.
+_NEAR = 3
 
 
 def anchors(window: ChainWindow, observable: str) -> list[int]:
@@ -22,29 +29,34 @@ def anchors(window: ChainWindow, observable: str) -> list[int]:
 
 
 def connected_correlation(
-    window: ChainWindow, segment: Segment, a: str, b: str, distances: Sequence[int]
+    window: ChainWindow, segment: Segment, point: Point, a: str, b: str, distances: Sequence[int]
 ) -> np.ndarray:
     """Return ⟨a₀ b_r⟩ − ⟨a⟩⟨b⟩ at distances r in cells, shape (points, distances)."""
+    groups: dict[str, Groups] = {}
+    if max(map(abs, distances)) > _NEAR:
+        groups = {name: state_classes(window, segment.states, point.flat(), segment.indices, name) for name in (a, b)}
     total = np.zeros((segment.indices.size, len(distances)))
     for first in anchors(window, a):
         for second in anchors(window, b):
             left, right = f"{a}@{first}", f"{b}@{second}"
             # A part anchored at cell 0 lies in window −first, one at cell r in window r − second.
             steps = [int(r) - second + first for r in distances]
-            total += _between_windows(segment, left, right, steps)
+            total += _between_windows(segment, left, right, steps, (groups.get(b, ()), groups.get(a, ())))
     return total
 
 
-def _between_windows(segment: Segment, left: str, right: str, steps: Sequence[int]) -> np.ndarray:
+def _between_windows(
+    segment: Segment, left: str, right: str, steps: Sequence[int], groups: tuple[Groups, Groups]
+) -> np.ndarray:
     names = handle("observable", (), left), handle("observable", (), right)
     tables = [segment.edge_table((name,)) for name in names]
     result = np.zeros((segment.indices.size, len(steps)))
     if tables[0] is None or tables[1] is None:
         return result
-    for sign, (x, y) in ((1, tables), (-1, tables[::-1])):
+    for sign, (x, y), resolving in ((1, tables, groups[0]), (-1, tables[::-1], groups[1])):
         far = sorted({sign * step for step in steps if sign * step > 0})
         if far:
-            values = dict(zip(far, segment.law.connected_series(x, y, far), strict=True))
+            values = dict(zip(far, segment.law.connected_series(x, y, far, resolving), strict=True))
             for column, step in enumerate(steps):
                 if sign * step > 0:
                     result[:, column] = segment.double(values[sign * step])

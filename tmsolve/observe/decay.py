@@ -9,6 +9,7 @@ import numpy as np
 
 from ..assemble.matrix import handle
 from ..assemble.window import ChainWindow
+from ..eigen.deviations import lumped
 from ..eigen.modes import Modes, Shown, modes, shown
 from ..eigen.near_circle import NEAR
 from ..eigen.spectrum import clusters
@@ -66,23 +67,12 @@ def decay(
             chance, law = known.chance[..., here], segment.law.stationary[:, here]
             shown_by = [pair.at(here) for pair in pairs]
             if classes is not None and size < len(segment.states):
-                chance, law, shown_by = _lumped(chance, law, shown_by, classes)
+                sources, targets = [pair.source for pair in shown_by], [pair.target for pair in shown_by]
+                chance, (law, *sources), targets = lumped(chance, [law, *sources], targets, classes)
+                parts = zip(shown_by, sources, targets, strict=True)
+                shown_by = [replace(pair, source=source, target=target) for pair, source, target in parts]
             result.put(here, _slowest_shown(modes(chance, law, numbers), shown_by))
     return result
-
-
-def _lumped(
-    chance: np.ndarray, law: np.ndarray, pairs: Sequence[_Pair], classes: np.ndarray
-) -> tuple[np.ndarray, np.ndarray, list[_Pair]]:
-    """Return the chain of classes: all states of a class step to another class with equal probability."""
-    members = [np.flatnonzero(classes == number) for number in range(int(classes.max()) + 1)]
-    first = [states[0] for states in members]
-
-    def gathered(table: np.ndarray) -> np.ndarray:
-        return np.stack([table[states].sum(axis=0) for states in members])
-
-    rows = np.moveaxis(gathered(np.moveaxis(chance[first], 1, 0)), 0, 1)
-    return rows, gathered(law), [_Pair(gathered(p.source), p.target[first], p.size, p.shift) for p in pairs]
 
 
 def _slowest_shown(found: Modes, pairs: Sequence[_Pair]) -> Found:

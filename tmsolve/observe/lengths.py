@@ -42,9 +42,8 @@ def decays(laws: Laws, point: Point, a: str | None) -> Decay:
     undecided = np.flatnonzero(found.undecided)
     if undecided.size:
         others = f", nor at {undecided.size - 1} more points" if undecided.size > 1 else ""
-        what = "of the whole chain" if a is None else f"in the correlation of {a}"
         raise SolveError(
-            f"which mode decays slowest {what} is not decided at "
+            f"which mode decays slowest in the correlation of {a} is not decided at "
             f"{point.pick(int(undecided[0]))}{others}: in doubles its amplitude is lost in rounding, and longer "
             f"numbers are out of reach (at most {LARGEST} joint states of the cut, and about half a minute for all "
             "points together). Raise T, ask for fewer points at a time, or for correlation_length() of the whole chain",
@@ -79,9 +78,11 @@ def _slowest(laws: Laws, point: Point, _: str | None) -> tuple[Decay, np.ndarray
         part = replace(part, log_gap=_limit(segment, part.log_gap))
         if not (segment.limit or grids or segment.other_classes or len(segment.states) > LARGEST):
             lost = _lost(laws, point, segment, np.isposinf(part.log_gap))
-            if lost.size <= MOST_POINTS:  # else ξ < 0.03 stays 0
-                settler.refine(segment, part, lost, keep=False)
-            settler.refine(segment, part, np.flatnonzero(part.rough()), keep=True)
+            if 0 < lost.size <= MOST_POINTS:  # else ξ < 0.03 stays 0
+                left = settler.refine(segment, part, lost)
+                if left.size:
+                    part.put(left, _recovered(laws, point, segment, left))
+            settler.refine(segment, part, np.flatnonzero(part.rough()))
             if laws.size <= MOST_POINTS:
                 doubtful += segment.indices[part.poor() & ~np.isposinf(part.log_gap) & ~part.undecided].tolist()
         found.put(segment.indices, part)
@@ -98,6 +99,20 @@ def _lost(laws: Laws, point: Point, segment: Segment, nothing: np.ndarray) -> np
     most, values = len(segment.states) - 1, point.flat()
     lost = [i for i in asked if vanishing(laws.window, segment.states, values, int(segment.indices[i])) != most]
     return places if lost and asked.size < places.size else np.array(lost, dtype=np.intp)
+
+
+def _recovered(laws: Laws, point: Point, segment: Segment, lost: np.ndarray) -> Decay:
+    """Return slowest modes from the chain of states in longer numbers; none where these are out of reach as well."""
+    result = Decay.none(lost.size)
+    if laws.size > MOST_POINTS:
+        return result
+    whole = whole_spectrum(laws, point, segment, 1)
+    modulus, phase, gap = (column[lost, 0] for column in whole)
+    there = np.flatnonzero(~np.isposinf(gap))
+    better = Decay.none(there.size)
+    better = replace(better, log_modulus=modulus[there], log_gap=gap[there], wave_number=np.abs(phase[there]))
+    result.put(there, replace(better, amplitude=np.ones(there.size)))
+    return result
 
 
 @np.errstate(under="ignore")

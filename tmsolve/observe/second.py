@@ -33,8 +33,8 @@ def slowest(segment: Segment) -> Decay:
     found = Decay.none(len(log_noise))
     return replace(
         found,
-        log_modulus=log_modulus[:, 0],
-        log_gap=log_gap[:, 0],
+        log_modulus=log_modulus[:, 0].copy(),
+        log_gap=log_gap[:, 0].copy(),
         wave_number=np.abs(phase[:, 0]),
         amplitude=np.ones(len(log_noise)),
         log_noise=log_noise,

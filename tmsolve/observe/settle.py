@@ -74,12 +74,12 @@ class Settler:
             found.chosen.put(np.array([i]), leading if known else Decay.unknown(1))
         return [int(i) for i in poor if int(i) not in by_numbers and not segment.limit]
 
-    def refine(self, segment: Segment, found: Decay, positions: np.ndarray, keep: bool) -> None:
-        """Replace, in place, what long numbers know better; where they are out of reach, keep it or call it unknown."""
+    def refine(self, segment: Segment, found: Decay, positions: np.ndarray) -> np.ndarray:
+        """Replace, in place, what long numbers know better; return the positions where they are out of reach."""
         better = self._by_long_numbers(segment, [*positions], None)
-        for i in map(int, positions):
-            if i in better or not keep:
-                found.put(np.array([i]), better.get(i, Decay.unknown(1)))
+        for i, mode in better.items():
+            found.put(np.array([i]), mode)
+        return np.array([i for i in positions if int(i) not in better], dtype=np.intp)
 
     def measure(
         self, segment: Segment, found: Decay, positions: np.ndarray, classes: np.ndarray | None, tolerable: float

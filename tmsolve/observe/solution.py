@@ -157,7 +157,7 @@ class Solution:
         chain.observable(a), chain.observable(b)
         window, _ = self.laws.resolved((a, b))
         values = self.laws.collect(
-            lambda segment: connected_correlation(window, segment, a, b, wanted), (a, b), (len(wanted),)
+            lambda segment: connected_correlation(window, segment, self.point, a, b, wanted), (a, b), (len(wanted),)
         )
         if not connected:
             means = self.mean(a) * self.mean(b)
@@ -186,9 +186,9 @@ class Solution:
     def correlation_length(self, a: str | None = None) -> np.ndarray:
         """Decay length ξ in cells: of the second eigenvalue, or of the slowest mode that ``a`` shows.
 
-        0 where nothing decays slower than at once; inf where two eigenvalues coincide in modulus,
-        or ξ exceeds the doubles, see `log_correlation_length`. A mode of ``a`` counts however small;
-        what cannot be decided is a SolveError. Without ``a``, ξ < 0.03 may be 0 beyond 400 points or at extreme T.
+        0 where nothing decays slower than at once; inf where two eigenvalues coincide in modulus, or ξ exceeds
+        the doubles, see `log_correlation_length`. A mode of ``a`` counts however small; what cannot be decided
+        is a SolveError. Without ``a``, ξ < 0.03 may be 0: at energies beyond 1e4 T, 40 states, 400 such points.
         """
         return self._shaped(lengths(self._decay(a)), "correlation length")
 
