@@ -5,7 +5,7 @@ from __future__ import annotations
 import pytest
 import sympy as sp
 
-from tmsolve import Chain, bond, clock, closed_form, delta, ising
+from tmsolve import Chain, bond, clock, closed_form, delta, ising, site
 from tmsolve.symbolic.alphabet import Alphabet
 from tmsolve.symbolic.boltzmann import polynomial_terms
 from tmsolve.symbolic.plain import latex_text, plain_text
@@ -87,3 +87,16 @@ def test_sums_of_one_sign_keep_it_outside():
 def test_entropy_is_the_logarithm_and_the_energy():
     form = closed_form(Chain(ising(), [bond(lambda s, t, J: -J * s * t)]))
     assert str(form.entropy) == "-J*beta*tanh(J*beta) + log(2*cosh(J*beta))"
+
+
+def test_independent_parts_of_a_cell_give_products():
+    chain = Chain(
+        {"c": ising(), "s": ising()},
+        [
+            bond(lambda a, b, J: -J * a * b, ("c", "c")),
+            bond(lambda a, b, K: -K * a * b, ("s", "s")),
+            site(lambda s, L: -L * s, "s"),
+        ],
+    )
+    root = "sqrt(exp(2*K*beta)*sinh(L*beta)**2 + exp(-2*K*beta)) + exp(K*beta)*cosh(L*beta)"
+    assert str(closed_form(chain).eigenvalues[0][0]) == f"2*({root})*cosh(J*beta)"

@@ -38,17 +38,21 @@ class Quadratic:
         A number.
     middle, outside, inside : Draft
         Drafts of sums of exponentials.
+    share : Draft or None
+        middle/outside where that is a sum, for outside · (share ± sqrt(inside)).
     """
 
     front: Fraction
     middle: Draft
     outside: Draft
     inside: Draft
+    share: Draft | None = None
 
     @property
     def cost(self) -> tuple[int, int, int]:
         """How hard it is to read; a square root of a number is preferred to one of a function."""
-        operations, letters = total([self.middle, self.radical]).cost
+        plain = total([self.middle, self.radical])
+        operations, letters = (plain if self.share is None else self._joined()).cost
         return int(self.inside.value is None), operations + (self.front != 1), letters
 
     @property
@@ -56,11 +60,18 @@ class Quadratic:
         """The square root with what stands in front of it."""
         return product([self.outside, root(self.inside)])
 
+    def _joined(self) -> Draft:
+        assert self.share is not None
+        return product([self.outside, total([self.share, root(self.inside)])])
+
     def root(self, sign: int) -> Any:
         """Return the root with + (1) or − (−1) in front of the square root."""
         import sympy as sp
 
-        value = self.middle.build() + sign * self.radical.build()
+        if self.share is None:
+            value = self.middle.build() + sign * self.radical.build()
+        else:
+            value = self.outside.build() * (self.share.build() + sign * root(self.inside).build())
         # sympy would multiply a number into a sum, which reads worse.
         front = sp.Rational(self.front.numerator, self.front.denominator)
         return value if front == 1 else sp.Mul(front, value, evaluate=False)
@@ -123,12 +134,14 @@ def _quadratic(factor: Coefficients, matrix: SymbolicMatrix, writer: Writer, blo
     found = []
     for outside, rest in _square_factors(inside, writer):
         for front in _FRONT:
-            forms = [writer.draft(times(rest, 1 / front**2))]
-            if block is not None and len(outside) == 1:
-                forms.append(_square_and_product(block, matrix, writer, front, outside))
-            found.append(
-                Quadratic(front, writer.draft(times(middle, 1 / front)), writer.draft(outside), shortest(forms))
-            )
+            forms: list[Draft | None] = [writer.draft(times(rest, 1 / front**2))]
+            if block is not None:
+                forms.append(_square_and_product(_halves(block, matrix), writer, front, outside))
+            parts = writer.draft(times(middle, 1 / front)), writer.draft(outside), shortest(forms)
+            found.append(Quadratic(front, *parts))
+            share = _share(times(middle, 1 / front), outside, writer) if len(outside) > 1 else None
+            if share:
+                found.append(Quadratic(front, *parts, writer.draft(share)))
     return min(found, key=lambda form: form.cost)
 
 
@@ -151,6 +164,22 @@ def _square_factors(inside: Laurent, writer: Writer) -> Iterator[tuple[Laurent, 
         yield outside, rest
 
 
+def _share(middle: Laurent, outside: Laurent, writer: Writer) -> Laurent | None:
+    """Return the quotient of two sums where it is a sum."""
+    if not middle:
+        return {}
+    (c, low, above), (d, base, below) = writer.factor(middle), writer.factor(outside)
+    powers = {frozenset(factor.items()): exponent for factor, exponent in below}
+    result: Laurent = {tuple(x - y for x, y in zip(low, base, strict=True)): c / d}
+    for factor, exponent in above:
+        left = exponent - powers.pop(frozenset(factor.items()), 0)
+        if left < 0:
+            return None
+        for _ in range(left):
+            result = product_of_sums(result, factor)
+    return result if not powers else None
+
+
 def _divide(terms: Laurent, factor: Laurent, writer: Writer) -> Laurent:
     """Divide by the square of a factor that is known to divide."""
     c, lowest, factors = writer.factor(terms)
@@ -161,15 +190,25 @@ def _divide(terms: Laurent, factor: Laurent, writer: Writer) -> Laurent:
     return result
 
 
-def _square_and_product(
-    block: np.ndarray, matrix: SymbolicMatrix, writer: Writer, front: Fraction, outside: Laurent
-) -> Draft:
-    """Write ((a − d)/2)² + bc for a matrix ((a, b), (c, d)), as it comes from working by hand."""
-    ((shift, c),) = outside.items()
+def _halves(block: np.ndarray, matrix: SymbolicMatrix) -> tuple[Laurent, Laurent]:
+    """Return (a − d)/2 and bc of a matrix ((a, b), (c, d))."""
     half = matrix.alphabet.ring.domain(1, 2)
-    difference = shifted(matrix.laurent((block[0, 0] - block[1, 1]) * half), shift, -1)
-    bc = shifted(matrix.laurent(block[0, 1] * block[1, 0], 2), tuple(2 * s for s in shift), -1)
-    by = 1 / (front * c)
+    return matrix.laurent((block[0, 0] - block[1, 1]) * half), matrix.laurent(block[0, 1] * block[1, 0], 2)
+
+
+def _square_and_product(
+    halves: tuple[Laurent, Laurent], writer: Writer, front: Fraction, outside: Laurent
+) -> Draft | None:
+    """Write ((a − d)/2)² + bc for a matrix ((a, b), (c, d)), as it comes from working by hand."""
+    difference, bc, by = *halves, 1 / front
+    if len(outside) == 1:
+        ((shift, c),) = outside.items()
+        difference, bc, by = shifted(difference, shift, -1), shifted(bc, tuple(2 * s for s in shift), -1), by / c
+    else:
+        left = _share(difference, outside, writer), _share(bc, product_of_sums(outside, outside), writer)
+        if left[0] is None or left[1] is None:
+            return None
+        difference, bc = left[0], left[1]
     # The sign of the difference is free.
     square = shortest([writer.draft(times(difference, by)), writer.draft(times(difference, -by))])
     return total([power(square, 2), writer.draft(times(bc, by**2))])
