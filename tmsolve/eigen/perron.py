@@ -189,21 +189,23 @@ def _rows(
 
 
 def _patient_noda(vector: np.ndarray, rates: np.ndarray, defect: np.ndarray, numbers: Numbers) -> np.ndarray:
-    """Iterate as long as the rows come closer together.
+    """Iterate as long as the rows come closer together, or entries still fall.
 
     Where two eigenvalues nearly coincide each step gains but one bit until they are told
-    apart; long numbers have the bits.
+    apart; long numbers have the bits. Where states with a smaller root of their own hardly
+    feel the others, their rows say that root until their entries are small enough.
     """
     best: np.ndarray | None = None
-    waiting = 0
+    waiting, falling = 0, False
     for _ in range(2 * numbers.bits):
         rows, top, spread = _rows(vector, rates, defect, numbers)
-        improved = best is None or bool((spread < 0.9 * best).any())
+        improved = best is None or falling or bool((spread < 0.9 * best).any())
         waiting = 0 if improved else waiting + 1
         if waiting > 3 or not (spread > 0).any():
             break
         best = spread if best is None else np.where(spread < best, spread, best)
-        vector = _noda_step(vector, rows, top, rates, defect, numbers)
+        before, vector = vector, _noda_step(vector, rows, top, rates, defect, numbers)
+        falling = bool((vector * 2 < before).any())
     return vector
 
 
