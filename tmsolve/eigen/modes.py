@@ -20,6 +20,8 @@ _SMALL = -11.0
 _LARGEST = 40
 #: Vectors of this condition number lose no more digits than an amplitude may lose anyway.
 USUAL_CONDITION = 1e2
+#: Vectors of this condition number are those of a block, and what is this far from it, relative to itself, apart.
+_PARALLEL, _FAR = 1e4, 0.1
 
 
 @dataclass(frozen=True)
@@ -168,15 +170,18 @@ def shown(found: Modes, source: np.ndarray, target: np.ndarray) -> Shown:
     condition = wide * long
     worst = np.einsum("bkj,bj->bk", alike, condition)
     # First order of perturbation theory: R_k takes on R_j times (L_j E R_k)/(λ_k − λ_j).
-    mixing = _mixing(found, alike)
+    mixing = _mixing(found, alike, condition)
     first, second = np.abs(before) * long, np.abs(after) * wide
     mixed = second * np.einsum("bkj,bj->bk", mixing, first) + first * np.einsum("bkj,bj->bk", mixing, second)
     doubt = np.einsum("bkj,bj->bk", alike, mixed) + ROUNDING * worst * scale
     return Shown(amplitude, scale * np.maximum(1.0, worst / USUAL_CONDITION), doubt, alike.sum(axis=2), worst)
 
 
-def _mixing(found: Modes, alike: np.ndarray) -> np.ndarray:
-    """Return rounding over the distance of eigenvalues, 0 for those that coincide: shape (batch, m, m)."""
+def _mixing(found: Modes, alike: np.ndarray, condition: np.ndarray) -> np.ndarray:
+    """Return rounding over the distance of eigenvalues, 0 for those that coincide: shape (batch, m, m).
+
+    The huge contributions of parallel vectors of a block cancel; far from the block they are left out.
+    """
     turn = np.exp(1j * found.phase)
     value = np.exp(found.log_modulus) * turn
     # Next to the circle vectors are those of (1 − P^h)^#, whose eigenvalues are the inverse gaps.
@@ -185,5 +190,7 @@ def _mixing(found: Modes, alike: np.ndarray) -> np.ndarray:
     with np.errstate(all="ignore"):
         inverse = np.where(near, np.exp(least - found.log_gap), 0.0) * turn
         plain = np.exp(found.log_unit)[:, None, None] / np.abs(value[:, :, None] - value[:, None, :])
+        apart = np.abs(value[:, :, None] - value[:, None, :]) > _FAR * np.abs(value)[:, :, None]
+        plain = np.where(apart & (condition > _PARALLEL)[:, None, :], 0.0, plain)
         close = len(turn[0]) * ROUNDING / np.abs(inverse[:, :, None] - inverse[:, None, :])
     return np.where(alike, 0.0, np.where(near[:, :, None] & near[:, None, :], close, plain))
