@@ -11,7 +11,7 @@ from .duals import dual_vectors
 from .merging import ROUNDING, merge
 from .near_circle import NEAR, near_modes
 from .small import long_modes
-from .spectrum import deflated, polar, together
+from .spectrum import balanced, deflated, polar, roots, together
 
 __all__ = ["Modes", "Shown", "modes", "plain_modes", "shown"]
 
@@ -38,6 +38,8 @@ class Modes:
         Logarithm of the rounding of the matrix they were found from.
     log_unit : ndarray, shape (batch,)
         The same, with the rounding of eigenvalues and vectors in doubles.
+    root : ndarray, shape (batch, n)
+        Root of the law: vectors times it, or divided by it, are those of a matrix of norm 1.
     """
 
     log_modulus: np.ndarray
@@ -47,6 +49,7 @@ class Modes:
     left: np.ndarray
     log_noise: np.ndarray
     log_unit: np.ndarray
+    root: np.ndarray
 
 
 def modes(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> Modes:
@@ -93,10 +96,13 @@ def plain_modes(chance: np.ndarray, law: np.ndarray) -> Modes:
 
 def _plain(chance: np.ndarray, law: np.ndarray, numbers: Numbers, merged: bool) -> tuple[Modes, np.ndarray]:
     """Return modes by eigenvectors of the matrix without its Perron mode, and the logarithm of that matrix's size."""
-    rest, log_size, log_noise, kept = deflated(chance, law, numbers)
+    rest = deflated(chance, law, numbers)
+    _, log_size, log_noise, kept = rest
     n, batch = len(chance), chance.shape[-1]
-    matrix = np.ascontiguousarray(np.moveaxis(rest, -1, 0))
+    scaled, root = balanced(rest, law)
+    matrix = np.ascontiguousarray(np.moveaxis(scaled, -1, 0))
     values, vectors, inverse = _eigen(matrix)
+    vectors, inverse = vectors / root.T[:, :, None], inverse * root.T[:, None, :]
     if merged:
         merge(matrix, values)
     right = np.zeros((batch, n, n - 1), dtype=np.complex128)
@@ -109,7 +115,7 @@ def _plain(chance: np.ndarray, law: np.ndarray, numbers: Numbers, merged: bool) 
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
     log_unit = np.maximum(log_noise, log_size + np.log(4 * n * ROUNDING))
-    return Modes(log_modulus, phase, log_gap, right, left, log_noise, log_unit), log_size
+    return Modes(log_modulus, phase, log_gap, right, left, log_noise, log_unit, roots(law).T), log_size
 
 
 def _eigen(matrix: np.ndarray) -> tuple[np.ndarray, np.ndarray, np.ndarray]:
@@ -165,8 +171,11 @@ def shown(found: Modes, source: np.ndarray, target: np.ndarray) -> Shown:
     after = np.einsum("bmn,nb->bm", found.left, target)
     alike = together(found.log_gap, found.phase)
     amplitude = np.einsum("bkj,bj->bk", alike, before * after)
-    scale = (np.abs(source).sum(axis=0) * np.abs(target).max(axis=0))[:, None]
-    wide, long = np.abs(found.right).max(axis=1), np.abs(found.left).sum(axis=2)
+    # Sizes of vectors are those in the metric of the law: what they are on rare states hardly counts.
+    scale = np.linalg.norm(source / found.root.T, axis=0) * np.linalg.norm(target * found.root.T, axis=0)
+    scale = scale[:, None]
+    wide = np.linalg.norm(found.right * found.root[:, :, None], axis=1)
+    long = np.linalg.norm(found.left / found.root[:, None, :], axis=2)
     condition = wide * long
     worst = np.einsum("bkj,bj->bk", alike, condition)
     # First order of perturbation theory: R_k takes on R_j times (L_j E R_k)/(λ_k − λ_j).

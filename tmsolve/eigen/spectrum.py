@@ -20,12 +20,14 @@ from .perron import PerronPair
 __all__ = [
     "Deflated",
     "Ratios",
+    "balanced",
     "chain_ratios",
     "clusters",
     "deflated",
     "eigenvalues",
     "polar",
     "ratios",
+    "roots",
     "together",
 ]
 
@@ -74,8 +76,9 @@ def chain_ratios(chance: np.ndarray, stationary: np.ndarray, numbers: Numbers = 
         none = np.empty((chance.shape[-1], 0))
         return Ratios(none, none.copy(), none.copy())
     rest = deflated(chance, stationary, numbers)
-    values = eigenvalues(rest.matrix)
-    merge(np.moveaxis(rest.matrix, -1, 0), values)
+    matrix = balanced(rest, stationary)[0]
+    values = eigenvalues(matrix)
+    merge(np.moveaxis(matrix, -1, 0), values)
     log_modulus, phase = polar(values, rest.log_size)
     with np.errstate(divide="ignore"):
         log_gap = np.log(np.maximum(-log_modulus, 0.0))
@@ -127,6 +130,21 @@ def deflated(chance: np.ndarray, law: np.ndarray, numbers: Numbers = DOUBLE) -> 
     with np.errstate(divide="ignore"):
         log_noise = to_double(numbers.log(sums.max(axis=(0, 1)) * numbers.epsilon))
     return Deflated(to_double(rest / size), to_double(numbers.log(size)), log_noise, kept)
+
+
+def balanced(rest: Deflated, law: np.ndarray) -> tuple[np.ndarray, np.ndarray]:
+    """Scale a deflated matrix by the root of the law, and return it with the factors, (n − 1, batch).
+
+    No entry of π_i^½ P_ij π_j^−½ exceeds 1, and in a chain with detailed balance it is symmetric:
+    eigenvectors that look alike, all of them largest on the rarest states, are orthogonal then.
+    """
+    root = np.take_along_axis(roots(law), rest.kept, axis=0)
+    return rest.matrix * root[:, None] / root[None], root
+
+
+def roots(law: np.ndarray) -> np.ndarray:
+    """Return the root of a law in doubles."""
+    return np.maximum(np.sqrt(to_double(law)), _NOTHING)
 
 
 def eigenvalues(rest: np.ndarray) -> np.ndarray:
