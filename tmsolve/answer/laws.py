@@ -18,6 +18,8 @@ from ..observe.segment import Segment
 from .classes import USUAL_LIMIT, CommunicatingClass, Ties
 from .dominant import dominant_class
 from .long import climb
+from .negligible import felt, on_nodes, same_pattern
+from .resolution import require_resolved
 from .segments import make_segment
 
 __all__ = ["stationary_laws"]
@@ -44,23 +46,16 @@ def stationary_laws(window: ChainWindow, point: Point, solver: Dense) -> list[Se
     values = point.flat()
     whole = Assembled(window, values, point.size)
     segments: list[Segment] = []
-    for indices in _same_pattern(whole.pattern):
+    pattern = felt(whole) if on_nodes(whole) else whole.pattern
+    for indices in same_pattern(pattern):
         part = whole if indices.size == point.size else Assembled(window, _pick(values, indices), indices.size)
-        segments.extend(_solve_part(part, indices, solver, point))
+        segments.extend(_solve_part(part, pattern[..., indices[0]], indices, solver, point))
     return segments
 
 
-def _same_pattern(pattern: np.ndarray) -> list[np.ndarray]:
-    flat = pattern.reshape(-1, pattern.shape[-1])
-    if (flat == flat[:, :1]).all():
-        return [np.arange(flat.shape[1])]
-    _, group = np.unique(flat, axis=1, return_inverse=True)
-    group = group.ravel()
-    return [np.flatnonzero(group == g) for g in range(group.max() + 1)]
-
-
-def _solve_part(part: Assembled, indices: np.ndarray, solver: Dense, point: Point) -> list[Segment]:
-    edges = part.pattern[..., 0]
+def _solve_part(
+    part: Assembled, edges: np.ndarray, indices: np.ndarray, solver: Dense, point: Point
+) -> list[Segment]:
     classes = communicating_classes(edges)
     if not classes:
         raise SolveError(
@@ -77,11 +72,14 @@ def _solve_part(part: Assembled, indices: np.ndarray, solver: Dense, point: Poin
         good = chosen.settled(part, confirm)[local] if part.window.shape[0] <= USUAL_LIMIT else chosen.trusted[local]
         # Which class is the largest is known only where all of them are.
         good &= np.all([other.pair.converged[local] for other in found], axis=0)
-        if len(chosen.states) > USUAL_LIMIT:
+        # Between nodes far apart weights underflow, and nothing is lost by it.
+        if len(chosen.states) > USUAL_LIMIT or on_nodes(part):
             good = chosen.pair.converged[local] & (chosen.pair.error[local] < _LARGE_TOLERANCE)
         if good.any():
             keep = local[good]
             segments.append(make_segment(found, number, part, keep, indices[keep]))
         for i in local[~good]:
+            if on_nodes(part):
+                require_resolved(part, chosen, int(i), point.pick(int(indices[i])))
             segments.append(replace(climb(part, indices[i], solver, point), reason=chosen.reason(int(i))))
     return segments

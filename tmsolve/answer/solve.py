@@ -18,8 +18,9 @@ from ..observe.segment import Segment
 from ..observe.solution import Solution
 from .laws import stationary_laws
 from .long import long_laws
+from .resolution import reservations
 
-__all__ = ["solve"]
+__all__ = ["on_given_nodes", "solve"]
 
 
 def solve(point: Point, *, solver: Solver | None = None, digits: int | None = None) -> Solution:
@@ -47,7 +48,8 @@ def solve(point: Point, *, solver: Solver | None = None, digits: int | None = No
     NotApplicable
         T = 0 in a chain with weights, or with energies that depend on T.
     SolveError, TooLargeError
-        With the cause and the point.
+        With the cause and the point; also where nodes of continuous variables do not resolve the
+        Boltzmann factor, with the solution on those nodes as ``partial``.
 
     Examples
     --------
@@ -69,15 +71,26 @@ def solve(point: Point, *, solver: Solver | None = None, digits: int | None = No
     chosen = Auto() if solver is None else solver
     if not isinstance(chosen, (Auto, Dense)):
         raise ParameterError(f"solver= takes Auto() or Dense(…), got {solver!r}")
-    window = build_window(point.chain)
-    dense = chosen.select(window.shape[0]) if isinstance(chosen, Auto) else chosen
     if digits is None:
-        return Solution(point, _laws(window, point, partial(stationary_laws, solver=dense), None, dense))
+        solution = on_given_nodes(point, chosen)
+        solution.laws.notes += reservations(solution, partial(on_given_nodes, solver=chosen))
+        return solution
     if isinstance(digits, bool) or not isinstance(digits, Integral) or digits < 1:
         raise ParameterError(f"digits= takes a whole number >= 1, got {digits!r}")
     require_discrete(point.chain.cell, "solve with digits=")
-    wanted = int(digits)
+    wanted, (window, dense) = int(digits), _window(point, chosen)
     return Solution(point, _laws(window, point, partial(long_laws, solver=dense, digits=wanted), wanted, dense))
+
+
+def on_given_nodes(point: Point, solver: Solver) -> Solution:
+    """Solve without asking whether the nodes of continuous variables resolve the Boltzmann factor."""
+    window, dense = _window(point, solver)
+    return Solution(point, _laws(window, point, partial(stationary_laws, solver=dense), None, dense))
+
+
+def _window(point: Point, solver: Solver) -> tuple[ChainWindow, Dense]:
+    window = build_window(point.chain)
+    return window, solver.select(window.shape[0]) if isinstance(solver, Auto) else solver
 
 
 def _laws(

@@ -69,7 +69,7 @@ def interval(a: float, b: float, nodes: int, rule: str = "gauss") -> StateSet:
     half, middle = (high - low) / 2, (high + low) / 2
     values, weights = [middle + half * x for x in where], [half * w for w in weights]
     coarser = partial(interval, low, high, count // 2, rule) if count >= 4 else None
-    name = Rule(f"interval({low:g}, {high:g}, {count}, {rule!r})", within(low, high), coarser)
+    name = Rule(f"interval({low:g}, {high:g}, {count}, {rule!r})", within(low, high), coarser, True)
     return _numbers(name, values, weights)
 
 
@@ -108,7 +108,8 @@ def line(nodes: int, scale: float = 1.0) -> StateSet:
     if length <= 0:
         raise DeclarationError(f"line(nodes, scale) takes a positive scale, got {length:g}")
     where, weights = hermite_rule(count)
-    name = Rule(f"line({count}, {length:g})", _ANYWHERE, partial(line, count // 2, length) if count >= 4 else None)
+    coarser = partial(line, count // 2, length) if count >= 4 else None
+    name = Rule(f"line({count}, {length:g})", _ANYWHERE, coarser, True)
     return _numbers(name, [length * x for x in where], [length * w for w in weights])
 
 

@@ -28,22 +28,27 @@ class Rule(str):
         Returns a value that the continuous variable takes as a state, ``None`` for any other.
     coarser : callable or None
         Makes the states of the same rule with half as many nodes; None where there are too few.
+    straight : bool
+        Whether the nodes lie on a line, in order: nothing passes round its ends.
     """
 
-    __slots__ = ("coarser", "covers")
+    __slots__ = ("coarser", "covers", "straight")
 
     covers: Callable[[Any], Any]
     coarser: Callable[[], StateSet] | None
+    straight: bool
 
-    def __new__(cls, name: str, covers: Callable[[Any], Any], coarser: Callable[[], StateSet] | None) -> Rule:
+    def __new__(
+        cls, name: str, covers: Callable[[Any], Any], coarser: Callable[[], StateSet] | None, straight: bool = False
+    ) -> Rule:
         """Name a rule."""
         rule = super().__new__(cls, name)
-        rule.covers, rule.coarser = covers, coarser
+        rule.covers, rule.coarser, rule.straight = covers, coarser, straight
         return rule
 
     def __reduce__(self) -> tuple[Any, ...]:
         """Pickle by what it is made of."""
-        return Rule, (str(self), self.covers, self.coarser)
+        return Rule, (str(self), self.covers, self.coarser, self.straight)
 
     def state(self, value: Any) -> Any:
         """Return a value of the continuous variable, a node or not, as a state.

@@ -43,6 +43,8 @@ class Settler:
     def __init__(self, window: ChainWindow, point: Point, observable: str | None) -> None:
         self.window, self.point, self.observable = window, point, observable
         self.left = _PATIENCE
+        # Nodes of a quadrature rule are not known beyond doubles.
+        self.grids = any(states.grid is not None for states in window.chain.cell.values())
         self._counts: dict[Any, Census | None] = {}
 
     def settle(self, segment: Segment, found: Found, positions: np.ndarray, classes: np.ndarray | None) -> list[int]:
@@ -135,7 +137,7 @@ class Settler:
         self, segment: Segment, wanted: list[int], classes: np.ndarray | None, strict: bool = False
     ) -> dict[int, Decay]:
         """Return the slowest modes at those points that are within reach of long numbers."""
-        if segment.limit or len(segment.states) > LARGEST or len(wanted) > _MANY:
+        if segment.limit or self.grids or len(segment.states) > LARGEST or len(wanted) > _MANY:
             return {}
         place = self.window, segment.states
         problems = {int(i): (*place, self._values(segment, i), self.observable, classes) for i in wanted}

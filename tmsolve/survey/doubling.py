@@ -3,15 +3,17 @@
 from __future__ import annotations
 
 from collections.abc import Callable, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from numbers import Integral, Real
 from types import MappingProxyType
 from typing import Any
 
 import numpy as np
 
-from ..answer.solve import solve
+from ..answer.resolution import walls
+from ..answer.solve import on_given_nodes
 from ..declare import Chain
+from ..eigen.solvers import Auto
 from ..errors import DeclarationError, ParameterError, SolveError, TmsolveError, did_you_mean, listing
 from ..observe.readings import Reading, parse_reading
 from ..observe.solution import Solution
@@ -66,8 +68,9 @@ class Settled:
         width = max(map(len, self.values), default=0)
         for name, value in self.values.items():
             change = float(np.max(self.errors[name]))
-            lines.append(f"  {name:<{width}}  {float(value.flat[0]):.15g}  changed by {change:.1e}")
-        return "\n".join(lines)
+            several = ", …" if value.shape != self.solution.shape else ""
+            lines.append(f"  {name:<{width}}  {float(value.flat[0]):.15g}{several}  changed by {change:.1e}")
+        return "\n".join([*lines, *walls(self.solution)])
 
 
 def settled(
@@ -88,8 +91,8 @@ def settled(
     at : mapping of str to value
         ``T`` and the parameters; arrays make a batch, whose points must all settle.
     read : sequence of str or callable
-        Readings such as ``"free_energy"`` or ``"mean(m)"``, or functions of a `Solution`.
-        The free energy is watched in any case.
+        Readings such as ``"free_energy"`` or ``"mean(m)"``, or functions of a `Solution`, which may
+        return several numbers per point: ``lambda s: s.gaps(5)``. The free energy is watched in any case.
     tolerance : float
         Largest change by a doubling, relative to the value, or to its natural size where that
         is larger: T for energies, 1/T for susceptibilities, 1 for other readings.
@@ -120,30 +123,77 @@ def settled(
     first, last, limit = _checked(build, at, tolerance, start, most)
     history: list[tuple[int, float]] = []
     result: Settled | None = None
-    values: dict[str, np.ndarray] = {}
+    before: _Reading | None = None
+    trouble: TmsolveError | None = None
     nodes = first
     while nodes <= last:
         try:
-            solution = _solution(build, nodes, at)
-            readings = {r.name: r for r in (parse_reading(text, solution.point.chain) for text in [_WATCHED, *read])}
-            new = {name: reading.evaluate(solution) for name, reading in readings.items()}
+            new = _Reading.of(build, nodes, at, read)
         except TmsolveError as cause:
-            if not history:
+            # Few nodes may be worse than none; a failure after that, or one of another kind, is one.
+            if before is not None and result is not None:
+                raise SolveError(f"{_so_far(result, tolerance)}; with {nodes} nodes: {cause}", result) from cause
+            if not isinstance(cause, SolveError):
                 raise
-            raise SolveError(f"{_so_far(result, tolerance)}; with {nodes} nodes: {cause}", result) from cause
-        if values:
-            errors = {name: _change(values[name], value) for name, value in new.items()}
-            worst = {name: float(np.max(errors[name] / _size(readings[name], new[name], solution))) for name in new}
-            history.append((nodes, max(worst.values())))
-            wanted = {r.name for r in (parse_reading(text, solution.point.chain) for text in read)}
-            shown = {name: value for name, value in new.items() if name in wanted}
-            kept = {name: errors[name] for name in shown}
-            done = history[-1][1] <= limit
-            result = Settled(MappingProxyType(shown), MappingProxyType(kept), nodes, tuple(history), done, solution)
+            before, trouble, nodes = None, cause, 2 * nodes
+            continue
+        if before is not None:
+            errors = {name: _change(before.values[name], value) for name, value in new.values.items()}
+            worst = max(float(np.max(errors[name] / new.sizes[name], initial=0.0)) for name in errors)
+            history.append((nodes, worst))
+            shown = {name: new.values[name] for name in new.wanted}
+            kept, done = {name: errors[name] for name in new.wanted}, worst <= limit
+            result = Settled(MappingProxyType(shown), MappingProxyType(kept), nodes, tuple(history), done, new.solution)
             if done:
                 return result
-        values, nodes = new, 2 * nodes
-    raise SolveError(f"{_so_far(result, tolerance)}; give a larger most=, or nodes where the states are likely", result)
+        before, nodes = new, 2 * nodes
+    if result is None:
+        raise SolveError(f"not settled to {float(tolerance):.0e} with up to {last} nodes: {trouble}") from trouble
+    raise SolveError(f"{_so_far(result, tolerance)}; {_advice(result)}", result)
+
+
+@dataclass(frozen=True)
+class _Reading:
+    """All readings of a chain with some number of nodes.
+
+    Attributes
+    ----------
+    values, sizes : mapping of str to ndarray
+        By name; sizes are what changes are relative to.
+    wanted : tuple of str
+        Names that were asked for.
+    """
+
+    solution: Solution
+    values: Mapping[str, np.ndarray]
+    sizes: Mapping[str, np.ndarray]
+    wanted: tuple[str, ...]
+
+    @classmethod
+    def of(cls, build: Callable[[int], Chain], nodes: int, at: Mapping[str, Any], read: Sequence[Any]) -> _Reading:
+        chain = build(nodes)
+        if not isinstance(chain, Chain):
+            raise DeclarationError(
+                f"build({nodes}) returned {chain!r}, but settled needs a function that returns a Chain"
+            )
+        solution = on_given_nodes(chain.at(**at), Auto())
+        values, sizes = {}, {}
+        for text in (_WATCHED, *read):
+            reading = parse_reading(text, chain)
+            values[reading.name] = _evaluated(reading, solution, several=callable(text))
+            sizes[reading.name] = _size(reading, values[reading.name], solution)
+        return cls(solution, values, sizes, tuple(parse_reading(text, chain).name for text in read))
+
+
+def _evaluated(reading: Reading, solution: Solution, several: bool) -> np.ndarray:
+    """Return a reading; functions may return several numbers per point, along further axes."""
+    if not several:
+        return reading.evaluate(solution)
+    value = np.asarray(reading.function(solution))
+    batch = len(solution.shape)
+    if value.ndim > batch and value.shape[:batch] == solution.shape and value.dtype.kind in "biuf":
+        return value.astype(np.float64)
+    return replace(reading, function=lambda _: value).evaluate(solution)
 
 
 def _checked(build: Any, at: Any, tolerance: Any, start: Any, most: Any) -> tuple[int, int, float]:
@@ -161,13 +211,6 @@ def _checked(build: Any, at: Any, tolerance: Any, start: Any, most: Any) -> tupl
     return int(start), int(most), float(tolerance)
 
 
-def _solution(build: Callable[[int], Chain], nodes: int, at: Mapping[str, Any]) -> Solution:
-    chain = build(nodes)
-    if not isinstance(chain, Chain):
-        raise DeclarationError(f"build({nodes}) returned {chain!r}, but settled needs a function that returns a Chain")
-    return solve(chain.at(**at))
-
-
 def _change(old: np.ndarray, new: np.ndarray) -> np.ndarray:
     with np.errstate(invalid="ignore"):
         return np.where(old == new, 0.0, np.abs(new - old))
@@ -176,7 +219,21 @@ def _change(old: np.ndarray, new: np.ndarray) -> np.ndarray:
 def _size(reading: Reading, value: np.ndarray, solution: Solution) -> np.ndarray:
     T = np.broadcast_to(solution.point.T, solution.shape)
     natural = {"energy": T, "1/energy": 1 / T}.get(reading.unit, np.ones(solution.shape))
+    natural = np.reshape(natural, solution.shape + (1,) * (value.ndim - len(solution.shape)))
     return np.maximum(np.where(np.isfinite(value), np.abs(value), 0.0), natural)
+
+
+def _advice(result: Settled) -> str:
+    """Say what may help, judging by how many nodes were felt."""
+    laws = result.solution.laws
+    felt = max(len(segment.states) for segment in laws.segments())
+    whole = laws.window.shape[0]
+    if 2 * felt <= whole:
+        return (
+            f"only {felt} of {whole} joint states carry weight: give nodes where the states are likely (a smaller "
+            "scale of line, ends of interval closer together), or a larger most="
+        )
+    return "give a larger most=, or nodes where the states are likely"
 
 
 def _so_far(result: Settled | None, tolerance: float) -> str:
