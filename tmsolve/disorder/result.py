@@ -20,6 +20,9 @@ from .walk import Rates
 
 __all__ = ["QuenchedChain"]
 
+#: Share of the noise that control variates are trusted to leave, at best.
+_TRUSTED = 2e-4
+
 
 @dataclass(frozen=True, eq=False)
 class QuenchedChain(PerCell):
@@ -167,9 +170,16 @@ class QuenchedChain(PerCell):
     def _estimate(self, wanted: Sum) -> Average:
         key = (wanted[0], *(tuple(sorted(part.items())) for part in wanted[1:]))
         if key not in self._known:
-            self._known[key] = average(self._controlled(wanted))
+            self._known[key] = self._trusted(average(self._controlled(wanted)), wanted)
         found: Average = self._known[key]
         return found
+
+    def _trusted(self, found: Average, wanted: Sum) -> Average:
+        """Widen a bar that is next to nothing: what is left then comes from draws so rare that few samples hold one."""
+        if self._pilot is None:
+            return found
+        noise = average(self._samples(self._rates, wanted, True)[0]).error
+        return Average(found.value, max(found.error, _TRUSTED * noise), found.degrees)
 
     def _controlled(self, wanted: Sum) -> np.ndarray:
         """Return a sum of every replica, less what control variates explain with coefficients from other chains.
