@@ -172,18 +172,22 @@ def shown(found: Modes, source: np.ndarray, target: np.ndarray) -> Shown:
     alike = together(found.log_gap, found.phase)
     amplitude = np.einsum("bkj,bj->bk", alike, before * after)
     # Sizes of vectors are those in the metric of the law: what they are on rare states hardly counts.
-    scale = np.linalg.norm(source / found.root.T, axis=0) * np.linalg.norm(target * found.root.T, axis=0)
-    scale = scale[:, None]
-    wide = np.linalg.norm(found.right * found.root[:, :, None], axis=1)
-    long = np.linalg.norm(found.left / found.root[:, None, :], axis=2)
-    condition = wide * long
-    worst = np.einsum("bkj,bj->bk", alike, condition)
+    root = found.root
+    with np.errstate(all="ignore"):  # states rarer than all doubles
+        scale = np.linalg.norm(source / root.T, axis=0) * np.linalg.norm(target * root.T, axis=0)
+        scale = scale[:, None]
+        wide = np.linalg.norm(np.abs(found.right) * root[:, :, None], axis=1)
+        long = np.linalg.norm(np.abs(found.left) / root[:, None, :], axis=2)
+        condition = wide * long
+        worst = np.einsum("bkj,bj->bk", alike, condition)
     # First order of perturbation theory: R_k takes on R_j times (L_j E R_k)/(λ_k − λ_j).
     mixing = _mixing(found, alike, condition)
-    first, second = np.abs(before) * long, np.abs(after) * wide
-    mixed = second * np.einsum("bkj,bj->bk", mixing, first) + first * np.einsum("bkj,bj->bk", mixing, second)
-    doubt = np.einsum("bkj,bj->bk", alike, mixed) + ROUNDING * worst * scale
-    return Shown(amplitude, scale * np.maximum(1.0, worst / USUAL_CONDITION), doubt, alike.sum(axis=2), worst)
+    with np.errstate(all="ignore"):
+        first, second = np.abs(before) * long, np.abs(after) * wide
+        mixed = second * np.einsum("bkj,bj->bk", mixing, first) + first * np.einsum("bkj,bj->bk", mixing, second)
+        doubt = np.einsum("bkj,bj->bk", alike, mixed) + ROUNDING * worst * scale
+        size = scale * np.maximum(1.0, worst / USUAL_CONDITION)
+    return Shown(amplitude, size, doubt, alike.sum(axis=2), worst)
 
 
 def _mixing(found: Modes, alike: np.ndarray, condition: np.ndarray) -> np.ndarray:
