@@ -17,7 +17,7 @@ from ..observe.segment import Segment
 from ..observe.solution import Solution
 from ..operators.numbers import to_double
 from ..tabulate.levels import exact_values
-from .masks import check_single, read_value, restricted
+from .masks import check_classes, check_single, read_value, restricted
 
 __all__ = ["Domains", "domains"]
 
@@ -131,12 +131,13 @@ def domains(solution: Solution, observable: str) -> Domains:
     solution : Solution
         Made by ``solve(point)``.
     observable : str
-        A function of a single site per cell; cells with the same value are alike.
+        A function of a single site per cell; cells with the same value are alike. Of a continuous
+        variable, intervals as classes: ``lambda u: 1 if u > 0 else -1``.
 
     Raises
     ------
     NotApplicable
-        The observable is not a function of one site.
+        The observable is not a function of one site, or tells nodes of a continuous variable apart.
     ParameterError
         Unknown observable.
 
@@ -157,6 +158,7 @@ def domains(solution: Solution, observable: str) -> Domains:
     assembled = Assembled(window, point.flat(), point.size)
     table = exact_values(assembled.sites, part, observable)
     values = tuple(sorted(set(table.flat)))
+    check_classes(point.chain.cell[part.sites[0][0]], values, observable)
     share = _shares(assembled, part, [np.array([v == value for v in table.flat]) for value in values])
     found = []
     for segment in segments:

@@ -14,7 +14,7 @@ from .blocks import Block, Run, close, counted, to_cell
 from .counting import part_values
 from .distribution import Distribution
 from .lengths import weights_by_length
-from .masks import check_single, read_value, restricted
+from .masks import check_classes, check_single, read_value, restricted
 from .run_counts import weights_by_number
 from .scaled import Scaled, add, log_ratio, ratio
 from .track import Track
@@ -182,13 +182,15 @@ def find_domains(track: Track, observable: str, shape: tuple[int, ...]) -> Finit
     Raises
     ------
     NotApplicable
-        The observable is not a function of one site.
+        The observable is not a function of one site, or tells nodes of a continuous variable apart.
     """
     check_single(track.window.chain, observable)
     tables = [
         values for position, _ in track.runs() for _, values in part_values(track.assembled(position), observable)
     ]
     values = tuple(sorted({value for table in tables for value in table.flat}))
+    chain = track.window.chain
+    check_classes(chain.cell[chain.observable(observable)[0].sites[0][0]], values, observable)
     return FiniteDomains(observable, values, track.cells, track.closed, track, shape)
 
 

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Collection
 from fractions import Fraction
 from typing import Any
 
@@ -9,12 +10,15 @@ import numpy as np
 
 from ..assemble.matrix import Assembled
 from ..assemble.window import SiteWeights
-from ..declare import Chain
+from ..declare import Chain, StateSet
 from ..errors import NotApplicable, ParameterError
 from ..operators.algebras import LogSum, LogTable
 from ..operators.numbers import DOUBLE
 
-__all__ = ["check_single", "read_value", "restricted"]
+__all__ = ["check_classes", "check_single", "read_value", "restricted"]
+
+#: Classes of values that a continuous variable may be sorted into.
+_MOST_CLASSES = 8
 
 
 def check_single(chain: Chain, observable: str) -> None:
@@ -25,6 +29,16 @@ def check_single(chain: Chain, observable: str) -> None:
             f"domains are runs of equal values of one site per cell; {observable!r} has "
             f"{len(parts)} parts on {', '.join(str(len(part.sites)) for part in parts)} sites. "
             'Declare one with observables={"a": site(f, "kind")}'
+        )
+
+
+def check_classes(states: StateSet, values: Collection[Fraction], observable: str) -> None:
+    """Refuse observables that tell the nodes of a continuous variable apart, instead of intervals of it."""
+    if states.grid is not None and len(values) > _MOST_CLASSES:
+        raise NotApplicable(
+            f"domains are runs of equal values, and {observable!r} takes {len(values)} of them on the {len(states)} "
+            f"nodes of {states.grid}: with more nodes no two neighbours would agree. Declare intervals as classes, at "
+            f'most {_MOST_CLASSES}, as in observables={{"well": lambda u: 1 if u > 0 else -1}}'
         )
 
 

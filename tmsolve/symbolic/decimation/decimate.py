@@ -148,7 +148,7 @@ def decimate(point: Point, b: int = 2) -> Decimation:
     ParameterError
         A bad b.
     NotApplicable
-        T = 0, or no term that joins cells.
+        T = 0, no term that joins cells, or continuous variables in the cut.
     TooLargeError
         More than 64 states of the cut.
 

@@ -21,6 +21,7 @@ from ...declare.chain import Chain
 from ...declare.terms import Term
 from ...operators.elimination import align
 from ...tabulate.affine import affine_table
+from .nodes import refuse_nodes
 
 __all__ = ["Cuts", "OwnTerms", "own_terms"]
 
@@ -45,7 +46,8 @@ class Cuts:
 
     @classmethod
     def of(cls, window: ChainWindow) -> Cuts:
-        """Find how far cuts have to be apart."""
+        """Find how far cuts have to be apart; nodes of continuous variables are refused."""
+        refuse_nodes(window)
         cells = [cell for _, cell in window.left]
         reach = max(cells) - min(cells) + 1 if cells else 1
         apart = (s for s in range(1, reach + 1) if not {*window.left} & {(k, c + s) for k, c in window.left})
