@@ -148,6 +148,11 @@ def test_far_tails_of_normal_bonds_are_not_cut_off():
     assert found.free_energy.error < 1e-13
 
 
+def test_a_list_says_how_many_cells_there_are():
+    found = quenched(FIELD.fix(T=1, J=1, H=0), {"h": [0.1, -0.2, 0.3]})
+    assert found.cells == 3 and found.replicas == 1
+
+
 def test_signed_bonds():
     found = quenched(BOND.fix(T=1, h=0), {"J": {"0.8": "0.7", "-0.8": "0.3"}}, cells=100, replicas=32, rng=6)
     assert found.free_energy.value == pytest.approx(-SIGNED_BONDS["growth"], rel=1e-13)
@@ -284,7 +289,10 @@ LAW = {"h": "normal(0,1)"}
         (lambda: quenched(FIXED, LAW, rng=-1), ParameterError, ["a seed, a whole number >= 0", "got -1"]),
         (lambda: quenched(FIXED, LAW, rng="x"), ParameterError, ["numpy.random.Generator", "got 'x'"]),
         (lambda: quenched(FIXED, LAW, rng=True), ParameterError, ["got True"]),
-        (lambda: quenched(FIXED, {"h": [1, 2]}, cells=3), DeclarationError, ["2 values", "need 3", "fewer cells"]),
+        (lambda: quenched(FIXED, {"h": [1, 2]}, cells=3), DeclarationError, ["2 values", "need 3", "leave cells= out"]),
+        (lambda: quenched(FIXED, {"h": [1, 2]}, cells=1), DeclarationError, ["'h' has 2 values", "1 cells need 1"]),
+        (lambda: quenched(FIXED, {"h": stats.norm(0, -1)}), DeclarationError, ["'h'", "out of range"]),
+        (lambda: quenched(FIXED, {"h": "normal(0,1e300)"}), DeclarationError, ["1e50", "larger unit"]),
         (lambda: quenched(FIXED, {"h": [1, 2]}, cells=2, replicas=5), ParameterError, ["realisation", "replicas=5"]),
         (lambda: quenched(FIXED, {"h": stats.cauchy()}), DeclarationError, ["mean"]),
         (lambda: quenched(FIXED, {"h": {0: 0.5}}), DeclarationError, ["sum to 0.5"]),

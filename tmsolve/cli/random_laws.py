@@ -49,8 +49,6 @@ def read_random(arguments: argparse.Namespace, model: LoadedModel) -> dict[str, 
             raise UsageError("--random T: one temperature holds for the whole chain; give -p T=…")
         try:
             laws[name] = as_law(written)
-        except OverflowError as error:
-            raise UsageError(f"--random {name}: {written!r} holds a number beyond the range of doubles") from error
         except (DeclarationError, ParameterError) as error:
             raise UsageError(f"--random {name}: {error}{_hint(name, written)}") from error
     refuse_parameters(arguments, laws, "random")

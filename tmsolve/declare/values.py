@@ -17,10 +17,10 @@ if TYPE_CHECKING:
 else:
     Value = Any
 
-__all__ = ["Value", "parse_value"]
+__all__ = ["LARGEST", "Value", "parse_value"]
 
 #: Higher cumulants multiply up to six energies, which must not overflow.
-_LARGEST = 10**50
+LARGEST = 10**50
 #: A power of ten with a longer exponent would fill the memory with digits.
 _LONGEST_EXPONENT = 400
 
@@ -49,7 +49,7 @@ def parse_value(name: str, value: Any) -> Value:
 
 
 def _bounded(name: str, number: Fraction) -> Fraction:
-    if abs(number) > _LARGEST:
+    if abs(number) > LARGEST:
         raise ParameterError(f"parameter {name!r} is larger than 1e50; measure energies in a larger unit")
     return number
 
@@ -121,7 +121,7 @@ def _array(name: str, value: Any) -> Fraction | float | np.ndarray:
     if np.isnan(numbers).any():
         where = int(np.flatnonzero(np.isnan(numbers))[0])
         raise ParameterError(f"parameter {name!r} holds NaN (first at position {where}); give numbers only")
-    if ((np.abs(numbers) > _LARGEST) & ~np.isinf(numbers)).any():
-        _bounded(name, Fraction(2 * _LARGEST))
+    if ((np.abs(numbers) > LARGEST) & ~np.isinf(numbers)).any():
+        _bounded(name, Fraction(2 * LARGEST))
     numbers.setflags(write=False)
     return numbers

@@ -27,11 +27,11 @@ from .cold_quantities import Classes
 from .cold_sample import longest_walk, settle
 from .cold_steps import ColdSteps, Counted, cold_start
 from .laws import Realisation
-from .problem import Problem, positive, read_problem, seed_of
+from .problem import Problem, positive, read_problem, row_length, seed_of
 
 __all__ = ["DisorderedGround", "disordered_ground_state"]
 
-_REPLICAS = 64
+_CELLS, _REPLICAS = 1000, 64
 
 
 @dataclass(frozen=True)
@@ -177,7 +177,7 @@ def disordered_ground_state(
     chain: Chain,
     random: Mapping[str, Any],
     *,
-    cells: int = 1000,
+    cells: int | None = None,
     replicas: int | None = None,
     rng: int | np.random.Generator | None = None,
     most_messages: int = 400,
@@ -217,9 +217,9 @@ def disordered_ground_state(
     >>> disordered_ground_state(chain.fix(J=1), {"h": {"-0.8": "1/2", "0.8": "1/2"}}, cells=100, rng=1).energy
     Fraction(-37, 30)
     """
-    cells = positive(cells, "cells=")
     most = positive(most_messages, "most_messages=")
-    problem = _problem(chain, random, cells)
+    problem = _problem(chain, random)
+    cells = row_length(problem, cells, _CELLS)
     count = _replicas(problem, replicas)
     steps = ColdSteps(problem)
     seed = seed_of(rng)
@@ -234,10 +234,10 @@ def disordered_ground_state(
     return DisorderedGround(*found, entropy, cells, count, seed, notes, averages)
 
 
-def _problem(chain: Chain, random: Mapping[str, Any], cells: int) -> Problem:
+def _problem(chain: Chain, random: Mapping[str, Any]) -> Problem:
     if isinstance(chain, Chain) and chain.fixed.get("T"):
         raise ParameterError(f"the ground state is that of T = 0, got a chain with T = {float(chain.fixed['T']):g}")
-    problem = read_problem(chain, random, cells, cold=True)
+    problem = read_problem(chain, random, cold=True)
     for term in chain.terms:
         if term.takes_temperature:
             raise NotApplicable(

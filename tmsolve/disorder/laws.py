@@ -9,7 +9,7 @@ from typing import Any
 
 import numpy as np
 
-from ..declare.values import parse_value
+from ..declare.values import LARGEST, parse_value
 from ..errors import DeclarationError, ParameterError
 from .densities import Counting, Density
 from .kinds import Law, Mixture, Normal, Realisation, Sampler, Uniform
@@ -23,7 +23,7 @@ _ROUNDING = Fraction(1, 10**12)
 _MOST_VALUES = 10_000
 
 
-def as_law(value: Any) -> Law:
+def as_law(value: Any, name: str = "random") -> Law:
     """Read the law of a random parameter in any of the forms a user may give it.
 
     Parameters
@@ -32,6 +32,8 @@ def as_law(value: Any) -> Law:
         ``{value: probability}``; an object with scipy.stats' frozen interface
         (``rvs(size, random_state)`` and ``mean()``); a function ``f(rng, size)``; a list of values, which is one
         realisation; or a text such as ``"normal(1,0.5)"``, ``"uniform(-1,1)"``, ``"choice(-1:0.5,1:0.5)"``.
+    name : str
+        Of the parameter, for messages.
 
     Returns
     -------
@@ -56,33 +58,35 @@ def as_law(value: Any) -> Law:
     if isinstance(value, (Mixture, Normal, Uniform, Sampler, Realisation)):
         return value
     if isinstance(value, str):
-        return as_law(read_law(value))
+        return as_law(read_law(value), name)
     if isinstance(value, Mapping):
-        return _mixture(value)
+        return _mixture(value, name)
     if hasattr(value, "rvs") and hasattr(value, "mean"):
-        return _distribution(value)
+        return _distribution(value, name)
     if callable(value):
         return Sampler(value)
     if isinstance(value, (Sequence, np.ndarray)):
-        return _realisation(value)
+        return _realisation(value, name)
     raise DeclarationError(
         f"the law of a random parameter is {{value: probability}}, a distribution of scipy.stats, a function "
         f'f(rng, size), a list of values, or a text such as "normal(1,0.5)"; got {value!r}'
     )
 
 
-def _mixture(given: Mapping[Any, Any]) -> Mixture:
+def _mixture(given: Mapping[Any, Any], name: str) -> Mixture:
     if not given:
         raise DeclarationError("a mixture needs at least one value: {value: probability}")
     chances: dict[Fraction, Fraction] = {}
     for raw, chance in given.items():
-        value, part = parse_value("random", raw), _probability(raw, chance)
+        value, part = parse_value(name, raw), _probability(raw, chance)
         if not isinstance(value, Fraction):
-            raise ParameterError(f"a random parameter takes finite numbers, got {raw!r}")
+            raise ParameterError(f"the random parameter {name!r} takes finite numbers, got {raw!r}")
         chances[value] = chances.get(value, Fraction(0)) + part
     total = sum(chances.values(), Fraction(0))
     if abs(total - 1) > _ROUNDING:
-        raise DeclarationError(f"the probabilities of a mixture sum to {float(total):g}, not to one; got {dict(given)}")
+        raise DeclarationError(
+            f"the probabilities of a mixture sum to {float(total):g}, not to one; got {_shown(given)}"
+        )
     return Mixture(tuple((value, chance / total) for value, chance in chances.items() if chance))
 
 
@@ -96,33 +100,45 @@ def _probability(value: Any, chance: Any) -> Fraction:
     return part
 
 
-def _realisation(given: Any) -> Realisation:
-    values = parse_value("random", given)
+def _shown(given: Mapping[Any, Any]) -> str:
+    """Write a mixture as one would, without the names of classes."""
+    return "{" + ", ".join(f"{value}: {chance}" for value, chance in given.items()) + "}"
+
+
+def _realisation(given: Any, name: str) -> Realisation:
+    values = parse_value(name, given)
     if not isinstance(values, np.ndarray) or values.ndim != 1 or not np.isfinite(values).all():
-        raise DeclarationError(f"a list of values is one row of finite numbers, got {given!r}")
+        raise DeclarationError(f"the list of values of {name!r} is one row of finite numbers, got {given!r}")
     return Realisation(values)
 
 
-def _distribution(given: Any) -> Law:
+def _distribution(given: Any, name: str) -> Law:
     mean = float(given.mean())
     if not math.isfinite(mean):
         raise DeclarationError(
-            f"the law {_named(given)} has the mean {mean:g}, and averages over it do not exist; give one with a "
-            "finite mean"
+            f"the law {_named(given)} of {name!r} has no finite mean (scipy.stats gives {mean:g}): its parameters are "
+            "out of range, or averages over it do not exist. Give one with a finite mean"
         )
     if hasattr(given, "std") and float(given.std()) == 0.0:
-        return _mixture({mean: 1})
-    name = _named(given)
-    if name == "norm":
+        return _mixture({mean: 1}, name)
+    _check_size(name, mean, float(given.std()) if hasattr(given, "std") else 0.0)
+    kind = _named(given)
+    if kind == "norm":
         return Normal(mean, float(given.std()))
-    if name == "uniform":
+    if kind == "uniform":
         low, high = given.support()
         return Uniform(float(low), float(high))
-    discrete = _discrete(given)
+    discrete = _discrete(given, name)
     if discrete is not None:
         return discrete
     quantile = getattr(given, "ppf", None)
     return Sampler(lambda rng, size: given.rvs(size=size, random_state=rng), mean, quantile, _rule(given))
+
+
+def _check_size(name: str, *numbers: float) -> None:
+    worst = max(map(abs, numbers))
+    if worst > LARGEST and math.isfinite(worst):
+        raise ParameterError(f"the law of {name!r} has numbers beyond 1e50; measure energies in a larger unit")
 
 
 def _rule(given: Any) -> Density | Counting | None:
@@ -138,7 +154,7 @@ def _named(given: Any) -> str:
     return str(getattr(getattr(given, "dist", None), "name", None) or type(given).__name__)
 
 
-def _discrete(given: Any) -> Mixture | None:
+def _discrete(given: Any, name: str) -> Mixture | None:
     if not hasattr(getattr(given, "dist", None), "pmf"):
         return None
     known = getattr(given.dist, "xk", None)
@@ -146,4 +162,4 @@ def _discrete(given: Any) -> Mixture | None:
     if known is None and (not math.isfinite(low) or not math.isfinite(high) or high - low > _MOST_VALUES):
         return None
     values = np.asarray(known if known is not None else np.arange(int(low), int(high) + 1))
-    return _mixture({value.item(): float(given.pmf(value)) for value in values})
+    return _mixture({value.item(): float(given.pmf(value)) for value in values}, name)

@@ -14,7 +14,7 @@ from ..declare import Chain, Term
 from ..errors import DeclarationError, NotApplicable, ParameterError, did_you_mean, listing
 from .laws import Law, Realisation, as_law
 
-__all__ = ["Problem", "positive", "read_laws", "read_problem", "seed_of", "unmixed"]
+__all__ = ["Problem", "positive", "read_laws", "read_problem", "row_length", "seed_of", "unmixed"]
 
 
 @dataclass(frozen=True, eq=False)
@@ -78,7 +78,7 @@ class Problem:
         return found
 
 
-def read_problem(chain: Any, random: Any, cells: int | None = None, *, cold: bool = False) -> Problem:
+def read_problem(chain: Any, random: Any, *, cold: bool = False) -> Problem:
     """Check a chain and its random parameters.
 
     Parameters
@@ -87,26 +87,46 @@ def read_problem(chain: Any, random: Any, cells: int | None = None, *, cold: boo
         With everything but the random parameters fixed or defaulted, the temperature included.
     random : mapping of str to law
         See `as_law`.
-    cells : int, optional
-        Length that lists of values must have.
     cold : bool
         Whether T = 0 is meant: then the temperature need not be fixed.
     """
     if not isinstance(chain, Chain):
-        raise DeclarationError(f"the first argument is a chain with its temperature fixed, got {chain!r}")
+        raise DeclarationError(
+            f"the first argument is a chain with its temperature fixed, chain.fix(T=…, …), got {chain!r}"
+        )
     laws = read_laws(chain, random)
     warmth = ({} if "T" in chain.fixed else {"T": 0}) if cold else _temperature(chain)
     values = dict(chain.at(**dict.fromkeys(laws, 0), **warmth).values)
     for name in laws:
         del values[name]
     renamed, copies = _rename(chain, tuple(laws))
-    for name, law in laws.items():
-        if isinstance(law, Realisation) and cells is not None and len(law.values) < cells * len(copies[name]):
-            raise DeclarationError(
-                f"the list for {name!r} has {len(law.values)} values, but {cells} cells with {len(copies[name])} "
-                f"copies each need {cells * len(copies[name])}; give a longer list or fewer cells"
-            )
     return Problem(renamed, values, laws, copies, tuple(renamed.observables))
+
+
+def row_length(problem: Problem, cells: Any, default: int) -> int:
+    """Return the number of cells asked for, or that of given lists, which have to agree with it.
+
+    Raises
+    ------
+    ParameterError
+        Not a whole number above 0.
+    DeclarationError
+        A list that is shorter or longer.
+    """
+    lists = {name: law.values for name, law in problem.laws.items() if isinstance(law, Realisation)}
+    if cells is None and lists:
+        name, values = next(iter(lists.items()))
+        cells = max(1, len(values) // len(problem.copies[name]))
+    count = positive(default if cells is None else cells, "cells=")
+    for name, values in lists.items():
+        terms = len(problem.copies[name])
+        if len(values) != count * terms:
+            each = "" if terms == 1 else f" with {terms} terms each that take it"
+            raise DeclarationError(
+                f"the list for {name!r} has {len(values)} values, but {count} cells{each} need {count * terms}; give "
+                "as many values, or leave cells= out to take as many cells as the list has values for"
+            )
+    return count
 
 
 def _temperature(chain: Chain) -> dict[str, Any]:
@@ -140,7 +160,7 @@ def read_laws(chain: Chain, random: Any) -> dict[str, Law]:
             raise ParameterError(
                 f"parameter {name!r} occurs in observables only; a random one belongs to an energy or a weight"
             )
-        laws[name] = as_law(given)
+        laws[name] = as_law(given, name)
     return laws
 
 

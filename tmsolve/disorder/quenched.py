@@ -11,7 +11,7 @@ from ..declare import Chain
 from ..errors import ParameterError
 from .laws import Realisation
 from .message import start
-from .problem import Problem, positive, read_problem, seed_of
+from .problem import Problem, positive, read_problem, row_length, seed_of
 from .result import QuenchedChain
 from .strata import node_count
 from .tangents import with_tangents
@@ -19,8 +19,8 @@ from .walk import Burnt, burn_in, pilot, walk
 
 __all__ = ["quenched"]
 
-#: Replicas when none are asked for.
-_REPLICAS = 128
+#: Cells and replicas when none are asked for.
+_CELLS, _REPLICAS = 500, 128
 #: Cells after which messages that still differ are let be.
 _SHORTEST_LIMIT = 2000
 
@@ -29,7 +29,7 @@ def quenched(
     chain: Chain,
     random: Mapping[str, Any],
     *,
-    cells: int = 500,
+    cells: int | None = None,
     replicas: int | None = None,
     rng: int | np.random.Generator | None = None,
     control_variates: bool = True,
@@ -48,8 +48,9 @@ def quenched(
     random : mapping of str to law
         By parameter; a law is anything `as_law` reads. A list of values is one realisation, of
         ``cells`` times the number of copies per cell, on a chain with a free left end.
-    cells : int
-        Cells averaged over per replica, after a burn-in that is found by itself.
+    cells : int, optional
+        Cells averaged over per replica, after a burn-in that is found by itself; 500 when left out, or as many as
+        lists have values for.
     replicas : int, optional
         Independent chains, at least 2; 128 when left out, 1 when everything random is listed.
     rng : int or numpy Generator, optional
@@ -85,8 +86,8 @@ def quenched(
     >>> round(average.value, 12), average.error < 1e-15                            # −ln 2cosh 1 whatever the signs
     (-1.126928011043, True)
     """
-    cells = positive(cells, "cells=")
-    problem = read_problem(chain, random, cells)
+    problem = read_problem(chain, random)
+    cells = row_length(problem, cells, _CELLS)
     replicas = _replicas(problem, replicas)
     seed = seed_of(rng)
     stream = np.random.default_rng([seed, 0])

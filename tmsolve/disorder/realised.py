@@ -110,7 +110,8 @@ class Realised:
     @property
     def log_Z(self) -> float:
         """Logarithm of the partition function of the whole chain."""
-        return self._row(()).messages.log_sum
+        row = self._row(())
+        return row.messages.log_sum + row.steps.log_scale
 
     @property
     def free_energy(self) -> float:

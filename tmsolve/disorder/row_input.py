@@ -8,6 +8,7 @@ from typing import Any
 import numpy as np
 
 from ..declare import Chain
+from ..declare.values import LARGEST
 from ..errors import DeclarationError, NotApplicable, ParameterError, did_you_mean, listing, unknown_parameter
 
 __all__ = ["read_realisation", "read_row"]
@@ -91,5 +92,10 @@ def _numbers(name: str, given: Any) -> np.ndarray:
     if not np.isfinite(array).all():
         cell = int(np.flatnonzero(~np.isfinite(array))[0])
         raise ParameterError(f"{name!r} must be finite in every cell, got {array[cell]} in cell {cell}")
+    largest = int(np.abs(array).argmax())
+    if abs(array[largest]) > LARGEST:
+        raise ParameterError(
+            f"{name!r} is {array[largest]:g} in cell {largest}, beyond 1e50; measure energies in a larger unit"
+        )
     array.flags.writeable = False
     return array

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from functools import cached_property
@@ -133,7 +134,7 @@ class RowSteps:
         """
         marks = marks or {}
         tables: list[LogTable] = []
-        for factor, (logs, anchor) in zip(self.window.factors, self._factors, strict=True):
+        for factor, (logs, anchor, _) in zip(self.window.factors, self._factors, strict=True):
             cells = positions[:, None] + np.array([anchor, *(cell for _, cell in factor.sites)])
             log = logs if logs.shape[-1] == 1 else logs[..., cells[:, 0] % self.cells]
             inside = self.closed | ((cells >= 0) & (cells < self.cells)).all(axis=1)
@@ -169,15 +170,35 @@ class RowSteps:
         return found
 
     @cached_property
+    def log_scale(self) -> float:
+        """Sum over all steps of what was taken out of the logarithms, so that their largest is 0 in every table."""
+        positions, total = np.asarray(self.positions), []
+        for factor, (_, anchor, scale) in zip(self.window.factors, self._factors, strict=True):
+            cells = positions[:, None] + np.array([anchor, *(cell for _, cell in factor.sites)])
+            inside = self.closed | ((cells >= 0) & (cells < self.cells)).all(axis=1)
+            each = np.broadcast_to(scale, self.cells) if scale.size == 1 else scale
+            total.append(each[cells[inside, 0] % self.cells])
+        return math.fsum(np.concatenate(total)) if total else 0.0
+
+    @cached_property
     def _plain(self) -> SiteTables:
         """Tables of what is the same in every cell."""
         return SiteTables(self.chain, self.values, 1)
 
     @cached_property
-    def _factors(self) -> list[tuple[np.ndarray, int]]:
-        """Logarithms of the weights of every factor, (…, 1 or cells), and the cell it counts from."""
+    def _factors(self) -> list[tuple[np.ndarray, int, np.ndarray]]:
+        """Logarithms of the weights of every factor, (…, 1 or cells), the cell it counts from, and their scale.
+
+        Their largest is taken out as the scale: a huge energy would else swallow the others that it is added to.
+        """
         each = SiteTables(self.chain, {**self.values, **self.arrays}, self.cells)
-        return [self._factor(each, factor.source, factor.sites) for factor in self.window.factors]
+        found = []
+        for factor in self.window.factors:
+            logs, anchor = self._factor(each, factor.source, factor.sites)
+            largest = logs.max(axis=tuple(range(logs.ndim - 1)))
+            scale = np.where(largest == -np.inf, 0.0, largest)
+            found.append((logs - scale, anchor, scale))
+        return found
 
     def _factor(self, each: SiteTables, source: Any, sites: Sequence[Any]) -> tuple[np.ndarray, int]:
         if isinstance(source, SiteWeights):

@@ -6,7 +6,8 @@ import re
 from fractions import Fraction
 from typing import Any
 
-from ..errors import DeclarationError, did_you_mean
+from ..declare.values import parse_value
+from ..errors import DeclarationError, ParameterError, did_you_mean
 from .kinds import Normal, Uniform
 
 __all__ = ["read_law"]
@@ -70,6 +71,13 @@ def _choice(text: str, parts: list[str]) -> dict[Fraction, Fraction]:
 
 def _number(text: str, whole: str) -> Fraction:
     try:
-        return Fraction(text.strip().replace("−", "-"))
-    except (ValueError, ZeroDivisionError):
+        number = parse_value("law", text.strip().replace("−", "-"))
+        if isinstance(number, Fraction):
+            return number
+        raise ParameterError(text)
+    except ParameterError as cause:
+        if "1e50" in str(cause):
+            raise DeclarationError(
+                f"{text.strip()!r} in {whole!r} is beyond 1e50; measure energies in a larger unit"
+            ) from None
         raise DeclarationError(f"{text.strip()!r} in {whole!r} is not a number such as 0.5 or 2/3") from None
