@@ -17,6 +17,7 @@ from itertools import pairwise
 from typing import Any
 
 from ...errors import SolveError
+from ...operators.midpoints import flint_precision
 
 __all__ = ["Coefficients", "by_argument", "certified_roots", "newton_polygon_points", "together"]
 
@@ -94,13 +95,10 @@ def _by_flint(values: list[Any]) -> list[Any]:
         man, exponent = number.man_exp
         return arb(int(man)) * arb(2) ** exponent
 
-    before = ctx.prec
-    try:
-        ctx.prec = mp.mp.prec
-        found = acb_poly([ball(value) for value in values]).roots(tol=arb(2) ** (8 - ctx.prec), maxprec=8 * ctx.prec)
+    bits = mp.mp.prec
+    with flint_precision(bits, ctx):
+        found = acb_poly([ball(value) for value in values]).roots(tol=arb(2) ** (8 - bits), maxprec=8 * bits)
         return [mp.mpc(*(_number(part.mid()) for part in (root.real, root.imag))) for root in found]
-    finally:
-        ctx.prec = before
 
 
 def _number(middle: Any) -> Any:
