@@ -22,7 +22,7 @@ __all__ = ["require_resolved", "reservations", "walls"]
 _HOPELESS = 0.1
 #: Smaller changes than this are not mentioned: rules for smooth functions converge so fast that the
 #: error with all nodes is about the square of it.
-_WORTH_MENTION = 1e-4
+_WORTH_MENTION = 1e-5
 #: Density at an end, relative to the largest: less is nothing, more is a variable that ends there.
 _WALL = (1e-13, 1e-3)
 _HELP = "settled(…) doubles the nodes until the results settle"
