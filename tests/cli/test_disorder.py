@@ -1,5 +1,7 @@
 """``tmsolve disorder``: output, the numbers of the library, what is refused."""
 
+import math
+
 import pytest
 
 from tmsolve import models
@@ -39,6 +41,19 @@ def test_json_holds_values_and_errors(tm):
     assert document["random"] == {"h": "normal(0,1)"} and document["seed"] == 3 and document["method"] == "sample"
     again = tm(*FIELD, *FEW, "--json", "--read", read).json
     assert again == document
+
+
+def test_glass_susceptibility_and_correlations_of_signed_bonds(tm):
+    """K01: (1 + t²)/(1 − t²) and (1 − 2p) t at K = 0.8; Fischer and Hertz, Spin Glasses (1991), from memory."""
+    words = ("disorder", "random_bond_ising", "-p", "T=1", "-p", "h=0", "--random", "J=choice(0.8:0.7,-0.8:0.3)", *FEW)
+    found = tm(*words, "--json", "--read", "glass_susceptibility(m),correlation(m,m,1)").json["results"]
+    assert found["glass_susceptibility(m)"]["value"] == pytest.approx(2.5774644711948851061, rel=1e-12)
+    near = found["correlation(m,m,1)"]
+    assert abs(near["value"] - 0.4 * math.tanh(0.8)) < 6 * near["error"]
+    refused = tm(*words, "--read", "correlation(m,m,far)")
+    assert refused.code == 2 and "two observables and a whole number of cells" in refused.err
+    other = tm(*words[:8], "--method", "exact", "--read", "glass_susceptibility(m)")
+    assert other.code == 1 and "take --method sample" in other.err
 
 
 def test_exact_and_annealed_averages(tm):

@@ -26,12 +26,15 @@ METHODS = ("sample", "exact", "annealed")
 _CELLS, _REPLICAS = 500, 128
 _NOTHING_DRAWN = "nothing is drawn at random, the average is an integral"
 #: Averages that one method alone knows.
-_ONLY_BY = {"average_correlation_length": "exact", "lyapunov": "sample"}
+_ONLY_BY = dict.fromkeys(("lyapunov", "correlation", "glass_susceptibility", "probability_derivative"), "sample")
 #: Averages that infinite chains without disorder do not have: LaTeX and unit.
 _LOOKS = {
     "lyapunov": (r"\gamma", "1"),
     "average_correlation_length": (r"\bar{\xi}", "cells"),
+    "correlation": ("C", ""),
+    "glass_susceptibility": (r"\chi_{SG}", ""),
     "derivative": (r"\partial f", ""),
+    "probability_derivative": (r"\partial f/\partial p", "energy"),
 }
 
 
@@ -52,8 +55,10 @@ def add_averaging(parser: Parser) -> None:
         action="append",
         default=[],
         help="averages, separated by commas: free_energy internal_energy entropy specific_heat mean(a) "
-        "susceptibility(a) susceptibility(a,b) correlation_length average_correlation_length derivative(p) "
-        "derivative(p,q) lyapunov(k); a, b are observables, p, q parameters or T. Default: free_energy "
+        "susceptibility(a) susceptibility(a,b) correlation_length average_correlation_length correlation(a,b,r) "
+        "glass_susceptibility(a) derivative(p) derivative(p,q) probability_derivative(p,VALUE,INSTEAD) lyapunov(k); "
+        "a, b are observables, r is a distance in cells, p, q are parameters or T; the probability moved is that of a "
+        "random parameter to take VALUE instead of INSTEAD. Default: free_energy "
         "internal_energy entropy specific_heat correlation_length, and of every observable mean(a) and "
         "susceptibility(a). At T = 0: energy residual_entropy mean(a) overlap(a) walls(a) mean_length(a) domains(a); "
         "overlap is the squared mean in a cell, averaged; walls are the places per cell where a changes, mean_length "

@@ -113,6 +113,9 @@ def _numbers(one: Diagnosis) -> dict[str, Any]:
         "infinite_chain": one.infinite,
         "correlation_length": one.correlation_length,
         "correlation_lengths_in_the_chain": one.lengths,
+        "slowest_correlation_length": one.slowest_length,
         "autocorrelation_time": one.relaxation,
+        "renewal_time": one.renewal,
+        "uniform_parameters": dict(one.uniform),
         "reasons": list(one.reasons),
     }

@@ -24,6 +24,8 @@ _NAMES = {
     "probability_derivative": (2, 3),
     "correlation_length": (0, 0),
     "average_correlation_length": (0, 0),
+    "correlation": (3, 3),
+    "glass_susceptibility": (1, 1),
     "lyapunov": (1, 1),
 }
 #: The same at T = 0.
@@ -59,6 +61,10 @@ def average_named(text: str) -> tuple[str, tuple[Any, ...]]:
         if not arguments[0].isdecimal():
             raise ParameterError(f"lyapunov(k) takes a whole number k >= 1, got {text!r}")
         arguments = (int(arguments[0]),)
+    if name == "correlation":
+        if not arguments[2].isdecimal():
+            raise ParameterError(f"correlation(a,b,r) takes two observables and a whole number of cells, got {text!r}")
+        arguments = (*arguments[:2], int(arguments[2]))
     return name, arguments
 
 
