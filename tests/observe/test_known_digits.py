@@ -105,4 +105,5 @@ def test_entropies_of_continuous_states_may_be_negative_their_errors_not(K):
     solution = solve(models.load("xy").chain.at(T=f"1/{K}", J=1, h=0))
     error = float(solution.error_bound("entropy"))
     exact = mpmath.log(2 * mpmath.pi * mpmath.besseli(0, K)) - K * mpmath.besseli(1, K) / mpmath.besseli(0, K)
-    assert abs(float(exact) - solution.entropy) <= error < 1e-7  # without python-flint rounding is propagated, not compared
+    # Without python-flint rounding is propagated instead of compared with longer numbers.
+    assert abs(float(exact) - solution.entropy) <= error < 1e-7
