@@ -91,7 +91,7 @@ def test_unusable_questions(ask, error, fragments):
     refused(error, lambda: ask(quenched(BOND.fix(T=1), {"J": {1: 1}}, cells=2, replicas=2, rng=1)), *fragments)
 
 
-def test_lists_and_rings_and_sums_that_do_not_end():
+def test_lists_and_rings_and_distances_beyond_the_end_are_refused():
     listed = quenched(BOND.fix(T=1), {"J": [1, 2, 1]}, cells=3)
     refused(NotApplicable, lambda: listed.correlation("m", "m", 1), "realisation(chain", "law")
     ring = realisation(BOND.fix(T=1), {"J": [1, 2, 1]}, "ring")

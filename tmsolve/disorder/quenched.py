@@ -57,7 +57,8 @@ def quenched(
         Seed. The same seed gives the same numbers.
     control_variates : bool
         Take noise out of the free energy and first derivatives by averages over the next draw. Their coefficients come
-        from 64 further chains of up to 60 cells, so that neither value nor error is biased, whatever the replicas.
+        from 64 further chains of up to 60 cells, so that values are unbiased, whatever the replicas. In nearly
+        saturated chains, where rare draws decide, the bar of the free energy covers less than it says.
     derivatives : iterable of pairs of names
         Second derivatives to carry along beyond those that c and the susceptibilities need: pairs of parameters,
         ``"T"`` and, where there are more than three, observables.
